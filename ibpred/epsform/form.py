@@ -1,0 +1,86 @@
+"""Records of the epsilon-factorisation: what goes in, what comes out."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from fractions import Fraction
+
+from ibpred.exact.rational import Rational, Ring
+
+Matrix = tuple[tuple[Rational, ...], ...]
+
+
+@dataclass(frozen=True)
+class Connection:
+    """``d I / d x = A_x(eps, x) I`` in dimensionless ratios.
+
+    Attributes
+    ----------
+    variables
+        The ratios, e.g. ``("x",)``.
+    ring
+        Q(eps, ratios): ``ring(("eps", *variables))``.
+    matrices
+        For each ratio a dense n x n matrix over `ring`, block lower triangular.
+    blocks
+        Size of each diagonal block, in order; a block holds the masters of one sector.
+    labels
+        A name for each row (the master), for messages.
+    """
+
+    variables: tuple[str, ...]
+    ring: Ring
+    matrices: Mapping[str, Matrix]
+    blocks: tuple[int, ...]
+    labels: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class Obstruction:
+    """Why a block has no epsilon-form over the functions tried.
+
+    Attributes
+    ----------
+    rows
+        The rows of the block.
+    reason
+        A whole sentence: what fails and at which point.
+    operator
+        Picard-Fuchs operator at eps = 0 as text in the variable and ``D`` = d/dx, where found.
+    exponents
+        (singular point, local exponents) as text.
+    """
+
+    rows: tuple[int, ...]
+    reason: str
+    operator: str | None
+    exponents: tuple[tuple[str, tuple[str, ...]], ...]
+
+
+@dataclass(frozen=True)
+class EpsilonForm:
+    """``I = T f`` with ``d f = eps sum_l A_l dlog(letter_l) f``.
+
+    Attributes
+    ----------
+    variables, ring
+        As in the connection.
+    letters
+        Polynomials in the ratios with coprime integer coefficients, e.g. ``x`` and ``x + 1``.
+    matrices
+        One constant n x n matrix of rationals for each letter, same order.
+    transformation, inverse
+        T and its inverse over `ring`; I is the vector of masters.
+    tags
+        For each canonical function the letters (indices) whose product's square root multiplies it;
+        empty tuples where no square root occurs. Then ``I = T diag(1/sqrt(tag)) f``.
+    """
+
+    variables: tuple[str, ...]
+    ring: Ring
+    letters: tuple[Rational, ...]
+    matrices: tuple[tuple[tuple[Fraction, ...], ...], ...]
+    transformation: Matrix
+    inverse: Matrix
+    tags: tuple[tuple[int, ...], ...]

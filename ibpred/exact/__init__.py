@@ -1,0 +1,1 @@
+"""Exact arithmetic: primes, rings of rational functions, the expression grammar."""
