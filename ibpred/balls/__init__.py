@@ -1,0 +1,1 @@
+"""Ball arithmetic with explicit precision."""

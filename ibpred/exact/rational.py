@@ -194,9 +194,7 @@ class Rational:
 
     def __truediv__(self, value: Rational | Scalar) -> Rational:
         other = self._other(value)
-        return _reduced(
-            self.ring, self.numerator * other.denominator, self.denominator * other.numerator
-        )
+        return _reduced(self.ring, self.numerator * other.denominator, self.denominator * other.numerator)
 
     def __rtruediv__(self, value: Rational | Scalar) -> Rational:
         return self._other(value) / self

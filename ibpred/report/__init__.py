@@ -1,0 +1,1 @@
+"""Tables, LaTeX and the readable summary."""

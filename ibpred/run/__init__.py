@@ -1,0 +1,1 @@
+"""The only room with disk, processes and clock: stages strung together, store, progress."""
