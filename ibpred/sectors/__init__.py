@@ -1,0 +1,1 @@
+"""Sectors of a family: order of integrals, zero sectors, symmetries and maps."""

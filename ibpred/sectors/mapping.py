@@ -1,0 +1,59 @@
+"""The record of a map between sectors: which lines become which, and what numerators become."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Literal
+
+from ibpred.exact.rational import Rational
+
+Image = tuple[Rational, tuple[tuple[int, Rational], ...]]
+"""(constant, ((line, coefficient), ...)): the polynomial ``constant + sum coefficient * D_line``."""
+
+MapKind = Literal["momentum", "scalar"]
+
+
+@dataclass(frozen=True)
+class SectorMap:
+    """A map from the integrals of one sector to those of an equivalent one (possibly itself).
+
+    With ``(k, p) -> (loop_map (k, p), leg_map p)`` put into the lines of the source family, line j
+    becomes `images[j]`, a combination of the lines of the target family, and every line of the
+    source sector becomes exactly one line of the target sector. So
+
+    ``I_source(a) = integral over prod_j images[j]^(-a_j)``
+
+    with positive powers for the lines of the source sector only.
+
+    Attributes
+    ----------
+    source_family, target_family
+        Names of the families.
+    source, target
+        Sector ids.
+    lines
+        ``lines[i]`` is the target line that line ``lines_of(source)[i]`` becomes.
+    kind
+        ``"momentum"``: found as a change of momenta, holds with numerators. ``"scalar"``: only U
+        and F agree, holds for integrals without numerators (dots are allowed).
+    images
+        For each line of the source family its image, in the target's kinematic ring, lines
+        ascending, no zero coefficients; empty for a scalar map.
+    loop_map
+        L x (L + E): ``k_i -> sum_j loop_map[i][j] k_j + sum_e loop_map[i][L+e] p_e``; empty for a
+        scalar map.
+    leg_map
+        E x E: ``p_e -> sum_f leg_map[e][f] p_f``; keeps all products of external momenta. Empty
+        for a scalar map.
+    """
+
+    source_family: str
+    target_family: str
+    source: int
+    target: int
+    lines: tuple[int, ...]
+    kind: MapKind
+    images: tuple[Image, ...]
+    loop_map: tuple[tuple[Fraction, ...], ...]
+    leg_map: tuple[tuple[Fraction, ...], ...]
