@@ -17,7 +17,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from difflib import get_close_matches
 from fractions import Fraction
-from typing import Protocol, TypeVar
+from typing import TypeVar
 
 from ibpred.errors import ExpressionError
 from ibpred.exact.rational import Rational, Ring
@@ -26,13 +26,14 @@ _TOKEN = re.compile(r"\s*(?:(\d+\.\d*|\.\d+|\d+)|([A-Za-z_][A-Za-z_0-9]*)|(\*\*|
 _LONGEST_POWER = 10_000
 
 
-class Algebra(Protocol):
-    """What the parser needs of the values it computes with."""
-
-    def __add__(self, other: object, /) -> object: ...
-
-
 V = TypeVar("V")
+
+
+class MeaninglessError(ArithmeticError):
+    """An operation that the algebra's values do not have, such as a vector plus a number.
+
+    Algebras raise it with the reason; the parser turns it into an `ExpressionError` that shows where.
+    """
 
 
 @dataclass(frozen=True)
@@ -104,9 +105,12 @@ class _Parser:
     def sum(self) -> object:
         value = self.product()
         while self.peek().text in ("+", "-"):
-            sign = self.take().text
+            operator = self.take()
             right = self.product()
-            value = value + right if sign == "+" else value - right  # type: ignore[operator]
+            try:
+                value = value + right if operator.text == "+" else value - right  # type: ignore[operator]
+            except MeaninglessError as error:
+                raise self.fail(str(error), operator) from None
         return value
 
     def product(self) -> object:
@@ -118,6 +122,8 @@ class _Parser:
                 value = value * right if operator.text == "*" else value / right  # type: ignore[operator]
             except ZeroDivisionError:
                 raise self.fail("division by zero", operator) from None
+            except MeaninglessError as error:
+                raise self.fail(str(error), operator) from None
         return value
 
     def power(self) -> object:
@@ -147,6 +153,8 @@ class _Parser:
                 value = value ** (-size if negative else size)  # type: ignore[operator]
             except ZeroDivisionError:
                 raise self.fail("zero to a negative power", exponent) from None
+            except MeaninglessError as error:
+                raise self.fail(str(error), exponent) from None
         return value
 
     def atom(self) -> object:
@@ -182,7 +190,8 @@ def parse(text: str, number: Callable[[Fraction], V], name: Callable[[str], V]) 
         The expression.
     number, name
         Make a value from an exact number, and from a symbol. `name` raises
-        ``KeyError(symbol, *known)`` for an unknown one.
+        ``KeyError(symbol, *known)`` for an unknown one. The values' operations may raise
+        ``ZeroDivisionError`` and `MeaninglessError`.
 
     Raises
     ------

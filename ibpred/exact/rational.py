@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
 from fractions import Fraction
-from functools import lru_cache
+from functools import cache
 from typing import Any, Union
 
 import flint
@@ -91,7 +91,7 @@ class Ring:
         return _reduced(self, numerator, denominator)
 
 
-@lru_cache(maxsize=None)
+@cache
 def _ring(names: tuple[str, ...]) -> Ring:
     return Ring(names)
 

@@ -1,0 +1,1 @@
+"""What the user defines: lines, kinematics, graphs, graph polynomials; reading family files."""

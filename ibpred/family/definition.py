@@ -48,6 +48,8 @@ class Line:
         Integrals without this line vanish.
     numerator
         The power is never positive (an irreducible numerator, given or completed automatically).
+    dimension
+        Mass dimension of D: 2 unless the line is given by an expression that is linear in momenta.
     """
 
     text: str
@@ -58,6 +60,7 @@ class Line:
     mass2: Rational
     cut: bool
     numerator: bool
+    dimension: int = 2
 
 
 @dataclass(frozen=True)
@@ -70,10 +73,13 @@ class Graph:
         (vertex, vertex) of each line that is no numerator, in line order.
     legs
         (external momentum name, vertex); the dependent leg is not listed.
+    rest
+        Vertex where the dependent leg takes out the sum of the others; None without legs.
     """
 
     edges: tuple[tuple[int, int], ...]
     legs: tuple[tuple[str, int], ...]
+    rest: int | None = None
 
 
 @dataclass(frozen=True)
