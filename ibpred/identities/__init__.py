@@ -1,0 +1,1 @@
+"""Identities between integrals as templates, and their instantiation as sparse rows."""
