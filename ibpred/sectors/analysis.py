@@ -4,7 +4,14 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from ibpred.exact.labelling import Key
+from ibpred.family.definition import FamilyDefinition
+from ibpred.sectors.forms import line_forms
 from ibpred.sectors.mapping import SectorMap
+from ibpred.sectors.momenta import family_pair
+from ibpred.sectors.parameters import all_sectors, family_terms
+from ibpred.sectors.scaleless import zero_sectors_of
+from ibpred.sectors.symmetry import find_map, self_maps
 
 
 @dataclass(frozen=True)
@@ -46,3 +53,37 @@ class SectorAnalysis:
     def maps_from(self, sector: int) -> tuple[SectorMap, ...]:
         """The maps whose source is `sector`."""
         return tuple(found for found in self.maps if found.source == sector)
+
+
+def analyse(family: FamilyDefinition) -> SectorAnalysis:
+    """Zero sectors, classes of equivalent sectors and maps of one family.
+
+    Raises
+    ------
+    InputError
+        If the lines do not determine all scalar products of loop momenta.
+    """
+    forms = line_forms(family)
+    pair = family_pair(forms, forms)
+    terms = family_terms(family)
+    sectors = all_sectors(family.propagators)
+    zero = zero_sectors_of(terms, family.propagators)
+    classes: dict[Key, list[int]] = {}
+    for sector in sectors:
+        if sector not in zero:
+            classes.setdefault(terms.canonical(sector).key, []).append(sector)
+    maps: list[SectorMap] = []
+    for representative, *others in classes.values():
+        for sector in others:
+            found = find_map(pair, terms, sector, terms, representative)
+            assert found is not None, "sectors of one class have equal canonical forms"
+            maps.append(found)
+    for representative, *_ in classes.values():
+        maps.extend(self_maps(pair, terms, representative))
+    return SectorAnalysis(
+        family=family.name,
+        sectors=sectors,
+        zero=zero,
+        classes=tuple(tuple(members) for members in classes.values()),
+        maps=tuple(maps),
+    )

@@ -1,0 +1,166 @@
+"""Maps between equivalent sectors, and the symmetries of one sector."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from fractions import Fraction
+
+from ibpred.exact.labelling import Permutation, compose, group_elements, isomorphism
+from ibpred.sectors.forms import Matrix
+from ibpred.sectors.mapping import Image, SectorMap
+from ibpred.sectors.momenta import FamilyPair, momentum_changes, verified_images
+from ibpred.sectors.order import lines_of
+from ibpred.sectors.parameters import FamilyTerms
+
+
+def find_map(
+    pair: FamilyPair, source_terms: FamilyTerms, source: int, target_terms: FamilyTerms, target: int
+) -> SectorMap | None:
+    """A map from one sector to another.
+
+    Every renaming of lines that carries U and F of the source into those of the target is tried as
+    a change of momenta; where none is one, the first renaming gives a scalar map.
+
+    Parameters
+    ----------
+    pair
+        The families of the sectors.
+    source_terms, source
+        U and F of the source's family; its sector.
+    target_terms, target
+        The same for the target.
+
+    Returns
+    -------
+    SectorMap or None
+        None if U and F do not agree under any renaming of lines.
+    """
+    first = isomorphism(source_terms.canonical(source), target_terms.canonical(target))
+    if first is None:
+        return None
+    source_lines, places = lines_of(source), lines_of(target)
+    for symmetry in group_elements(target_terms.symmetries(target), len(places)):
+        lines = tuple(places[i] for i in compose(first, symmetry))
+        for change in momentum_changes(pair, source_lines, lines):
+            found = verified_images(pair, source_lines, lines, change)
+            if found is not None:
+                return _momentum_map(pair, (source, target), lines, change, found)
+    return _scalar_map(pair, (source, target), tuple(places[i] for i in first))
+
+
+def self_maps(pair: FamilyPair, terms: FamilyTerms, sector: int) -> tuple[SectorMap, ...]:
+    """Generators of the symmetries of a sector, none trivial.
+
+    Changes of momenta come first and generate all that were found; scalar maps follow for
+    the renamings of lines that keep U and F and are not among the changes of momenta.
+
+    Parameters
+    ----------
+    pair
+        The family with itself.
+    terms
+        Its U and F.
+    sector
+        The sector.
+    """
+    lines = lines_of(sector)
+    symmetries = terms.symmetries(sector)
+    size = len(lines)
+    width = len(pair.source.family.loops) + len(pair.source.family.external)
+    group = _MatrixGroup(width)
+    renamings: list[Permutation] = []
+    result: list[SectorMap] = []
+    for renaming in group_elements(symmetries, size):
+        renamed = tuple(lines[i] for i in renaming)
+        for change in momentum_changes(pair, lines, renamed):
+            if change in group:
+                continue
+            found = verified_images(pair, lines, renamed, change)
+            if found is not None:
+                group.adjoin(change)
+                renamings.append(renaming)
+                result.append(_momentum_map(pair, (sector, sector), renamed, change, found))
+    known = set(group_elements(renamings, size))
+    for renaming in symmetries:
+        if renaming not in known:
+            renamings.append(renaming)
+            known = set(group_elements(renamings, size))
+            result.append(_scalar_map(pair, (sector, sector), tuple(lines[i] for i in renaming)))
+    return tuple(result)
+
+
+class _MatrixGroup:
+    """A finite group of changes of momenta, a matrix and its negative taken as one element."""
+
+    def __init__(self, width: int) -> None:
+        identity = tuple(tuple(Fraction(int(i == j)) for j in range(width)) for i in range(width))
+        self._elements: dict[Matrix, None] = {_up_to_sign(identity): None}
+        self._generators: list[Matrix] = []
+
+    def __contains__(self, change: Matrix) -> bool:
+        return _up_to_sign(change) in self._elements
+
+    def adjoin(self, change: Matrix) -> None:
+        """Add a generator and everything it makes with the others."""
+        self._generators.append(change)
+        front = list(self._elements)
+        while front:
+            following = []
+            for element in front:
+                for generator in self._generators:
+                    made = _up_to_sign(_times(element, generator))
+                    if made not in self._elements:
+                        self._elements[made] = None
+                        following.append(made)
+            front = following
+
+
+def _up_to_sign(change: Matrix) -> Matrix:
+    first = next((x for row in change for x in row if x), Fraction(1))
+    if first > 0:
+        return change
+    return tuple(tuple(-x for x in row) for row in change)
+
+
+def _times(a: Matrix, b: Matrix) -> Matrix:
+    columns = tuple(zip(*b, strict=True))
+    return tuple(tuple(_dot(row, column) for column in columns) for row in a)
+
+
+def _dot(row: Sequence[Fraction], column: Sequence[Fraction]) -> Fraction:
+    return sum((x * y for x, y in zip(row, column, strict=True) if x and y), start=Fraction(0))
+
+
+def _momentum_map(
+    pair: FamilyPair,
+    sectors: tuple[int, int],
+    lines: tuple[int, ...],
+    change: Matrix,
+    images: tuple[Image, ...],
+) -> SectorMap:
+    loops = len(pair.source.family.loops)
+    return SectorMap(
+        source_family=pair.source.family.name,
+        target_family=pair.target.family.name,
+        source=sectors[0],
+        target=sectors[1],
+        lines=lines,
+        kind="momentum",
+        images=images,
+        loop_map=change[:loops],
+        leg_map=tuple(row[loops:] for row in change[loops:]),
+    )
+
+
+def _scalar_map(pair: FamilyPair, sectors: tuple[int, int], lines: tuple[int, ...]) -> SectorMap:
+    return SectorMap(
+        source_family=pair.source.family.name,
+        target_family=pair.target.family.name,
+        source=sectors[0],
+        target=sectors[1],
+        lines=lines,
+        kind="scalar",
+        images=(),
+        loop_map=(),
+        leg_map=(),
+    )
