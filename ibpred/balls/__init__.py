@@ -1,1 +1,1 @@
-"""Ball arithmetic with explicit precision."""
+"""Ball arithmetic with the precision as an argument: every number carries a rigorous radius."""

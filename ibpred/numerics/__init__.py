@@ -1,0 +1,1 @@
+"""Numbers with rigorous errors: local series, continuation, values of masters and integrals."""
