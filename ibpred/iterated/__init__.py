@@ -1,0 +1,1 @@
+"""Iterated integrals: words, exact constants, multiple zeta values, solutions order by order."""
