@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from fractions import Fraction
-
 from ibpred.exact.labelling import Permutation, compose, group_elements, isomorphism
+from ibpred.sectors.closure import ChangeGroup
 from ibpred.sectors.forms import Matrix
 from ibpred.sectors.mapping import Image, SectorMap
 from ibpred.sectors.momenta import FamilyPair, momentum_changes, verified_images
@@ -67,7 +65,7 @@ def self_maps(pair: FamilyPair, terms: FamilyTerms, sector: int) -> tuple[Sector
     symmetries = terms.symmetries(sector)
     size = len(lines)
     width = len(pair.source.family.loops) + len(pair.source.family.external)
-    group = _MatrixGroup(width)
+    group = ChangeGroup(width)
     renamings: list[Permutation] = []
     result: list[SectorMap] = []
     for renaming in group_elements(symmetries, size):
@@ -87,48 +85,6 @@ def self_maps(pair: FamilyPair, terms: FamilyTerms, sector: int) -> tuple[Sector
             known = set(group_elements(renamings, size))
             result.append(_scalar_map(pair, (sector, sector), tuple(lines[i] for i in renaming)))
     return tuple(result)
-
-
-class _MatrixGroup:
-    """A finite group of changes of momenta, a matrix and its negative taken as one element."""
-
-    def __init__(self, width: int) -> None:
-        identity = tuple(tuple(Fraction(int(i == j)) for j in range(width)) for i in range(width))
-        self._elements: dict[Matrix, None] = {_up_to_sign(identity): None}
-        self._generators: list[Matrix] = []
-
-    def __contains__(self, change: Matrix) -> bool:
-        return _up_to_sign(change) in self._elements
-
-    def adjoin(self, change: Matrix) -> None:
-        """Add a generator and everything it makes with the others."""
-        self._generators.append(change)
-        front = list(self._elements)
-        while front:
-            following = []
-            for element in front:
-                for generator in self._generators:
-                    made = _up_to_sign(_times(element, generator))
-                    if made not in self._elements:
-                        self._elements[made] = None
-                        following.append(made)
-            front = following
-
-
-def _up_to_sign(change: Matrix) -> Matrix:
-    first = next((x for row in change for x in row if x), Fraction(1))
-    if first > 0:
-        return change
-    return tuple(tuple(-x for x in row) for row in change)
-
-
-def _times(a: Matrix, b: Matrix) -> Matrix:
-    columns = tuple(zip(*b, strict=True))
-    return tuple(tuple(_dot(row, column) for column in columns) for row in a)
-
-
-def _dot(row: Sequence[Fraction], column: Sequence[Fraction]) -> Fraction:
-    return sum((x * y for x, y in zip(row, column, strict=True) if x and y), start=Fraction(0))
 
 
 def _momentum_map(
