@@ -35,7 +35,7 @@ def external_vectors(gram):
     """Vectors with a given Gram matrix modulo P (Cholesky with two components per square, and null pairs)."""
     vectors = []
     n = len(gram)
-    # v_e = sum_f coordinates on null directions n_f with n_f . m_f = 1: v_e = n_e + sum_f (G_ef - G_ff/2 [..]) m_f
+    # v_e = null_e + (G_ee / 2) dual_e + sum_(f<e) G_ef dual_f with null.dual = 1
     half = pow(2, -1, P)
     for e in range(n):
         vector = [0] * SPACE
