@@ -1,0 +1,181 @@
+"""What all commands share: options, reading arguments, opening the chain, printing, exit codes."""
+
+from __future__ import annotations
+
+import json
+import os
+import sys
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass
+from fractions import Fraction
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, TypeVar
+
+import click
+
+from ibpred.errors import IbpredError, InputError, PointError
+from ibpred.exact.grammar import parse_number
+
+if TYPE_CHECKING:
+    from ibpred.run.chain import Chain
+
+C = TypeVar("C", bound=Callable[..., Any])
+
+
+@dataclass(frozen=True)
+class Shared:
+    """The options that every command takes."""
+
+    file: Path
+    work: Path | None
+    workers: int
+    json: bool
+    quiet: bool
+
+
+def shared_options(command: C) -> C:
+    """Add the family file and the shared options to a command; it receives one `Shared`."""
+
+    def gather(family: str, work: str | None, workers: int, as_json: bool, quiet: bool, /, **own: Any) -> Any:
+        shared = Shared(Path(family), Path(work) if work else None, workers, as_json, quiet)
+        return command(shared, **own)
+
+    def entry(**given: Any) -> Any:
+        names = ("family", "work", "workers", "as_json", "quiet")
+        return gather(*(given.pop(name) for name in names), **given)
+
+    entry.__doc__ = command.__doc__
+    entry.__name__ = command.__name__
+    if hasattr(command, "__click_params__"):
+        entry.__click_params__ = command.__click_params__  # type: ignore[attr-defined]
+    for decorate in (
+        click.option("--quiet", is_flag=True, help="Show no progress."),
+        click.option("--json", "as_json", is_flag=True, help="Print the result as one JSON object."),
+        click.option(
+            "--workers",
+            type=click.IntRange(min=1),
+            default=os.cpu_count() or 1,
+            show_default=True,
+            metavar="N",
+            help="Threads that sample the reduction.",
+        ),
+        click.option(
+            "--work", metavar="DIR", help="Work folder [default: .ibpred/NAME beside the family file]."
+        ),
+        click.argument("family", metavar="FAMILY.toml"),
+    ):
+        entry = decorate(entry)
+    return entry  # type: ignore[return-value]
+
+
+@contextmanager
+def open_chain(shared: Shared) -> Iterator[Chain]:
+    """The chain of the family file, its store open and progress shown on standard error."""
+    from ibpred.cli.progress import terminal_progress
+    from ibpred.progress import SILENT
+    from ibpred.run.chain import Chain
+    from ibpred.run.files import read_family_file
+    from ibpred.run.store import Store
+
+    definition = read_family_file(shared.file)
+    folder = shared.work or shared.file.parent / ".ibpred" / definition.name
+    with Store(folder) as store:
+        if shared.quiet:
+            yield Chain(definition, store, SILENT, shared.workers)
+        else:
+            with terminal_progress() as progress:
+                yield Chain(definition, store, progress, shared.workers)
+
+
+def emit(shared: Shared, data: Any, text: Callable[[], str]) -> None:
+    """Print a result: JSON where it was asked for, else the readable text."""
+    if shared.json:
+        click.echo(json.dumps(data, ensure_ascii=False))
+    else:
+        click.echo(text())
+
+
+def parse_powers(text: str, source: str) -> tuple[int, ...]:
+    """Powers of an integral, ``1,1,1,-1`` or ``box(1,1,1,-1)``.
+
+    Raises
+    ------
+    InputError
+        If it is not a comma-separated list of integers.
+    """
+    inner = text.strip()
+    if inner.endswith(")") and "(" in inner:
+        inner = inner[inner.index("(") + 1 : -1]
+    try:
+        return tuple(int(part) for part in inner.split(","))
+    except ValueError:
+        raise InputError(
+            f"{source}: {text!r} is no integral; give the powers separated by commas, e.g. 1,1,1,-1"
+        ) from None
+
+
+def parse_list_file(path: Path) -> tuple[tuple[int, ...], ...]:
+    """Integrals of a list file: one a line, ``#`` starts a comment.
+
+    Raises
+    ------
+    InputError
+        If the file cannot be read or a line is no integral.
+    """
+    try:
+        text = path.read_text(encoding="utf-8")
+    except (OSError, UnicodeDecodeError) as error:
+        raise InputError(f"the list {path} cannot be read: {error}") from error
+    found = []
+    for number, line in enumerate(text.splitlines(), start=1):
+        content = line.split("#", 1)[0].strip()
+        if content:
+            found.append(parse_powers(content, f"{path}:{number}"))
+    if not found:
+        raise InputError(f"the list {path} holds no integral")
+    return tuple(found)
+
+
+def parse_point(text: str) -> dict[str, Fraction]:
+    """A kinematic point such as ``s=-1,t=-1/3``.
+
+    Raises
+    ------
+    PointError
+        If an entry is not ``name=number`` or a name comes twice.
+    """
+    point: dict[str, Fraction] = {}
+    for part in text.split(","):
+        name, equals, value = part.partition("=")
+        name = name.strip()
+        if not equals or not name:
+            raise PointError(f"{part.strip()!r} is not NAME=NUMBER in the point {text!r}")
+        if name in point:
+            raise PointError(f"{name} is given twice in the point {text!r}")
+        point[name] = parse_number(value.strip())
+    return point
+
+
+def guarded(run: Callable[[], Any]) -> int:
+    """Run a command and turn its errors into a message and an exit code."""
+    try:
+        run()
+    except IbpredError as error:
+        click.echo(f"ibpred: {error}", err=True)
+        return error.exit_code
+    except click.ClickException as error:
+        error.show()
+        return error.exit_code
+    except (KeyboardInterrupt, click.Abort):
+        click.echo(
+            "ibpred: interrupted; finished stages are kept, the same command goes on from there", err=True
+        )
+        return 130
+    except BrokenPipeError:
+        sys.stderr.close()
+        return 0
+    except MemoryError:
+        click.echo("ibpred: out of memory; finished stages are kept", err=True)
+        return 1
+    return 0

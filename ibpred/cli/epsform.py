@@ -1,0 +1,19 @@
+"""``ibpred epsform``: the epsilon-factorised form."""
+
+from __future__ import annotations
+
+import click
+
+from ibpred.cli.common import Shared, emit, open_chain, shared_options
+
+
+@click.command()
+@shared_options
+def epsform(shared: Shared) -> None:
+    """Try the ε-factorised form; say what stands in its way where there is none."""
+    from ibpred.report.json_tables import epsilon_data
+    from ibpred.report.text import epsilon_text
+
+    with open_chain(shared) as chain:
+        data = epsilon_data(chain.definition, chain.dimensionless(), chain.epsilon_form())
+    emit(shared, data, lambda: epsilon_text(data))

@@ -1,0 +1,21 @@
+"""``ibpred solve``: iterated integrals with boundary constants."""
+
+from __future__ import annotations
+
+import click
+
+from ibpred.cli.common import Shared, emit, open_chain, shared_options
+
+
+@click.command()
+@shared_options
+@click.option("--weight", type=click.IntRange(min=0), metavar="W", help="Highest weight [default: 2 L].")
+def solve(shared: Shared, weight: int | None) -> None:
+    """Solve in iterated integrals, with boundary constants."""
+    from ibpred.report.json_tables import solution_data
+    from ibpred.report.text import solution_text
+
+    with open_chain(shared) as chain:
+        highest = 2 * len(chain.definition.loops) if weight is None else weight
+        data = solution_data(chain.definition, chain.solution(highest))
+    emit(shared, data, lambda: solution_text(data))

@@ -1,0 +1,167 @@
+"""Results as readable text for a terminal."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+Data = dict[str, Any]
+
+
+def integral_text(family: str, powers: Sequence[int]) -> str:
+    """An integral as ``box(1,1,1,1)``."""
+    return f"{family}({','.join(map(str, powers))})"
+
+
+def columns(rows: Sequence[Sequence[str]], gap: str = "  ") -> list[str]:
+    """Lines of left-aligned columns."""
+    if not rows:
+        return []
+    widths = [max(len(row[i]) for row in rows) for i in range(len(rows[0]))]
+    return [
+        gap.join(cell.ljust(width) for cell, width in zip(row, widths, strict=True)).rstrip() for row in rows
+    ]
+
+
+def inspect_text(data: Data) -> str:
+    """The family at a glance."""
+    lines = [
+        f"family   {data['family']}",
+        f"loops    {data['loops']}",
+        f"legs     {data['legs']}",
+        f"U        {data['U']}",
+        f"F        {data['F']}",
+        f"sectors  {data['sectors']}, of which {len(data['zero_sectors'])} vanish",
+        f"classes of equivalent sectors: {len(data['sector_classes'])}",
+    ]
+    for members in data["sector_classes"]:
+        first, *others = ("".join(map(str, sector)) for sector in members)
+        lines.append(f"  {first}" + (f"  =  {', '.join(others)}" if others else ""))
+    return "\n".join(lines)
+
+
+def masters_text(data: Data) -> str:
+    """The masters, one a line."""
+    lines = [f"{data['count']} master integral{'s' if data['count'] != 1 else ''}"]
+    rows = [
+        [f"  {number}", integral_text(data["family"], master["powers"]), f"{master['lines']} lines"]
+        for number, master in enumerate(data["masters"], start=1)
+    ]
+    return "\n".join(lines + columns(rows))
+
+
+def _sum(terms: Sequence[tuple[str, str]]) -> str:
+    """Text of a sum of coefficient times object."""
+    if not terms:
+        return "0"
+    parts = []
+    for coefficient, name in terms:
+        if coefficient == "1":
+            parts.append(f"+ {name}")
+        elif coefficient == "-1":
+            parts.append(f"- {name}")
+        elif coefficient.startswith("-") and not _is_sum(coefficient[1:]):
+            parts.append(f"- {coefficient[1:]} * {name}")
+        elif _is_sum(coefficient):
+            parts.append(f"+ ({coefficient}) * {name}")
+        else:
+            parts.append(f"+ {coefficient} * {name}")
+    text = " ".join(parts)
+    return text[2:] if text.startswith("+ ") else text
+
+
+def _is_sum(text: str) -> bool:
+    depth = 0
+    for i, character in enumerate(text):
+        depth += (character == "(") - (character == ")")
+        if depth == 0 and character in "+-" and i > 0:
+            return True
+    return False
+
+
+def reduction_text(data: Data) -> str:
+    """The reductions, one a line."""
+    family = data["family"]
+    lines = []
+    for reduction in data["reductions"]:
+        terms = [(t["coefficient"], integral_text(family, t["master"])) for t in reduction["terms"]]
+        lines.append(f"{integral_text(family, reduction['powers'])} = {_sum(terms)}")
+    return "\n".join(lines)
+
+
+def differential_text(data: Data) -> str:
+    """The differential equations, one row a line."""
+    names = [integral_text(data["family"], powers) for powers in data["masters"]]
+    if not data["variables"]:
+        return "the family has no invariant, so there is no differential equation"
+    lines = [f"I{i + 1} = {name}" for i, name in enumerate(names)]
+    for variable in data["variables"]:
+        by_row: dict[int, list[tuple[str, str]]] = {}
+        for row, column, value in data["matrices"][variable]:
+            by_row.setdefault(row, []).append((value, f"I{column + 1}"))
+        lines.append("")
+        lines += [f"d I{row + 1} / d {variable} = {_sum(by_row[row])}" for row in sorted(by_row)]
+    return "\n".join(lines)
+
+
+def epsilon_text(data: Data) -> str:
+    """The canonical system, or what stands in its way."""
+    lines = [f"ratio {name} = {text}" for name, text in data["ratios"].items()]
+    if data["obstructions"]:
+        lines.append("no ε-form was found:")
+        for obstruction in data["obstructions"]:
+            lines.append(
+                f"  rows {', '.join(str(r + 1) for r in obstruction['rows'])}: {obstruction['reason']}"
+            )
+            if obstruction["operator"]:
+                lines.append(f"    Picard–Fuchs operator at eps = 0: {obstruction['operator']}")
+            for place, exponents in obstruction["exponents"]:
+                lines.append(f"    exponents at {place}: {', '.join(exponents)}")
+        return "\n".join(lines)
+    lines.append(f"letters: {', '.join(data['letters']) or 'none'}")
+    for letter in data["letters"]:
+        by_row: dict[int, list[tuple[str, str]]] = {}
+        for row, column, value in data["matrices"][letter]:
+            by_row.setdefault(row, []).append((value, f"f{column + 1}"))
+        lines.append("")
+        lines.append(f"eps dlog({letter}):")
+        lines += [f"  d f{row + 1}: {_sum(by_row[row])}" for row in sorted(by_row)]
+    lines.append("")
+    lines.append("I = T f with")
+    by_row = {}
+    for row, column, value in data["transformation"]:
+        by_row.setdefault(row, []).append((value, f"f{column + 1}"))
+    lines += [f"  I{row + 1} = {_sum(by_row[row])}" for row in sorted(by_row)]
+    return "\n".join(lines)
+
+
+def solution_text(data: Data) -> str:
+    """The canonical functions order by order."""
+    lines = [f"letters: {', '.join(data['letters']) or 'none'}"]
+    for function in data["functions"]:
+        lines.append("")
+        for entry in function["orders"]:
+            lines.append(f"f{function['master'] + 1} at eps^{entry['order']}: {entry['text']}")
+    return "\n".join(lines)
+
+
+def values_text(data: Data) -> str:
+    """Values, one power of eps a line."""
+    point = ", ".join(f"{name} = {value}" for name, value in data["point"].items())
+    lines = [f"at {point}" if point else "no invariants"]
+    for value in data["integrals"]:
+        kind = "rigorous balls" if value["certified"] else "estimates"
+        lines.append("")
+        lines.append(f"{integral_text(data['family'], value['powers'])}   ({kind})")
+        rows = [
+            [f"  eps^{order}", part["re"], part["im"] + " i", f"+/- {part['radius']}"]
+            for order, part in sorted(value["epsilon"].items(), key=lambda item: int(item[0]))
+        ]
+        lines += columns(rows)
+    return "\n".join(lines)
+
+
+def run_text(data: Data) -> str:
+    """What a whole run did."""
+    rows = [[stage["name"], stage["outcome"], f"{stage['seconds']} s"] for stage in data["stages"]]
+    return "\n".join([*columns(rows), f"results in {data['folder']}"])
