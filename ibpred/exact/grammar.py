@@ -13,7 +13,7 @@ Numbers are integers or decimals (read exactly: ``0.1`` is 1/10). There is no im
 from __future__ import annotations
 
 import re
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from difflib import get_close_matches
 from fractions import Fraction
@@ -24,6 +24,7 @@ from ibpred.exact.rational import Rational, Ring
 
 _TOKEN = re.compile(r"\s*(?:(\d+\.\d*|\.\d+|\d+)|([A-Za-z_][A-Za-z_0-9]*)|(\*\*|[-+*/^()]))")
 _LONGEST_POWER = 10_000
+_DEEPEST = 100  # nested parentheses and signs
 
 
 V = TypeVar("V")
@@ -34,6 +35,15 @@ class MeaninglessError(ArithmeticError):
 
     Algebras raise it with the reason; the parser turns it into an `ExpressionError` that shows where.
     """
+
+
+def nearest(word: str, known: Sequence[str]) -> str:
+    """The end of a message about an unknown word: the nearest known one, or all that are known."""
+    if not known:
+        return "none is known here"
+    plain = {name.lower(): name for name in reversed(known)}
+    near = get_close_matches(word.lower(), list(plain), n=1, cutoff=0.5)
+    return f"did you mean {plain[near[0]]!r}?" if near else f"known are {', '.join(known)}"
 
 
 @dataclass(frozen=True)
@@ -81,6 +91,7 @@ class _Parser:
         self.text = text
         self.tokens = tokens(text)
         self.at = 0
+        self.depth = 0
         self.number = number
         self.name = name
 
@@ -127,6 +138,14 @@ class _Parser:
         return value
 
     def power(self) -> object:
+        self.depth += 1
+        if self.depth > _DEEPEST:
+            raise self.fail(f"more than {_DEEPEST} nested parentheses or signs", self.peek())
+        value = self.signed_power()
+        self.depth -= 1
+        return value
+
+    def signed_power(self) -> object:
         token = self.peek()
         if token.text in ("+", "-"):
             self.take()
@@ -165,12 +184,8 @@ class _Parser:
             try:
                 return self.name(token.text)
             except KeyError as error:
-                known = [str(k) for k in error.args[1:]]
-                near = get_close_matches(token.text, known, n=1)
-                hint = f"; did you mean {near[0]!r}?" if near else ""
-                if not near and known:
-                    hint = f"; known are {', '.join(known)}"
-                raise self.fail(f"unknown symbol {token.text!r}{hint}", token) from None
+                hint = nearest(token.text, [str(k) for k in error.args[1:]])
+                raise self.fail(f"unknown symbol {token.text!r}; {hint}", token) from None
         if token.text == "(":
             value = self.sum()
             closing = self.take()

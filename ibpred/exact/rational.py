@@ -220,6 +220,9 @@ class Rational:
     def __hash__(self) -> int:
         return hash((self.ring.names, str(self)))
 
+    def __reduce__(self) -> tuple[Any, ...]:
+        return _from_terms, (self.ring.names, _plain(self.numerator), _plain(self.denominator))
+
     # -- calculus and substitution ---------------------------------------------------------------
     def derivative(self, name: str) -> Rational:
         """Partial derivative in the variable `name`."""
@@ -296,14 +299,14 @@ class Rational:
     def factors(self) -> tuple[Fraction, tuple[tuple[Polynomial, int], ...]]:
         """Content and irreducible primitive factors with their (signed) multiplicities.
 
-        The factors come in a canonical order (by degree, then by text).
+        The factors come in a canonical order (by degree, number of terms, text).
         """
         if self.is_zero():
             return Fraction(0), ()
         top, above = self.numerator.factor()
         bottom, below = self.denominator.factor()
         found = [(f, int(m)) for f, m in above] + [(f, -int(m)) for f, m in below]
-        found.sort(key=lambda item: (item[1] < 0, item[0].total_degree(), str(item[0])))
+        found.sort(key=lambda item: (item[1] < 0, item[0].total_degree(), len(item[0]), str(item[0])))
         return Fraction(int(top), int(bottom)), tuple(found)
 
     def __str__(self) -> str:
@@ -352,6 +355,17 @@ class Rational:
 def polynomial_text(polynomial: Polynomial) -> str:
     """Infix text of an integer polynomial, ``^`` for powers, no spaces, in the ring's term order."""
     return str(polynomial).replace(" ", "")
+
+
+def _plain(polynomial: Polynomial) -> dict[tuple[int, ...], int]:
+    return {tuple(map(int, e)): int(c) for e, c in polynomial.to_dict().items()}
+
+
+def _from_terms(
+    names: tuple[str, ...], above: dict[tuple[int, ...], int], below: dict[tuple[int, ...], int]
+) -> Rational:
+    ring_ = ring(names)
+    return Rational(ring_, ring_.polynomial(above), ring_.polynomial(below))
 
 
 def _ratio(value: Scalar) -> tuple[int, int]:

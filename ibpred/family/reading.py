@@ -170,7 +170,8 @@ def _check_names(
             if name in RESERVED:
                 raise source.error(f"the name {name!r} is taken by {RESERVED[name]}; choose another", path)
             if name in seen:
-                raise source.error(f"the name {name!r} is given twice: {seen[name]} and {kind}", path)
+                both = f": {seen[name]} and {kind}" if seen[name] != kind else ""
+                raise source.error(f"the name {name!r} is given twice{both}", path)
             seen[name] = kind
 
 

@@ -169,7 +169,8 @@ def check_independent(source: Source, lines: Sequence[Line], space: Space, *, ed
         if len(lines) > space.products:
             problem += f"; {len(lines)} lines are too many for {space.products} products with loop momenta"
         problem += "; leave it out, or split the integrals by partial fractions into several families"
-        raise source.error(problem, ("edge", i) if i < edges else ("line", i - edges))
+        key = "expression" if line.momentum is None else "momentum"
+        raise source.error(problem, ("edge", i) if i < edges else ("line", i - edges, key))
 
 
 def _factor(value: Fraction) -> str:

@@ -6,10 +6,10 @@ import re
 import tomllib
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from difflib import get_close_matches
 from typing import Any
 
 from ibpred.errors import ExpressionError, FamilyFileError
+from ibpred.exact.grammar import nearest
 
 Path = tuple[str | int, ...]
 """Where an entry is: table, number (0-based) in an array of tables, key. ``("line", 2, "momentum")``."""
@@ -78,10 +78,8 @@ class Source:
             raise self.error(f"[{_name(path)}] must be a table", path)
         for key in table:
             if key not in keys:
-                near = get_close_matches(key, keys, n=1)
-                hint = f"did you mean {near[0]!r}?" if near else f"known are {', '.join(keys)}"
                 where = f" in [{_name(path)}]" if path else ""
-                raise self.error(f"unknown key {key!r}{where}; {hint}", (*path, key))
+                raise self.error(f"unknown key {key!r}{where}; {nearest(key, keys)}", (*path, key))
         return table
 
     def tables(self, name: str, keys: Sequence[str]) -> tuple[Mapping[str, Any], ...]:
