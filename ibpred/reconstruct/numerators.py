@@ -1,0 +1,212 @@
+"""Numerators modulo a prime, from samples along one geometric sequence shared by all entries.
+
+At the points ``start * ratio**j`` a monomial takes the values ``start^m * (ratio^m)**j``: every
+numerator is a sum of exponentials in j. With a support given in advance its coefficients solve a
+Vandermonde system; a support much smaller than the degrees allow is found first, from the linear
+recurrence of a random combination of the entries (Ben-Or, Tiwari, STOC 1988; candidates for the
+monomials are tested as roots, as in Kaltofen, Lakshman, ISSAC 1988).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import flint
+import numpy as np
+from numpy.typing import NDArray
+
+from ibpred.reconstruct.factors import Factor, products
+from ibpred.reconstruct.modular import (
+    Residues,
+    add,
+    invert,
+    lagrange_coefficients,
+    matrix_product,
+    monomials,
+    multiply,
+)
+from ibpred.reconstruct.sampling import PATIENCE, Draws, UnluckyPrimeError
+from ibpred.reconstruct.support import shared_systems
+from ibpred.reconstruct.univariate import SURPLUS, polynomial, rational_function
+
+_FIRST_COUNT = 48
+
+
+@dataclass(frozen=True)
+class Numerators:
+    """Coefficients modulo a prime.
+
+    Attributes
+    ----------
+    coefficients
+        For each row one residue per monomial of its support.
+    supports
+        For each row indices into the universe of monomials.
+    fits
+        (rows,): whether the surplus samples agree.
+    """
+
+    coefficients: list[Residues]
+    supports: list[NDArray[np.int64]]
+    fits: NDArray[np.bool_]
+
+
+@dataclass(frozen=True)
+class _Sequence:
+    prime: int
+    start: Residues
+    ratio: Residues
+    values: Residues  # (rows, K): of the numerators
+    good: NDArray[np.bool_]  # (K,)
+
+    @property
+    def usable(self) -> int:
+        return int(self.good.sum())
+
+
+def _extend(
+    draws: Draws,
+    sequence: _Sequence,
+    count: int,
+    rows: NDArray[np.int64],
+    factors: tuple[Factor, ...],
+    powers: NDArray[np.int64],
+) -> _Sequence:
+    """Continue until `count` lanes are good."""
+    prime = sequence.prime
+    distinct, inverse = np.unique(powers, axis=0, return_inverse=True)
+    values, good = sequence.values, sequence.good
+    while int(good.sum()) < count:
+        old, need = len(good), count - int(good.sum())
+        steps = range(old, old + need)
+        table = np.array([[pow(int(g), j, prime) for j in steps] for g in sequence.ratio], dtype=np.uint64)
+        table = table.reshape(len(sequence.ratio), need)
+        points = multiply(sequence.start[:, None], table, prime)
+        found, usable = draws.at(points, prime, rows)
+        known, regular = products(factors, distinct, points, prime)
+        values = np.concatenate([values, multiply(found, known[inverse.reshape(-1)], prime)], axis=1)
+        good = np.concatenate([good, usable & regular])
+        if len(good) > PATIENCE * (int(good.sum()) + 4):
+            raise UnluckyPrimeError(prime, len(good), int(good.sum()))
+    return _Sequence(prime, sequence.start, sequence.ratio, values, good)
+
+
+def numerators(
+    draws: Draws,
+    prime: int,
+    rows: NDArray[np.int64],
+    factors: tuple[Factor, ...],
+    powers: NDArray[np.int64],
+    exponents: NDArray[np.int64],
+    candidates: Sequence[NDArray[np.int64]],
+) -> Numerators:
+    """Interpolate the numerators of all rows modulo a prime.
+
+    Parameters
+    ----------
+    rows
+        Entries of the sampler.
+    factors, powers
+        An entry times ``prod factors**powers`` is the polynomial to be found.
+    exponents
+        (monomials, variables): the universe of monomials.
+    candidates
+        For each row the monomials (indices, sorted) that may occur.
+
+    Raises
+    ------
+    UnluckyPrimeError
+        If bad lanes prevail.
+    """
+    draws.doing = "numerators"
+    empty = np.zeros((len(rows), 0), dtype=np.uint64)
+    start = draws.residues(draws.variables, prime)
+    ratio = draws.residues(draws.variables, prime)
+    sequence = _Sequence(prime, start, ratio, empty, np.zeros(0, dtype=np.bool_))
+    nodes = monomials(exponents, ratio[:, None], prime)[:, 0]
+    if len(np.unique(nodes)) != len(nodes):
+        raise UnluckyPrimeError(prime, len(nodes), 0)
+    supports = [np.asarray(support) for support in candidates]
+    count = _FIRST_COUNT
+    while True:
+        target = max((len(support) for support in supports), default=0) + SURPLUS
+        sequence = _extend(draws, sequence, min(count, target), rows, factors, powers)
+        capacity = sequence.usable - SURPLUS
+        if target <= sequence.usable:
+            break
+        wide = [r for r, support in enumerate(supports) if len(support) > capacity]
+        joint = _sparse_support(draws, sequence, wide, supports, nodes)
+        if joint is not None:
+            for r in wide:
+                supports[r] = np.intersect1d(supports[r], joint)
+        count = count * 4 // 3
+    coefficients: list[Residues] = [np.zeros(0, dtype=np.uint64)] * len(rows)
+    fits = np.zeros(len(rows), dtype=np.bool_)
+    scale = invert(monomials(exponents, start[:, None], prime)[:, 0], prime)
+    for support, members in shared_systems(supports, len(exponents), capacity):
+        solved, right = _solve(draws, sequence, nodes[support], members)
+        solved = multiply(solved, scale[support][None, :], prime)
+        for k, r in enumerate(members):
+            coefficients[r] = solved[k]
+            supports[r] = support
+        fits[members] = right
+    return Numerators(coefficients, supports, fits)
+
+
+def _sparse_support(
+    draws: Draws,
+    sequence: _Sequence,
+    wide: list[int],
+    supports: list[NDArray[np.int64]],
+    nodes: Residues,
+) -> NDArray[np.int64] | None:
+    """Joint support of the wide rows if the samples so far determine it."""
+    if not sequence.good.all():
+        return None
+    prime = sequence.prime
+    weights = draws.residues(len(wide), prime)[None, :]
+    combination = matrix_product(weights, sequence.values[wide], prime)[0]
+    length = len(combination)
+    power = polynomial([0] * length + [1], prime)
+    pair = rational_function(power, polynomial(combination, prime))
+    if pair is None:
+        return None
+    recurrence = pair[1]
+    terms = max(recurrence.degree(), pair[0].degree() + 1)
+    possible = np.unique(np.concatenate([supports[r] for r in wide]))
+    # prod (1 - v z) is reversed to prod (z - v), whose roots are the nodes of the support
+    total = np.zeros(len(possible), dtype=np.uint64)
+    for k in range(terms + 1):
+        coefficient = int(recurrence[k]) if k <= recurrence.degree() else 0
+        total = add(multiply(total, nodes[possible], prime), coefficient, prime)
+    joint = possible[total == 0]
+    return joint if len(joint) == terms else None
+
+
+def _solve(
+    draws: Draws, sequence: _Sequence, nodes: Residues, members: list[int]
+) -> tuple[Residues, NDArray[np.bool_]]:
+    """Coefficients (rows, nodes) of the exponentials, and whether surplus samples agree.
+
+    The system is made square by random nodes whose coefficients must come out zero; bad lanes are
+    unknowns that some of these conditions determine, the others check the solution.
+    """
+    prime = sequence.prime
+    length, support = len(sequence.good), len(nodes)
+    fillers = draws.residues(length - support, prime)
+    while len(np.unique(np.concatenate([nodes, fillers]))) != length:
+        fillers = draws.residues(length - support, prime)
+    inverse = lagrange_coefficients(np.concatenate([nodes, fillers]), prime)
+    bad = np.nonzero(~sequence.good)[0]
+    values = sequence.values[members].T.copy()
+    values[bad] = 0
+    solved = matrix_product(inverse, values, prime)
+    if len(bad):
+        chosen = slice(support, support + len(bad))
+        matrix = flint.nmod_mat(inverse[chosen][:, bad].tolist(), prime)
+        right = flint.nmod_mat(solved[chosen].tolist(), prime)
+        lost = np.array([[int(x) for x in row] for row in matrix.solve(-right).tolist()], dtype=np.uint64)
+        solved = add(solved, matrix_product(inverse[:, bad], lost, prime), prime)
+    fits = np.logical_not(np.any(solved[support:] != 0, axis=0))
+    return solved[:support].T.copy(), np.atleast_1d(fits)

@@ -1,0 +1,108 @@
+"""Sets of monomials: what a polynomial may contain, and how supports share one linear system."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from itertools import pairwise
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ibpred.errors import ReconstructionError
+
+LARGEST_SUPPORT = 2_000_000
+
+
+def monomials_within(degrees: Sequence[int], total: int, lowest: int = 0) -> NDArray[np.int64]:
+    """All exponents with e_i <= degrees[i] and lowest <= sum <= total, in lexicographic order.
+
+    Raises
+    ------
+    ReconstructionError
+        If there are more than can be handled.
+    """
+    found = np.zeros((1, 0), dtype=np.int64)
+    sums = np.zeros(1, dtype=np.int64)
+    for i, degree in enumerate(degrees):
+        rest = int(sum(degrees[i + 1 :]))
+        steps = np.arange(degree + 1)
+        new_sums = sums[:, None] + steps[None, :]
+        old, step = np.nonzero((new_sums <= total) & (new_sums + rest >= lowest))
+        if len(old) > LARGEST_SUPPORT:
+            raise ReconstructionError(
+                f"a numerator with degrees {tuple(degrees)} and total degree {total} has more than "
+                f"{LARGEST_SUPPORT} monomials; fix some variables to numbers or choose other masters"
+            )
+        found = np.concatenate([found[old], step[:, None]], axis=1)
+        sums = new_sums[old, step]
+    keep = (sums <= total) & (sums >= lowest)
+    return found[keep]
+
+
+def universe(
+    bounds: NDArray[np.int64],
+) -> tuple[NDArray[np.int64], list[NDArray[np.int64]]]:
+    """Union of the monomials within several degree bounds, and each one's share of it.
+
+    Parameters
+    ----------
+    bounds
+        (rows, variables + 1): degrees and total degree of each row; a negative total means empty.
+
+    Returns
+    -------
+    exponents, members
+        (monomials, variables); for each row the sorted indices of its monomials.
+    """
+    distinct, inverse = np.unique(bounds, axis=0, return_inverse=True)
+    sets = [monomials_within(tuple(int(x) for x in row[:-1]), int(row[-1])) for row in distinct]
+    variables = bounds.shape[1] - 1
+    if variables == 0:
+        exponents = np.zeros((1, 0), dtype=np.int64)
+        shares = [np.arange(len(part)) for part in sets]
+    else:
+        lengths = np.cumsum([0] + [len(part) for part in sets])
+        stacked = np.concatenate(sets) if sets else np.zeros((0, variables), dtype=np.int64)
+        exponents, index = np.unique(stacked, axis=0, return_inverse=True)
+        index = index.reshape(-1)
+        shares = [np.sort(index[a:b]) for a, b in pairwise(lengths)]
+    return exponents, [shares[i] for i in inverse.reshape(-1)]
+
+
+def shared_systems(
+    supports: Sequence[NDArray[np.int64]], size: int, capacity: int
+) -> list[tuple[NDArray[np.int64], list[int]]]:
+    """Put rows whose joint support stays within the capacity into one linear system each.
+
+    First fit, largest supports first.
+
+    Parameters
+    ----------
+    supports
+        Indices of monomials, each at most `capacity` many.
+    size
+        Number of monomials in all.
+
+    Returns
+    -------
+    list of (joint support, rows)
+    """
+    distinct: dict[bytes, list[int]] = {}
+    for row, support in enumerate(supports):
+        distinct.setdefault(support.tobytes(), []).append(row)
+    order = sorted(distinct.values(), key=lambda rows: (-len(supports[rows[0]]), rows[0]))
+    masks: list[NDArray[np.bool_]] = []
+    members: list[list[int]] = []
+    for rows in order:
+        support = supports[rows[0]]
+        for mask, inside in zip(masks, members, strict=True):
+            if int(mask.sum()) + int((~mask[support]).sum()) <= capacity:
+                mask[support] = True
+                inside.extend(rows)
+                break
+        else:
+            mask = np.zeros(size, dtype=np.bool_)
+            mask[support] = True
+            masks.append(mask)
+            members.append(list(rows))
+    return [(np.nonzero(mask)[0], inside) for mask, inside in zip(masks, members, strict=True)]
