@@ -1,0 +1,1 @@
+"""Sparse systems, their discovery and pruning, the recorded tape and its replay."""
