@@ -303,7 +303,7 @@ def zeta(n: int) -> Constant:
     value = Fraction(int(bernoulli.p), int(bernoulli.q))
     factorial = int(flint.fmpz.fac_ui(n))
     # zeta(2m) = (-1)^(m+1) B_2m (2 pi)^(2m) / (2 (2m)!)
-    factor = (-1) ** (n // 2 + 1) * value * Fraction(2**n, 2 * factorial)
+    factor: Fraction = (-1) ** (n // 2 + 1) * value * Fraction(2**n, 2 * factorial)
     power: Constant = Constant.generator("pi") ** n
     return power * factor
 
