@@ -1,0 +1,1 @@
+"""Differential equations of master integrals: derivation, checks, dimensionless ratios."""

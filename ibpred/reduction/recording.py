@@ -1,0 +1,277 @@
+"""From wanted quantities to a tape that expresses them in the masters, and to exact coefficients."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ibpred.elimination.discovery import Reduced, discover, reduced
+from ibpred.elimination.pruning import prune
+from ibpred.elimination.recording import record_pruned
+from ibpred.elimination.replaying import check_tape, replay
+from ibpred.elimination.system import SparseSystem
+from ibpred.elimination.tape import Tape
+from ibpred.errors import InputError, UnfinishedError
+from ibpred.exact.rational import Rational
+from ibpred.family.definition import FamilyDefinition, Powers
+from ibpred.identities.quantities import Quantity
+from ibpred.identities.rows import IntegralRows, write_rows
+from ibpred.identities.templates import ibp_templates
+from ibpred.progress import SILENT, Progress
+from ibpred.reconstruct.functions import Evidence, reconstruct
+from ibpred.reconstruct.sampling import Sampler
+from ibpred.reduction.masters import random_point
+from ibpred.reduction.seeds import GROWTH, plan_for
+from ibpred.reduction.system import sparse_system
+from ibpred.sectors.analysis import SectorAnalysis
+
+_NAMED = 5  # how many quantities an error message lists
+_ATTEMPTS = 3  # random points at which recording is tried
+
+
+@dataclass(frozen=True)
+class Effort:
+    """What a reduction took.
+
+    Attributes
+    ----------
+    rows, columns
+        Equations written down, and the unknowns in them.
+    multiply_adds
+        Of one replayed sample.
+    samples
+        Sample points used by the reconstruction.
+    """
+
+    rows: int
+    columns: int
+    multiply_adds: int
+    samples: int
+
+
+@dataclass(frozen=True)
+class Recorded:
+    """A validated tape for some quantities.
+
+    Attributes
+    ----------
+    masters
+        The masters, in the order given.
+    names
+        The quantities, for messages.
+    tape
+        The recorded elimination.
+    entries
+        For each output of the tape the indices of its quantity and its master.
+    rows, columns
+        Size of the system that the tape was recorded and validated on.
+    """
+
+    masters: tuple[Powers, ...]
+    names: tuple[str, ...]
+    tape: Tape
+    entries: tuple[tuple[int, int], ...]
+    rows: int
+    columns: int
+
+
+@dataclass(frozen=True)
+class TapeSampler:
+    """A tape as the black box of a reconstruction."""
+
+    tape: Tape
+
+    @property
+    def variables(self) -> tuple[str, ...]:
+        return self.tape.variables
+
+    @property
+    def entries(self) -> int:
+        return len(self.tape.outputs)
+
+    def __call__(
+        self, points: NDArray[np.uint64], prime: int
+    ) -> tuple[NDArray[np.uint64], NDArray[np.bool_]]:
+        """Values and good lanes at the points."""
+        return replay(self.tape, points, prime)
+
+
+Sampling = Callable[[Tape], Sampler]
+"""How a tape is sampled: `TapeSampler` in this thread, or something that shares the work out."""
+
+
+def record_quantities(
+    family: FamilyDefinition,
+    analysis: SectorAnalysis,
+    masters: Sequence[Powers],
+    quantities: Sequence[Quantity],
+    primes: Sequence[int],
+    seed: int,
+    progress: Progress = SILENT,
+) -> Recorded:
+    """Write identities deep enough that all quantities reduce to the masters, and record them.
+
+    Parameters
+    ----------
+    family, analysis
+        The family and its sectors.
+    masters
+        The masters, as `find_masters` gives them.
+    quantities
+        What is to be expressed in the masters.
+    primes, seed
+        Engine primes: the first one for the record, the second one to validate it; the seed of the random
+        points.
+    progress
+        Told about each depth that is tried.
+
+    Raises
+    ------
+    UnfinishedError
+        If the identities tried leave quantities that do not reduce to the masters alone, or no tape
+        agrees with a fresh elimination elsewhere.
+    """
+    templates = ibp_templates(family)
+    point = random_point(family, primes[0], seed)
+    wanted = [powers for quantity in quantities for powers, _ in quantity.terms]
+    known = {tuple(m) for m in masters}
+    progress.stage("identities")
+    tried: set[tuple[tuple[int, int, int], ...]] = set()
+    left: tuple[str, ...] = ()
+    for step, growth in enumerate(GROWTH):
+        plan = plan_for(family, analysis, wanted, growth)
+        signature = tuple((sector, d.dots, d.rank) for sector, d in sorted(plan.items()))
+        if signature in tried:
+            continue
+        tried.add(signature)
+        rows = write_rows(family, analysis, templates, plan, quantities, masters)
+        system = sparse_system(rows)
+        found = reduced(discover(system, point, primes[0]), _own_columns(rows))
+        left = _left_over(rows, found, quantities, known)
+        progress.advance(step + 1, len(GROWTH))
+        if not left:
+            tape = _record(family, system, _own_columns(rows), primes, seed)
+            return _labelled(rows, system, tape, masters, quantities)
+    more = f" and {len(left) - _NAMED} more" if len(left) > _NAMED else ""
+    raise UnfinishedError(
+        f"{family.name}: {', '.join(left[:_NAMED])}{more} did not reduce to the {len(known)} masters "
+        "with the deepest identities tried; check the list of masters"
+    )
+
+
+def _own_columns(rows: IntegralRows) -> range:
+    return range(rows.columns - rows.quantities, rows.columns)
+
+
+def _left_over(
+    rows: IntegralRows, found: Reduced, quantities: Sequence[Quantity], known: set[Powers]
+) -> tuple[str, ...]:
+    """Names of the quantities whose reduction contains more than masters."""
+    foreign = [
+        i for i, column in enumerate(found.masters) if tuple(rows.powers[column].tolist()) not in known
+    ]
+    bad = np.flatnonzero(found.values[:, foreign].any(axis=1))
+    return tuple(quantities[int(i)].name for i in bad)
+
+
+def _record(
+    family: FamilyDefinition, system: SparseSystem, columns: range, primes: Sequence[int], seed: int
+) -> Tape:
+    """Record at a random point, validate against the whole system at another point and prime."""
+    for attempt in range(_ATTEMPTS):
+        point = random_point(family, primes[0], seed + 2 * attempt)
+        elsewhere = random_point(family, primes[1], seed + 2 * attempt + 1)
+        tape = record_pruned(prune(system, discover(system, point, primes[0]), columns), point, primes[0])
+        if check_tape(system, tape, elsewhere, primes[1]):
+            return tape
+    raise UnfinishedError(
+        f"{family.name}: recorded at {_ATTEMPTS} random points, the elimination never agreed with a fresh "
+        f"one modulo {primes[1]}; try another seed"
+    )
+
+
+def _labelled(
+    rows: IntegralRows,
+    system: SparseSystem,
+    tape: Tape,
+    masters: Sequence[Powers],
+    quantities: Sequence[Quantity],
+) -> Recorded:
+    order = {tuple(powers): i for i, powers in enumerate(masters)}
+    first = rows.columns - rows.quantities
+    entries = []
+    for target, source in tape.outputs.tolist():
+        powers = tuple(rows.powers[tape.masters[source]].tolist())
+        entries.append((tape.wanted[target] - first, order[powers]))
+    return Recorded(
+        tuple(tuple(m) for m in masters),
+        tuple(quantity.name for quantity in quantities),
+        tape,
+        tuple(entries),
+        system.rows,
+        rows.columns,
+    )
+
+
+def coefficients(
+    family: FamilyDefinition,
+    recorded: Recorded,
+    primes: Sequence[int],
+    seed: int,
+    sampling: Sampling = TapeSampler,
+    progress: Progress = SILENT,
+) -> tuple[Mapping[tuple[int, int], Rational], Evidence | None, Effort]:
+    """Reconstruct the coefficients that a tape yields, the unit set to one.
+
+    Returns
+    -------
+    values
+        (quantity, master) -> coefficient in the internal ring, zeros left out.
+    evidence
+        Of the reconstruction; None where there was nothing to reconstruct.
+    effort
+        What it took.
+
+    Raises
+    ------
+    ReconstructionError
+        If the samples do not determine rational functions.
+    """
+    size = (recorded.rows, recorded.columns, recorded.tape.multiply_adds)
+    if not recorded.entries:
+        return {}, None, Effort(*size, 0)
+    report = _Report(progress)
+    found = reconstruct(sampling(recorded.tape), primes, seed, family.internal_ring, progress=report)
+    values = {entry: value for entry, value in zip(recorded.entries, found.entries, strict=True) if value}
+    return values, found.evidence, Effort(*size, found.evidence.samples)
+
+
+class _Report:
+    """Hands the reconstruction's steps on to a progress object."""
+
+    def __init__(self, progress: Progress) -> None:
+        self.progress = progress
+        self.step = ""
+
+    def __call__(self, step: str, samples: int) -> None:
+        if step != self.step:
+            self.step = step
+            self.progress.stage(f"samples: {step}")
+        self.progress.advance(samples, None)
+
+
+def check_masters(family: FamilyDefinition, masters: Sequence[Powers]) -> None:
+    """Check that masters are given and distinct.
+
+    Raises
+    ------
+    InputError
+        Otherwise.
+    """
+    if not masters:
+        raise InputError(f"{family.name}: no masters are given")
+    if len(set(masters)) != len(masters):
+        raise InputError(f"{family.name}: a master is listed twice")
