@@ -18,9 +18,8 @@ from ibpred.family.kinematics import (
 from ibpred.family.lines import Space, completed
 from ibpred.family.momenta import Form, Momenta, parse_equation
 from ibpred.family.polynomials import symanzik
-from ibpred.family.reading_graph import read_edges
+from ibpred.family.reading_graph import read_edges, read_joins, read_loop_names
 from ibpred.family.reading_lines import check_independent, read_lines
-from ibpred.family.routing import GraphError, loop_count
 from ibpred.family.source import Path, Source, parse_source
 
 SECTIONS = ("title", "dimension", "momenta", "kinematics", "line", "edge", "legs")
@@ -112,35 +111,10 @@ def _read_momenta(source: Source) -> tuple[tuple[str, ...], tuple[str, ...]]:
     if external is None:  # of a graph: all legs but the last, which depends on them
         external = tuple(source.integers(("legs",)))[:-1]
     if graph:
-        edges = source.data["edge"]
-        joins = [edge.get("joins") for edge in edges]
-        if all(_is_pair(pair) for pair in joins):  # else `read_edges` says what is wrong
-            loops = _graph_loops(source, loops, [(pair[0], pair[1]) for pair in joins])
+        loops = read_loop_names(source, read_joins(source), loops)
     if not loops:
         raise source.error('there is no loop momentum; write e.g. loop = ["k"]', ("momenta", "loop"))
     return loops, external
-
-
-def _graph_loops(
-    source: Source, loops: tuple[str, ...] | None, edges: Sequence[tuple[int, int]]
-) -> tuple[str, ...]:
-    try:
-        count = loop_count(edges)
-    except GraphError as error:
-        raise source.error(error.problem, ("edge", error.edge or 0)) from None
-    if count == 0:
-        raise source.error("the graph has no loop", ("edge", 0))
-    if loops is None:
-        return tuple(f"k{i + 1}" for i in range(count))
-    if len(loops) != count:
-        raise source.error(
-            f"the graph has {count} loops, but {len(loops)} loop momenta are named", ("momenta", "loop")
-        )
-    return loops
-
-
-def _is_pair(value: object) -> bool:
-    return isinstance(value, list) and len(value) == 2 and all(type(v) is int for v in value)
 
 
 def _read_invariants(source: Source) -> dict[str, int]:
