@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from ibpred.exact.labelling import Key
 from ibpred.family.definition import FamilyDefinition
 from ibpred.sectors.forms import line_forms
 from ibpred.sectors.mapping import SectorMap
-from ibpred.sectors.momenta import family_pair
+from ibpred.sectors.momenta import FamilyPair, family_pair
 from ibpred.sectors.parameters import all_sectors, family_terms
 from ibpred.sectors.scaleless import zero_sectors_of
-from ibpred.sectors.symmetry import find_map, self_maps
+from ibpred.sectors.symmetry import Place, momentum_map, scalar_map, self_maps
 
 
 @dataclass(frozen=True)
@@ -30,8 +31,11 @@ class SectorAnalysis:
         The other sectors in classes whose U and F agree up to a renaming of the lines; each class
         and the list of classes simplest first. The first of a class is its representative.
     maps
-        For each sector of a class but the first, one map to the representative; then self-maps
-        of the representatives (``source == target``) that generate their symmetries, none trivial.
+        For each sector of a class but the first, one map to a simpler sector of the class: a map
+        of momenta to the first one that such a map reaches (which no map of momenta takes further),
+        or else a scalar map to the representative. Then, for the sectors that no map of momenta
+        takes elsewhere, self-maps (``source == target``) that generate their symmetries, none
+        trivial.
     """
 
     family: str
@@ -72,18 +76,33 @@ def analyse(family: FamilyDefinition) -> SectorAnalysis:
     for sector in sectors:
         if sector not in zero:
             classes.setdefault(terms.canonical(sector).key, []).append(sector)
-    maps: list[SectorMap] = []
-    for representative, *others in classes.values():
-        for sector in others:
-            found = find_map(pair, terms, sector, terms, representative)
-            assert found is not None, "sectors of one class have equal canonical forms"
-            maps.append(found)
-    for representative, *_ in classes.values():
-        maps.extend(self_maps(pair, terms, representative))
+    between: list[SectorMap] = []
+    own: list[SectorMap] = []
+    for members in classes.values():
+        leaders: list[Place] = []  # sectors that no map of momenta takes elsewhere
+        for place in (Place(terms, sector) for sector in members):
+            found = _first_momentum_map(pair, place, leaders)
+            if found is None:
+                if leaders:
+                    found = scalar_map(pair, place, leaders[0])
+                    assert found is not None, "sectors of one class have equal canonical forms"
+                leaders.append(place)
+            if found is not None:
+                between.append(found)
+        for place in leaders:
+            own.extend(self_maps(pair, place))
     return SectorAnalysis(
         family=family.name,
         sectors=sectors,
         zero=zero,
         classes=tuple(tuple(members) for members in classes.values()),
-        maps=tuple(maps),
+        maps=(*between, *own),
     )
+
+
+def _first_momentum_map(pair: FamilyPair, place: Place, leaders: Sequence[Place]) -> SectorMap | None:
+    for leader in leaders:
+        found = momentum_map(pair, place, leader)
+        if found is not None:
+            return found
+    return None

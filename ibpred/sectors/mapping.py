@@ -4,14 +4,11 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
-from typing import Literal
 
 from ibpred.exact.rational import Rational
 
 Image = tuple[Rational, tuple[tuple[int, Rational], ...]]
 """(constant, ((line, coefficient), ...)): the polynomial ``constant + sum coefficient * D_line``."""
-
-MapKind = Literal["momentum", "scalar"]
 
 
 @dataclass(frozen=True)
@@ -53,7 +50,7 @@ class SectorMap:
     source: int
     target: int
     lines: tuple[int, ...]
-    kind: MapKind
+    kind: str
     images: tuple[Image, ...]
     loop_map: tuple[tuple[Fraction, ...], ...]
     leg_map: tuple[tuple[Fraction, ...], ...]

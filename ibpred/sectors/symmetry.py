@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 from ibpred.exact.labelling import Permutation, compose, group_elements, isomorphism
 from ibpred.sectors.closure import ChangeGroup
 from ibpred.sectors.forms import Matrix
@@ -11,42 +13,73 @@ from ibpred.sectors.order import lines_of
 from ibpred.sectors.parameters import FamilyTerms
 
 
-def find_map(
-    pair: FamilyPair, source_terms: FamilyTerms, source: int, target_terms: FamilyTerms, target: int
-) -> SectorMap | None:
-    """A map from one sector to another.
+@dataclass(frozen=True)
+class Place:
+    """A sector of a family.
 
-    Every renaming of lines that carries U and F of the source into those of the target is tried as
-    a change of momenta; where none is one, the first renaming gives a scalar map.
-
-    Parameters
+    Attributes
     ----------
-    pair
-        The families of the sectors.
-    source_terms, source
-        U and F of the source's family; its sector.
-    target_terms, target
-        The same for the target.
+    terms
+        U and F of the family.
+    sector
+        The sector.
+    """
+
+    terms: FamilyTerms
+    sector: int
+
+
+def find_map(pair: FamilyPair, source: Place, target: Place) -> SectorMap | None:
+    """A map from one sector to another: a change of momenta if there is one, else a scalar map.
 
     Returns
     -------
     SectorMap or None
         None if U and F do not agree under any renaming of lines.
     """
-    first = isomorphism(source_terms.canonical(source), target_terms.canonical(target))
+    return momentum_map(pair, source, target) or scalar_map(pair, source, target)
+
+
+def momentum_map(pair: FamilyPair, source: Place, target: Place) -> SectorMap | None:
+    """A change of momenta that carries one sector into another.
+
+    Every renaming of lines that carries U and F of the source into those of the target is tried.
+
+    Parameters
+    ----------
+    pair
+        The families of the sectors.
+    source, target
+        The sectors.
+
+    Returns
+    -------
+    SectorMap or None
+        None if no renaming of lines is a change of momenta.
+    """
+    first = isomorphism(source.terms.canonical(source.sector), target.terms.canonical(target.sector))
     if first is None:
         return None
-    source_lines, places = lines_of(source), lines_of(target)
-    for symmetry in group_elements(target_terms.symmetries(target), len(places)):
+    source_lines, places = lines_of(source.sector), lines_of(target.sector)
+    for symmetry in group_elements(target.terms.symmetries(target.sector), len(places)):
         lines = tuple(places[i] for i in compose(first, symmetry))
         for change in momentum_changes(pair, source_lines, lines):
             found = verified_images(pair, source_lines, lines, change)
             if found is not None:
-                return _momentum_map(pair, (source, target), lines, change, found)
-    return _scalar_map(pair, (source, target), tuple(places[i] for i in first))
+                return _momentum_map(pair, (source.sector, target.sector), lines, change, found)
+    return None
 
 
-def self_maps(pair: FamilyPair, terms: FamilyTerms, sector: int) -> tuple[SectorMap, ...]:
+def scalar_map(pair: FamilyPair, source: Place, target: Place) -> SectorMap | None:
+    """A renaming of lines that carries U and F of one sector into those of another, or None."""
+    first = isomorphism(source.terms.canonical(source.sector), target.terms.canonical(target.sector))
+    if first is None:
+        return None
+    places = lines_of(target.sector)
+    return _scalar_map(pair, (source.sector, target.sector), tuple(places[i] for i in first))
+
+
+def self_maps(pair: FamilyPair, place: Place) -> tuple[SectorMap, ...]:
     """Generators of the symmetries of a sector, none trivial.
 
     Changes of momenta come first and generate all that were found; scalar maps follow for
@@ -56,13 +89,12 @@ def self_maps(pair: FamilyPair, terms: FamilyTerms, sector: int) -> tuple[Sector
     ----------
     pair
         The family with itself.
-    terms
-        Its U and F.
-    sector
+    place
         The sector.
     """
+    sector = place.sector
     lines = lines_of(sector)
-    symmetries = terms.symmetries(sector)
+    symmetries = place.terms.symmetries(sector)
     size = len(lines)
     width = len(pair.source.family.loops) + len(pair.source.family.external)
     group = ChangeGroup(width)

@@ -14,7 +14,7 @@ from ibpred.family.definition import FamilyDefinition, Invariant, Line
 def vector(text: str, names: Sequence[str]) -> tuple[Fraction, ...]:
     """Coefficients of a sum such as ``k1-k2+2*p1``."""
     found = dict.fromkeys(names, Fraction(0))
-    for sign, number, name in re.findall(r"([+-]?)(?:(\d+)\*)?([A-Za-z]\w*)", text):
+    for sign, number, name in re.findall(r"([+-]?)(?:(\d+(?:/\d+)?)\*)?([A-Za-z]\w*)", text):
         found[name] += Fraction(f"{sign}{number or 1}")
     return tuple(found[name] for name in names)
 
@@ -35,9 +35,7 @@ def make_family(
     ks, ps, vs = loops.split(), external.split(), invariants.split()
     kinematic = ring(vs)
     gram = tuple(
-        tuple(
-            parse_rational(products.get(f"{a} {b}", products.get(f"{b} {a}", "0")), kinematic) for b in ps
-        )
+        tuple(parse_rational(products.get(f"{a} {b}", products.get(f"{b} {a}", "0")), kinematic) for b in ps)
         for a in ps
     )
     made = []
