@@ -15,6 +15,8 @@ from ibpred.errors import ExpressionError
 from ibpred.exact.grammar import MeaninglessError, parse
 from ibpred.exact.rational import Rational, Ring
 
+_HIGHEST_POWER = 20
+
 Term = tuple[str, ...]
 """Names of the momenta in a term, in the order of `Momenta.names`: none, one or two."""
 
@@ -84,6 +86,8 @@ class Form:
 
     def __pow__(self, exponent: int) -> Form:
         if self.is_number():
+            if abs(exponent) > _HIGHEST_POWER:
+                raise MeaninglessError(f"powers above {_HIGHEST_POWER} do not occur in a family")
             return self._of({(): self.coefficient() ** exponent})
         if exponent == 1:
             return self
