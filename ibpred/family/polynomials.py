@@ -46,26 +46,11 @@ class ParameterPolynomial:
     def __bool__(self) -> bool:
         return bool(self.terms)
 
-    def __add__(self, other: ParameterPolynomial) -> ParameterPolynomial:
-        total = dict(self.terms)
-        for exponents, value in other.terms.items():
-            total[exponents] = total[exponents] + value if exponents in total else value
-        return ParameterPolynomial(self.ring, self.lines, {e: v for e, v in total.items() if v})
-
     def restrict(self, sector: int) -> ParameterPolynomial:
         """Set the parameters of all lines outside the sector (a bit mask) to zero."""
         outside = [i for i in range(self.lines) if not sector >> i & 1]
         kept = {e: v for e, v in self.terms.items() if not any(e[i] for i in outside)}
         return ParameterPolynomial(self.ring, self.lines, kept)
-
-    def derivative(self, line: int) -> ParameterPolynomial:
-        """Partial derivative with respect to the parameter of a line."""
-        terms = {
-            (*e[:line], e[line] - 1, *e[line + 1 :]): value * e[line]
-            for e, value in self.terms.items()
-            if e[line]
-        }
-        return ParameterPolynomial(self.ring, self.lines, terms)
 
     def text(self) -> str:
         """Infix text with parameters ``x1, x2, ...`` numbered as the lines of the file."""
