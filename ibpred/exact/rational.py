@@ -14,8 +14,10 @@ from typing import Any, Union
 import flint
 
 from ibpred.errors import InputError
+from ibpred.exact.polynomial import Polynomial, constant_value, plain_terms, polynomial_text, residue
 
-Polynomial = Any  # flint.fmpz_mpoly; python-flint ships no usable type for it
+__all__ = ["Polynomial", "Rational", "Ring", "Scalar", "polynomial_text", "ring"]
+
 Scalar = Union[int, Fraction, "flint.fmpq", "flint.fmpz"]
 
 
@@ -143,7 +145,7 @@ class Rational:
         """
         if not self.is_constant():
             raise ValueError(f"{self} is not a constant")
-        return Fraction(int(_constant_term(self.numerator)), int(_constant_term(self.denominator)))
+        return Fraction(int(constant_value(self.numerator)), int(constant_value(self.denominator)))
 
     def variables(self) -> tuple[str, ...]:
         """The variables that the element depends on, in the ring's order."""
@@ -221,7 +223,7 @@ class Rational:
         return hash((self.ring.names, str(self)))
 
     def __reduce__(self) -> tuple[Any, ...]:
-        return _from_terms, (self.ring.names, _plain(self.numerator), _plain(self.denominator))
+        return _from_terms, (self.ring.names, plain_terms(self.numerator), plain_terms(self.denominator))
 
     # -- calculus and substitution ---------------------------------------------------------------
     def derivative(self, name: str) -> Rational:
@@ -290,10 +292,10 @@ class Rational:
         ZeroDivisionError
             If the denominator vanishes there.
         """
-        denominator = _modular(self.denominator, values, prime)
+        denominator = residue(self.denominator, values, prime)
         if denominator == 0:
             raise ZeroDivisionError(f"the denominator of {self} vanishes modulo {prime}")
-        return _modular(self.numerator, values, prime) * pow(denominator, -1, prime) % prime
+        return residue(self.numerator, values, prime) * pow(denominator, -1, prime) % prime
 
     # -- factors and text ------------------------------------------------------------------------
     def factors(self) -> tuple[Fraction, tuple[tuple[Polynomial, int], ...]]:
@@ -352,15 +354,6 @@ class Rational:
         return f"Rational({self})"
 
 
-def polynomial_text(polynomial: Polynomial) -> str:
-    """Infix text of an integer polynomial, ``^`` for powers, no spaces, in the ring's term order."""
-    return str(polynomial).replace(" ", "")
-
-
-def _plain(polynomial: Polynomial) -> dict[tuple[int, ...], int]:
-    return {tuple(map(int, e)): int(c) for e, c in polynomial.to_dict().items()}
-
-
 def _from_terms(
     names: tuple[str, ...], above: dict[tuple[int, ...], int], below: dict[tuple[int, ...], int]
 ) -> Rational:
@@ -376,12 +369,6 @@ def _ratio(value: Scalar) -> tuple[int, int]:
     if isinstance(value, flint.fmpq):
         return int(value.p), int(value.q)
     return int(value), 1
-
-
-def _constant_term(polynomial: Polynomial) -> int:
-    for coefficient in polynomial.coeffs():
-        return int(coefficient)
-    return 0
 
 
 def _reduced(ring_: Ring, numerator: Polynomial, denominator: Polynomial) -> Rational:
@@ -411,14 +398,3 @@ def _compose(polynomial: Polynomial, images: Sequence[Rational], target: Ring) -
                 term = term * powers[i, e]
         total = total + term
     return total
-
-
-def _modular(polynomial: Polynomial, values: Sequence[int], prime: int) -> int:
-    total = 0
-    for exponents, coefficient in polynomial.to_dict().items():
-        term = int(coefficient) % prime
-        for value, exponent in zip(values, exponents, strict=True):
-            if exponent:
-                term = term * pow(value, int(exponent), prime) % prime
-        total += term
-    return total % prime
