@@ -18,7 +18,6 @@ import flint
 import numpy as np
 from numpy.typing import NDArray
 
-from ibpred.errors import ReconstructionError
 from ibpred.exact.rational import Ring
 from ibpred.reconstruct.factors import Factor, factor, products
 from ibpred.reconstruct.lift import chinese_remainder, rational_number, rational_vector
@@ -29,7 +28,7 @@ from ibpred.reconstruct.modular import (
     multiply,
 )
 from ibpred.reconstruct.probe import Probe
-from ibpred.reconstruct.sampling import Draws, Line, UnluckyPrimeError
+from ibpred.reconstruct.sampling import Draws, InconsistentError, Line, UnluckyPrimeError
 from ibpred.reconstruct.support import monomials_within
 from ibpred.reconstruct.univariate import SURPLUS, polynomial, rational_functions, strip
 
@@ -246,10 +245,11 @@ def _unknown_factors(
         checks = (probes.first, probes.second)
         if all(_divides(item, power, probe, shape.row) for item, power in new for probe in checks):
             return [item for item, _ in new]
-    raise ReconstructionError(
+    raise InconsistentError(
+        probes.first.line.prime,
         f"part of the denominator of entry {int(probes.rows[shape.row])}, of degree {shape.degree} (per "
         f"variable at most {shape.limits}), was not lifted to rational numbers with {used} primes; "
-        "give more primes"
+        "give more primes",
     )
 
 

@@ -17,10 +17,11 @@ from ibpred.reconstruct.lift import chinese_remainder, rational_vector
 from ibpred.reconstruct.modular import LARGEST_BITS, matrix_product, monomials, multiply, residues
 from ibpred.reconstruct.numerators import numerators
 from ibpred.reconstruct.probe import Probe, equal_rows, probe
-from ibpred.reconstruct.sampling import Draws, Progress, Sampler, UnluckyPrimeError
+from ibpred.reconstruct.sampling import Draws, InconsistentError, Progress, Sampler, UnluckyPrimeError
 from ibpred.reconstruct.support import universe
 
 _CONFIRMING_POINTS = 2
+_ATTEMPTS = 3
 
 
 @dataclass(frozen=True)
@@ -42,8 +43,8 @@ class Evidence:
     data_primes
         The primes whose residues determined the coefficients.
     confirmed
-        For each entry the prime, not among those above, modulo which it was confirmed at
-        `points` random points.
+        For each entry the prime, none of those that its structure and coefficients came from,
+        modulo which it was confirmed at `points` random points.
     points
         Number of confirming points.
     """
@@ -94,7 +95,7 @@ def reconstruct(
         The black box.
     primes
         Distinct primes below ``2**50``, in the order in which they are used. Coefficients with n
-        digits in all need about n/14 primes, and three more are needed for structure and checks.
+        digits in all need about n/14 primes, and two more are needed for structure and checks.
     seed
         All random points follow from it: equal arguments give equal results.
     ring
@@ -118,29 +119,37 @@ def reconstruct(
     if len(set(primes)) != len(primes):
         raise ValueError("the primes of a reconstruction must be distinct")
     draws = Draws(sampler, seed, progress)
+    order = list(primes)
+    for _ in range(_ATTEMPTS - 1):
+        try:
+            return _attempt(draws, order, ring, degree_limit)
+        except InconsistentError as error:  # that prime may hide a degree: it goes to the end
+            order = [prime for prime in order if prime != error.prime] + [error.prime]
+    return _attempt(draws, order, ring, degree_limit)
+
+
+def _attempt(draws: Draws, primes: Sequence[int], ring: Ring, degree_limit: int) -> Reconstruction:
+    """One reconstruction with the structure taken modulo the first primes that agree."""
     first, second = _agreeing_probes(draws, primes, degree_limit)
     label, rows = equal_rows(np.stack([first.label, second.label], axis=1).astype(np.uint64))
     first, second = _restricted(first, rows), _restricted(second, rows)
     slices = _slices(draws, first, rows, degree_limit)
-    front = [first.line.prime, second.line.prime]
-    others = [prime for prime in primes if prime not in front]
-    own_ring = ring_of(sampler.variables)
-    found = structure(draws, Probes(rows, first, second, slices, tuple(front + others), own_ring))
+    front = (first.line.prime, second.line.prime)
+    others = tuple(prime for prime in primes if prime not in front)
+    own_ring = ring_of(draws.sampler.variables)
+    found = structure(draws, Probes(rows, first, second, slices, front + others, own_ring))
     lifted, data_primes, confirmed = _coefficients(draws, rows, found, front[0], others)
     entries = _assembled(lifted, found, own_ring, ring)
     degrees = first.degrees()
+    used_factors = [item for k, item in enumerate(found.factors) if (found.powers[:, k] > 0).any()]
     return Reconstruction(
         tuple(entries[i] for i in label),
         Evidence(
             samples=draws.samples,
             distinct=len(rows),
             degrees=tuple((int(degrees[i, 0]), int(degrees[i, 1])) for i in label),
-            factors=tuple(
-                polynomial_text(item.polynomial)
-                for k, item in enumerate(found.factors)
-                if (found.powers[:, k] > 0).any()
-            ),
-            structure_primes=(front[0], front[1]),
+            factors=tuple(polynomial_text(item.polynomial) for item in used_factors),
+            structure_primes=front,
             data_primes=tuple(data_primes),
             confirmed=tuple(int(confirmed[i]) for i in label),
             points=_CONFIRMING_POINTS,
@@ -224,7 +233,7 @@ def _coefficients(
             supports = [
                 np.array(sorted(state[r].terms), dtype=np.int64) if used else full[r] for r in pending
             ]
-            _add_prime(draws, rows, found, pending, prime, exponents, full, supports, state)
+            _add_prime(draws, rows, found, pending, prime, exponents, full, supports, state, first_prime)
         except UnluckyPrimeError:
             continue
         used.append(prime)
@@ -252,6 +261,7 @@ def _add_prime(
     full: list[NDArray[np.int64]],
     supports: list[NDArray[np.int64]],
     state: list[_Open],
+    structure_prime: int,
 ) -> None:
     """Interpolate the pending numerators modulo one more prime and lift what can be lifted."""
     powers = found.powers[pending]
@@ -264,9 +274,10 @@ def _add_prime(
         )
         if not retried.fits.all():
             entry = int(rows[pending[again[np.argmin(retried.fits)]]])
-            raise ReconstructionError(
+            raise InconsistentError(
+                structure_prime,
                 f"entry {entry} modulo {prime} is no polynomial of the degrees found along lines, after its "
-                "denominator was removed; the black box is not one rational function of its variables"
+                "denominator was removed; the black box is not one rational function of its variables",
             )
         for position, failed in enumerate(again):
             image.coefficients[failed] = retried.coefficients[position]

@@ -18,9 +18,9 @@ def chinese_remainder(residues: Sequence[int], modulus: int, new: Sequence[int],
 
 
 def rational_number(residue: int, modulus: int, margin_bits: int = MARGIN_BITS) -> tuple[int, int] | None:
-    """The simplest n/d congruent to the residue, or None if none is simple enough.
+    """The n/d congruent to the residue with the smallest ``|n| * d``, or None if it is not small.
 
-    Euclid's algorithm, stopped at its largest quotient (Monagan, "Maximal quotient rational
+    Euclid's algorithm, read off before its largest quotient (Monagan, "Maximal quotient rational
     reconstruction", ISSAC 2004): no bound has to be shared out between n and d beforehand.
 
     Returns
@@ -33,16 +33,16 @@ def rational_number(residue: int, modulus: int, margin_bits: int = MARGIN_BITS) 
         return 0, 1
     above, rest = modulus, residue
     cofactor_above, cofactor = 0, 1
-    limit = modulus >> margin_bits
+    best, size = None, (modulus >> margin_bits) + 1
     while rest:
-        if rest * abs(cofactor) <= limit:
-            if gcd(rest, cofactor) != 1:
-                return None
-            return (rest, cofactor) if cofactor > 0 else (-rest, -cofactor)
+        if rest * abs(cofactor) < size:
+            best, size = (rest, cofactor), rest * abs(cofactor)
         quotient = above // rest
         above, rest = rest, above - quotient * rest
         cofactor_above, cofactor = cofactor, cofactor_above - quotient * cofactor
-    return None
+    if best is None or gcd(*best) != 1:
+        return None
+    return best if best[1] > 0 else (-best[0], -best[1])
 
 
 def rational_vector(

@@ -136,10 +136,8 @@ def numerators(
         if target <= sequence.usable:
             break
         wide = [r for r, support in enumerate(supports) if len(support) > capacity]
-        joint = _sparse_support(draws, sequence, wide, supports, nodes)
-        if joint is not None:
-            for r in wide:
-                supports[r] = np.intersect1d(supports[r], joint)
+        for r, support in _narrowed(draws, sequence, wide, supports, nodes):
+            supports[r] = support
         count = count * 4 // 3
     coefficients: list[Residues] = [np.zeros(0, dtype=np.uint64)] * len(rows)
     fits = np.zeros(len(rows), dtype=np.bool_)
@@ -154,34 +152,50 @@ def numerators(
     return Numerators(coefficients, supports, fits)
 
 
-def _sparse_support(
+def _narrowed(
     draws: Draws,
     sequence: _Sequence,
     wide: list[int],
     supports: list[NDArray[np.int64]],
     nodes: Residues,
-) -> NDArray[np.int64] | None:
-    """Joint support of the wide rows if the samples so far determine it."""
+) -> list[tuple[int, NDArray[np.int64]]]:
+    """Wide rows whose supports the samples so far determine: all of them jointly, or one by one."""
     if not sequence.good.all():
-        return None
+        return []
     prime = sequence.prime
     weights = draws.residues(len(wide), prime)[None, :]
     combination = matrix_product(weights, sequence.values[wide], prime)[0]
-    length = len(combination)
-    power = polynomial([0] * length + [1], prime)
-    pair = rational_function(power, polynomial(combination, prime))
+    possible = np.unique(np.concatenate([supports[r] for r in wide]))
+    joint = _sparse_support(combination, possible, nodes, prime)
+    if joint is not None:
+        return [(r, np.intersect1d(supports[r], joint)) for r in wide]
+    found = []
+    trial = wide[int(draws.random.integers(len(wide)))]
+    if _sparse_support(sequence.values[trial], supports[trial], nodes, prime) is not None:
+        for r in wide:
+            alone = _sparse_support(sequence.values[r], supports[r], nodes, prime)
+            if alone is not None:
+                found.append((r, alone))
+    return found
+
+
+def _sparse_support(
+    values: Residues, possible: NDArray[np.int64], nodes: Residues, prime: int
+) -> NDArray[np.int64] | None:
+    """Support of one sum of exponentials, if the values determine its linear recurrence."""
+    power = polynomial([0] * len(values) + [1], prime)
+    pair = rational_function(power, polynomial(values, prime))
     if pair is None:
         return None
     recurrence = pair[1]
     terms = max(recurrence.degree(), pair[0].degree() + 1)
-    possible = np.unique(np.concatenate([supports[r] for r in wide]))
     # prod (1 - v z) is reversed to prod (z - v), whose roots are the nodes of the support
     total = np.zeros(len(possible), dtype=np.uint64)
     for k in range(terms + 1):
         coefficient = int(recurrence[k]) if k <= recurrence.degree() else 0
         total = add(multiply(total, nodes[possible], prime), coefficient, prime)
-    joint = possible[total == 0]
-    return joint if len(joint) == terms else None
+    support = possible[total == 0]
+    return support if len(support) == terms else None
 
 
 def _solve(

@@ -51,6 +51,14 @@ class UnluckyPrimeError(ReconstructionError):
         )
 
 
+class InconsistentError(ReconstructionError):
+    """Samples contradict the degrees or factors found modulo `prime`."""
+
+    def __init__(self, prime: int, problem: str) -> None:
+        self.prime = prime
+        super().__init__(problem)
+
+
 @dataclass(frozen=True)
 class Line:
     """The line ``base + t * direction`` modulo a prime, with samples on it.
