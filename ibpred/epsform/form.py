@@ -84,3 +84,23 @@ class EpsilonForm:
     transformation: Matrix
     inverse: Matrix
     tags: tuple[tuple[int, ...], ...]
+
+
+@dataclass(frozen=True)
+class Obstructed:
+    """The outcome where some block has no epsilon-form: what is in the way and what was reached.
+
+    Attributes
+    ----------
+    obstructions
+        One for each block in the way; for blocks that merely depend on such a block there is none.
+    rows
+        The rows that do not depend on an obstructed block: a closed subsystem.
+    solved
+        The epsilon-form of that subsystem, its functions in the order of `rows`; None where there
+        is no such row, or where the subsystem as a whole is obstructed too.
+    """
+
+    obstructions: tuple[Obstruction, ...]
+    rows: tuple[int, ...]
+    solved: EpsilonForm | None

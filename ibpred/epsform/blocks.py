@@ -1,0 +1,104 @@
+"""Records of the diagonal: a block brought to its epsilon-form, or the finding that it has none."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from fractions import Fraction
+
+from ibpred.epsform.form import Matrix
+from ibpred.epsform.matrices import Constants
+from ibpred.exact.rational import Rational
+
+Exponent = tuple[Fraction, Fraction]
+"""(a, b): the local exponent a + b eps."""
+
+
+@dataclass(frozen=True)
+class Block:
+    """A diagonal block in epsilon-form: ``I = T f``, ``f' = eps sum_l R_l dlog(letter_l)/dx f``.
+
+    Attributes
+    ----------
+    transformation, inverse
+        T and its inverse.
+    residues
+        R_l by the text of the letter; letters with a zero matrix are left out.
+    """
+
+    transformation: Matrix
+    inverse: Matrix
+    residues: Mapping[str, Constants]
+
+
+@dataclass(frozen=True)
+class Finding:
+    """Why a block has no epsilon-form.
+
+    Attributes
+    ----------
+    reason
+        A whole sentence with the point.
+    exponents
+        (singular point, local exponents) as text, as far as known.
+    """
+
+    reason: str
+    exponents: tuple[tuple[str, tuple[str, ...]], ...]
+
+
+def split_exponent(value: Rational) -> Exponent | None:
+    """(a, b) where the element is ``a + b eps``, None otherwise."""
+    if not value.is_polynomial():
+        return None
+    scale = int(value.denominator.leading_coefficient())
+    index = value.ring.index("eps")
+    found = {0: Fraction(0), 1: Fraction(0)}
+    for exponents, coefficient in value.numerator.to_dict().items():
+        power = int(exponents[index])
+        if power > 1 or sum(map(int, exponents)) != power:
+            return None
+        found[power] = Fraction(int(coefficient), scale)
+    return found[0], found[1]
+
+
+def exponent_text(exponent: Exponent) -> str:
+    """Text such as ``-1+2*eps``."""
+    a, b = exponent
+    if not b:
+        return str(a)
+    slope = "eps" if b == 1 else "-eps" if b == -1 else f"{b}*eps"
+    if not a:
+        return slope
+    return f"{a}{slope}" if b < 0 else f"{a}+{slope}"
+
+
+def irregular(point: str) -> str:
+    """The sentence for an irregular singular point."""
+    return (
+        f"the point {point} is an irregular singularity (no change of basis lowers the pole to order one), "
+        "so the solutions have an essential singularity there and no epsilon-form exists"
+    )
+
+
+def fractional(exponent: Fraction, point: str) -> str:
+    """The sentence for an exponent that is no integer at eps = 0."""
+    if exponent.denominator == 2:
+        return (
+            f"exponent {exponent} at {point}: a square root is needed, which functions rational in the "
+            "ratios do not offer; an epsilon-form may exist after a change of variable that removes the root"
+        )
+    return (
+        f"exponent {exponent} at {point}: a root of order {exponent.denominator} is needed, which functions "
+        "rational in the ratios do not offer"
+    )
+
+
+def moving(point: str) -> str:
+    """The sentence for a true singularity whose place depends on eps."""
+    return f"the point {point} depends on eps and is a true singularity, so no epsilon-form exists"
+
+
+def no_exponent(exponents: str, point: str) -> str:
+    """The sentence for exponents that are not linear in eps with rational coefficients."""
+    return f"the exponents at {point} are not of the form a + b*eps with rational a and b: {exponents}"

@@ -1,0 +1,280 @@
+"""The matrix, constant in x, that factors eps out of a Fuchsian system; and the choice among such matrices.
+
+Any epsilon-form stays one when its functions are combined with rational numbers, or when functions that do
+not couple are scaled by separate functions of eps. The choice made here, so that the functions are as pure
+as the differential equation can tell:
+
+- in each set of coupled functions the factors of eps that multiply the masters are polynomials in eps
+  without common factor (a factor common to a whole set cannot be seen in the differential equation);
+- relative to these factors, the admixtures of lower functions have no constant term in eps;
+- rational scales are such that each function starts as (primitive polynomial in eps) x (algebraic) x master.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from random import Random
+
+import flint
+
+from ibpred.epsform.blocks import Finding, moving
+from ibpred.epsform.content import conjugated, content
+from ibpred.epsform.form import Matrix
+from ibpred.epsform.intertwine import closure, intertwiners, representative
+from ibpred.epsform.matrices import Constants, inverse, lifted, part, product
+from ibpred.epsform.pencil import ModularMatrix
+from ibpred.epsform.places import Place, places_of
+from ibpred.epsform.sampling import Sample, reconstruct_in_eps
+from ibpred.epsform.structure import reachable
+from ibpred.errors import UnfinishedError
+from ibpred.exact.rational import Rational, Ring
+
+REFERENCE_EPS = (Fraction(1, 7), Fraction(2, 11), Fraction(3, 13), Fraction(5, 17))
+"""Numbers mu where the constant matrices ``R_l(mu)/mu`` are taken; the first generic one serves."""
+
+
+@dataclass(frozen=True)
+class Fuchsian:
+    """``A = sum_l R_l(eps) dlog(letter_l)/dx``."""
+
+    places: tuple[Place, ...]
+    residues: tuple[Matrix, ...]
+
+
+@dataclass(frozen=True)
+class Factored:
+    """The matrix C and the canonical residues: ``R_l C = eps C A_l``."""
+
+    matrix: Matrix
+    residues: Mapping[str, Constants]
+
+
+@dataclass(frozen=True)
+class Stuck:
+    """A block of rows whose coupling has no epsilon-form."""
+
+    block: int
+    finding: Finding
+
+
+def fuchsian(matrix: Matrix, blocks: Sequence[range], ring: Ring, name: str) -> Fuchsian | Stuck:
+    """Residues of a system with simple poles that vanishes at infinity."""
+    owner = {row: k for k, block in enumerate(blocks) for row in block}
+    places = places_of((e for row in matrix for e in row), ring, name)
+    residues = []
+    for place in places:
+        slope = place.slope()
+        rows = []
+        for i, row in enumerate(matrix):
+            values = []
+            for entry in row:
+                if not entry:
+                    values.append(ring.zero)
+                    continue
+                residue = place.divide(place.principal(entry, 1), slope)
+                if any(residue[1:]):
+                    return Stuck(owner[i], Finding(_conjugate(place.text()), ()))
+                if place.moves and residue[0]:
+                    return Stuck(owner[i], Finding(moving(place.text()), ()))
+                values.append(residue[0])
+            rows.append(tuple(values))
+        residues.append(tuple(rows))
+    return Fuchsian(places, tuple(residues))
+
+
+def _conjugate(point: str) -> str:
+    return (
+        f"the roots of {point} have different residues, so an odd letter with the square root of its "
+        "discriminant is needed: such letters are not supported yet"
+    )
+
+
+def factor_eps(
+    system: Fuchsian,
+    blocks: Sequence[range],
+    diagonal: Sequence[Matrix],
+    primes: Sequence[int],
+    seed: int,
+) -> Factored | Stuck:
+    """C(eps) with ``C^-1 R_l C = eps A_l``, or the first block of rows that cannot follow.
+
+    Parameters
+    ----------
+    system
+        Fuchsian, block lower triangular.
+    blocks
+        The rows of each diagonal block.
+    diagonal
+        For each block the inverse of the change of basis made so far (for the choice of scales).
+    primes, seed
+        For the modular samples.
+    """
+    ring = diagonal[0][0][0].ring
+    size = blocks[-1].stop
+    eps = ring.variable("eps")
+    scaled = [tuple(tuple(e / eps if e else e for e in row) for row in r) for r in system.residues]
+    pattern = [[any(r[i][j] for r in scaled) for j in range(size)] for i in range(size)]
+    support = closure(pattern, blocks)
+    if not scaled:
+        unit = tuple(tuple(Fraction(int(i == j)) for j in range(size)) for i in range(size))
+        return _chosen(lifted(ring, unit), {}, blocks, diagonal, ring)
+    filled = [(i, j) for i in range(size) for j in range(size) if pattern[i][j]]
+
+    def images(number: int, prime: int) -> list[ModularMatrix] | None:
+        values = [0] * len(ring.names)
+        values[ring.index("eps")] = number
+        try:
+            flat = [[e.modular(values, prime) if e else 0 for row in r for e in row] for r in scaled]
+        except ZeroDivisionError:
+            return None
+        return [flint.nmod_mat(size, size, f, prime) for f in flat]
+
+    reference = _reference(images, blocks, support, primes[0], seed)
+    if isinstance(reference, int):
+        return Stuck(reference, Finding(_no_constant(), ()))
+
+    def sampler(number: int, prime: int) -> Sample | None:
+        left, right = images(number, prime), images(_modular(reference, prime), prime)
+        if left is None or right is None:
+            return None
+        basis = intertwiners(left, right, blocks, support, seed)
+        if isinstance(basis, range):
+            return None
+        matrix = representative(basis, seed)
+        values = [int(matrix[i, j]) for i in range(size) for j in support[i]]
+        values += [int(a[place]) for a in right for place in filled]
+        return Sample(len(basis), tuple(values))
+
+    rebuilt = reconstruct_in_eps(sampler, primes, seed, ring, "the matrix that factors eps out")
+    source = iter(rebuilt.functions)
+    rows = [[ring.zero] * size for _ in range(size)]
+    for i in range(size):
+        for j in support[i]:
+            rows[i][j] = next(source)
+    residues: dict[str, Constants] = {}
+    for place in system.places:
+        table = [[Fraction(0)] * size for _ in range(size)]
+        for i, j in filled:
+            table[i][j] = next(source).to_fraction()
+        residues[place.text()] = tuple(map(tuple, table))
+    return _chosen(tuple(map(tuple, rows)), residues, blocks, diagonal, ring)
+
+
+def _no_constant() -> str:
+    return (
+        "the system is Fuchsian with exponents proportional to eps, but no change of basis that is constant "
+        "in the ratios factors eps out of the coupling of these rows to the rows before them"
+    )
+
+
+def _modular(number: Fraction, prime: int) -> int:
+    return number.numerator * pow(number.denominator, -1, prime) % prime
+
+
+def _reference(
+    images: object, blocks: Sequence[range], support: Sequence[Sequence[int]], prime: int, seed: int
+) -> Fraction | int:
+    """A reference value of eps that works at random eps, or the block that never does."""
+    random = Random(seed)
+    failures: list[int] = []
+    for number in REFERENCE_EPS:
+        right = images(_modular(number, prime), prime)  # type: ignore[operator]
+        left = images(random.randrange(2, prime), prime)  # type: ignore[operator]
+        if left is None or right is None:
+            continue
+        found = intertwiners(left, right, blocks, support, seed)
+        if not isinstance(found, range):
+            return number
+        failures.append(list(blocks).index(found))
+    if not failures:
+        raise UnfinishedError("every reference value of eps is a pole of the Fuchsian system")
+    return max(failures)
+
+
+def _chosen(
+    matrix: Matrix,
+    residues: Mapping[str, Constants],
+    blocks: Sequence[range],
+    diagonal: Sequence[Matrix],
+    ring: Ring,
+) -> Factored:
+    """The choice of scales and admixtures described at the top."""
+    size = len(matrix)
+    inverses = [inverse(part(matrix, block, block), ring) for block in blocks]
+    weights = [
+        content((e for row in product(inv, before, ring) for e in row), ring)
+        for inv, before in zip(inverses, diagonal, strict=True)
+    ]
+    links = [
+        {j for j in range(size) if j != i and any(a[i][j] for a in residues.values())} for i in range(size)
+    ]
+    for i in range(size):
+        for j in tuple(links[i]):
+            links[j].add(i)
+    for block in blocks:
+        links[block[0]] |= set(block)
+        for i in block:
+            links[i].add(block[0])
+    together = reachable([sorted(s) for s in links])
+    shared = [
+        content((weights[k] for k, b in enumerate(blocks) if b[0] in together[block[0]]), ring)
+        for block in blocks
+    ]
+    scale = {j: shared[k] for k, block in enumerate(blocks) for j in block}
+    matrix = tuple(tuple(e * scale[j] if e else e for j, e in enumerate(row)) for row in matrix)
+    change = _free_of_constants(matrix, blocks, ring)
+    signs = _rational_scales(matrix, blocks, diagonal, ring)
+    change = tuple(tuple(v * signs[j] for j, v in enumerate(row)) for row in change)
+    matrix = product(matrix, lifted(ring, change), ring)
+    return Factored(matrix, {text: conjugated(a, change) for text, a in residues.items()})
+
+
+def _free_of_constants(matrix: Matrix, blocks: Sequence[range], ring: Ring) -> Constants:
+    """K such that the admixtures in ``(diagonal of C)^-1 C K`` have no constant term in eps."""
+    size = len(matrix)
+    rows = []
+    for block in blocks:
+        inv = inverse(part(matrix, block, block), ring)
+        own = product(inv, part(matrix, block, range(size)), ring)
+        for i, row in zip(block, own, strict=True):
+            rows.append(
+                [Fraction(int(i == j)) if j in block else constant_term(e) for j, e in enumerate(row)]
+            )
+    flat = [flint.fmpq(v.numerator, v.denominator) for row in rows for v in row]
+    table = flint.fmpq_mat(size, size, flat).inv().tolist()
+    return tuple(tuple(Fraction(int(v.p), int(v.q)) for v in row) for row in table)
+
+
+def _rational_scales(
+    matrix: Matrix, blocks: Sequence[range], diagonal: Sequence[Matrix], ring: Ring
+) -> list[Fraction]:
+    """Factor of each column that makes the row of the inverse primitive, its first coefficient positive."""
+    scales: list[Fraction] = []
+    for block, before in zip(blocks, diagonal, strict=True):
+        own = product(inverse(part(matrix, block, block), ring), before, ring)
+        for row in own:
+            common = content(row, ring)
+            top, bottom = common.numerator.content(), common.denominator.content()
+            first = next(e for e in row if e)
+            sign = 1 if first.numerator.leading_coefficient() > 0 else -1
+            scales.append(Fraction(sign * int(top), int(bottom)))
+    return scales
+
+
+def constant_term(value: Rational) -> Fraction:
+    """Coefficient of eps^0 in the Laurent expansion at eps = 0 of a function of eps."""
+    if not value:
+        return Fraction(0)
+    index = value.ring.index("eps")
+
+    def series(polynomial: object) -> list[int]:
+        terms = {int(e[index]): int(c) for e, c in polynomial.to_dict().items()}  # type: ignore[attr-defined]
+        return [terms.get(k, 0) for k in range(max(terms) + 1)]
+
+    above, below = series(value.numerator), series(value.denominator)
+    order = next(k for k, c in enumerate(below) if c)
+    rest = flint.fmpq_poly(below[order:])
+    quotient = (flint.fmpq_poly(above) * rest.inverse_series_trunc(order + 1))[order]
+    return Fraction(int(quotient.p), int(quotient.q))

@@ -1,0 +1,211 @@
+"""The lattice at one point: pole of order one, exponents proportional to eps.
+
+A lattice is spanned by the columns of a basis over the power series at the point. It is first saturated
+until the system has a pole of order one there (Gérard, Levelt, Ann. Inst. Fourier 23 (1973) 157), then
+its generalised eigenspaces are moved by integer powers until the exponents ``a + b eps`` have a = 0. For
+generic eps the resulting lattice is unique, so the order of the steps is immaterial.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from enum import Enum
+from fractions import Fraction
+from itertools import count
+
+import flint
+
+from ibpred.epsform.blocks import Exponent
+from ibpred.epsform.pencil import (
+    Frame,
+    ModularMatrix,
+    Pencil,
+    column_space,
+    completed,
+    kernel,
+    leading_matrix,
+    pole_order,
+    sheared,
+    sheared_frame,
+)
+
+LARGEST_INTEGER = 120
+"""Exponents are recognised up to this size (steps at finite points push integers to infinity)."""
+LARGEST_SLOPE = 1000
+"""Numerator and denominator of b in ``a + b eps`` are recognised up to this size."""
+ROOT_ORDERS = (1, 2, 3, 4, 5, 6)
+"""Denominators of a that are recognised."""
+
+
+class Trouble(Enum):
+    """What can go wrong at a point."""
+
+    IRREGULAR = "irregular"
+    EXPONENT = "exponent"
+    FRACTION = "fraction"
+    MOVING = "moving"
+    CONJUGATE = "conjugate"
+    BUNDLE = "bundle"
+    CONSTANT = "constant"
+
+
+@dataclass(frozen=True)
+class Obstacle:
+    """A mathematical obstacle met in one sample; the same in every sample if it is true.
+
+    Attributes
+    ----------
+    trouble
+        Its kind.
+    point
+        Index of the place, or -1 for infinity or none.
+    detail
+        What the sentence needs: the fractional exponent, or the splitting type of the bundle.
+    exponents
+        (index of the place, exponents) for the points seen so far.
+    """
+
+    trouble: Trouble
+    point: int
+    detail: tuple[Fraction, ...]
+    exponents: tuple[tuple[int, tuple[Exponent, ...]], ...]
+
+
+class ObstacleError(Exception):
+    """Carries the kind of an obstacle from a single point up to the sample."""
+
+    def __init__(self, trouble: Trouble, detail: tuple[Fraction, ...] = ()) -> None:
+        super().__init__(trouble.value)
+        self.trouble = trouble
+        self.detail = detail
+
+
+def small_fraction(residue: int, prime: int, bound: int) -> Fraction | None:
+    """The fraction with numerator and denominator up to a bound, if there is one."""
+    above, rest, cofactor_above, cofactor = prime, residue % prime, 0, 1
+    while rest > bound:
+        quotient = above // rest
+        above, rest = rest, above - quotient * rest
+        cofactor_above, cofactor = cofactor, cofactor_above - quotient * cofactor
+    if abs(cofactor) > bound:
+        return None
+    return Fraction(rest, cofactor)
+
+
+def recognise(value: int, eps: int, prime: int) -> Exponent | None:
+    """(a, b) with ``a + b eps = value`` modulo the prime, simplest a first."""
+    slope = pow(eps, -1, prime)
+    for root in ROOT_ORDERS:
+        inverse = pow(root, -1, prime)
+        for size in range(LARGEST_INTEGER * root + 1):
+            if root > 1 and size % root == 0:
+                continue
+            for numerator in (size, -size) if size else (0,):
+                b = small_fraction((value - numerator * inverse) * slope, prime, LARGEST_SLOPE)
+                if b is not None:
+                    return Fraction(numerator, root), b
+    return None
+
+
+def spectrum(residue: ModularMatrix, eps: int) -> list[tuple[int, int, Exponent]]:
+    """Eigenvalues of a residue: (value, multiplicity, exponent).
+
+    Raises
+    ------
+    ObstacleError
+        Where an eigenvalue is not of the form a + b eps.
+    """
+    prime = int(residue.modulus())
+    found = []
+    total = 0
+    for root, multiplicity in residue.charpoly().roots():
+        exponent = recognise(int(root), eps, prime)
+        if exponent is None:
+            raise ObstacleError(Trouble.EXPONENT)
+        found.append((int(root), int(multiplicity), exponent))
+        total += int(multiplicity)
+    if total < residue.nrows():
+        raise ObstacleError(Trouble.EXPONENT)
+    return found
+
+
+def saturated(pencil: Pencil, frame: Frame, point: int) -> tuple[Pencil, Frame]:
+    """Lower the pole at a point to order one.
+
+    Raises
+    ------
+    ObstacleError
+        If the point is irregular.
+    """
+    order, steps = pole_order(pencil, point), 0
+    while order > 1:
+        if steps == pencil.size:
+            raise ObstacleError(Trouble.IRREGULAR)
+        image = column_space(leading_matrix(pencil, point))
+        basis = completed(image, pencil.size, pencil.prime)
+        pencil = sheared(pencil, basis, len(image), -1, point)
+        frame = sheared_frame(frame, basis, len(image), -1, point)
+        new = pole_order(pencil, point)
+        steps = steps + 1 if new == order else 0
+        order = new
+    return pencil, frame
+
+
+def residue_at(pencil: Pencil, point: int) -> ModularMatrix:
+    """Residue at a point with a pole of order at most one."""
+    if pole_order(pencil, point) == 0:
+        return flint.nmod_mat(pencil.size, pencil.size, pencil.prime)
+    return leading_matrix(pencil, point)
+
+
+def _moved(residue: ModularMatrix, roots: list[int]) -> tuple[ModularMatrix, int]:
+    """Basis adapted to the generalised eigenspaces of some eigenvalues (first) and of the others."""
+    size, prime = residue.nrows(), int(residue.modulus())
+    unit = flint.nmod_mat(size, size, [int(i == j) for i in range(size) for j in range(size)], prime)
+    power = unit
+    for root in roots:
+        factor = residue - unit * root
+        for _ in range(size):
+            power = power * factor
+    moved = kernel(power)
+    vectors = [*moved, *column_space(power)]
+    return flint.nmod_mat(size, size, [e for v in vectors for e in v], prime).transpose(), len(moved)
+
+
+def normalised(
+    pencil: Pencil, frame: Frame, point: int, eps: int
+) -> tuple[Pencil, Frame, tuple[Exponent, ...]]:
+    """Bring one point to a simple pole with exponents proportional to eps.
+
+    Returns
+    -------
+    pencil, frame
+        In the new basis.
+    exponents
+        Those of the saturated lattice, before the shifts, sorted, with multiplicity.
+
+    Raises
+    ------
+    ObstacleError
+        If the point is irregular or has exponents that no rational change of basis removes.
+    """
+    pencil, frame = saturated(pencil, frame, point)
+    first: tuple[Exponent, ...] = ()
+    for step in count():
+        residue = residue_at(pencil, point)
+        eigenvalues = spectrum(residue, eps)
+        if step == 0:
+            first = tuple(sorted(e for _, m, e in eigenvalues for _ in range(m)))
+            fractions = [a for a, _ in first if a.denominator > 1]
+            if fractions:
+                raise ObstacleError(Trouble.FRACTION, (min(fractions, key=lambda a: (abs(a), a)),))
+        for power in (1, -1):
+            roots = [value for value, _, (a, _) in eigenvalues if a * power > 0]
+            if roots:
+                basis, moved = _moved(residue, roots)
+                pencil = sheared(pencil, basis, moved, power, point)
+                frame = sheared_frame(frame, basis, moved, power, point)
+                break
+        else:
+            return pencil, frame, first
+    raise AssertionError("unreachable")
