@@ -1,7 +1,7 @@
 """Records to JSON data and back, driven by their type hints.
 
 Exact values are text: a `Fraction` is ``"1/3"``; a `Rational` is ``["d,t", "(d-3)/t"]``, its ring
-and its value. Dataclasses are objects keyed by field. Nothing is ever evaluated on the way back:
+and its value; a type with a static method ``read`` is its text. Dataclasses are objects keyed by field. Nothing is ever evaluated on the way back:
 the target type, known to the caller, decides how each piece of data is read.
 """
 
@@ -38,6 +38,8 @@ def to_data(value: Any) -> JsonData:
         return [",".join(value.ring.names), str(value)]
     if isinstance(value, Ring):
         return ",".join(value.names)
+    if hasattr(value, "read"):
+        return str(value)
     if dataclasses.is_dataclass(value) and not isinstance(value, type):
         return {f.name: to_data(getattr(value, f.name)) for f in dataclasses.fields(value)}
     if isinstance(value, Mapping):
@@ -87,6 +89,8 @@ def _read(kind: Any, data: Any) -> Any:
         if type(data) is not kind:
             raise TypeError(f"{data!r} is not of type {kind.__name__}")
         return data
+    if hasattr(kind, "read"):
+        return kind.read(data)
     if dataclasses.is_dataclass(kind):
         hints = _hints(kind)  # type: ignore[arg-type]
         return kind(**{f.name: _read(hints[f.name], data[f.name]) for f in dataclasses.fields(kind)})  # type: ignore[operator]

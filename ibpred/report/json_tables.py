@@ -2,11 +2,20 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping, Sequence
+from fractions import Fraction
 from typing import Any
 
+from ibpred.diffeq.ratios import DimensionlessSystem
+from ibpred.diffeq.system import DifferentialSystem
+from ibpred.epsform.form import EpsilonForm, Obstructed
+from ibpred.exact.polynomial import polynomial_text
+from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.polynomials import symanzik
+from ibpred.numerics.value import Value
 from ibpred.reduction.masters import Masters
+from ibpred.reduction.table import ReductionTable
 from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.order import lines_of
 
@@ -41,5 +50,111 @@ def masters_data(family: FamilyDefinition, masters: Masters) -> Data:
         "count": len(masters.masters),
         "masters": [
             {"powers": list(powers), "lines": sum(a > 0 for a in powers)} for powers in masters.masters
+        ],
+    }
+
+
+def reduction_data(family: FamilyDefinition, table: ReductionTable) -> Data:
+    """What `reduce` prints."""
+    return {
+        "family": family.name,
+        "masters": [list(powers) for powers in table.masters],
+        "reductions": [
+            {
+                "powers": list(powers),
+                "terms": [
+                    {"master": list(table.masters[index]), "coefficient": value.factored_text()}
+                    for index, value in combination
+                ],
+            }
+            for powers, combination in table.reductions.items()
+        ],
+    }
+
+
+def differential_data(system: DifferentialSystem) -> Data:
+    """What `diffeq` prints."""
+    return {
+        "family": system.family,
+        "masters": [list(powers) for powers in system.masters],
+        "variables": list(system.variables),
+        "matrices": {
+            name: [[row, column, value.factored_text()] for row, column, value in system.matrices[name]]
+            for name in system.variables
+        },
+    }
+
+
+def letter_text(letter: Rational) -> str:
+    """A letter with its constant term first: ``1+x``."""
+    terms = sorted(letter.numerator.to_dict().items(), key=lambda item: (sum(item[0]), item[0]))
+    context = letter.ring.context
+    texts = [polynomial_text(context.from_dict(dict([term]))) for term in terms]
+    return "+".join(texts).replace("+-", "-")
+
+
+def sparse(matrix: Sequence[Sequence[Fraction | Rational]]) -> list[list[Any]]:
+    """Nonzero entries as (row, column, text)."""
+    return [
+        [i, j, value.factored_text() if isinstance(value, Rational) else str(value)]
+        for i, row in enumerate(matrix)
+        for j, value in enumerate(row)
+        if value
+    ]
+
+
+def epsilon_data(
+    family: FamilyDefinition, system: DimensionlessSystem, outcome: EpsilonForm | Obstructed
+) -> Data:
+    """What `epsform` prints; where some block is obstructed, the rest of the system is given."""
+    form = outcome.solved if isinstance(outcome, Obstructed) else outcome
+    data: Data = {
+        "family": family.name,
+        "variables": list(system.ratios),
+        "ratios": dict(zip(system.ratios, system.definitions, strict=True)),
+        "letters": [],
+        "matrices": {},
+        "transformation": [],
+        "obstructions": [],
+    }
+    if form is not None:
+        data["letters"] = [letter_text(letter) for letter in form.letters]
+        data["matrices"] = {
+            letter_text(letter): sparse(matrix)
+            for letter, matrix in zip(form.letters, form.matrices, strict=True)
+        }
+        data["transformation"] = sparse(form.transformation)
+    if isinstance(outcome, Obstructed):
+        data["rows"] = list(outcome.rows)
+        data["obstructions"] = [
+            {
+                "rows": list(obstruction.rows),
+                "reason": obstruction.reason,
+                "operator": obstruction.operator,
+                "exponents": [[place, list(found)] for place, found in obstruction.exponents],
+            }
+            for obstruction in outcome.obstructions
+        ]
+    return data
+
+
+def values_data(
+    family: FamilyDefinition, point: Mapping[str, Fraction], digits: int, values: Sequence[Value]
+) -> Data:
+    """What `evaluate` prints."""
+    return {
+        "family": family.name,
+        "point": {name: str(value) for name, value in point.items()},
+        "digits": digits,
+        "integrals": [
+            {
+                "powers": list(value.powers),
+                "epsilon": {
+                    str(order): {"re": ball.re, "im": ball.im, "radius": ball.radius}
+                    for order, ball in sorted(value.epsilon.items())
+                },
+                "certified": value.certified,
+            }
+            for value in values
         ],
     }
