@@ -108,11 +108,13 @@ def _expansions(
     names = [pool.monomial(tuple(row)) for row in kinds.tolist()]
     ids = pool.numbers(dense, names)
     bounds = np.searchsorted(terms[:, 0], np.arange(2 * len(numerators) + 1))
+    # where a term is the source itself, both coefficients merge
+    own = bounds[2 * (terms[:, 0] // 2)]
+    merged = pool.numbers(dense + dense[own], names)
     found: list[Expansion] = []
     for g in range(len(numerators)):
-        at, begin, end = bounds[2 * g], bounds[2 * g + 1], bounds[2 * g + 2]
-        merged = pool.numbers(dense[begin:end] + dense[at], names)
-        found.append((-terms[begin:end, 1:], ids[begin:end], ids[at : at + 1], merged))
+        at, begin, end = bounds[2 * g : 2 * g + 3].tolist()
+        found.append((-terms[begin:end, 1:], ids[begin:end], ids[at : at + 1], merged[begin:end]))
     return found
 
 
