@@ -37,13 +37,9 @@ class Shared:
 def shared_options(command: C) -> C:
     """Add the family file and the shared options to a command; it receives one `Shared`."""
 
-    def gather(family: str, work: str | None, workers: int, as_json: bool, quiet: bool, /, **own: Any) -> Any:
+    def entry(family: str, work: str | None, workers: int, as_json: bool, quiet: bool, **own: Any) -> Any:
         shared = Shared(Path(family), Path(work) if work else None, workers, as_json, quiet)
         return command(shared, **own)
-
-    def entry(**given: Any) -> Any:
-        names = ("family", "work", "workers", "as_json", "quiet")
-        return gather(*(given.pop(name) for name in names), **given)
 
     entry.__doc__ = command.__doc__
     entry.__name__ = command.__name__

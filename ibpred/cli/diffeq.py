@@ -15,5 +15,5 @@ def diffeq(shared: Shared) -> None:
     from ibpred.report.text import differential_text
 
     with open_chain(shared) as chain:
-        data = differential_data(chain.differential())
+        data = differential_data(chain.derivation().system)
     emit(shared, data, lambda: differential_text(data))

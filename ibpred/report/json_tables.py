@@ -17,7 +17,6 @@ from ibpred.numerics.value import Value
 from ibpred.reduction.masters import Masters
 from ibpred.reduction.table import ReductionTable
 from ibpred.sectors.analysis import SectorAnalysis
-from ibpred.sectors.order import lines_of
 
 Data = dict[str, Any]
 

@@ -3,20 +3,34 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass
+from itertools import product
 from typing import TypeVar
 
 import ibpred
+from ibpred.diffeq.derive import Derivation, differential_system
+from ibpred.diffeq.ratios import DimensionlessSystem, dimensionless
 from ibpred.digest import digest
+from ibpred.elimination.tape import Tape
+from ibpred.epsform.factorise import factorise
+from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
 from ibpred.exact.codec import from_data, to_data
 from ibpred.exact.primes import first_primes
-from ibpred.family.definition import FamilyDefinition
+from ibpred.family.definition import FamilyDefinition, Powers
+from ibpred.family.signs import euclidean_signs
 from ibpred.progress import Progress
 from ibpred.reduction.masters import Masters, find_masters
+from ibpred.reduction.table import ReductionTable, reduce_integrals
+from ibpred.reduction.wanted import check_powers
+from ibpred.run.sampling import Meter, StoredSampler
 from ibpred.run.store import Store
 from ibpred.sectors.analysis import SectorAnalysis, analyse
 
 SEED = 20_260_301
 """Seed of every random choice of a run, so that the same input gives the same bytes."""
+
+PRIMES = 60
+"""Engine primes a run may use."""
 
 R = TypeVar("R")
 
@@ -42,6 +56,8 @@ class Chain:
         self.progress = progress
         self.workers = workers
         self.identity = digest(["family", ibpred.__version__, to_data(definition)])
+        self.meter = Meter()
+        self.primes = first_primes(PRIMES)
         self._analysis: SectorAnalysis | None = None
 
     def _kept(self, stage: str, kind: type[R], options: object, compute: Callable[[], R]) -> R:
@@ -62,10 +78,117 @@ class Chain:
 
     def masters(self) -> Masters:
         """The master integrals."""
-        (prime,) = first_primes(1)
+        prime = self.primes[0]
         return self._kept(
             "masters",
             Masters,
             None,
             lambda: find_masters(self.definition, self.analysis(), prime, SEED, progress=self.progress),
         )
+
+    def sampling(self, tape: Tape) -> StoredSampler:
+        """How the tapes of this run are sampled."""
+        return StoredSampler(tape, self.workers, self.store, self.meter)
+
+    def integrals_within(self, dots: int, rank: int) -> list[Powers]:
+        """All integrals of nonzero sectors with at most so many dots and so high a rank."""
+        count = len(self.definition.lines)
+        found: list[Powers] = []
+        for sector in self.analysis().nonzero:
+            lines = [i for i in range(count) if sector >> i & 1]
+            others = [i for i in range(count) if not sector >> i & 1]
+            for above in product(range(dots + 1), repeat=len(lines)):
+                if sum(above) > dots:
+                    continue
+                for below in product(range(rank + 1), repeat=len(others)):
+                    if sum(below) > rank:
+                        continue
+                    powers = [0] * count
+                    for line, extra in zip(lines, above, strict=True):
+                        powers[line] = 1 + extra
+                    for line, power in zip(others, below, strict=True):
+                        powers[line] = -power
+                    found.append(tuple(powers))
+        return found
+
+    def reduction(self, wanted: tuple[Powers, ...]) -> ReductionTable:
+        """Integrals in terms of the masters."""
+        for powers in wanted:
+            check_powers(self.definition, powers)
+        masters = self.masters().masters
+        return self._kept(
+            "reduction",
+            ReductionTable,
+            wanted,
+            lambda: reduce_integrals(
+                self.definition,
+                self.analysis(),
+                wanted,
+                masters,
+                self.primes,
+                SEED,
+                self.sampling,
+                self.progress,
+            ),
+        )
+
+    def derivation(self) -> Derivation:
+        """The differential equations of the masters, with their evidence."""
+        masters = self.masters().masters
+        return self._kept(
+            "differential equation",
+            Derivation,
+            None,
+            lambda: differential_system(
+                self.definition,
+                self.analysis(),
+                masters,
+                self.primes,
+                SEED,
+                self.sampling,
+                self.progress,
+            ),
+        )
+
+    def signs(self) -> dict[str, int]:
+        """Signs of the invariants where the ratios are positive: the Euclidean region's, if there is one."""
+        found = euclidean_signs(self.definition)
+        if found is None:
+            return {invariant.name: 1 for invariant in self.definition.invariants}
+        return found
+
+    def dimensionless(self) -> DimensionlessSystem:
+        """The differential equations in dimensionless ratios and eps."""
+        return dimensionless(self.derivation().system, self.signs())
+
+    def connection(self) -> Connection:
+        """What is brought to epsilon-form."""
+        system = self.dimensionless()
+        name = self.definition.name
+        labels = tuple(f"{name}({','.join(map(str, m))})" for m in self.masters().masters)
+        return Connection(system.ratios, system.ring, system.matrices, system.blocks, labels)
+
+    def epsilon_form(self) -> EpsilonForm | Obstructed:
+        """The epsilon-factorised form, or what stands in its way."""
+        connection = self.connection()
+        stored = self._kept(
+            "epsilon-form",
+            _Outcome,
+            None,
+            lambda: _outcome(factorise(connection, self.primes, SEED, self.progress)),
+        )
+        found = stored.form if stored.form is not None else stored.obstructed
+        assert found is not None
+        return found
+
+
+@dataclass(frozen=True)
+class _Outcome:
+    form: EpsilonForm | None
+    obstructed: Obstructed | None
+
+
+def _outcome(found: EpsilonForm | Obstructed) -> _Outcome:
+    if isinstance(found, EpsilonForm):
+        return _Outcome(found, None)
+    return _Outcome(None, found)
