@@ -221,7 +221,6 @@ def reduced(discovery: Discovery, wanted: Sequence[int]) -> Reduced:
     place, start, column, value = substitute_back(
         discovery.columns,
         marked,
-        discovery.pivot,
         discovery.pivot_row,
         discovery.start,
         discovery.column,

@@ -15,7 +15,7 @@ from ibpred.elimination.system import CoefficientTable, SparseSystem
 from ibpred.elimination.table import check_points, check_prime, evaluate_plan, plan_table
 from ibpred.elimination.tape import Tape
 from ibpred.errors import UnfinishedError
-from ibpred.kernels.record import GOOD, INPUT, INVERSE, SUM, UNIT, record_elimination
+from ibpred.kernels.record import INPUT, INVERSE, SUM, UNIT, Bounds, Recorded, record_elimination
 from ibpred.kernels.schedule import assign_slots, live_levels
 from ibpred.kernels.sparse import needed_rows, substitute_back
 
@@ -24,11 +24,7 @@ from ibpred.kernels.sparse import needed_rows, substitute_back
 class _Values:
     """The numbered values of one recording and where the outputs are."""
 
-    kind: NDArray[np.uint8]
-    scale: NDArray[np.int32]
-    start: NDArray[np.int64]
-    left: NDArray[np.int32]
-    right: NDArray[np.int32]
+    recorded: Recorded
     level: NDArray[np.int32]
     masters: tuple[int, ...]
     outputs: NDArray[np.int32]
@@ -38,7 +34,9 @@ class _Values:
     def cost(self) -> int:
         """Terms and factors of the live values."""
         live = self.level >= 0
-        return int(np.diff(self.start)[live].sum() + np.count_nonzero(self.scale[live] >= 0))
+        return int(
+            np.diff(self.recorded.start)[live].sum() + np.count_nonzero(self.recorded.scale[live] >= 0)
+        )
 
 
 def second_point(point: Sequence[int], prime: int) -> tuple[int, ...]:
@@ -122,7 +120,6 @@ def _record_rows(system: SparseSystem, wanted: Sequence[int], point: Sequence[in
     back = substitute_back(
         found.columns,
         marked,
-        found.pivot,
         found.pivot_row,
         found.start,
         found.column,
@@ -133,7 +130,6 @@ def _record_rows(system: SparseSystem, wanted: Sequence[int], point: Sequence[in
         raise UnfinishedError(
             "the rows to be recorded depend on each other at this point; take another random point"
         )
-    bounds = _bounds(system, found, marked, back)
     pivots = np.zeros(system.columns, np.uint8)
     pivots[found.pivot[marked.astype(np.bool_)]] = 1
     result = record_elimination(
@@ -143,26 +139,25 @@ def _record_rows(system: SparseSystem, wanted: Sequence[int], point: Sequence[in
         system.coefficient,
         inputs,
         pivots,
-        *bounds,
+        _bounds(system, found, marked, back),
         float(prime),
     )
-    status, _, kind, scale, start, left, right, place, solved_start, solved_column, solved_node = result
-    if status != GOOD:
+    if not result.lucky:
         raise UnfinishedError("a value vanishes at one of two points; take another random point")
     names: list[tuple[int, int, int]] = []
     for i, c in enumerate(asked):
-        k = place[c]
+        k = result.solved_place[c]
         if k < 0:
             names.append((i, int(c), -1))
         else:
-            for e in range(solved_start[k + 1] - 1, solved_start[k] - 1, -1):
-                names.append((i, int(solved_column[e]), int(solved_node[e])))
+            for e in range(result.solved_start[k + 1] - 1, result.solved_start[k] - 1, -1):
+                names.append((i, int(result.solved_column[e]), int(result.solved_node[e])))
     masters = tuple(sorted({c for _, c, _ in names}))
     number = {c: k for k, c in enumerate(masters)}
     outputs = np.array([(i, number[c]) for i, c, _ in names], np.int32).reshape(-1, 2)
     nodes = np.array([n for _, _, n in names], np.int32)
-    level = live_levels(kind, scale, start, left, right, nodes[nodes >= 0])
-    return _Values(kind, scale, start, left, right, level, masters, outputs, nodes)
+    level = live_levels(result.kind, result.scale, result.start, result.left, result.right, nodes[nodes >= 0])
+    return _Values(result, level, masters, outputs, nodes)
 
 
 def _canonical(inputs: NDArray[np.float64], prime: int) -> NDArray[np.float64]:
@@ -173,8 +168,7 @@ def _canonical(inputs: NDArray[np.float64], prime: int) -> NDArray[np.float64]:
 
 def _bounds(
     system: SparseSystem, found: Discovery, marked: NDArray[np.uint8], back: tuple[Any, ...]
-) -> tuple[int, int, int, int, int]:
-    """Bounds on values, terms, terms of one row, stored entries, solved entries."""
+) -> Bounds:
     place, solved_start, solved_column, _ = back
     entries = len(system.column)
     forward = entries + found.multiply_adds
@@ -190,25 +184,24 @@ def _bounds(
     cells = len(found.used) + 2 * found.rank + len(found.column)
     nodes = len(system.table.values) + cells + len(solved_column) + terms // 5 + 16
     items = int(max(per_row.max(initial=0), forward if found.rank else 0)) + 16
-    return nodes, terms, items, len(found.column) + 1, len(solved_column) + 1
+    return Bounds(nodes, terms, items, len(found.column) + 1, len(solved_column) + 1)
 
 
 def _assemble(table: CoefficientTable, wanted: Sequence[int], values: _Values) -> Tape:
+    made = values.recorded
     live = np.nonzero(values.level >= 0)[0]
-    kind, level = values.kind[live], values.level[live]
+    kind, level = made.kind[live], values.level[live]
     rank = np.where(kind == INPUT, 0, 2 * level + np.where(kind == INVERSE, 1, 2))
     order = live[np.argsort(rank, kind="stable")].astype(np.int32)
     real = values.output_node[values.output_node >= 0]
-    slot, slots = assign_slots(
-        order, values.kind, values.scale, values.start, values.left, values.right, real
-    )
-    ordered_kind = values.kind[order]
+    slot, slots = assign_slots(order, made.kind, made.scale, made.start, made.left, made.right, real)
+    ordered_kind = made.kind[order]
     inputs = order[ordered_kind == INPUT]
     inverses = order[ordered_kind == INVERSE]
     sums = order[ordered_kind == SUM]
     levels = int(values.level[order].max(initial=0)) + 1
-    entry, row = _entries(values.start, sums)
-    left, right = values.left[entry], values.right[entry]
+    entry, row = _entries(made.start, sums)
+    left, right = made.left[entry], made.right[entry]
     unit = left == UNIT
     plan = plan_table(
         CoefficientTable(table.variables, table.exponents, np.asarray(table.values, np.int64)[inputs])
@@ -228,10 +221,10 @@ def _assemble(table: CoefficientTable, wanted: Sequence[int], values: _Values) -
         input_value=plan.value,
         level_start=_starts(values.level[sums], levels),
         batch_start=_starts(values.level[inverses], levels),
-        inverse_source=slot[values.scale[inverses]],
+        inverse_source=slot[made.scale[inverses]],
         inverse_target=slot[inverses],
         target=slot[sums],
-        scale=np.where(values.scale[sums] >= 0, slot[values.scale[sums]], -1).astype(np.int32),
+        scale=np.where(made.scale[sums] >= 0, slot[made.scale[sums]], -1).astype(np.int32),
         unit_start=_starts(row[unit], len(sums)),
         unit=slot[right[unit]],
         product_start=_starts(row[~unit], len(sums)),

@@ -9,12 +9,10 @@ from numpy.typing import NDArray
 
 from ibpred.elimination.discovery import discover, reduced
 from ibpred.elimination.system import SparseSystem
-from ibpred.elimination.table import aligned_blocks, check_points, check_prime, load_points
+from ibpred.elimination.table import aligned_blocks, check_points, check_prime
 from ibpred.elimination.tape import Tape
-from ibpred.kernels.arithmetic import from_residues, to_residues
-from ibpred.kernels.coefficients import lanes_monomials, lanes_polynomials
-from ibpred.kernels.lanes import LANES
-from ibpred.kernels.replay import lanes_replay
+from ibpred.kernels.arithmetic import to_residues
+from ibpred.kernels.replay import replay_batches
 
 
 def replay(
@@ -44,42 +42,34 @@ def replay(
         If the modulus is no such prime or the points do not fit the variables.
     """
     prime = check_prime(prime)
-    modulus = float(prime)
     balanced = check_points(points, len(tape.variables), prime)
     count = balanced.shape[1]
-    good = np.ones(count, np.bool_)
-    found = np.ones((len(tape.outputs), count), np.float64)
-    scratch = aligned_blocks(tape.blocks)
-    slots = aligned_blocks(tape.slots)
-    factor = to_residues(tape.input_value, prime)
-    computed = np.nonzero(tape.output_slot >= 0)[0]
-    where = tape.output_slot[computed]
-    lane_good = np.empty(LANES, np.bool_)
-    for first in range(0, count, LANES):
-        load_points(scratch, balanced, first)
-        lanes_monomials(scratch, tape.monomial_products, modulus)
-        lanes_polynomials(scratch, tape.input_start, tape.input_monomial, factor, slots, 0, modulus)
-        lane_good[:] = True
-        lanes_replay(
-            slots,
-            tape.level_start,
-            tape.target,
-            tape.scale,
-            tape.unit_start,
-            tape.unit,
-            tape.product_start,
-            tape.product,
-            tape.batch_start,
-            tape.inverse_source,
-            tape.inverse_target,
-            lane_good,
-            modulus,
-        )
-        width = min(LANES, count - first)
-        found[computed, first : first + width] = slots.reshape(-1, LANES)[where, :width]
-        good[first : first + width] = lane_good[:width]
-    values: NDArray[np.uint64] = from_residues(found.reshape(-1), prime)
-    return values.reshape(found.shape), good
+    values = np.empty((len(tape.outputs), count), np.uint64)
+    good = np.empty(count, np.bool_)
+    replay_batches(
+        balanced,
+        aligned_blocks(tape.blocks),
+        aligned_blocks(tape.slots),
+        tape.monomial_products,
+        tape.input_start,
+        tape.input_monomial,
+        to_residues(tape.input_value, prime),
+        tape.level_start,
+        tape.target,
+        tape.scale,
+        tape.unit_start,
+        tape.unit,
+        tape.product_start,
+        tape.product,
+        tape.batch_start,
+        tape.inverse_source,
+        tape.inverse_target,
+        tape.output_slot,
+        values,
+        good,
+        float(prime),
+    )
+    return values, good
 
 
 def check_tape(system: SparseSystem, tape: Tape, point: Sequence[int], prime: int) -> bool:

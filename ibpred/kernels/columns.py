@@ -1,4 +1,7 @@
-"""A set of column numbers that gives its largest member: bits in three levels of 64-bit words."""
+"""A set of column numbers that gives its largest member: bits in three levels of 64-bit words.
+
+`insert`, `remove` and `largest` take pointers to the levels.
+"""
 
 from __future__ import annotations
 
@@ -22,8 +25,8 @@ def empty_columns(columns: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:  #
     return bottom, middle, top
 
 
-@njit(cache=True, inline="always")
-def insert(bottom: np.ndarray, middle: np.ndarray, top: np.ndarray, column: int) -> None:  # type: ignore[type-arg]
+@njit(cache=True)
+def insert(bottom: Any, middle: Any, top: Any, column: Any) -> None:
     """Add a column that is not in the set."""
     c = np.uint64(column)
     six, mask = np.uint64(6), np.uint64(63)
@@ -36,8 +39,8 @@ def insert(bottom: np.ndarray, middle: np.ndarray, top: np.ndarray, column: int)
     bottom[word] |= ONE << (c & mask)
 
 
-@njit(cache=True, inline="always")
-def remove(bottom: np.ndarray, middle: np.ndarray, top: np.ndarray, column: int) -> None:  # type: ignore[type-arg]
+@njit(cache=True)
+def remove(bottom: Any, middle: Any, top: Any, column: Any) -> None:
     """Take away a column that is in the set."""
     c = np.uint64(column)
     six, mask = np.uint64(6), np.uint64(63)
@@ -50,8 +53,8 @@ def remove(bottom: np.ndarray, middle: np.ndarray, top: np.ndarray, column: int)
             top[upper >> six] ^= ONE << (upper & mask)
 
 
-@njit(cache=True, inline="always")
-def largest(bottom: np.ndarray, middle: np.ndarray, top: np.ndarray, below: int) -> Any:  # type: ignore[type-arg]
+@njit(cache=True)
+def largest(bottom: Any, middle: Any, top: Any, below: Any) -> Any:
     """The largest column, -1 for the empty set; no member may exceed `below`."""
     word = np.int64(below) >> 18
     while word >= 0 and top[word] == ZERO:

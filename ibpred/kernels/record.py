@@ -7,6 +7,7 @@ probability below (n D / p)**2 (Schwartz, Zippel), and a finished tape is valida
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -15,6 +16,7 @@ from numba import njit
 from ibpred.kernels.arithmetic import invert, multiply
 from ibpred.kernels.columns import empty_columns, insert, largest, remove
 from ibpred.kernels.lanes import LONGEST_SUM
+from ibpred.kernels.memory import pointer
 
 INPUT, SUM, INVERSE = 0, 1, 2
 UNIT = -1
@@ -35,9 +37,11 @@ def canonical(r: float, p: float) -> float:
 
 
 @njit(cache=True)
-def find(first: float, second: float, table: Any, value: Any) -> Any:
-    """Place in the hash table of this pair of values, or of the free place for it."""
-    mask = np.uint64(table.shape[0] - 1)
+def find(first: Any, second: Any, table: Any, mask: Any, value: Any) -> Any:
+    """Place in the hash table of this pair of values, or of the free place for it.
+
+    table, value: pointers; `mask` is the table's size, a power of two, less one.
+    """
     mixed = np.uint64(np.int64(first)) * np.uint64(0x9E3779B97F4A7C15)
     mixed ^= mixed >> np.uint64(29)
     mixed = (mixed + np.uint64(np.int64(second))) * np.uint64(0xBF58476D1CE4E5B9)
@@ -45,7 +49,7 @@ def find(first: float, second: float, table: Any, value: Any) -> Any:
     place = mixed & mask
     while table[place] >= 0:
         node = table[place]
-        if value[node, 0] == first and value[node, 1] == second:
+        if value[2 * node] == first and value[2 * node + 1] == second:
             break
         place = (place + np.uint64(1)) & mask
     return np.int64(place)
@@ -61,6 +65,7 @@ def close_sum(  # type: ignore[no-untyped-def]
     item_right,
     item_next,
     table,
+    mask,
     value,
     kind,
     node_scale,
@@ -75,7 +80,7 @@ def close_sum(  # type: ignore[no-untyped-def]
     The sum is ``scale * sum(left_i * right_i)`` over the linked list that starts at `head`; a long one
     is split into a chain. `count` holds the number of values so far.
     """
-    place = find(first, second, table, value)
+    place = find(first, second, table, mask, value)
     if table[place] >= 0:
         return table[place]
     inverse_p = 1.0 / p
@@ -87,14 +92,14 @@ def close_sum(  # type: ignore[no-untyped-def]
     item = head
     while item >= 0:
         if length == LONGEST_SUM:
-            inner = find(partial_first, partial_second, table, value)
+            inner = find(partial_first, partial_second, table, mask, value)
             if table[inner] >= 0:
                 at = node_start[node]
                 previous = table[inner]
             else:
                 table[inner] = node
-                value[node, 0] = partial_first
-                value[node, 1] = partial_second
+                value[2 * node] = partial_first
+                value[2 * node + 1] = partial_second
                 kind[node] = SUM
                 node_scale[node] = -1
                 previous = node
@@ -110,19 +115,19 @@ def close_sum(  # type: ignore[no-untyped-def]
         at += 1
         length += 1
         if x == UNIT:
-            partial_first += value[y, 0]
-            partial_second += value[y, 1]
+            partial_first += value[2 * y]
+            partial_second += value[2 * y + 1]
         else:
-            partial_first += multiply(value[x, 0], value[y, 0], p, inverse_p)
-            partial_second += multiply(value[x, 1], value[y, 1], p, inverse_p)
+            partial_first += multiply(value[2 * x], value[2 * y], p, inverse_p)
+            partial_second += multiply(value[2 * x + 1], value[2 * y + 1], p, inverse_p)
         partial_first = canonical(partial_first, p)
         partial_second = canonical(partial_second, p)
         item = item_next[item]
     # the chain may have filled the free place found at first
-    place = find(first, second, table, value)
+    place = find(first, second, table, mask, value)
     table[place] = node
-    value[node, 0] = first
-    value[node, 1] = second
+    value[2 * node] = first
+    value[2 * node + 1] = second
     kind[node] = SUM
     node_scale[node] = scale
     node_start[node + 1] = at
@@ -131,91 +136,90 @@ def close_sum(  # type: ignore[no-untyped-def]
 
 
 @njit(cache=True)
-def record_elimination(  # type: ignore[no-untyped-def]
-    columns,
-    start,
-    column,
-    coefficient,
-    inputs,
-    substituted_pivots,
-    most_nodes,
-    most_terms,
-    most_items,
-    most_cells,
-    most_solved,
+def _record_rows(  # type: ignore[no-untyped-def]
+    start_array,
+    column_array,
+    coefficient_array,
+    inputs_array,
+    substituted_pivots_array,
+    bottom_array,
+    middle_array,
+    top_array,
+    work_array,
+    head_array,
+    present_array,
+    item_left_array,
+    item_right_array,
+    item_next_array,
+    value_array,
+    kind_array,
+    scale_array,
+    node_start_array,
+    left_array,
+    right_array,
+    count_array,
+    table_array,
+    named_array,
+    pivot_row_array,
+    row_start_array,
+    row_column_array,
+    row_node_array,
+    solved_place_array,
+    solved_start_array,
+    solved_column_array,
+    solved_node_array,
     p,
 ):
-    """Run the leading-only elimination and the back substitution, recording every value.
-
-    Parameters
-    ----------
-    columns, start, column, coefficient
-        A system whose rows are independent.
-    inputs
-        float64 (coefficients, 2): canonical residues of the coefficients at two points.
-    substituted_pivots
-        uint8 (columns,): pivots whose back substitution is wanted.
-    most_nodes, most_terms, most_items, most_cells, most_solved
-        Bounds on the numbers of values, of terms, of terms of one row, of stored entries of all rows, of
-        entries of all solved rows.
-    p
-        The prime.
-
-    Returns
-    -------
-    status
-        `GOOD`, or `UNLUCKY` if a value vanishes at one point only.
-    value, kind, scale, node_start, left, right
-        The values: what they are at the points; `INPUT`, `SUM` or `INVERSE` (minus one over the value
-        `scale`); number of the factor of a sum or -1; terms in CSR form.
-    solved_place, solved_start, solved_column, solved_node
-        Solved rows of the wanted back substitution.
-    """
+    """Fill the arrays; returns the status."""
+    start = pointer(start_array)
+    column = pointer(column_array)
+    coefficient = pointer(coefficient_array)
+    inputs = pointer(inputs_array)
+    substituted_pivots = pointer(substituted_pivots_array)
+    bottom = pointer(bottom_array)
+    middle = pointer(middle_array)
+    top = pointer(top_array)
+    work = pointer(work_array)
+    head = pointer(head_array)
+    present = pointer(present_array)
+    item_left = pointer(item_left_array)
+    item_right = pointer(item_right_array)
+    item_next = pointer(item_next_array)
+    value = pointer(value_array)
+    kind = pointer(kind_array)
+    scale = pointer(scale_array)
+    node_start = pointer(node_start_array)
+    left = pointer(left_array)
+    right = pointer(right_array)
+    count = pointer(count_array)
+    table = pointer(table_array)
+    named = pointer(named_array)
+    pivot_row = pointer(pivot_row_array)
+    row_start = pointer(row_start_array)
+    row_column = pointer(row_column_array)
+    row_node = pointer(row_node_array)
+    solved_place = pointer(solved_place_array)
+    solved_start = pointer(solved_start_array)
+    solved_column = pointer(solved_column_array)
+    solved_node = pointer(solved_node_array)
+    columns = pivot_row_array.shape[0]
+    rows = start_array.shape[0] - 1
+    mask = np.uint64(table_array.shape[0] - 1)
     inverse_p = 1.0 / p
-    bottom, middle, top = empty_columns(columns)
-    work = np.zeros((columns, 2), np.float64)
-    head = np.full(columns, -1, np.int32)
-    present = np.zeros(columns, np.uint8)
-    item_left = np.empty(most_items, np.int32)
-    item_right = np.empty(most_items, np.int32)
-    item_next = np.empty(most_items, np.int32)
-
-    value = np.empty((most_nodes + 1, 2), np.float64)
-    kind = np.empty(most_nodes + 1, np.uint8)
-    scale = np.full(most_nodes + 1, -1, np.int32)
-    node_start = np.zeros(most_nodes + 2, np.int64)
-    left = np.empty(most_terms + 1, np.int32)
-    right = np.empty(most_terms + 1, np.int32)
-    size = 16
-    while size < 2 * most_nodes + 2:
-        size *= 2
-    table = np.full(size, -1, np.int32)
-    count = np.zeros(1, np.int64)
-
-    named = np.empty(inputs.shape[0], np.int32)
-    for c in range(inputs.shape[0]):
+    for c in range(named_array.shape[0]):
+        first, second = inputs[2 * c], inputs[2 * c + 1]
         node = count[0]
-        place = find(inputs[c, 0], inputs[c, 1], table, value)
+        place = find(first, second, table, mask, value)
         kind[node] = INPUT
-        value[node, 0] = inputs[c, 0]
-        value[node, 1] = inputs[c, 1]
+        value[2 * node] = first
+        value[2 * node + 1] = second
         node_start[node + 1] = 0
         count[0] = node + 1
         if table[place] < 0:
             table[place] = node
         named[c] = table[place]
-
-    rows = start.shape[0] - 1
-    pivot_row = np.full(columns, -1, np.int32)
-    row_start = np.zeros(rows + 1, np.int64)
-    row_column = np.empty(most_cells, np.int32)
-    row_node = np.empty(most_cells, np.int32)
     stored = 0
     status = GOOD
-    solved_place = np.full(columns, -1, np.int32)
-    solved_start = np.zeros(rows + 1, np.int64)
-    solved_column = np.empty(most_solved, np.int32)
-    solved_node = np.empty(most_solved, np.int32)
 
     for row in range(rows):
         items = 0
@@ -223,22 +227,22 @@ def record_elimination(  # type: ignore[no-untyped-def]
         for e in range(start[row], start[row + 1]):
             target = column[e]
             if e == start[row]:
-                c = target
+                c = target + np.int64(0)
             node = named[coefficient[e]]
             item_left[items] = UNIT
             item_right[items] = node
             item_next[items] = -1
             head[target] = items
             items += 1
-            work[target, 0] = value[node, 0]
-            work[target, 1] = value[node, 1]
+            work[2 * target] = value[2 * node]
+            work[2 * target + 1] = value[2 * node + 1]
             present[target] = 1
             insert(bottom, middle, top, target)
         c = largest(bottom, middle, top, c)
         leader = -1
         factor = -1
         while c >= 0:
-            first, second = work[c, 0], work[c, 1]
+            first, second = work[2 * c], work[2 * c + 1]
             remove(bottom, middle, top, c)
             present[c] = 0
             if first == 0.0 or second == 0.0:
@@ -247,15 +251,15 @@ def record_elimination(  # type: ignore[no-untyped-def]
             elif leader < 0 and pivot_row[c] >= 0:
                 node = close_sum(
                     first, second, -1, head[c], item_left, item_right, item_next,
-                    table, value, kind, scale, node_start, left, right, count, p,
+                    table, mask, value, kind, scale, node_start, left, right, count, p,
                 )  # fmt: skip
-                x0, x1 = value[node, 0], value[node, 1]
+                x0, x1 = value[2 * node], value[2 * node + 1]
                 x_is_one = x0 == 1.0 and x1 == 1.0
                 place = pivot_row[c]
                 for e in range(row_start[place], row_start[place + 1]):
                     target = row_column[e]
                     other = row_node[e]
-                    y0, y1 = value[other, 0], value[other, 1]
+                    y0, y1 = value[2 * other], value[2 * other + 1]
                     if x_is_one:
                         item_left[items] = UNIT
                         item_right[items] = other
@@ -268,37 +272,37 @@ def record_elimination(  # type: ignore[no-untyped-def]
                     r0 = multiply(x0, y0, p, inverse_p)
                     r1 = multiply(x1, y1, p, inverse_p)
                     if present[target]:
-                        r0 += work[target, 0]
-                        r1 += work[target, 1]
+                        r0 += work[2 * target]
+                        r1 += work[2 * target + 1]
                         item_next[items] = head[target]
                     else:
                         present[target] = 1
                         insert(bottom, middle, top, target)
                         item_next[items] = -1
-                    work[target, 0] = canonical(r0, p)
-                    work[target, 1] = canonical(r1, p)
+                    work[2 * target] = canonical(r0, p)
+                    work[2 * target + 1] = canonical(r1, p)
                     head[target] = items
                     items += 1
             elif leader < 0:
                 leader = c
                 node = close_sum(
                     first, second, -1, head[c], item_left, item_right, item_next,
-                    table, value, kind, scale, node_start, left, right, count, p,
+                    table, mask, value, kind, scale, node_start, left, right, count, p,
                 )  # fmt: skip
                 first, second = -invert(first, p), -invert(second, p)
-                place = find(first, second, table, value)
+                place = find(first, second, table, mask, value)
                 if table[place] < 0:
                     inverse = count[0]
                     table[place] = inverse
                     kind[inverse] = INVERSE
                     scale[inverse] = node
-                    value[inverse, 0] = first
-                    value[inverse, 1] = second
+                    value[2 * inverse] = first
+                    value[2 * inverse + 1] = second
                     node_start[inverse + 1] = node_start[inverse]
                     count[0] = inverse + 1
                 factor = table[place]
             else:
-                f0, f1 = value[factor, 0], value[factor, 1]
+                f0, f1 = value[2 * factor], value[2 * factor + 1]
                 given = factor
                 if f0 == 1.0 and f1 == 1.0:
                     given = -1
@@ -306,7 +310,7 @@ def record_elimination(  # type: ignore[no-untyped-def]
                     canonical(multiply(first, f0, p, inverse_p), p),
                     canonical(multiply(second, f1, p, inverse_p), p),
                     given, head[c], item_left, item_right, item_next,
-                    table, value, kind, scale, node_start, left, right, count, p,
+                    table, mask, value, kind, scale, node_start, left, right, count, p,
                 )  # fmt: skip
                 row_column[stored] = c
                 row_node[stored] = node
@@ -326,7 +330,7 @@ def record_elimination(  # type: ignore[no-untyped-def]
         for e in range(row_start[row], row_start[row + 1]):
             c = row_column[e]
             node = row_node[e]
-            x0, x1 = value[node, 0], value[node, 1]
+            x0, x1 = value[2 * node], value[2 * node + 1]
             inner = solved_place[c]
             begin, end = e, e + 1
             if inner >= 0:
@@ -339,7 +343,7 @@ def record_elimination(  # type: ignore[no-untyped-def]
                 if inner >= 0:
                     target = solved_column[f]
                     other = solved_node[f]
-                    y0, y1 = value[other, 0], value[other, 1]
+                    y0, y1 = value[2 * other], value[2 * other + 1]
                     r0 = multiply(x0, y0, p, inverse_p)
                     r1 = multiply(x1, y1, p, inverse_p)
                     if x0 == 1.0 and x1 == 1.0:
@@ -348,20 +352,20 @@ def record_elimination(  # type: ignore[no-untyped-def]
                         item_left[items] = node
                         item_right[items] = other
                 if present[target]:
-                    r0 += work[target, 0]
-                    r1 += work[target, 1]
+                    r0 += work[2 * target]
+                    r1 += work[2 * target + 1]
                     item_next[items] = head[target]
                 else:
                     present[target] = 1
                     insert(bottom, middle, top, target)
                     item_next[items] = -1
-                work[target, 0] = canonical(r0, p)
-                work[target, 1] = canonical(r1, p)
+                work[2 * target] = canonical(r0, p)
+                work[2 * target + 1] = canonical(r1, p)
                 head[target] = items
                 items += 1
         c = largest(bottom, middle, top, leader)
         while c >= 0:
-            first, second = work[c, 0], work[c, 1]
+            first, second = work[2 * c], work[2 * c + 1]
             remove(bottom, middle, top, c)
             present[c] = 0
             if first == 0.0 or second == 0.0:
@@ -371,25 +375,151 @@ def record_elimination(  # type: ignore[no-untyped-def]
                 solved_column[solved] = c
                 solved_node[solved] = close_sum(
                     first, second, -1, head[c], item_left, item_right, item_next,
-                    table, value, kind, scale, node_start, left, right, count, p,
+                    table, mask, value, kind, scale, node_start, left, right, count, p,
                 )  # fmt: skip
                 solved += 1
             c = largest(bottom, middle, top, c)
         solved_place[leader] = done
         done += 1
         solved_start[done] = solved
-    nodes = count[0]
-    terms = node_start[nodes]
-    return (
-        status,
-        value[:nodes],
-        kind[:nodes],
-        scale[:nodes],
-        node_start[: nodes + 1],
+    return status
+
+
+@dataclass(frozen=True)
+class Recorded:
+    """Numbered values.
+
+    Attributes
+    ----------
+    lucky
+        False if some value vanishes at one of the two points only.
+    kind
+        uint8: `INPUT`, `SUM` or `INVERSE` (minus one over the value `scale`).
+    scale
+        int32: number of the factor of a sum, or -1; number of the value inverted.
+    start, left, right
+        Terms of the sums in CSR form; `left` may be `UNIT`.
+    solved_place
+        int32 (columns,): number of the solved row of a pivot column, or -1.
+    solved_start, solved_column, solved_node
+        Solved rows: columns without pivot, descending, and the number of each coefficient.
+    """
+
+    lucky: bool
+    kind: Any
+    scale: Any
+    start: Any
+    left: Any
+    right: Any
+    solved_place: Any
+    solved_start: Any
+    solved_column: Any
+    solved_node: Any
+
+
+@dataclass(frozen=True)
+class Bounds:
+    """Bounds on what a recording needs, known from an elimination of the same rows.
+
+    Attributes
+    ----------
+    values, terms
+        Numbered values, terms in all of them.
+    items
+        Terms met in one row.
+    entries, solved
+        Entries of all stored rows, of all solved rows.
+    """
+
+    values: int
+    terms: int
+    items: int
+    entries: int
+    solved: int
+
+
+def record_elimination(
+    columns: int,
+    start: Any,
+    column: Any,
+    coefficient: Any,
+    inputs: Any,
+    substituted_pivots: Any,
+    bounds: Bounds,
+    p: float,
+) -> Recorded:
+    """Run the leading-only elimination and the back substitution, recording every value.
+
+    Parameters
+    ----------
+    columns, start, column, coefficient
+        A system whose rows are independent.
+    inputs
+        float64 (coefficients, 2): canonical balanced residues of the coefficients at two points.
+    substituted_pivots
+        uint8 (columns,): pivots whose back substitution is wanted.
+    bounds
+        Room to be made.
+    p
+        The prime.
+    """
+    rows = len(start) - 1
+    size = 16
+    while size < 2 * bounds.values + 2:
+        size *= 2
+    kind = np.empty(bounds.values + 1, np.uint8)
+    scale = np.full(bounds.values + 1, -1, np.int32)
+    node_start = np.zeros(bounds.values + 2, np.int64)
+    left = np.empty(bounds.terms + 1, np.int32)
+    right = np.empty(bounds.terms + 1, np.int32)
+    count = np.zeros(1, np.int64)
+    solved_place = np.full(columns, -1, np.int32)
+    solved_start = np.zeros(rows + 1, np.int64)
+    solved_column = np.empty(bounds.solved, np.int32)
+    solved_node = np.empty(bounds.solved, np.int32)
+    status = _record_rows(
+        start,
+        column,
+        coefficient,
+        inputs.reshape(-1),
+        substituted_pivots,
+        *empty_columns(columns),
+        np.zeros(2 * columns, np.float64),
+        np.full(columns, -1, np.int32),
+        np.zeros(columns, np.uint8),
+        np.empty(bounds.items, np.int32),
+        np.empty(bounds.items, np.int32),
+        np.empty(bounds.items, np.int32),
+        np.empty(2 * bounds.values + 2, np.float64),
+        kind,
+        scale,
+        node_start,
+        left,
+        right,
+        count,
+        np.full(size, -1, np.int32),
+        np.empty(len(inputs), np.int32),
+        np.full(columns, -1, np.int32),
+        np.zeros(rows + 1, np.int64),
+        np.empty(bounds.entries, np.int32),
+        np.empty(bounds.entries, np.int32),
+        solved_place,
+        solved_start,
+        solved_column,
+        solved_node,
+        p,
+    )
+    values = int(count[0])
+    terms = int(node_start[values])
+    return Recorded(
+        status == GOOD,
+        kind[:values],
+        scale[:values],
+        node_start[: values + 1],
         left[:terms],
         right[:terms],
         solved_place,
-        solved_start[: done + 1],
-        solved_column[:solved],
-        solved_node[:solved],
+        solved_start,
+        solved_column,
+        solved_node,
     )

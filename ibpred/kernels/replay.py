@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 from numba import njit
 
+from ibpred.kernels.coefficients import lanes_monomials, lanes_polynomials
 from ibpred.kernels.lanes import (
     BIAS,
     LANES,
@@ -92,3 +93,75 @@ def lanes_replay(
             if scale[k] >= 0:
                 result = lanes_multiply(result, load(blocks, scale[k]), minus_p, inverse_p)
             store(blocks, target[k], result)
+
+
+@njit(cache=True, nogil=True)
+def collect(blocks: Any, output_slot: Any, values: Any, first: int, width: int, p: float) -> None:
+    """Canonical residues of the outputs, into columns ``first:first + width`` of `values`."""
+    for k in range(output_slot.shape[0]):
+        slot = output_slot[k]
+        for lane in range(width):
+            x = 1.0
+            if slot >= 0:
+                x = blocks[slot * LANES + lane]
+            if x < 0.0:
+                x += p
+            values[k, first + lane] = np.uint64(np.int64(x))
+
+
+@njit(cache=True, nogil=True)
+def replay_batches(
+    points: Any,
+    scratch: Any,
+    blocks: Any,
+    monomial_products: Any,
+    input_start: Any,
+    input_monomial: Any,
+    input_factor: Any,
+    level_start: Any,
+    target: Any,
+    scale: Any,
+    unit_start: Any,
+    unit: Any,
+    product_start: Any,
+    product: Any,
+    batch_start: Any,
+    source: Any,
+    inverse_target: Any,
+    output_slot: Any,
+    values: Any,
+    good: Any,
+    p: float,
+) -> None:
+    """Replay a tape at all points (variables, B), `LANES` at once; fill `values` and `good`."""
+    variables, count = points.shape
+    lane_good = np.empty(LANES, np.bool_)
+    for first in range(0, count, LANES):
+        width = min(LANES, count - first)
+        for lane in range(LANES):
+            # spare lanes repeat the last point
+            at = first + min(lane, width - 1)
+            for v in range(variables):
+                scratch[v * LANES + lane] = points[v, at]
+            scratch[variables * LANES + lane] = 1.0
+            lane_good[lane] = True
+        lanes_monomials(scratch, monomial_products, p)
+        lanes_polynomials(scratch, input_start, input_monomial, input_factor, blocks, 0, p)
+        lanes_replay(
+            blocks,
+            level_start,
+            target,
+            scale,
+            unit_start,
+            unit,
+            product_start,
+            product,
+            batch_start,
+            source,
+            inverse_target,
+            lane_good,
+            p,
+        )
+        collect(blocks, output_slot, values, first, width, p)
+        for lane in range(width):
+            good[first + lane] = lane_good[lane]

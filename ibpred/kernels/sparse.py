@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 from numba import njit
 
-from ibpred.kernels.arithmetic import fused, invert, multiply
+from ibpred.kernels.arithmetic import invert, multiply
 from ibpred.kernels.columns import empty_columns, insert, largest, remove
+from ibpred.kernels.memory import pointer
 
 FULL = 0
 """Reduce every column of a row by the pivot rows known so far."""
@@ -15,35 +18,140 @@ LEADING = 1
 
 
 @njit(cache=True)
-def grown_int(array: np.ndarray, used: int, wanted: int) -> np.ndarray:  # type: ignore[type-arg]
-    """The array with room for at least `wanted` items."""
-    if wanted <= array.shape[0]:
-        return array
-    larger = np.empty(max(wanted, 2 * array.shape[0]), np.int32)
-    larger[:used] = array[:used]
-    return larger
-
-
-@njit(cache=True)
-def grown_float(array: np.ndarray, used: int, wanted: int) -> np.ndarray:  # type: ignore[type-arg]
-    """The array with room for at least `wanted` items."""
-    if wanted <= array.shape[0]:
-        return array
-    larger = np.empty(max(wanted, 2 * array.shape[0]), np.float64)
-    larger[:used] = array[:used]
-    return larger
-
-
-@njit(cache=True)
-def eliminate(  # type: ignore[no-untyped-def]
-    columns,
-    start,
-    column,
-    coefficient,
-    coefficient_values,
+def _eliminate_rows(  # type: ignore[no-untyped-def]
+    start_array,
+    column_array,
+    coefficient_array,
+    coefficient_values_array,
+    bottom_array,
+    middle_array,
+    top_array,
+    work_array,
+    present_array,
+    tail_array,
+    sources_array,
+    kept_array,
+    pivot_array,
+    pivot_row_array,
+    row_start_array,
+    row_column_array,
+    row_value_array,
+    used_start_array,
+    used_array,
+    state,
     p,
     mode,
 ):
+    """Eliminate rows from ``state[0]`` on, as long as the storage lasts.
+
+    state: next row, rank, room wanted in the rows, room wanted in the lists of sources, operations.
+    """
+    start = pointer(start_array)
+    column = pointer(column_array)
+    coefficient = pointer(coefficient_array)
+    coefficient_values = pointer(coefficient_values_array)
+    bottom = pointer(bottom_array)
+    middle = pointer(middle_array)
+    top = pointer(top_array)
+    work = pointer(work_array)
+    present = pointer(present_array)
+    tail = pointer(tail_array)
+    sources = pointer(sources_array)
+    kept = pointer(kept_array)
+    pivot = pointer(pivot_array)
+    pivot_row = pointer(pivot_row_array)
+    row_start = pointer(row_start_array)
+    row_column = pointer(row_column_array)
+    row_value = pointer(row_value_array)
+    used_start = pointer(used_start_array)
+    used = pointer(used_array)
+    rows = start_array.shape[0] - 1
+    row_room, used_room = row_column_array.shape[0], used_array.shape[0]
+    inverse_p = 1.0 / p
+    half = 0.5 * p
+    rank = state[1]
+    stored = row_start[rank]
+    listed = used_start[rank]
+    operations = state[4]
+    for row in range(state[0], rows):
+        c = -1
+        for e in range(start[row], start[row + 1]):
+            target = column[e]
+            if e == start[row]:
+                c = target + np.int64(0)
+            work[target] = coefficient_values[coefficient[e]]
+            present[target] = 1
+            insert(bottom, middle, top, target)
+        c = largest(bottom, middle, top, c)
+        leader = -1
+        length = 0
+        steps = 0
+        done = operations
+        while c >= 0:
+            value = work[c]
+            place = pivot_row[c]
+            remove(bottom, middle, top, c)
+            present[c] = 0
+            if value != 0.0:
+                if place >= 0 and (leader < 0 or mode == FULL):
+                    sources[steps] = place
+                    steps += 1
+                    begin, end = row_start[place], row_start[place + 1]
+                    done += end - begin
+                    for e in range(begin, end):
+                        target = row_column[e]
+                        r = multiply(value, row_value[e], p, inverse_p)
+                        if present[target]:
+                            r += work[target]
+                            if r > half:
+                                r -= p
+                            elif r < -half:
+                                r += p
+                            work[target] = r
+                        else:
+                            work[target] = r
+                            present[target] = 1
+                            insert(bottom, middle, top, target)
+                elif leader < 0:
+                    leader = c
+                else:
+                    tail[length] = c
+                    length += 1
+            c = largest(bottom, middle, top, c)
+        if leader >= 0:
+            if stored + length > row_room or listed + steps > used_room:
+                state[0], state[1] = row, rank
+                state[2], state[3] = stored + length, listed + steps
+                state[4] = operations
+                return
+            scale = -invert(work[leader], p)
+            for i in range(length):
+                row_column[stored + i] = tail[i]
+                row_value[stored + i] = multiply(work[tail[i]], scale, p, inverse_p)
+            for i in range(steps):
+                used[listed + i] = sources[i]
+            stored += length
+            listed += steps
+            kept[rank] = row
+            pivot[rank] = leader
+            pivot_row[leader] = rank
+            rank += 1
+            row_start[rank] = stored
+            used_start[rank] = listed
+        operations = done
+    state[0], state[1] = rows, rank
+    state[4] = operations
+
+
+def eliminate(
+    columns: int,
+    start: Any,
+    column: Any,
+    coefficient: Any,
+    coefficient_values: Any,
+    p: float,
+    mode: int,
+) -> tuple[Any, ...]:
     """Eliminate the rows of a system in the given order.
 
     A kept row is stored as ``x_pivot = sum_e value_e x_column_e``, columns descending.
@@ -51,11 +159,11 @@ def eliminate(  # type: ignore[no-untyped-def]
     Parameters
     ----------
     columns, start, column, coefficient
-        The system (int64; int64, int32, int32 arrays).
+        The system (int; int64, int32, int32 arrays).
     coefficient_values
         float64 residues of the table's coefficients.
     p
-        The prime, as float64.
+        The prime.
     mode
         `FULL` or `LEADING`.
 
@@ -74,93 +182,53 @@ def eliminate(  # type: ignore[no-untyped-def]
     operations
         Multiply-adds done.
     """
-    inverse_p = 1.0 / p
-    half = 0.5 * p
-    rows = start.shape[0] - 1
+    rows = len(start) - 1
+    most = min(rows, columns)
     bottom, middle, top = empty_columns(columns)
     work = np.zeros(columns, np.float64)
     present = np.zeros(columns, np.uint8)
-    pivot_row = np.full(columns, -1, np.int32)
-    most = min(rows, columns)
+    tail = np.empty(columns, np.int32)
+    sources = np.empty(most, np.int32)
     kept = np.empty(most, np.int32)
     pivot = np.empty(most, np.int32)
+    pivot_row = np.full(columns, -1, np.int32)
     row_start = np.zeros(most + 1, np.int64)
     used_start = np.zeros(most + 1, np.int64)
-    row_column = np.empty(max(1024, column.shape[0]), np.int32)
-    row_value = np.empty(max(1024, column.shape[0]), np.float64)
-    used = np.empty(max(1024, column.shape[0]), np.int32)
-    tail = np.empty(1024, np.int32)
-    rank = 0
-    stored = 0
-    listed = 0
-    operations = 0
-    for row in range(rows):
-        first = columns
-        for e in range(start[row], start[row + 1]):
-            c = column[e]
-            if e == start[row]:
-                first = c
-            work[c] = coefficient_values[coefficient[e]]
-            present[c] = 1
-            insert(bottom, middle, top, c)
-        c = largest(bottom, middle, top, first)
-        leader = -1
-        scale = 0.0
-        length = 0
-        steps = 0
-        while c >= 0:
-            value = work[c]
-            place = pivot_row[c]
-            remove(bottom, middle, top, c)
-            present[c] = 0
-            if value != 0.0:
-                if place >= 0 and (leader < 0 or mode == FULL):
-                    used = grown_int(used, listed + steps, listed + steps + 1)
-                    used[listed + steps] = place
-                    steps += 1
-                    begin, end = row_start[place], row_start[place + 1]
-                    operations += end - begin
-                    for e in range(begin, end):
-                        target = row_column[e]
-                        y = row_value[e]
-                        h = value * y
-                        low = fused(value, y, -h)
-                        q = np.rint(h * inverse_p)
-                        r = fused(-q, p, h) + low
-                        if present[target]:
-                            r += work[target]
-                            if r > half:
-                                r -= p
-                            elif r < -half:
-                                r += p
-                            work[target] = r
-                        else:
-                            work[target] = r
-                            present[target] = 1
-                            insert(bottom, middle, top, target)
-                elif leader < 0:
-                    leader = c
-                    scale = -invert(value, p)
-                else:
-                    tail = grown_int(tail, length, length + 1)
-                    tail[length] = c
-                    length += 1
-            c = largest(bottom, middle, top, c)
-        if leader < 0:
-            continue
-        row_column = grown_int(row_column, stored, stored + length)
-        row_value = grown_float(row_value, stored, stored + length)
-        for i in range(length):
-            row_column[stored + i] = tail[i]
-            row_value[stored + i] = multiply(work[tail[i]], scale, p, inverse_p)
-        stored += length
-        listed += steps
-        kept[rank] = row
-        pivot[rank] = leader
-        pivot_row[leader] = rank
-        rank += 1
-        row_start[rank] = stored
-        used_start[rank] = listed
+    room = max(1024, len(column))
+    row_column = np.empty(room, np.int32)
+    row_value = np.empty(room, np.float64)
+    used = np.empty(room, np.int32)
+    state = np.zeros(5, np.int64)
+    while state[0] < rows:
+        _eliminate_rows(
+            start,
+            column,
+            coefficient,
+            coefficient_values,
+            bottom,
+            middle,
+            top,
+            work,
+            present,
+            tail,
+            sources,
+            kept,
+            pivot,
+            pivot_row,
+            row_start,
+            row_column,
+            row_value,
+            used_start,
+            used,
+            state,
+            p,
+            mode,
+        )
+        row_column = _grown(row_column, int(state[2]))
+        row_value = _grown(row_value, int(state[2]))
+        used = _grown(used, int(state[3]))
+    rank = int(state[1])
+    stored, listed = row_start[rank], used_start[rank]
     return (
         kept[:rank].copy(),
         pivot[:rank].copy(),
@@ -170,8 +238,16 @@ def eliminate(  # type: ignore[no-untyped-def]
         row_value[:stored].copy(),
         used_start[: rank + 1].copy(),
         used[:listed].copy(),
-        operations,
+        int(state[4]),
     )
+
+
+def _grown(array: Any, wanted: int) -> Any:
+    if wanted <= len(array):
+        return array
+    larger = np.empty(max(wanted, 2 * len(array)), array.dtype)
+    larger[: len(array)] = array
+    return larger
 
 
 @njit(cache=True)
@@ -224,59 +300,63 @@ def needed_rows(  # type: ignore[no-untyped-def]
 
 
 @njit(cache=True)
-def substitute_back(  # type: ignore[no-untyped-def]
-    columns,
-    substituted,
-    pivot,
-    pivot_row,
-    row_start,
-    row_column,
-    row_value,
+def _substitute_rows(  # type: ignore[no-untyped-def]
+    substituted_array,
+    pivot_row_array,
+    row_start_array,
+    row_column_array,
+    row_value_array,
+    bottom_array,
+    middle_array,
+    top_array,
+    work_array,
+    present_array,
+    place_array,
+    solved_start_array,
+    solved_column_array,
+    solved_value_array,
+    state,
     p,
 ):
-    """Express the pivots of the marked rows in columns without pivot.
+    """Back substitution from pivot column ``state[0]`` on, as long as the storage lasts.
 
-    The marked rows are closed: each pivot column in one of them belongs to a marked row.
-
-    Returns
-    -------
-    place
-        int32 (columns,): number of the solved row of a pivot column, or -1.
-    solved_start, solved_column, solved_value
-        The solved rows ``x_pivot = sum_e value_e x_column_e``, columns descending.
+    state: next column, solved rows, room wanted.
     """
+    substituted = pointer(substituted_array)
+    pivot_row = pointer(pivot_row_array)
+    row_start = pointer(row_start_array)
+    row_column = pointer(row_column_array)
+    row_value = pointer(row_value_array)
+    bottom = pointer(bottom_array)
+    middle = pointer(middle_array)
+    top = pointer(top_array)
+    work = pointer(work_array)
+    present = pointer(present_array)
+    place = pointer(place_array)
+    solved_start = pointer(solved_start_array)
+    solved_column = pointer(solved_column_array)
+    solved_value = pointer(solved_value_array)
+    room = solved_column_array.shape[0]
     inverse_p = 1.0 / p
     half = 0.5 * p
-    bottom, middle, top = empty_columns(columns)
-    work = np.zeros(columns, np.float64)
-    present = np.zeros(columns, np.uint8)
-    solved_place = np.full(columns, -1, np.int32)
-    count = 0
-    for row in range(pivot.shape[0]):
-        if substituted[row]:
-            count += 1
-    solved_start = np.zeros(count + 1, np.int64)
-    solved_column = np.empty(max(1024, 2 * count), np.int32)
-    solved_value = np.empty(max(1024, 2 * count), np.float64)
-    stored = 0
-    done = 0
-    for leader in range(columns):
+    done = state[1]
+    stored = solved_start[done]
+    for leader in range(state[0], pivot_row_array.shape[0]):
         row = pivot_row[leader]
         if row < 0 or not substituted[row]:
             continue
+        size = 0
         for e in range(row_start[row], row_start[row + 1]):
             c = row_column[e]
             value = row_value[e]
-            inner = solved_place[c]
-            if inner < 0:
-                begin, end = e, e + 1
-            else:
+            inner = place[c]
+            begin, end = e, e + 1
+            if inner >= 0:
                 begin, end = solved_start[inner], solved_start[inner + 1]
             for f in range(begin, end):
-                if inner < 0:
-                    target = c
-                    r = value
-                else:
+                target = c
+                r = value
+                if inner >= 0:
                     target = solved_column[f]
                     r = multiply(value, solved_value[f], p, inverse_p)
                 if present[target]:
@@ -290,18 +370,87 @@ def substitute_back(  # type: ignore[no-untyped-def]
                     work[target] = r
                     present[target] = 1
                     insert(bottom, middle, top, target)
-        c = largest(bottom, middle, top, leader)
-        while c >= 0:
-            remove(bottom, middle, top, c)
-            present[c] = 0
-            if work[c] != 0.0:
-                solved_column = grown_int(solved_column, stored, stored + 1)
-                solved_value = grown_float(solved_value, stored, stored + 1)
-                solved_column[stored] = c
-                solved_value[stored] = work[c]
+                    size += 1
+        wanted = stored + size
+        column = largest(bottom, middle, top, leader)
+        while column >= 0:
+            remove(bottom, middle, top, column)
+            present[column] = 0
+            if work[column] != 0.0 and wanted <= room:
+                solved_column[stored] = column
+                solved_value[stored] = work[column]
                 stored += 1
-            c = largest(bottom, middle, top, c)
-        solved_place[leader] = done
+            column = largest(bottom, middle, top, column)
+        if wanted > room:
+            state[0], state[1], state[2] = leader, done, wanted
+            return
+        place[leader] = done
         done += 1
         solved_start[done] = stored
-    return solved_place, solved_start, solved_column[:stored].copy(), solved_value[:stored].copy()
+    state[0], state[1] = pivot_row_array.shape[0], done
+
+
+def substitute_back(
+    columns: int,
+    substituted: Any,
+    pivot_row: Any,
+    row_start: Any,
+    row_column: Any,
+    row_value: Any,
+    p: float,
+) -> tuple[Any, Any, Any, Any]:
+    """Express the pivots of the marked rows in columns without pivot.
+
+    The marked rows are closed: each pivot column in one of them belongs to a marked row.
+
+    Parameters
+    ----------
+    columns
+        Number of columns.
+    substituted
+        uint8 per kept row: the marks, as `needed_rows` gives them.
+    pivot_row, row_start, row_column, row_value
+        Kept rows, as `eliminate` gives them.
+    p
+        The prime.
+
+    Returns
+    -------
+    place
+        int32 (columns,): number of the solved row of a pivot column, or -1.
+    solved_start, solved_column, solved_value
+        The solved rows ``x_pivot = sum_e value_e x_column_e``, columns descending.
+    """
+    bottom, middle, top = empty_columns(columns)
+    work = np.zeros(columns, np.float64)
+    present = np.zeros(columns, np.uint8)
+    place = np.full(columns, -1, np.int32)
+    count = int(np.count_nonzero(substituted))
+    solved_start = np.zeros(count + 1, np.int64)
+    room = max(1024, 8 * count)
+    solved_column = np.empty(room, np.int32)
+    solved_value = np.empty(room, np.float64)
+    state = np.zeros(3, np.int64)
+    while state[0] < columns:
+        _substitute_rows(
+            substituted,
+            pivot_row,
+            row_start,
+            row_column,
+            row_value,
+            bottom,
+            middle,
+            top,
+            work,
+            present,
+            place,
+            solved_start,
+            solved_column,
+            solved_value,
+            state,
+            p,
+        )
+        solved_column = _grown(solved_column, int(state[2]))
+        solved_value = _grown(solved_value, int(state[2]))
+    stored = solved_start[count]
+    return place, solved_start, solved_column[:stored].copy(), solved_value[:stored].copy()
