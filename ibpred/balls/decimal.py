@@ -71,7 +71,12 @@ def _decimal(ball: RealBall, digits: int) -> tuple[str, _Scaled]:
     unit = 10**surplus
     rounded = (abs(mid) + unit // 2) // unit * (1 if mid >= 0 else -1)
     error = rad + abs(mid - rounded * unit)
-    return _text(rounded, exponent + surplus), (error, exponent)
+    power = exponent + surplus
+    # zeros after the point say nothing where the number is exact, nor where 9.99.. was rounded up to 10.0..
+    while rounded and rounded % 10 == 0 and ((error == 0 and power < 0) or len(str(abs(rounded))) > digits):
+        rounded //= 10
+        power += 1
+    return _text(rounded, power), (error, exponent)
 
 
 def _radius(error: _Scaled) -> str:

@@ -2,11 +2,14 @@
 
 The principal sheet is C without the negative real axis: there the integrals of a planar region in one
 ratio are regular (F is linear in the ratio with positive coefficients), so letters on the positive axis
-are regular points and may be passed on either side; they are passed on the target's side. A target on
-the negative axis is reached from above or below. Everything is planned in the upper half plane and
-reflected for the lower one. The plan is a chain of discs, found with floating-point numbers; all its
-points are exact, and what the series need of them (the ratio to the radius of convergence) is checked
-again in ball arithmetic where the series are summed.
+are regular points and may be passed on either side. In general the path meant is: turn around 0 to the
+target's direction, then go straight out, passing letters on the axis on the target's side (above, on the
+positive axis); any path in the wedge between the axis and the first complex letter is the same.
+Everything is planned in the upper half plane and reflected for the lower one.
+
+The plan is a chain of discs, found with floating-point numbers; all its points are exact, and what the
+series need of them (the ratio to the radius of convergence) is checked again in ball arithmetic where the
+series are summed.
 """
 
 from __future__ import annotations
@@ -121,7 +124,8 @@ def _plan_above(system: CanonicalSystem, target: Target) -> tuple[Step, ...]:
         return (Step(zero, end),)
     last, centre, reach = _last_disc(system, letters, target)
     everything = np.append(letters, 0)
-    line = _route(everything, float(inner) * _STEP, centre, reach)
+    wedge = _wedge(letters, target)
+    line = _route(everything, wedge, float(inner) * _STEP, centre, reach)
     return _chain(zero, line, everything, last, centre, reach, end)
 
 
@@ -161,25 +165,44 @@ def _last_disc(
     return Regular((target.value, Fraction(0))), centre, radius * _STEP
 
 
+def _wedge(letters: NDArray[np.complex128], target: Target) -> NDArray[np.float64]:
+    """Angles between the target's direction and the first complex letter, that direction first."""
+    tiny = 1e-9
+    angles = np.angle(letters)
+    complex_ = angles[(angles > tiny) & (angles < np.pi - tiny)]
+    steps = np.arange(_ANGLES + 1) / _ANGLES
+    if target.half_turns:
+        largest = float(complex_.max(initial=0.0))
+        return np.asarray(np.pi - (np.pi - largest) * steps, dtype=np.float64)
+    smallest = float(complex_.min(initial=np.pi))
+    return np.asarray(smallest * steps, dtype=np.float64)
+
+
 def _route(
-    letters: NDArray[np.complex128], start: float, centre: complex | None, reach: float
+    letters: NDArray[np.complex128],
+    wedge: NDArray[np.float64],
+    start: float,
+    centre: complex | None,
+    reach: float,
 ) -> NDArray[np.complex128]:
-    """A polyline in the closed upper half plane from the circle |x| = start into the last disc.
+    """A polyline in the wedge from the circle |x| = start into the last disc.
 
     The shortest path in a graph of points on circles, the length of an edge measured in its distance
     from the letters.
     """
-    angles = np.exp(1j * np.pi * np.arange(_ANGLES + 1) / _ANGLES)
-    angles[-1] = -1.0
+    directions = np.exp(1j * wedge)
+    directions[wedge == np.pi] = -1.0
     outer = reach if centre is None else abs(centre)
     count = max(2, int(np.ceil(np.log(max(outer / start, 1.01)) / np.log(1.5))) + 1)
     radii = start * (outer / start) ** (np.arange(count) / (count - 1))
-    nodes = [(radii[:, None] * angles[None, :]).ravel()]
+    nodes = [(radii[:, None] * directions[None, :]).ravel()]
     if centre is not None:
-        ring = centre + 0.98 * reach * angles
-        nodes.append(ring)
+        ring = centre + 0.98 * reach * np.exp(1j * np.pi * np.arange(_ANGLES + 1) / _ANGLES)
+        ring = ring.real + 1j * np.maximum(ring.imag, 0.0)
+        inside = (np.angle(ring) >= wedge.min()) & (np.angle(ring) <= wedge.max())
+        nodes.append(ring[inside])
     points = np.concatenate(nodes)
-    sources = np.arange(len(points)) < len(angles)
+    sources = np.arange(len(points)) < len(directions)
     goals = np.abs(points) >= reach * (1 - 1e-9) if centre is None else np.abs(points - centre) <= reach
     # an edge's cost: length over the distance of the segment from the letters
     first, second = points[:, None], points[None, :]

@@ -116,6 +116,7 @@ def _march(
     with precision(bits):
         grid = _grid(centre, places, bits)
         ratios = [_ratio(centre, place) for place in places]
+        powers = [_powers(place.h / grid.scale, grid.terms) for place in places]
     if centre.radius is None:
         factors = [[flint.arb(0)] * (orders + 1) for _ in places]
     else:
@@ -129,8 +130,8 @@ def _march(
         heads = [[_head_bound(series) for series in part] for part in level]
         bounds = centre.majorant.next_order(heads, bounds)
         particular = [
-            _evaluate(level, bounds, place, tail, grid, bits)
-            for place, tail in zip(places, factors, strict=True)
+            _evaluate(level, bounds, place, of_place, tail, bits)
+            for place, of_place, tail in zip(places, powers, factors, strict=True)
         ]
         constant = free(order, particular)
         with precision(bits):
@@ -259,12 +260,11 @@ def _evaluate(
     level: Level,
     bounds: Bounds,
     place: Place,
+    powers: Sequence[Ball],
     factors: Sequence[RealBall],
-    grid: _Grid,
     bits: int,
 ) -> list[Ball]:
     with precision(bits):
-        t = place.h / grid.scale
         size = modulus_bound(place.logarithm)
         weights = [flint.acb(1)]
         for j in range(1, len(level)):
@@ -275,6 +275,18 @@ def _evaluate(
             for part, weight in zip(level, weights, strict=True):
                 series = part[row]
                 if series is not None:
-                    total = total + weight * flint.acb_poly(series)(t)
+                    total = total + weight * _dot(series, powers)
             vector.append(total)
     return [widened(value, remainder(bounds, size, factors, row), bits) for row, value in enumerate(vector)]
+
+
+def _powers(t: Ball, count: int) -> list[Ball]:
+    # each power by itself: Horner's rule would widen complex balls by up to sqrt(2) a term
+    return [t**m if m else flint.acb(1) for m in range(count)]
+
+
+def _dot(series: Sequence[Ball], powers: Sequence[Ball]) -> Ball:
+    total = flint.acb(0)
+    for a, b in zip(series, powers, strict=True):
+        total = total + a * b
+    return total

@@ -1,0 +1,121 @@
+"""Integrals at a point to a wanted number of digits, from a solved epsilon-form."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from ibpred.balls.accuracy import bits_for, until_accurate
+from ibpred.balls.context import Ball
+from ibpred.balls.decimal import decimal_ball
+from ibpred.errors import BoundaryError
+from ibpred.iterated.constants import Constant
+from ibpred.numerics.canonical import CanonicalSystem
+from ibpred.numerics.continuation import evaluate_canonical
+from ibpred.numerics.masters import Row, assemble, needed_order
+from ibpred.numerics.path import Target
+from ibpred.numerics.value import Value
+from ibpred.numerics.vanishing import vanishes
+
+_SPARE_BITS = 64
+_SPARE_DIGITS = 2
+
+
+def evaluate_rows(
+    system: CanonicalSystem,
+    constants: Sequence[Sequence[Constant]],
+    start: int,
+    rows: Sequence[Row],
+    ratio: Target,
+    unit: Target,
+    order: int,
+    digits: int,
+    max_bits: int,
+) -> tuple[Value, ...]:
+    """Values of integrals, rigorous given the canonical system and its boundary constants.
+
+    Parameters
+    ----------
+    system
+        The canonical system; without letters (one-scale families) the functions are the constants.
+    constants, start
+        Boundary constants ``constants[k][i]`` at x -> 0+ from ``eps^start`` on.
+    rows
+        The integrals, at the rational value of the ratio.
+    ratio, unit
+        The point: the ratio on its sheet, and y_u.
+    order
+        Highest power of eps.
+    digits
+        Wanted digits of every coefficient, relative to its modulus.
+    max_bits
+        Highest working precision.
+
+    Returns
+    -------
+    One value a row, in order. A power is left out where its coefficient vanishes exactly.
+
+    Raises
+    ------
+    BoundaryError
+        If the constants stop before the power that is needed.
+    PointError
+        If the ratio is the zero of a letter.
+    PrecisionError
+        If `max_bits` does not suffice.
+    """
+    needed = max(needed_order(rows, order), start)
+    if needed >= start + len(constants):
+        raise BoundaryError(
+            f"the integrals through eps^{order} need the canonical functions through eps^{needed}, the "
+            f"boundary constants reach eps^{start + len(constants) - 1}; solve through weight "
+            f"{needed - start}"
+        )
+    used = constants[: needed - start + 1]
+
+    def compute(bits: int) -> list[dict[int, Ball]]:
+        at_base = tuple(tuple(c.ball(bits) for c in vector) for vector in used)
+        functions = evaluate_canonical(system, at_base, ratio, bits)
+        found = []
+        for row in rows:
+            coefficients = assemble(row, functions, start, unit, order, bits)
+            found.append(_without_zeros(row, coefficients, system, used, start, unit))
+        return found
+
+    results = until_accurate(
+        compute,
+        lambda found: [ball for coefficients in found for ball in coefficients.values()],
+        digits,
+        bits_for(digits) + _SPARE_BITS,
+        max_bits,
+    )
+    return tuple(
+        Value(
+            row.powers,
+            {power: decimal_ball(ball, digits + _SPARE_DIGITS) for power, ball in coefficients.items()},
+            certified=True,
+        )
+        for row, coefficients in zip(rows, results, strict=True)
+    )
+
+
+def _without_zeros(
+    row: Row,
+    coefficients: dict[int, Ball],
+    system: CanonicalSystem,
+    constants: Sequence[Sequence[Constant]],
+    start: int,
+    unit: Target,
+) -> dict[int, Ball]:
+    """Leave out the powers whose coefficients vanish exactly."""
+    at_one = unit.modulus == 1 and unit.half_turns == 0
+    leading = True
+    kept = {}
+    for power, ball in sorted(coefficients.items()):
+        if ball.is_zero():
+            continue
+        doubtful = (leading or at_one) and ball.contains(0)
+        if doubtful and vanishes(row, system, constants, start, power):
+            continue
+        leading = False
+        kept[power] = ball
+    return kept
