@@ -10,8 +10,27 @@ from ibpred.epsform.form import Matrix
 from ibpred.epsform.matrices import Constants
 from ibpred.exact.rational import Rational
 
-Exponent = tuple[Fraction, Fraction]
-"""(a, b): the local exponent a + b eps."""
+
+@dataclass(frozen=True, order=True)
+class Exponent:
+    """Local exponents ``a + b eps``.
+
+    Attributes
+    ----------
+    shift
+        a.
+    slopes
+        Coefficients, lowest first, of the monic polynomial over Q whose roots are the b: ``(-b, 1)`` for a
+        single rational b, of higher degree for b that are conjugate over Q.
+    """
+
+    shift: Fraction
+    slopes: tuple[Fraction, ...]
+
+    @property
+    def count(self) -> int:
+        """How many exponents these are."""
+        return len(self.slopes) - 1
 
 
 @dataclass(frozen=True)
@@ -47,7 +66,12 @@ class Finding:
     exponents: tuple[tuple[str, tuple[str, ...]], ...]
 
 
-def split_exponent(value: Rational) -> Exponent | None:
+def linear(shift: Fraction, slope: Fraction) -> Exponent:
+    """The exponent ``shift + slope eps``."""
+    return Exponent(shift, (-slope, Fraction(1)))
+
+
+def split_exponent(value: Rational) -> tuple[Fraction, Fraction] | None:
     """(a, b) where the element is ``a + b eps``, None otherwise."""
     if not value.is_polynomial():
         return None
@@ -63,8 +87,16 @@ def split_exponent(value: Rational) -> Exponent | None:
 
 
 def exponent_text(exponent: Exponent) -> str:
-    """Text such as ``-1+2*eps``."""
-    a, b = exponent
+    """Text such as ``-1+2*eps``, or ``-1+b*eps with b^2-2 = 0``."""
+    a, b = exponent.shift, -exponent.slopes[0]
+    if exponent.count > 1:
+        terms = [
+            f"{c:+}" + ("" if k == 0 else "*b" if k == 1 else f"*b^{k}")
+            for k, c in reversed(tuple(enumerate(exponent.slopes[:-1])))
+            if c
+        ]
+        condition = f"b^{exponent.count}{''.join(terms)} = 0"
+        return f"{a}+b*eps with {condition}" if a else f"b*eps with {condition}"
     if not b:
         return str(a)
     slope = "eps" if b == 1 else "-eps" if b == -1 else f"{b}*eps"

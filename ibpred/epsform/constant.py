@@ -22,7 +22,13 @@ import flint
 from ibpred.epsform.blocks import Finding, moving
 from ibpred.epsform.content import conjugated, content
 from ibpred.epsform.form import Matrix
-from ibpred.epsform.intertwine import closure, intertwiners, representative
+from ibpred.epsform.intertwine import (
+    closure,
+    intertwiners,
+    modular_number,
+    reference_numbers,
+    representative,
+)
 from ibpred.epsform.matrices import Constants, inverse, lifted, part, product
 from ibpred.epsform.pencil import ModularMatrix
 from ibpred.epsform.places import Place, places_of
@@ -30,9 +36,6 @@ from ibpred.epsform.sampling import Sample, reconstruct_in_eps
 from ibpred.epsform.structure import reachable
 from ibpred.errors import UnfinishedError
 from ibpred.exact.rational import Rational, Ring
-
-REFERENCE_EPS = (Fraction(1, 7), Fraction(2, 11), Fraction(3, 13), Fraction(5, 17))
-"""Numbers mu where the constant matrices ``R_l(mu)/mu`` are taken; the first generic one serves."""
 
 
 @dataclass(frozen=True)
@@ -136,7 +139,7 @@ def factor_eps(
         return Stuck(reference, Finding(_no_constant(), ()))
 
     def sampler(number: int, prime: int) -> Sample | None:
-        left, right = images(number, prime), images(_modular(reference, prime), prime)
+        left, right = images(number, prime), images(modular_number(reference, prime), prime)
         if left is None or right is None:
             return None
         basis = intertwiners(left, right, blocks, support, seed)
@@ -169,18 +172,14 @@ def _no_constant() -> str:
     )
 
 
-def _modular(number: Fraction, prime: int) -> int:
-    return number.numerator * pow(number.denominator, -1, prime) % prime
-
-
 def _reference(
     images: object, blocks: Sequence[range], support: Sequence[Sequence[int]], prime: int, seed: int
 ) -> Fraction | int:
     """A reference value of eps that works at random eps, or the block that never does."""
     random = Random(seed)
     failures: list[int] = []
-    for number in REFERENCE_EPS:
-        right = images(_modular(number, prime), prime)  # type: ignore[operator]
+    for number in reference_numbers(()):
+        right = images(modular_number(number, prime), prime)  # type: ignore[operator]
         left = images(random.randrange(2, prime), prime)  # type: ignore[operator]
         if left is None or right is None:
             continue
@@ -250,7 +249,7 @@ def _free_of_constants(matrix: Matrix, blocks: Sequence[range], ring: Ring) -> C
 def _rational_scales(
     matrix: Matrix, blocks: Sequence[range], diagonal: Sequence[Matrix], ring: Ring
 ) -> list[Fraction]:
-    """Factor of each column that makes the row of the inverse primitive, its first coefficient positive."""
+    """Factor of each column that makes the row of the inverse primitive, its lowest coefficient positive."""
     scales: list[Fraction] = []
     for block, before in zip(blocks, diagonal, strict=True):
         own = product(inverse(part(matrix, block, block), ring), before, ring)
@@ -258,7 +257,7 @@ def _rational_scales(
             common = content(row, ring)
             top, bottom = common.numerator.content(), common.denominator.content()
             first = next(e for e in row if e)
-            sign = 1 if first.numerator.leading_coefficient() > 0 else -1
+            sign = 1 if first.numerator.coeffs()[-1] > 0 else -1
             scales.append(Fraction(sign * int(top), int(bottom)))
     return scales
 
@@ -275,6 +274,10 @@ def constant_term(value: Rational) -> Fraction:
 
     above, below = series(value.numerator), series(value.denominator)
     order = next(k for k, c in enumerate(below) if c)
-    rest = flint.fmpq_poly(below[order:])
-    quotient = (flint.fmpq_poly(above) * rest.inverse_series_trunc(order + 1))[order]
-    return Fraction(int(quotient.p), int(quotient.q))
+    below = below[order:]
+    quotient: list[Fraction] = []
+    for k in range(order + 1):
+        rest = Fraction(above[k] if k < len(above) else 0)
+        rest -= sum((quotient[k - m] * below[m] for m in range(1, min(k + 1, len(below)))), Fraction(0))
+        quotient.append(rest / below[0])
+    return quotient[order]

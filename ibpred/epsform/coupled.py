@@ -14,19 +14,18 @@ from ibpred.epsform.blocks import Block, Finding
 from ibpred.epsform.content import conjugated, content, primitive_columns
 from ibpred.epsform.findings import finding
 from ibpred.epsform.form import Matrix
-from ibpred.epsform.intertwine import intertwiners, representative
+from ibpred.epsform.image import Pattern, block_pattern, pencil_at, splits
+from ibpred.epsform.intertwine import intertwiners, modular_number, reference_numbers, representative
 from ibpred.epsform.local import Obstacle, Trouble
 from ibpred.epsform.matrices import Constants, inverse, lifted, product, scaled
-from ibpred.epsform.pencil import ModularMatrix, ModularPolynomial, Pencil, times_constant
-from ibpred.epsform.places import Place, places_of
+from ibpred.epsform.pencil import ModularMatrix, times_constant
 from ibpred.epsform.sampling import Sample, reconstruct_in_eps
 from ibpred.epsform.sections import Glued, glue
+from ibpred.epsform.spectrum import Slopes
 from ibpred.epsform.verify import canonical_matrix, satisfies
 from ibpred.errors import ReconstructionError, UnfinishedError
-from ibpred.exact.rational import Polynomial, Rational, Ring
+from ibpred.exact.rational import Rational
 
-REFERENCE_EPS = (Fraction(1, 7), Fraction(2, 11), Fraction(3, 13), Fraction(5, 17))
-"""Numbers mu where the constant matrices ``R_l(mu)/mu`` are taken; the first generic one serves."""
 BASE_POINTS = (2, 3, -2, -3, 5, 7, -5, 11, 13, 17)
 """Base points x = O where the change of basis is normalised; the first regular one serves."""
 PROBES = 3
@@ -34,19 +33,8 @@ PROBES = 3
 ATTEMPTS = 60
 """Samples tried to get that many useful ones."""
 
-Terms = tuple[tuple[int, int, int], ...]
-
-
-@dataclass(frozen=True)
-class _Pattern:
-    """A block as integer tables, ready for evaluation at (eps, prime)."""
-
-    ring: Ring
-    name: str
-    numerators: tuple[tuple[Terms, ...], ...]
-    denominator: Terms
-    places: tuple[Place, ...]
-    place_terms: tuple[Terms, ...]
+Residues = tuple[ModularMatrix, ...]
+"""``R_l / eps`` for each finite place."""
 
 
 @dataclass
@@ -55,7 +43,8 @@ class _Reference:
 
     eps: Fraction
     base: int
-    residues: dict[int, tuple[ModularMatrix, ...] | None] = field(default_factory=dict)
+    slopes: Slopes
+    residues: dict[int, Residues | None] = field(default_factory=dict)
 
 
 def solve_coupled(
@@ -82,8 +71,8 @@ def solve_coupled(
         If primes or samples do not suffice.
     """
     ring = matrix[0][0].ring
-    pattern = _pattern(matrix, ring, name)
-    usable = tuple(p for p in primes if _splits(pattern, p))
+    pattern = block_pattern(matrix, ring, name)
+    usable = tuple(p for p in primes if splits(pattern, p))
     if not usable:
         raise ReconstructionError(f"{subject}: the letters split modulo none of the {len(primes)} primes")
     reference = _probe(pattern, usable[0], seed, subject)
@@ -93,7 +82,7 @@ def solve_coupled(
 
     def sampler(eps: int, prime: int) -> Sample | None:
         right = _reference_residues(pattern, reference, prime)
-        here = _glued(pattern, eps, prime, reference.base)
+        here = _glued(pattern, eps, reference.slopes, prime, reference.base)
         if right is None or not isinstance(here, Glued):
             return None
         left = _letter_residues(here, pattern, eps, prime)
@@ -115,86 +104,16 @@ def solve_coupled(
     return Block(transformation, inverse(transformation, ring), residues)
 
 
-def _pattern(matrix: Matrix, ring: Ring, name: str) -> _Pattern:
-    common = ring.context.constant(1)
-    entries = [e for row in matrix for e in row]
-    for entry in entries:
-        common = common * (entry.denominator / common.gcd(entry.denominator))
-    places = places_of(entries, ring, name)
-    return _Pattern(
-        ring,
-        name,
-        tuple(
-            tuple(_terms(e.numerator * (common / e.denominator), ring, name) for e in row) for row in matrix
-        ),
-        _terms(common, ring, name),
-        places,
-        tuple(_terms(p.polynomial, ring, name) for p in places),
-    )
-
-
-def _terms(polynomial: Polynomial, ring: Ring, name: str) -> Terms:
-    """(power of eps, power of x, coefficient)."""
-    eps, x = ring.index("eps"), ring.index(name)
-    found = []
-    for exponents, coefficient in polynomial.to_dict().items():
-        if sum(map(int, exponents)) != int(exponents[eps]) + int(exponents[x]):
-            raise UnfinishedError(f"a coupled block may depend on eps and {name} only")
-        found.append((int(exponents[eps]), int(exponents[x]), int(coefficient)))
-    return tuple(found)
-
-
-def _image(terms: Terms, powers: list[int], prime: int) -> ModularPolynomial:
-    """A polynomial in x modulo the prime at the eps whose powers are given."""
-    values = [0] * (max((x for _, x, _ in terms), default=0) + 1)
-    for eps, x, coefficient in terms:
-        values[x] += coefficient * powers[eps]
-    return flint.nmod_poly([v % prime for v in values], prime)
-
-
-def _powers(pattern: _Pattern, eps: int, prime: int) -> list[int]:
-    tables = [*(t for row in pattern.numerators for t in row), pattern.denominator, *pattern.place_terms]
-    top = max((e for table in tables for e, _, _ in table), default=0)
-    powers = [1]
-    for _ in range(top):
-        powers.append(powers[-1] * eps % prime)
-    return powers
-
-
-def _points(pattern: _Pattern, powers: list[int], prime: int) -> list[tuple[int, int]] | None:
-    """(index of the place, root) for all roots; None where a place does not split or two meet."""
-    found: list[tuple[int, int]] = []
-    for index, (place, terms) in enumerate(zip(pattern.places, pattern.place_terms, strict=True)):
-        roots = _image(terms, powers, prime).roots()
-        if len(roots) != place.degree:
-            return None
-        found.extend((index, int(root)) for root, _ in sorted((int(r), m) for r, m in roots))
-    return found if len({point for _, point in found}) == len(found) else None
-
-
-def _splits(pattern: _Pattern, prime: int) -> bool:
-    """Whether the places that do not move have all their roots modulo the prime."""
-    for place, terms in zip(pattern.places, pattern.place_terms, strict=True):
-        if not place.moves and len(_image(terms, [1], prime).roots()) != place.degree:
-            return False
-    return True
-
-
-def _glued(pattern: _Pattern, eps: int, prime: int, base: int) -> Glued | Obstacle | None:
-    powers = _powers(pattern, eps, prime)
-    points = _points(pattern, powers, prime)
-    if points is None:
+def _glued(
+    pattern: Pattern, eps: int, slopes: Slopes | None, prime: int, base: int
+) -> Glued | Obstacle | None:
+    image = pencil_at(pattern, eps, prime)
+    if image is None or int(image[0].denominator(base % prime)) == 0:
         return None
-    numerators = tuple(tuple(_image(t, powers, prime) for t in row) for row in pattern.numerators)
-    pencil = Pencil(prime, numerators, _image(pattern.denominator, powers, prime))
-    if int(pencil.denominator(base % prime)) == 0:
-        return None
-    return glue(pencil, points, eps, base % prime)
+    return glue(*image, eps, slopes, base % prime)
 
 
-def _letter_residues(
-    glued: Glued, pattern: _Pattern, eps: int, prime: int
-) -> tuple[ModularMatrix, ...] | Obstacle:
+def _letter_residues(glued: Glued, pattern: Pattern, eps: int, prime: int) -> Residues | Obstacle:
     """``R_l / eps`` for each place; an obstacle if conjugate roots differ or a moving place survives."""
     inverse_eps = pow(eps, -1, prime)
     owners = [i for i, place in enumerate(pattern.places) for _ in range(place.degree)]
@@ -210,30 +129,32 @@ def _letter_residues(
     return tuple(found[i] for i in range(len(pattern.places)))
 
 
-def _reference_residues(
-    pattern: _Pattern, reference: _Reference, prime: int
-) -> tuple[ModularMatrix, ...] | None:
+def _reference_residues(pattern: Pattern, reference: _Reference, prime: int) -> Residues | None:
     if prime not in reference.residues:
-        eps = reference.eps.numerator * pow(reference.eps.denominator, -1, prime) % prime
-        here = _glued(pattern, eps, prime, reference.base)
+        eps = modular_number(reference.eps, prime)
+        here = _glued(pattern, eps, reference.slopes, prime, reference.base)
         found = _letter_residues(here, pattern, eps, prime) if isinstance(here, Glued) else None
         reference.residues[prime] = None if isinstance(found, Obstacle) else found
     return reference.residues[prime]
 
 
-def _probe(pattern: _Pattern, prime: int, seed: int, subject: str) -> _Reference | Obstacle:
+def _probe(pattern: Pattern, prime: int, seed: int, subject: str) -> _Reference | Obstacle:
     """The reference point, or the obstacle on which several samples agree."""
     random = Random(seed)
-    eps = random.randrange(2, prime)
-    denominator = _image(pattern.denominator, _powers(pattern, eps, prime), prime)
-    base = next((b for b in BASE_POINTS if int(denominator(b % prime))), None)
-    if base is None:
-        raise UnfinishedError(f"{subject}: no regular base point among {BASE_POINTS}")
     obstacles: list[Obstacle] = []
-    useful: list[tuple[int, tuple[ModularMatrix, ...]]] = []
+    useful: list[Residues] = []
+    slopes: Slopes = frozenset()
+    base: int | None = None
     for _ in range(ATTEMPTS):
         eps = random.randrange(2, prime)
-        here = _glued(pattern, eps, prime, base)
+        image = pencil_at(pattern, eps, prime)
+        if image is None:
+            continue
+        if base is None:
+            base = next((b for b in BASE_POINTS if int(image[0].denominator(b % prime))), None)
+            if base is None:
+                raise UnfinishedError(f"{subject}: every base point among {BASE_POINTS} is singular")
+        here = _glued(pattern, eps, slopes or None, prime, base)
         if here is None:
             continue
         found = _letter_residues(here, pattern, eps, prime) if isinstance(here, Glued) else here
@@ -241,39 +162,42 @@ def _probe(pattern: _Pattern, prime: int, seed: int, subject: str) -> _Reference
             obstacles.append(found)
             if obstacles.count(found) == PROBES:
                 return found
-        else:
-            useful.append((eps, found))
-            if len(useful) == PROBES:
-                break
-    if len(useful) < PROBES:
-        raise UnfinishedError(
-            f"{subject}: samples at different eps disagree about its singular points, or its moving poles "
-            "rarely have roots modulo the prime; choose masters whose denominators do not mix eps with "
-            f"{pattern.name}"
-        )
-    return _reference(pattern, prime, base, useful, seed, subject)
+            continue
+        useful.append(found)
+        slopes |= {e.slopes for _, exponents in here.exponents for e in exponents}
+        if len(useful) == PROBES:
+            return _reference(pattern, prime, base, useful, slopes, seed, subject)
+    raise UnfinishedError(
+        f"{subject}: samples at different eps disagree about its singular points, or its moving poles "
+        "rarely have roots modulo the prime; choose masters whose denominators do not mix eps with "
+        f"{pattern.name}"
+    )
 
 
 def _reference(
-    pattern: _Pattern,
+    pattern: Pattern,
     prime: int,
     base: int,
-    useful: Sequence[tuple[int, tuple[ModularMatrix, ...]]],
+    useful: Sequence[Residues],
+    slopes: Slopes,
     seed: int,
     subject: str,
 ) -> _Reference | Obstacle:
-    size = useful[0][1][0].nrows()
+    """A reference value of eps that works for all samples; an obstacle if none does."""
+    size = useful[0][0].nrows()
     block = [range(size)]
     support = tuple(tuple(range(size)) for _ in range(size))
-    for number in REFERENCE_EPS:
-        reference = _Reference(number, base)
+    tried = False
+    for number in reference_numbers(slopes):
+        reference = _Reference(number, base, slopes)
         right = _reference_residues(pattern, reference, prime)
         if right is None:
             continue
-        for _, left in useful:
-            if isinstance(intertwiners(left, right, block, support, seed), range):
-                return Obstacle(Trouble.CONSTANT, -1, (), ())
-        return reference
+        tried = True
+        if not any(isinstance(intertwiners(left, right, block, support, seed), range) for left in useful):
+            return reference
+    if tried:
+        return Obstacle(Trouble.CONSTANT, -1, (), ())
     raise UnfinishedError(f"{subject}: every reference value of eps is special")
 
 
@@ -306,7 +230,7 @@ def _sample(
 
 
 def _unpacked(
-    shape: Any, functions: Sequence[Rational], pattern: _Pattern, size: int
+    shape: Any, functions: Sequence[Rational], pattern: Pattern, size: int
 ) -> tuple[Matrix, Mapping[str, Constants]]:
     """Back from the flat list: T C, and the residues of the letters that occur."""
     ring = pattern.ring

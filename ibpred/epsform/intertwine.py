@@ -7,7 +7,9 @@ is linear in C: Lee, arXiv:1411.0911).
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Iterator, Sequence
+from fractions import Fraction
+from itertools import combinations
 from random import Random
 
 import flint
@@ -16,6 +18,31 @@ from ibpred.epsform.pencil import ModularMatrix, kernel
 
 Positions = Sequence[Sequence[int]]
 """For each row the columns where a matrix may be nonzero, ascending."""
+
+
+REFERENCE_DENOMINATORS = (7, 11, 13, 17, 19, 31, 101)
+"""The numbers mu are one over these: small, so that the matrices at mu stay simple."""
+
+
+def reference_numbers(slopes: Iterable[Sequence[Fraction]]) -> Iterator[Fraction]:
+    """Numbers mu at which exponents with the given slopes differ by no integer but zero.
+
+    Parameters
+    ----------
+    slopes
+        Polynomials of slopes as in `Exponent`; only rational slopes matter here.
+    """
+    rational = sorted({-s[0] for s in slopes if len(s) == 2})
+    for denominator in REFERENCE_DENOMINATORS:
+        number = Fraction(1, denominator)
+        differences = ((b - a) * number for a, b in combinations(rational, 2))
+        if all(d.denominator > 1 for d in differences):
+            yield number
+
+
+def modular_number(number: Fraction, prime: int) -> int:
+    """A rational number modulo a prime."""
+    return number.numerator * pow(number.denominator, -1, prime) % prime
 
 
 def closure(patterns: Sequence[Sequence[bool]], blocks: Sequence[range]) -> tuple[tuple[int, ...], ...]:

@@ -12,6 +12,7 @@ from dataclasses import dataclass
 from enum import Enum
 from fractions import Fraction
 from itertools import count
+from math import prod
 
 import flint
 
@@ -19,6 +20,7 @@ from ibpred.epsform.blocks import Exponent
 from ibpred.epsform.pencil import (
     Frame,
     ModularMatrix,
+    ModularPolynomial,
     Pencil,
     column_space,
     completed,
@@ -28,13 +30,7 @@ from ibpred.epsform.pencil import (
     sheared,
     sheared_frame,
 )
-
-LARGEST_INTEGER = 120
-"""Exponents are recognised up to this size (steps at finite points push integers to infinity)."""
-LARGEST_SLOPE = 1000
-"""Numerator and denominator of b in ``a + b eps`` are recognised up to this size."""
-ROOT_ORDERS = (1, 2, 3, 4, 5, 6)
-"""Denominators of a that are recognised."""
+from ibpred.epsform.spectrum import Slopes, spectrum
 
 
 class Trouble(Enum):
@@ -80,55 +76,6 @@ class ObstacleError(Exception):
         self.detail = detail
 
 
-def small_fraction(residue: int, prime: int, bound: int) -> Fraction | None:
-    """The fraction with numerator and denominator up to a bound, if there is one."""
-    above, rest, cofactor_above, cofactor = prime, residue % prime, 0, 1
-    while rest > bound:
-        quotient = above // rest
-        above, rest = rest, above - quotient * rest
-        cofactor_above, cofactor = cofactor, cofactor_above - quotient * cofactor
-    if abs(cofactor) > bound:
-        return None
-    return Fraction(rest, cofactor)
-
-
-def recognise(value: int, eps: int, prime: int) -> Exponent | None:
-    """(a, b) with ``a + b eps = value`` modulo the prime, simplest a first."""
-    slope = pow(eps, -1, prime)
-    for root in ROOT_ORDERS:
-        inverse = pow(root, -1, prime)
-        for size in range(LARGEST_INTEGER * root + 1):
-            if root > 1 and size % root == 0:
-                continue
-            for numerator in (size, -size) if size else (0,):
-                b = small_fraction((value - numerator * inverse) * slope, prime, LARGEST_SLOPE)
-                if b is not None:
-                    return Fraction(numerator, root), b
-    return None
-
-
-def spectrum(residue: ModularMatrix, eps: int) -> list[tuple[int, int, Exponent]]:
-    """Eigenvalues of a residue: (value, multiplicity, exponent).
-
-    Raises
-    ------
-    ObstacleError
-        Where an eigenvalue is not of the form a + b eps.
-    """
-    prime = int(residue.modulus())
-    found = []
-    total = 0
-    for root, multiplicity in residue.charpoly().roots():
-        exponent = recognise(int(root), eps, prime)
-        if exponent is None:
-            raise ObstacleError(Trouble.EXPONENT)
-        found.append((int(root), int(multiplicity), exponent))
-        total += int(multiplicity)
-    if total < residue.nrows():
-        raise ObstacleError(Trouble.EXPONENT)
-    return found
-
-
 def saturated(pencil: Pencil, frame: Frame, point: int) -> tuple[Pencil, Frame]:
     """Lower the pole at a point to order one.
 
@@ -158,24 +105,30 @@ def residue_at(pencil: Pencil, point: int) -> ModularMatrix:
     return leading_matrix(pencil, point)
 
 
-def _moved(residue: ModularMatrix, roots: list[int]) -> tuple[ModularMatrix, int]:
-    """Basis adapted to the generalised eigenspaces of some eigenvalues (first) and of the others."""
+def _moved(residue: ModularMatrix, factor: ModularPolynomial) -> tuple[ModularMatrix, int]:
+    """Basis adapted to the generalised eigenspaces of the roots of a polynomial (first) and of the others."""
     size, prime = residue.nrows(), int(residue.modulus())
     unit = flint.nmod_mat(size, size, [int(i == j) for i in range(size) for j in range(size)], prime)
+    value = flint.nmod_mat(size, size, prime)
+    for coefficient in reversed(factor.coeffs()):
+        value = value * residue + unit * int(coefficient)
     power = unit
-    for root in roots:
-        factor = residue - unit * root
-        for _ in range(size):
-            power = power * factor
+    for _ in range(size):
+        power = power * value
     moved = kernel(power)
     vectors = [*moved, *column_space(power)]
     return flint.nmod_mat(size, size, [e for v in vectors for e in v], prime).transpose(), len(moved)
 
 
 def normalised(
-    pencil: Pencil, frame: Frame, point: int, eps: int
+    pencil: Pencil, frame: Frame, point: int, eps: int, slopes: Slopes | None
 ) -> tuple[Pencil, Frame, tuple[Exponent, ...]]:
     """Bring one point to a simple pole with exponents proportional to eps.
+
+    Parameters
+    ----------
+    slopes
+        The slopes to expect where eps is a given number, None where it is random (see `spectrum`).
 
     Returns
     -------
@@ -193,16 +146,18 @@ def normalised(
     first: tuple[Exponent, ...] = ()
     for step in count():
         residue = residue_at(pencil, point)
-        eigenvalues = spectrum(residue, eps)
+        eigenvalues = spectrum(residue.charpoly(), eps, slopes)
+        if eigenvalues is None:
+            raise ObstacleError(Trouble.EXPONENT)
         if step == 0:
-            first = tuple(sorted(e for _, m, e in eigenvalues for _ in range(m)))
-            fractions = [a for a, _ in first if a.denominator > 1]
+            first = tuple(sorted(e.exponent for e in eigenvalues for _ in range(e.multiplicity)))
+            fractions = [e.shift for e in first if e.shift.denominator > 1]
             if fractions:
                 raise ObstacleError(Trouble.FRACTION, (min(fractions, key=lambda a: (abs(a), a)),))
         for power in (1, -1):
-            roots = [value for value, _, (a, _) in eigenvalues if a * power > 0]
-            if roots:
-                basis, moved = _moved(residue, roots)
+            moving = [e.factor for e in eigenvalues if e.exponent.shift * power > 0]
+            if moving:
+                basis, moved = _moved(residue, prod(moving))
                 pencil = sheared(pencil, basis, moved, power, point)
                 frame = sheared_frame(frame, basis, moved, power, point)
                 break

@@ -23,10 +23,10 @@ from ibpred.epsform.pencil import (
     PolynomialMatrix,
     at_infinity,
     kernel,
-    pole_order,
     times_constant,
     unit_frame,
 )
+from ibpred.epsform.spectrum import Slopes
 
 
 @dataclass(frozen=True)
@@ -49,7 +49,9 @@ class Glued:
     exponents: tuple[tuple[int, tuple[Exponent, ...]], ...]
 
 
-def glue(pencil: Pencil, points: Sequence[tuple[int, int]], eps: int, base: int) -> Glued | Obstacle | None:
+def glue(
+    pencil: Pencil, points: Sequence[tuple[int, int]], eps: int, slopes: Slopes | None, base: int
+) -> Glued | Obstacle | None:
     """Fuchsian form with exponents proportional to eps, normalised to one at a base point.
 
     Parameters
@@ -58,6 +60,8 @@ def glue(pencil: Pencil, points: Sequence[tuple[int, int]], eps: int, base: int)
         The system at the numeric `eps`.
     points
         (index of the place, finite point) for each pole.
+    slopes
+        Slopes to expect where eps is a given number, None where it is random.
     base
         A regular point.
 
@@ -71,23 +75,23 @@ def glue(pencil: Pencil, points: Sequence[tuple[int, int]], eps: int, base: int)
     frame = unit_frame(pencil.size, pencil.prime)
     try:
         for current, point in points:
-            pencil, frame, found = normalised(pencil, frame, point, eps)
+            pencil, frame, found = normalised(pencil, frame, point, eps, slopes)
             exponents.append((current, found))
         current = -1
         infinity = at_infinity(pencil)
         start = unit_frame(pencil.size, pencil.prime)
-        _, frame_inf, found = normalised(infinity, start, 0, eps)
+        _, frame_inf, found = normalised(infinity, start, 0, eps, slopes)
         exponents.append((current, found))
     except ObstacleError as met:
         return Obstacle(met.trouble, current, met.detail, tuple(exponents))
     sections = global_sections(frame_inf, 0)
     size, prime = pencil.size, pencil.prime
-    if len(sections) != size:
+    at_base = [int(e(base)) for g in sections for e in g]
+    if len(sections) != size or flint.nmod_mat(size, size, at_base, prime).rank() < size:
+        # n sections that are dependent at one point are dependent everywhere, or vanish somewhere:
+        # both happen only for a nontrivial bundle, since its degree is zero
         kind = tuple(map(Fraction, splitting_type(frame_inf)))
         return Obstacle(Trouble.BUNDLE, -1, kind, tuple(exponents))
-    at_base = flint.nmod_mat(size, size, [int(e(base)) for g in sections for e in g], prime).transpose()
-    if at_base.rank() < size:
-        return None
     gluing = tuple(zip(*sections, strict=True))
     numerators = _product(frame.numerators, gluing)
     scale = int(frame.denominator(base))
@@ -170,11 +174,6 @@ def splitting_type(frame: Frame) -> tuple[int, ...]:
         degrees.extend([-twist] * (here - 2 * last + before))
         before, last, twist = last, here, twist + 1
     return tuple(degrees)
-
-
-def regular_base(pencil: Pencil, candidates: Sequence[int]) -> int | None:
-    """The first candidate that is no pole."""
-    return next((c for c in candidates if pole_order(pencil, c) == 0), None)
 
 
 def _valuation(polynomial: ModularPolynomial) -> int:

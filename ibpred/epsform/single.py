@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+from fractions import Fraction
+
 from ibpred.epsform.blocks import (
     Block,
-    Exponent,
     Finding,
     exponent_text,
     fractional,
     irregular,
+    linear,
     moving,
     no_exponent,
     split_exponent,
@@ -42,7 +44,7 @@ def solve_single(value: Rational, name: str) -> Block | Finding:
         exponent = split_exponent(residue[0])
         if exponent is None:
             return Finding(no_exponent(str(residue[0]), place.text()), tuple(exponents))
-        exponents.append((place.text(), (exponent_text(exponent),)))
+        exponents.append((place.text(), (exponent_text(linear(*exponent)),)))
         problem = _check(exponent, place.text(), place.moves)
         if problem:
             return Finding(problem, tuple(exponents))
@@ -55,7 +57,7 @@ def solve_single(value: Rational, name: str) -> Block | Finding:
     return Block(((factor,),), ((1 / factor,),), residues)
 
 
-def _check(exponent: Exponent, point: str, moves: bool) -> str | None:
+def _check(exponent: tuple[Fraction, Fraction], point: str, moves: bool) -> str | None:
     if exponent[0].denominator != 1:
         return fractional(exponent[0], point)
     return moving(point) if moves and exponent[1] else None

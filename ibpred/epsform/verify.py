@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from fractions import Fraction
 from random import Random
 
 import flint
 
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix
+from ibpred.epsform.intertwine import modular_number
 from ibpred.epsform.matrices import (
     Constants,
     added,
@@ -126,10 +126,6 @@ def _holds_at(
     total = flint.nmod_mat(size, size, prime)
     for letter, constants in zip(form.letters, form.matrices, strict=True):
         log = (letter.derivative(name) / letter).modular(values, prime)
-        flat = [_residue(value, prime) * eps * log for row in constants for value in row]
+        flat = [modular_number(value, prime) * eps * log for row in constants for value in row]
         total = total + flint.nmod_mat(size, size, [v % prime for v in flat], prime)
     return bool(back * t == unit and a * t - change == t * total)  # type: ignore[operator]
-
-
-def _residue(value: Fraction, prime: int) -> int:
-    return value.numerator * pow(value.denominator, -1, prime) % prime
