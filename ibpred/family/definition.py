@@ -83,6 +83,25 @@ class Graph:
 
 
 @dataclass(frozen=True)
+class Crossing:
+    """A substitution of the external momenta that can be undone by substituting the invariants.
+
+    Attributes
+    ----------
+    name
+        As in the file.
+    momenta
+        E x E: ``p_e -> sum_f momenta[e][f] p_f``.
+    invariants
+        For each invariant of the family, in its order, what it becomes; in the kinematic ring.
+    """
+
+    name: str
+    momenta: tuple[tuple[Fraction, ...], ...]
+    invariants: tuple[Rational, ...]
+
+
+@dataclass(frozen=True)
 class FamilyDefinition:
     """An integral family, complete: every scalar product of a loop momentum is a combination of lines.
 
@@ -106,6 +125,8 @@ class FamilyDefinition:
         L(L+1)/2 + L E lines, numerators last if they were completed automatically.
     graph
         The graph, where one is given.
+    crossings
+        Crossings under which the family's integrals are wanted too.
     """
 
     name: str
@@ -118,6 +139,7 @@ class FamilyDefinition:
     gram: tuple[tuple[Rational, ...], ...]
     lines: tuple[Line, ...]
     graph: Graph | None
+    crossings: tuple[Crossing, ...] = ()
 
     @property
     def kinematic_ring(self) -> Ring:

@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 
 from ibpred.errors import ExpressionError, FamilyFileError
 from ibpred.exact.rational import Rational, Ring, ring
+from ibpred.family.crossings import read_crossings
 from ibpred.family.definition import FamilyDefinition, Invariant
 from ibpred.family.kinematics import (
     ContradictionError,
@@ -22,7 +23,7 @@ from ibpred.family.reading_graph import read_edges, read_joins, read_loop_names
 from ibpred.family.reading_lines import check_independent, read_lines
 from ibpred.family.source import Path, Source, parse_source
 
-SECTIONS = ("title", "dimension", "momenta", "kinematics", "line", "edge", "legs")
+SECTIONS = ("title", "dimension", "momenta", "kinematics", "line", "edge", "legs", "crossings")
 RESERVED = {"d": "the space-time dimension", "eps": "the regulator"}
 
 _IDENTIFIER = re.compile(r"[A-Za-z_][A-Za-z_0-9]*\Z")
@@ -90,6 +91,7 @@ def read_family(text: str, file: str, name: str) -> FamilyDefinition:
         gram=gram,
         lines=completed(records, space),
         graph=graph,
+        crossings=read_crossings(source, external, gram, momenta.ring),
     )
     if not symanzik(family)[0]:
         raise source.error(
