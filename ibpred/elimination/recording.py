@@ -206,13 +206,14 @@ def _assemble(table: CoefficientTable, wanted: Sequence[int], values: _Values) -
     plan = plan_table(
         CoefficientTable(table.variables, table.exponents, np.asarray(table.values, np.int64)[inputs])
     )
-    output_slot = np.where(values.output_node >= 0, slot[values.output_node], -1)
+    output_slot = np.full(len(values.output_node), -1, np.int32)
+    output_slot[values.output_node >= 0] = slot[real]
     return Tape(
         variables=tuple(table.variables),
         wanted=tuple(int(c) for c in wanted),
         masters=values.masters,
         outputs=values.outputs,
-        output_slot=output_slot.astype(np.int32),
+        output_slot=output_slot,
         slots=int(slots),
         blocks=plan.blocks,
         monomial_products=plan.products,
