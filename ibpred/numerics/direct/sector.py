@@ -1,0 +1,205 @@
+"""One sector: from cones to integrands over the unit cube that need only logarithmic subtractions."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ibpred.errors import InputError
+from ibpred.numerics.direct.fan import Cone
+from ibpred.numerics.direct.polynomial import (
+    Terms,
+    add,
+    derivative,
+    multiply,
+    scaled,
+    without,
+)
+
+Line = tuple[float, float]
+"""A number ``a + b*eps``."""
+
+
+@dataclass(frozen=True)
+class Integrand:
+    """``series(eps) * prod_j t_j^(a_j + b_j eps) * Q * U^u * F^f`` over the unit cube.
+
+    Attributes
+    ----------
+    series
+        Coefficients of the prefactor, a power series in eps.
+    exponents
+        (a_j, b_j) of each variable.
+    q, u, f
+        Polynomials in t; U and F are positive on the closed cube.
+    u_power, f_power
+        Powers of U and F.
+    """
+
+    series: tuple[float, ...]
+    exponents: tuple[Line, ...]
+    q: Terms
+    u: Terms
+    f: Terms
+    u_power: Line
+    f_power: Line
+
+
+def on_cone(whole: Integrand, cone: Cone) -> Integrand:
+    """An integrand over positive x modulo scaling, restricted to one cone.
+
+    `whole` has powers ``x_i^(a_i + b_i eps)`` of the measure ``dx_i/x_i``, the last variable set to one;
+    the result has ``t_j^(a_j + b_j eps)`` of the measure ``dt_j``.
+    """
+    rays = cone.rays
+    shifts: dict[str, NDArray[np.int64]] = {}
+    images: dict[str, Terms] = {}
+    for name, terms in (("q", whole.q), ("u", whole.u), ("f", whole.f)):
+        moved = np.array(list(terms), dtype=np.int64).reshape(len(terms), len(rays)) @ rays.T
+        shifts[name] = moved.min(axis=0)
+        image: Terms = {}
+        for row, c in zip(moved - shifts[name], terms.values(), strict=True):
+            key = tuple(int(e) for e in row)
+            image[key] = image.get(key, 0.0) + c
+        images[name] = image
+    exponents = []
+    for j, ray in enumerate(rays):
+        line = np.array([-1.0, 0.0])
+        for r, power in zip(ray, whole.exponents, strict=True):
+            line += r * np.array(power)
+        line += shifts["q"][j] * np.array([1.0, 0.0])
+        line += shifts["u"][j] * np.array(whole.u_power) + shifts["f"][j] * np.array(whole.f_power)
+        exponents.append((float(line[0]), float(line[1])))
+    return Integrand(
+        tuple(c * cone.volume for c in whole.series),
+        tuple(exponents),
+        images["q"],
+        images["u"],
+        images["f"],
+        whole.u_power,
+        whole.f_power,
+    )
+
+
+def logarithmic(integrand: Integrand) -> list[Integrand]:
+    """Raise all exponents below -1 by integration by parts in t.
+
+    ``int_0^1 t^(e-1) g dt = g(1)/e - 1/e int_0^1 t^e g' dt`` for e = a + 1 + b eps with a + 1 < 0.
+
+    Raises
+    ------
+    InputError
+        If an exponent is -1 at eps and stays there: the integral is not regulated.
+    """
+    for j, (a, b) in enumerate(integrand.exponents):
+        if abs(a + 1) < 1e-9 and b == 0.0:
+            raise InputError("the integral has a divergence that dimensional regularisation does not regulate")
+        if a < -1 - 1e-9:
+            return [part for raised in _raised(integrand, j) for part in logarithmic(raised)]
+    return [integrand]
+
+
+def _raised(g: Integrand, j: int) -> list[Integrand]:
+    a, b = g.exponents[j]
+    inverse = _divided(g.series, (a + 1, b))
+    rest = (*g.exponents[:j], *g.exponents[j + 1 :])
+    parts = []
+    boundary = without(g.q, j, value=1)
+    if boundary:
+        u, f = without(g.u, j, value=1), without(g.f, j, value=1)
+        parts.append(Integrand(inverse, rest, boundary, u, f, g.u_power, g.f_power))
+    higher = (*g.exponents[:j], (a + 1, b), *g.exponents[j + 1 :])
+    minus = tuple(-c for c in inverse)
+    plain = derivative(g.q, j)
+    if plain:
+        parts.append(Integrand(minus, higher, plain, g.u, g.f, g.u_power, g.f_power))
+    from_u = multiply(g.q, derivative(g.u, j))
+    if from_u and g.u_power != (0.0, 0.0):
+        series = _times(minus, g.u_power)
+        power = (g.u_power[0] - 1, g.u_power[1])
+        parts.append(Integrand(series, higher, from_u, g.u, g.f, power, g.f_power))
+    from_f = multiply(g.q, derivative(g.f, j))
+    if from_f and g.f_power != (0.0, 0.0):
+        series = _times(minus, g.f_power)
+        power = (g.f_power[0] - 1, g.f_power[1])
+        parts.append(Integrand(series, higher, from_f, g.u, g.f, g.u_power, power))
+    return [_factored(part) for part in parts]
+
+
+def _factored(g: Integrand) -> Integrand:
+    """Move a common monomial of Q into the exponents."""
+    lowest = tuple(min(e[j] for e in g.q) for j in range(len(g.exponents)))
+    if not any(lowest):
+        return g
+    q = {tuple(x - y for x, y in zip(e, lowest, strict=True)): c for e, c in g.q.items()}
+    exponents = tuple((a + k, b) for (a, b), k in zip(g.exponents, lowest, strict=True))
+    return Integrand(g.series, exponents, q, g.u, g.f, g.u_power, g.f_power)
+
+
+def differentiated(g: Integrand, i: int, order: int) -> list[Integrand]:
+    """``(-d/dx_i)^order`` at x_i = 0: a line with power -order, its parameter dropped.
+
+    Follows from ``x^(a-1)/Gamma(a)`` tending to the derivative of order -a of the delta function.
+    """
+    parts = [g]
+    for _ in range(order):
+        new = []
+        for part in parts:
+            minus = tuple(-c for c in part.series)
+            for series, q, u_power, f_power in (
+                (minus, derivative(part.q, i), part.u_power, part.f_power),
+                (
+                    _times(minus, part.u_power),
+                    multiply(part.q, derivative(part.u, i)),
+                    (part.u_power[0] - 1, part.u_power[1]),
+                    part.f_power,
+                ),
+                (
+                    _times(minus, part.f_power),
+                    multiply(part.q, derivative(part.f, i)),
+                    part.u_power,
+                    (part.f_power[0] - 1, part.f_power[1]),
+                ),
+            ):
+                if q and any(series):
+                    new.append(Integrand(series, part.exponents, q, part.u, part.f, u_power, f_power))
+        parts = new
+    rest = (*g.exponents[:i], *g.exponents[i + 1 :])
+    result = []
+    for part in parts:
+        q, u, f = (without(terms, i, value=0) for terms in (part.q, part.u, part.f))
+        if q:
+            result.append(Integrand(part.series, rest, q, u, f, part.u_power, part.f_power))
+    return _collected(result)
+
+
+def _collected(parts: list[Integrand]) -> list[Integrand]:
+    """Join parts that differ in Q by a common number only."""
+    found: dict[object, Integrand] = {}
+    for part in parts:
+        lead = next(k for k, c in enumerate(part.series) if c)
+        unit = tuple(round(c / part.series[lead], 12) for c in part.series)
+        key = (unit, part.exponents, part.u_power, part.f_power)
+        if key in found:
+            old = found[key]
+            ratio = part.series[lead] / old.series[lead]
+            q = add(old.q, scaled(part.q, ratio))
+            found[key] = Integrand(old.series, old.exponents, q, old.u, old.f, old.u_power, old.f_power)
+        else:
+            found[key] = part
+    return [part for part in found.values() if part.q]
+
+
+def _times(series: tuple[float, ...], line: Line) -> tuple[float, ...]:
+    a, b = line
+    return tuple(a * c + b * (series[k - 1] if k else 0.0) for k, c in enumerate(series))
+
+
+def _divided(series: tuple[float, ...], line: Line) -> tuple[float, ...]:
+    a, b = line
+    result: list[float] = []
+    for k, c in enumerate(series):
+        result.append((c - b * (result[k - 1] if k else 0.0)) / a)
+    return tuple(result)
