@@ -163,7 +163,7 @@ def test_a_wrong_tape_is_found_out() -> None:
 
 
 def test_same_input_same_bytes() -> None:
-    system = random_system(33, 50, 60, 6)
+    system = random_system(21, 45, 60, 6)
     point = [10**14 + 31, 10**13 + 37]
     first = record(system, [59, 50], point, P)
     second = record(system, [59, 50], point, P)
@@ -173,7 +173,7 @@ def test_same_input_same_bytes() -> None:
 
 
 def test_arrays_round_trip_and_damage_is_found() -> None:
-    system = random_system(34, 45, 60, 6)
+    system = random_system(21, 45, 60, 6)
     tape = record(system, [59, 54], [10**14 + 31, 10**13 + 37], P)
     arrays = tape.to_arrays()
     again = Tape.from_arrays(arrays)
