@@ -6,14 +6,15 @@ from collections.abc import Mapping, Sequence
 from fractions import Fraction
 
 from ibpred.boundary.conditions import Master
-from ibpred.boundary.expansion import ClosedForm, on_line
+from ibpred.boundary.expansion import ClosedForm, expand, on_line
 from ibpred.boundary.fix import BoundaryProblem
 from ibpred.boundary.gamma import gamma_form
 from ibpred.boundary.regions import Behaviour, behaviour, parametric_family
 from ibpred.epsform.form import EpsilonForm
-from ibpred.errors import InputError
-from ibpred.exact.rational import Rational, Ring
+from ibpred.errors import BoundaryError, InputError
+from ibpred.exact.rational import Rational, Ring, ring
 from ibpred.family.definition import FamilyDefinition, Powers
+from ibpred.iterated.series import Series
 from ibpred.iterated.solution import letter_roots
 from ibpred.iterated.transport import INFINITY, Point
 
@@ -60,6 +61,49 @@ def closed_form_on_line(
     return None if form is None else on_line(form, values, field)
 
 
+def one_scale_values(
+    family: FamilyDefinition, masters: Sequence[Powers], signs: Mapping[str, int], order: int
+) -> tuple[Series, ...]:
+    """Laurent expansions of the masters of a family without a ratio, the unit at its Euclidean sign.
+
+    Parameters
+    ----------
+    family
+        A family with at most one invariant.
+    masters
+        Their powers.
+    signs
+        Sign of the unit in the Euclidean region.
+    order
+        Highest power of eps.
+
+    Raises
+    ------
+    InputError
+        If the family has a ratio.
+    BoundaryError
+        If a master is no product of Gamma functions (names it), or needs a constant that is not known
+        exactly.
+    """
+    field = ring(("eps",))
+    values = line_values(family, signs, field, None)
+    found = []
+    for powers in masters:
+        closed = closed_form_on_line(family, powers, values, field)
+        if closed is None:
+            raise BoundaryError(
+                f"{master_label(family, powers)} is no product of Gamma functions, and without a ratio no "
+                "differential equation fixes its value"
+            )
+        found.append(expand(closed, order))
+    return tuple(found)
+
+
+def master_label(family: FamilyDefinition, powers: Powers) -> str:
+    """``family(1,1,0)``, for messages."""
+    return f"{family.name}({','.join(map(str, powers))})"
+
+
 def boundary_problem(
     family: FamilyDefinition,
     masters: Sequence[Powers],
@@ -96,7 +140,7 @@ def boundary_problem(
     points: set[Point] = {Fraction(0), INFINITY, *(root for root in roots if root is not None)}
     known = []
     for powers in masters:
-        label = f"{family.name}({','.join(map(str, powers))})"
+        label = master_label(family, powers)
         closed = closed_form_on_line(family, powers, values, form.ring)
         behaviours: dict[Point, Behaviour] = {}
         if closed is None:
