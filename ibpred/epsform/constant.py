@@ -20,7 +20,8 @@ from random import Random
 import flint
 
 from ibpred.epsform.blocks import Finding, moving
-from ibpred.epsform.content import conjugated, content
+from ibpred.epsform.content import content
+from ibpred.epsform.decompose import conjugated, constants, exact_matrix
 from ibpred.epsform.form import Matrix
 from ibpred.epsform.intertwine import (
     closure,
@@ -241,9 +242,7 @@ def _free_of_constants(matrix: Matrix, blocks: Sequence[range], ring: Ring) -> C
             rows.append(
                 [Fraction(int(i == j)) if j in block else constant_term(e) for j, e in enumerate(row)]
             )
-    flat = [flint.fmpq(v.numerator, v.denominator) for row in rows for v in row]
-    table = flint.fmpq_mat(size, size, flat).inv().tolist()
-    return tuple(tuple(Fraction(int(v.p), int(v.q)) for v in row) for row in table)
+    return constants(exact_matrix(rows).inv())
 
 
 def _rational_scales(

@@ -8,8 +8,9 @@ from math import gcd, lcm
 
 import flint
 
+from ibpred.epsform.decompose import constants
 from ibpred.epsform.form import Matrix
-from ibpred.epsform.matrices import Constants
+from ibpred.epsform.matrices import Constants, lifted, product, scaled
 from ibpred.exact.rational import Polynomial, Rational, Ring
 
 
@@ -58,7 +59,7 @@ def primitive_columns(matrix: Matrix, ring: Ring) -> Constants:
     The coefficients of the columns as polynomials in eps and x, over one common denominator, are brought
     to reduced echelon form over Q, the first rows of the matrix first; each column is then made primitive.
     """
-    size = len(matrix)
+    columns = len(matrix[0])
     common = ring.context.constant(1)
     for row in matrix:
         for entry in row:
@@ -66,14 +67,13 @@ def primitive_columns(matrix: Matrix, ring: Ring) -> Constants:
     tables = [[(entry.numerator * (common / entry.denominator)).to_dict() for entry in row] for row in matrix]
     keys = [(i, key) for i, row in enumerate(tables) for key in sorted({k for table in row for k in table})]
     rows = [
-        [int(tables[i][j].get(key, 0)) for i, key in keys] + [int(j == k) for k in range(size)]
-        for j in range(size)
+        [int(tables[i][j].get(key, 0)) for i, key in keys] + [int(j == k) for k in range(columns)]
+        for j in range(columns)
     ]
-    width = len(keys) + size
-    reduced, _ = flint.fmpq_mat(size, width, [e for row in rows for e in row]).rref()
+    width = len(keys) + columns
+    reduced, _ = flint.fmpq_mat(columns, width, [e for row in rows for e in row]).rref()
     found = []
-    for j in range(size):
-        values = [Fraction(int(reduced[j, k].p), int(reduced[j, k].q)) for k in range(width)]
+    for values in constants(reduced):
         head = values[: len(keys)]
         scale = Fraction(lcm(*(v.denominator for v in head)), 1)
         scale /= gcd(*(int(v * scale) for v in head))
@@ -81,19 +81,33 @@ def primitive_columns(matrix: Matrix, ring: Ring) -> Constants:
     return tuple(zip(*found, strict=True))
 
 
-def conjugated(matrix: Constants, change: Constants) -> Constants:
-    """``K^-1 M K`` for matrices of rational numbers."""
+def simplified(matrix: Matrix, parts: Sequence[range], ring: Ring) -> tuple[Matrix, Constants]:
+    """Simplify the columns of a change of basis, separately for parts that do not couple.
+
+    Parameters
+    ----------
+    matrix
+        T with square shape.
+    parts
+        Its columns, cut into sets that may be scaled separately.
+
+    Returns
+    -------
+    matrix
+        ``T K`` with each part divided by its content.
+    change
+        K, block diagonal.
+    """
     size = len(matrix)
-
-    def exact(values: Constants) -> object:
-        flat = [flint.fmpq(v.numerator, v.denominator) for row in values for v in row]
-        return flint.fmpq_mat(size, size, flat)
-
-    k = exact(change)
-    result = k.inv() * exact(matrix) * k  # type: ignore[attr-defined]
-    return rational_rows(result.tolist())
-
-
-def rational_rows(rows: Sequence[Sequence[object]]) -> Constants:
-    """Rows of FLINT rationals as fractions."""
-    return tuple(tuple(Fraction(int(v.p), int(v.q)) for v in row) for row in rows)  # type: ignore[attr-defined]
+    columns: list[tuple[Rational, ...]] = []
+    change = [[Fraction(0)] * size for _ in range(size)]
+    for own in parts:
+        block = tuple(tuple(row[j] for j in own) for row in matrix)
+        factor = content((e for row in block for e in row), ring)
+        block = scaled(block, 1 / factor)
+        simple = primitive_columns(block, ring)
+        for i, row in zip(own, simple, strict=True):
+            for j, value in zip(own, row, strict=True):
+                change[i][j] = value
+        columns.extend(zip(*product(block, lifted(ring, simple), ring), strict=True))
+    return tuple(zip(*columns, strict=True)), tuple(map(tuple, change))

@@ -11,13 +11,14 @@ from typing import Any
 import flint
 
 from ibpred.epsform.blocks import Block, Finding
-from ibpred.epsform.content import conjugated, content, primitive_columns
+from ibpred.epsform.content import simplified
+from ibpred.epsform.decompose import conjugated, decomposed
 from ibpred.epsform.findings import finding
 from ibpred.epsform.form import Matrix
 from ibpred.epsform.image import Pattern, block_pattern, pencil_at, splits
 from ibpred.epsform.intertwine import intertwiners, modular_number, reference_numbers, representative
 from ibpred.epsform.local import Obstacle, Trouble
-from ibpred.epsform.matrices import Constants, inverse, lifted, product, scaled
+from ibpred.epsform.matrices import Constants, inverse, lifted, product
 from ibpred.epsform.pencil import ModularMatrix, times_constant
 from ibpred.epsform.sampling import Sample, reconstruct_in_eps
 from ibpred.epsform.sections import Glued, glue
@@ -90,11 +91,10 @@ def solve_coupled(
 
     rebuilt = reconstruct_in_eps(sampler, usable, seed, ring, subject)
     transformation, residues = _unpacked(rebuilt.shape, rebuilt.functions, pattern, size)
-    factor = content((e for row in transformation for e in row), ring)
-    transformation = scaled(transformation, 1 / factor)
-    change = primitive_columns(transformation, ring)
-    transformation = product(transformation, lifted(ring, change), ring)
-    residues = {text: conjugated(constants, change) for text, constants in residues.items()}
+    basis, parts = decomposed(tuple(residues.values()) or (_zero(size),), seed)
+    transformation = product(transformation, lifted(ring, basis), ring)
+    transformation, change = simplified(transformation, parts, ring)
+    residues = {text: conjugated(conjugated(matrices, basis), change) for text, matrices in residues.items()}
     logarithms = {p.text(): p.logarithmic() for p in pattern.places}
     canonical = canonical_matrix(residues, logarithms, size, ring)
     if not satisfies(matrix, transformation, canonical, name, ring):
@@ -102,6 +102,10 @@ def solve_coupled(
             f"{subject}: the epsilon-form rebuilt from samples fails the exact check; give larger primes"
         )
     return Block(transformation, inverse(transformation, ring), residues)
+
+
+def _zero(size: int) -> Constants:
+    return ((Fraction(0),) * size,) * size
 
 
 def _glued(
