@@ -21,8 +21,8 @@ from ibpred.reduction.wanted import check_powers
 from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.order import key_columns, sector_of
 
-DEPTHS = (Depth(1, 2), Depth(1, 3), Depth(2, 3), Depth(2, 4), Depth(3, 4))
-"""Seeds tried, until two in a row leave the same masters."""
+DEPTHS = (Depth(1, 2), Depth(1, 3), Depth(2, 3), Depth(2, 4), Depth(3, 4), Depth(3, 5))
+"""Seeds tried, until two in a row leave the same masters, all well inside the seeds."""
 
 
 @dataclass(frozen=True)
@@ -85,7 +85,8 @@ def find_masters(
     """Find the masters by eliminating identities of growing depth modulo a prime.
 
     With seeds of rank up to B the integrals of rank below B are reduced (the edge is not: there false
-    masters appear); their irreducible integrals count once deeper seeds leave them unchanged.
+    masters appear); their irreducible integrals count once all of them lie inside as well and deeper
+    seeds leave them unchanged.
 
     Parameters
     ----------
@@ -118,10 +119,10 @@ def find_masters(
     progress.stage("master integrals")
     for depth in DEPTHS:
         rows = write_rows(family, analysis, templates, full_plan(analysis, depth), preferred=preferred)
-        found = _irreducible(rows, depth, point, prime)
+        found, settled = _irreducible(rows, depth, point, prime)
         trials.append(MastersTrial(depth.dots, depth.rank, len(rows.start) - 1, len(found)))
         progress.advance(len(trials), None)
-        if found == last:
+        if found == last and settled:
             _check_preferred(family, preferred, found)
             return Masters(family.name, found, prime, point, tuple(trials))
         last = found
@@ -132,11 +133,15 @@ def find_masters(
     )
 
 
-def _irreducible(rows: IntegralRows, depth: Depth, point: tuple[int, ...], prime: int) -> tuple[Powers, ...]:
+def _irreducible(
+    rows: IntegralRows, depth: Depth, point: tuple[int, ...], prime: int
+) -> tuple[tuple[Powers, ...], bool]:
+    """What the integrals well inside the seeds reduce to, and whether all of that is inside as well."""
     _, _, dots, rank = key_columns(rows.powers)
     inside = np.flatnonzero((dots <= depth.dots) & (rank < depth.rank))
     solution = reduced(discover(sparse_system(rows), point, prime), inside.tolist())
-    return tuple(tuple(int(a) for a in rows.powers[column]) for column in solution.masters)
+    masters = tuple(tuple(int(a) for a in rows.powers[column]) for column in solution.masters)
+    return masters, set(solution.masters) <= set(inside.tolist())
 
 
 def _check_preferred(
