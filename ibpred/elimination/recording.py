@@ -82,8 +82,8 @@ def record(system: SparseSystem, wanted: Sequence[int], point: Sequence[int], pr
 def record_pruned(pruned: Pruned, point: Sequence[int], prime: int) -> Tape:
     """Record a pruned system; wanted columns and masters are original columns.
 
-    The rows are recorded in their own order and sorted by their largest column; the smaller tape is
-    kept.
+    The rows are recorded in their own order and sorted by their largest column, shorter ones first;
+    neither always wins, so the smaller tape is kept.
 
     Raises
     ------
@@ -91,16 +91,15 @@ def record_pruned(pruned: Pruned, point: Sequence[int], prime: int) -> Tape:
         If the point is unlucky.
     """
     system = pruned.system
-    given = _record_rows(system, pruned.wanted, point, prime)
-    best = given
+    best = _record_rows(system, pruned.wanted, point, prime)
     if system.rows > 1:
-        first = system.column[system.start[:-1]]
-        rows = np.argsort(first, kind="stable").astype(np.int32)
-        by_leader = take_rows(system, rows)
-        leading = discover_leading(by_leader, point, prime)
+        leader, length = system.column[system.start[:-1]], np.diff(system.start)
+        ordered = take_rows(system, np.lexsort((length, leader)).astype(np.int32))
+        leading = discover_leading(ordered, point, prime)
         _, needed = dependencies(leading, pruned.wanted)
-        other = _record_rows(take_rows(by_leader, leading.kept[needed]), pruned.wanted, point, prime)
-        if other.cost < given.cost:
+        rows = take_rows(ordered, leading.kept[needed])
+        other = _record_rows(rows, pruned.wanted, point, prime)
+        if other.cost < best.cost:
             best = other
     return _assemble(system.table, pruned.wanted, best).relabelled(pruned.columns)
 
