@@ -60,10 +60,14 @@ class Finding:
         A whole sentence with the point.
     exponents
         (singular point, local exponents) as text, as far as known.
+    branch_points
+        Where half-integer exponents call for a square root, in case that is the only reason: rational
+        points, and None for infinity.
     """
 
     reason: str
     exponents: tuple[tuple[str, tuple[str, ...]], ...]
+    branch_points: tuple[Fraction | None, ...] = ()
 
 
 def linear(shift: Fraction, slope: Fraction) -> Exponent:
@@ -115,15 +119,8 @@ def irregular(point: str) -> str:
 
 def fractional(exponent: Fraction, point: str) -> str:
     """The sentence for an exponent that is no integer at eps = 0."""
-    if exponent.denominator == 2:
-        return (
-            f"exponent {exponent} at {point}: a square root is needed, which functions rational in the "
-            "ratios do not offer; an epsilon-form may exist after a change of variable that removes the root"
-        )
-    return (
-        f"exponent {exponent} at {point}: a root of order {exponent.denominator} is needed, which functions "
-        "rational in the ratios do not offer"
-    )
+    root = "a square root" if exponent.denominator == 2 else f"a root of order {exponent.denominator}"
+    return f"exponent {exponent} at {point}: {root} is needed, which rational functions do not offer"
 
 
 def moving(point: str) -> str:
@@ -134,3 +131,11 @@ def moving(point: str) -> str:
 def no_exponent(exponents: str, point: str) -> str:
     """The sentence for exponents that are not linear in eps with rational coefficients."""
     return f"the exponents at {point} are not of the form a + b*eps with rational a and b: {exponents}"
+
+
+def conjugate(point: str) -> str:
+    """The sentence for residues that differ between conjugate points."""
+    return (
+        f"the roots of {point} have different residues, so an odd letter with the square root of its "
+        "discriminant is needed: such letters are not supported yet"
+    )

@@ -19,7 +19,7 @@ from random import Random
 
 import flint
 
-from ibpred.epsform.blocks import Finding, moving
+from ibpred.epsform.blocks import Finding, conjugate, moving
 from ibpred.epsform.content import content
 from ibpred.epsform.decompose import conjugated, constants, exact_matrix
 from ibpred.epsform.form import Matrix
@@ -79,20 +79,13 @@ def fuchsian(matrix: Matrix, blocks: Sequence[range], ring: Ring, name: str) -> 
                     continue
                 residue = place.divide(place.principal(entry, 1), slope)
                 if any(residue[1:]):
-                    return Stuck(owner[i], Finding(_conjugate(place.text()), ()))
+                    return Stuck(owner[i], Finding(conjugate(place.text()), ()))
                 if place.moves and residue[0]:
                     return Stuck(owner[i], Finding(moving(place.text()), ()))
                 values.append(residue[0])
             rows.append(tuple(values))
         residues.append(tuple(rows))
     return Fuchsian(places, tuple(residues))
-
-
-def _conjugate(point: str) -> str:
-    return (
-        f"the roots of {point} have different residues, so an odd letter with the square root of its "
-        "discriminant is needed: such letters are not supported yet"
-    )
 
 
 def factor_eps(

@@ -9,6 +9,14 @@ from itertools import pairwise
 from ibpred.epsform.blocks import Block, Finding
 from ibpred.epsform.constant import Stuck, factor_eps, fuchsian
 from ibpred.epsform.coupled import solve_coupled
+from ibpred.epsform.cover import (
+    Cover,
+    describe,
+    double_cover,
+    new_ratio,
+    parametrisation,
+    pulled_back,
+)
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix, Obstructed, Obstruction
 from ibpred.epsform.matrices import Constants, identity, inverse, part, product, subtracted
 from ibpred.epsform.picardfuchs import picard_fuchs
@@ -18,7 +26,7 @@ from ibpred.epsform.structure import coupled_blocks, couplings, reachable
 from ibpred.epsform.triangular import Grid, eliminate
 from ibpred.epsform.verify import verify
 from ibpred.errors import ReconstructionError, UnfinishedError
-from ibpred.exact.rational import Ring
+from ibpred.exact.rational import Ring, ring
 from ibpred.progress import SILENT, Progress
 
 
@@ -62,23 +70,16 @@ def factorise(
         )
     name = connection.variables[0]
     links = couplings(connection)
-    blocks = coupled_blocks(links)
-    matrix = connection.matrices[name]
-    progress.stage("epsilon-form of the diagonal blocks")
     solved: dict[tuple[int, ...], Block] = {}
     obstructions: list[Obstruction] = []
-    for done, rows in enumerate(blocks):
-        subject = f"block {', '.join(connection.labels[i] for i in rows)}"
-        own = part(matrix, rows, rows)
-        if len(rows) == 1:
-            outcome = solve_single(own[0][0], name)
-        else:
-            outcome = solve_coupled(own, name, primes, seed, subject)
+    for rows, outcome in diagonal_blocks(connection, primes, seed, progress):
         if isinstance(outcome, Finding):
+            own = part(connection.matrices[name], rows, rows)
+            outcome = on_cover(outcome, own, name, primes, seed)
             obstructions.append(_obstruction(rows, outcome, own, name))
         else:
             solved[rows] = outcome
-        progress.advance(done + 1, len(blocks))
+    blocks = coupled_blocks(links)
     progress.stage("epsilon-form of the couplings")
     reach = reachable(links)
     while True:
@@ -94,6 +95,64 @@ def factorise(
     if not obstructions:
         return outcome_
     return Obstructed(tuple(obstructions), tuple(sorted(i for block in free for i in block)), outcome_)
+
+
+def diagonal_blocks(
+    connection: Connection, primes: Sequence[int], seed: int, progress: Progress
+) -> tuple[tuple[tuple[int, ...], Block | Finding], ...]:
+    """The sets of rows that depend on each other, each with its epsilon-form or what is in the way."""
+    name = connection.variables[0]
+    blocks = coupled_blocks(couplings(connection))
+    progress.stage("epsilon-form of the diagonal blocks")
+    found: list[tuple[tuple[int, ...], Block | Finding]] = []
+    for rows in blocks:
+        subject = f"block {', '.join(connection.labels[i] for i in rows)}"
+        own = part(connection.matrices[name], rows, rows)
+        found.append((rows, _solve_block(own, name, primes, seed, subject)))
+        progress.advance(len(found), len(blocks))
+    return tuple(found)
+
+
+def _solve_block(own: Matrix, name: str, primes: Sequence[int], seed: int, subject: str) -> Block | Finding:
+    if len(own) == 1:
+        return solve_single(own[0][0], name)
+    return solve_coupled(own, name, primes, seed, subject)
+
+
+def on_cover(found: Finding, own: Matrix, name: str, primes: Sequence[int], seed: int) -> Finding:
+    """Add to a missing square root what would remove it, and whether the block has a form then."""
+    points = found.branch_points
+    if not points:
+        return found
+    reason = f"{found.reason}; {describe(points, name)}"
+    if len(points) == 2:
+        old = own[0][0].ring
+        new = new_ratio(old.names)
+        substitution = parametrisation(points, ring(new if n == name else n for n in old.names), new)
+        lifted = pulled_back(own, name, substitution, new)
+        outcome = _solve_block(lifted, new, primes, seed, "block on the double cover")
+        if isinstance(outcome, Finding):
+            return Finding(f"{reason}, but even then: {outcome.reason}", found.exponents)
+    return Finding(reason, found.exponents, points)
+
+
+def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cover | None:
+    """The double cover that removes the first square root with two branch points, if there is one.
+
+    Epsilon-forms on the cover come from `factorise` of its connection; where that needs another root,
+    take the cover again.
+
+    Parameters
+    ----------
+    connection
+        In one ratio.
+    primes, seed
+        As for `factorise`.
+    """
+    for _, outcome in diagonal_blocks(connection, primes, seed, SILENT):
+        if isinstance(outcome, Finding) and len(outcome.branch_points) == 2:
+            return double_cover(connection, outcome.branch_points)
+    return None
 
 
 def _obstruction(rows: tuple[int, ...], found: Finding, own: Matrix | None, name: str) -> Obstruction:
@@ -120,14 +179,14 @@ def _assembled(
     seed: int,
 ) -> EpsilonForm | Stuck:
     """The form of the subsystem made of some blocks, from the forms of the blocks."""
-    ring, name = connection.ring, connection.variables[0]
+    field, name = connection.ring, connection.variables[0]
     order = [i for block in blocks for i in block]
     starts = [sum(len(b) for b in blocks[:k]) for k in range(len(blocks) + 1)]
     ranges = [range(a, b) for a, b in pairwise(starts)]
     letters = _letters(connection, blocks, name)
-    grid = _diagonalised(connection.matrices[name], blocks, solved, ring, name)
-    grid, change = eliminate(grid, [block.residues for block in solved], letters, ring, name)
-    system = fuchsian(_joined(grid), ranges, ring, name)
+    grid = _diagonalised(connection.matrices[name], blocks, solved, field, name)
+    grid, change = eliminate(grid, [block.residues for block in solved], letters, field, name)
+    system = fuchsian(_joined(grid), ranges, field, name)
     if isinstance(system, Stuck):
         return system
     factored = factor_eps(system, ranges, [block.inverse for block in solved], primes, seed)
@@ -135,12 +194,12 @@ def _assembled(
         return factored
     unipotent = tuple(
         tuple(a + b for a, b in zip(x, y, strict=True))
-        for x, y in zip(identity(ring, len(order)), _joined(change), strict=True)
+        for x, y in zip(identity(field, len(order)), _joined(change), strict=True)
     )
-    left = _diagonal([block.transformation for block in solved], ring)
-    right = _diagonal([block.inverse for block in solved], ring)
-    transformation = product(product(left, unipotent, ring), factored.matrix, ring)
-    back = product(inverse(factored.matrix, ring), product(inverse(unipotent, ring), right, ring), ring)
+    left = _diagonal([block.transformation for block in solved], field)
+    right = _diagonal([block.inverse for block in solved], field)
+    transformation = product(product(left, unipotent, field), factored.matrix, field)
+    back = product(inverse(factored.matrix, field), product(inverse(unipotent, field), right, field), field)
     place_in = {row: k for k, row in enumerate(order)}
     sort = [place_in[row] for row in sorted(order)]
     form = _form(

@@ -3,8 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from fractions import Fraction
 
-from ibpred.epsform.blocks import Finding, exponent_text, fractional, irregular, moving, no_exponent
+from ibpred.epsform.blocks import (
+    Finding,
+    conjugate,
+    exponent_text,
+    fractional,
+    irregular,
+    moving,
+    no_exponent,
+)
 from ibpred.epsform.local import Obstacle, Trouble
 from ibpred.epsform.places import Place
 
@@ -26,7 +35,23 @@ def finding(obstacle: Obstacle, places: Sequence[Place], name: str) -> Finding:
     exponents = tuple(
         (text(index), tuple(exponent_text(e) for e in found)) for index, found in obstacle.exponents
     )
-    return Finding(_reason(obstacle, text(obstacle.point)), exponents)
+    branch = _branch_points(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
+    return Finding(_reason(obstacle, text(obstacle.point)), exponents, branch)
+
+
+def _branch_points(obstacle: Obstacle, places: Sequence[Place]) -> tuple[Fraction | None, ...]:
+    """The branch points if all roots are square roots at fixed rational points."""
+    points: list[Fraction | None] = []
+    seen: set[int] = set()
+    for index, found in obstacle.exponents:
+        orders = {e.shift.denominator for e in found} - {1}
+        if not orders or index in seen:
+            continue
+        seen.add(index)
+        if orders != {2} or (index >= 0 and (places[index].moves or places[index].degree > 1)):
+            return ()
+        points.append(None if index < 0 else places[index].root)
+    return tuple(points)
 
 
 def _reason(obstacle: Obstacle, point: str) -> str:
@@ -40,19 +65,23 @@ def _reason(obstacle: Obstacle, point: str) -> str:
         case Trouble.MOVING:
             return moving(point)
         case Trouble.CONJUGATE:
-            return (
-                f"the roots of {point} have different residues, so an odd letter with the square root of "
-                "its discriminant is needed: such letters are not supported yet"
-            )
+            return conjugate(point)
         case Trouble.BUNDLE:
             bundle = " + ".join(f"O({degree})" for degree in obstacle.detail)
             return (
                 "all exponents are integers plus multiples of eps, but the local solutions glue to the "
-                f"nontrivial bundle {bundle}, so no epsilon-form over rational functions exists: the "
-                "block's solutions at eps = 0 are periods of a curve or a higher variety"
+                f"nontrivial bundle {bundle}, so no epsilon-form over rational functions exists: at "
+                f"eps = 0 the block's solutions are periods of {_geometry(len(obstacle.detail))}"
             )
         case Trouble.CONSTANT:
             return (
                 "a Fuchsian form with exponents proportional to eps exists, but no change of basis that is "
                 "constant in the ratios factors eps out of it"
             )
+
+
+def _geometry(size: int) -> str:
+    """What a block of this size points to as a rule."""
+    return {2: "an elliptic curve, as a rule", 3: "a K3 surface, as a rule"}.get(
+        size, "a Calabi-Yau variety or a curve of higher genus, as a rule"
+    )

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from enum import Enum
 from fractions import Fraction
 from itertools import count
-from math import prod
+from math import floor, prod
 
 import flint
 
@@ -123,7 +123,7 @@ def _moved(residue: ModularMatrix, factor: ModularPolynomial) -> tuple[ModularMa
 def normalised(
     pencil: Pencil, frame: Frame, point: int, eps: int, slopes: Slopes | None
 ) -> tuple[Pencil, Frame, tuple[Exponent, ...]]:
-    """Bring one point to a simple pole with exponents proportional to eps.
+    """Bring one point to a simple pole with exponents ``a + b eps``, 0 <= a < 1.
 
     Parameters
     ----------
@@ -140,7 +140,7 @@ def normalised(
     Raises
     ------
     ObstacleError
-        If the point is irregular or has exponents that no rational change of basis removes.
+        If the point is irregular or has exponents that are not linear in eps.
     """
     pencil, frame = saturated(pencil, frame, point)
     first: tuple[Exponent, ...] = ()
@@ -151,11 +151,8 @@ def normalised(
             raise ObstacleError(Trouble.EXPONENT)
         if step == 0:
             first = tuple(sorted(e.exponent for e in eigenvalues for _ in range(e.multiplicity)))
-            fractions = [e.shift for e in first if e.shift.denominator > 1]
-            if fractions:
-                raise ObstacleError(Trouble.FRACTION, (min(fractions, key=lambda a: (abs(a), a)),))
         for power in (1, -1):
-            moving = [e.factor for e in eigenvalues if e.exponent.shift * power > 0]
+            moving = [e.factor for e in eigenvalues if floor(e.exponent.shift) * power > 0]
             if moving:
                 basis, moved = _moved(residue, prod(moving))
                 pencil = sheared(pencil, basis, moved, power, point)

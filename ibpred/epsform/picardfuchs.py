@@ -105,4 +105,4 @@ def _text(coefficients: Sequence[Rational]) -> str:
             factor = f"({factor})"
         tail = "" if power == 0 else "D" if power == 1 else f"D^{power}"
         terms.append(f"{factor}*{tail}" if tail else factor)
-    return " + ".join(terms)
+    return " + ".join(terms).replace("+ -", "- ")

@@ -84,6 +84,11 @@ def glue(
         exponents.append((current, found))
     except ObstacleError as met:
         return Obstacle(met.trouble, current, met.detail, tuple(exponents))
+    for place, found in exponents:
+        fractions = [e.shift for e in found if e.shift.denominator > 1]
+        if fractions:
+            simplest = min(fractions, key=lambda a: (abs(a), a))
+            return Obstacle(Trouble.FRACTION, place, (simplest,), tuple(exponents))
     sections = global_sections(frame_inf, 0)
     size, prime = pencil.size, pencil.prime
     at_base = [int(e(base)) for g in sections for e in g]

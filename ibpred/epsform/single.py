@@ -7,6 +7,7 @@ from fractions import Fraction
 from ibpred.epsform.blocks import (
     Block,
     Finding,
+    conjugate,
     exponent_text,
     fractional,
     irregular,
@@ -16,7 +17,7 @@ from ibpred.epsform.blocks import (
     split_exponent,
 )
 from ibpred.epsform.matrices import Constants
-from ibpred.epsform.places import places_of
+from ibpred.epsform.places import Place, places_of
 from ibpred.exact.rational import Rational
 
 
@@ -34,37 +35,45 @@ def solve_single(value: Rational, name: str) -> Block | Finding:
     factor, rest = ring.one, value
     residues: dict[str, Constants] = {}
     exponents: list[tuple[str, tuple[str, ...]]] = []
+    fractions: list[tuple[Fraction, Place]] = []
+    at_infinity = Fraction(0)
     for place in places_of([value], ring, name):
         order, _ = place.order(value.denominator)
         if order > 1:
             return Finding(irregular(place.text()), tuple(exponents))
         residue = place.divide(place.principal(value, 1), place.slope())
         if any(residue[1:]):
-            return Finding(_conjugate(place.text()), tuple(exponents))
+            return Finding(conjugate(place.text()), tuple(exponents))
         exponent = split_exponent(residue[0])
         if exponent is None:
             return Finding(no_exponent(str(residue[0]), place.text()), tuple(exponents))
         exponents.append((place.text(), (exponent_text(linear(*exponent)),)))
-        problem = _check(exponent, place.text(), place.moves)
-        if problem:
-            return Finding(problem, tuple(exponents))
-        factor = factor * place.element ** int(exponent[0])
+        if place.moves and exponent[1]:
+            return Finding(moving(place.text()), tuple(exponents))
         rest = rest - residue[0] * place.logarithmic()
+        at_infinity -= place.degree * exponent[0]
+        if exponent[0].denominator > 1:
+            fractions.append((exponent[0], place))
+            continue
+        factor = factor * place.element ** int(exponent[0])
         if exponent[1]:
             residues[place.text()] = ((exponent[1],),)
     if rest:
         return Finding(irregular(f"{name} = infinity"), tuple(exponents))
+    if fractions:
+        worst, place = max(fractions, key=lambda item: item[0].denominator)
+        branch = _branch_points(fractions, at_infinity)
+        return Finding(fractional(worst, place.text()), tuple(exponents), branch)
     return Block(((factor,),), ((1 / factor,),), residues)
 
 
-def _check(exponent: tuple[Fraction, Fraction], point: str, moves: bool) -> str | None:
-    if exponent[0].denominator != 1:
-        return fractional(exponent[0], point)
-    return moving(point) if moves and exponent[1] else None
-
-
-def _conjugate(point: str) -> str:
-    return (
-        f"the roots of {point} have different residues, so a square root of the discriminant is needed: "
-        "such letters are not supported yet"
-    )
+def _branch_points(
+    fractions: list[tuple[Fraction, Place]], at_infinity: Fraction
+) -> tuple[Fraction | None, ...]:
+    """The branch points if all roots are square roots at fixed rational points."""
+    if any(a.denominator > 2 or p.moves or p.degree > 1 for a, p in fractions):
+        return ()
+    points: list[Fraction | None] = [p.root for _, p in fractions]
+    if at_infinity.denominator > 1:
+        points.append(None)
+    return tuple(points)
