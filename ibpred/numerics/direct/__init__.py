@@ -3,6 +3,6 @@
 Nothing here uses identities, differential equations or their solutions.
 """
 
-from ibpred.numerics.direct.integral import direct_integral
+from ibpred.numerics.direct.integral import direct_integral, direct_value
 
-__all__ = ["direct_integral"]
+__all__ = ["direct_integral", "direct_value"]

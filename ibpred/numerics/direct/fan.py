@@ -71,7 +71,9 @@ def simplicial_fan(points: Integers) -> tuple[Cone, ...]:
         here = frozenset(int(f) for f in np.nonzero(on_facet[:, v])[0])
         if len(here) < n or flint.fmpz_mat(rays[sorted(here)].tolist()).rank() < n:
             continue
-        shared = {here & frozenset(np.nonzero(on_facet[:, w])[0].tolist()) for w in range(len(points)) if w != v}
+        shared = {
+            here & frozenset(np.nonzero(on_facet[:, w])[0].tolist()) for w in range(len(points)) if w != v
+        }
         for chosen in _pulling(here, sorted(shared, key=sorted), n):
             cones.append(Cone(rays[list(chosen)]))
     _check_cover(cones, n)

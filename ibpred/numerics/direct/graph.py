@@ -52,7 +52,9 @@ def graph_polynomials(
     def total(coefficients: Sequence[Fraction]) -> _Poly:
         return {e: c for e, c in zip(unit, coefficients, strict=True) if c}
 
-    m = [[total([-line.quadratic[i][j] for line in family.lines]) for j in range(loops)] for i in range(loops)]
+    m = [
+        [total([-line.quadratic[i][j] for line in family.lines]) for j in range(loops)] for i in range(loops)
+    ]
     q = [
         [total([-line.linear[i][e] / 2 for line in family.lines]) for e in range(external)]
         for i in range(loops)

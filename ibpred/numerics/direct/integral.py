@@ -4,17 +4,21 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 from math import factorial
 
 import numpy as np
 from numpy.typing import NDArray
 
 from ibpred.errors import InputError
+from ibpred.family.definition import FamilyDefinition
 from ibpred.numerics.direct.fan import simplicial_fan
+from ibpred.numerics.direct.graph import graph_polynomials
 from ibpred.numerics.direct.lattice import lattice, prime_at_least
-from ibpred.numerics.direct.polynomial import Exponents, Terms, without
+from ibpred.numerics.direct.polynomial import Exponents, Terms, scaled, without
 from ibpred.numerics.direct.prefactor import Series, exponential, gamma_series
 from ibpred.numerics.direct.sector import Integrand, differentiated, logarithmic, on_cone
+from ibpred.progress import SILENT, Progress
 
 _SHIFTS = 12
 _PILOT = 0.15  # share of the samples that goes into finding where the others are needed
@@ -30,6 +34,7 @@ def direct_integral(
     order: int,
     seed: int,
     samples: int,
+    progress: Progress = SILENT,
 ) -> dict[int, tuple[float, float]]:
     """Laurent coefficients of one integral by sector decomposition and quasi-Monte Carlo.
 
@@ -55,6 +60,8 @@ def direct_integral(
         Of the random shifts.
     samples
         Points per integrand on average, all shifts together.
+    progress
+        Told about every sector.
 
     Returns
     -------
@@ -67,9 +74,11 @@ def direct_integral(
     InputError
         If the integral is scaleless, is not regulated, or U or F has negative terms.
     """
-    parts, lines = _without_lines(dict(u_terms), dict(f_terms), powers, loops, dimension, order)
+    parts, lines = _without_lines(scaled(u_terms, 1.0), scaled(f_terms, 1.0), powers, loops, dimension, order)
+    if not parts:
+        return {order: (0.0, 0.0)}
     total = sum(powers)
-    length = len(parts[0].series) if parts else 0
+    length = len(parts[0].series)
     front = gamma_series(total - loops * dimension / 2, loops, length)
     rates = np.zeros(length)
     if length > 1:
@@ -84,12 +93,9 @@ def direct_integral(
     wanted = order - front.lowest + depth + 1
     value, variance = np.zeros(max(wanted, 0)), np.zeros(max(wanted, 0))
     if wanted > 0:
-        value, variance = _integrate(integrands, depth, front, wanted, seed, samples)
+        value, variance = _integrate(integrands, depth, front, wanted, seed, samples, progress)
     lowest = front.lowest - depth
-    return {
-        lowest + k: (float(value[k]), float(np.sqrt(variance[k])))
-        for k in range(wanted)
-    }
+    return {lowest + k: (float(value[k]), float(np.sqrt(variance[k]))) for k in range(wanted)}
 
 
 def _without_lines(
@@ -103,9 +109,7 @@ def _without_lines(
     total = sum(powers)
     half = dimension / 2
     # enough coefficients for a pole of 1/eps from each parameter and from the Gamma function
-    length = order + 2 * loops + n + 3
-    if length < 1:
-        length = 1
+    length = max(1, order + n + 3)
     series = (1.0,) + (0.0,) * (length - 1)
     exponents = tuple((float(max(power, 0)), 0.0) for power in powers)
     one = {(0,) * n: 1.0}
@@ -126,8 +130,6 @@ def _without_lines(
 
 def _integrands(parts: list[Integrand], lines: int) -> list[Integrand]:
     """All sectors of all parts."""
-    if not parts:
-        return []
     last = lines - 1
     flat = [
         Integrand(
@@ -141,9 +143,9 @@ def _integrands(parts: list[Integrand], lines: int) -> list[Integrand]:
         )
         for part in parts
     ]
-    u_points = np.array(list(flat[0].u), dtype=np.int64).reshape(-1, last)
-    f_points = np.array(list(flat[0].f), dtype=np.int64).reshape(-1, last)
-    points = (u_points[:, None, :] + f_points[None, :, :]).reshape(-1, last)
+    u_points = np.array(list(flat[0].u), dtype=np.int64).reshape(len(flat[0].u), last)
+    f_points = np.array(list(flat[0].f), dtype=np.int64).reshape(len(flat[0].f), last)
+    points = (u_points[:, None, :] + f_points[None, :, :]).reshape(len(u_points) * len(f_points), last)
     cones = simplicial_fan(points)
     return [item for part in flat if part.q for cone in cones for item in logarithmic(on_cone(part, cone))]
 
@@ -156,6 +158,33 @@ def _depth(item: Integrand) -> int:
     return len(_singular(item))
 
 
+def direct_value(
+    family: FamilyDefinition,
+    powers: Sequence[int],
+    point: Mapping[str, Fraction | int],
+    order: int,
+    seed: int,
+    samples: int,
+    progress: Progress = SILENT,
+) -> dict[int, tuple[float, float]]:
+    """`direct_integral` for an integral of a family at a Euclidean point.
+
+    Parameters
+    ----------
+    powers
+        Of the family's lines, in their order.
+    point
+        Value of every invariant.
+
+    Raises
+    ------
+    InputError
+        See `direct_integral`; also for a wrong number of powers, missing or unknown invariants.
+    """
+    u, f = graph_polynomials(family, point)
+    return direct_integral(u, f, powers, len(family.loops), family.dimension, order, seed, samples, progress)
+
+
 @dataclass(frozen=True)
 class _Estimate:
     value: NDArray[np.float64]
@@ -164,24 +193,35 @@ class _Estimate:
 
 
 def _integrate(
-    integrands: list[Integrand], depth: int, front: Series, wanted: int, seed: int, samples: int
+    integrands: list[Integrand],
+    depth: int,
+    front: Series,
+    wanted: int,
+    seed: int,
+    samples: int,
+    progress: Progress,
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Sum of all integrands times the front factor, and its variance."""
     random = np.random.default_rng(seed)
     pilot = max(_FEWEST, int(samples * _PILOT / _SHIFTS))
-    first = [_lattice_sum(item, depth, front, wanted, pilot, random) for item in integrands]
+    progress.stage("direct integration")
+    first = []
+    for k, item in enumerate(integrands):
+        first.append(_lattice_sum(item, depth, front, wanted, pilot, random))
+        progress.advance(k + 1, 2 * len(integrands))
     # the error falls about like 1/points: points in proportion to the square root of the errors
     spread = np.array([float(np.sqrt(item.variance[-1])) for item in first])
     share = np.sqrt(spread / spread.sum()) if spread.sum() > 0 else np.zeros(len(first))
     budget = samples * (1 - _PILOT) * len(first) / _SHIFTS
     value, variance = np.zeros(wanted), np.zeros(wanted)
-    for item, old, part in zip(integrands, first, share, strict=True):
+    for k, (item, old, part) in enumerate(zip(integrands, first, share, strict=True)):
         points = int(budget * part / share.sum()) if share.sum() > 0 else 0
         best = old
         if points > 2 * old.points:
             best = _lattice_sum(item, depth, front, wanted, points, random)
         value += best.value
         variance += best.variance
+        progress.advance(len(first) + k + 1, 2 * len(first))
     return value, variance
 
 

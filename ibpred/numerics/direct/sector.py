@@ -72,15 +72,32 @@ def on_cone(whole: Integrand, cone: Cone) -> Integrand:
         line += shifts["q"][j] * np.array([1.0, 0.0])
         line += shifts["u"][j] * np.array(whole.u_power) + shifts["f"][j] * np.array(whole.f_power)
         exponents.append((float(line[0]), float(line[1])))
-    return Integrand(
-        tuple(c * cone.volume for c in whole.series),
-        tuple(exponents),
-        images["q"],
-        images["u"],
-        images["f"],
-        whole.u_power,
-        whole.f_power,
+    return _without_roots(
+        Integrand(
+            tuple(c * cone.volume for c in whole.series),
+            tuple(exponents),
+            images["q"],
+            images["u"],
+            images["f"],
+            whole.u_power,
+            whole.f_power,
+        )
     )
+
+
+def _without_roots(g: Integrand) -> Integrand:
+    """Substitute t = s^2 where a half-integer power of t would spoil smoothness at zero."""
+    doubled = [2 if abs(a - round(a)) > 1e-9 else 1 for a, _ in g.exponents]
+    if max(doubled, default=1) == 1:
+        return g
+
+    def image(terms: Terms) -> Terms:
+        return {tuple(x * k for x, k in zip(e, doubled, strict=True)): c for e, c in terms.items()}
+
+    factor = 2 ** (sum(doubled) - len(doubled))
+    exponents = tuple((k * (a + 1) - 1, k * b) for k, (a, b) in zip(doubled, g.exponents, strict=True))
+    series = tuple(c * factor for c in g.series)
+    return Integrand(series, exponents, image(g.q), image(g.u), image(g.f), g.u_power, g.f_power)
 
 
 def logarithmic(integrand: Integrand) -> list[Integrand]:
@@ -95,7 +112,9 @@ def logarithmic(integrand: Integrand) -> list[Integrand]:
     """
     for j, (a, b) in enumerate(integrand.exponents):
         if abs(a + 1) < 1e-9 and b == 0.0:
-            raise InputError("the integral has a divergence that dimensional regularisation does not regulate")
+            raise InputError(
+                "the integral has a divergence that dimensional regularisation does not regulate"
+            )
         if a < -1 - 1e-9:
             return [part for raised in _raised(integrand, j) for part in logarithmic(raised)]
     return [integrand]
