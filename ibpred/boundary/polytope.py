@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from typing import Any
+from math import factorial
 
 import flint
 import numpy as np
@@ -51,7 +51,8 @@ def lower_facets(points: Sequence[tuple[Exponents, int]]) -> tuple[LowerFacet, .
     Raises
     ------
     BoundaryError
-        If the r do not span (the integral is scaleless), or the facets found do not pass the exact check.
+        If the r do not span (the integral is scaleless), or the facets that pass the exact check do not
+        cover the projection.
     """
     rows = sorted({(*r, p) for r, p in points})
     width = len(rows[0])
@@ -66,8 +67,10 @@ def lower_facets(points: Sequence[tuple[Exponents, int]]) -> tuple[LowerFacet, .
         return (facet,)
     if width == 2:
         return _planar(rows)
-    hull = ConvexHull(np.array(rows, dtype=float), qhull_options="Qt")
+    corners_of_all = np.array(rows, dtype=float)
+    hull = ConvexHull(corners_of_all, qhull_options="Qt")
     found: dict[LowerFacet, None] = {}
+    covered = 0
     for simplex, equation in zip(hull.simplices, hull.equations, strict=True):
         # qhull's normals point outwards; a slight tilt is left to the exact check
         if equation[width - 1] > 1e-9:
@@ -76,8 +79,12 @@ def lower_facets(points: Sequence[tuple[Exponents, int]]) -> tuple[LowerFacet, .
         facet = _hyperplane(corners, rows)
         if facet is not None:
             found[facet] = None
-    if not found:
-        raise BoundaryError("no facet of a Newton polytope passed the exact check")
+            edges = [[a - b for a, b in zip(row[:-1], corners[0], strict=False)] for row in corners[1:]]
+            covered += abs(int(flint.fmpz_mat(edges).det()))
+    # the simplices of the lower facets project onto all of the projection: no facet is missing
+    volume = ConvexHull(corners_of_all[:, :-1]).volume * factorial(width - 1)
+    if covered < volume * (1 - 1e-9):
+        raise BoundaryError("the lower facets of a Newton polytope do not cover it: a region is missing")
     return tuple(sorted(found, key=lambda f: (f.normal, f.offset)))
 
 
@@ -92,13 +99,7 @@ def _planar(rows: Sequence[tuple[int, ...]]) -> tuple[LowerFacet, ...]:
 
 
 def _hyperplane(corners: Sequence[Sequence[int]], rows: Sequence[Sequence[int]]) -> LowerFacet | None:
-    """The hyperplane through the corners as a lower facet; None where it is degenerate or vertical.
-
-    Raises
-    ------
-    BoundaryError
-        If a point lies below it and above it: it supports nothing.
-    """
+    """The hyperplane through the corners as a lower facet; None if degenerate, vertical or not supporting."""
     width = len(corners[0])
     base = corners[0]
     matrix = flint.fmpq_mat([[a - b for a, b in zip(row, base, strict=True)] for row in corners[1:]])
@@ -108,21 +109,14 @@ def _hyperplane(corners: Sequence[Sequence[int]], rows: Sequence[Sequence[int]])
     pivots = [next(c for c in range(width) if reduced[r, c] != 0) for r in range(rank)]
     if pivots != list(range(width - 1)):
         return None  # vertical: no p-component
-    # the normal (v, 1) is orthogonal to all rows: v_c + reduced[c, last]-type relations, solved below
-    normal = _orthogonal(reduced, width)
-    if normal is None:
-        return None
+    # the reduced rows are e_c + q_c e_last, so the normal (v, 1) has v_c = -q_c
+    last = [reduced[c, width - 1] for c in range(width - 1)]
+    normal = tuple(Fraction(-int(q.p), int(q.q)) for q in last)
     offset = base[-1] + sum((v * e for v, e in zip(normal, base, strict=False)), Fraction(0))
     for row in rows:
         if row[-1] + sum((v * e for v, e in zip(normal, row, strict=False)), Fraction(0)) < offset:
             return None
     return LowerFacet(normal, offset)
-
-
-def _orthogonal(reduced: Any, width: int) -> Vector | None:
-    # rows are e_c + reduced[c, last] e_last, so v_c = -reduced[c, last] for the normal (v, 1)
-    values = [reduced[c, width - 1] for c in range(width - 1)]
-    return tuple(Fraction(-int(q.p), int(q.q)) for q in values)
 
 
 def _rank(rows: Sequence[Sequence[int]]) -> int:
