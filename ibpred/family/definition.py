@@ -124,7 +124,7 @@ class FamilyDefinition:
     lines
         L(L+1)/2 + L E lines, numerators last if they were completed automatically.
     graph
-        The graph, where one is given.
+        The graph, as given or recognised from the momenta of the lines; None where there is none.
     crossings
         Crossings under which the family's integrals are wanted too.
     """

@@ -30,7 +30,7 @@ def forest_polynomials(family: FamilyDefinition) -> tuple[ParameterPolynomial, P
     Raises
     ------
     InputError
-        If the family is not given by a graph.
+        If the family comes from no graph.
     """
     graph = _graph(family)
     ring = family.kinematic_ring
@@ -62,14 +62,14 @@ def agrees_with_graph(family: FamilyDefinition) -> bool:
     Raises
     ------
     InputError
-        If the family is not given by a graph.
+        If the family comes from no graph.
     """
     return forest_polynomials(family) == symanzik(family)
 
 
 def _graph(family: FamilyDefinition) -> Graph:
     if family.graph is None:
-        raise InputError(f"{family.name} is not given by a graph")
+        raise InputError(f"{family.name} comes from no graph")
     return family.graph
 
 

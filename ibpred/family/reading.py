@@ -21,6 +21,7 @@ from ibpred.family.momenta import Form, Momenta, parse_equation
 from ibpred.family.polynomials import symanzik
 from ibpred.family.reading_graph import read_edges, read_joins, read_loop_names
 from ibpred.family.reading_lines import check_independent, read_lines
+from ibpred.family.recognition import recognise
 from ibpred.family.source import Path, Source, parse_source
 
 SECTIONS = ("title", "dimension", "momenta", "kinematics", "line", "edge", "legs", "crossings")
@@ -44,7 +45,8 @@ def read_family(text: str, file: str, name: str) -> FamilyDefinition:
     Returns
     -------
     FamilyDefinition
-        Complete: the Gram matrix is known, momenta of a graph are routed, missing numerators are there.
+        Complete: the Gram matrix is known, momenta of a graph are routed, the graph of momenta is recognised,
+        missing numerators are there.
 
     Raises
     ------
@@ -80,6 +82,8 @@ def read_family(text: str, file: str, name: str) -> FamilyDefinition:
     graph, edge_lines = read_edges(source, space, dimensions) if edges else (None, ())
     records = (*edge_lines, *read_lines(source, space, dimensions, only_numerators=bool(edges)))
     check_independent(source, records, space, edges=len(edges))
+    if graph is None:
+        graph = recognise([line for line in records if not line.numerator], len(loops), external)
     family = FamilyDefinition(
         name=name,
         title=title if title is not None else name,
