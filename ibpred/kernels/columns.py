@@ -16,8 +16,7 @@ ONE = np.uint64(1)
 ZERO = np.uint64(0)
 
 
-@njit(cache=True)
-def empty_columns(columns: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:  # type: ignore[type-arg]
+def empty_columns(columns: int) -> tuple[Any, Any, Any]:
     """An empty set of columns ``0 .. columns - 1``."""
     bottom = np.zeros((columns >> 6) + 1, np.uint64)
     middle = np.zeros((columns >> 12) + 1, np.uint64)
