@@ -18,7 +18,7 @@ from ibpred.boundary.polytope import LowerFacet, lower_facets, separating_functi
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.polynomials import symanzik
-from ibpred.iterated.transport import INFINITY, Infinity, Point
+from ibpred.iterated.transport import Infinity, Point
 
 Coefficients = Mapping[tuple[int, ...], Rational]
 """Parameter monomial -> coefficient, a function of the ratio."""
@@ -270,16 +270,3 @@ def _numerator_shift(facet: LowerFacet, derivatives: Derivatives, orders: tuple[
 def _below(orders: tuple[int, ...]) -> Iterator[tuple[int, ...]]:
     """All multi-indices up to `orders`, each after those below it."""
     yield from sorted(product(*(range(n + 1) for n in orders)), key=lambda t: (sum(t), t))
-
-
-__all__ = [
-    "ANALYTIC",
-    "INFINITY",
-    "Behaviour",
-    "Exponent",
-    "ParametricFamily",
-    "behaviour",
-    "behaviour_of_closed_form",
-    "parametric_family",
-    "valuation",
-]
