@@ -14,7 +14,14 @@ from ibpred.exact.rational import ring as ring_of
 from ibpred.reconstruct.denominators import Probes, Structure, structure
 from ibpred.reconstruct.factors import products
 from ibpred.reconstruct.lift import chinese_remainder, rational_vector
-from ibpred.reconstruct.modular import LARGEST_BITS, matrix_product, monomials, multiply, residues
+from ibpred.reconstruct.modular import (
+    LARGEST_BITS,
+    SMALLEST_BITS,
+    matrix_product,
+    monomials,
+    multiply,
+    residues,
+)
 from ibpred.reconstruct.numerators import numerators
 from ibpred.reconstruct.probe import Probe, equal_rows, probe
 from ibpred.reconstruct.sampling import Draws, InconsistentError, Progress, Sampler, UnluckyPrimeError
@@ -94,7 +101,7 @@ def reconstruct(
     sampler
         The black box.
     primes
-        Distinct primes below ``2**50``, in the order in which they are used. Coefficients with n
+        Distinct primes of 40 to 50 bits, in the order in which they are used. Coefficients with n
         digits in all need about n/14 primes, and two more are needed for structure and checks.
     seed
         All random points follow from it: equal arguments give equal results.
@@ -107,6 +114,8 @@ def reconstruct(
 
     Raises
     ------
+    ValueError
+        If a prime has the wrong size or occurs twice.
     ReconstructionError
         If the black box is not rational within the degree limit, contradicts itself, or needs
         more primes than given; the message says which entry and what to do.
@@ -114,8 +123,8 @@ def reconstruct(
     for name in sampler.variables:
         ring.index(name)
     for prime in primes:
-        if prime.bit_length() > LARGEST_BITS:
-            raise ValueError(f"the prime {prime} has more than {LARGEST_BITS} bits")
+        if not SMALLEST_BITS <= prime.bit_length() <= LARGEST_BITS:
+            raise ValueError(f"the prime {prime} has not {SMALLEST_BITS} to {LARGEST_BITS} bits")
     if len(set(primes)) != len(primes):
         raise ValueError("the primes of a reconstruction must be distinct")
     draws = Draws(sampler, seed, progress)

@@ -16,6 +16,8 @@ from numpy.typing import NDArray
 Residues = NDArray[np.uint64]
 
 LARGEST_BITS = 50
+SMALLEST_BITS = 40
+"""Smaller primes would make accidental zeros and coincidences of random residues likely."""
 _LIMB = 17
 _LIMBS = 3
 _COLUMNS = 1024

@@ -259,8 +259,10 @@ def test_wrong_shapes_and_primes_are_refused() -> None:
     box.entries = 3
     with pytest.raises(ValueError, match="bits"):
         reconstruct(box, [2**61 - 1], 1, ring(("d",)))
+    with pytest.raises(ValueError, match="bits"):
+        reconstruct(box, [101, 103, 107], 1, ring(("d",)))
     with pytest.raises(ValueError, match="distinct"):
-        reconstruct(box, [101, 101], 1, ring(("d",)))
+        reconstruct(box, [*first_primes(1), *first_primes(1)], 1, ring(("d",)))
     with pytest.raises((ReconstructionError, ValueError)):
         reconstruct(box, first_primes(4), 1, ring(("d",)))
 
