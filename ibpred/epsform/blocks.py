@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 
@@ -90,16 +90,25 @@ def split_exponent(value: Rational) -> tuple[Fraction, Fraction] | None:
     return found[0], found[1]
 
 
+def slope_condition(slopes: Sequence[Fraction]) -> str:
+    """The equation for conjugate slopes as text, e.g. ``b^2+b-1 = 0``."""
+    text = ""
+    for power in range(len(slopes) - 1, -1, -1):
+        value = slopes[power]
+        if not value:
+            continue
+        symbol = "" if power == 0 else "b" if power == 1 else f"b^{power}"
+        size = str(abs(value)) if abs(value) != 1 or not symbol else ""
+        sign = "-" if value < 0 else "+" if text else ""
+        text += sign + "*".join(part for part in (size, symbol) if part)
+    return f"{text} = 0"
+
+
 def exponent_text(exponent: Exponent) -> str:
     """Text such as ``-1+2*eps``, or ``-1+b*eps with b^2-2 = 0``."""
     a, b = exponent.shift, -exponent.slopes[0]
     if exponent.count > 1:
-        terms = [
-            f"{c:+}" + ("" if k == 0 else "*b" if k == 1 else f"*b^{k}")
-            for k, c in reversed(tuple(enumerate(exponent.slopes[:-1])))
-            if c
-        ]
-        condition = f"b^{exponent.count}{''.join(terms)} = 0"
+        condition = slope_condition(exponent.slopes)
         return f"{a}+b*eps with {condition}" if a else f"b*eps with {condition}"
     if not b:
         return str(a)

@@ -104,5 +104,8 @@ def _text(coefficients: Sequence[Rational]) -> str:
         if len(polynomial) > 1 and factor == polynomial_text(polynomial):
             factor = f"({factor})"
         tail = "" if power == 0 else "D" if power == 1 else f"D^{power}"
-        terms.append(f"{factor}*{tail}" if tail else factor)
+        if not tail:
+            terms.append(factor)
+        else:
+            terms.append(tail if factor == "1" else f"{factor}*{tail}")
     return " + ".join(terms).replace("+ -", "- ")

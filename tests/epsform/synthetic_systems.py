@@ -63,3 +63,51 @@ def unit(size: int) -> Matrix:
 
 def difference(left: Matrix, right: Matrix) -> Matrix:
     return subtracted(left, right)
+
+
+def scrambled(
+    random: Random, sizes: list[int], points: list[int], density: float = 0.5
+) -> tuple[Connection, Matrix]:
+    """A random canonical system in a random basis, and the canonical matrix.
+
+    Diagonal blocks have residues of rank one (so that monodromy does not commute), couplings are random;
+    the change of basis is rational in x and eps, triangular between blocks and general inside them.
+    """
+    size = sum(sizes)
+    starts = [sum(sizes[:k]) for k in range(len(sizes))]
+    owner = [k for k, count in enumerate(sizes) for _ in range(count)]
+    letters: dict[str, list[list[int]]] = {}
+    for point in points:
+        numbers = [[0] * size for _ in range(size)]
+        for i in range(size):
+            for j in range(size):
+                if owner[j] < owner[i] and random.random() < density:
+                    numbers[i][j] = random.randint(-3, 3)
+        for start, count in zip(starts, sizes, strict=True):
+            left = [random.randint(-2, 2) for _ in range(count)]
+            right = [random.randint(-2, 2) for _ in range(count)]
+            for i in range(count):
+                for j in range(count):
+                    numbers[start + i][start + j] = left[i] * right[j]
+        letters[f"x-{point}" if point >= 0 else f"x+{-point}"] = numbers
+    eps, x = RING.variable("eps"), RING.variable("x")
+    diagonal = [RING.one, eps, 1 / eps, x - points[0], 1 / (x - points[0]), 1 - 2 * eps, 1 / (1 - 3 * eps)]
+    change = tuple(
+        tuple(
+            random.choice(diagonal)
+            if i == j
+            else random_entry(random, points)
+            if owner[j] < owner[i] and random.random() < density
+            else RING.zero
+            for j in range(size)
+        )
+        for i in range(size)
+    )
+    for start, count in zip(starts, sizes, strict=True):
+        for _ in range(count if count > 1 else 0):
+            step = [list(row) for row in unit(size)]
+            i, j = random.sample(range(count), 2)
+            step[start + i][start + j] = random_entry(random, points)
+            change = product(change, tuple(map(tuple, step)), RING)
+    system = canonical(letters)
+    return connection(gauged(system, change), tuple(sizes)), system
