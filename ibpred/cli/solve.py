@@ -17,5 +17,6 @@ def solve(shared: Shared, weight: int | None) -> None:
 
     with open_chain(shared) as chain:
         highest = 2 * len(chain.definition.loops) if weight is None else weight
-        data = solution_data(chain.definition, chain.solution(highest))
+        solution = chain.solution(highest)
+        data = solution_data(chain.definition, chain.solved_form(), chain.boundary(highest), solution)
     emit(shared, data, lambda: solution_text(data))

@@ -18,9 +18,10 @@ from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError, ObstructionError, PointError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
+from ibpred.iterated.series import eps_valuation, laurent
 from ibpred.numerics.canonical import Orders
-from ibpred.numerics.laurent import EPSILON, exponential_series, laurent, truncated_product, valuation
 from ibpred.numerics.path import Target
+from ibpred.numerics.power_series import EPSILON, exponential_series, truncated_product
 
 
 @dataclass(frozen=True)
@@ -53,9 +54,9 @@ def master_rows(
     Parameters
     ----------
     form
-        In one ratio, without square roots.
+        In one ratio or none, without square roots.
     x
-        The ratio, negative on the negative axis whatever the side.
+        The ratio, negative on the negative axis whatever the side; without meaning where there is none.
     masters, exponents
         Powers of the masters, and their mass dimensions over that of the unit as (A, B) of A + B eps.
 
@@ -72,17 +73,19 @@ def master_rows(
         )
     rows = []
     for powers, exponent, line in zip(masters, exponents, form.transformation, strict=True):
-        entries = tuple(_at(entry, form.variables[0], x) for entry in line)
+        entries = tuple(_at(entry, form.variables, x) for entry in line)
         rows.append(Row(powers, exponent, entries))
     return tuple(rows)
 
 
-def _at(entry: Rational, variable: str, x: Fraction) -> Rational:
+def _at(entry: Rational, variables: Sequence[str], x: Fraction) -> Rational:
     try:
-        return entry.substitute({"eps": EPSILON.variable("eps"), variable: EPSILON.constant(x)})
+        return entry.substitute(
+            {"eps": EPSILON.variable("eps"), **{variable: EPSILON.constant(x) for variable in variables}}
+        )
     except ZeroDivisionError:
         raise PointError(
-            f"the masters' basis is singular at {variable} = {x}: {entry.denominator} vanishes there; "
+            f"the masters' basis is singular at {', '.join(variables)} = {x}: {entry.denominator} vanishes there; "
             "choose another point"
         ) from None
 
@@ -143,14 +146,17 @@ def integral_row(
     return Row(powers, exponent, tuple(entries))
 
 
-def needed_order(rows: Sequence[Row], order: int) -> int:
-    """The highest power of eps of the canonical functions that the rows need through ``eps^order``."""
-    return max((order - valuation(entry) for row in rows for entry in row.entries if entry), default=order)
+def needed_order(rows: Sequence[Row], order: int) -> int | None:
+    """The highest power of eps of the canonical functions that the rows need through ``eps^order``.
+
+    None where all rows are zero, so that nothing is needed.
+    """
+    return max((order - eps_valuation(entry) for row in rows for entry in row.entries if entry), default=None)
 
 
 def lowest_order(row: Row, start: int) -> int | None:
     """The lowest power of eps that can occur where the functions begin at ``eps^start``; None for zero."""
-    return min((start + valuation(entry) for entry in row.entries if entry), default=None)
+    return min((start + eps_valuation(entry) for entry in row.entries if entry), default=None)
 
 
 def assemble(row: Row, orders: Orders, start: int, unit: Target, order: int, bits: int) -> dict[int, Ball]:
@@ -182,7 +188,7 @@ def assemble(row: Row, orders: Orders, start: int, unit: Target, order: int, bit
     if lowest is None or lowest > order:
         return {}
     needed = needed_order([row], order)
-    if needed >= start + len(orders):
+    if needed is not None and needed >= start + len(orders):
         raise BoundaryError(
             f"{row.powers} needs the canonical functions through eps^{needed}, they are known through "
             f"eps^{start + len(orders) - 1}: solve to a higher weight"
@@ -195,11 +201,11 @@ def assemble(row: Row, orders: Orders, start: int, unit: Target, order: int, bit
                 continue
             series = laurent(entry, order - start)
             for i, factor in enumerate(series.coefficients):
-                if factor == 0:
+                if not factor:
                     continue
-                ball = complex_ball(factor, 0, bits)
+                ball = complex_ball(factor.to_fraction(), 0, bits)
                 for k in range(len(orders)):
-                    at = series.lowest + i + start + k - lowest
+                    at = series.start + i + start + k - lowest
                     if at >= count:
                         break
                     sums[at] = sums[at] + ball * orders[k][j]

@@ -6,6 +6,7 @@ from collections.abc import Mapping, Sequence
 from fractions import Fraction
 from typing import Any
 
+from ibpred.boundary.fix import Boundary
 from ibpred.diffeq.ratios import DimensionlessSystem
 from ibpred.diffeq.system import DifferentialSystem
 from ibpred.epsform.form import EpsilonForm, Obstructed
@@ -13,6 +14,7 @@ from ibpred.exact.polynomial import polynomial_text
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.polynomials import symanzik
+from ibpred.iterated.solution import Solution, function_text, letter_roots
 from ibpred.numerics.value import Value
 from ibpred.reduction.masters import Masters
 from ibpred.reduction.table import ReductionTable
@@ -135,6 +137,37 @@ def epsilon_data(
             for obstruction in outcome.obstructions
         ]
     return data
+
+
+def solution_data(
+    family: FamilyDefinition, form: EpsilonForm, boundary: Boundary, solution: Solution
+) -> Data:
+    """What `solve` prints: canonical functions by order, and the boundary constants at x -> 0+."""
+    names = [letter_text(letter) for letter in form.letters]
+    variable = form.variables[0] if form.variables else ""
+    roots = letter_roots(form.letters, variable)
+    functions = []
+    for row in range(len(form.tags)):
+        orders = []
+        for k, layer in enumerate(solution.orders):
+            orders.append(
+                {
+                    "order": solution.start + k,
+                    "text": function_text(layer[row], roots, variable),
+                    "terms": [
+                        {"word": [names[letter] for letter in word], "coefficient": str(value)}
+                        for word, value in layer[row]
+                    ],
+                }
+            )
+        functions.append({"master": row, "orders": orders})
+    constants = [
+        {"master": row, "order": boundary.start + k, "value": str(value)}
+        for k, vector in enumerate(boundary.constants)
+        for row, value in enumerate(vector)
+        if value
+    ]
+    return {"family": family.name, "letters": names, "functions": functions, "constants": constants}
 
 
 def values_data(

@@ -2,28 +2,39 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 from itertools import product
 from typing import TypeVar
 
 import ibpred
+from ibpred.boundary.fix import Boundary, fix_constants
+from ibpred.boundary.problem import boundary_problem, one_scale_values
 from ibpred.diffeq.derive import Derivation, differential_system
 from ibpred.diffeq.ratios import DimensionlessSystem, dimensionless
 from ibpred.digest import digest
 from ibpred.elimination.tape import Tape
 from ibpred.epsform.factorise import factorise
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
+from ibpred.epsform.matrices import identity
+from ibpred.errors import ObstructionError, UnfinishedError
 from ibpred.exact.codec import from_data, to_data
 from ibpred.exact.primes import first_primes
+from ibpred.exact.rational import ring
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import euclidean_signs
+from ibpred.iterated.series import Series
+from ibpred.iterated.solution import Solution, solve_orders
+from ibpred.numerics.value import Value
 from ibpred.progress import Progress
 from ibpred.reduction.masters import Masters, find_masters
 from ibpred.reduction.table import ReductionTable, reduce_integrals
 from ibpred.reduction.wanted import check_powers
+from ibpred.report.text import integral_text
 from ibpred.run.sampling import Meter, StoredSampler
 from ibpred.run.store import Store
+from ibpred.run.values import evaluate
 from ibpred.sectors.analysis import SectorAnalysis, analyse
 
 SEED = 20_260_301
@@ -164,8 +175,7 @@ class Chain:
     def connection(self) -> Connection:
         """What is brought to epsilon-form."""
         system = self.dimensionless()
-        name = self.definition.name
-        labels = tuple(f"{name}({','.join(map(str, m))})" for m in self.masters().masters)
+        labels = tuple(self.label(i) for i in range(len(self.masters().masters)))
         return Connection(system.ratios, system.ring, system.matrices, system.blocks, labels)
 
     def epsilon_form(self) -> EpsilonForm | Obstructed:
@@ -180,6 +190,86 @@ class Chain:
         found = stored.form if stored.form is not None else stored.obstructed
         assert found is not None
         return found
+
+    def euclidean_signs(self) -> dict[str, int]:
+        """Signs of the invariants in the Euclidean region.
+
+        Raises
+        ------
+        UnfinishedError
+            If the family has no Euclidean region.
+        """
+        found = euclidean_signs(self.definition)
+        if found is None:
+            raise UnfinishedError(
+                f"{self.definition.name} has no Euclidean region (no signs of its invariants make F "
+                "positive), and boundary constants are determined from one"
+            )
+        return found
+
+    def solved_form(self) -> EpsilonForm:
+        """The epsilon-form of the whole system; the masters themselves where there is no ratio.
+
+        Raises
+        ------
+        ObstructionError
+            If some block has none.
+        """
+        if len(self.definition.invariants) <= 1:
+            return _trivial_form(len(self.masters().masters))
+        found = self.epsilon_form()
+        if isinstance(found, Obstructed):
+            reasons = "; ".join(
+                f"{', '.join(self.label(i) for i in o.rows)}: {o.reason}" for o in found.obstructions
+            )
+            raise ObstructionError(f"{self.definition.name} has no epsilon-form: {reasons}")
+        return found
+
+    def boundary(self, weight: int) -> Boundary:
+        """Boundary constants through ``eps^weight`` of the canonical functions."""
+
+        def compute() -> Boundary:
+            form, signs, masters = self.solved_form(), self.euclidean_signs(), self.masters().masters
+            self.progress.stage("boundary constants")
+            if form.variables:
+                return fix_constants(boundary_problem(self.definition, masters, form, signs, weight))
+            return _one_scale_boundary(one_scale_values(self.definition, masters, signs, weight))
+
+        return self._kept("boundary", Boundary, weight, compute)
+
+    def solution(self, weight: int) -> Solution:
+        """The canonical functions in iterated integrals through ``eps^weight``."""
+        form, boundary = self.solved_form(), self.boundary(weight)
+        self.progress.stage("iterated integrals")
+        if form.variables:
+            return solve_orders(form, boundary.constants, weight, boundary.start)
+        orders = tuple(
+            tuple((((), value),) if value else () for value in vector) for vector in boundary.constants
+        )
+        return Solution((), boundary.start, orders)
+
+    def evaluate(
+        self, point: Mapping[str, Fraction], wanted: tuple[Powers, ...], order: int, digits: int
+    ) -> tuple[Value, ...]:
+        """Values at a point; see `ibpred.run.values.evaluate`."""
+        return evaluate(self, point, wanted, order, digits)
+
+    def label(self, row: int) -> str:
+        """A master by name."""
+        return integral_text(self.definition.name, self.masters().masters[row])
+
+
+def _trivial_form(count: int) -> EpsilonForm:
+    """The form of masters that depend on no ratio: they are their own canonical functions."""
+    field = ring(("eps",))
+    one = identity(field, count)
+    return EpsilonForm((), field, (), (), one, one, ((),) * count)
+
+
+def _one_scale_boundary(values: Sequence[Series]) -> Boundary:
+    start, end = min(series.start for series in values), min(series.end for series in values)
+    constants = tuple(tuple(s.coefficient(order) for s in values) for order in range(start, end + 1))
+    return Boundary(start, constants, (), ())
 
 
 @dataclass(frozen=True)
