@@ -12,7 +12,8 @@ from ibpred.elimination.system import SparseSystem
 from ibpred.elimination.table import point_values
 from ibpred.errors import InputError
 from ibpred.kernels.arithmetic import from_residues
-from ibpred.kernels.sparse import FULL, LEADING, eliminate, needed_rows, substitute_back
+from ibpred.kernels.sparse import FULL, LEADING, eliminate
+from ibpred.kernels.substitution import needed_rows, substitute_back
 
 
 @dataclass(frozen=True)

@@ -14,10 +14,14 @@ from ibpred.elimination.pruning import Pruned, prune, take_rows
 from ibpred.elimination.system import CoefficientTable, SparseSystem
 from ibpred.elimination.table import check_points, check_prime, evaluate_plan, plan_table
 from ibpred.elimination.tape import Tape
-from ibpred.errors import UnfinishedError
-from ibpred.kernels.record import INPUT, INVERSE, SUM, UNIT, Bounds, Recorded, record_elimination
+from ibpred.errors import InputError, UnfinishedError
+from ibpred.kernels.numbering import INPUT, INVERSE, SUM, UNIT, Bounds, Recorded
+from ibpred.kernels.record import record_elimination
 from ibpred.kernels.schedule import assign_slots, live_levels
-from ibpred.kernels.sparse import needed_rows, substitute_back
+from ibpred.kernels.substitution import needed_rows, substitute_back
+
+SMALLEST_PRIME = 2**31
+"""Modulo smaller primes different values would too often be taken for equal ones."""
 
 
 @dataclass(frozen=True)
@@ -73,6 +77,8 @@ def record(system: SparseSystem, wanted: Sequence[int], point: Sequence[int], pr
 
     Raises
     ------
+    InputError
+        If the point or the prime does not fit.
     UnfinishedError
         If the point is unlucky.
     """
@@ -87,10 +93,14 @@ def record_pruned(pruned: Pruned, point: Sequence[int], prime: int) -> Tape:
 
     Raises
     ------
+    InputError
+        If the point or the prime does not fit.
     UnfinishedError
         If the point is unlucky.
     """
     system = pruned.system
+    if prime < SMALLEST_PRIME:
+        raise InputError(f"a tape is recorded modulo a prime above {SMALLEST_PRIME}, not modulo {prime}")
     best = _record_rows(system, pruned.wanted, point, prime)
     if system.rows > 1:
         leader, length = system.column[system.start[:-1]], np.diff(system.start)

@@ -54,20 +54,13 @@ def leading_zeros(typingctx: Any, word: Any) -> Any:
     return types.int64(types.uint64), codegen
 
 
-@njit(cache=True, inline="always")
+@njit(cache=True)
 def multiply(x: Any, y: Any, p: Any, inverse_p: Any) -> Any:
     """``x*y`` modulo p, of size at most 0.55 p."""
     h = x * y
     low = fused(x, y, -h)
     q = fused(h, inverse_p, ROUND) - ROUND
     return fused(-q, p, h) + low
-
-
-@njit(cache=True, inline="always")
-def balance(x: Any, p: Any, inverse_p: Any) -> Any:
-    """An integer of size below 2**52, reduced to size at most p/2."""
-    q = fused(x, inverse_p, ROUND) - ROUND
-    return fused(-q, p, x)
 
 
 @njit(cache=True)

@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 from numba import njit
 
-from ibpred.kernels.record import INPUT, INVERSE, SUM, UNIT
+from ibpred.kernels.numbering import INPUT, INVERSE, SUM, UNIT
 
 
 @njit(cache=True)

@@ -198,3 +198,8 @@ def test_replay_checks_its_input() -> None:
         replay(tape, np.ones((3, 4), np.uint64), P)
     with pytest.raises(InputError, match="odd primes"):
         replay(tape, np.ones((2, 4), np.uint64), 2**61 - 1)
+
+
+def test_recording_needs_a_large_prime() -> None:
+    with pytest.raises(InputError, match="recorded modulo a prime above"):
+        record(random_system(1, 9, 8, 3), [7], [5, 6], 65521)
