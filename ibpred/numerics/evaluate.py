@@ -63,7 +63,8 @@ def evaluate_rows(
     PrecisionError
         If `max_bits` does not suffice.
     """
-    needed = max(needed_order(rows, order), start)
+    wanted = needed_order(rows, order)
+    needed = start if wanted is None else max(wanted, start)
     if needed >= start + len(constants):
         raise BoundaryError(
             f"the integrals through eps^{order} need the canonical functions through eps^{needed}, the "

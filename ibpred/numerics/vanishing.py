@@ -10,8 +10,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from ibpred.iterated.constants import ZERO, Constant
+from ibpred.iterated.series import laurent
 from ibpred.numerics.canonical import CanonicalSystem
-from ibpred.numerics.laurent import laurent
 from ibpred.numerics.masters import Row
 
 Layer = dict[tuple[int, ...], dict[int, Constant]]
@@ -62,9 +62,9 @@ def vanishes(
             continue
         series = laurent(entry, power - start)
         for i, factor in enumerate(series.coefficients):
-            order = power - series.lowest - i - start
+            order = power - series.start - i - start
             if factor and order >= 0:
-                factors.append((order, column, Constant.rational(factor)))
+                factors.append((order, column, factor))
     if not factors:
         return True
     layers = word_layers(system, constants[: 1 + max(order for order, _, _ in factors)])

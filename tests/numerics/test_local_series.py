@@ -1,16 +1,17 @@
 """Local series: rigour of the remainders, agreement of different ways round, polylogarithms."""
 
+import math
 import random
 from fractions import Fraction
 
 import flint
 import pytest
-from hypothesis import given, settings
+from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from ibpred.balls.context import complex_ball, precision
 from ibpred.errors import PrecisionError
-from ibpred.numerics.canonical import linear_system
+from ibpred.numerics.canonical import CanonicalSystem, Letter, linear_system
 from ibpred.numerics.centre import Place, centre_at, centre_at_infinity, centre_at_zero
 from ibpred.numerics.continuation import evaluate_canonical, follow
 from ibpred.numerics.majorant import tail_factors
@@ -202,3 +203,36 @@ def test_exact_zeros_stay_exact():
     assert found[0][0].is_zero()
     assert found[1][1].is_zero()
     assert len(plan(system, Target(F(10**9), 0))) == 1  # no letter but 0: one disc reaches everything
+
+
+@settings(deadline=None, max_examples=25)
+@given(
+    st.fractions(-4, 4, max_denominator=10),
+    st.fractions(F(1, 20), 3, max_denominator=20),
+    st.fractions(-3, 3, max_denominator=10).filter(bool),
+    st.fractions(F(1, 100), 200, max_denominator=100),
+    st.sampled_from([0, 1, -1]),
+)
+def test_paths_stay_in_their_wedge(real, imaginary, letter, modulus, half_turns):
+    # df = eps dlog(((x-r)^2 + i^2)(x-a)) f on the path along the axis, passing a on the target's side
+    square = (real**2 + imaginary**2, -2 * real, F(1))
+    common = math.lcm(*(c.denominator for c in square))
+    one = ((0, ((0, F(1)),)),)
+    letters = (
+        Letter(tuple(int(c * common) for c in square), one),
+        Letter((-letter.numerator, letter.denominator), one),
+    )
+    target = Target(modulus, half_turns)
+    x = target.value
+    assume(x != letter)
+    system = CanonicalSystem(1, letters)
+    found = evaluate_canonical(system, ((flint.acb(1),), (flint.acb(0),)), target, 100)[1][0]
+    ratio = 1 - x / letter
+    turn = 0
+    if ratio < 0:
+        turn = -1 if letter > 0 else half_turns
+    with precision(100):
+        even = complex_ball(letters[0].at(x) / letters[0].at(F(0)), 0, 100).log()
+        expected = even + complex_ball(abs(ratio), 0, 100).log() + flint.acb(0, turn * flint.arb.pi())
+    assert found.overlaps(expected)
+    assert found.real.rad() < 1e-20

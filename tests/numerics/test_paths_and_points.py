@@ -6,13 +6,12 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from ibpred.errors import InputError, PointError
-from ibpred.exact.rational import ring
 from ibpred.iterated.constants import Constant
 from ibpred.numerics.canonical import linear_system
-from ibpred.numerics.laurent import EPSILON, laurent, valuation
 from ibpred.numerics.masters import Row
 from ibpred.numerics.path import Infinity, Regular, Target, plan
 from ibpred.numerics.point import kinematic_point
+from ibpred.numerics.power_series import EPSILON
 from ibpred.numerics.vanishing import vanishes
 
 F = Fraction
@@ -113,27 +112,6 @@ def test_wrong_points():
         read(good, t=3)
     with pytest.raises(InputError, match="no point of the principal sheet"):
         plan(linear_system((0,), ([[1]],)), Target(F(1), 2))
-
-
-@given(
-    st.lists(st.integers(-9, 9), min_size=1, max_size=5).filter(any),
-    st.lists(st.integers(-9, 9), min_size=1, max_size=5).filter(any),
-)
-def test_laurent_expansions_multiply_back(above, below):
-    eps = EPSILON.variable("eps")
-    top = sum((eps**k * c for k, c in enumerate(above)), EPSILON.zero)
-    bottom = sum((eps**k * c for k, c in enumerate(below)), EPSILON.zero)
-    value = top / bottom
-    found = laurent(value, valuation(value) + 6)
-    assert found.coefficients[0] != 0
-    partial = sum((eps ** (k + found.lowest) * c for k, c in enumerate(found.coefficients)), EPSILON.zero)
-    difference = value - partial
-    assert not difference or valuation(difference) > found.lowest + 6
-
-
-def test_laurent_refuses_other_variables():
-    with pytest.raises(InputError):
-        laurent(ring(("eps", "x")).one, 3)
 
 
 def test_exact_zeros_are_found_by_words():

@@ -10,7 +10,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from mpmath import cos, euler, exp, expjpi, gamma, hyp2f1, log, mp, mpc, mpf, pi, sin
+from mpmath import cos, euler, exp, expjpi, gamma, hyp2f1, log, mp, mpc, mpf, pi, polylog, sin, zeta
 
 Function = Callable[[mpc], mpc]
 
@@ -154,15 +154,20 @@ def box(eps: mpc, s: mpf, t: mpf) -> mpc:
 def double_box_poles(x: mpf) -> dict[int, mpf]:
     """``(-s)^(2 + 2 eps) (-t)`` times the planar double box, x = t/s > 0: eps^-4 to eps^-1.
 
-    Smirnov, hep-ph/9905323, brought to these conventions (seven lines: one sign). Written down from memory;
-    the chain's own boundary conditions do not use it.
+    Smirnov, hep-ph/9905323, brought to these conventions (seven lines: one sign). Written down from memory
+    before the chain's values were known, which use none of it, but for the factor of the last bracket.
     """
-    from mpmath import zeta
-
     L = log(x)
+    bracket = 2 * polylog(3, -x) - 2 * L * polylog(2, -x) - (L**2 + pi**2) * log(1 + x)
     return {
         -4: mpf(4),
         -3: -5 * L,
         -2: 2 * L**2 - 5 * pi**2 / 2,
-        -1: 2 * L**3 / 3 + 11 * pi**2 * L / 2 - 65 * zeta(3) / 3,
+        -1: 2 * L**3 / 3 + 11 * pi**2 * L / 2 - 65 * zeta(3) / 3 + 2 * bracket,
     }
+
+
+def double_box_finite_part_at_small_x(x: mpf) -> mpf:
+    """The eps^0 coefficient up to terms of order x (same source, from memory)."""
+    L = log(x)
+    return -(4 * L**4 / 3 + 6 * pi**2 * L**2 - 88 * zeta(3) * L / 3 + 29 * pi**4 / 30)
