@@ -48,7 +48,7 @@ def until_accurate(
     Parameters
     ----------
     compute
-        The computation, given the working bits.
+        The computation, given the working bits. A `PrecisionError` from it counts as too few bits.
     balls_of
         The balls of a result that must be accurate (see `is_accurate`).
     digits
@@ -67,15 +67,20 @@ def until_accurate(
     """
     bits = min(start_bits, max_bits)
     while True:
-        result = compute(bits)
-        missing = [ball for ball in balls_of(result) if not is_accurate(ball, digits)]
-        if not missing:
-            return result
-        if bits >= max_bits:
-            shown = ", ".join(ball.str(5) for ball in missing[:3])
-            raise PrecisionError(
-                f"{len(missing)} of the values are not known to {digits} digits at {bits} bits "
-                f"(such as {shown}); raise the highest working precision (max_bits = {max_bits}) "
-                "or ask for fewer digits"
-            )
+        try:
+            result = compute(bits)
+        except PrecisionError:
+            if bits >= max_bits:
+                raise
+        else:
+            missing = [ball for ball in balls_of(result) if not is_accurate(ball, digits)]
+            if not missing:
+                return result
+            if bits >= max_bits:
+                shown = ", ".join(ball.str(5) for ball in missing[:3])
+                raise PrecisionError(
+                    f"{len(missing)} of the values are not known to {digits} digits at {bits} bits "
+                    f"(such as {shown}); raise the highest working precision (max_bits = {max_bits}) "
+                    "or ask for fewer digits"
+                )
         bits = min(max_bits, bits + max(bits // 2, 32))

@@ -85,8 +85,8 @@ def _at(entry: Rational, variables: Sequence[str], x: Fraction) -> Rational:
         )
     except ZeroDivisionError:
         raise PointError(
-            f"the masters' basis is singular at {', '.join(variables)} = {x}: {entry.denominator} vanishes there; "
-            "choose another point"
+            f"the masters' basis is singular at {', '.join(variables)} = {x}: {entry.denominator} vanishes "
+            "there; choose another point"
         ) from None
 
 

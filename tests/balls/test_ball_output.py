@@ -83,6 +83,17 @@ def test_until_accurate_raises_the_precision():
         until_accurate(compute, lambda z: [z], 20, 64, 100)
 
 
+def test_a_precision_error_asks_for_more_bits():
+    def compute(bits):
+        if bits < 150:
+            raise PrecisionError("too few bits")
+        return flint.acb(1)
+
+    assert until_accurate(compute, lambda z: [z], 20, 64, 4000) == 1
+    with pytest.raises(PrecisionError, match="too few bits"):
+        until_accurate(compute, lambda z: [z], 20, 64, 100)
+
+
 def test_zero_is_judged_absolutely():
     assert is_accurate(flint.acb(flint.arb(0, 1e-21)), 20)
     assert not is_accurate(flint.acb(flint.arb(0, 1e-19)), 20)
