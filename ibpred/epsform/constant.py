@@ -41,7 +41,7 @@ from ibpred.exact.rational import Rational, Ring
 
 @dataclass(frozen=True)
 class Fuchsian:
-    """``A = sum_l R_l(eps) dlog(letter_l)/dx``."""
+    """``A = sum_l R_l(eps) dlog(letter_l)``."""
 
     places: tuple[Place, ...]
     residues: tuple[Matrix, ...]
@@ -63,29 +63,41 @@ class Stuck:
     finding: Finding
 
 
-def fuchsian(matrix: Matrix, blocks: Sequence[range], ring: Ring, name: str) -> Fuchsian | Stuck:
-    """Residues of a system with simple poles that vanishes at infinity."""
+def fuchsian(matrices: Mapping[str, Matrix], blocks: Sequence[range], ring: Ring) -> Fuchsian | Stuck:
+    """Residues of an integrable system with simple poles that vanishes at infinity in every ratio."""
     owner = {row: k for k, block in enumerate(blocks) for row in block}
-    places = places_of((e for row in matrix for e in row), ring, name)
-    residues = []
-    for place in places:
-        slope = place.slope()
-        rows = []
-        for i, row in enumerate(matrix):
-            values = []
-            for entry in row:
-                if not entry:
-                    values.append(ring.zero)
-                    continue
-                residue = place.divide(place.principal(entry, 1), slope)
-                if any(residue[1:]):
-                    return Stuck(owner[i], Finding(conjugate(place.text()), ()))
-                if place.moves and residue[0]:
-                    return Stuck(owner[i], Finding(moving(place.text()), ()))
-                values.append(residue[0])
-            rows.append(tuple(values))
-        residues.append(tuple(rows))
-    return Fuchsian(places, tuple(residues))
+    places: dict[str, Place] = {}
+    residues: list[Matrix] = []
+    for name, matrix in matrices.items():
+        for place in places_of((e for row in matrix for e in row), ring, name):
+            # a letter with two ratios has the same residue in both, since the system is integrable
+            if place.text() in places:
+                continue
+            places[place.text()] = place
+            rows = []
+            for i, row in enumerate(matrix):
+                values = []
+                for entry in row:
+                    residue = _residue(entry, place, ring)
+                    if isinstance(residue, Finding):
+                        return Stuck(owner[i], residue)
+                    values.append(residue)
+                rows.append(tuple(values))
+            residues.append(tuple(rows))
+    return Fuchsian(tuple(places.values()), tuple(residues))
+
+
+def _residue(entry: Rational, place: Place, ring: Ring) -> Rational | Finding:
+    if not entry:
+        return ring.zero
+    residue = place.divide(place.principal(entry, 1), place.slope())
+    if any(residue[1:]):
+        return Finding(conjugate(place.text()), ())
+    if place.moves and residue[0]:
+        return Finding(moving(place.text()), ())
+    if any(variable != "eps" for variable in residue[0].variables()):
+        return Finding(f"the residue of the coupling at {place.text()} depends on the other ratios", ())
+    return residue[0]
 
 
 def factor_eps(

@@ -38,23 +38,19 @@ def residue_at_infinity(form: EpsilonForm) -> tuple[tuple[Fraction, ...], ...]:
 
 
 def exponents(form: EpsilonForm) -> tuple[tuple[str, tuple[str, ...]], ...]:
-    """Coefficients of eps in the local exponents at each singular point, infinity last.
-
-    Parameters
-    ----------
-    form
-        In one ratio.
+    """Coefficients of eps in the local exponents at each singular place.
 
     Returns
     -------
     table
-        (point, eigenvalues as text); near the point x = a the canonical functions behave like
-        ``(x - a)^(eps lambda)``, near infinity like ``(1/x)^(eps lambda)``.
+        (place, eigenvalues as text); near a letter l = 0 the canonical functions behave like
+        ``l^(eps lambda)``. For forms in one ratio x infinity comes last, with behaviour
+        ``(1/x)^(eps lambda)``.
     """
-    name = form.variables[0]
-    table = [
-        (place(letter.numerator, form.ring, name).text(), eigenvalue_texts(matrix))
-        for letter, matrix in zip(form.letters, form.matrices, strict=True)
-    ]
-    table.append((f"{name} = infinity", eigenvalue_texts(residue_at_infinity(form))))
+    table = []
+    for letter, matrix in zip(form.letters, form.matrices, strict=True):
+        name = next(v for v in form.variables if v in letter.variables())
+        table.append((place(letter.numerator, form.ring, name).text(), eigenvalue_texts(matrix)))
+    if len(form.variables) == 1:
+        table.append((f"{form.variables[0]} = infinity", eigenvalue_texts(residue_at_infinity(form))))
     return tuple(table)

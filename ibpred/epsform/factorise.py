@@ -1,4 +1,4 @@
-"""The epsilon-factorised form of a differential system in one ratio."""
+"""The epsilon-factorised form of a differential system."""
 
 from __future__ import annotations
 
@@ -13,12 +13,9 @@ from ibpred.epsform.cover import (
     Cover,
     describe,
     double_cover,
-    new_ratio,
-    parametrisation,
-    pulled_back,
 )
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix, Obstructed, Obstruction
-from ibpred.epsform.matrices import Constants, identity, inverse, part, product, subtracted
+from ibpred.epsform.matrices import Constants, added, derivative, identity, inverse, part, product, subtracted
 from ibpred.epsform.picardfuchs import picard_fuchs
 from ibpred.epsform.places import Place, places_of
 from ibpred.epsform.single import solve_single
@@ -26,7 +23,7 @@ from ibpred.epsform.structure import coupled_blocks, couplings, reachable
 from ibpred.epsform.triangular import Grid, eliminate
 from ibpred.epsform.verify import verify
 from ibpred.errors import ReconstructionError, UnfinishedError
-from ibpred.exact.rational import Ring, ring
+from ibpred.exact.rational import Ring
 from ibpred.progress import SILENT, Progress
 
 
@@ -42,7 +39,7 @@ def factorise(
     Parameters
     ----------
     connection
-        In one ratio.
+        In one ratio, or in several if no masters are coupled to each other.
     primes
         For the modular samples, of about 50 to 62 bits; a few dozen, since only those are used modulo
         which the letters of coupled blocks split.
@@ -60,23 +57,19 @@ def factorise(
     Raises
     ------
     UnfinishedError
-        For several ratios (not supported yet), or where primes and samples do not suffice.
+        For coupled masters in several ratios (not supported yet), or where primes and samples do not
+        suffice.
     """
     progress = SILENT if progress is None else progress
-    if len(connection.variables) != 1:
-        raise UnfinishedError(
-            f"the epsilon-form is found for one ratio; this system has {len(connection.variables)}: "
-            f"{', '.join(connection.variables) or 'none'}"
-        )
-    name = connection.variables[0]
+    if not connection.variables:
+        raise UnfinishedError("a system without ratios has no differential equation to factorise")
     links = couplings(connection)
     solved: dict[tuple[int, ...], Block] = {}
     obstructions: list[Obstruction] = []
     for rows, outcome in diagonal_blocks(connection, primes, seed, progress):
         if isinstance(outcome, Finding):
-            own = part(connection.matrices[name], rows, rows)
-            outcome = on_cover(outcome, own, name, primes, seed)
-            obstructions.append(_obstruction(rows, outcome, own, name))
+            outcome = on_cover(outcome, restricted(connection, rows), primes, seed)
+            obstructions.append(_obstruction(connection, rows, outcome))
         else:
             solved[rows] = outcome
     blocks = coupled_blocks(links)
@@ -91,7 +84,8 @@ def factorise(
         if isinstance(outcome_, EpsilonForm):
             break
         rows = free[outcome_.block]
-        obstructions.append(_obstruction(rows, outcome_.finding, None, name))
+        found = outcome_.finding
+        obstructions.append(Obstruction(rows, found.reason, None, found.exponents))
     if not obstructions:
         return outcome_
     return Obstructed(tuple(obstructions), tuple(sorted(i for block in free for i in block)), outcome_)
@@ -100,37 +94,43 @@ def factorise(
 def diagonal_blocks(
     connection: Connection, primes: Sequence[int], seed: int, progress: Progress
 ) -> tuple[tuple[tuple[int, ...], Block | Finding], ...]:
-    """The sets of rows that depend on each other, each with its epsilon-form or what is in the way."""
-    name = connection.variables[0]
+    """The sets of rows that depend on each other, each with its epsilon-form or what is in the way.
+
+    Raises
+    ------
+    UnfinishedError
+        For coupled rows in several ratios, which are not supported yet.
+    """
     blocks = coupled_blocks(couplings(connection))
     progress.stage("epsilon-form of the diagonal blocks")
     found: list[tuple[tuple[int, ...], Block | Finding]] = []
     for rows in blocks:
-        subject = f"block {', '.join(connection.labels[i] for i in rows)}"
-        own = part(connection.matrices[name], rows, rows)
-        found.append((rows, _solve_block(own, name, primes, seed, subject)))
+        found.append((rows, _solve_block(restricted(connection, rows), primes, seed)))
         progress.advance(len(found), len(blocks))
     return tuple(found)
 
 
-def _solve_block(own: Matrix, name: str, primes: Sequence[int], seed: int, subject: str) -> Block | Finding:
-    if len(own) == 1:
-        return solve_single(own[0][0], name)
-    return solve_coupled(own, name, primes, seed, subject)
+def _solve_block(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
+    if len(block.labels) == 1:
+        return solve_single({name: block.matrices[name][0][0] for name in block.variables})
+    subject = f"block {', '.join(block.labels)}"
+    if len(block.variables) > 1:
+        raise UnfinishedError(
+            f"{subject}: masters that are coupled to each other are brought to epsilon-form in one ratio "
+            f"only; here are {len(block.variables)}: {', '.join(block.variables)}"
+        )
+    name = block.variables[0]
+    return solve_coupled(block.matrices[name], name, primes, seed, subject)
 
 
-def on_cover(found: Finding, own: Matrix, name: str, primes: Sequence[int], seed: int) -> Finding:
+def on_cover(found: Finding, block: Connection, primes: Sequence[int], seed: int) -> Finding:
     """Add to a missing square root what would remove it, and whether the block has a form then."""
     points = found.branch_points
     if not points:
         return found
-    reason = f"{found.reason}; {describe(points, name)}"
+    reason = f"{found.reason}; {describe(points, block.variables[0])}"
     if len(points) == 2:
-        old = own[0][0].ring
-        new = new_ratio(old.names)
-        substitution = parametrisation(points, ring(new if n == name else n for n in old.names), new)
-        lifted = pulled_back(own, name, substitution, new)
-        outcome = _solve_block(lifted, new, primes, seed, "block on the double cover")
+        outcome = _solve_block(double_cover(block, points).connection, primes, seed)
         if isinstance(outcome, Finding):
             return Finding(f"{reason}, but even then: {outcome.reason}", found.exponents)
     return Finding(reason, found.exponents, points)
@@ -145,18 +145,21 @@ def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cove
     Parameters
     ----------
     connection
-        In one ratio.
+        In one ratio (for several there is none).
     primes, seed
         As for `factorise`.
     """
+    if len(connection.variables) != 1:
+        return None
     for _, outcome in diagonal_blocks(connection, primes, seed, SILENT):
         if isinstance(outcome, Finding) and len(outcome.branch_points) == 2:
             return double_cover(connection, outcome.branch_points)
     return None
 
 
-def _obstruction(rows: tuple[int, ...], found: Finding, own: Matrix | None, name: str) -> Obstruction:
-    operator = None if own is None else picard_fuchs(own, name)
+def _obstruction(connection: Connection, rows: tuple[int, ...], found: Finding) -> Obstruction:
+    name = connection.variables[0]
+    operator = picard_fuchs(part(connection.matrices[name], rows, rows), name)
     return Obstruction(rows, found.reason, operator, found.exponents)
 
 
@@ -179,23 +182,30 @@ def _assembled(
     seed: int,
 ) -> EpsilonForm | Stuck:
     """The form of the subsystem made of some blocks, from the forms of the blocks."""
-    field, name = connection.ring, connection.variables[0]
+    field = connection.ring
     order = [i for block in blocks for i in block]
     starts = [sum(len(b) for b in blocks[:k]) for k in range(len(blocks) + 1)]
     ranges = [range(a, b) for a, b in pairwise(starts)]
-    letters = _letters(connection, blocks, name)
-    grid = _diagonalised(connection.matrices[name], blocks, solved, field, name)
-    grid, change = eliminate(grid, [block.residues for block in solved], letters, field, name)
-    system = fuchsian(_joined(grid), ranges, field, name)
+    grids = {
+        name: _diagonalised(connection.matrices[name], blocks, solved, field, name)
+        for name in connection.variables
+    }
+    unipotent = identity(field, len(order))
+    local = [block.residues for block in solved]
+    for name in connection.variables:
+        letters = _letters(connection, blocks, name)
+        grids[name], change = eliminate(grids[name], local, letters, field, name)
+        step = added(identity(field, len(order)), _joined(change))
+        unipotent = product(unipotent, step, field)
+        for other in connection.variables:
+            if other != name:
+                grids[other] = _cut(_gauged(_joined(grids[other]), step, other, field), ranges)
+    system = fuchsian({name: _joined(grid) for name, grid in grids.items()}, ranges, field)
     if isinstance(system, Stuck):
         return system
     factored = factor_eps(system, ranges, [block.inverse for block in solved], primes, seed)
     if isinstance(factored, Stuck):
         return factored
-    unipotent = tuple(
-        tuple(a + b for a, b in zip(x, y, strict=True))
-        for x, y in zip(identity(field, len(order)), _joined(change), strict=True)
-    )
     left = _diagonal([block.transformation for block in solved], field)
     right = _diagonal([block.inverse for block in solved], field)
     transformation = product(product(left, unipotent, field), factored.matrix, field)
@@ -258,6 +268,16 @@ def _diagonalised(
             line.append(own)
         grid.append(line)
     return grid
+
+
+def _gauged(matrix: Matrix, step: Matrix, name: str, ring: Ring) -> Matrix:
+    """``S^-1 (A S - dS/dx)``."""
+    whole = subtracted(product(matrix, step, ring), derivative(step, name))
+    return product(inverse(step, ring), whole, ring)
+
+
+def _cut(matrix: Matrix, ranges: Sequence[range]) -> Grid:
+    return [[part(matrix, rows, columns) for columns in ranges] for rows in ranges]
 
 
 def _joined(grid: Grid) -> Matrix:

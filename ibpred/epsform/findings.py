@@ -48,7 +48,7 @@ def _branch_points(obstacle: Obstacle, places: Sequence[Place]) -> tuple[Fractio
         if not orders or index in seen:
             continue
         seen.add(index)
-        if orders != {2} or (index >= 0 and (places[index].moves or places[index].degree > 1)):
+        if orders != {2} or (index >= 0 and places[index].root is None):
             return ()
         points.append(None if index < 0 else places[index].root)
     return tuple(points)

@@ -73,13 +73,15 @@ class Place:
 
     @property
     def moves(self) -> bool:
-        """Whether the place depends on eps (or another variable)."""
-        return any(not c.is_constant() for c in self.monic)
+        """Whether the place depends on eps."""
+        return degree(self.polynomial, self.ring, "eps") > 0
 
     @property
-    def root(self) -> Fraction:
-        """The rational root of a linear factor that does not move."""
-        return -self.monic[0].to_fraction()
+    def root(self) -> Fraction | None:
+        """The point, where it is a rational number."""
+        if self.degree == 1 and self.monic[0].is_constant():
+            return -self.monic[0].to_fraction()
+        return None
 
     @property
     def element(self) -> Rational:
@@ -93,8 +95,9 @@ class Place:
 
     def text(self) -> str:
         """The place for messages, e.g. ``x = 4`` or ``x^2+1 = 0``."""
-        if self.degree == 1 and not self.moves:
-            return f"{self.name} = {self.root}"
+        root = self.root
+        if root is not None:
+            return f"{self.name} = {root}"
         return f"{polynomial_text(self.polynomial)} = 0"
 
     def order(self, polynomial: Polynomial) -> tuple[int, Polynomial]:
@@ -197,7 +200,8 @@ def places_of(values: Iterable[Rational], ring: Ring, name: str) -> tuple[Place,
     return tuple(sorted(all_places, key=_rank))
 
 
-def _rank(item: Place) -> tuple[bool, int, Fraction, str]:
-    """Order of the letters: rational roots by size with zero first, then the rest."""
-    root = item.root if item.degree == 1 and not item.moves else Fraction(0)
-    return item.moves, item.degree, abs(root), item.text()
+def _rank(item: Place) -> tuple[bool, int, bool, Fraction, str]:
+    """Order of the letters: rational points by size with zero first, then the rest."""
+    root = item.root
+    size = Fraction(0) if root is None else abs(root)
+    return item.moves, item.degree, root is None, size, item.text()

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from fractions import Fraction
 
 from ibpred.epsform.blocks import (
@@ -21,49 +22,48 @@ from ibpred.epsform.places import Place, places_of
 from ibpred.exact.rational import Rational
 
 
-def solve_single(value: Rational, name: str) -> Block | Finding:
-    """Epsilon-form of ``I' = value I``.
+def solve_single(values: Mapping[str, Rational]) -> Block | Finding:
+    """Epsilon-form of ``dI = sum_x values[x] dx I``.
 
     Parameters
     ----------
-    value
-        The coefficient, an element of Q(eps, x).
-    name
-        The variable x.
+    values
+        For each ratio the coefficient, an element of Q(eps, ratios); integrable.
     """
-    ring = value.ring
-    factor, rest = ring.one, value
-    residues: dict[str, Constants] = {}
+    found: dict[str, tuple[Place, Fraction, Fraction]] = {}
     exponents: list[tuple[str, tuple[str, ...]]] = []
-    fractions: list[tuple[Fraction, Place]] = []
     at_infinity = Fraction(0)
-    for place in places_of([value], ring, name):
-        order, _ = place.order(value.denominator)
-        if order > 1:
-            return Finding(irregular(place.text()), tuple(exponents))
-        residue = place.divide(place.principal(value, 1), place.slope())
-        if any(residue[1:]):
-            return Finding(conjugate(place.text()), tuple(exponents))
-        exponent = split_exponent(residue[0])
-        if exponent is None:
-            return Finding(no_exponent(str(residue[0]), place.text()), tuple(exponents))
-        exponents.append((place.text(), (exponent_text(linear(*exponent)),)))
-        if place.moves and exponent[1]:
-            return Finding(moving(place.text()), tuple(exponents))
-        rest = rest - residue[0] * place.logarithmic()
-        at_infinity -= place.degree * exponent[0]
-        if exponent[0].denominator > 1:
-            fractions.append((exponent[0], place))
-            continue
-        factor = factor * place.element ** int(exponent[0])
-        if exponent[1]:
-            residues[place.text()] = ((exponent[1],),)
-    if rest:
-        return Finding(irregular(f"{name} = infinity"), tuple(exponents))
+    for name, value in values.items():
+        ring, rest = value.ring, value
+        for place in places_of([value], ring, name):
+            order, _ = place.order(value.denominator)
+            if order > 1:
+                return Finding(irregular(place.text()), tuple(exponents))
+            residue = place.divide(place.principal(value, 1), place.slope())
+            if any(residue[1:]):
+                return Finding(conjugate(place.text()), tuple(exponents))
+            exponent = split_exponent(residue[0])
+            if exponent is None:
+                return Finding(no_exponent(str(residue[0]), place.text()), tuple(exponents))
+            rest = rest - residue[0] * place.logarithmic()
+            if place.text() in found:
+                continue
+            found[place.text()] = (place, *exponent)
+            exponents.append((place.text(), (exponent_text(linear(*exponent)),)))
+            at_infinity -= place.degree * exponent[0]
+            if place.moves and exponent[1]:
+                return Finding(moving(place.text()), tuple(exponents))
+        if rest:
+            return Finding(irregular(f"{name} = infinity"), tuple(exponents))
+    fractions = [(a, place) for place, a, _ in found.values() if a.denominator > 1]
     if fractions:
         worst, place = max(fractions, key=lambda item: item[0].denominator)
-        branch = _branch_points(fractions, at_infinity)
+        branch = _branch_points(fractions, at_infinity) if len(values) == 1 else ()
         return Finding(fractional(worst, place.text()), tuple(exponents), branch)
+    factor = next(iter(values.values())).ring.one
+    for place, a, _ in found.values():
+        factor = factor * place.element ** int(a)
+    residues: dict[str, Constants] = {text: ((b,),) for text, (_, _, b) in found.items() if b}
     return Block(((factor,),), ((1 / factor,),), residues)
 
 
@@ -71,7 +71,7 @@ def _branch_points(
     fractions: list[tuple[Fraction, Place]], at_infinity: Fraction
 ) -> tuple[Fraction | None, ...]:
     """The branch points if all roots are square roots at fixed rational points."""
-    if any(a.denominator > 2 or p.moves or p.degree > 1 for a, p in fractions):
+    if any(a.denominator > 2 or p.root is None for a, p in fractions):
         return ()
     points: list[Fraction | None] = [p.root for _, p in fractions]
     if at_infinity.denominator > 1:

@@ -130,6 +130,8 @@ def _infinity(
     for block in residues:
         total: Constants | None = None
         for text, constants in block.items():
+            if text not in letters:
+                continue  # a letter of the other ratios
             weight = letters[text].degree
             if total is None:
                 total = tuple(tuple(v * weight for v in row) for row in constants)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from fractions import Fraction
 from random import Random
 
 import pytest
@@ -10,8 +11,9 @@ from synthetic_systems import RING, canonical, connection, gauged, matrix, scram
 
 from ibpred.epsform.exponents import exponents
 from ibpred.epsform.factorise import factorise, root_cover
-from ibpred.epsform.form import EpsilonForm, Obstructed
-from ibpred.epsform.verify import verify, verify_modular
+from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
+from ibpred.epsform.matrices import added, derivative, inverse, product
+from ibpred.epsform.verify import canonical_matrix, verify, verify_modular
 from ibpred.errors import UnfinishedError
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes
@@ -267,11 +269,52 @@ def test_coupled_block_with_a_square_root_that_stays_obstructed() -> None:
     assert "nontrivial bundle" in found.reason
 
 
-def test_several_ratios_are_refused() -> None:
-    two = ring(("eps", "x", "y"))
-    zero = ((two.zero,),)
-    system = replace(
-        massless_box(), variables=("x", "y"), ring=two, matrices={"x": zero, "y": zero}, labels=("I",)
-    )
-    with pytest.raises(UnfinishedError, match="2: x, y"):
-        factorise(system, PRIMES, seed=1)
+TWO = ring(("eps", "x", "y"))
+
+
+def two_ratios(letters: dict[str, list[list[int]]], change_rows: list[list[str]]) -> Connection:
+    """The system of ``I = S f`` in two ratios from the canonical system of f."""
+    change = tuple(tuple(parse_rational(e, TWO) for e in row) for row in change_rows)
+    back, size = inverse(change, TWO), len(change)
+    matrices = {}
+    for name in ("x", "y"):
+        logs = {t: parse_rational(t, TWO).derivative(name) / parse_rational(t, TWO) for t in letters}
+        residues = {t: tuple(tuple(map(Fraction, row)) for row in rows) for t, rows in letters.items()}
+        system = canonical_matrix(residues, logs, size, TWO)
+        whole = added(product(change, system, TWO), derivative(change, name))
+        matrices[name] = product(whole, back, TWO)
+    return Connection(("x", "y"), TWO, matrices, (1,) * size, tuple(f"I{i}" for i in range(size)))
+
+
+ONE_LEG_BOX = {
+    "x": [[0, 0, 0, 0], [0, 0, 0, 0], [0, 0, -1, 0], [0, 0, 0, -1]],
+    "x-y": [[0, 0, 0, 0], [0, 0, 0, 0], [0, 0, 0, 0], [0, -2, 2, 0]],
+    "x-y+1": [[0, 0, 0, 0], [0, 0, 0, 0], [0, 0, 0, 0], [-2, 2, -2, 1]],
+    "y": [[0, 0, 0, 0], [0, -1, 0, 0], [0, 0, 0, 0], [0, 2, 0, 0]],
+    "y-1": [[0, 0, 0, 0], [0, 0, 0, 0], [0, 0, 0, 0], [2, -2, 0, 0]],
+}
+"""Box with one off-shell leg, x = t/s, y = m^2/s: integrable residues, obtained from its identities."""
+
+
+def test_two_ratios() -> None:
+    change = [
+        ["1/(1-2*eps)", "0", "0", "0"],
+        ["0", "1/(1-2*eps)/y", "0", "0"],
+        ["1/(x-y)", "y/(x-y+1)^2", "x/(1-2*eps)", "0"],
+        ["eps/(y-1)", "1", "x^2/y", "1/(eps*x)"],
+    ]
+    form = solved(two_ratios(ONE_LEG_BOX, change))
+    assert {str(letter) for letter in form.letters} == set(ONE_LEG_BOX)
+    assert [point for point, _ in exponents(form)] == ["x = 0", "x-y = 0", "x-y+1 = 0", "y = 0", "y = 1"]
+
+
+def test_coupled_rows_in_two_ratios_are_refused() -> None:
+    change = [["1", "0", "0", "0"], ["0", "1", "0", "0"], ["0", "0", "1", "1/x"], ["0", "0", "y", "eps"]]
+    with pytest.raises(UnfinishedError, match=r"I2, I3.*2: x, y"):
+        factorise(two_ratios(ONE_LEG_BOX, change), PRIMES, seed=1)
+
+
+def test_system_without_ratios_is_refused() -> None:
+    none = ring(("eps",))
+    with pytest.raises(UnfinishedError, match="without ratios"):
+        factorise(Connection((), none, {}, (1,), ("I",)), PRIMES, seed=1)

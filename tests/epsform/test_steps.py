@@ -189,7 +189,7 @@ def test_direct_sums_are_found() -> None:
 
 
 def test_single_block_with_apparent_pole() -> None:
-    found = solve_single(rational("(2+eps)/x-1/(x-eps)-3*eps/(x+1)"), "x")
+    found = solve_single({"x": rational("(2+eps)/x-1/(x-eps)-3*eps/(x+1)")})
     assert isinstance(found, Block)
     assert found.transformation[0][0] in (rational("x^2/(x-eps)"), rational("x^2/(eps-x)"))
     assert found.residues == {"x = 0": ((1,),), "x = -1": ((-3,),)}
