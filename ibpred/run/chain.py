@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from itertools import product
 from typing import TypeVar
@@ -17,7 +17,7 @@ from ibpred.digest import digest
 from ibpred.elimination.tape import Tape
 from ibpred.epsform.factorise import factorise
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
-from ibpred.epsform.matrices import identity
+from ibpred.epsform.matrices import identity, scaled
 from ibpred.errors import ObstructionError, UnfinishedError
 from ibpred.exact.codec import from_data, to_data
 from ibpred.exact.primes import first_primes
@@ -185,11 +185,32 @@ class Chain:
             "epsilon-form",
             _Outcome,
             None,
-            lambda: _outcome(factorise(connection, self.primes, SEED, self.progress)),
+            lambda: _outcome(self._normalised(factorise(connection, self.primes, SEED, self.progress))),
         )
         found = stored.form if stored.form is not None else stored.obstructed
         assert found is not None
         return found
+
+    def _normalised(self, found: EpsilonForm | Obstructed) -> EpsilonForm | Obstructed:
+        """Scale all functions by one power of eps so that they begin at ``eps^0``.
+
+        The differential equation is blind to such a factor; the boundary constants tell it. Where they
+        stay open the form is left as it is.
+        """
+        if isinstance(found, Obstructed) or len(found.variables) != 1 or any(found.tags):
+            return found
+        masters = self.masters().masters
+        try:
+            problem = boundary_problem(self.definition, masters, found, self.euclidean_signs(), 0)
+            start = fix_constants(problem).start
+        except UnfinishedError:
+            return found
+        factor = found.ring.variable("eps") ** start
+        return replace(
+            found,
+            transformation=scaled(found.transformation, factor),
+            inverse=scaled(found.inverse, 1 / factor),
+        )
 
     def euclidean_signs(self) -> dict[str, int]:
         """Signs of the invariants in the Euclidean region.

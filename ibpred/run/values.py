@@ -7,7 +7,7 @@ from fractions import Fraction
 from typing import TYPE_CHECKING
 
 from ibpred.epsform.form import EpsilonForm
-from ibpred.errors import InputError, UnfinishedError
+from ibpred.errors import UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import masses
 from ibpred.family.units import integral_dimension
@@ -118,10 +118,7 @@ def _integral_rows(
     for powers in wanted:
         combination = dict(table.reductions[powers])
         exponent = _exponent(family, powers)
-        try:
-            rows.append(
-                integral_row(powers, exponent, combination, masters, family.dimension, place.values, unit)
-            )
-        except InputError as error:
-            raise UnfinishedError(str(error)) from error
+        rows.append(
+            integral_row(powers, exponent, combination, masters, family.dimension, place.values, unit)
+        )
     return tuple(rows)
