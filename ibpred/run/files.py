@@ -50,6 +50,29 @@ def check_writable(folder: Path) -> None:
         ) from error
 
 
+def write_file(path: Path, text: str) -> None:
+    """Write a text file; an old one is replaced as a whole.
+
+    Raises
+    ------
+    UnwritableError
+        If the file cannot be written; an old one then stays.
+    """
+    try:
+        path.parent.mkdir(parents=True, exist_ok=True)
+        handle, fresh = tempfile.mkstemp(prefix=f".{path.name}-", dir=path.parent)
+        try:
+            with os.fdopen(handle, "w", encoding="utf-8") as stream:
+                stream.write(text)
+            os.chmod(fresh, 0o644)
+            os.replace(fresh, path)
+        except OSError:
+            os.unlink(fresh)
+            raise
+    except OSError as error:
+        raise UnwritableError(f"{path} cannot be written ({error.strerror}); choose another file") from error
+
+
 def write_folder(folder: Path, files: Mapping[str, str]) -> None:
     """Write text files into a new folder, then put it in the place of the old one.
 
