@@ -2,40 +2,29 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
-from random import Random
+from math import isqrt
 from typing import Any
-
-import flint
 
 from ibpred.epsform.blocks import Block, Finding
 from ibpred.epsform.content import simplified
 from ibpred.epsform.decompose import conjugated, decomposed
 from ibpred.epsform.findings import finding
 from ibpred.epsform.form import Matrix
-from ibpred.epsform.image import Pattern, block_pattern, pencil_at, splits
+from ibpred.epsform.image import Pattern, block_pattern, splits
 from ibpred.epsform.intertwine import intertwiners, modular_number, reference_numbers, representative
 from ibpred.epsform.local import Obstacle, Trouble
 from ibpred.epsform.matrices import Constants, inverse, lifted, product
-from ibpred.epsform.pencil import ModularMatrix, times_constant
+from ibpred.epsform.pencil import ModularMatrix, ModularPolynomial, PolynomialMatrix, times_constant
+from ibpred.epsform.probe import Probe, Residues, glued_at, letter_residues, probe
 from ibpred.epsform.sampling import Sample, reconstruct_in_eps
-from ibpred.epsform.sections import Glued, glue
+from ibpred.epsform.sections import Glued
 from ibpred.epsform.spectrum import Slopes
 from ibpred.epsform.verify import canonical_matrix, satisfies
 from ibpred.errors import ReconstructionError, UnfinishedError
-from ibpred.exact.rational import Rational
-
-BASE_POINTS = (2, 3, -2, -3, 5, 7, -5, 11, 13, 17)
-"""Base points x = O where the change of basis is normalised; the first regular one serves."""
-PROBES = 3
-"""Samples that must agree on an obstacle before it is believed."""
-ATTEMPTS = 60
-"""Samples tried to get that many useful ones."""
-
-Residues = tuple[ModularMatrix, ...]
-"""``R_l / eps`` for each finite place."""
+from ibpred.exact.rational import Rational, Ring
 
 
 @dataclass
@@ -76,17 +65,20 @@ def solve_coupled(
     usable = tuple(p for p in primes if splits(pattern, p))
     if not usable:
         raise ReconstructionError(f"{subject}: the letters split modulo none of the {len(primes)} primes")
-    reference = _probe(pattern, usable[0], seed, subject)
+    probed = probe(pattern, usable[0], seed, subject)
+    if isinstance(probed, Obstacle):
+        return finding(probed, pattern.places, name)
+    reference = _reference(pattern, usable[0], probed, seed, subject)
     if isinstance(reference, Obstacle):
         return finding(reference, pattern.places, name)
     size = len(matrix)
 
     def sampler(eps: int, prime: int) -> Sample | None:
         right = _reference_residues(pattern, reference, prime)
-        here = _glued(pattern, eps, reference.slopes, prime, reference.base)
+        here = glued_at(pattern, (eps,), reference.slopes, prime, reference.base)
         if right is None or not isinstance(here, Glued):
             return None
-        left = _letter_residues(here, pattern, eps, prime)
+        left = letter_residues(here, pattern, eps, prime)
         return None if isinstance(left, Obstacle) else _sample(here, left, right, seed)
 
     rebuilt = reconstruct_in_eps(sampler, usable, seed, ring, subject)
@@ -108,97 +100,30 @@ def _zero(size: int) -> Constants:
     return ((Fraction(0),) * size,) * size
 
 
-def _glued(
-    pattern: Pattern, eps: int, slopes: Slopes | None, prime: int, base: int
-) -> Glued | Obstacle | None:
-    image = pencil_at(pattern, eps, prime)
-    if image is None or int(image[0].denominator(base % prime)) == 0:
-        return None
-    return glue(*image, eps, slopes, base % prime)
-
-
-def _letter_residues(glued: Glued, pattern: Pattern, eps: int, prime: int) -> Residues | Obstacle:
-    """``R_l / eps`` for each place; an obstacle if conjugate roots differ or a moving place survives."""
-    inverse_eps = pow(eps, -1, prime)
-    owners = [i for i, place in enumerate(pattern.places) for _ in range(place.degree)]
-    found: dict[int, ModularMatrix] = {}
-    zero = flint.nmod_mat(glued.residues[0].nrows(), glued.residues[0].nrows(), prime)
-    for owner, residue in zip(owners, glued.residues, strict=True):
-        if pattern.places[owner].moves and residue != zero:
-            return Obstacle(Trouble.MOVING, owner, (), glued.exponents)
-        matrix = residue * inverse_eps
-        if owner in found and found[owner] != matrix:
-            return Obstacle(Trouble.CONJUGATE, owner, (), glued.exponents)
-        found[owner] = matrix
-    return tuple(found[i] for i in range(len(pattern.places)))
-
-
 def _reference_residues(pattern: Pattern, reference: _Reference, prime: int) -> Residues | None:
     if prime not in reference.residues:
         eps = modular_number(reference.eps, prime)
-        here = _glued(pattern, eps, reference.slopes, prime, reference.base)
-        found = _letter_residues(here, pattern, eps, prime) if isinstance(here, Glued) else None
+        here = glued_at(pattern, (eps,), reference.slopes, prime, reference.base)
+        found = letter_residues(here, pattern, eps, prime) if isinstance(here, Glued) else None
         reference.residues[prime] = None if isinstance(found, Obstacle) else found
     return reference.residues[prime]
 
 
-def _probe(pattern: Pattern, prime: int, seed: int, subject: str) -> _Reference | Obstacle:
-    """The reference point, or the obstacle on which several samples agree."""
-    random = Random(seed)
-    obstacles: list[Obstacle] = []
-    useful: list[Residues] = []
-    slopes: Slopes = frozenset()
-    base: int | None = None
-    for _ in range(ATTEMPTS):
-        eps = random.randrange(2, prime)
-        image = pencil_at(pattern, eps, prime)
-        if image is None:
-            continue
-        if base is None:
-            base = next((b for b in BASE_POINTS if int(image[0].denominator(b % prime))), None)
-            if base is None:
-                raise UnfinishedError(f"{subject}: every base point among {BASE_POINTS} is singular")
-        here = _glued(pattern, eps, slopes or None, prime, base)
-        if here is None:
-            continue
-        found = _letter_residues(here, pattern, eps, prime) if isinstance(here, Glued) else here
-        if isinstance(found, Obstacle):
-            obstacles.append(found)
-            if obstacles.count(found) == PROBES:
-                return found
-            continue
-        useful.append(found)
-        slopes |= {e.slopes for _, exponents in here.exponents for e in exponents}
-        if len(useful) == PROBES:
-            return _reference(pattern, prime, base, useful, slopes, seed, subject)
-    raise UnfinishedError(
-        f"{subject}: samples at different eps disagree about its singular points, or its moving poles "
-        "rarely have roots modulo the prime; choose masters whose denominators do not mix eps with "
-        f"{pattern.name}"
-    )
-
-
-def _reference(
-    pattern: Pattern,
-    prime: int,
-    base: int,
-    useful: Sequence[Residues],
-    slopes: Slopes,
-    seed: int,
-    subject: str,
-) -> _Reference | Obstacle:
+def _reference(pattern: Pattern, prime: int, probed: Probe, seed: int, subject: str) -> _Reference | Obstacle:
     """A reference value of eps that works for all samples; an obstacle if none does."""
-    size = useful[0][0].nrows()
+    size = len(pattern.numerators)
     block = [range(size)]
     support = tuple(tuple(range(size)) for _ in range(size))
     tried = False
-    for number in reference_numbers(slopes):
-        reference = _Reference(number, base, slopes)
+    for number in reference_numbers(probed.slopes):
+        reference = _Reference(number, probed.base, probed.slopes)
         right = _reference_residues(pattern, reference, prime)
         if right is None:
             continue
         tried = True
-        if not any(isinstance(intertwiners(left, right, block, support, seed), range) for left in useful):
+        if not any(
+            isinstance(intertwiners(left, right, block, support, seed), range) for left in probed.residues
+        ):
             return reference
     if tried:
         return Obstacle(Trouble.CONSTANT, -1, (), ())
@@ -215,12 +140,7 @@ def _sample(
     if isinstance(basis, range):
         return None
     columns = times_constant(here.numerators, representative(basis, seed))
-    entries = []
-    for entry in (e for row in columns for e in row):
-        common = entry.gcd(here.denominator)
-        below = here.denominator // common
-        lead = below.leading_coefficient()
-        entries.append((entry // common / lead, below / lead))
+    entries = reduced_entries(columns, here.denominator)
     prime = int(left[0].modulus())
     if len(basis) == 1:
         # the one free factor of eps: fixed where the functions stay simplest
@@ -233,25 +153,46 @@ def _sample(
     return Sample(shape, tuple(values))
 
 
-def _unpacked(
-    shape: Any, functions: Sequence[Rational], pattern: Pattern, size: int
-) -> tuple[Matrix, Mapping[str, Constants]]:
-    """Back from the flat list: T C, and the residues of the letters that occur."""
-    ring = pattern.ring
-    x = ring.variable(pattern.name)
-    source = iter(functions)
+def reduced_entries(
+    numerators: PolynomialMatrix, denominator: ModularPolynomial
+) -> list[tuple[ModularPolynomial, ModularPolynomial]]:
+    """The entries row by row as reduced fractions with monic denominators."""
+    entries = []
+    for entry in (e for row in numerators for e in row):
+        common = entry.gcd(denominator)
+        below = denominator // common
+        lead = below.leading_coefficient()
+        entries.append((entry // common / lead, below / lead))
+    return entries
+
+
+def matrix_of(
+    shape: Sequence[tuple[int, int]], coefficients: Iterator[Rational], ring: Ring, name: str
+) -> Matrix:
+    """The inverse of `reduced_entries` for a square matrix: fractions in x from their coefficients."""
+    x = ring.variable(name)
 
     def polynomial(degree: int) -> Rational:
         total = ring.zero
         for power in range(degree + 1):
-            total = total + next(source) * x**power
+            total = total + next(coefficients) * x**power
         return total
 
     entries = []
     for above, below in shape:
         top = polynomial(above)
         entries.append(top / polynomial(below))
-    rows = tuple(tuple(entries[i * size : (i + 1) * size]) for i in range(size))
+    size = isqrt(len(entries))
+    return tuple(tuple(entries[i * size : (i + 1) * size]) for i in range(size))
+
+
+def _unpacked(
+    shape: Any, functions: Sequence[Rational], pattern: Pattern, size: int
+) -> tuple[Matrix, Mapping[str, Constants]]:
+    """Back from the flat list: T C, and the residues of the letters that occur."""
+    ring = pattern.ring
+    source = iter(functions)
+    rows = matrix_of(shape, source, ring, pattern.name)
     residues: dict[str, Constants] = {}
     for place in pattern.places:
         values = [next(source).to_fraction() for _ in range(size * size)]

@@ -9,6 +9,7 @@ from itertools import pairwise
 from ibpred.epsform.blocks import Block, Finding
 from ibpred.epsform.constant import Stuck, factor_eps, fuchsian
 from ibpred.epsform.coupled import solve_coupled
+from ibpred.epsform.coupled_many import solve_coupled_many
 from ibpred.epsform.cover import (
     Cover,
     describe,
@@ -39,10 +40,10 @@ def factorise(
     Parameters
     ----------
     connection
-        In one ratio, or in several if no masters are coupled to each other.
+        In one ratio or several.
     primes
-        For the modular samples, of about 50 to 62 bits; a few dozen, since only those are used modulo
-        which the letters of coupled blocks split.
+        For the modular samples, of 40 to 50 bits (up to 62 for systems in one ratio); a few dozen, since
+        only those are used modulo which the letters of coupled blocks split.
     seed
         Of the sample points.
     progress
@@ -57,8 +58,7 @@ def factorise(
     Raises
     ------
     UnfinishedError
-        For coupled masters in several ratios (not supported yet), or where primes and samples do not
-        suffice.
+        Where primes and samples do not suffice.
     """
     progress = SILENT if progress is None else progress
     if not connection.variables:
@@ -94,13 +94,7 @@ def factorise(
 def diagonal_blocks(
     connection: Connection, primes: Sequence[int], seed: int, progress: Progress
 ) -> tuple[tuple[tuple[int, ...], Block | Finding], ...]:
-    """The sets of rows that depend on each other, each with its epsilon-form or what is in the way.
-
-    Raises
-    ------
-    UnfinishedError
-        For coupled rows in several ratios, which are not supported yet.
-    """
+    """The sets of rows that depend on each other, each with its epsilon-form or what is in the way."""
     blocks = coupled_blocks(couplings(connection))
     progress.stage("epsilon-form of the diagonal blocks")
     found: list[tuple[tuple[int, ...], Block | Finding]] = []
@@ -115,10 +109,11 @@ def _solve_block(block: Connection, primes: Sequence[int], seed: int) -> Block |
         return solve_single({name: block.matrices[name][0][0] for name in block.variables})
     subject = f"block {', '.join(block.labels)}"
     if len(block.variables) > 1:
-        raise UnfinishedError(
-            f"{subject}: masters that are coupled to each other are brought to epsilon-form in one ratio "
-            f"only; here are {len(block.variables)}: {', '.join(block.variables)}"
-        )
+
+        def solve(smaller: Connection) -> EpsilonForm | Obstructed:
+            return factorise(smaller, primes, seed)
+
+        return solve_coupled_many(block, solve, primes, seed, subject)
     name = block.variables[0]
     return solve_coupled(block.matrices[name], name, primes, seed, subject)
 

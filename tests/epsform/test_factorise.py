@@ -14,7 +14,7 @@ from ibpred.epsform.factorise import factorise, root_cover
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
 from ibpred.epsform.matrices import added, derivative, inverse, product
 from ibpred.epsform.verify import canonical_matrix, verify, verify_modular
-from ibpred.errors import UnfinishedError
+from ibpred.errors import ReconstructionError, UnfinishedError
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes
 from ibpred.exact.rational import ring
@@ -308,10 +308,34 @@ def test_two_ratios() -> None:
     assert [point for point, _ in exponents(form)] == ["x = 0", "x-y = 0", "x-y+1 = 0", "y = 0", "y = 1"]
 
 
-def test_coupled_rows_in_two_ratios_are_refused() -> None:
-    change = [["1", "0", "0", "0"], ["0", "1", "0", "0"], ["0", "0", "1", "1/x"], ["0", "0", "y", "eps"]]
-    with pytest.raises(UnfinishedError, match=r"I2, I3.*2: x, y"):
-        factorise(two_ratios(ONE_LEG_BOX, change), PRIMES, seed=1)
+COUPLED = [["1", "0", "0", "0"], ["0", "1", "0", "0"], ["0", "1/(x-y)", "1", "1/x"], ["eps", "0", "y", "eps"]]
+
+
+def test_coupled_rows_in_two_ratios() -> None:
+    form = solved(two_ratios(ONE_LEG_BOX, COUPLED), ENGINE_PRIMES)
+    assert {str(letter) for letter in form.letters} == set(ONE_LEG_BOX)
+
+
+def test_coupled_rows_in_two_ratios_with_a_moving_pole() -> None:
+    change = [*COUPLED[:2], ["0", "1", "x-eps*y", "1"], ["eps", "0", "eps*y", "x/(1-2*eps)"]]
+    solved(two_ratios(ONE_LEG_BOX, change), ENGINE_PRIMES)
+
+
+def test_coupled_rows_in_two_ratios_need_engine_primes() -> None:
+    with pytest.raises(ReconstructionError, match="I2, I3"):
+        factorise(two_ratios(ONE_LEG_BOX, COUPLED), PRIMES, seed=1)
+
+
+def test_obstruction_on_a_line_in_two_ratios() -> None:
+    """The sunrise with a spectator ratio: obstructed on the line of x, or on that of y at fixed x."""
+    for name, other in (("x", "y"), ("y", "x")):
+        rows = tuple(tuple(parse_rational(e.replace("x", name), TWO) for e in row) for row in SUNRISE)
+        zero = ((TWO.zero, TWO.zero),) * 2
+        found = factorise(
+            Connection(("x", "y"), TWO, {name: rows, other: zero}, (2,), ("a", "b")), ENGINE_PRIMES, 1
+        )
+        assert isinstance(found, Obstructed)
+        assert "O(1) + O(-1)" in found.obstructions[0].reason
 
 
 def test_system_without_ratios_is_refused() -> None:
