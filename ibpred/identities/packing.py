@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,16 +24,24 @@ class Packing:
     size
         int64, (n,): number of values of each entry.
     weight
-        int64, (n,): code = sum_i (entry_i - low_i) * weight_i.
+        int64, (n,): code = offset + sum_i (entry_i - low_i) * weight_i.
+    offset
+        A multiple of `total`: codes of several families are kept apart by it.
     """
 
     low: IntArray
     size: IntArray
     weight: IntArray
+    offset: int = 0
+
+    @property
+    def total(self) -> int:
+        """Number of vectors within the bounds."""
+        return int(np.prod(self.size.astype(object)))
 
     def code(self, vectors: IntArray) -> IntArray:
         """Codes of the rows of an array of vectors."""
-        return np.asarray((vectors - self.low) @ self.weight)
+        return np.asarray((vectors - self.low) @ self.weight + self.offset)
 
     def shift(self, vectors: IntArray) -> IntArray:
         """What to add to a code when the vector is added."""
@@ -48,8 +56,14 @@ class Packing:
         return np.asarray(((vectors >= self.low) & (vectors < self.low + self.size)).all(axis=1))
 
 
-def packing(low: Sequence[int], high: Sequence[int]) -> Packing:
-    """The packing of vectors with ``low <= entry <= high``.
+def packings(low: Sequence[int], high: Sequence[int], families: int) -> tuple[Packing, ...]:
+    """One packing for each of several families, with codes that never agree."""
+    first = packing(low, high, families)
+    return tuple(replace(first, offset=number * first.total) for number in range(families))
+
+
+def packing(low: Sequence[int], high: Sequence[int], families: int = 1) -> Packing:
+    """The packing of vectors with ``low <= entry <= high``, with room for those of several families.
 
     Raises
     ------
@@ -61,7 +75,7 @@ def packing(low: Sequence[int], high: Sequence[int]) -> Packing:
     for size in reversed(sizes):
         weights.append(total)
         total *= size
-    if total >= 2**63:
+    if total * families >= 2**63:
         raise UnfinishedError(
             f"{len(sizes)} lines with powers from {min(low)} to {max(high)} do not fit the engine's "
             "64-bit integrals; ask for fewer dots or a lower rank"

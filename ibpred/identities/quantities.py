@@ -12,6 +12,9 @@ from ibpred.identities.templates import Template, common_denominator
 Terms = Mapping[tuple[int, ...], int]
 """A polynomial: exponents over the internal ring's variables -> integer."""
 
+Integral = tuple[int, Powers]
+"""Number of the family, of several that are reduced together, and the powers."""
+
 
 @dataclass(frozen=True)
 class Quantity:
@@ -24,12 +27,21 @@ class Quantity:
     weight
         A polynomial, not zero.
     terms
-        Powers (distinct) and polynomial coefficients.
+        Integrals, each once, by their powers, and their polynomial coefficients.
+    families
+        For each term the number of its family, where there are several; empty where there is one.
     """
 
     name: str
     weight: Terms
     terms: tuple[tuple[Powers, Terms], ...]
+    families: tuple[int, ...] = ()
+
+    @property
+    def integrals(self) -> tuple[Integral, ...]:
+        """The integrals of the terms."""
+        families = self.families or (0,) * len(self.terms)
+        return tuple((family, powers) for family, (powers, _) in zip(families, self.terms, strict=True))
 
 
 def template_at(template: Template, powers: Powers) -> Quantity:

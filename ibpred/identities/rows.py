@@ -8,16 +8,16 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.identities.packing import Packing, packing
+from ibpred.family.definition import FamilyDefinition
+from ibpred.identities.packing import Packing, packings
 from ibpred.identities.pool import CoefficientPool
-from ibpred.identities.quantities import Quantity
+from ibpred.identities.quantities import Integral, Quantity
 from ibpred.identities.seeding import Depth, SeedPlan, seeds_of_sector
 from ibpred.identities.symmetry import Entries, symmetry_rows
-from ibpred.identities.templates import Template
+from ibpred.identities.templates import Template, ibp_templates
 from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.mapping import SectorMap
-from ibpred.sectors.order import key_columns, order_columns, sector_key
+from ibpred.sectors.order import key_columns, order_columns
 
 IntArray = NDArray[np.int64]
 
@@ -31,6 +31,8 @@ class IntegralRows:
     powers
         int64, (integrals, lines): the integral of each column, simplest first. Integrals of zero
         sectors do not occur.
+    owners
+        int64, (integrals,): the number of the family of each.
     quantities
         Number of further columns, after the integrals: the quantities in the order given.
     start, column, coefficient
@@ -42,6 +44,7 @@ class IntegralRows:
     """
 
     powers: IntArray
+    owners: IntArray
     quantities: int
     start: IntArray
     column: NDArray[np.int32]
@@ -54,76 +57,106 @@ class IntegralRows:
     def columns(self) -> int:
         return len(self.powers) + self.quantities
 
-    def places(self, wanted: Iterable[Powers]) -> tuple[int, ...]:
+    def integral(self, column: int) -> Integral:
+        """The integral of a column."""
+        return int(self.owners[column]), tuple(self.powers[column].tolist())
+
+    def places(self, wanted: Iterable[Integral]) -> tuple[int, ...]:
         """Columns of integrals, -1 for those that occur in no equation."""
-        index = {tuple(row): i for i, row in enumerate(self.powers.tolist())}
-        return tuple(index.get(tuple(powers), -1) for powers in wanted)
+        index = {self.integral(i): i for i in range(len(self.powers))}
+        return tuple(index.get((number, tuple(powers)), -1) for number, powers in wanted)
+
+
+@dataclass(frozen=True)
+class FamilyIdentities:
+    """One of the families whose equations are written down together.
+
+    Attributes
+    ----------
+    family, analysis
+        The family and its sectors; maps may lead to families that come before.
+    templates
+        Its identities.
+    """
+
+    family: FamilyDefinition
+    analysis: SectorAnalysis
+    templates: tuple[Template, ...]
+
+
+def family_identities(
+    families: Sequence[FamilyDefinition], analyses: Sequence[SectorAnalysis]
+) -> tuple[FamilyIdentities, ...]:
+    """Families with their integration-by-parts identities."""
+    return tuple(
+        FamilyIdentities(family, analysis, ibp_templates(family))
+        for family, analysis in zip(families, analyses, strict=True)
+    )
 
 
 def seeded_sectors(analysis: SectorAnalysis) -> tuple[int, ...]:
     """The sectors whose identities are written down: all that no map of momenta takes elsewhere."""
-    mapped = {m.source for m in analysis.maps if m.kind == "momentum" and m.source != m.target}
+    mapped = {m.source for m in analysis.maps if m.kind == "momentum" and not m.is_symmetry}
     return tuple(sector for sector in analysis.nonzero if sector not in mapped)
 
 
 def write_rows(
-    family: FamilyDefinition,
-    analysis: SectorAnalysis,
-    templates: Sequence[Template],
-    plan: SeedPlan,
+    members: Sequence[FamilyIdentities],
+    plans: Sequence[SeedPlan],
     quantities: Sequence[Quantity] = (),
-    preferred: Sequence[Powers] = (),
+    preferred: Sequence[Integral] = (),
 ) -> IntegralRows:
     """Instantiate identities and symmetries.
 
     Parameters
     ----------
-    family, analysis, templates
-        The family, its sectors, its identities.
-    plan
-        Depth of the seeds for each sector; sectors that are not named get none. Sectors that a map
-        takes elsewhere need no seeds: all their integrals are mapped.
+    members
+        The families, with the same kinematics and numbers of lines.
+    plans
+        For each family the depth of the seeds for each sector; sectors that are not named get none.
+        Sectors that a map takes elsewhere need no seeds: all their integrals are mapped.
     quantities
         Combinations to be defined as further unknowns.
     preferred
         Integrals ranked as the simplest of their sector, the first one simplest.
     """
-    code = _packing(family, plan, quantities, preferred)
+    codes = _packings(members, plans, quantities, preferred)
+    family = members[0].family
     pool = CoefficientPool(family.internal_ring.names)
-    parts = []
-    seeds = [
-        seeds_of_sector(sector, len(family.lines), depth)
-        for sector, depth in sorted(plan.items())
-        if sector not in analysis.zero
-    ]
-    if seeds:
-        stacked = np.vstack(seeds)
-        for template in templates:
-            parts.append(_identity_rows(template, stacked, code, pool))
-    definitions = _definitions(quantities, code, pool, family)
-    own = [m for m in analysis.maps if m.source == m.target]
-    for map_ in own:
-        if map_.source in plan:
-            chosen = seeds_of_sector(map_.source, len(family.lines), plan[map_.source])
-            parts.append(symmetry_rows(map_, chosen, family, code, pool))
-    met = [part.integral for part in (*parts, definitions.entries)]
-    if preferred:
-        met.append(code.code(np.array(preferred, dtype=np.int64)))
-    parts += _mapped_rows(analysis, family, met, code, pool)
-    zero = np.array(sorted(analysis.zero), dtype=np.int64)
-    return _compress(parts, definitions, code, pool, zero, preferred)
+    parts: list[tuple[int, Entries]] = []
+    for number, (member, plan, code) in enumerate(zip(members, plans, codes, strict=True)):
+        analysis, count = member.analysis, len(member.family.lines)
+        chosen = {
+            sector: seeds_of_sector(sector, count, depth)
+            for sector, depth in sorted(plan.items())
+            if sector not in analysis.zero
+        }
+        if chosen:
+            stacked = np.vstack(list(chosen.values()))
+            for template in member.templates:
+                parts.append((number, _identity_rows(template, stacked, code, pool)))
+        for map_ in analysis.maps:
+            if map_.is_symmetry and map_.source in chosen:
+                entries = symmetry_rows(map_, chosen[map_.source], member.family, code, pool)
+                parts.append((number, entries))
+    definitions = _definitions(quantities, codes, pool, len(family.lines))
+    met = [*(part.integral for _, part in parts), definitions.entries.integral]
+    met += [codes[number].code(np.array([powers], dtype=np.int64)) for number, powers in preferred]
+    parts += _mapped_rows(members, met, codes, pool)
+    return _compress(parts, definitions, codes[0], pool, [m.analysis.zero for m in members], preferred)
 
 
-def _packing(
-    family: FamilyDefinition,
-    plan: SeedPlan,
+def _packings(
+    members: Sequence[FamilyIdentities],
+    plans: Sequence[SeedPlan],
     quantities: Sequence[Quantity],
-    preferred: Sequence[Powers],
-) -> Packing:
+    preferred: Sequence[Integral],
+) -> tuple[Packing, ...]:
     depth = Depth(0, 0)
-    for other in plan.values():
-        depth = depth.cover(other)
-    named = [powers for q in quantities for powers, _ in q.terms] + list(preferred)
+    for plan in plans:
+        for other in plan.values():
+            depth = depth.cover(other)
+    named = [powers for q in quantities for powers, _ in q.terms] + [powers for _, powers in preferred]
     # one step beyond the seeds, and numerators that a symmetry spreads over other lines
     reach = depth.rank + 1
     for powers in named:
@@ -131,10 +164,9 @@ def _packing(
     dots = depth.dots + 2
     for powers in named:
         dots = max(dots, 1 + sum(a - 1 for a in powers if a > 0))
-    return packing(
-        [-reach] * len(family.lines),
-        [0 if line.numerator else dots for line in family.lines],
-    )
+    count = len(members[0].family.lines)
+    numerator = [all(m.family.lines[i].numerator for m in members) for i in range(count)]
+    return packings([-reach] * count, [0 if n else dots for n in numerator], len(members))
 
 
 def _identity_rows(template: Template, seeds: IntArray, code: Packing, pool: CoefficientPool) -> Entries:
@@ -153,96 +185,102 @@ class _Definitions:
 
 
 def _definitions(
-    quantities: Sequence[Quantity], code: Packing, pool: CoefficientPool, family: FamilyDefinition
+    quantities: Sequence[Quantity], codes: Sequence[Packing], pool: CoefficientPool, lines: int
 ) -> _Definitions:
-    row, powers, ids, weights = [], [], [], []
+    row, integral, ids, weights = [], [], [], []
     for q, quantity in enumerate(quantities):
         weights.append(pool.number({e: -c for e, c in quantity.weight.items()}))
-        for integral, polynomial in quantity.terms:
+        for (number, powers), (_, polynomial) in zip(quantity.integrals, quantity.terms, strict=True):
             row.append(q)
-            powers.append(integral)
+            integral.append(int(codes[number].code(np.array(powers, dtype=np.int64))))
             ids.append(pool.number(polynomial))
-    n = len(family.lines)
-    vectors = np.array(powers, dtype=np.int64).reshape(len(powers), n)
     entries = Entries(
         np.array(row, dtype=np.int64),
-        code.code(vectors),
+        np.array(integral, dtype=np.int64),
         np.array(ids, dtype=np.int32),
-        np.zeros((len(quantities), n), dtype=np.int64),
+        np.zeros((len(quantities), lines), dtype=np.int64),
     )
     return _Definitions(entries, np.array(weights, dtype=np.int32))
 
 
 def _mapped_rows(
-    analysis: SectorAnalysis,
-    family: FamilyDefinition,
+    members: Sequence[FamilyIdentities],
     met: Sequence[IntArray],
-    code: Packing,
+    codes: Sequence[Packing],
     pool: CoefficientPool,
-) -> list[Entries]:
+) -> list[tuple[int, Entries]]:
     """Take every integral of a mapped sector to the sector's representative, top sectors first.
 
     Images lie in the target and its subsectors, which all come before the source in the order, so
     one descending pass meets every integral.
     """
-    maps = [m for m in analysis.maps if m.source != m.target]
-    waiting: dict[int, list[IntArray]] = {m.source: [] for m in maps}
+    number_of = {member.family.name: number for number, member in enumerate(members)}
+    maps = [(i, m) for i, member in enumerate(members) for m in member.analysis.maps if not m.is_symmetry]
+    waiting: dict[tuple[int, int], list[IntArray]] = {(i, m.source): [] for i, m in maps}
 
-    def meet(codes: IntArray) -> None:
-        distinct = np.unique(codes)
-        sectors = key_columns(code.vectors(distinct))[1]
-        for sector in np.unique(sectors).tolist():
-            if sector in waiting:
-                waiting[sector].append(distinct[sectors == sector])
+    def meet(integrals: IntArray) -> None:
+        distinct = np.unique(integrals)
+        owners = distinct // codes[0].total
+        sectors = key_columns(codes[0].vectors(distinct))[1]
+        for place in np.unique(np.column_stack([owners, sectors]), axis=0).tolist():
+            if (place[0], place[1]) in waiting:
+                chosen = (owners == place[0]) & (sectors == place[1])
+                waiting[place[0], place[1]].append(distinct[chosen])
 
-    for codes in met:
-        meet(codes)
+    for integrals in met:
+        meet(integrals)
 
-    def place(map_: SectorMap) -> tuple[int, int]:
-        return sector_key(map_.source)
+    def place_of(entry: tuple[int, SectorMap]) -> tuple[int, int, int]:
+        number, map_ = entry
+        return (map_.source.bit_count(), number, map_.source)
 
     found = []
-    for map_ in sorted(maps, key=place, reverse=True):
-        if waiting[map_.source]:
-            vectors = code.vectors(np.unique(np.concatenate(waiting[map_.source])))
-            entries = symmetry_rows(map_, vectors, family, code, pool)
+    for number, map_ in sorted(maps, key=place_of, reverse=True):
+        if waiting[number, map_.source]:
+            vectors = codes[0].vectors(np.unique(np.concatenate(waiting[number, map_.source])))
+            goal = codes[number_of[map_.target_family]]
+            entries = symmetry_rows(map_, vectors, members[number].family, codes[number], pool, goal)
             meet(entries.integral)
-            found.append(entries)
+            found.append((number, entries))
     return found
 
 
-def _ranking(vectors: IntArray, preferred: Sequence[Powers]) -> IntArray:
+def _ranking(vectors: IntArray, owners: IntArray, preferred: Sequence[Integral]) -> IntArray:
     """The total order, with preferred integrals moved to the start of their sector."""
-    order = order_columns(vectors)
+    order = order_columns(vectors, owners)
     if not preferred:
         return order
-    wish = {tuple(powers): i for i, powers in enumerate(preferred)}
-    ranked = vectors[order]
-    lines, sectors, _, _ = key_columns(ranked)
+    wish = {(number, *powers): i for i, (number, powers) in enumerate(preferred)}
+    ranked = np.column_stack([owners, vectors])[order]
+    lines, sectors, _, _ = key_columns(ranked[:, 1:])
     last = len(wish)
     wished = np.array([wish.get(tuple(row), last) for row in ranked.tolist()], dtype=np.int64)
-    return order[np.lexsort((wished, sectors, lines))]
+    return order[np.lexsort((wished, sectors, ranked[:, 0], lines))]
 
 
 def _compress(
-    parts: Sequence[Entries],
+    parts: Sequence[tuple[int, Entries]],
     definitions: _Definitions,
     code: Packing,
     pool: CoefficientPool,
-    zero: IntArray,
-    preferred: Sequence[Powers],
+    zero: Sequence[frozenset[int]],
+    preferred: Sequence[Integral],
 ) -> IntegralRows:
-    offsets = np.cumsum([0, *(len(part.owners) for part in parts)])
+    offsets = np.cumsum([0, *(len(part.owners) for _, part in parts)])
     seeds, quantities = int(offsets[-1]), len(definitions.weights)
     last = definitions.entries
-    row = np.concatenate([*(p.row + o for p, o in zip(parts, offsets, strict=False)), last.row + seeds])
-    integral = np.concatenate([*(p.integral for p in parts), last.integral])
-    coefficient = np.concatenate([*(p.coefficient for p in parts), last.coefficient])
+    row = np.concatenate([*(p.row + o for (_, p), o in zip(parts, offsets, strict=False)), last.row + seeds])
+    integral = np.concatenate([*(p.integral for _, p in parts), last.integral])
+    coefficient = np.concatenate([*(p.coefficient for _, p in parts), last.coefficient])
     # columns: the integrals without zero sectors, ranked, then the quantities
     codes, place = np.unique(integral, return_inverse=True)
-    vectors = code.vectors(codes)
-    alive = np.flatnonzero(~np.isin(key_columns(vectors)[1], zero))
-    order = _ranking(vectors[alive], preferred)
+    vectors, owners = code.vectors(codes), codes // code.total
+    sectors = key_columns(vectors)[1]
+    vanishing = np.zeros(len(codes), dtype=bool)
+    for number, empty in enumerate(zero):
+        vanishing |= (owners == number) & np.isin(sectors, np.array(sorted(empty), dtype=np.int64))
+    alive = np.flatnonzero(~vanishing)
+    order = _ranking(vectors[alive], owners[alive], preferred)
     column_of = np.full(len(codes), -1, dtype=np.int64)
     column_of[alive[order]] = np.arange(len(order))
     column = column_of[place]
@@ -250,7 +288,9 @@ def _compress(
     # rows: in the order of their seeds, definitions last
     rank = np.arange(seeds + quantities)
     if parts:
-        rank[order_columns(np.vstack([part.owners for part in parts]))] = np.arange(seeds)
+        families = np.concatenate([np.full(len(part.owners), number) for number, part in parts])
+        stacked = np.vstack([part.owners for _, part in parts])
+        rank[order_columns(stacked, families)] = np.arange(seeds)
     own = np.arange(quantities)
     row = np.concatenate([rank[row[kept]], own + seeds])
     column = np.concatenate([column[kept], own + len(order)])
@@ -261,6 +301,7 @@ def _compress(
     exponents, values = pool.arrays()
     return IntegralRows(
         vectors[alive[order]],
+        owners[alive[order]],
         quantities,
         np.append(begins, len(row)).astype(np.int64),
         column[sorting].astype(np.int32),

@@ -36,19 +36,22 @@ def symmetry_rows(
     family: FamilyDefinition,
     code: Packing,
     pool: CoefficientPool,
+    target_code: Packing | None = None,
 ) -> Entries:
     """One row ``image of I(a) - I(a) = 0`` for each integral of the map's source sector.
 
     Parameters
     ----------
     map_
-        A map within the family. A scalar one is applied to the integrals without numerators only.
+        A map from the family. A scalar one is applied to the integrals without numerators only.
     powers
         (integrals, lines), all in the source sector.
     code
         The packing of integrals.
     pool
         Where coefficients are numbered.
+    target_code
+        The packing of the images, where the map leads to another family.
     """
     n = len(family.lines)
     inside = np.array(lines_of(map_.source), dtype=np.int64)
@@ -68,7 +71,7 @@ def symmetry_rows(
         group = np.zeros(len(powers), dtype=np.int64)
     else:
         expansions = _expansions(map_, family, numerators, pool)
-    return _assemble(powers, moved, group, expansions, code)
+    return _assemble(powers, group, expansions, code.code(powers), (target_code or code).code(moved), code)
 
 
 def _nothing(n: int) -> Entries:
@@ -119,9 +122,13 @@ def _expansions(
 
 
 def _assemble(
-    powers: IntArray, moved: IntArray, group: IntArray, expansions: list[Expansion], code: Packing
+    powers: IntArray,
+    group: IntArray,
+    expansions: list[Expansion],
+    source: IntArray,
+    target: IntArray,
+    code: Packing,
 ) -> Entries:
-    source, target = code.code(powers), code.code(moved)
     order = np.argsort(group, kind="stable")
     bounds = np.searchsorted(group[order], np.arange(len(expansions) + 1))
     rows, integrals, coefficients = [], [], []

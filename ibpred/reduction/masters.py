@@ -11,11 +11,11 @@ import numpy as np
 from ibpred.elimination.discovery import discover, reduced
 from ibpred.errors import InputError, UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.identities.rows import IntegralRows, write_rows
+from ibpred.identities.quantities import Integral
+from ibpred.identities.rows import FamilyIdentities, IntegralRows, family_identities, write_rows
 from ibpred.identities.seeding import Depth
-from ibpred.identities.templates import ibp_templates
 from ibpred.progress import SILENT, Progress
-from ibpred.reduction.seeds import full_plan
+from ibpred.reduction.seeds import full_plans
 from ibpred.reduction.system import sparse_system
 from ibpred.reduction.wanted import check_powers
 from ibpred.sectors.analysis import SectorAnalysis
@@ -68,6 +68,29 @@ class Masters:
     trials: tuple[MastersTrial, ...]
 
 
+@dataclass(frozen=True)
+class CommonMasters:
+    """The master integrals of several families.
+
+    Attributes
+    ----------
+    families
+        Names of the families, crossed ones included.
+    masters
+        Number of the family and powers, simplest first in the total order.
+    prime, point
+        Where the eliminations were done.
+    trials
+        The eliminations; the last two agree.
+    """
+
+    families: tuple[str, ...]
+    masters: tuple[Integral, ...]
+    prime: int
+    point: tuple[int, ...]
+    trials: tuple[MastersTrial, ...]
+
+
 def random_point(family: FamilyDefinition, prime: int, seed: int) -> tuple[int, ...]:
     """Random residues for the internal ring's variables."""
     source = random.Random(seed)
@@ -82,11 +105,7 @@ def find_masters(
     preferred: Sequence[Powers] = (),
     progress: Progress = SILENT,
 ) -> Masters:
-    """Find the masters by eliminating identities of growing depth modulo a prime.
-
-    With seeds of rank up to B the integrals of rank below B are reduced (the edge is not: there false
-    masters appear); their irreducible integrals count once all of them lie inside as well and deeper
-    seeds leave them unchanged.
+    """Find the masters of one family; see `find_common_masters`.
 
     Parameters
     ----------
@@ -101,56 +120,100 @@ def find_masters(
 
     Raises
     ------
+    InputError, UnfinishedError
+        As `find_common_masters`.
+    """
+    members = family_identities([family], [analysis])
+    found = find_common_masters(members, [0], prime, seed, [(0, powers) for powers in preferred], progress)
+    return Masters(
+        family.name, tuple(powers for _, powers in found.masters), prime, found.point, found.trials
+    )
+
+
+def find_common_masters(
+    members: Sequence[FamilyIdentities],
+    roots: Sequence[int],
+    prime: int,
+    seed: int,
+    preferred: Sequence[Integral] = (),
+    progress: Progress = SILENT,
+) -> CommonMasters:
+    """Find the masters of several families by eliminating identities of growing depth modulo a prime.
+
+    With seeds of rank up to B the integrals of rank below B are reduced (the edge is not: there false
+    masters appear); their irreducible integrals count once all of them lie inside as well and deeper
+    seeds leave them unchanged.
+
+    Parameters
+    ----------
+    members
+        The families, analysed together.
+    roots
+        Numbers of the families whose integrals are wanted. The others (crossings) take part where
+        sectors of these are mapped to theirs.
+    prime, seed
+        Where to eliminate: an engine prime, and the seed of the random point.
+    preferred
+        Integrals that are to be masters; they are ranked simplest in their sectors.
+    progress
+        Told about each trial.
+
+    Raises
+    ------
     InputError
         If all integrals vanish; if a preferred integral vanishes or reduces to other masters.
     UnfinishedError
         If the masters keep changing with the seeds.
     """
-    if not analysis.nonzero:
-        raise InputError(f"{family.name}: every integral is scaleless and vanishes; there are no masters")
-    for powers in preferred:
-        check_powers(family, powers)
-        if sector_of(powers) in analysis.zero:
-            raise InputError(f"{family.name}: the preferred master {powers} is scaleless and vanishes")
-    templates = ibp_templates(family)
-    point = random_point(family, prime, seed)
+    names = ", ".join(members[number].family.name for number in roots)
+    if not any(members[number].analysis.nonzero for number in roots):
+        raise InputError(f"{names}: every integral is scaleless and vanishes; there are no masters")
+    for number, powers in preferred:
+        member = members[number]
+        check_powers(member.family, powers)
+        if sector_of(powers) in member.analysis.zero:
+            raise InputError(f"{member.family.name}: the preferred master {powers} is scaleless and vanishes")
+    point = random_point(members[0].family, prime, seed)
     trials: list[MastersTrial] = []
-    last: tuple[Powers, ...] | None = None
+    last: tuple[Integral, ...] | None = None
     progress.stage("master integrals")
     for depth in DEPTHS:
-        rows = write_rows(family, analysis, templates, full_plan(analysis, depth), preferred=preferred)
+        rows = write_rows(members, full_plans(members, roots, depth), preferred=preferred)
         found, settled = _irreducible(rows, depth, point, prime)
         trials.append(MastersTrial(depth.dots, depth.rank, len(rows.start) - 1, len(found)))
         progress.advance(len(trials), None)
         if found == last and settled:
-            _check_preferred(family, preferred, found)
-            return Masters(family.name, found, prime, point, tuple(trials))
+            _check_preferred(members, preferred, found)
+            families = tuple(member.family.name for member in members)
+            return CommonMasters(families, found, prime, point, tuple(trials))
         last = found
     counts = ", ".join(str(trial.count) for trial in trials)
     raise UnfinishedError(
-        f"{family.name}: the set of masters did not settle as identities were added (counts {counts}); "
+        f"{names}: the set of masters did not settle as identities were added (counts {counts}); "
         "the family may need a missing symmetry or cannot be reduced by identities of this depth"
     )
 
 
 def _irreducible(
     rows: IntegralRows, depth: Depth, point: tuple[int, ...], prime: int
-) -> tuple[tuple[Powers, ...], bool]:
+) -> tuple[tuple[Integral, ...], bool]:
     """What the integrals well inside the seeds reduce to, and whether all of that is inside as well."""
     _, _, dots, rank = key_columns(rows.powers)
     inside = np.flatnonzero((dots <= depth.dots) & (rank < depth.rank))
     solution = reduced(discover(sparse_system(rows), point, prime), inside.tolist())
-    masters = tuple(tuple(int(a) for a in rows.powers[column]) for column in solution.masters)
+    masters = tuple(rows.integral(column) for column in solution.masters)
     return masters, set(solution.masters) <= set(inside.tolist())
 
 
 def _check_preferred(
-    family: FamilyDefinition, preferred: Sequence[Powers], found: tuple[Powers, ...]
+    members: Sequence[FamilyIdentities], preferred: Sequence[Integral], found: tuple[Integral, ...]
 ) -> None:
-    for powers in preferred:
-        if tuple(powers) not in found:
-            others = [m for m in found if sector_of(m) == sector_of(powers)]
+    for number, powers in preferred:
+        if (number, tuple(powers)) not in found:
+            sector = sector_of(powers)
+            others = [m for n, m in found if n == number and sector_of(m) == sector]
             there = f"the masters of its sector are {others}" if others else "its sector has no masters"
             raise InputError(
-                f"{family.name}: the preferred master {tuple(powers)} reduces to other masters; {there}"
+                f"{members[number].family.name}: the preferred master {tuple(powers)} reduces to other "
+                f"masters; {there}"
             )

@@ -17,14 +17,13 @@ from ibpred.elimination.tape import Tape
 from ibpred.errors import InputError, UnfinishedError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.identities.quantities import Quantity
-from ibpred.identities.rows import IntegralRows, write_rows
-from ibpred.identities.templates import ibp_templates
+from ibpred.identities.quantities import Integral, Quantity
+from ibpred.identities.rows import FamilyIdentities, IntegralRows, family_identities, write_rows
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence, reconstruct
 from ibpred.reconstruct.sampling import Sampler
 from ibpred.reduction.masters import random_point
-from ibpred.reduction.seeds import GROWTH, plan_for
+from ibpred.reduction.seeds import GROWTH, plans_for
 from ibpred.reduction.system import sparse_system
 from ibpred.sectors.analysis import SectorAnalysis
 
@@ -58,8 +57,8 @@ class Recorded:
 
     Attributes
     ----------
-    masters
-        The masters, in the order given.
+    masters, owners
+        The masters, in the order given, and the number of the family of each.
     names
         The quantities, for messages.
     tape
@@ -71,6 +70,7 @@ class Recorded:
     """
 
     masters: tuple[Powers, ...]
+    owners: tuple[int, ...]
     names: tuple[str, ...]
     tape: Tape
     entries: tuple[tuple[int, int], ...]
@@ -134,20 +134,53 @@ def record_quantities(
         If the identities tried leave quantities that do not reduce to the masters alone, or no tape
         agrees with a fresh elimination elsewhere.
     """
-    templates = ibp_templates(family)
+    members = family_identities([family], [analysis])
+    return record_together(members, [(0, tuple(m)) for m in masters], quantities, primes, seed, progress)
+
+
+def record_together(
+    members: Sequence[FamilyIdentities],
+    masters: Sequence[Integral],
+    quantities: Sequence[Quantity],
+    primes: Sequence[int],
+    seed: int,
+    progress: Progress = SILENT,
+) -> Recorded:
+    """`record_quantities` for several families that were analysed together.
+
+    Parameters
+    ----------
+    members
+        The families.
+    masters
+        The masters, as `find_common_masters` gives them.
+    quantities, primes, seed, progress
+        As `record_quantities`.
+
+    Raises
+    ------
+    UnfinishedError
+        As `record_quantities`.
+    """
+    family = members[0].family
+    names = ", ".join(member.family.name for member in members)
     point = random_point(family, primes[0], seed)
-    wanted = [powers for quantity in quantities for powers, _ in quantity.terms]
-    known = {tuple(m) for m in masters}
+    wanted = [integral for quantity in quantities for integral in quantity.integrals]
+    known = set(masters)
     progress.stage("identities")
-    tried: set[tuple[tuple[int, int, int], ...]] = set()
+    tried: set[tuple[tuple[int, int, int, int], ...]] = set()
     left: tuple[str, ...] = ()
     for step, growth in enumerate(GROWTH):
-        plan = plan_for(family, analysis, wanted, growth)
-        signature = tuple((sector, d.dots, d.rank) for sector, d in sorted(plan.items()))
+        plans = plans_for(members, wanted, growth)
+        signature = tuple(
+            (number, sector, d.dots, d.rank)
+            for number, plan in enumerate(plans)
+            for sector, d in sorted(plan.items())
+        )
         if signature in tried:
             continue
         tried.add(signature)
-        rows = write_rows(family, analysis, templates, plan, quantities, masters)
+        rows = write_rows(members, plans, quantities, masters)
         system = sparse_system(rows)
         found = reduced(discover(system, point, primes[0]), _own_columns(rows))
         left = _left_over(rows, found, quantities, known)
@@ -157,7 +190,7 @@ def record_quantities(
             return _labelled(rows, system, tape, masters, quantities)
     more = f" and {len(left) - _NAMED} more" if len(left) > _NAMED else ""
     raise UnfinishedError(
-        f"{family.name}: {', '.join(left[:_NAMED])}{more} did not reduce to the {len(known)} masters "
+        f"{names}: {', '.join(left[:_NAMED])}{more} did not reduce to the {len(known)} masters "
         "with the deepest identities tried; check the list of masters"
     )
 
@@ -167,12 +200,10 @@ def _own_columns(rows: IntegralRows) -> range:
 
 
 def _left_over(
-    rows: IntegralRows, found: Reduced, quantities: Sequence[Quantity], known: set[Powers]
+    rows: IntegralRows, found: Reduced, quantities: Sequence[Quantity], known: set[Integral]
 ) -> tuple[str, ...]:
     """Names of the quantities whose reduction contains more than masters."""
-    foreign = [
-        i for i, column in enumerate(found.masters) if tuple(rows.powers[column].tolist()) not in known
-    ]
+    foreign = [i for i, column in enumerate(found.masters) if rows.integral(column) not in known]
     bad = np.flatnonzero(found.values[:, foreign].any(axis=1))
     return tuple(quantities[int(i)].name for i in bad)
 
@@ -197,17 +228,18 @@ def _labelled(
     rows: IntegralRows,
     system: SparseSystem,
     tape: Tape,
-    masters: Sequence[Powers],
+    masters: Sequence[Integral],
     quantities: Sequence[Quantity],
 ) -> Recorded:
-    order = {tuple(powers): i for i, powers in enumerate(masters)}
+    order = {integral: i for i, integral in enumerate(masters)}
     first = rows.columns - rows.quantities
     entries = []
     for target, source in tape.outputs.tolist():
-        powers = tuple(rows.powers[tape.masters[source]].tolist())
-        entries.append((tape.wanted[target] - first, order[powers]))
+        integral = rows.integral(tape.masters[source])
+        entries.append((tape.wanted[target] - first, order[integral]))
     return Recorded(
-        tuple(tuple(m) for m in masters),
+        tuple(powers for _, powers in masters),
+        tuple(number for number, _ in masters),
         tuple(quantity.name for quantity in quantities),
         tape,
         tuple(entries),

@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 
-from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.identities.rows import seeded_sectors
-from ibpred.identities.seeding import Depth, SeedPlan, subsectors
-from ibpred.sectors.analysis import SectorAnalysis
-from ibpred.sectors.order import dots, rank, sector_of
+from ibpred.identities.quantities import Integral
+from ibpred.identities.rows import FamilyIdentities
+from ibpred.identities.seeding import Depth, SeedPlan
+from ibpred.sectors.order import dots, lines_of, rank, sector_of
 
 
 @dataclass(frozen=True)
@@ -43,45 +42,87 @@ GROWTH = (
 _LEAST = Depth(1, 1)  # without dots the identities leave masters that are none
 
 
-def full_plan(analysis: SectorAnalysis, depth: Depth) -> SeedPlan:
-    """The same depth in every sector that is seeded at all."""
-    return dict.fromkeys(seeded_sectors(analysis), depth)
+Node = tuple[int, int]
+"""Number of a family, of several, and a sector of it."""
 
 
-def plan_for(
-    family: FamilyDefinition, analysis: SectorAnalysis, wanted: Iterable[Powers], growth: Growth
-) -> SeedPlan:
-    """Seeds in the sectors of the wanted integrals and in everything below them.
+def full_plans(members: Sequence[FamilyIdentities], roots: Sequence[int], depth: Depth) -> list[SeedPlan]:
+    """The same depth in every sector that the integrals of some families, the roots, reduce to."""
+    reach: dict[Node, Depth] = {}
+    targets = _targets(members)
+    for number in roots:
+        for sector in members[number].analysis.nonzero:
+            for node in _below((number, sector), members, targets):
+                reach[node] = depth
+    return _plans(reach, len(members))
 
-    Sectors that a symmetry maps elsewhere hand their depth to where they are mapped.
+
+def plans_for(
+    members: Sequence[FamilyIdentities], wanted: Iterable[Integral], growth: Growth
+) -> list[SeedPlan]:
+    """Seeds in the sectors of the wanted integrals and in everything below them, for each family.
+
+    Sectors that a map of momenta takes elsewhere hand their depth to where they are mapped.
     """
-    target = {m.source: m.target for m in analysis.maps if m.kind == "momentum" and m.source != m.target}
-    top: dict[int, Depth] = {}
-    for powers in wanted:
+    targets = _targets(members)
+    top: dict[Node, Depth] = {}
+    for number, powers in wanted:
         sector = sector_of(powers)
-        if sector in analysis.zero:
+        if sector in members[number].analysis.zero:
             continue
         depth = _LEAST.cover(Depth(dots(powers), rank(powers)))
-        sector = target.get(sector, sector)
-        top[sector] = depth.cover(top.get(sector, _LEAST))
-    plan: dict[int, Depth] = {}
-    for sector, depth in top.items():
+        node = targets.momentum.get((number, sector), (number, sector))
+        top[node] = depth.cover(top.get(node, _LEAST))
+    reach: dict[Node, Depth] = {}
+    for node, depth in top.items():
         own = Depth(depth.dots + growth.dots, depth.rank + growth.rank)
         below = Depth(own.dots, max(_LEAST.rank, depth.rank + growth.rank_below))
-        for part in _below(sector, analysis, target):
-            reach = own if part == sector else below
-            plan[part] = reach.cover(plan.get(part, reach))
-    return plan
+        for part in _below(node, members, targets):
+            # a sector that only a scalar map joins to the wanted one counts as the same
+            same = part[1].bit_count() == node[1].bit_count()
+            depth_there = own if same else below
+            reach[part] = depth_there.cover(reach.get(part, depth_there))
+    return _plans(reach, len(members))
 
 
-def _below(sector: int, analysis: SectorAnalysis, target: dict[int, int]) -> Iterator[int]:
-    """The seeded sectors that reductions from a sector can meet."""
-    found: set[int] = set()
-    waiting = [sector]
+@dataclass(frozen=True)
+class _Targets:
+    """Where sectors are mapped: by momenta (then they need no seeds), or without numerators only."""
+
+    momentum: Mapping[Node, Node]
+    scalar: Mapping[Node, Node]
+
+
+def _targets(members: Sequence[FamilyIdentities]) -> _Targets:
+    number_of = {member.family.name: number for number, member in enumerate(members)}
+    found: dict[str, dict[Node, Node]] = {"momentum": {}, "scalar": {}}
+    for number, member in enumerate(members):
+        for map_ in member.analysis.maps:
+            if not map_.is_symmetry:
+                target = (number_of[map_.target_family], map_.target)
+                found[map_.kind][number, map_.source] = target
+    return _Targets(found["momentum"], found["scalar"])
+
+
+def _below(top: Node, members: Sequence[FamilyIdentities], targets: _Targets) -> list[Node]:
+    """The seeded sectors that reductions from a sector can meet, itself included."""
+    found: set[Node] = set()
+    waiting = [targets.momentum.get(top, top)]
     while waiting:
-        for part in subsectors([waiting.pop()]):
-            part = target.get(part, part)
-            if part not in found and part not in analysis.zero:
-                found.add(part)
-                waiting.append(part)
-    return iter(sorted(found))
+        node = waiting.pop()
+        if node in found:
+            continue
+        found.add(node)
+        number, sector = node
+        parts = [(number, sector ^ (1 << line)) for line in lines_of(sector)]
+        for part in parts + ([targets.scalar[node]] if node in targets.scalar else []):
+            if part[1] not in members[part[0]].analysis.zero:
+                waiting.append(targets.momentum.get(part, part))
+    return sorted(found)
+
+
+def _plans(reach: Mapping[Node, Depth], families: int) -> list[SeedPlan]:
+    plans: list[dict[int, Depth]] = [{} for _ in range(families)]
+    for (number, sector), depth in reach.items():
+        plans[number][sector] = depth
+    return list(plans)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 from ibpred.exact.labelling import Key
@@ -34,8 +34,9 @@ class SectorAnalysis:
         For each sector of a class but the first, one map to a simpler sector of the class: a map
         of momenta to the first one that such a map reaches (which no map of momenta takes further),
         or else a scalar map to the representative. Then, for the sectors that no map of momenta
-        takes elsewhere, self-maps (``source == target``) that generate their symmetries, none
-        trivial.
+        takes elsewhere, self-maps (``source == target`` and equal families) that generate their
+        symmetries, none trivial. Where several families are analysed together, classes reach over all
+        of them for this purpose, and a target may belong to an earlier family.
     """
 
     family: str
@@ -67,42 +68,80 @@ def analyse(family: FamilyDefinition) -> SectorAnalysis:
     InputError
         If the lines do not determine all scalar products of loop momenta.
     """
-    forms = line_forms(family)
-    pair = family_pair(forms, forms)
-    terms = family_terms(family)
-    sectors = all_sectors(family.propagators)
-    zero = zero_sectors_of(terms, family.propagators)
-    classes: dict[Key, list[int]] = {}
-    for sector in sectors:
-        if sector not in zero:
-            classes.setdefault(terms.canonical(sector).key, []).append(sector)
-    between: list[SectorMap] = []
-    own: list[SectorMap] = []
-    for members in classes.values():
-        leaders: list[Place] = []  # sectors that no map of momenta takes elsewhere
-        for place in (Place(terms, sector) for sector in members):
-            found = _first_momentum_map(pair, place, leaders)
-            if found is None:
-                if leaders:
-                    found = scalar_map(pair, place, leaders[0])
-                    assert found is not None, "sectors of one class have equal canonical forms"
-                leaders.append(place)
-            if found is not None:
-                between.append(found)
-        for place in leaders:
-            own.extend(self_maps(pair, place))
-    return SectorAnalysis(
-        family=family.name,
-        sectors=sectors,
-        zero=zero,
-        classes=tuple(tuple(members) for members in classes.values()),
-        maps=(*between, *own),
-    )
+    return analyse_together([family])[0]
 
 
-def _first_momentum_map(pair: FamilyPair, place: Place, leaders: Sequence[Place]) -> SectorMap | None:
-    for leader in leaders:
-        found = momentum_map(pair, place, leader)
+def analyse_together(families: Sequence[FamilyDefinition]) -> tuple[SectorAnalysis, ...]:
+    """The same for several families, with the sectors that they share mapped to the first that has them.
+
+    Parameters
+    ----------
+    families
+        With the same kinematics, each with its own name; earlier ones count as simpler.
+
+    Returns
+    -------
+    tuple of SectorAnalysis
+        One for each family.
+
+    Raises
+    ------
+    InputError
+        As `analyse`.
+    """
+    forms = [line_forms(family) for family in families]
+    terms = [family_terms(family) for family in families]
+    pairs: dict[tuple[int, int], FamilyPair] = {}
+
+    def pair(source: int, target: int) -> FamilyPair:
+        if (source, target) not in pairs:
+            pairs[source, target] = family_pair(forms[source], forms[target])
+        return pairs[source, target]
+
+    leaders: dict[Key, list[tuple[int, Place]]] = {}  # sectors that no map of momenta takes elsewhere
+    found = []
+    for number, family in enumerate(families):
+        zero = zero_sectors_of(terms[number], family.propagators)
+        sectors = all_sectors(family.propagators)
+        classes: dict[Key, list[int]] = {}
+        for sector in sectors:
+            if sector not in zero:
+                classes.setdefault(terms[number].canonical(sector).key, []).append(sector)
+        between: list[SectorMap] = []
+        own: list[SectorMap] = []
+        for key, members in classes.items():
+            simpler = leaders.setdefault(key, [])
+            for place in (Place(terms[number], sector) for sector in members):
+                reached = _first_momentum_map(pair, number, place, simpler)
+                if reached is None:
+                    if simpler:
+                        target, first = simpler[0]
+                        reached = scalar_map(pair(number, target), place, first)
+                        assert reached is not None, "sectors of one class have equal canonical forms"
+                    simpler.append((number, place))
+                    own.extend(self_maps(pair(number, number), place))
+                if reached is not None:
+                    between.append(reached)
+        found.append(
+            SectorAnalysis(
+                family=family.name,
+                sectors=sectors,
+                zero=zero,
+                classes=tuple(tuple(members) for members in classes.values()),
+                maps=(*between, *own),
+            )
+        )
+    return tuple(found)
+
+
+def _first_momentum_map(
+    pair: Callable[[int, int], FamilyPair],
+    number: int,
+    place: Place,
+    leaders: Sequence[tuple[int, Place]],
+) -> SectorMap | None:
+    for target, leader in leaders:
+        found = momentum_map(pair(number, target), place, leader)
         if found is not None:
             return found
     return None

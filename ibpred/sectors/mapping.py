@@ -54,3 +54,8 @@ class SectorMap:
     images: tuple[Image, ...]
     loop_map: tuple[tuple[Fraction, ...], ...]
     leg_map: tuple[tuple[Fraction, ...], ...]
+
+    @property
+    def is_symmetry(self) -> bool:
+        """Whether it takes a sector to itself."""
+        return self.source == self.target and self.source_family == self.target_family

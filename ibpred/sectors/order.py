@@ -82,13 +82,16 @@ def key_columns(powers: NDArray[np.int64]) -> tuple[NDArray[np.int64], ...]:
     return lines, sectors, total_dots, total_rank
 
 
-def order_columns(powers: NDArray[np.int64]) -> NDArray[np.int64]:
+def order_columns(powers: NDArray[np.int64], family: NDArray[np.int64] | None = None) -> NDArray[np.int64]:
     """Permutation that sorts integrals by `sort_key`, simplest first.
 
     Parameters
     ----------
     powers
         Integers, (N, n) with ``n <= MAX_LINES``.
+    family
+        Integers, (N,): the number of each integral's family, where there are several; it comes between
+        the number of lines and the sector id.
 
     Returns
     -------
@@ -99,4 +102,5 @@ def order_columns(powers: NDArray[np.int64]) -> NDArray[np.int64]:
     lines, sectors, total_dots, total_rank = key_columns(table)
     # np.lexsort takes the most significant key last
     tiebreak = tuple(table[:, i] for i in range(table.shape[1] - 1, -1, -1))
-    return np.lexsort((*tiebreak, total_rank, total_dots, sectors, lines)).astype(np.int64)
+    leading = (sectors, lines) if family is None else (sectors, family, lines)
+    return np.lexsort((*tiebreak, total_rank, total_dots, *leading)).astype(np.int64)

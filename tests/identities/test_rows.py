@@ -15,7 +15,7 @@ from ibpred.errors import UnfinishedError
 from ibpred.identities.packing import packing
 from ibpred.identities.pool import CoefficientPool, distinct_rows
 from ibpred.identities.quantities import template_at
-from ibpred.identities.rows import seeded_sectors, write_rows
+from ibpred.identities.rows import FamilyIdentities, family_identities, seeded_sectors, write_rows
 from ibpred.identities.seeding import Depth, seeds_of_sector, subsectors
 from ibpred.identities.symmetry import symmetry_rows
 from ibpred.identities.templates import ibp_templates
@@ -135,11 +135,11 @@ def test_rows_are_well_formed(make) -> None:
     quantity = template_at(templates[0], top)
     with pytest.raises(KeyError):
         quantity.weight[(0,) * len(family.internal_ring.names)]
-    rows = write_rows(family, analysis, templates, plan)
+    rows = write_rows([FamilyIdentities(family, analysis, templates)], [plan])
     ranked = [tuple(r) for r in rows.powers.tolist()]
     assert ranked == sorted(ranked, key=sort_key)
     assert not any(sector_of(r) in analysis.zero for r in ranked)
-    assert rows.places([ranked[3], (9,) * len(family.lines)]) == (3, -1)
+    assert rows.places([(0, ranked[3]), (0, (9,) * len(family.lines))]) == (3, -1)
     for r in range(len(rows.start) - 1):
         columns = rows.column[rows.start[r] : rows.start[r + 1]]
         assert len(columns)
@@ -152,7 +152,8 @@ def test_preferred_integrals_come_first_in_their_sector() -> None:
     analysis = analyse(family)
     plan = dict.fromkeys(seeded_sectors(analysis), Depth(1, 2))
     wish = [(1, 0, 2, 0), (2, 1, 1, 1)]
-    rows = write_rows(family, analysis, ibp_templates(family), plan, preferred=wish)
+    members = family_identities([family], [analysis])
+    rows = write_rows(members, [plan], preferred=[(0, powers) for powers in wish])
     for powers in wish:
         own = [tuple(r) for r in rows.powers.tolist() if sector_of(r) == sector_of(powers)]
         assert own[0] == powers

@@ -12,8 +12,7 @@ from hypothesis import strategies as st
 from ibpred.exact.codec import from_data, to_data
 from ibpred.family.polynomials import symanzik
 from ibpred.family.reading import read_family
-from ibpred.sectors.across import shared_sectors
-from ibpred.sectors.analysis import SectorAnalysis, analyse
+from ibpred.sectors.analysis import SectorAnalysis, analyse, analyse_together
 from ibpred.sectors.closure import ChangeGroup
 from ibpred.sectors.forms import square_of
 from ibpred.sectors.legs import leg_maps
@@ -313,7 +312,10 @@ def test_bubbles_share_their_sectors():
     """A bubble routed in another way, mapped line by line onto the first."""
     other = families.make_family("other", "l", "p", "s m2 M2", {"p p": "s"}, ["p-l|M2", "l|m2"])
     first = families.bubble("m2", "M2")
-    found = shared_sectors(other, analyse(other), first, analyse(first))
+    alone, joint = analyse_together([first, other])
+    assert alone == analyse(first)
+    found = joint.maps
+    assert {m.target_family for m in found} == {"bubble"}
     assert [(m.source, m.target, m.kind) for m in found] == [
         (0b01, 0b10, "momentum"),
         (0b10, 0b01, "momentum"),
@@ -333,12 +335,17 @@ def test_planar_and_crossed_vertex_share_sectors():
         ["k1", "k2", "k1-k2", "k1+p1", "k2+p1", "k1+p1+p2", "k2+p1+p2"],
     )
     crossed = families.crossed_vertex()
-    found = shared_sectors(crossed, analyse(crossed), planar, analyse(planar))
+    joint = analyse_together([planar, crossed])[1]
+    found = [m for m in joint.maps if m.target_family == planar.name]
     sizes = [m.source.bit_count() for m in found]
     assert 3 in sizes  # the sunrise
     assert 6 not in sizes  # the crossed top sector is not planar
     for each in found:
         check_map(crossed, planar, each)
+    # every sector is either mapped or the first of its kind
+    mapped = {m.source for m in joint.maps if not m.is_symmetry}
+    kinds = {len({m.source for m in analyse(crossed).maps if not m.is_symmetry}), len(mapped)}
+    assert max(kinds) == len(mapped)
 
 
 def test_record_survives_the_store():
