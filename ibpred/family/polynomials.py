@@ -7,6 +7,12 @@ With ``sum_i x_i D_i = -(k^T M k + 2 Q.k) + J`` the parametric representation ho
 so that for lines ``D = m2 - q^2`` both are sums of positive monomials in the Euclidean region
 (N. Nakanishi, Graph Theory and Feynman Integrals, 1971; C. Bogner, S. Weinzierl, arXiv:1002.3458). M, Q and
 J are linear in the parameters, so a subsector's U and F follow by setting the missing x_i to zero.
+
+None of this asks for lines that are squares. A line linear in the loop momenta (``-2*k*v - w``) has no part
+in M, so its parameter is missing from U and occurs in F only; U + F still decides which sectors are
+scaleless and which are equal. Where U vanishes identically, some combination of loop momenta occurs in scalar
+products with external momenta alone: its components orthogonal to those have no scale, and the sector
+vanishes.
 """
 
 from __future__ import annotations

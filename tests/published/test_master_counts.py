@@ -6,6 +6,7 @@ several families together, only the union is compared. The one-loop counts are c
 
 from __future__ import annotations
 
+from dataclasses import replace
 from functools import cache
 from pathlib import Path
 
@@ -189,3 +190,17 @@ def test_one_loop_count_by_determinants(name: str) -> None:
         modified = flint.nmod_mat(len(lines), len(lines), [c for row in cayley for c in row], prime).det()
         count += int(gram != 0 and modified != 0)
     assert len(masters_of(name).masters) == count
+
+
+LINEAR = [path.stem for path in sorted(FOLDER.glob("*.toml")) if family_of(path.stem).graph is None]
+
+
+@pytest.mark.parametrize("name", LINEAR)
+def test_zero_sectors_of_linear_lines_vanish_by_identities(name: str) -> None:
+    """Told of no zero sector (but those without a cut line), the identities alone leave the same masters."""
+    family = family_of(name)
+    analysis = analyse(family)
+    cut = sum(1 << i for i, line in enumerate(family.lines) if line.cut)
+    ignorant = replace(analysis, zero=frozenset(s for s in analysis.zero if s & cut != cut))
+    found = find_masters(family, ignorant, first_primes(1)[0], 1)
+    assert found.masters == masters_of(name).masters
