@@ -16,7 +16,17 @@ from ibpred.epsform.cover import (
     double_cover,
 )
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix, Obstructed, Obstruction
-from ibpred.epsform.matrices import Constants, added, derivative, identity, inverse, part, product, subtracted
+from ibpred.epsform.matrices import (
+    Constants,
+    added,
+    derivative,
+    identity,
+    inverse,
+    part,
+    product,
+    subtracted,
+    vanishes,
+)
 from ibpred.epsform.picardfuchs import picard_fuchs
 from ibpred.epsform.places import Place, places_of
 from ibpred.epsform.single import solve_single
@@ -153,9 +163,10 @@ def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cove
 
 
 def _obstruction(connection: Connection, rows: tuple[int, ...], found: Finding) -> Obstruction:
-    name = connection.variables[0]
-    operator = picard_fuchs(part(connection.matrices[name], rows, rows), name)
-    return Obstruction(rows, found.reason, operator, found.exponents)
+    """With the operator in the first ratio that the block depends on."""
+    own = {name: part(connection.matrices[name], rows, rows) for name in connection.variables}
+    name = next((n for n in own if not vanishes(own[n])), connection.variables[0])
+    return Obstruction(rows, found.reason, picard_fuchs(own[name], name), found.exponents)
 
 
 def restricted(connection: Connection, rows: Sequence[int]) -> Connection:
