@@ -33,7 +33,23 @@ def derived(name: str, preferred: tuple[tuple[int, ...], ...] = ()) -> tuple[Fam
     return family, differential_system(family, analysis, masters, PRIMES, 7)
 
 
-@pytest.mark.parametrize("name", sorted(file.stem for file in FAMILIES.glob("*.toml")))
+@pytest.mark.parametrize(
+    "name",
+    [
+        "tadpole",
+        "bubble-one-mass",
+        "bubble-two-masses",
+        "triangle-two-legs",
+        "massless-box",
+        "box-one-leg",
+        "pentagon",
+        "sunrise-equal-masses",
+        "kite",
+        "crossed-vertex",
+        "heavy-quark-self-energy",
+        "planar-double-box",
+    ],
+)
 def test_scaling_and_integrability_are_exact(name: str) -> None:
     family, found = derived(name)
     for result in check_system(found.system, family):
