@@ -36,7 +36,7 @@ def spectra(form: EpsilonForm) -> dict[str, list[str]]:
 
 
 def massless_box():
-    """Bubble in s, bubble in t, box at s = -1, x = t/s, d = 4 - 2 eps; own derivation from identities."""
+    """Bubble in s, bubble in t, box at s = -1, x = t/s, d = 4 - 2 eps; as the identities give it."""
     return connection(
         matrix(
             [
@@ -49,7 +49,7 @@ def massless_box():
 
 
 def test_massless_box_has_the_published_letters_and_residues() -> None:
-    """Henn, arXiv:1412.2296, section 4, up to normalisation of the functions: letters x, 1 + x."""
+    """Letters x and 1 + x with exponents 0, -1, -1 and 0, 0, 1 (Henn, arXiv:1412.2296; from memory)."""
     form = solved(massless_box())
     assert [str(letter) for letter in form.letters] == ["x", "x+1"]
     at_zero, at_minus_one = form.matrices
@@ -165,7 +165,7 @@ def obstruction(rows: list[list[str]], blocks: tuple[int, ...] | None = None) ->
 
 SUNRISE = [["0", "1"], ["-(x+3)/(x*(x+1)*(x+9))", "-(3*x^2+20*x+9)/(x*(x+1)*(x+9))"]]
 """Equal-mass sunrise in two dimensions, x = -p^2/m^2: a period of an elliptic curve (Laporta, Remiddi,
-hep-ph/0406160)."""
+hep-ph/0406160; operator from memory)."""
 
 
 def test_sunrise_is_obstructed_by_its_bundle() -> None:

@@ -43,7 +43,7 @@ def solved(connection: Connection) -> EpsilonForm:
 
 
 def test_planar_double_box() -> None:
-    """Letters x and 1 + x (Henn, arXiv:1304.1806); exponents of the eight functions."""
+    """Letters x and 1 + x (Henn, arXiv:1304.1806; from memory); exponents of the eight functions."""
     form = solved(connection_of("planar-double-box"))
     assert [str(letter) for letter in form.letters] == ["x", "x+1"]
     table = dict(exponents(form))
@@ -52,13 +52,13 @@ def test_planar_double_box() -> None:
 
 
 def test_crossed_double_box() -> None:
-    """Twelve masters, letters x and 1 + x (Tausk, hep-ph/9909506, found the functions)."""
+    """Twelve masters, letters x and 1 + x (functions: Tausk, hep-ph/9909506; from memory)."""
     form = solved(connection_of("crossed-double-box"))
     assert [str(letter) for letter in form.letters] == ["x", "x+1"]
 
 
 def test_double_box_with_one_leg_in_two_ratios() -> None:
-    """Eighteen masters, coupled sectors; the alphabet of Gehrmann, Remiddi, hep-ph/0008287."""
+    """Eighteen masters, coupled sectors; alphabet of Gehrmann, Remiddi, hep-ph/0008287 (from memory)."""
     form = solved(connection_of("planar-double-box-one-leg"))
     found = {str(letter) for letter in form.letters}
     assert found == {"x", "x+1", "x-y", "x-y+1", "y", "y-1"}
