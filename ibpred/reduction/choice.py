@@ -26,7 +26,7 @@ from ibpred.reconstruct.modular import Residues, add, invert, multiply, subtract
 from ibpred.reconstruct.univariate import rational_functions
 from ibpred.reduction.masters import Masters, find_masters
 from ibpred.reduction.recording import TapeSampler, record_quantities
-from ibpred.reduction.table import single
+from ibpred.reduction.wanted import single
 from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.order import dots, rank, sector_of, sort_key
 

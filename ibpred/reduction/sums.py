@@ -20,8 +20,7 @@ from ibpred.reduction.recording import (
     coefficients,
     record_quantities,
 )
-from ibpred.reduction.table import Combination
-from ibpred.reduction.wanted import check_powers
+from ibpred.reduction.wanted import Combination, check_powers
 from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.order import sector_of
 

@@ -5,26 +5,14 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
-from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.family.units import integral_dimension, restore_unit
-from ibpred.identities.quantities import Quantity
+from ibpred.identities.rows import family_identities
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence
-from ibpred.reduction.recording import (
-    Effort,
-    Sampling,
-    TapeSampler,
-    check_masters,
-    coefficients,
-    record_quantities,
-)
-from ibpred.reduction.wanted import check_powers
+from ibpred.reduction.recording import Effort, Sampling, TapeSampler
+from ibpred.reduction.several import reduce_together
+from ibpred.reduction.wanted import Combination
 from ibpred.sectors.analysis import SectorAnalysis
-from ibpred.sectors.order import sector_of
-
-Combination = tuple[tuple[int, Rational], ...]
-"""(index of a master, coefficient), masters ascending, no zero coefficients."""
 
 
 @dataclass(frozen=True)
@@ -51,12 +39,6 @@ class ReductionTable:
     reductions: Mapping[Powers, Combination]
     evidence: Evidence | None
     effort: Effort | None
-
-
-def single(family: FamilyDefinition, powers: Powers) -> Quantity:
-    """The quantity that is one integral."""
-    one = {(0,) * len(family.internal_ring.names): 1}
-    return Quantity(f"{family.name}({','.join(map(str, powers))})", one, ((powers, one),))
 
 
 def reduce_integrals(
@@ -94,23 +76,20 @@ def reduce_integrals(
     UnfinishedError
         If integrals do not reduce to the masters, or the coefficients cannot be reconstructed.
     """
-    check_masters(family, masters)
-    asked = tuple(dict.fromkeys(tuple(int(a) for a in powers) for powers in wanted))
-    for powers in asked:
-        check_powers(family, powers)
-    alive = tuple(powers for powers in asked if sector_of(powers) not in analysis.zero)
-    reductions: dict[Powers, Combination] = dict.fromkeys(asked, ())
-    if not alive:
-        return ReductionTable(family.name, tuple(masters), reductions, None, None)
-    recorded = record_quantities(
-        family, analysis, masters, [single(family, powers) for powers in alive], primes, seed, progress
+    members = family_identities([family], [analysis])
+    table = reduce_together(
+        members,
+        [(0, tuple(powers)) for powers in wanted],
+        [(0, tuple(powers)) for powers in masters],
+        primes,
+        seed,
+        sampling,
+        progress,
     )
-    values, evidence, effort = coefficients(family, recorded, primes, seed, sampling, progress)
-    rows: dict[int, list[tuple[int, Rational]]] = {}
-    for (quantity, master), value in sorted(values.items()):
-        own, _ = integral_dimension(family, alive[quantity])
-        theirs, _ = integral_dimension(family, recorded.masters[master])
-        rows.setdefault(quantity, []).append((master, restore_unit(value, own - theirs, family)))
-    for quantity, row in rows.items():
-        reductions[alive[quantity]] = tuple(row)
-    return ReductionTable(family.name, recorded.masters, reductions, evidence, effort)
+    return ReductionTable(
+        family.name,
+        tuple(powers for _, powers in table.masters),
+        {powers: row for (_, powers), row in table.reductions.items()},
+        table.evidence[0] if table.evidence else None,
+        table.effort[0] if table.effort else None,
+    )

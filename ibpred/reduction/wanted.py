@@ -1,11 +1,23 @@
-"""Checks of the integrals that a user asks for."""
+"""The integrals that a user asks for: checks, and their places in the equations."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 
 from ibpred.errors import InputError
-from ibpred.family.definition import FamilyDefinition
+from ibpred.exact.rational import Rational
+from ibpred.family.definition import FamilyDefinition, Powers
+from ibpred.family.members import integral_text
+from ibpred.identities.quantities import Quantity
+
+Combination = tuple[tuple[int, Rational], ...]
+"""(index of a master, coefficient), masters ascending, no zero coefficients."""
+
+
+def single(family: FamilyDefinition, powers: Powers) -> Quantity:
+    """The quantity that is one integral."""
+    one = {(0,) * len(family.internal_ring.names): 1}
+    return Quantity(integral_text(family.name, powers), one, ((powers, one),))
 
 
 def check_powers(family: FamilyDefinition, powers: Sequence[int]) -> None:
