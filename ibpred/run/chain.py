@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from itertools import product
-from typing import TypeVar
 
 import ibpred
 from ibpred.boundary.fix import Boundary, fix_constants
@@ -14,13 +13,11 @@ from ibpred.boundary.problem import boundary_problem, one_scale_values
 from ibpred.diffeq.derive import Derivation, differential_system
 from ibpred.diffeq.ratios import DimensionlessSystem, dimensionless
 from ibpred.digest import digest
-from ibpred.elimination.tape import Tape
 from ibpred.epsform.factorise import factorise
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
 from ibpred.epsform.matrices import identity, scaled
 from ibpred.errors import ObstructionError, UnfinishedError
-from ibpred.exact.codec import from_data, to_data
-from ibpred.exact.primes import first_primes
+from ibpred.exact.codec import to_data
 from ibpred.exact.rational import ring
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import euclidean_signs
@@ -32,21 +29,13 @@ from ibpred.reduction.masters import Masters, find_masters
 from ibpred.reduction.table import ReductionTable, reduce_integrals
 from ibpred.reduction.wanted import check_powers
 from ibpred.report.text import integral_text
-from ibpred.run.sampling import Meter, StoredSampler
+from ibpred.run.stages import SEED, Stages
 from ibpred.run.store import Store
 from ibpred.run.values import evaluate
 from ibpred.sectors.analysis import SectorAnalysis, analyse
 
-SEED = 20_260_301
-"""Seed of every random choice of a run, so that the same input gives the same bytes."""
 
-PRIMES = 60
-"""Engine primes a run may use."""
-
-R = TypeVar("R")
-
-
-class Chain:
+class Chain(Stages):
     """The stages of one family, each computed when first asked for and kept in the store.
 
     Parameters
@@ -62,23 +51,10 @@ class Chain:
     """
 
     def __init__(self, definition: FamilyDefinition, store: Store, progress: Progress, workers: int) -> None:
+        identity = digest(["family", ibpred.__version__, to_data(definition)])
+        super().__init__(identity, store, progress, workers)
         self.definition = definition
-        self.store = store
-        self.progress = progress
-        self.workers = workers
-        self.identity = digest(["family", ibpred.__version__, to_data(definition)])
-        self.meter = Meter()
-        self.primes = first_primes(PRIMES)
         self._analysis: SectorAnalysis | None = None
-
-    def _kept(self, stage: str, kind: type[R], options: object, compute: Callable[[], R]) -> R:
-        key = digest([self.identity, stage, to_data(options)])
-        stored = self.store.get(key)
-        if stored is not None:
-            return from_data(kind, stored)
-        result = compute()
-        self.store.put(key, stage, to_data(result))
-        return result
 
     def analysis(self) -> SectorAnalysis:
         """Sectors, symmetries, zero sectors."""
@@ -96,10 +72,6 @@ class Chain:
             None,
             lambda: find_masters(self.definition, self.analysis(), prime, SEED, progress=self.progress),
         )
-
-    def sampling(self, tape: Tape) -> StoredSampler:
-        """How the tapes of this run are sampled."""
-        return StoredSampler(tape, self.workers, self.store, self.meter)
 
     def integrals_within(self, dots: int, rank: int) -> list[Powers]:
         """All integrals of nonzero sectors with at most so many dots and so high a rank."""

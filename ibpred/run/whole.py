@@ -26,9 +26,10 @@ from ibpred.report.json_tables import (
     values_data,
 )
 from ibpred.report.summary import Effort, Stage, summary
-from ibpred.run.chain import SEED, Chain
+from ibpred.run.chain import Chain
 from ibpred.run.files import check_writable, write_folder
 from ibpred.run.points import euclidean_point, physical_point
+from ibpred.run.stages import SEED
 
 Data = dict[str, Any]
 R = TypeVar("R")
