@@ -11,6 +11,7 @@ from ibpred.cli.common import guarded
 from ibpred.cli.diffeq import diffeq
 from ibpred.cli.epsform import epsform
 from ibpred.cli.evaluate import evaluate
+from ibpred.cli.export import export
 from ibpred.cli.inspect import inspect
 from ibpred.cli.masters import masters
 from ibpred.cli.reduce import reduce
@@ -28,7 +29,7 @@ def group() -> None:
     """
 
 
-for command in (inspect, masters, reduce, diffeq, epsform, solve, evaluate, run):
+for command in (inspect, masters, reduce, diffeq, epsform, solve, evaluate, export, run):
     group.add_command(command)
 
 

@@ -1,0 +1,1 @@
+"""Results in the languages of other programs, as plain source text."""

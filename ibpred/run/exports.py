@@ -1,0 +1,129 @@
+"""What is exported, from a folder of results or from the chain."""
+
+from __future__ import annotations
+
+import json
+import os
+import tempfile
+from pathlib import Path
+from typing import Any
+
+from ibpred.epsform.form import EpsilonForm
+from ibpred.errors import InputError, UnfinishedError, UnwritableError
+from ibpred.exact.rational import Rational
+from ibpred.family.signs import euclidean_signs
+from ibpred.iterated.solution import letter_roots
+from ibpred.report.export.material import Material
+from ibpred.report.json_tables import differential_data, epsilon_data, solution_data, values_data
+from ibpred.run.chain import Chain
+from ibpred.run.files import read_family_file
+from ibpred.run.points import euclidean_point, physical_point
+
+Data = dict[str, Any]
+
+
+def folder_material(folder: Path) -> Material:
+    """The results in a folder that `run` wrote.
+
+    Raises
+    ------
+    InputError
+        If it is no such folder.
+    """
+    families = sorted(folder.glob("*.toml"))
+    if len(families) != 1:
+        raise InputError(
+            f"{folder} is no folder of results: it holds {len(families)} family files instead of one; "
+            "give a folder that `ibpred run` wrote, or a family file"
+        )
+    family = read_family_file(families[0])
+    differential = _document(folder / "diffeq.json")
+    if differential is None:
+        raise InputError(f"{folder} holds no diffeq.json; run `ibpred run {families[0]}` first")
+    values = _document(folder / "values.json")
+    tables = tuple(values["tables"]) if values is not None else ()
+    notes = () if tables else ("the folder holds no values, so there are no boundary values.",)
+    return Material(
+        family,
+        differential,
+        _document(folder / "epsform.json"),
+        _document(folder / "solution.json"),
+        tables,
+        euclidean_signs(family),
+        notes,
+    )
+
+
+def _document(path: Path) -> Data | None:
+    if not path.exists():
+        return None
+    try:
+        data = json.loads(path.read_text(encoding="utf-8"))
+    except (OSError, ValueError) as error:
+        raise InputError(f"{path} cannot be read: {error}") from error
+    if not isinstance(data, dict):
+        raise InputError(f"{path} holds no JSON object")
+    return data
+
+
+def chain_material(chain: Chain, order: int, digits: int) -> Material:
+    """The results of a chain, computed where they are not yet there.
+
+    Parameters
+    ----------
+    order
+        Highest power of eps of the boundary values.
+    digits
+        Digits of the boundary values.
+    """
+    family = chain.definition
+    differential = differential_data(chain.derivation().system)
+    signs = euclidean_signs(family)
+    notes = []
+    epsilon: Data | None = None
+    solution: Data | None = None
+    letters: tuple[Rational, ...] = ()
+    variables: tuple[str, ...] = ()
+    if len(family.invariants) > 1:
+        found = chain.epsilon_form()
+        epsilon = epsilon_data(family, chain.dimensionless(), found)
+        if isinstance(found, EpsilonForm):
+            letters, variables = found.letters, found.variables
+    weight = 2 * len(family.loops)
+    try:
+        solved = chain.solution(weight)
+        solution = solution_data(family, chain.solved_form(), chain.boundary(weight), solved)
+    except UnfinishedError as error:
+        notes.append(f"no solution in iterated integrals: {error}")
+    singular = []
+    if len(variables) == 1:
+        singular = [root for root in letter_roots(letters, variables[0]) if root is not None]
+    tables = []
+    try:
+        usual = signs if signs is not None else chain.signs()
+        for point in (euclidean_point(family, usual), physical_point(family, usual, singular)):
+            if point is not None:
+                values = chain.evaluate(point, (), order, digits)
+                tables.append(values_data(family, point, digits, values))
+    except UnfinishedError as error:
+        notes.append(f"no boundary values: {error}")
+    return Material(family, differential, epsilon, solution, tuple(tables), signs, tuple(notes))
+
+
+def write_file(path: Path, text: str) -> None:
+    """Write a file by a temporary name, so that it appears whole or not at all.
+
+    Raises
+    ------
+    UnwritableError
+        If it cannot be written.
+    """
+    try:
+        path.parent.mkdir(parents=True, exist_ok=True)
+        handle, fresh = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}-")
+        with os.fdopen(handle, "w", encoding="utf-8") as file:
+            file.write(text)
+        os.chmod(fresh, 0o644)
+        os.replace(fresh, path)
+    except OSError as error:
+        raise UnwritableError(f"{path} cannot be written ({error.strerror}); choose another file") from error
