@@ -18,28 +18,50 @@ from ibpred.errors import IbpredError, InputError, PointError
 from ibpred.exact.grammar import parse_number
 
 if TYPE_CHECKING:
+    from ibpred.progress import Progress
     from ibpred.run.chain import Chain
+    from ibpred.run.joint import Joint, NamedPowers
+    from ibpred.run.store import Store
 
 C = TypeVar("C", bound=Callable[..., Any])
 
 
 @dataclass(frozen=True)
 class Shared:
-    """The options that every command takes."""
+    """The options that every command takes; `others` are the families after the first one."""
 
     file: Path
     work: Path | None
     workers: int
     json: bool
     quiet: bool
+    others: tuple[Path, ...] = ()
 
 
 def shared_options(command: C) -> C:
     """Add the family file and the shared options to a command; it receives one `Shared`."""
+    return _with_options(command, click.argument("family", nargs=1, metavar="FAMILY.toml"))
 
-    def entry(family: str, work: str | None, workers: int, as_json: bool, quiet: bool, **own: Any) -> Any:
-        shared = Shared(Path(family), Path(work) if work else None, workers, as_json, quiet)
-        return command(shared, **own)
+
+def several_families(command: C) -> C:
+    """The same for a command that takes several family files."""
+    return _with_options(
+        command, click.argument("family", nargs=-1, required=True, metavar="FAMILY.toml ...")
+    )
+
+
+def _with_options(command: C, argument: Callable[[C], C]) -> C:
+    def entry(
+        family: str | tuple[str, ...],
+        work: str | None,
+        workers: int,
+        as_json: bool,
+        quiet: bool,
+        **own: Any,
+    ) -> Any:
+        first, *others = (Path(name) for name in ([family] if isinstance(family, str) else family))
+        folder = Path(work) if work else None
+        return command(Shared(first, folder, workers, as_json, quiet, tuple(others)), **own)
 
     entry.__doc__ = command.__doc__
     entry.__name__ = command.__name__
@@ -59,29 +81,46 @@ def shared_options(command: C) -> C:
         click.option(
             "--work", metavar="DIR", help="Work folder [default: .ibpred/NAME beside the family file]."
         ),
-        click.argument("family", metavar="FAMILY.toml"),
+        argument,
     ):
-        entry = decorate(entry)
+        entry = decorate(entry)  # type: ignore[arg-type]
     return entry  # type: ignore[return-value]
 
 
 @contextmanager
 def open_chain(shared: Shared) -> Iterator[Chain]:
     """The chain of the family file, its store open and progress shown on standard error."""
-    from ibpred.cli.progress import terminal_progress
-    from ibpred.progress import SILENT
     from ibpred.run.chain import Chain
     from ibpred.run.files import read_family_file
-    from ibpred.run.store import Store
 
     definition = read_family_file(shared.file)
-    folder = shared.work or shared.file.parent / ".ibpred" / definition.name
-    with Store(folder) as store:
+    with _opened(shared, definition.name) as (store, progress):
+        yield Chain(definition, store, progress, shared.workers)
+
+
+@contextmanager
+def open_joint(shared: Shared) -> Iterator[Joint]:
+    """The families of all files together, likewise."""
+    from ibpred.run.files import read_family_file
+    from ibpred.run.joint import Joint
+
+    definitions = [read_family_file(file) for file in (shared.file, *shared.others)]
+    with _opened(shared, definitions[0].name) as (store, progress):
+        yield Joint(definitions, store, progress, shared.workers)
+
+
+@contextmanager
+def _opened(shared: Shared, name: str) -> Iterator[tuple[Store, Progress]]:
+    from ibpred.cli.progress import terminal_progress
+    from ibpred.progress import SILENT
+    from ibpred.run.store import Store
+
+    with Store(shared.work or shared.file.parent / ".ibpred" / name) as store:
         if shared.quiet:
-            yield Chain(definition, store, SILENT, shared.workers)
+            yield store, SILENT
         else:
             with terminal_progress() as progress:
-                yield Chain(definition, store, progress, shared.workers)
+                yield store, progress
 
 
 def emit(shared: Shared, data: Any, text: Callable[[], str]) -> None:
@@ -92,26 +131,31 @@ def emit(shared: Shared, data: Any, text: Callable[[], str]) -> None:
         click.echo(text())
 
 
-def parse_powers(text: str, source: str) -> tuple[int, ...]:
-    """Powers of an integral, ``1,1,1,-1`` or ``box(1,1,1,-1)``.
+def parse_integral(text: str, source: str) -> NamedPowers:
+    """An integral, ``1,1,1,-1`` or with its family ``box(1,1,1,-1)``; crossed ``box.u(1,1,1,-1)``.
 
     Raises
     ------
     InputError
-        If it is not a comma-separated list of integers.
+        If the powers are no comma-separated list of integers.
     """
-    inner = text.strip()
+    name, inner = None, text.strip()
     if inner.endswith(")") and "(" in inner:
-        inner = inner[inner.index("(") + 1 : -1]
+        name, inner = inner[: inner.index("(")].strip() or None, inner[inner.index("(") + 1 : -1]
     try:
-        return tuple(int(part) for part in inner.split(","))
+        return name, tuple(int(part) for part in inner.split(","))
     except ValueError:
         raise InputError(
             f"{source}: {text!r} is no integral; give the powers separated by commas, e.g. 1,1,1,-1"
         ) from None
 
 
-def parse_list_file(path: Path) -> tuple[tuple[int, ...], ...]:
+def parse_powers(text: str, source: str) -> tuple[int, ...]:
+    """Powers of an integral of the only family; see `parse_integral`."""
+    return parse_integral(text, source)[1]
+
+
+def parse_list_file(path: Path) -> tuple[NamedPowers, ...]:
     """Integrals of a list file: one a line, ``#`` starts a comment.
 
     Raises
@@ -127,7 +171,7 @@ def parse_list_file(path: Path) -> tuple[tuple[int, ...], ...]:
     for number, line in enumerate(text.splitlines(), start=1):
         content = line.split("#", 1)[0].strip()
         if content:
-            found.append(parse_powers(content, f"{path}:{number}"))
+            found.append(parse_integral(content, f"{path}:{number}"))
     if not found:
         raise InputError(f"the list {path} holds no integral")
     return tuple(found)

@@ -4,16 +4,26 @@ from __future__ import annotations
 
 import click
 
-from ibpred.cli.common import Shared, emit, open_chain, shared_options
+from ibpred.cli.common import Shared, emit, open_chain, open_joint, several_families
 
 
 @click.command()
-@shared_options
+@several_families
 def masters(shared: Shared) -> None:
-    """Find the master integrals."""
-    from ibpred.report.json_tables import masters_data
-    from ibpred.report.text import masters_text
+    """Find the master integrals.
 
-    with open_chain(shared) as chain:
-        data = masters_data(chain.definition, chain.masters())
-    emit(shared, data, lambda: masters_text(data))
+    Of several families the common ones: sectors that agree, also after a crossing that a file
+    declares, share their masters.
+    """
+    from ibpred.report.json_common import common_masters_data
+    from ibpred.report.json_tables import masters_data
+    from ibpred.report.text import common_masters_text, masters_text
+
+    if shared.others:
+        with open_joint(shared) as joint:
+            data = common_masters_data(joint.members, joint.masters())
+        emit(shared, data, lambda: common_masters_text(data))
+    else:
+        with open_chain(shared) as chain:
+            data = masters_data(chain.definition, chain.masters())
+        emit(shared, data, lambda: masters_text(data))

@@ -17,7 +17,6 @@ from ibpred.family.polynomials import symanzik
 from ibpred.iterated.solution import Solution, function_text, letter_roots
 from ibpred.numerics.value import Value
 from ibpred.reduction.masters import Masters
-from ibpred.reduction.table import ReductionTable
 from ibpred.sectors.analysis import SectorAnalysis
 
 Data = dict[str, Any]
@@ -51,24 +50,6 @@ def masters_data(family: FamilyDefinition, masters: Masters) -> Data:
         "count": len(masters.masters),
         "masters": [
             {"powers": list(powers), "lines": sum(a > 0 for a in powers)} for powers in masters.masters
-        ],
-    }
-
-
-def reduction_data(family: FamilyDefinition, table: ReductionTable) -> Data:
-    """What `reduce` prints."""
-    return {
-        "family": family.name,
-        "masters": [list(powers) for powers in table.masters],
-        "reductions": [
-            {
-                "powers": list(powers),
-                "terms": [
-                    {"master": list(table.masters[index]), "coefficient": value.factored_text()}
-                    for index, value in combination
-                ],
-            }
-            for powers, combination in table.reductions.items()
         ],
     }
 

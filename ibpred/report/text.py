@@ -50,6 +50,22 @@ def masters_text(data: Data) -> str:
     return "\n".join(lines + columns(rows))
 
 
+def _named(integral: Data) -> str:
+    """An integral of several families' tables."""
+    name = integral["family"] + (f".{integral['crossing']}" if "crossing" in integral else "")
+    return integral_text(name, integral["powers"])
+
+
+def common_masters_text(data: Data) -> str:
+    """The masters of several families, one a line."""
+    lines = [f"{data['count']} master integral{'s' if data['count'] != 1 else ''}"]
+    rows = [
+        [f"  {number}", _named(master), f"{master['lines']} lines"]
+        for number, master in enumerate(data["masters"], start=1)
+    ]
+    return "\n".join(lines + columns(rows))
+
+
 def _sum(terms: Sequence[tuple[str, str]]) -> str:
     """Text of a sum of coefficient times object."""
     if not terms:
@@ -79,13 +95,12 @@ def _is_sum(text: str) -> bool:
     return False
 
 
-def reduction_text(data: Data) -> str:
-    """The reductions, one a line."""
-    family = data["family"]
+def common_reduction_text(data: Data) -> str:
+    """The reductions, of one family or several, one a line."""
     lines = []
     for reduction in data["reductions"]:
-        terms = [(t["coefficient"], integral_text(family, t["master"])) for t in reduction["terms"]]
-        lines.append(f"{integral_text(family, reduction['powers'])} = {_sum(terms)}")
+        terms = [(t["coefficient"], _named(t["master"])) for t in reduction["terms"]]
+        lines.append(f"{_named(reduction)} = {_sum(terms)}")
     return "\n".join(lines)
 
 

@@ -1,0 +1,125 @@
+"""Several families together: common masters, and reductions to them."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import ibpred
+from ibpred.digest import digest
+from ibpred.errors import InputError
+from ibpred.exact.codec import to_data
+from ibpred.exact.grammar import nearest
+from ibpred.family.definition import FamilyDefinition, Powers
+from ibpred.family.members import Member, members_of
+from ibpred.identities.quantities import Integral
+from ibpred.identities.rows import FamilyIdentities, family_identities
+from ibpred.identities.seeding import Depth, seeds_of_sector
+from ibpred.progress import Progress
+from ibpred.reduction.cuts import reduce_by_cuts
+from ibpred.reduction.masters import CommonMasters, find_common_masters
+from ibpred.reduction.several import CommonTable, asked_for, reduce_together
+from ibpred.run.chain import Chain
+from ibpred.run.stages import SEED, Stages
+from ibpred.run.store import Store
+from ibpred.sectors.analysis import analyse_together
+
+NamedPowers = tuple[str | None, Powers]
+"""Name of a family (``box``, or crossed ``box.u``; None for the only one) and powers."""
+
+
+class Joint(Stages):
+    """Masters and reductions of one or several families with the same kinematics.
+
+    Parameters
+    ----------
+    definitions
+        The families; each comes with the crossings that it declares.
+    store, progress, workers
+        As for a chain.
+
+    Raises
+    ------
+    InputError
+        If the families do not fit together.
+    """
+
+    def __init__(
+        self, definitions: Sequence[FamilyDefinition], store: Store, progress: Progress, workers: int
+    ) -> None:
+        identity = digest(["families", ibpred.__version__, *map(to_data, definitions)])
+        super().__init__(identity, store, progress, workers)
+        self.members: tuple[Member, ...] = members_of(definitions)
+        self.roots = tuple(i for i, member in enumerate(self.members) if member.crossing is None)
+        self._identities: tuple[FamilyIdentities, ...] | None = None
+
+    def identities(self) -> tuple[FamilyIdentities, ...]:
+        """The families, their sectors and their identities."""
+        if self._identities is None:
+            self.progress.stage("sectors")
+            definitions = [member.definition for member in self.members]
+            self._identities = family_identities(definitions, analyse_together(definitions))
+        return self._identities
+
+    def integral(self, named: NamedPowers) -> Integral:
+        """The integral that is meant.
+
+        Raises
+        ------
+        InputError
+            For an unknown family, or a missing name where there are several.
+        """
+        name, powers = named
+        if name is None:
+            if len(self.roots) > 1:
+                raise InputError(
+                    f"there are several families: write {self.members[0].family}(...) for the integral "
+                    f"{','.join(map(str, powers))}"
+                )
+            return 0, powers
+        names = [member.definition.name for member in self.members]
+        if name not in names:
+            raise InputError(f"there is no family or crossed family {name!r}; {nearest(name, names)}")
+        return names.index(name), powers
+
+    def integrals_within(self, dots: int, rank: int) -> tuple[Integral, ...]:
+        """All integrals of nonzero sectors of the families with at most so many dots and so high a rank."""
+        found: list[Integral] = []
+        for number in self.roots:
+            member = self.identities()[number]
+            for sector in member.analysis.nonzero:
+                seeds = seeds_of_sector(sector, len(member.family.lines), Depth(dots, rank))
+                found += [(number, tuple(row)) for row in seeds.tolist()]
+        return tuple(found)
+
+    def masters(self, wanted: Sequence[Integral] = ()) -> CommonMasters:
+        """The masters of the families, and of those crossed families that wanted integrals belong to.
+
+        Those of a single family are the ones that its chain uses.
+        """
+        roots = tuple(sorted({*self.roots, *(number for number, _ in wanted)}))
+        if roots == (0,):
+            own = Chain(self.members[0].definition, self.store, self.progress, self.workers).masters()
+            integrals = tuple((0, powers) for powers in own.masters)
+            return CommonMasters((own.family,), integrals, own.prime, own.point, own.trials)
+        return self._kept(
+            "common masters",
+            CommonMasters,
+            roots,
+            lambda: find_common_masters(
+                self.identities(), roots, self.primes[0], SEED, progress=self.progress
+            ),
+        )
+
+    def reduction(self, wanted: Sequence[Integral], by_cuts: bool) -> CommonTable:
+        """Integrals in terms of the common masters, whole or on one cut after the other."""
+        asked = asked_for(self.identities(), wanted)
+        masters = self.masters(asked).masters
+        reduce = reduce_by_cuts if by_cuts else reduce_together
+        return self._kept(
+            "reduction by cuts" if by_cuts else "common reduction",
+            CommonTable,
+            asked,
+            lambda: reduce(
+                self.identities(), asked, masters, self.primes, SEED, self.sampling, self.progress
+            ),
+        )
