@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from fractions import Fraction
 
 import flint
@@ -10,8 +11,8 @@ from ibpred.balls.context import Ball, complex_ball, precision
 from ibpred.errors import InputError
 from ibpred.numerics.canonical import CanonicalSystem, Orders
 from ibpred.numerics.centre import Centre, Place, centre_at, centre_at_infinity
-from ibpred.numerics.path import Disc, Infinity, Point, Regular, Step, Target, plan
-from ibpred.numerics.series import carried, from_base
+from ibpred.numerics.path import Disc, Infinity, Point, Regular, Step, Target, plan, sharing
+from ibpred.numerics.series import carried_to, from_base_to
 
 
 def evaluate_canonical(system: CanonicalSystem, constants: Orders, target: Target, bits: int) -> Orders:
@@ -38,13 +39,38 @@ def evaluate_canonical(system: CanonicalSystem, constants: Orders, target: Targe
     PointError
         If the target is a zero of a letter.
     """
+    return evaluate_many(system, constants, (target,), bits)[0]
+
+
+def evaluate_many(
+    system: CanonicalSystem, constants: Orders, targets: Sequence[Target], bits: int
+) -> tuple[Orders, ...]:
+    """The canonical functions at several targets.
+
+    Targets that lie in the disc of another one are reached with it: the way there and the series in the
+    disc are computed once, so a curve costs as many continuations as discs cover it.
+
+    Parameters
+    ----------
+    system, constants, bits
+        As in `evaluate_canonical`.
+    targets
+        Where the functions are wanted, in any order.
+    """
     for order, vector in enumerate(constants):
         if len(vector) != system.size:
             raise InputError(
                 f"order {order} of the boundary constants has {len(vector)} entries, the system "
                 f"{system.size} functions"
             )
-    return follow(system, constants, plan(system, target), target.half_turns < 0, bits)
+    found: dict[Target, Orders] = {}
+    for leader, group in sharing(system, targets):
+        below = leader.half_turns < 0
+        ends = [(target.value, Fraction(0)) for target in group]
+        steps = plan(system, leader)
+        for target, values in zip(group, follow_to(system, constants, steps, ends, below, bits), strict=True):
+            found[target] = values
+    return tuple(found[target] for target in targets)
 
 
 def follow(
@@ -59,15 +85,28 @@ def follow(
     below
         Whether it runs in the lower half plane, so that negative numbers have the argument -pi.
     """
-    values = constants
+    return follow_to(system, constants, steps, (steps[-1].end,), below, bits)[0]
+
+
+def follow_to(
+    system: CanonicalSystem,
+    constants: Orders,
+    steps: tuple[Step, ...],
+    ends: Sequence[Point],
+    below: bool,
+    bits: int,
+) -> tuple[Orders, ...]:
+    """Carry the solution along a plan into its last disc and on to several points there."""
+    values: tuple[Orders, ...] = (constants,)
     start: Point | None = None
-    for step in steps:
+    for number, step in enumerate(steps, start=1):
         centre = _centre(system, step.disc, bits)
-        end = _place(step.disc, step.end, below, bits)
+        goals = ends if number == len(steps) else (step.end,)
+        places = [_place(step.disc, goal, below, bits) for goal in goals]
         if start is None:
-            values = from_base(centre, values, end, bits)
+            values = from_base_to(centre, constants, places, bits)
         else:
-            values = carried(centre, _place(step.disc, start, below, bits), values, end, bits)
+            values = carried_to(centre, _place(step.disc, start, below, bits), values[0], places, bits)
         start = step.end
     return values
 

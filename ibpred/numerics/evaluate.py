@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 
 from ibpred.balls.accuracy import bits_for, until_accurate
 from ibpred.balls.context import Ball
@@ -10,14 +11,31 @@ from ibpred.balls.decimal import decimal_ball
 from ibpred.errors import BoundaryError
 from ibpred.iterated.constants import Constant
 from ibpred.numerics.canonical import CanonicalSystem
-from ibpred.numerics.continuation import evaluate_canonical
+from ibpred.numerics.continuation import evaluate_many
 from ibpred.numerics.masters import Row, assemble, needed_order
 from ibpred.numerics.path import Target
-from ibpred.numerics.value import Value
+from ibpred.numerics.value import Route, Value
 from ibpred.numerics.vanishing import vanishes
 
 _SPARE_BITS = 64
 _SPARE_DIGITS = 2
+
+
+@dataclass(frozen=True)
+class Place:
+    """A kinematic point with the integrals wanted there.
+
+    Attributes
+    ----------
+    rows
+        The integrals, at the rational value of the ratio.
+    ratio, unit
+        The ratio on its sheet, and y_u.
+    """
+
+    rows: tuple[Row, ...]
+    ratio: Target
+    unit: Target
 
 
 def evaluate_rows(
@@ -31,6 +49,20 @@ def evaluate_rows(
     digits: int,
     max_bits: int,
 ) -> tuple[Value, ...]:
+    """Values of integrals at one point; see `evaluate_places`."""
+    place = Place(tuple(rows), ratio, unit)
+    return evaluate_places(system, constants, start, (place,), order, digits, max_bits)[0]
+
+
+def evaluate_places(
+    system: CanonicalSystem,
+    constants: Sequence[Sequence[Constant]],
+    start: int,
+    places: Sequence[Place],
+    order: int,
+    digits: int,
+    max_bits: int,
+) -> tuple[tuple[Value, ...], ...]:
     """Values of integrals, rigorous given the canonical system and its boundary constants.
 
     Parameters
@@ -39,10 +71,8 @@ def evaluate_rows(
         The canonical system; without letters (one-scale families) the functions are the constants.
     constants, start
         Boundary constants ``constants[k][i]`` at x -> 0+ from ``eps^start`` on.
-    rows
-        The integrals, at the rational value of the ratio.
-    ratio, unit
-        The point: the ratio on its sheet, and y_u.
+    places
+        The points with their integrals.
     order
         Highest power of eps.
     digits
@@ -52,18 +82,18 @@ def evaluate_rows(
 
     Returns
     -------
-    One value a row, in order. A power is left out where its coefficient vanishes exactly.
+    For every place one value a row, in order. A power is left out where its coefficient vanishes exactly.
 
     Raises
     ------
     BoundaryError
         If the constants stop before the power that is needed.
     PointError
-        If the ratio is the zero of a letter.
+        If a ratio is the zero of a letter.
     PrecisionError
         If `max_bits` does not suffice.
     """
-    wanted = needed_order(rows, order)
+    wanted = needed_order([row for place in places for row in place.rows], order)
     needed = start if wanted is None else max(wanted, start)
     if needed >= start + len(constants):
         raise BoundaryError(
@@ -73,29 +103,36 @@ def evaluate_rows(
         )
     used = constants[: needed - start + 1]
 
-    def compute(bits: int) -> list[dict[int, Ball]]:
+    def compute(bits: int) -> list[list[dict[int, Ball]]]:
         at_base = tuple(tuple(c.ball(bits) for c in vector) for vector in used)
-        functions = evaluate_canonical(system, at_base, ratio, bits)
+        functions = evaluate_many(system, at_base, [place.ratio for place in places], bits)
         found = []
-        for row in rows:
-            coefficients = assemble(row, functions, start, unit, order, bits)
-            found.append(_without_zeros(row, coefficients, system, used, start, unit))
+        for place, orders in zip(places, functions, strict=True):
+            of_place = []
+            for row in place.rows:
+                coefficients = assemble(row, orders, start, place.unit, order, bits)
+                of_place.append(_without_zeros(row, coefficients, system, used, start, place.unit))
+            found.append(of_place)
         return found
 
     results = until_accurate(
         compute,
-        lambda found: [ball for coefficients in found for ball in coefficients.values()],
+        lambda found: [ball for place in found for coefficients in place for ball in coefficients.values()],
         digits,
         bits_for(digits) + _SPARE_BITS,
         max_bits,
     )
     return tuple(
-        Value(
-            row.powers,
-            {power: decimal_ball(ball, digits + _SPARE_DIGITS) for power, ball in coefficients.items()},
-            certified=True,
+        tuple(
+            Value(
+                row.powers,
+                {power: decimal_ball(ball, digits + _SPARE_DIGITS) for power, ball in coefficients.items()},
+                certified=True,
+                route=Route.EPSILON_FORM,
+            )
+            for row, coefficients in zip(place.rows, of_place, strict=True)
         )
-        for row, coefficients in zip(rows, results, strict=True)
+        for place, of_place in zip(places, results, strict=True)
     )
 
 

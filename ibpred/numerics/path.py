@@ -109,6 +109,60 @@ def plan(system: CanonicalSystem, target: Target) -> tuple[Step, ...]:
     return tuple(Step(_reflected(step.disc), (step.end[0], -step.end[1])) for step in upper)
 
 
+def sharing(system: CanonicalSystem, targets: Sequence[Target]) -> list[tuple[Target, tuple[Target, ...]]]:
+    """Targets in groups that one plan reaches: (the target to plan for, all that lie in its last disc).
+
+    Raises
+    ------
+    PointError
+        If a target is the zero of a letter.
+    """
+    for target in targets:
+        refuse_singular(system, target.value)
+    letters = _other_letters(system)
+    groups = []
+    for turns in (-1, 0, 1):
+        left = sorted((t for t in set(targets) if t.half_turns == turns), key=lambda t: t.modulus)
+        while left:
+            leader, held = _leader(system, letters, left)
+            groups.append((leader, tuple(held)))
+            left = [target for target in left if target not in held]
+    return groups
+
+
+def _leader(
+    system: CanonicalSystem, letters: NDArray[np.complex128], targets: Sequence[Target]
+) -> tuple[Target, list[Target]]:
+    """The farthest target whose disc holds the first one too, and all that it holds."""
+    first = targets[0]
+    if not len(letters):
+        return first, list(targets)
+    inner = Fraction(float(np.abs(letters).min()))
+    near = [target for target in targets if target.modulus <= Fraction(_LAST_STEP) * inner]
+    if near:
+        return near[-1], near
+    disc, centre, reach = _last_disc(system, letters, first)
+    if not isinstance(disc, Regular):
+        if centre is None:
+            return first, list(targets)
+        return first, [t for t in targets if _within(t, centre, reach) and _same(system, letters, t, disc)]
+    best = (first, [t for t in targets if _within(t, complex(first.value), reach)])
+    for target in best[1]:
+        disc, centre, reach = _last_disc(system, letters, target)
+        if isinstance(disc, Regular) and _within(first, complex(target.value), reach):
+            held = [t for t in targets if _within(t, complex(target.value), reach)]
+            best = (target, held)
+    return best
+
+
+def _within(target: Target, centre: complex, reach: float) -> bool:
+    return abs(target.value - Fraction(centre.real)) <= Fraction(reach)
+
+
+def _same(system: CanonicalSystem, letters: NDArray[np.complex128], target: Target, disc: Disc) -> bool:
+    return _last_disc(system, letters, target)[0] == disc
+
+
 def _reflected(disc: Disc) -> Disc:
     return Regular((disc.point[0], -disc.point[1])) if isinstance(disc, Regular) else disc
 

@@ -63,7 +63,12 @@ def from_base(centre: Centre, constants: Orders, place: Place, bits: int) -> Ord
     PrecisionError
         If the place is not well inside the disc.
     """
-    return _march(centre, lambda order, _: list(constants[order]), len(constants), (place,), bits)[0]
+    return from_base_to(centre, constants, (place,), bits)[0]
+
+
+def from_base_to(centre: Centre, constants: Orders, places: Sequence[Place], bits: int) -> tuple[Orders, ...]:
+    """Values at several places from the constants at the centre; the series are built once."""
+    return _march(centre, lambda order, _: list(constants[order]), len(constants), places, bits)
 
 
 def constants_at(centre: Centre, place: Place, values: Orders, bits: int) -> Orders:
@@ -94,12 +99,19 @@ def carried(centre: Centre, start: Place, values: Orders, end: Place, bits: int)
     bits
         Working precision.
     """
+    return carried_to(centre, start, values, (end,), bits)[0]
+
+
+def carried_to(
+    centre: Centre, start: Place, values: Orders, ends: Sequence[Place], bits: int
+) -> tuple[Orders, ...]:
+    """Values at several places of a disc from values at one; the series are built once."""
 
     def match(order: int, particular: Sequence[Sequence[Ball]]) -> list[Ball]:
         with precision(bits):
             return [a - b for a, b in zip(values[order], particular[0], strict=True)]
 
-    return _march(centre, match, len(values), (start, end), bits)[1]
+    return _march(centre, match, len(values), (start, *ends), bits)[1:]
 
 
 def _march(

@@ -60,7 +60,8 @@ def laurent(values):
     """For each master its Laurent coefficients {power of eps: value} from solved values."""
     values = np.reshape(values, (ORDERS, len(MASTERS)))
     return [
-        {START + k - shift: complex(values[k, row]) for k in range(ORDERS)} for row, shift in enumerate(SHIFTS)
+        {START + k - shift: complex(value) for k, value in enumerate(column)}
+        for column, shift in zip(values.T, SHIFTS)
     ]
 
 
