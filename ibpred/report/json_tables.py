@@ -159,15 +159,21 @@ def values_data(
         "family": family.name,
         "point": {name: str(value) for name, value in point.items()},
         "digits": digits,
-        "integrals": [
-            {
-                "powers": list(value.powers),
-                "epsilon": {
-                    str(order): {"re": ball.re, "im": ball.im, "radius": ball.radius}
-                    for order, ball in sorted(value.epsilon.items())
-                },
-                "certified": value.certified,
-            }
-            for value in values
-        ],
+        "integrals": [value_data(value) for value in values],
     }
+
+
+def value_data(value: Value) -> Data:
+    """One integral's value; the digits reached are those of its least known coefficient."""
+    data: Data = {
+        "powers": list(value.powers),
+        "epsilon": {
+            str(order): {"re": ball.re, "im": ball.im, "radius": ball.radius}
+            for order, ball in sorted(value.epsilon.items())
+        },
+        "certified": value.certified,
+        "digits_reached": value.digits(),
+    }
+    if value.route is not None:
+        data["route"] = value.route.value
+    return data

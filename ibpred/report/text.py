@@ -165,7 +165,15 @@ def values_text(data: Data) -> str:
     point = ", ".join(f"{name} = {value}" for name, value in data["point"].items())
     lines = [f"at {point}" if point else "no invariants"]
     for value in data["integrals"]:
-        kind = "rigorous balls" if value["certified"] else "estimates"
+        kind = "rigorous balls" if value["certified"] else "estimated errors"
+        if value.get("route"):
+            kind += (
+                f", from the {value['route']}"
+                if value["route"] == "epsilon-form"
+                else f", by {value['route']}"
+            )
+        if value.get("digits_reached") is not None:
+            kind += f", {value['digits_reached']} digits"
         lines.append("")
         lines.append(f"{integral_text(data['family'], value['powers'])}   ({kind})")
         rows = [
