@@ -1,33 +1,44 @@
 """Linear conditions on boundary vectors: known functions, forbidden exponents, regular points.
 
-Near a point, ``f = (1 + O(u)) u^(eps A) c`` with c the boundary vector there. The part of row i in the
-generalised eigenspace of eigenvalue lambda is the coefficient of ``u^(lambda eps)`` (with powers of log u),
-at u^0. It comes from the masters in that row of ``f = T^-1 I``, so it is absent unless one of them has
-an exponent n + lambda eps with n plus the valuation of the entry of T^-1 at most zero.
+Near a point of an edge, ``f = (1 + ...) prod_i u_i^(eps A_i) c`` with c the boundary vector there, u_i the
+scales of the edge and the distance to the point. The part of row i in a joint generalised eigenspace
+(lambda_i) is the coefficient of ``prod_i u_i^(lambda_i eps)`` (with powers of log u_i), at u^0. It comes
+from the masters in that row of ``f = T^-1 I``, so it is absent unless one of them has exponents n_i +
+lambda_i eps with n plus the order of the entry of T^-1 at most zero.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import cached_property
 from typing import Any
 
 import flint
 
-from ibpred.boundary.eigen import Eigenspace, eigenspaces
+from ibpred.boundary.edges import Edge
+from ibpred.boundary.eigen import JointSpace, joint_spaces
 from ibpred.boundary.expansion import ClosedForm
-from ibpred.boundary.local import Contribution, class_sum, contribution
-from ibpred.boundary.regions import Behaviour, Exponent, behaviour_of_closed_form, valuation
+from ibpred.boundary.local import Contribution, class_sum, contributions
+from ibpred.boundary.regions import (
+    Behaviour,
+    Exponent,
+    ParametricFamily,
+    behaviour,
+    behaviour_of_closed_form,
+)
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError
+from ibpred.exact.rational import Rational
+from ibpred.family.definition import Powers
 from ibpred.iterated.series import Series
-from ibpred.iterated.transport import Point, point_text
+from ibpred.iterated.transport import Point, residue_at
 
 
 @dataclass(frozen=True)
 class Master:
-    """What is known of one master integral on the Euclidean line of the ratio.
+    """What is known of one master integral in the Euclidean region.
 
     Attributes
     ----------
@@ -35,13 +46,13 @@ class Master:
         Its name, for messages.
     closed
         Its closed form, where there is one.
-    behaviours
-        What it can do at each singular point; a point that is missing is one where nothing is known.
+    powers
+        Its powers, from which its behaviour is read off; None where nothing shall be claimed.
     """
 
     label: str
     closed: ClosedForm | None
-    behaviours: Mapping[Point, Behaviour]
+    powers: Powers | None
 
 
 @dataclass(frozen=True)
@@ -52,8 +63,6 @@ class Condition:
     ----------
     name
         What it says, for evidence and messages.
-    point
-        Where.
     rows
         m x n `flint.fmpq_mat`, free of eps.
     values
@@ -61,24 +70,58 @@ class Condition:
     """
 
     name: str
-    point: Point
     rows: Any
     values: tuple[Series | None, ...]
 
 
-def conditions_at(
-    form: EpsilonForm, masters: Sequence[Master], residue: Any, point: Point, order: int
-) -> tuple[Condition, ...]:
-    """All conditions at one point.
+@dataclass(frozen=True)
+class EdgeView:
+    """The epsilon-form and what is known of its masters, seen from one edge.
+
+    Attributes
+    ----------
+    edge
+        The edge.
+    inverse
+        T^-1 in terms of scales and variable.
+    masters
+        With closed forms in terms of scales and variable.
+    family
+        U and F likewise; None where no behaviour is to be read off.
+    """
+
+    edge: Edge
+    inverse: tuple[tuple[Rational, ...], ...]
+    masters: tuple[Master, ...]
+    family: ParametricFamily | None
+
+    @cached_property
+    def names(self) -> tuple[str, ...]:
+        """Scales and variable."""
+        return (*self.edge.scales, self.edge.variable)
+
+
+def view_from(
+    edge: Edge, form: EpsilonForm, masters: Sequence[Master], family: ParametricFamily | None
+) -> EdgeView:
+    """Restrict a problem to an edge."""
+    moved = {name: v for name, v in edge.values.items() if v != form.ring.variable(name)}
+    if not moved:
+        return EdgeView(edge, form.inverse, tuple(masters), family)
+    inverse = tuple(tuple(entry.substitute(moved) for entry in row) for row in form.inverse)
+    seen = tuple(
+        Master(m.label, None if m.closed is None else m.closed.substituted(moved), m.powers) for m in masters
+    )
+    return EdgeView(edge, inverse, seen, None if family is None else family.substituted(moved))
+
+
+def conditions_at(view: EdgeView, point: Point, order: int) -> tuple[Condition, ...]:
+    """All conditions at one point of an edge.
 
     Parameters
     ----------
-    form
-        The epsilon-form in one ratio.
-    masters
-        One for each row of the masters' vector.
-    residue
-        Residue of the connection there, over eps.
+    view
+        The problem on the edge.
     point
         The point; at 0 closed forms are used with their values, elsewhere with their exponents.
     order
@@ -87,30 +130,50 @@ def conditions_at(
     Raises
     ------
     BoundaryError
-        If a closed form contradicts the differential equation at x = 0.
+        If a closed form contradicts the differential equation at the corner, or the residues do not
+        commute.
     """
-    spaces = eigenspaces(residue)
-    size = len(masters)
+    edge = view.edge
+    spaces = joint_spaces([*edge.scale_residues, residue_at(edge.residues, point)])
+    size = len(view.masters)
+    behaviours = [_behaviour(view, master, point) for master in view.masters]
     gathered: dict[str, list[_Row]] = {}
     for i in range(size):
-        sources = _sources(form, masters, i, point)
+        sources = _sources(view, behaviours, i, point)
         if sources is None:
             continue
         if not sources.unknown:
-            _check_poles(sources.values, order, masters[i].label, i)
-        _check_classes(sources, spaces, order, i)
+            _check_poles(sources.values, order, view, i)
+        _check_classes(sources, spaces, order, view, i)
         for space in spaces:
-            for name, row in _row_conditions(sources, space, i, point, order):
+            for name, row in _row_conditions(sources, space, i, view, point, order):
                 gathered.setdefault(name, []).append(row)
     found = []
     for name, rows in gathered.items():
         matrix = flint.fmpq_mat(len(rows), size, [entry for row, _ in rows for entry in row])
-        found.append(Condition(name, point, matrix, tuple(value for _, value in rows)))
+        found.append(Condition(name, matrix, tuple(value for _, value in rows)))
     # values first: later conditions are then seen to confirm or to contradict them
     return tuple(sorted(found, key=lambda c: (all(v is None for v in c.values), c.name)))
 
 
+def are_regular(conditions: Sequence[Condition], residue: Any) -> bool:
+    """Whether conditions at a point imply that its residue annihilates the boundary vector there."""
+    size = residue.ncols()
+    rows: list[list[Any]] = []
+    for condition in conditions:
+        for r, value in enumerate(condition.values):
+            if value is None:
+                rows.append([condition.rows[r, c] for c in range(size)])
+    wanted = [[residue[r, c] for c in range(size)] for r in range(residue.nrows())]
+    if not rows:
+        return not residue
+    known = flint.fmpq_mat(len(rows), size, [v for row in rows for v in row])
+    both = flint.fmpq_mat(len(rows) + len(wanted), size, [v for row in (*rows, *wanted) for v in row])
+    return int(known.rref()[1]) == int(both.rref()[1])
+
+
 _Row = tuple[Sequence[Any], Series | None]
+_Slopes = tuple[Fraction | None, ...]
 
 
 @dataclass(frozen=True)
@@ -118,91 +181,120 @@ class _Sources:
     """What one canonical function is made of: closed forms expanded, and other masters' behaviours."""
 
     values: tuple[Contribution, ...]
-    unknown: tuple[tuple[Behaviour, int], ...]  # with the valuation of the factor
+    unknown: tuple[tuple[Behaviour, tuple[int, ...]], ...]  # with the orders of the factor
 
-    def allowed(self, slope: Fraction | None) -> tuple[Exponent, ...]:
+    def allowed(self, slopes: _Slopes) -> tuple[Exponent, ...]:
         """Behaviours of the masters without values that can show up at u^0 in one class."""
         return tuple(
             exponent
-            for behaviour, shift in self.unknown
-            for exponent in behaviour
-            if exponent.slope == slope and exponent.power + shift <= 0
+            for behaviour_, shift in self.unknown
+            for exponent in behaviour_
+            if exponent.slope == slopes and _reaches_zero(exponent.power, shift)
         )
 
 
-def _sources(form: EpsilonForm, masters: Sequence[Master], row: int, point: Point) -> _Sources | None:
-    variable = form.variables[0]
+def _reaches_zero(powers: Sequence[Fraction], shift: Sequence[int]) -> bool:
+    """Whether powers in integer steps above ``powers + shift`` (lexicographically) can all be zero."""
+    for power, more in zip(powers, shift, strict=True):
+        if power + more != 0:
+            # below a leading term the next powers are not known: anything may happen there
+            return power + more < 0
+    return True
+
+
+def _behaviour(view: EdgeView, master: Master, point: Point) -> Behaviour | None:
+    approach = view.edge.approach(point)
+    if master.closed is not None:
+        return behaviour_of_closed_form(master.closed, approach)
+    if master.powers is None or view.family is None:
+        return None
+    return behaviour(view.family, master.powers, approach)
+
+
+def _sources(
+    view: EdgeView, behaviours: Sequence[Behaviour | None], row: int, point: Point
+) -> _Sources | None:
     values: list[Contribution] = []
-    unknown: list[tuple[Behaviour, int]] = []
-    for master, entry in zip(masters, form.inverse[row], strict=True):
+    unknown: list[tuple[Behaviour, tuple[int, ...]]] = []
+    for master, known, entry in zip(view.masters, behaviours, view.inverse[row], strict=True):
         if not entry:
             continue
         if master.closed is not None and point == 0:
-            values.append(contribution(entry, master.closed, variable))
+            values += contributions(entry, master.closed, view.names)
             continue
-        behaviour = _behaviour(master, variable, point)
-        if behaviour is None:
+        if known is None:
             return None
-        unknown.append((behaviour, valuation(entry, variable, point)))
+        unknown.append((known, view.edge.approach(point).orders(entry)))
     return _Sources(tuple(values), tuple(unknown))
 
 
 def _row_conditions(
-    sources: _Sources, space: Eigenspace, row: int, point: Point, order: int
+    sources: _Sources, space: JointSpace, row: int, view: EdgeView, point: Point, order: int
 ) -> Iterator[tuple[str, _Row]]:
-    """Conditions on one row in one generalised eigenspace."""
-    allowed = sources.allowed(space.value)
-    if any(exponent.logs for exponent in allowed):
-        return
-    size = space.chain[0].ncols()
+    """Conditions on one row in one joint generalised eigenspace."""
+    allowed = sources.allowed(space.values)
+    logarithmic = {i for exponent in allowed for i, logs in enumerate(exponent.logs) if logs}
+    size = space.projector.ncols()
+    zero = (0,) * len(space.values)
     series = None
-    if not allowed and any(v.slope == space.value and v.lowest <= 0 for v in sources.values):
-        series = class_sum(sources.values, space.value or Fraction(0), 0, order)
-    name = _name(space.value, bool(allowed), series is not None, point)
-    for depth in range(1 if allowed else 0, len(space.chain)):
-        entries = [space.chain[depth][row, k] for k in range(size)]
-        value = series if depth == 0 else None
-        if any(entries) or value is not None:
-            yield name, (entries, value)
+    if not allowed and any(v.slopes == space.values for v in sources.values):
+        series = class_sum(sources.values, _rational(space.values), zero, order)
+        if not any(series.coefficients):
+            series = None
+    name = _name(space.values, bool(allowed), series is not None, view.edge.point_text(point))
+    if not allowed:
+        entries = [space.projector[row, k] for k in range(size)]
+        if any(entries) or series is not None:
+            yield name, (entries, series)
+    for factors, matrix in space.nilpotents:
+        # a product of nilpotent parts multiplies a product of logarithms of the same quantities
+        if factors <= logarithmic:
+            continue
+        entries = [matrix[row, k] for k in range(size)]
+        if any(entries):
+            yield name, (entries, None)
 
 
-def _behaviour(master: Master, variable: str, point: Point) -> Behaviour | None:
-    if master.closed is not None:
-        return behaviour_of_closed_form(master.closed, variable, point)
-    return master.behaviours.get(point)
+def _rational(slopes: _Slopes) -> tuple[Fraction, ...]:
+    return tuple(slope for slope in slopes if slope is not None)
 
 
-def _name(value: Fraction | None, allowed: bool, valued: bool, point: Point) -> str:
-    where = point_text(point)
+def _name(slopes: _Slopes, allowed: bool, valued: bool, where: str) -> str:
     if valued:
         return f"Gamma-function values at {where}"
-    if value is None:
+    if None in slopes:
         return f"no irrational exponent at {where}"
+    shown = str(slopes[0]) if len(slopes) == 1 else f"({', '.join(map(str, slopes))})"
     if allowed:
-        return f"no logarithm with exponent {value}*eps at {where}"
-    if value == 0:
+        return f"no logarithm with exponent {shown}*eps at {where}"
+    if not any(slopes):
         return f"vanishing at {where}"
-    return f"no exponent {value}*eps at {where}"
+    return f"no exponent {shown}*eps at {where}"
 
 
-def _check_classes(sources: _Sources, spaces: Sequence[Eigenspace], order: int, row: int) -> None:
-    """Every class of exponents among the closed forms must be an eigenvalue of the residue."""
-    eigenvalues = {space.value for space in spaces}
-    for slope in {value.slope for value in sources.values} - eigenvalues:
-        if any(class_sum(sources.values, slope, 0, order).coefficients) and not sources.allowed(slope):
+def _check_classes(
+    sources: _Sources, spaces: Sequence[JointSpace], order: int, view: EdgeView, row: int
+) -> None:
+    """Every class of exponents among the closed forms must be a joint eigenvalue of the residues."""
+    eigenvalues = {space.values for space in spaces}
+    for slopes in {value.slopes for value in sources.values} - eigenvalues:
+        zero = (0,) * len(slopes)
+        if any(class_sum(sources.values, slopes, zero, order).coefficients) and not sources.allowed(slopes):
+            factors = "*".join(f"{n}^({s}*eps)" for n, s in zip(view.names, slopes, strict=True) if s)
             raise BoundaryError(
-                f"the closed forms in canonical function {row + 1} behave like x^({slope}*eps) at x = 0, "
-                "which the differential equation forbids: one of the two is wrong"
+                f"the closed forms in canonical function {row + 1} behave like {factors} at "
+                f"{view.edge.point_text(Fraction(0))}, which the differential equation forbids: one of the "
+                "two is wrong"
             )
 
 
-def _check_poles(values: Sequence[Contribution], order: int, label: str, row: int) -> None:
-    """A canonical function known in closed form must not have a power-like pole at x = 0."""
-    lowest = min((value.lowest for value in values), default=0)
-    for slope in {value.slope for value in values}:
-        for power in range(lowest, 0):
-            if any(class_sum(values, slope, power, order).coefficients):
-                raise BoundaryError(
-                    f"the closed forms in canonical function {row + 1} ({label}) have a pole x^{power} "
-                    "at x = 0, which the epsilon-form forbids: one of the two is wrong"
-                )
+def _check_poles(values: Sequence[Contribution], order: int, view: EdgeView, row: int) -> None:
+    """A canonical function known in closed form must not have a power-like pole at the corner."""
+    for slopes, powers in {(value.slopes, value.powers) for value in values}:
+        if any(powers) and any(class_sum(values, slopes, powers, order).coefficients):
+            pole = "*".join(f"{n}^{p}" for n, p in zip(view.names, powers, strict=True) if p)
+            raise BoundaryError(
+                f"the closed forms in canonical function {row + 1} ({view.masters[row].label}) have a pole "
+                f"{pole} at {view.edge.point_text(Fraction(0))}, which the epsilon-form forbids: one of the "
+                "two is wrong"
+            )

@@ -1,13 +1,15 @@
-"""Generalised eigenspaces of a residue matrix over Q."""
+"""Generalised eigenspaces of residue matrices over Q, of one or of several that commute."""
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
 
 import flint
 
+from ibpred.errors import BoundaryError
 from ibpred.iterated.matrices import identity
 
 
@@ -67,6 +69,77 @@ def eigenspaces(matrix: Any) -> tuple[Eigenspace, ...]:
             while nilpotent * chain[-1]:
                 chain.append(nilpotent * chain[-1])
         found.append(Eigenspace(value, tuple(chain)))
+    return tuple(found)
+
+
+@dataclass(frozen=True)
+class JointSpace:
+    """The common generalised eigenspace of several commuting matrices.
+
+    Attributes
+    ----------
+    values
+        The eigenvalue of each; None stands for all irrational ones together.
+    projector
+        P, along the other spaces.
+    nilpotents
+        All nonzero products of the matrices ``N = A - value`` (of those with a rational value), times P:
+        which matrices take part, and the product.
+    """
+
+    values: tuple[Fraction | None, ...]
+    projector: Any
+    nilpotents: tuple[tuple[frozenset[int], Any], ...]
+
+
+def joint_spaces(matrices: Sequence[Any]) -> tuple[JointSpace, ...]:
+    """Common generalised eigenspaces; their projectors sum to one.
+
+    Raises
+    ------
+    BoundaryError
+        If the matrices do not commute, as residues at crossing singular loci do.
+    """
+    for i, left in enumerate(matrices):
+        for right in matrices[:i]:
+            if left * right != right * left:
+                raise BoundaryError(
+                    "residues at crossing singular loci do not commute: the differential equation is not "
+                    "integrable"
+                )
+    size = matrices[0].nrows()
+    found: list[tuple[tuple[Fraction | None, ...], Any]] = [((), identity(size))]
+    for matrix in matrices:
+        spaces = eigenspaces(matrix)
+        found = [
+            ((*values, space.value), common)
+            for values, projector in found
+            for space in spaces
+            if (common := space.chain[0] * projector)
+        ]
+    return tuple(JointSpace(v, p, _products(matrices, v, p)) for v, p in found)
+
+
+def _products(
+    matrices: Sequence[Any], values: Sequence[Fraction | None], projector: Any
+) -> tuple[tuple[frozenset[int], Any], ...]:
+    """Nonzero products of nilpotent parts on one joint space, each once for each set of factors."""
+    size = projector.nrows()
+    layer: list[tuple[frozenset[int], Any]] = [(frozenset(), projector)]
+    found: list[tuple[frozenset[int], Any]] = []
+    while layer:
+        grown = []
+        for index, (matrix, value) in enumerate(zip(matrices, values, strict=True)):
+            if value is None:
+                continue
+            nilpotent = matrix - flint.fmpq(value.numerator, value.denominator) * identity(size)
+            for factors, vector in layer:
+                image = nilpotent * vector
+                item = (factors | {index}, image)
+                if image and item not in found:
+                    found.append(item)
+                    grown.append(item)
+        layer = grown
     return tuple(found)
 
 

@@ -7,7 +7,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 
 from ibpred.boundary.gamma import EpsLinear, GammaForm
@@ -41,6 +41,11 @@ class ClosedForm:
     loops: int
     near_one: Mapping[Fraction, int]
     near_half: Mapping[Fraction, int]
+
+    def substituted(self, values: Mapping[str, Rational]) -> ClosedForm:
+        """The ratios replaced by other positive functions."""
+        letters = tuple((letter.substitute(values), q) for letter, q in self.letters)
+        return replace(self, rational=self.rational.substitute(values), letters=letters)
 
     def transcendental(self, length: int) -> Series:
         """Everything but `rational` and `letters`, through ``eps^(length - 1)``.
@@ -89,7 +94,7 @@ class ClosedForm:
 
 
 def on_line(form: GammaForm, values: Mapping[str, Rational], field: Ring) -> ClosedForm:
-    """Put the kinematics on a line of one ratio (or to numbers, where there is no ratio).
+    """Express the kinematics by the ratios (or numbers, where there is no ratio).
 
     Parameters
     ----------
@@ -97,9 +102,10 @@ def on_line(form: GammaForm, values: Mapping[str, Rational], field: Ring) -> Clo
         The closed form.
     values
         Each invariant as an element of `field`: the unit as +1 or -1, the others as their Euclidean
-        sign times the ratio, so that every scale of the form is positive for small positive ratio.
+        sign times a ratio, or a function of the ratios, so that every scale of the form is positive for
+        positive ratios (in one ratio: for small ones).
     field
-        Q(eps, ratio) or Q(eps).
+        Q(eps, ratios).
 
     Raises
     ------
@@ -163,7 +169,18 @@ def expand(closed: ClosedForm, order: int) -> Series:
 
 
 def _positive_near_zero(letter: Rational) -> bool:
-    """Sign of a polynomial in one variable at small positive argument: that of its lowest term."""
+    """Sign of a polynomial at small positive arguments: that of all terms, or of the lowest in one ratio.
+
+    Raises
+    ------
+    BoundaryError
+        If terms in several ratios have different signs.
+    """
+    signs = {c > 0 for c in letter.numerator.coeffs()}
+    if len(signs) == 1:
+        return bool(signs.pop())
+    if len(letter.variables()) > 1:
+        raise BoundaryError(f"the sign of the scale {letter} is not the same everywhere for positive ratios")
     terms = {sum(int(e) for e in exponents): c for exponents, c in letter.numerator.to_dict().items()}
     return bool(terms[min(terms)] > 0)
 

@@ -1,8 +1,8 @@
 """Boundary constants from all conditions at once: one linear system over Q, solved exactly.
 
-The vector at x = 0 is ``c = sum_k eps^k c^(k)``, each c^(k) an unknown rational combination of monomials in
-the real constants of weight at most k (counted from the row's first order). Conditions at other points
-are transported to x = 0 and compared monomial by monomial, real and imaginary parts apart. Conditions that
+The vector at a corner is ``c = sum_k eps^k c^(k)``, each c^(k) an unknown rational combination of monomials
+in the real constants of weight at most k (counted from the row's first order). Conditions at other points are
+transported to the corner and compared monomial by monomial, real and imaginary parts apart. Conditions that
 follow from the others are kept as evidence: they could have failed.
 """
 
@@ -10,43 +10,14 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from fractions import Fraction
-from typing import Any
 
-from ibpred.boundary.conditions import Master, conditions_at
-from ibpred.boundary.linear import Transported, Undetermined, solve_all, transported
-from ibpred.epsform.form import EpsilonForm
+from ibpred.boundary.explore import BoundaryProblem, Gathered, explore
+from ibpred.boundary.linear import Determined, Undetermined, solve_all
 from ibpred.errors import BoundaryError, InputError
-from ibpred.iterated.constants import NAMES, Constant
-from ibpred.iterated.matrices import MatrixSeries, identity, rational_matrix
+from ibpred.iterated.constants import Constant
 from ibpred.iterated.series import eps_valuation
-from ibpred.iterated.solution import letter_roots
-from ibpred.iterated.transport import INFINITY, Point, Residues, connection, residue_at
-from ibpred.iterated.zeta import LONGEST_ALTERNATING, LONGEST_PLAIN
 
 _MOST_EXTRA_ORDERS = 3
-
-
-@dataclass(frozen=True)
-class BoundaryProblem:
-    """What the boundary constants are computed from.
-
-    Attributes
-    ----------
-    form
-        An epsilon-form in one ratio that is positive in the Euclidean region.
-    masters
-        What is known of each master, in the order of the form.
-    loops
-        L: an integral that is not known in closed form has poles of order at most 2 L in eps.
-    weight
-        Constants are wanted through ``eps^weight`` of the canonical functions.
-    """
-
-    form: EpsilonForm
-    masters: tuple[Master, ...]
-    loops: int
-    weight: int
 
 
 @dataclass(frozen=True)
@@ -73,7 +44,7 @@ class Evidence:
 
 @dataclass(frozen=True)
 class Boundary:
-    """Boundary constants at x -> 0+ with tangent vector 1: ``f ~ x^(eps A_0) c(eps)``.
+    """Boundary constants at a corner ``x1 << x2 << ... -> 0+``: ``f ~ prod_i x_i^(eps A_i) c(eps)``.
 
     Attributes
     ----------
@@ -85,12 +56,15 @@ class Boundary:
         The conditions used, in the order of use.
     unused
         Points whose conditions could not be used, with the reason.
+    corner
+        The ratios, the smallest first; empty for a family without a ratio.
     """
 
     start: int
     constants: tuple[tuple[Constant, ...], ...]
     evidence: tuple[Evidence, ...]
     unused: tuple[str, ...]
+    corner: tuple[str, ...] = ()
 
 
 def fix_constants(problem: BoundaryProblem) -> Boundary:
@@ -104,14 +78,18 @@ def fix_constants(problem: BoundaryProblem) -> Boundary:
     Raises
     ------
     InputError
-        If the form has several ratios or square roots, or the number of masters does not fit.
+        If the form has square roots or no ratio, or the number of masters or the corner does not fit.
     BoundaryError
         If constants stay undetermined (names rows and orders), or conditions contradict each other
         (names the first that does).
     """
     form = problem.form
-    if len(form.variables) != 1 or any(form.tags):
-        raise InputError("boundary constants are determined here for one ratio and no square roots")
+    if not form.variables or any(form.tags):
+        raise InputError("boundary constants are determined here for ratios without square roots")
+    if sorted(problem.corner) != sorted(form.variables):
+        raise InputError(
+            f"the corner {' << '.join(problem.corner)} does not name the ratios {', '.join(form.variables)}"
+        )
     if len(problem.masters) != len(form.inverse):
         raise InputError(f"{len(problem.masters)} masters are given for {len(form.inverse)} functions")
     starts = _starts(problem)
@@ -120,16 +98,15 @@ def fix_constants(problem: BoundaryProblem) -> Boundary:
     extra = 0
     while True:
         # conditions at one order often fix constants of the order before only
-        system, unused = _gather(problem, weight + extra, weight + extra - first)
-        outcome = solve_all(system, starts, weight, weight + extra)
-        if not isinstance(outcome, Undetermined):
+        outcome, gathered = _solve(problem, starts, weight, weight + extra)
+        if isinstance(outcome, Determined):
             break
         extra += 1
         if extra > _MOST_EXTRA_ORDERS:
-            raise BoundaryError(_complaint(problem, outcome, unused))
+            raise BoundaryError(_complaint(problem, outcome, gathered.unused))
     evidence = tuple(
         Evidence(item.condition.name, total, new, total - new)
-        for item, (total, new) in zip(system, outcome.counts, strict=True)
+        for item, (total, new) in zip(gathered.conditions, outcome.counts, strict=True)
     )
     vectors = [
         tuple(outcome.constant(order, row) for row in range(len(starts)))
@@ -138,7 +115,7 @@ def fix_constants(problem: BoundaryProblem) -> Boundary:
     while len(vectors) > 1 and not any(vectors[0]):
         del vectors[0]
         first += 1
-    return Boundary(first, tuple(vectors), evidence, unused)
+    return Boundary(first, tuple(vectors), evidence, gathered.unused, problem.corner)
 
 
 def _starts(problem: BoundaryProblem) -> tuple[int, ...]:
@@ -152,53 +129,17 @@ def _starts(problem: BoundaryProblem) -> tuple[int, ...]:
     )
 
 
-def _gather(
-    problem: BoundaryProblem, last: int, order: int
-) -> tuple[tuple[Transported, ...], tuple[str, ...]]:
-    """All usable conditions, brought to x = 0, and the reasons why others are not usable."""
-    form = problem.form
-    residues: dict[Fraction, Any] = {}
-    for root, matrix in zip(letter_roots(form.letters, form.variables[0]), form.matrices, strict=True):
-        if root is not None:
-            residues[root] = rational_matrix(matrix)
-    if not residues:
-        raise InputError("the epsilon-form has no letter that is linear in the ratio")
-    points: list[Point] = [Fraction(0)]
-    unused: list[str] = []
-    if len(residues) == len(form.letters):
-        points += [*sorted((a for a in residues if a), key=lambda a: (abs(a), a)), INFINITY]
-    else:
-        unused.append("points other than x = 0: letters that are not linear in the ratio lie in between")
-    found: list[Transported] = []
-    for point in points:
-        conditions = conditions_at(form, problem.masters, residue_at(residues, point), point, last)
-        if not conditions:
-            continue
-        if point == 0:
-            found += [transported(c, _no_transport(len(form.inverse), order)) for c in conditions]
-            continue
-        try:
-            transport = _connection(residues, point, order)
-        except BoundaryError as error:
-            unused.append(str(error))
-            continue
-        found += [transported(condition, transport) for condition in conditions]
-    return tuple(found), tuple(unused)
-
-
-def _no_transport(size: int, order: int) -> MatrixSeries:
-    return MatrixSeries(({(0,) * len(NAMES): identity(size)}, *({} for _ in range(order))))
-
-
-def _connection(residues: Residues, point: Point, order: int) -> MatrixSeries:
-    """The transport as far as its constants are known; high orders only sharpen the conditions."""
-    if order > LONGEST_ALTERNATING:
-        try:
-            return connection(residues, point, min(order, LONGEST_PLAIN))
-        except BoundaryError:
-            # alternating sums are known to a lower weight; anything else fails again below
-            return connection(residues, point, LONGEST_ALTERNATING)
-    return connection(residues, point, order)
+def _solve(
+    problem: BoundaryProblem, starts: Sequence[int], weight: int, last: int
+) -> tuple[Determined | Undetermined, Gathered]:
+    """Visit corners until the constants are determined or no corner is left."""
+    outcome: Determined | Undetermined = Undetermined(())
+    gathered = Gathered((), ())
+    for gathered in explore(problem, last, last - min(starts)):
+        outcome = solve_all(gathered.conditions, starts, weight, last)
+        if isinstance(outcome, Determined):
+            break
+    return outcome, gathered
 
 
 def _complaint(problem: BoundaryProblem, outcome: Undetermined, unused: Sequence[str]) -> str:

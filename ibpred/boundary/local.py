@@ -1,4 +1,4 @@
-"""Local expansion at x = 0 of canonical functions that are combinations of closed forms."""
+"""Leading behaviour of canonical functions that are combinations of closed forms, at a corner."""
 
 from __future__ import annotations
 
@@ -6,100 +6,120 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 
+from ibpred.boundary.approach import valuation
 from ibpred.boundary.expansion import ClosedForm
-from ibpred.boundary.regions import valuation
+from ibpred.errors import BoundaryError
 from ibpred.exact.rational import Rational
 from ibpred.iterated.series import Series, eps_valuation, laurent
 
 
 @dataclass(frozen=True)
 class Contribution:
-    """``x^(slope eps) sum_n coefficients[n] x^(lowest + n) * transcendental`` of one closed form.
+    """``prod_i x_i^(powers[i] + slopes[i] eps) * coefficient * transcendental`` of one closed form.
 
     Attributes
     ----------
-    slope
+    powers
+        One for each small quantity, none of them positive.
+    slopes
         The class of the exponent.
-    lowest
-        Power of x of the first coefficient; the last one belongs to x^0.
-    coefficients
-        In Q(eps, x), free of x.
+    coefficient
+        In Q(eps).
     form
-        What multiplies them: constant letters absorbed as numbers.
+        What multiplies it: its letters absorbed as numbers.
     """
 
-    slope: Fraction
-    lowest: int
-    coefficients: tuple[Rational, ...]
+    powers: tuple[int, ...]
+    slopes: tuple[Fraction, ...]
+    coefficient: Rational
     form: ClosedForm
 
 
-def contribution(factor: Rational, closed: ClosedForm, variable: str) -> Contribution:
-    """Expand ``factor * closed`` at x = 0 through x^0.
+_Letters = tuple[tuple[Rational, Fraction], ...]
+
+
+def contributions(factor: Rational, closed: ClosedForm, names: Sequence[str]) -> tuple[Contribution, ...]:
+    """Expand ``factor * closed`` in small quantities, one after the other, each through its zeroth power.
 
     Parameters
     ----------
     factor
-        A nonzero entry of the inverse transformation, in Q(eps, x).
+        A nonzero entry of the inverse transformation.
     closed
         The closed form of a master, over the same field.
-    variable
-        The ratio.
+    names
+        The small quantities, the fastest first; there are no others.
+
+    Raises
+    ------
+    BoundaryError
+        If a letter of the closed form tends to a negative number.
     """
-    field = factor.ring
-    product = factor * closed.rational
-    lowest = valuation(product, variable, Fraction(0))
+    found = []
+    for powers, slopes, coefficient, letters in _expanded(factor * closed.rational, closed.letters, names):
+        numbers = dict(closed.numbers)
+        for letter, q in letters:
+            value = letter.to_fraction()
+            if value <= 0:
+                raise BoundaryError(f"a closed form has the factor ({value})^({q}*eps), which is not real")
+            if value != 1:
+                numbers[value] = numbers.get(value, Fraction(0)) + q
+        form = replace(closed, numbers=tuple(sorted((c, q) for c, q in numbers.items() if q)))
+        found.append(Contribution(powers, slopes, coefficient, form))
+    return tuple(found)
+
+
+def _expanded(
+    product: Rational, letters: _Letters, names: Sequence[str]
+) -> list[tuple[tuple[int, ...], tuple[Fraction, ...], Rational, _Letters]]:
+    if not names:
+        return [((), (), product, letters)]
+    name, field = names[0], product.ring
+    lowest = valuation(product, name, Fraction(0))
     slope = Fraction(0)
-    numbers = list(closed.numbers)
-    logarithmic = field.zero  # d log of the letters that do not vanish at x = 0
-    for letter, q in closed.letters:
-        at_zero = letter.substitute({variable: 0})
-        if not at_zero:
-            slope += q * valuation(letter, variable, Fraction(0))
-            letter = letter / field.variable(variable) ** valuation(letter, variable, Fraction(0))
-            at_zero = letter.substitute({variable: 0})
-        constant = at_zero.to_fraction()
-        if constant != 1:
-            numbers.append((constant, q))
-        logarithmic = logarithmic + letter.derivative(variable) / letter * field.variable("eps") * q
+    logarithmic = field.zero  # d log of the letters that do not vanish
+    stripped = []
+    for letter, q in letters:
+        order = valuation(letter, name, Fraction(0))
+        slope += q * order
+        letter = letter / field.variable(name) ** order
+        logarithmic = logarithmic + letter.derivative(name) / letter * field.variable("eps") * q
+        stripped.append((letter.substitute({name: 0}), q))
     length = max(0, 1 - lowest)
-    smooth = _taylor(product / field.variable(variable) ** lowest, variable, length)
-    kernel = _taylor(logarithmic, variable, length)
+    smooth = _taylor(product / field.variable(name) ** lowest, name, length)
+    kernel = _taylor(logarithmic, name, length)
     power: list[Rational] = [field.one]
     for n in range(1, length):
         # h' = h (log h)'
         terms = (kernel[k] * power[n - 1 - k] for k in range(n))
         power.append(sum(terms, field.zero) / n)
-    coefficients = tuple(
-        sum((smooth[k] * power[n - k] for k in range(n + 1)), field.zero) for n in range(length)
-    )
-    merged: dict[Fraction, Fraction] = {}
-    for number, q in numbers:
-        merged[number] = merged.get(number, Fraction(0)) + q
-    form = replace(closed, numbers=tuple(sorted((c, q) for c, q in merged.items() if q)))
-    return Contribution(slope, lowest, coefficients, form)
+    found = []
+    for n in range(length):
+        coefficient = sum((smooth[k] * power[n - k] for k in range(n + 1)), field.zero)
+        if coefficient:
+            for powers, slopes, last, rest in _expanded(coefficient, tuple(stripped), names[1:]):
+                found.append(((lowest + n, *powers), (slope, *slopes), last, rest))
+    return found
 
 
-def class_sum(contributions: Sequence[Contribution], slope: Fraction, power: int, order: int) -> Series:
-    """Coefficient of ``x^(power + slope eps)``, power <= 0, as a series in eps through ``eps^order``."""
+def class_sum(
+    found: Sequence[Contribution], slopes: Sequence[Fraction], powers: Sequence[int], order: int
+) -> Series:
+    """Coefficient of one class at given powers, as a series in eps through ``eps^order``."""
     total: Series | None = None
-    for item in contributions:
-        place = power - item.lowest
-        if item.slope != slope or not 0 <= place < len(item.coefficients):
+    for item in found:
+        if item.slopes != tuple(slopes) or item.powers != tuple(powers):
             continue
-        coefficient = item.coefficients[place]
-        if not coefficient:
-            continue
-        start = eps_valuation(coefficient)
+        start = eps_valuation(item.coefficient)
         if start > order:
             continue
-        term = laurent(coefficient, order) * item.form.transcendental(order - start + 1)
+        term = laurent(item.coefficient, order) * item.form.transcendental(order - start + 1)
         total = term if total is None else total + term
     return Series(order + 1, ()) if total is None else total
 
 
 def _taylor(value: Rational, variable: str, length: int) -> list[Rational]:
-    """Taylor coefficients at x = 0 of a function regular there."""
+    """Taylor coefficients at zero of a function regular there."""
     found: list[Rational] = []
     for _ in range(length):
         first = value.substitute({variable: 0})

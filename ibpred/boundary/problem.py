@@ -3,26 +3,23 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from fractions import Fraction
 
 from ibpred.boundary.conditions import Master
 from ibpred.boundary.expansion import ClosedForm, expand, on_line
-from ibpred.boundary.fix import BoundaryProblem
+from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.gamma import gamma_form
-from ibpred.boundary.regions import Behaviour, behaviour, parametric_family
+from ibpred.boundary.regions import parametric_family
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import Rational, Ring, ring
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.iterated.series import Series
-from ibpred.iterated.solution import letter_roots
-from ibpred.iterated.transport import INFINITY, Point
 
 
-def line_values(
-    family: FamilyDefinition, signs: Mapping[str, int], field: Ring, variable: str | None
+def region_values(
+    family: FamilyDefinition, signs: Mapping[str, int], field: Ring, ratios: Sequence[str]
 ) -> dict[str, Rational]:
-    """The invariants on the Euclidean line: the unit its sign, the other one its sign times the ratio.
+    """The invariants in the region where all ratios are positive: each its sign times its ratio.
 
     Parameters
     ----------
@@ -31,32 +28,28 @@ def line_values(
     signs
         +1 or -1 for each invariant, as in the Euclidean region.
     field
-        Q(eps, ratio), or Q(eps) where there is no ratio.
-    variable
-        Name of the ratio; None for a family with no other invariant than the unit.
+        Q(eps, ratios).
+    ratios
+        Names of the ratios, one for each invariant but the unit, in order.
 
     Raises
     ------
     InputError
-        If the family has more invariants.
+        If their number does not fit.
     """
-    values: dict[str, Rational] = {}
-    for invariant in family.invariants:
-        if invariant.name == family.unit:
-            values[invariant.name] = field.constant(signs[invariant.name])
-        elif variable is not None and len(family.invariants) <= 2:
-            values[invariant.name] = field.variable(variable) * signs[invariant.name]
-        else:
-            raise InputError(
-                f"{family.name} has several ratios; boundary constants are determined here for at most one"
-            )
+    others = [invariant.name for invariant in family.invariants if invariant.name != family.unit]
+    if len(others) != len(ratios):
+        raise InputError(f"{family.name} has {len(others)} ratios, not {len(ratios)}")
+    values = {name: field.variable(r) * signs[name] for name, r in zip(others, ratios, strict=True)}
+    if family.unit is not None:
+        values[family.unit] = field.constant(signs[family.unit])
     return values
 
 
 def closed_form_on_line(
     family: FamilyDefinition, powers: Powers, values: Mapping[str, Rational], field: Ring
 ) -> ClosedForm | None:
-    """The closed form of an integral on a line of kinematics, where there is one."""
+    """The closed form of an integral in terms of the ratios, where there is one."""
     form = gamma_form(family, powers)
     return None if form is None else on_line(form, values, field)
 
@@ -86,7 +79,7 @@ def one_scale_values(
         exactly.
     """
     field = ring(("eps",))
-    values = line_values(family, signs, field, None)
+    values = region_values(family, signs, field, ())
     found = []
     for powers in masters:
         closed = closed_form_on_line(family, powers, values, field)
@@ -111,7 +104,7 @@ def boundary_problem(
     signs: Mapping[str, int],
     weight: int,
 ) -> BoundaryProblem:
-    """Collect what is known of the masters of a family with one ratio.
+    """Collect what is known of the masters of a family whose form is in its own ratios.
 
     Parameters
     ----------
@@ -129,24 +122,38 @@ def boundary_problem(
     Raises
     ------
     InputError
-        If there is not exactly one ratio.
+        If the number of ratios does not fit.
     """
-    if len(form.variables) != 1:
-        raise InputError(f"{family.name}: boundary constants are determined here for one ratio")
-    variable = form.variables[0]
-    values = line_values(family, signs, form.ring, variable)
-    parametric = parametric_family(family, values, variable)
-    roots = letter_roots(form.letters, variable)
-    points: set[Point] = {Fraction(0), INFINITY, *(root for root in roots if root is not None)}
+    values = region_values(family, signs, form.ring, form.variables)
+    return problem_in_variables(family, masters, form, values, weight)
+
+
+def problem_in_variables(
+    family: FamilyDefinition,
+    masters: Sequence[Powers],
+    form: EpsilonForm,
+    values: Mapping[str, Rational],
+    weight: int,
+) -> BoundaryProblem:
+    """As `boundary_problem`, for a form in other variables than the ratios.
+
+    Parameters
+    ----------
+    family, masters, form, weight
+        As there.
+    values
+        The invariants in terms of the form's variables, over its field, the unit +1 or -1. The Euclidean
+        region must touch the corner where all variables are small and positive.
+    """
     known = []
     for powers in masters:
-        label = master_label(family, powers)
         closed = closed_form_on_line(family, powers, values, form.ring)
-        behaviours: dict[Point, Behaviour] = {}
-        if closed is None:
-            for point in points:
-                found = behaviour(parametric, powers, point)
-                if found is not None:
-                    behaviours[point] = found
-        known.append(Master(label, closed, behaviours))
-    return BoundaryProblem(form, tuple(known), len(family.loops), weight)
+        known.append(Master(master_label(family, powers), closed, powers))
+    return BoundaryProblem(
+        form,
+        tuple(known),
+        parametric_family(family, values),
+        tuple(reversed(form.variables)),
+        len(family.loops),
+        weight,
+    )

@@ -1,9 +1,11 @@
-"""How an integral may behave at a singular point, read off its parametric representation.
+"""How an integral may behave at the border of the Euclidean region, read off its parametric representation.
 
-``I ~ int prod_i dx_i x_i^(a_i - 1) (U + F)^(-d/2)`` (Lee, Pomeransky, arXiv:1308.6676). At the border of
-the Euclidean region, where all coefficients are positive, the expansion by regions (Beneke, Smirnov,
-hep-ph/9711391) is geometric: each lower facet of the Newton polytope of U + F with the ratio's power as an
-extra direction is a region (Pak, Smirnov, arXiv:1011.4863; Jantzen, Smirnov, Smirnov, arXiv:1206.0546).
+``I ~ int prod_i dx_i x_i^(a_i - 1) (U + F)^(-d/2)`` (Lee, Pomeransky, arXiv:1308.6676). Where all
+coefficients are positive, the expansion by regions (Beneke, Smirnov, hep-ph/9711391) is geometric: each
+lower facet of the Newton polytope of U + F with the power of the small quantity as an extra direction is a
+region (Pak, Smirnov, arXiv:1011.4863; Jantzen, Smirnov, Smirnov, arXiv:1206.0546). The leading term of a
+region is an integral of the same kind over the terms on its facet, so limits one after the other are
+regions of regions.
 """
 
 from __future__ import annotations
@@ -13,6 +15,7 @@ from dataclasses import dataclass, replace
 from fractions import Fraction
 from itertools import product
 
+from ibpred.boundary.approach import Approach, is_positive_before, leading, valuation
 from ibpred.boundary.expansion import ClosedForm
 from ibpred.boundary.polytope import LowerFacet, lower_facets, separating_functional
 from ibpred.exact.rational import Rational
@@ -21,92 +24,90 @@ from ibpred.family.polynomials import symanzik
 from ibpred.iterated.transport import Infinity, Point
 
 Coefficients = Mapping[tuple[int, ...], Rational]
-"""Parameter monomial -> coefficient, a function of the ratio."""
+"""Parameter monomial -> coefficient, a function of the ratios."""
 
 
 @dataclass(frozen=True, order=True)
 class Exponent:
-    """A possible behaviour ``u^(power + slope eps) * (power series in u)`` at u -> 0+.
+    """A possible behaviour: for each small quantity u a factor ``u^(power + slope eps) (power series in u)``.
 
     Attributes
     ----------
     power
-        Leading power at eps = 0; higher ones follow in integer steps.
+        Leading power at eps = 0 in each scale, then in the variable; higher ones follow in integer steps.
     slope
-        Coefficient of eps.
+        Coefficient of eps, likewise.
     logs
-        Whether logarithms of u may multiply it at generic eps.
+        For each small quantity whether its logarithms may multiply this at generic eps.
     """
 
-    power: Fraction
-    slope: Fraction
-    logs: bool
+    power: tuple[Fraction, ...]
+    slope: tuple[Fraction, ...]
+    logs: tuple[bool, ...]
 
 
 Behaviour = tuple[Exponent, ...]
 """All behaviours that an integral can have at a point."""
 
-ANALYTIC: Behaviour = (Exponent(Fraction(0), Fraction(0), False),)
-
 
 @dataclass(frozen=True)
 class ParametricFamily:
-    """U and F on a line of kinematics, with parameters for all lines (numerators included).
+    """U and F on a curve of kinematics, with parameters for all lines (numerators included).
 
     Attributes
     ----------
-    variable
-        Name of the ratio, positive in the Euclidean region.
     dimension
         d0.
     first, second
         U and F.
     """
 
-    variable: str
     dimension: int
     first: Coefficients
     second: Coefficients
 
+    def substituted(self, values: Mapping[str, Rational]) -> ParametricFamily:
+        """U and F on another curve: the ratios replaced."""
+        first = {e: c.substitute(values) for e, c in self.first.items()}
+        return ParametricFamily(
+            self.dimension, first, {e: c.substitute(values) for e, c in self.second.items()}
+        )
 
-def parametric_family(
-    family: FamilyDefinition, values: Mapping[str, Rational], variable: str
-) -> ParametricFamily:
-    """U and F of a family on a line of kinematics.
+
+def parametric_family(family: FamilyDefinition, values: Mapping[str, Rational]) -> ParametricFamily:
+    """U and F of a family in its ratios.
 
     Parameters
     ----------
     family
         The family.
     values
-        Each invariant as an element of one field that holds the ratio: the unit +1 or -1, the others
-        their Euclidean sign times the ratio.
-    variable
-        Name of the ratio.
+        Each invariant as an element of one field that holds the ratios: the unit +1 or -1, the others a
+        function of the ratios.
     """
     # numerators take part as lines whose powers tend to negative integers
     everything = replace(family, lines=tuple(replace(line, numerator=False) for line in family.lines))
     first, second = symanzik(everything)
     return ParametricFamily(
-        variable,
         family.dimension,
         {e: c.substitute(values) for e, c in first.terms.items()},
         {e: v for e, c in second.terms.items() if (v := c.substitute(values))},
     )
 
 
-def behaviour(family: ParametricFamily, powers: Sequence[int], point: Point) -> Behaviour | None:
-    """What an integral can do at a point of the ratio, on the sheet of the Euclidean region.
+def behaviour(family: ParametricFamily, powers: Sequence[int], approach: Approach) -> Behaviour | None:
+    """What an integral can do at a point, on the sheet of the Euclidean region.
 
     Parameters
     ----------
     family
-        U and F on the line.
+        U and F in terms of the scales and the variable of the approach.
     powers
         One power for each line; negative ones are numerators.
-    point
-        0 or infinity (approached from positive ratio), or any other rational number (negative ones
-        approached from the positive axis through the upper or lower half plane).
+    approach
+        The way there. Positive points and infinity are approached along the positive axis, on which all
+        coefficients must be positive; negative ones from the positive axis through the upper or lower half
+        plane.
 
     Returns
     -------
@@ -114,38 +115,116 @@ def behaviour(family: ParametricFamily, powers: Sequence[int], point: Point) -> 
         None where nothing is claimed.
     """
     sector = tuple(i for i, power in enumerate(powers) if power > 0)
-    if isinstance(point, Infinity) or point == 0:
-        return _regions(family, powers, sector, point)
-    own = _restricted(family.second, sector)
-    if point > 0:
-        return ANALYTIC if _all_positive({**_restricted(family.first, sector), **own}, point) else None
-    return ANALYTIC if _separated(own, family.variable, point) else None
+    numerators = {i: -power for i, power in enumerate(powers) if power < 0}
+    first, second = _restricted(family.first, sector), _restricted(family.second, sector)
+    terms = [_Term(e, c, False) for e, c in first.items()] + [_Term(e, c, True) for e, c in second.items()]
+    point = approach.point
+    end: Point = Fraction(0) if not isinstance(point, Infinity) and point < 0 else point
+    for term in terms:
+        _, last = leading(term.coefficient, approach.scales)
+        if not is_positive_before(last, approach.variable, end):
+            return None
+    start = _Expansion(
+        tuple(Fraction(powers[i]) for i in sector),
+        Fraction(family.dimension, 2),
+        tuple(terms),
+        _derivatives(family, sector, numerators),
+        tuple(numerators.values()),
+    )
+    return _nested(start, approach, approach.scales)
 
 
-def behaviour_of_closed_form(form: ClosedForm, variable: str, point: Point) -> Behaviour:
+@dataclass(frozen=True)
+class _Term:
+    """One term of U + F: exponents over the sector, coefficient, whether it belongs to F."""
+
+    exponents: tuple[int, ...]
+    coefficient: Rational
+    massive: bool
+
+
+Derivatives = Mapping[tuple[int, ...], Sequence[tuple[tuple[int, ...], Rational]]]
+
+
+@dataclass(frozen=True)
+class _Expansion:
+    """An integral, or the leading term of one in a region."""
+
+    powers: tuple[Fraction, ...]
+    half: Fraction  # d0/2
+    terms: tuple[_Term, ...]
+    derivatives: Derivatives
+    numerators: tuple[int, ...]
+
+
+def _nested(state: _Expansion, approach: Approach, scales: Sequence[str]) -> Behaviour | None:
+    border = isinstance(approach.point, Infinity) or approach.point == 0
+    if not scales and not isinstance(approach.point, Infinity) and approach.point < 0:
+        second = {t.exponents: t.coefficient for t in state.terms if t.massive}
+        if not _separated(second, approach.variable, approach.point):
+            return None
+        return (Exponent((Fraction(0),), (Fraction(0),), (False,)),)
+    name, point = (scales[0], Fraction(0)) if scales else (approach.variable, approach.point)
+    regions = _regions(state, name, point)
+    slopes = [slope for _, slope, _ in regions]
+    found: dict[Exponent, None] = {}
+    for power, slope, facet in regions:
+        # regions with the same exponent need a further regulator, which leaves logarithms
+        logs = slopes.count(slope) > 1
+        if not scales:
+            found[Exponent((power,), (slope,), (logs,))] = None
+            continue
+        inner = _nested(_leading_term(state, facet, name), approach, scales[1:])
+        if inner is None:
+            return None
+        for exponent in inner:
+            # the regulator reaches all that become small later, but not a point at finite distance
+            later = [logs or more for more in exponent.logs]
+            if not border:
+                later[-1] = exponent.logs[-1]
+            item = Exponent((power, *exponent.power), (slope, *exponent.slope), (logs, *later))
+            found[item] = None
+    return tuple(sorted(found))
+
+
+def _regions(state: _Expansion, name: str, point: Point) -> list[tuple[Fraction, Fraction, LowerFacet]]:
+    """Power, slope and facet of each region in one small quantity."""
+    facets = lower_facets([(t.exponents, valuation(t.coefficient, name, point)) for t in state.terms])
+    found = []
+    for facet in facets:
+        shift = _numerator_shift(facet, state.derivatives, state.numerators, name, point)
+        if shift is not None:
+            power = sum((v * a for v, a in zip(facet.normal, state.powers, strict=True)), Fraction(0))
+            found.append((power - facet.offset * state.half + shift, facet.offset, facet))
+    return found
+
+
+def _leading_term(state: _Expansion, facet: LowerFacet, name: str) -> _Expansion:
+    """The terms on a facet without the scale."""
+    kept = []
+    for term in state.terms:
+        (power,), coefficient = leading(term.coefficient, (name,))
+        if power + _along(facet, term.exponents) == facet.offset:
+            kept.append(_Term(term.exponents, coefficient, term.massive))
+    # of the derivatives all are kept: this can only lower the bound of the power
+    derivatives = {
+        order: [(r, leading(c, (name,))[1]) for r, c in terms] for order, terms in state.derivatives.items()
+    }
+    return replace(state, terms=tuple(kept), derivatives=derivatives)
+
+
+def _along(facet: LowerFacet, exponents: Sequence[int]) -> Fraction:
+    return sum((v * e for v, e in zip(facet.normal, exponents, strict=True)), Fraction(0))
+
+
+def behaviour_of_closed_form(form: ClosedForm, approach: Approach) -> Behaviour:
     """The exponent of a closed form at a point: no logarithms at generic eps."""
-    power = Fraction(valuation(form.rational, variable, point))
-    slope = sum((q * valuation(letter, variable, point) for letter, q in form.letters), Fraction(0))
-    return (Exponent(power, slope, False),)
-
-
-def valuation(value: Rational, variable: str, point: Point) -> int:
-    """Order of vanishing at a point (in 1/x at infinity) of a nonzero function of the ratio (and eps)."""
-    place = value.ring.index(variable)
-    if isinstance(point, Infinity):
-        above, below = (int(p.degrees()[place]) for p in (value.numerator, value.denominator))
-        return below - above
-    if point == 0:
-        least = [min(int(e[place]) for e in p.monoms()) for p in (value.numerator, value.denominator)]
-        return least[0] - least[1]
-    shift = value.ring.variable(variable) * point.denominator - point.numerator
-    total = 0
-    for polynomial, sign in ((value.numerator, 1), (value.denominator, -1)):
-        quotient, rest = divmod(polynomial, shift.numerator)
-        while rest.is_zero():
-            total += sign
-            quotient, rest = divmod(quotient, shift.numerator)
-    return total
+    power = tuple(Fraction(v) for v in approach.orders(form.rational))
+    slope = [Fraction(0)] * len(power)
+    for letter, q in form.letters:
+        for i, order in enumerate(approach.orders(letter)):
+            slope[i] += q * order
+    return (Exponent(power, tuple(slope), (False,) * len(power)),)
 
 
 def _restricted(terms: Coefficients, sector: Sequence[int]) -> dict[tuple[int, ...], Rational]:
@@ -156,15 +235,6 @@ def _restricted(terms: Coefficients, sector: Sequence[int]) -> dict[tuple[int, .
         for e, c in terms.items()
         if not any(n for i, n in enumerate(e) if i not in inside)
     }
-
-
-def _all_positive(terms: Coefficients, point: Fraction) -> bool:
-    for coefficient in terms.values():
-        names = coefficient.variables()
-        value = coefficient.substitute(dict.fromkeys(names, point)).to_fraction()
-        if value <= 0:
-            return False
-    return True
 
 
 def _separated(terms: Coefficients, variable: str, point: Fraction) -> bool:
@@ -192,55 +262,24 @@ def _separated(terms: Coefficients, variable: str, point: Fraction) -> bool:
     return separating_functional(above, below) is not None
 
 
-def _regions(
-    family: ParametricFamily, powers: Sequence[int], sector: Sequence[int], point: Point
-) -> Behaviour | None:
-    first, second = _restricted(family.first, sector), _restricted(family.second, sector)
-    terms = [*first.items(), *second.items()]
-    if not all(_positive(coefficient) for _, coefficient in terms):
-        return None
-    points = [(e, valuation(c, family.variable, point)) for e, c in terms]
-    facets = lower_facets(points)
-    numerators = {i: -power for i, power in enumerate(powers) if power < 0}
-    derivatives = _derivatives(family, sector, numerators, point)
-    half = Fraction(family.dimension, 2)
-    positive = [powers[i] for i in sector]
-    found: list[tuple[Fraction, Fraction]] = []
-    for facet in facets:
-        shift = _numerator_shift(facet, derivatives, tuple(numerators.values()))
-        if shift is None:
-            continue
-        power = sum((v * a for v, a in zip(facet.normal, positive, strict=True)), Fraction(0))
-        found.append((power - facet.offset * half + shift, facet.offset))
-    slopes = [slope for _, slope in found]
-    return tuple(sorted(Exponent(power, slope, slopes.count(slope) > 1) for power, slope in set(found)))
-
-
-def _positive(coefficient: Rational) -> bool:
-    terms = (*coefficient.numerator.coeffs(), *coefficient.denominator.coeffs())
-    return all(c > 0 for c in terms)
-
-
-Derivatives = Mapping[tuple[int, ...], Sequence[tuple[tuple[int, ...], int]]]
-
-
 def _derivatives(
-    family: ParametricFamily, sector: Sequence[int], numerators: Mapping[int, int], point: Point
+    family: ParametricFamily, sector: Sequence[int], numerators: Mapping[int, int]
 ) -> Derivatives:
-    """Terms of U + F by their powers of the numerators' parameters: (exponents in the sector, valuation)."""
+    """Terms of U + F by powers of the numerators' parameters: (exponents in the sector, coefficient)."""
     allowed = {*sector, *numerators}
-    found: dict[tuple[int, ...], list[tuple[tuple[int, ...], int]]] = {}
+    found: dict[tuple[int, ...], list[tuple[tuple[int, ...], Rational]]] = {}
     for terms in (family.first, family.second):
         for exponents, coefficient in terms.items():
             if any(n for i, n in enumerate(exponents) if i not in allowed):
                 continue
             order = tuple(exponents[i] for i in numerators)
-            inside = tuple(exponents[i] for i in sector)
-            found.setdefault(order, []).append((inside, valuation(coefficient, family.variable, point)))
+            found.setdefault(order, []).append((tuple(exponents[i] for i in sector), coefficient))
     return found
 
 
-def _numerator_shift(facet: LowerFacet, derivatives: Derivatives, orders: tuple[int, ...]) -> Fraction | None:
+def _numerator_shift(
+    facet: LowerFacet, derivatives: Derivatives, orders: tuple[int, ...], name: str, point: Point
+) -> Fraction | None:
     """Least change of the power by numerators; None where the numerator makes the region vanish.
 
     A power -n of a line is an n-fold derivative of ``(U+F)^(-d/2)`` in its parameter at zero: products of
@@ -251,10 +290,7 @@ def _numerator_shift(facet: LowerFacet, derivatives: Derivatives, orders: tuple[
     cost: dict[tuple[int, ...], Fraction] = {}
     for order, terms in derivatives.items():
         if any(order):
-            scalings = (
-                p + sum((v * e for v, e in zip(facet.normal, r, strict=True)), Fraction(0)) for r, p in terms
-            )
-            cost[order] = min(scalings) - facet.offset
+            cost[order] = min(_along(facet, r) + valuation(c, name, point) for r, c in terms) - facet.offset
     best: dict[tuple[int, ...], Fraction] = {(0,) * len(orders): Fraction(0)}
     for total in _below(orders):
         ways = [

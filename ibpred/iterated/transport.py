@@ -42,9 +42,9 @@ _UNIT_LETTERS = frozenset({Fraction(0), Fraction(1), Fraction(-1)})
 _TURNED_LETTERS = frozenset({Fraction(0), Fraction(1), Fraction(2)})
 
 
-def point_text(point: Point) -> str:
+def point_text(point: Point, variable: str = "x") -> str:
     """``x = 0`` and the like, for messages."""
-    return f"x = {point.value if isinstance(point, Infinity) else point}"
+    return f"{variable} = {point.value if isinstance(point, Infinity) else point}"
 
 
 def residue_at(residues: Residues, point: Point) -> Any:
@@ -68,7 +68,9 @@ class _Chart:
     pole: Fraction | None  # image of x = infinity
 
 
-def connection(residues: Residues, target: Point, order: int) -> MatrixSeries:
+def connection(
+    residues: Residues, target: Point, order: int, passed: Sequence[Fraction] = ()
+) -> MatrixSeries:
     """Z(eps) with ``c_target = Z c``, through ``eps^order``.
 
     The path is the straight real segment from 0 to the target; to reach a negative target the path first
@@ -83,18 +85,28 @@ def connection(residues: Residues, target: Point, order: int) -> MatrixSeries:
         The point to reach: a nonzero rational number or `INFINITY` (along x > 0).
     order
         Highest power of eps.
+    passed
+        Letters inside the path at which the solution is known to be regular (their residue annihilates
+        the boundary vector there); the path leads through them.
 
     Raises
     ------
     BoundaryError
-        If a letter lies inside the path, or if the path needs constants that are not known here: anything
-        but the letters 0, 1, -1 (or 0, 1, 2) after a Moebius map, scales with prime factors other than 2
-        and 3, weights beyond the tables.
+        If another letter lies inside the path, or if the path needs constants that are not known here:
+        anything but the letters 0, 1, -1 (or 0, 1, 2) after a Moebius map, scales with prime factors other
+        than 2 and 3, weights beyond the tables.
     """
     if target == 0:
         raise BoundaryError("the transport from x = 0 must lead to another point")
+    inside = [a for a in passed if a * _direction(target) > 0 and _is_before(a, target)]
+    if inside:
+        stop = min(inside, key=abs)
+        rest: Point = target if isinstance(target, Infinity) else target - stop
+        shifted = {a - stop: matrix for a, matrix in residues.items()}
+        further = connection(shifted, rest, order, [a - stop for a in inside if a != stop])
+        return further @ connection(residues, stop, order)
     start = residue_at(residues, Fraction(0))
-    sign = -1 if isinstance(target, Fraction) and target < 0 else 1
+    sign = _direction(target)
     reflected = {sign * a: matrix for a, matrix in residues.items() if matrix}
     end = residue_at(residues, target)
     goal = target if isinstance(target, Infinity) else abs(target)
@@ -116,6 +128,14 @@ def connection(residues: Residues, target: Point, order: int) -> MatrixSeries:
         half_turn = Constant.generator("I") * Constant.generator("pi")
         result = result @ exponential(start, half_turn, order)
     return result
+
+
+def _direction(target: Point) -> int:
+    return -1 if isinstance(target, Fraction) and target < 0 else 1
+
+
+def _is_before(a: Fraction, target: Point) -> bool:
+    return isinstance(target, Infinity) or abs(a) < abs(target)
 
 
 def _scaling(matrix: Any, scale: Fraction, sign: int, target: Point, order: int) -> MatrixSeries:

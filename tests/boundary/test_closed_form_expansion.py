@@ -8,7 +8,7 @@ from mpmath import euler, exp, expjpi, gamma, mp, mpc, mpf
 
 from ibpred.boundary.expansion import ClosedForm, expand, on_line
 from ibpred.boundary.gamma import EpsLinear, GammaForm, gamma_form
-from ibpred.boundary.local import class_sum, contribution
+from ibpred.boundary.local import class_sum, contributions
 from ibpred.boundary.problem import one_scale_values
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import ring
@@ -75,7 +75,7 @@ def test_masters_without_closed_form_are_named() -> None:
     kite = family("kite")
     with pytest.raises(BoundaryError, match=r"kite\(1,1,1,1,1\)"):
         one_scale_values(kite, ((1, 1, 1, 1, 1),), {"s": -1}, 2)
-    with pytest.raises(InputError, match="at most one"):
+    with pytest.raises(InputError, match="1 ratios, not 0"):
         one_scale_values(family("massless-box"), ((1, 0, 1, 0),), {"s": -1, "t": -1}, 2)
 
 
@@ -107,11 +107,23 @@ def test_wrong_euler_constant_is_noticed() -> None:
 def test_local_expansion_of_letters() -> None:
     """eps/x^2 * (2 + x)^(-2 eps) x^(3 eps): the coefficients of x^-2, x^-1, x^0."""
     closed = ClosedForm(FIELD.one, ((X, Fraction(3)), (X + 2, Fraction(-2))), (), 0, {}, {})
-    found = contribution(EPS / X**2, closed, "x")
-    assert found.slope == 3
-    assert found.lowest == -2
+    found = contributions(EPS / X**2, closed, ("x",))
+    assert [item.slopes for item in found] == [(3,)] * 3
+    assert [item.powers for item in found] == [(-2,), (-1,), (0,)]
     # (1 + x/2)^(-2 eps) = 1 - eps x + (eps^2/2 + eps/4) x^2
-    assert found.coefficients == (EPS, -(EPS**2), EPS * (EPS**2 / 2 + EPS / 4))
+    assert [item.coefficient for item in found] == [EPS, -(EPS**2), EPS * (EPS**2 / 2 + EPS / 4)]
     log2 = Constant.generator("log2")
-    series = class_sum((found,), Fraction(3), -2, 3)
+    series = class_sum(found, (Fraction(3),), (-2,), 3)
     assert [series.coefficient(k) for k in range(1, 4)] == [Constant.rational(1), log2 * -2, log2 * log2 * 2]
+
+
+def test_successive_expansion() -> None:
+    """(x + y)^(-eps)/(x + y) at y << x: x^-1-eps (1 - (1 + eps) y/x + ...)."""
+    two = ring(("eps", "x", "y"))
+    x, y, eps = (two.variable(n) for n in ("x", "y", "eps"))
+    closed = ClosedForm(1 / (x + y), ((x + y, Fraction(-1)),), (), 0, {}, {})
+    found = contributions(x / y, closed, ("y", "x"))
+    assert [(c.powers, c.slopes, str(c.coefficient)) for c in found] == [
+        ((-1, 0), (0, -1), "1"),
+        ((0, -1), (0, -1), str(-1 - eps)),
+    ]

@@ -9,20 +9,20 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.optimize import linprog
 
+from ibpred.boundary.approach import Approach, is_positive_before, leading, valuation
 from ibpred.boundary.polytope import lower_facets, separating_functional
 from ibpred.boundary.problem import closed_form_on_line
 from ibpred.boundary.regions import (
-    ANALYTIC,
     Behaviour,
+    Exponent,
     ParametricFamily,
     behaviour,
     behaviour_of_closed_form,
     parametric_family,
-    valuation,
 )
 from ibpred.errors import BoundaryError
-from ibpred.exact.rational import Rational
-from ibpred.iterated.transport import INFINITY
+from ibpred.exact.rational import Rational, ring
+from ibpred.iterated.transport import INFINITY, Point
 
 BOX_LINE = {"s": FIELD.constant(-1), "t": -X}
 POINTS = st.lists(
@@ -33,12 +33,19 @@ POINTS = st.lists(
 
 
 def on_line(name: str, values: dict[str, Rational]) -> ParametricFamily:
-    return parametric_family(family(name), values, "x")
+    return parametric_family(family(name), values)
+
+
+ANALYTIC = (Exponent((Fraction(0),), (Fraction(0),), (False,)),)
+
+
+def to(point: Point) -> Approach:
+    return Approach((), "x", point)
 
 
 def pairs(found: Behaviour | None) -> set[tuple[Fraction, Fraction]]:
     assert found is not None
-    return {(e.power, e.slope) for e in found}
+    return {(*e.power, *e.slope) for e in found}
 
 
 @settings(max_examples=60, deadline=None)
@@ -89,10 +96,10 @@ def test_interleaved_sets_are_not_separated() -> None:
 def test_massless_box() -> None:
     box = on_line("massless-box", BOX_LINE)
     # t-channel collinear regions x^(-1-eps), and the hard region
-    assert pairs(behaviour(box, (1, 1, 1, 1), Fraction(0))) == {(-1, -1), (0, 0)}
-    assert pairs(behaviour(box, (1, 1, 1, 1), INFINITY)) == {(1, 0), (2, 1)}
-    assert behaviour(box, (1, 1, 1, 1), Fraction(-1)) == ANALYTIC
-    assert behaviour(box, (1, 1, 1, 1), Fraction(2)) == ANALYTIC
+    assert pairs(behaviour(box, (1, 1, 1, 1), to(Fraction(0)))) == {(-1, -1), (0, 0)}
+    assert pairs(behaviour(box, (1, 1, 1, 1), to(INFINITY))) == {(1, 0), (2, 1)}
+    assert behaviour(box, (1, 1, 1, 1), to(Fraction(-1))) == ANALYTIC
+    assert behaviour(box, (1, 1, 1, 1), to(Fraction(2))) == ANALYTIC
 
 
 def test_exponents_of_closed_forms_agree_with_the_polytope() -> None:
@@ -105,24 +112,24 @@ def test_exponents_of_closed_forms_agree_with_the_polytope() -> None:
             if closed is not None:
                 checked += 1
                 for point in (Fraction(0), INFINITY):
-                    expected = behaviour_of_closed_form(closed, "x", point)
-                    assert behaviour(parametric, powers, point) == expected
+                    expected = behaviour_of_closed_form(closed, to(point))
+                    assert behaviour(parametric, powers, to(point)) == expected
     assert checked == 6
 
 
 def test_bubble_with_one_mass() -> None:
     """2F1(1, eps; 2 - eps; -x) with x = -s/m^2 behaves like x^-1 and x^-eps at large x."""
     bubble = on_line("bubble-one-mass", {"s": -X, "m2": FIELD.one})
-    assert pairs(behaviour(bubble, (1, 1), INFINITY)) == {(1, 0), (0, 1)}
-    assert behaviour(bubble, (1, 1), Fraction(0)) == ANALYTIC
+    assert pairs(behaviour(bubble, (1, 1), to(INFINITY))) == {(1, 0), (0, 1)}
+    assert behaviour(bubble, (1, 1), to(Fraction(0))) == ANALYTIC
     # the threshold: nothing is claimed
-    assert behaviour(bubble, (1, 1), Fraction(-1)) is None
+    assert behaviour(bubble, (1, 1), to(Fraction(-1))) is None
 
 
 def test_numerators_shift_the_power() -> None:
     double_box = on_line("planar-double-box", BOX_LINE)
-    plain = pairs(behaviour(double_box, (1, 1, 1, 1, 1, 1, 1, 0, 0), Fraction(0)))
-    shifted = pairs(behaviour(double_box, (1, 1, 1, 1, 1, 1, 1, -1, 0), Fraction(0)))
+    plain = pairs(behaviour(double_box, (1, 1, 1, 1, 1, 1, 1, 0, 0), to(Fraction(0))))
+    shifted = pairs(behaviour(double_box, (1, 1, 1, 1, 1, 1, 1, -1, 0), to(Fraction(0))))
     assert plain == {(-1, -2), (0, 0)}
     assert shifted == {(0, -2), (0, 0)}
 
@@ -136,3 +143,37 @@ def test_valuations() -> None:
         -2,
     ]
     assert valuation(value, "x", Fraction(5)) == 0
+
+
+TWO = ring(("eps", "x", "y"))
+
+
+def test_limits_one_after_the_other() -> None:
+    """A bubble with two masses, m1 << m2 << s, has the regions of both masses and the hard one."""
+    x, y = TWO.variable("x"), TWO.variable("y")
+    values = {"s": -TWO.one, "m1sq": x, "m2sq": y}
+    bubble = parametric_family(family("bubble-distinct-masses"), values)
+    corner = behaviour(bubble, (1, 1), Approach(("x",), "y", Fraction(0)))
+    # x^(1-eps): light line soft; y^(1-eps): heavy line soft; both analytic otherwise
+    assert {(e.power, e.slope) for e in corner or ()} == {
+        ((1, 0), (-1, 0)),
+        ((0, 1), (0, -1)),
+        ((0, 0), (0, 0)),
+    }
+    assert not any(any(e.logs) for e in corner or ())
+
+
+def test_orders_compare_one_quantity_after_the_other() -> None:
+    x, y = TWO.variable("x"), TWO.variable("y")
+    value = (x + y) ** 2 * x / (y - 2)
+    assert leading(value, ("y",)) == ((0,), x**3 / -2)
+    assert Approach(("x",), "y", Fraction(2)).orders(value) == (1, -1)
+
+
+def test_positivity_up_to_a_point() -> None:
+    assert is_positive_before((1 - X) ** 2 / X, "x", INFINITY)
+    assert is_positive_before(1 - X, "x", Fraction(1))
+    assert not is_positive_before(1 - X, "x", Fraction(2))
+    assert is_positive_before(X**2 - 3 * X + 3, "x", INFINITY)
+    assert not is_positive_before(X**2 - 3 * X + 1, "x", Fraction(1))
+    assert is_positive_before(X**2 - 3 * X + 1, "x", Fraction(0))

@@ -1,0 +1,125 @@
+"""Corners of the Euclidean region and the edges between them, with the epsilon-form on each edge.
+
+A corner is an order ``x1 << x2 << ... << 1`` in which the ratios vanish. There ``f ~ prod_i x_i^(eps A_i)
+c`` with commuting A_i: c is the boundary vector of the corner. From it one edge leads along the largest
+ratio to infinity, the others still vanishing; and for each pair of neighbours one leads, their quotient
+growing from 0 to infinity, to the corner with the two exchanged. On an edge the letters are their leading
+terms, and the equation is one in a single variable.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+import flint
+
+from ibpred.boundary.approach import Approach, leading
+from ibpred.epsform.form import EpsilonForm
+from ibpred.exact.rational import Rational
+from ibpred.iterated.matrices import rational_matrix
+from ibpred.iterated.transport import Point, Residues, point_text
+
+Corner = tuple[str, ...]
+"""The ratios in the order in which they vanish, the smallest first."""
+
+
+@dataclass(frozen=True)
+class Edge:
+    """A curve at the border of the region.
+
+    Attributes
+    ----------
+    start, end
+        The corners at variable 0 and infinity; the end is None where a ratio itself goes to infinity.
+    scales
+        What tends to zero along the whole edge, the fastest first.
+    variable
+        Runs from 0 to infinity.
+    label
+        What the variable is in terms of the ratios, e.g. ``y/x``.
+    values
+        The ratios in terms of scales and variable.
+    residues
+        Finite point of the variable -> residue; 0 is always there.
+    scale_residues
+        For each scale its residue, which commutes with all others.
+    nonlinear
+        Letters that are not linear in the variable, as text.
+    """
+
+    start: Corner
+    end: Corner | None
+    scales: tuple[str, ...]
+    variable: str
+    label: str
+    values: Mapping[str, Rational]
+    residues: Residues
+    scale_residues: tuple[Any, ...]
+    nonlinear: tuple[str, ...]
+
+    def approach(self, point: Point) -> Approach:
+        """The way to a point of the edge."""
+        return Approach(self.scales, self.variable, point)
+
+    def point_text(self, point: Point) -> str:
+        """A point of the edge, for messages."""
+        where = point_text(point, self.label)
+        return f"{where} for {' << '.join((*self.scales, '1'))}" if self.scales else where
+
+
+def edges_at(form: EpsilonForm, corner: Corner) -> tuple[Edge, ...]:
+    """The edges that leave a corner, that of the largest ratio first.
+
+    Parameters
+    ----------
+    form
+        The epsilon-form, without square roots.
+    corner
+        All of its ratios.
+    """
+    field = form.ring
+    plain = {name: field.variable(name) for name in corner}
+    found = [_edge(form, corner, None, corner[:-1], corner[-1], corner[-1], plain)]
+    for k in range(len(corner) - 1):
+        small, large = corner[k], corner[k + 1]
+        values = {**plain, small: field.variable(small) * field.variable(large)}
+        scales = (*corner[:k], *corner[k + 1 :])
+        swapped = (*corner[:k], large, small, *corner[k + 2 :])
+        found.append(_edge(form, corner, swapped, scales, small, f"{small}/{large}", values))
+    return tuple(found)
+
+
+def _edge(
+    form: EpsilonForm,
+    start: Corner,
+    end: Corner | None,
+    scales: Sequence[str],
+    variable: str,
+    label: str,
+    values: Mapping[str, Rational],
+) -> Edge:
+    size = len(form.inverse)
+    totals = [flint.fmpq_mat(size, size) for _ in scales]
+    by_root: dict[Fraction, Any] = {Fraction(0): flint.fmpq_mat(size, size)}
+    others: dict[str, Any] = {}
+    place = form.ring.index(variable)
+    for letter, rows in zip(form.letters, form.matrices, strict=True):
+        matrix = rational_matrix(rows)
+        powers, last = leading(letter.substitute(values), scales)
+        for i, power in enumerate(powers):
+            totals[i] = totals[i] + matrix * power
+        for polynomial, multiplicity in last.factors()[1]:
+            terms = {int(e[place]): int(c) for e, c in polynomial.to_dict().items()}
+            if max(terms) == 1:
+                root = Fraction(-terms.get(0, 0), terms[1])
+                zero = flint.fmpq_mat(size, size)
+                by_root[root] = by_root.get(root, zero) + matrix * multiplicity
+            else:
+                text = str(form.ring.fraction(polynomial, form.ring.context.constant(1)))
+                others[text] = others.get(text, flint.fmpq_mat(size, size)) + matrix * multiplicity
+    residues = {root: matrix for root, matrix in by_root.items() if matrix or root == 0}
+    nonlinear = tuple(text for text, matrix in others.items() if matrix)
+    return Edge(start, end, tuple(scales), variable, label, dict(values), residues, tuple(totals), nonlinear)

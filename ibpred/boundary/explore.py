@@ -1,0 +1,157 @@
+"""Walk the corners and edges of the Euclidean region and bring all conditions to one corner."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+from ibpred.boundary.conditions import (
+    EdgeView,
+    Master,
+    are_regular,
+    conditions_at,
+    view_from,
+)
+from ibpred.boundary.edges import Corner, Edge, edges_at
+from ibpred.boundary.linear import Transported, transported
+from ibpred.boundary.regions import ParametricFamily
+from ibpred.epsform.form import EpsilonForm
+from ibpred.errors import BoundaryError
+from ibpred.iterated.constants import NAMES
+from ibpred.iterated.matrices import MatrixSeries, identity
+from ibpred.iterated.transport import INFINITY, Infinity, Point, connection
+from ibpred.iterated.zeta import LONGEST_ALTERNATING, LONGEST_PLAIN
+
+
+@dataclass(frozen=True)
+class BoundaryProblem:
+    """What the boundary constants are computed from.
+
+    Attributes
+    ----------
+    form
+        An epsilon-form in ratios that are positive in the Euclidean region.
+    masters
+        What is known of each master, in the order of the form.
+    family
+        U and F in the ratios; None where no behaviour shall be read off them.
+    corner
+        The corner at which the constants are wanted.
+    loops
+        L: an integral that is not known in closed form has poles of order at most 2 L in eps.
+    weight
+        Constants are wanted through ``eps^weight`` of the canonical functions.
+    """
+
+    form: EpsilonForm
+    masters: tuple[Master, ...]
+    family: ParametricFamily | None
+    corner: Corner
+    loops: int
+    weight: int
+
+
+@dataclass(frozen=True)
+class Gathered:
+    """Conditions brought to the corner of the problem, and the reasons why others are not usable."""
+
+    conditions: tuple[Transported, ...]
+    unused: tuple[str, ...]
+
+
+def explore(problem: BoundaryProblem, last: int, order: int) -> Iterator[Gathered]:
+    """Conditions on the vector at the problem's corner, more of them at each step.
+
+    Parameters
+    ----------
+    problem
+        The problem.
+    last
+        Highest power of eps of the values.
+    order
+        Transports are taken through ``eps^order``.
+
+    Yields
+    ------
+    Gathered
+        After each corner visited: all conditions so far.
+    """
+    start = MatrixSeries(({(0,) * len(NAMES): identity(len(problem.masters))}, *({} for _ in range(order))))
+    reached: dict[Corner, MatrixSeries] = {problem.corner: start}
+    queue = [problem.corner]
+    conditions: list[Transported] = []
+    unused: list[str] = []
+    for corner in queue:
+        here = reached[corner]
+        for k, edge in enumerate(edges_at(problem.form, corner)):
+            view = view_from(edge, problem.form, problem.masters, problem.family)
+            if k == 0:
+                conditions += [transported(c, here) for c in conditions_at(view, Fraction(0), last)]
+            if edge.end in reached:
+                continue
+            end = _walk(view, here, last, order, conditions, unused)
+            if edge.end is not None and end is not None:
+                reached[edge.end] = end
+                queue.append(edge.end)
+        yield Gathered(tuple(conditions), tuple(unused))
+
+
+def _walk(
+    view: EdgeView,
+    here: MatrixSeries,
+    last: int,
+    order: int,
+    conditions: list[Transported],
+    unused: list[str],
+) -> MatrixSeries | None:
+    """Collect the conditions along one edge; the transport to its end, where the way is free."""
+    edge = view.edge
+    if edge.nonlinear:
+        unused.append(
+            f"points other than {edge.point_text(Fraction(0))}: the letters {', '.join(edge.nonlinear)} that "
+            "are not linear lie in between"
+        )
+        return None
+    positive: list[Point] = [*sorted(a for a in edge.residues if a > 0), INFINITY]
+    negative: list[Point] = [*sorted((a for a in edge.residues if a < 0), reverse=True)]
+    end: MatrixSeries | None = None
+    for direction in (positive, negative):
+        passed: list[Fraction] = []
+        for point in direction:
+            found = conditions_at(view, point, last)
+            needed = bool(found) or (isinstance(point, Infinity) and edge.end is not None)
+            if needed:
+                try:
+                    transport = _connection(edge, point, order, passed) @ here
+                except BoundaryError as error:
+                    unused.append(str(error))
+                    transport = None
+                if transport is not None:
+                    conditions += [transported(condition, transport) for condition in found]
+                    if isinstance(point, Infinity):
+                        end = transport
+            if isinstance(point, Infinity):
+                continue
+            if not are_regular(found, edge.residues[point]):
+                if point != direction[-1]:
+                    unused.append(
+                        f"points beyond {edge.point_text(point)}, where the solution is not known to be "
+                        "regular"
+                    )
+                break
+            passed.append(point)
+    return end
+
+
+def _connection(edge: Edge, point: Point, order: int, passed: Sequence[Fraction]) -> MatrixSeries:
+    """The transport as far as its constants are known; high orders only sharpen the conditions."""
+    residues: Any = edge.residues
+    if order > LONGEST_ALTERNATING:
+        try:
+            return connection(residues, point, min(order, LONGEST_PLAIN), passed)
+        except BoundaryError:
+            # alternating sums are known to a lower weight; anything else fails again below
+            return connection(residues, point, LONGEST_ALTERNATING, passed)
+    return connection(residues, point, order, passed)
