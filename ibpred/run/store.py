@@ -1,7 +1,9 @@
-"""The store: a work folder with one SQLite file that holds every finished result under its digest.
+"""The store: a work folder with one SQLite file that holds what was computed under its digest.
 
-Each entry carries a checksum. Writing is one transaction, so a kill at any moment leaves either the
-old state or the new one. One process at a time works in a folder (an advisory lock says so).
+Entries are results, which stay, and pieces of unfinished work (tapes, samples, parts of a
+reconstruction), which belong to the stage that they are for and go when it is finished. Each carries
+a checksum. Writing is one transaction, so a kill at any moment leaves either the old state or the new
+one. One process at a time works in a folder (an advisory lock says so).
 """
 
 from __future__ import annotations
@@ -20,7 +22,16 @@ from typing import IO
 from ibpred.digest import JsonData, canonical_bytes
 from ibpred.errors import StoreError, UnwritableError
 
-FORMAT = "ibpred-store-1"
+FORMAT = "ibpred-store-2"
+
+_PART = 2**28  # bytes of an entry in one row: SQLite takes less than 2^30
+_SCHEMA = (
+    "create table about (format text not null)",
+    "create table entry (key text not null, part integer not null, parts integer not null,"
+    " kind text not null, owner text, packed integer not null, body blob not null,"
+    " checksum text not null, primary key (key, part)) without rowid",
+    "create index work on entry (owner) where owner is not null",
+)
 
 
 class Store:
@@ -68,16 +79,15 @@ class Store:
             self._database = sqlite3.connect(self.path, isolation_level=None)
             tables = {row[0] for row in self._database.execute("select name from sqlite_master")}
             if not tables:
-                self._database.execute("create table about (format text not null)")
-                self._database.execute("insert into about values (?)", (FORMAT,))
-                self._database.execute(
-                    "create table result (key text primary key, stage text not null,"
-                    " body blob not null, checksum text not null)"
-                )
-            elif not {"about", "result"} <= tables:
+                with self.transaction():
+                    for statement in _SCHEMA:
+                        self._database.execute(statement)
+                    self._database.execute("insert into about values (?)", (FORMAT,))
+                return
+            if "about" not in tables:
                 raise StoreError(f"{self.path} is an SQLite file but no store of ibpred; {self._remedy()}")
             row = self._database.execute("select format from about").fetchone()
-            if row is None or row[0] != FORMAT:
+            if row is None or row[0] != FORMAT or "entry" not in tables:
                 found = row[0] if row else "nothing"
                 raise StoreError(
                     f"{self.path} has format {found!r}, this version reads {FORMAT!r}; {self._remedy()}"
@@ -96,9 +106,11 @@ class Store:
                 raise UnwritableError(
                     f"{self.path} cannot be written ({text}); choose another folder with --work DIR"
                 ) from error
-            if "full" in text:
+            if "full" in text or "disk I/O" in text:
                 raise StoreError(
-                    f"the disk is full ({text}): nothing stored is lost; free some space and run again"
+                    f"cannot {deed} {self.path} ({text}): the disk is full, a limit on the size of files is "
+                    "reached, or the disk fails; nothing stored before is lost: free some space and run the "
+                    "same command again"
                 ) from error
             raise StoreError(f"cannot {deed} {self.path}: {text}; {self._remedy()}") from error
         except sqlite3.DatabaseError as error:
@@ -120,6 +132,28 @@ class Store:
         self._database.close()
         self._lock.close()
 
+    @contextmanager
+    def transaction(self) -> Iterator[None]:
+        """All that is written inside takes effect together, or not at all."""
+        if self._database.in_transaction:
+            yield
+            return
+        with self._guarded("write"):
+            self._database.execute("begin immediate")
+            try:
+                yield
+                self._database.execute("commit")
+            except BaseException:
+                if self._database.in_transaction:
+                    self._database.execute("rollback")
+                raise
+
+    def has(self, key: str) -> bool:
+        """Whether there is an entry under a key."""
+        with self._guarded("read"):
+            found = self._database.execute("select 1 from entry where key = ? and part = 0", (key,))
+            return found.fetchone() is not None
+
     def get_bytes(self, key: str) -> bytes | None:
         """The stored bytes, or None.
 
@@ -129,29 +163,59 @@ class Store:
             If the entry does not match its checksum.
         """
         with self._guarded("read"):
-            row = self._database.execute(
-                "select body, checksum, stage from result where key = ?", (key,)
-            ).fetchone()
-        if row is None:
+            rows = self._database.execute(
+                "select body, checksum, kind, packed, parts from entry where key = ? order by part", (key,)
+            ).fetchall()
+        if not rows:
             return None
-        body, checksum, stage = row
-        if not isinstance(body, bytes) or hashlib.sha256(body).hexdigest() != checksum:
-            raise StoreError(f"{self.path}: the entry of stage {stage!r} is damaged; {self._remedy()}")
+        return b"".join(self._checked(row, len(rows)) for row in rows)
+
+    def _checked(self, row: tuple[bytes, str, str, int, int], present: int) -> bytes:
+        body, checksum, kind, packed, parts = row
+        whole = isinstance(body, bytes) and hashlib.sha256(body).hexdigest() == checksum
+        if not whole or present != parts:
+            raise StoreError(f"{self.path}: an entry of {kind!r} is damaged; {self._remedy()}")
         try:
-            return zlib.decompress(body)
+            return zlib.decompress(body) if packed else body
         except zlib.error as error:
             raise StoreError(
-                f"{self.path}: the entry of stage {stage!r} is damaged ({error}); {self._remedy()}"
+                f"{self.path}: an entry of {kind!r} is damaged ({error}); {self._remedy()}"
             ) from error
 
-    def put_bytes(self, key: str, stage: str, body: bytes) -> None:
-        """Store bytes under a key, in one transaction."""
-        packed = zlib.compress(body, 3)
-        with self._guarded("write"):
-            self._database.execute(
-                "insert or replace into result values (?, ?, ?, ?)",
-                (key, stage, packed, hashlib.sha256(packed).hexdigest()),
-            )
+    def put_bytes(
+        self, key: str, kind: str, body: bytes, owner: str | None = None, packed: bool = True
+    ) -> None:
+        """Store bytes under a key.
+
+        Parameters
+        ----------
+        key
+            A digest of all that the bytes depend on; what was stored under it is replaced.
+        kind
+            What it is, for messages.
+        body
+            The bytes.
+        owner
+            Key of the unfinished result that the bytes are for; None for what stays.
+        packed
+            Whether to compress (of no use for residues).
+        """
+        parts = max(1, -(-len(body) // _PART))
+        with self.transaction():
+            self._database.execute("delete from entry where key = ?", (key,))
+            for part in range(parts):
+                piece = body[part * _PART : (part + 1) * _PART]
+                piece = zlib.compress(piece, 3) if packed else piece
+                checksum = hashlib.sha256(piece).hexdigest()
+                self._database.execute(
+                    "insert into entry values (?, ?, ?, ?, ?, ?, ?, ?)",
+                    (key, part, parts, kind, owner, int(packed), piece, checksum),
+                )
+
+    def forget_work(self, owner: str) -> None:
+        """Remove the pieces of work that a finished result does not need any more."""
+        with self.transaction():
+            self._database.execute("delete from entry where owner = ?", (owner,))
 
     def get(self, key: str) -> JsonData:
         """The stored JSON data, or None."""
@@ -164,6 +228,6 @@ class Store:
             raise StoreError(f"{self.path}: an entry is no JSON; {self._remedy()}") from error
         return data
 
-    def put(self, key: str, stage: str, data: JsonData) -> None:
-        """Store JSON data under a key."""
-        self.put_bytes(key, stage, canonical_bytes(data))
+    def put(self, key: str, kind: str, data: JsonData, owner: str | None = None) -> None:
+        """Store JSON data under a key; see `put_bytes`."""
+        self.put_bytes(key, kind, canonical_bytes(data), owner)

@@ -51,7 +51,7 @@ def test_a_changed_entry(tmp_path: Path) -> None:
     with Store(tmp_path) as store:
         store.put("a", "masters", [1, 2, 3])
     database = sqlite3.connect(tmp_path / "store.sqlite", isolation_level=None)
-    database.execute("update result set body = x'00'")
+    database.execute("update entry set body = x'00'")
     database.close()
     with Store(tmp_path) as store, pytest.raises(StoreError, match="masters"):
         store.get("a")
