@@ -13,11 +13,12 @@ def masters(shared: Shared) -> None:
     """Find the master integrals.
 
     Of several families the common ones: sectors that agree, also after a crossing that a file
-    declares, share their masters.
+    declares, share their masters. For one family the masters of each sector are counted a second
+    time, as critical points of U + F.
     """
     from ibpred.report.json_common import common_masters_data
-    from ibpred.report.json_tables import masters_data
-    from ibpred.report.text import common_masters_text, masters_text
+    from ibpred.report.json_tables import counts_data, masters_data
+    from ibpred.report.text import common_masters_text, counts_text, masters_text
 
     if shared.others:
         with open_joint(shared) as joint:
@@ -26,4 +27,5 @@ def masters(shared: Shared) -> None:
     else:
         with open_chain(shared) as chain:
             data = masters_data(chain.definition, chain.masters())
-        emit(shared, data, lambda: masters_text(data))
+            data["independent_count"] = counts_data(chain.definition, chain.counts())
+        emit(shared, data, lambda: f"{masters_text(data)}\n{counts_text(data['independent_count'])}")

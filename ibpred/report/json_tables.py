@@ -16,6 +16,7 @@ from ibpred.family.definition import FamilyDefinition
 from ibpred.family.polynomials import symanzik
 from ibpred.iterated.solution import Solution, function_text, letter_roots
 from ibpred.numerics.value import Value
+from ibpred.reduction.independent import SectorCount
 from ibpred.reduction.masters import Masters
 from ibpred.sectors.analysis import SectorAnalysis
 
@@ -50,6 +51,25 @@ def masters_data(family: FamilyDefinition, masters: Masters) -> Data:
         "count": len(masters.masters),
         "masters": [
             {"powers": list(powers), "lines": sum(a > 0 for a in powers)} for powers in masters.masters
+        ],
+    }
+
+
+def counts_data(family: FamilyDefinition, counts: Sequence[SectorCount]) -> Data:
+    """The independent count that `masters` prints with the masters."""
+    lines = len(family.lines)
+    return {
+        "sectors": len(counts),
+        "agreeing": sum(count.agrees for count in counts),
+        "others": [
+            {
+                "sector": corner(count.sector, lines),
+                "masters": count.masters,
+                "critical_points": count.points,
+                "note": count.note,
+            }
+            for count in counts
+            if not count.agrees
         ],
     }
 

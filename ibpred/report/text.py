@@ -56,6 +56,19 @@ def _named(integral: Data) -> str:
     return integral_text(name, integral["powers"])
 
 
+def counts_text(data: Data) -> str:
+    """The independent count of the masters, with the sectors where it differs."""
+    lines = [
+        f"independent count: critical points of U + F agree in {data['agreeing']} of {data['sectors']} "
+        "classes of sectors"
+    ]
+    for other in data["others"]:
+        sector = "".join(map(str, other["sector"]))
+        points = "?" if other["critical_points"] is None else other["critical_points"]
+        lines.append(f"  {sector}: {other['masters']} masters, {points} points: {other['note']}")
+    return "\n".join(lines)
+
+
 def common_masters_text(data: Data) -> str:
     """The masters of several families, one a line."""
     lines = [f"{data['count']} master integral{'s' if data['count'] != 1 else ''}"]

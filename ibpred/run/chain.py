@@ -25,6 +25,7 @@ from ibpred.iterated.series import Series
 from ibpred.iterated.solution import Solution, solve_orders
 from ibpred.numerics.value import Value
 from ibpred.progress import Progress
+from ibpred.reduction.independent import SectorCount, compare_counts
 from ibpred.reduction.masters import Masters, find_masters
 from ibpred.reduction.table import ReductionTable, reduce_integrals
 from ibpred.reduction.wanted import check_powers
@@ -72,6 +73,20 @@ class Chain(Stages):
             None,
             lambda: find_masters(self.definition, self.analysis(), prime, SEED, progress=self.progress),
         )
+
+    def counts(self) -> tuple[SectorCount, ...]:
+        """The masters of each sector beside its critical points."""
+        masters = self.masters().masters
+        return self._kept(
+            "counts",
+            _Counts,
+            None,
+            lambda: _Counts(
+                compare_counts(
+                    self.definition, self.analysis(), masters, self.primes[0], SEED, self.progress
+                )
+            ),
+        ).sectors
 
     def integrals_within(self, dots: int, rank: int) -> list[Powers]:
         """All integrals of nonzero sectors with at most so many dots and so high a rank."""
@@ -263,6 +278,11 @@ def _one_scale_boundary(values: Sequence[Series]) -> Boundary:
     start, end = min(series.start for series in values), min(series.end for series in values)
     constants = tuple(tuple(s.coefficient(order) for s in values) for order in range(start, end + 1))
     return Boundary(start, constants, (), ())
+
+
+@dataclass(frozen=True)
+class _Counts:
+    sectors: tuple[SectorCount, ...]
 
 
 @dataclass(frozen=True)

@@ -19,6 +19,9 @@ from ibpred.sectors.order import lines_of
 LARGEST = 400_000
 """Bound on the entries of a matrix, so that no sector takes more than about a second."""
 
+ON_EDGE = "a critical point has a vanishing parameter, so masters may be more than points"
+"""Such a point is not generic: with the boundary that it lies on it may stand for several masters."""
+
 
 @dataclass(frozen=True)
 class CriticalPoints:
@@ -30,13 +33,13 @@ class CriticalPoints:
         The sector.
     count
         Number of points with multiplicity; None where it is not decided.
-    reason
-        Why it is not decided, else empty.
+    note
+        Why it is not decided, or why it may be too small; else empty.
     """
 
     sector: int
     count: int | None
-    reason: str
+    note: str
 
 
 def critical_points(family: FamilyDefinition, sector: int, prime: int, seed: int) -> CriticalPoints:
@@ -78,7 +81,7 @@ def critical_points(family: FamilyDefinition, sector: int, prime: int, seed: int
         for i in range(len(lines)):
             edge: ModularPolynomial = {tuple(int(j == i) for j in range(width)): 1}
             if count and quotient_dimension(groebner_basis([*basis, edge], prime, LARGEST), width):
-                return CriticalPoints(sector, None, "a critical point has a vanishing parameter")
+                return CriticalPoints(sector, count, ON_EDGE)
     except TooLargeError:
         return CriticalPoints(sector, None, "the system is too large")
     return CriticalPoints(sector, count, "")
