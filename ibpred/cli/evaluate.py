@@ -2,27 +2,122 @@
 
 from __future__ import annotations
 
+from fractions import Fraction
+from pathlib import Path
+from typing import TYPE_CHECKING
+
 import click
 
 from ibpred.cli.common import Shared, emit, open_chain, parse_point, parse_powers, shared_options
+from ibpred.errors import InputError, PointError
+from ibpred.exact.grammar import parse_number
+
+if TYPE_CHECKING:
+    from ibpred.family.definition import Powers
+    from ibpred.run.chain import Chain
+    from ibpred.run.grids import Axis
 
 
 @click.command()
 @shared_options
-@click.option("--at", "at", required=True, metavar="POINT", help='The point, "s=-1,t=-1/3".')
+@click.option("--at", "at", metavar="POINT", help='The point, "s=-1,t=-1/3".')
+@click.option(
+    "--grid",
+    "grids",
+    multiple=True,
+    metavar="RANGE",
+    help='Points along an invariant, "t=-0.9:-0.1:50" (first, last, how many); several make a grid.',
+)
+@click.option("--csv", "csv_file", metavar="FILE", help="Write the values of a grid as CSV.")
+@click.option(
+    "--plot", "plot_file", metavar="FILE", help="Plot the values along one --grid (.svg, .png, .pdf)."
+)
 @click.option("--digits", type=click.IntRange(1, 2000), default=30, show_default=True, metavar="N")
 @click.option(
     "--order", type=int, default=0, show_default=True, metavar="K", help="Highest power of eps wanted."
 )
 @click.option("--integral", "integrals", multiple=True, metavar="POWERS", help="[default: the masters]")
-def evaluate(shared: Shared, at: str, digits: int, order: int, integrals: tuple[str, ...]) -> None:
-    """Values of the masters, or of given integrals, as balls."""
+def evaluate(
+    shared: Shared,
+    at: str | None,
+    grids: tuple[str, ...],
+    csv_file: str | None,
+    plot_file: str | None,
+    digits: int,
+    order: int,
+    integrals: tuple[str, ...],
+) -> None:
+    """Values of the masters, or of given integrals, at a point or on a grid."""
     from ibpred.report.json_tables import values_data
     from ibpred.report.text import values_text
 
-    point = parse_point(at)
+    if at is None and not grids:
+        raise InputError('no point: give --at "s=-1,t=-1/3" or --grid "t=-0.9:-0.1:50"')
+    if not grids and (csv_file or plot_file):
+        raise InputError("--csv and --plot need a --grid")
+    point = parse_point(at) if at is not None else {}
+    axes = tuple(parse_axis(text) for text in grids)
     wanted = tuple(parse_powers(text, "--integral") for text in integrals)
     with open_chain(shared) as chain:
+        if axes:
+            _on_grid(shared, chain, point, axes, wanted, order, digits, csv_file, plot_file)
+            return
         values = chain.evaluate(point, wanted, order, digits)
         data = values_data(chain.definition, point, digits, values)
     emit(shared, data, lambda: values_text(data))
+
+
+def parse_axis(text: str) -> Axis:
+    """A range ``NAME=FIRST:LAST:COUNT``.
+
+    Raises
+    ------
+    PointError
+        If it is none.
+    """
+    from ibpred.run.grids import Axis
+
+    name, equals, rest = text.partition("=")
+    parts = rest.split(":")
+    if not equals or not name.strip() or len(parts) != 3 or not parts[2].strip().isdigit():
+        raise PointError(f'{text!r} is no range; write NAME=FIRST:LAST:COUNT, e.g. "t=-0.9:-0.1:50"')
+    first, last, count = parse_number(parts[0].strip()), parse_number(parts[1].strip()), int(parts[2])
+    if count < 2 or first == last:
+        raise PointError(f"the range {text!r} needs two different ends and at least two points")
+    step = Fraction(last - first, count - 1)
+    return Axis(name.strip(), tuple(first + step * i for i in range(count)))
+
+
+def _on_grid(
+    shared: Shared,
+    chain: Chain,
+    point: dict[str, Fraction],
+    axes: tuple[Axis, ...],
+    wanted: tuple[Powers, ...],
+    order: int,
+    digits: int,
+    csv_file: str | None,
+    plot_file: str | None,
+) -> None:
+    from ibpred.report.grids import grid_csv, grid_data, grid_text
+    from ibpred.report.plots import check_plot, curve_figure
+    from ibpred.run.files import write_file
+    from ibpred.run.grids import evaluate_grid
+
+    kind = Path(plot_file).suffix.lstrip(".").lower() if plot_file else ""
+    if plot_file:
+        check_plot(kind, len(axes))
+    grid = evaluate_grid(chain, point, axes, wanted, order, digits)
+    data = grid_data(
+        chain.definition,
+        {axis.name: axis.values for axis in axes},
+        digits,
+        grid.values,
+        grid.left_out,
+        grid.thresholds,
+    )
+    if csv_file:
+        write_file(Path(csv_file), grid_csv(data))
+    if plot_file:
+        write_file(Path(plot_file), curve_figure(data, kind))
+    emit(shared, data, lambda: grid_text(data))

@@ -3,13 +3,11 @@
 from __future__ import annotations
 
 import json
-import os
-import tempfile
 from pathlib import Path
 from typing import Any
 
 from ibpred.epsform.form import EpsilonForm
-from ibpred.errors import InputError, UnfinishedError, UnwritableError
+from ibpred.errors import InputError, UnfinishedError
 from ibpred.exact.rational import Rational
 from ibpred.family.signs import euclidean_signs
 from ibpred.iterated.solution import letter_roots
@@ -108,22 +106,3 @@ def chain_material(chain: Chain, order: int, digits: int) -> Material:
     except UnfinishedError as error:
         notes.append(f"no boundary values: {error}")
     return Material(family, differential, epsilon, solution, tuple(tables), signs, tuple(notes))
-
-
-def write_file(path: Path, text: str) -> None:
-    """Write a file by a temporary name, so that it appears whole or not at all.
-
-    Raises
-    ------
-    UnwritableError
-        If it cannot be written.
-    """
-    try:
-        path.parent.mkdir(parents=True, exist_ok=True)
-        handle, fresh = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}-")
-        with os.fdopen(handle, "w", encoding="utf-8") as file:
-            file.write(text)
-        os.chmod(fresh, 0o644)
-        os.replace(fresh, path)
-    except OSError as error:
-        raise UnwritableError(f"{path} cannot be written ({error.strerror}); choose another file") from error

@@ -50,8 +50,8 @@ def check_writable(folder: Path) -> None:
         ) from error
 
 
-def write_file(path: Path, text: str) -> None:
-    """Write a text file; an old one is replaced as a whole.
+def write_file(path: Path, content: str | bytes) -> None:
+    """Write a file (text as UTF-8); an old one is replaced as a whole.
 
     Raises
     ------
@@ -62,8 +62,8 @@ def write_file(path: Path, text: str) -> None:
         path.parent.mkdir(parents=True, exist_ok=True)
         handle, fresh = tempfile.mkstemp(prefix=f".{path.name}-", dir=path.parent)
         try:
-            with os.fdopen(handle, "w", encoding="utf-8") as stream:
-                stream.write(text)
+            with os.fdopen(handle, "wb") as stream:
+                stream.write(content.encode() if isinstance(content, str) else content)
             os.chmod(fresh, 0o644)
             os.replace(fresh, path)
         except OSError:
