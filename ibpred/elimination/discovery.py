@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -117,7 +117,14 @@ def _wanted(wanted: Sequence[int], columns: int) -> NDArray[np.int32]:
     return array.astype(np.int32)
 
 
-def _eliminate(system: SparseSystem, point: Sequence[int], prime: int, mode: int) -> Discovery:
+def _eliminate(
+    system: SparseSystem,
+    point: Sequence[int],
+    prime: int,
+    mode: int,
+    stops: Sequence[int] = (),
+    reached: Callable[[int], None] | None = None,
+) -> Discovery:
     check_system(system)
     values = point_values(system.table, point, prime)
     found = eliminate(
@@ -128,6 +135,8 @@ def _eliminate(system: SparseSystem, point: Sequence[int], prime: int, mode: int
         values,
         float(prime),
         mode,
+        stops,
+        reached,
     )
     *arrays, operations = found
     kept, pivot, pivot_row, row_start, row_column, row_value, used_start, used = arrays
@@ -147,7 +156,13 @@ def _eliminate(system: SparseSystem, point: Sequence[int], prime: int, mode: int
     )
 
 
-def discover(system: SparseSystem, point: Sequence[int], prime: int) -> Discovery:
+def discover(
+    system: SparseSystem,
+    point: Sequence[int],
+    prime: int,
+    stops: Sequence[int] = (),
+    reached: Callable[[int], None] | None = None,
+) -> Discovery:
     """Eliminate a system at one point: independent rows, pivots, reduced rows, dependencies.
 
     Rows are tried in order; each is reduced by all earlier ones wherever possible, and its largest
@@ -162,6 +177,8 @@ def discover(system: SparseSystem, point: Sequence[int], prime: int) -> Discover
         Values of the table's variables; should be random.
     prime
         An odd prime below 2**49.
+    stops, reached
+        Ascending numbers of rows; `reached` is told, as the work goes on, how many of them are behind.
 
     Raises
     ------
@@ -170,7 +187,7 @@ def discover(system: SparseSystem, point: Sequence[int], prime: int) -> Discover
     ValueError
         If the system is malformed.
     """
-    return _eliminate(system, point, prime, FULL)
+    return _eliminate(system, point, prime, FULL, stops, reached)
 
 
 def discover_leading(system: SparseSystem, point: Sequence[int], prime: int) -> Discovery:

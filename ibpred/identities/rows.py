@@ -38,6 +38,8 @@ class IntegralRows:
     start, column, coefficient
         Row r holds the entries ``start[r]:start[r+1]``, columns descending. Rows follow the order of
         their seeds; definitions of quantities come last.
+    sector_ends
+        int64: numbers of rows at which the seeds of a sector end, ascending.
     variables, exponents, values
         The table of coefficients: polynomials in `variables`, (monomials, variables) and
         (coefficients, monomials).
@@ -49,6 +51,7 @@ class IntegralRows:
     start: IntArray
     column: NDArray[np.int32]
     coefficient: NDArray[np.int32]
+    sector_ends: IntArray
     variables: tuple[str, ...]
     exponents: IntArray
     values: IntArray
@@ -287,10 +290,13 @@ def _compress(
     kept = column >= 0
     # rows: in the order of their seeds, definitions last
     rank = np.arange(seeds + quantities)
+    sector_of_row = np.zeros((seeds, 2), dtype=np.int64)
     if parts:
         families = np.concatenate([np.full(len(part.owners), number) for number, part in parts])
         stacked = np.vstack([part.owners for _, part in parts])
-        rank[order_columns(stacked, families)] = np.arange(seeds)
+        by_seed = order_columns(stacked, families)
+        rank[by_seed] = np.arange(seeds)
+        sector_of_row = np.column_stack([families, key_columns(stacked)[1]])[by_seed]
     own = np.arange(quantities)
     row = np.concatenate([rank[row[kept]], own + seeds])
     column = np.concatenate([column[kept], own + len(order)])
@@ -298,6 +304,8 @@ def _compress(
     sorting = np.argsort(row * (len(order) + quantities + 1) - column, kind="stable")
     row = row[sorting]
     begins = np.flatnonzero(np.concatenate([[True], row[1:] != row[:-1]])) if len(row) else row
+    written = sector_of_row[row[begins][row[begins] < seeds]]
+    ends = np.flatnonzero((written[1:] != written[:-1]).any(axis=1)) + 1
     exponents, values = pool.arrays()
     return IntegralRows(
         vectors[alive[order]],
@@ -306,6 +314,7 @@ def _compress(
         np.append(begins, len(row)).astype(np.int64),
         column[sorting].astype(np.int32),
         coefficient[sorting].astype(np.int32),
+        np.append(ends, len(written)).astype(np.int64),
         pool.variables,
         exponents,
         values,

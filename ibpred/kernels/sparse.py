@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Sequence
 from typing import Any
 
 import numpy as np
@@ -151,6 +152,8 @@ def eliminate(
     coefficient_values: Any,
     p: float,
     mode: int,
+    stops: Sequence[int] = (),
+    reached: Callable[[int], None] | None = None,
 ) -> tuple[Any, ...]:
     """Eliminate the rows of a system in the given order.
 
@@ -166,6 +169,8 @@ def eliminate(
         The prime.
     mode
         `FULL` or `LEADING`.
+    stops, reached
+        Ascending numbers of rows; `reached` is told how many of them are behind.
 
     Returns
     -------
@@ -199,34 +204,37 @@ def eliminate(
     row_value = np.empty(room, np.float64)
     used = np.empty(room, np.int32)
     state = np.zeros(5, np.int64)
-    while state[0] < rows:
-        _eliminate_rows(
-            start,
-            column,
-            coefficient,
-            coefficient_values,
-            bottom,
-            middle,
-            top,
-            work,
-            present,
-            tail,
-            sources,
-            kept,
-            pivot,
-            pivot_row,
-            row_start,
-            row_column,
-            row_value,
-            used_start,
-            used,
-            state,
-            p,
-            mode,
-        )
-        row_column = grown(row_column, int(state[2]))
-        row_value = grown(row_value, int(state[2]))
-        used = grown(used, int(state[3]))
+    for number, stop in enumerate((*stops, rows), start=1):
+        while state[0] < stop:
+            _eliminate_rows(
+                start[: stop + 1],
+                column,
+                coefficient,
+                coefficient_values,
+                bottom,
+                middle,
+                top,
+                work,
+                present,
+                tail,
+                sources,
+                kept,
+                pivot,
+                pivot_row,
+                row_start,
+                row_column,
+                row_value,
+                used_start,
+                used,
+                state,
+                p,
+                mode,
+            )
+            row_column = grown(row_column, int(state[2]))
+            row_value = grown(row_value, int(state[2]))
+            used = grown(used, int(state[3]))
+        if reached is not None and number <= len(stops):
+            reached(number)
     rank = int(state[1])
     stored, listed = row_start[rank], used_start[rank]
     return (

@@ -116,7 +116,7 @@ def find_masters(
     preferred
         Integrals that are to be masters; they are ranked simplest in their sectors.
     progress
-        Told about each trial.
+        Told about each trial and its sectors.
 
     Raises
     ------
@@ -156,7 +156,7 @@ def find_common_masters(
     preferred
         Integrals that are to be masters; they are ranked simplest in their sectors.
     progress
-        Told about each trial.
+        Told about each trial and its sectors.
 
     Raises
     ------
@@ -176,12 +176,11 @@ def find_common_masters(
     point = random_point(members[0].family, prime, seed)
     trials: list[MastersTrial] = []
     last: tuple[Integral, ...] | None = None
-    progress.stage("master integrals")
     for depth in DEPTHS:
+        progress.stage(f"masters: sectors, seeds with {depth.dots} dots and rank {depth.rank}")
         rows = write_rows(members, full_plans(members, roots, depth), preferred=preferred)
-        found, settled = _irreducible(rows, depth, point, prime)
+        found, settled = _irreducible(rows, depth, point, prime, progress)
         trials.append(MastersTrial(depth.dots, depth.rank, len(rows.start) - 1, len(found)))
-        progress.advance(len(trials), None)
         if found == last and settled:
             _check_preferred(members, preferred, found)
             families = tuple(member.family.name for member in members)
@@ -195,12 +194,18 @@ def find_common_masters(
 
 
 def _irreducible(
-    rows: IntegralRows, depth: Depth, point: tuple[int, ...], prime: int
+    rows: IntegralRows, depth: Depth, point: tuple[int, ...], prime: int, progress: Progress
 ) -> tuple[tuple[Integral, ...], bool]:
     """What the integrals well inside the seeds reduce to, and whether all of that is inside as well."""
     _, _, dots, rank = key_columns(rows.powers)
     inside = np.flatnonzero((dots <= depth.dots) & (rank < depth.rank))
-    solution = reduced(discover(sparse_system(rows), point, prime), inside.tolist())
+    ends = rows.sector_ends.tolist()
+
+    def reached(sectors: int) -> None:
+        progress.advance(sectors, len(ends))
+
+    discovery = discover(sparse_system(rows), point, prime, ends, reached)
+    solution = reduced(discovery, inside.tolist())
     masters = tuple(rows.integral(column) for column in solution.masters)
     return masters, set(solution.masters) <= set(inside.tolist())
 

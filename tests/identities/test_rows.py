@@ -145,6 +145,10 @@ def test_rows_are_well_formed(make) -> None:
         assert len(columns)
         assert np.all(np.diff(columns) < 0)
     assert rows.coefficient.min() > 0
+    ends = rows.sector_ends.tolist()
+    assert ends[-1] == len(rows.start) - 1
+    assert ends == sorted(set(ends))
+    assert len(ends) >= len(seeded_sectors(analysis))
 
 
 def test_preferred_integrals_come_first_in_their_sector() -> None:

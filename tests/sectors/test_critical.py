@@ -49,7 +49,7 @@ def test_equal_masses_do_not_change_the_count() -> None:
 
 
 def test_double_boxes() -> None:
-    """Two masters in the top sectors: Smirnov, Veretin, hep-ph/9907385; Tausk, hep-ph/9909506; from memory."""
+    """Two masters in the top sectors: Smirnov, Veretin, hep-ph/9907385; Tausk, hep-ph/9909506 (memory)."""
     assert count("planar-double-box", *range(7)) == 2
     assert count("crossed-double-box", *range(7)) == 2
 
