@@ -12,14 +12,14 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from itertools import product
 
 import flint
 import networkx as nx
+import numpy as np
 
 from ibpred.family.definition import Graph, Line
 
-_MOST_CUTS = 3**12  # vectors of the cut space that are looked at; about thirteen vertices
+_MOST_VERTICES = 11  # the vectors that may be vertices are all looked at: 3^10 of them
 
 Item = tuple[str, int]
 """What a cover uses once: a line backwards or forwards (``"-"``, ``"+"``), or a leg (``"leg"``)."""
@@ -53,26 +53,29 @@ def recognise(lines: Sequence[Line], loops: int, external: Sequence[str]) -> Gra
     Graph or None
         Momentum is conserved at each of its vertices, numbered from 1 in the order in which the edges reach
         them. Where several graphs do (they have equal U and F), the first one found. None if there is none: a
-        line is given by an expression, or no connected graph carries these momenta.
+        line is given by an expression, or no connected graph carries these momenta. Graphs of more than eleven
+        vertices are not sought.
     """
     momenta = [line.momentum for line in lines]
     if any(q is None for q in momenta):
         return None
     routed = [q for q in momenta if q is not None]
     count = len(routed) - loops + 1
-    if count < 1 or 3 ** (count - 1) > _MOST_CUTS:
+    if not 1 <= count <= _MOST_VERTICES:
         return None
     kernel = _kernel([q[:loops] for q in routed])
     if len(kernel) != count - 1:
         return None
-    vertices = list(_vertices(kernel, [q[loops:] for q in routed], len(external)))
+    if any(abs(c) > 1 or c.denominator != 1 for y in kernel for c in y):
+        return None  # the cut space of a graph is unimodular
+    vertices = sorted(_vertices(kernel, [q[loops:] for q in routed], len(external)), key=_size)
     moving = {e for vertex in kernel for e, c in enumerate(vertex) if c}
     wanted = {(s, e) for e in moving for s in "+-"}
     if external:
         wanted |= {("leg", g) for g in range(len(external) + 1)}
-    for chosen in _covers(frozenset(wanted), vertices):
+    for chosen in _covers(frozenset(wanted), vertices, count if wanted else 0):
         graph = _assembled(chosen, len(routed), external)
-        if graph is not None and len({v for edge in graph.edges for v in edge}) == count:
+        if graph is not None:
             return graph
     return None
 
@@ -100,32 +103,51 @@ def _vertices(
     kernel: Sequence[Sequence[Fraction]], outer: Sequence[Sequence[Fraction]], external: int
 ) -> Iterator[_Vertex]:
     """All possible vertices; zero is one where the graph may have a single vertex."""
-    lines = range(len(outer))
-    for weights in product((0, 1, -1), repeat=len(kernel)):
-        y = [sum((w * b[e] for w, b in zip(weights, kernel, strict=True)), start=Fraction(0)) for e in lines]
-        if any(abs(c) > 1 or c.denominator != 1 for c in y) or (kernel and not any(y)):
-            continue
-        ends = tuple((e, int(c)) for e, c in enumerate(y) if c)
-        inflow = [sum((y[e] * outer[e][g] for e in lines), start=Fraction(0)) for g in range(external)]
+    basis = np.array([[int(c) for c in y] for y in kernel], dtype=np.int16).reshape(len(kernel), len(outer))
+    weights = np.stack(np.unravel_index(np.arange(3 ** len(kernel)), (3,) * len(kernel))) if kernel else None
+    cuts = np.zeros((1, len(outer)), np.int16)
+    if weights is not None:
+        cuts = (weights.T.astype(np.int16) - 1) @ basis
+        cuts = cuts[(np.abs(cuts).max(axis=1) == 1)]
+    for y in cuts.tolist():
+        ends = tuple((e, c) for e, c in enumerate(y) if c)
+        inflow = [sum((c * outer[e][g] for e, c in ends), start=Fraction(0)) for g in range(external)]
         if all(c in (0, 1) for c in inflow):
             yield _Vertex(ends, tuple(g for g in range(external) if inflow[g]))
         if external and all(c in (0, -1) for c in inflow):  # the dependent leg enters here
             yield _Vertex(ends, (*(g for g in range(external) if not inflow[g]), external))
 
 
-def _covers(wanted: frozenset[Item], vertices: Sequence[_Vertex]) -> Iterator[tuple[_Vertex, ...]]:
-    """Sets of vertices that use each wanted item once, at the item with the fewest choices first."""
-    if not wanted:
-        yield ()
+def _size(vertex: _Vertex) -> int:
+    return len(vertex.ends) + len(vertex.legs)
+
+
+def _covers(
+    wanted: frozenset[Item], vertices: Sequence[_Vertex], count: int
+) -> Iterator[tuple[_Vertex, ...]]:
+    """Sets of so many vertices that use each wanted item once, at the item with the fewest choices first.
+
+    Parameters
+    ----------
+    vertices
+        Smallest first.
+    """
+    if not wanted or not count:
+        if not wanted and not count:
+            yield ()
         return
     fitting = [(vertex, items) for vertex in vertices if (items := vertex.items()) <= wanted]
+    if not fitting:
+        return
+    most = len(wanted) - (count - 1) * _size(fitting[0][0])  # what the smallest ones leave to a single one
+    fitting = [(vertex, items) for vertex, items in fitting if len(items) <= most]
     choices: dict[Item, list[tuple[_Vertex, frozenset[Item]]]] = {item: [] for item in sorted(wanted)}
     for vertex, items in fitting:
         for item in items:
             choices[item].append((vertex, items))
     rest = [vertex for vertex, _ in fitting]
     for vertex, items in min(choices.values(), key=len):
-        for others in _covers(wanted - items, rest):
+        for others in _covers(wanted - items, rest, count - 1):
             yield (vertex, *others)
 
 
