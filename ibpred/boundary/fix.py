@@ -18,6 +18,7 @@ from ibpred.iterated.constants import Constant
 from ibpred.iterated.series import eps_valuation
 
 _MOST_EXTRA_ORDERS = 3
+_LEAST_CORNERS = 2  # where there are more: the second one confirms the first
 
 
 @dataclass(frozen=True)
@@ -132,12 +133,12 @@ def _starts(problem: BoundaryProblem) -> tuple[int, ...]:
 def _solve(
     problem: BoundaryProblem, starts: Sequence[int], weight: int, last: int
 ) -> tuple[Determined | Undetermined, Gathered]:
-    """Visit corners until the constants are determined or no corner is left."""
+    """Visit corners until the constants are determined and confirmed, or no corner is left."""
     outcome: Determined | Undetermined = Undetermined(())
     gathered = Gathered((), ())
-    for gathered in explore(problem, last, last - min(starts)):
+    for count, gathered in enumerate(explore(problem, last, last - min(starts)), start=1):
         outcome = solve_all(gathered.conditions, starts, weight, last)
-        if isinstance(outcome, Determined):
+        if isinstance(outcome, Determined) and count >= _LEAST_CORNERS:
             break
     return outcome, gathered
 

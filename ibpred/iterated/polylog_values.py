@@ -110,16 +110,28 @@ def regularised_polylogs(
 
 
 def _to_digits(words: Sequence[Word], letters: Sequence[Place], x: Place, digits: int) -> tuple[Ball, ...]:
-    _check(words, letters, x)
     return until_accurate(
-        lambda bits: word_balls(
-            words, unit_letters(words, letters, x, bits), _logarithm(words, letters, x, bits), bits
-        ),
+        lambda bits: polylog_balls(words, letters, x, bits),
         lambda balls: balls,
         digits,
         bits_for(digits) + 40,
         _BITS_PER_DIGIT * digits + 2000,
     )
+
+
+def polylog_balls(words: Sequence[Word], letters: Sequence[Place], x: Place, bits: int) -> tuple[Ball, ...]:
+    """Values at a working precision; see `regularised_polylogs`.
+
+    Parameters
+    ----------
+    words, letters, x
+        As there.
+    bits
+        Working precision; the radius of each ball says what it has come to.
+    """
+    _check(words, letters, x)
+    logarithm = _logarithm(words, letters, x, bits)
+    return word_balls(words, unit_letters(words, letters, x, bits), logarithm, bits)
 
 
 def word_balls(

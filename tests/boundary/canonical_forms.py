@@ -91,3 +91,27 @@ def double_box_form() -> EpsilonForm:
         (-6, -9, -1, "15/2", -12, -18, 1, -1),
     )
     return diagonal_form(factors, (X, X + 1), (at_zero, at_minus_one))
+
+
+TWO = ring(("eps", "x", "y"))
+LEG_BOX_MASTERS = ((1, 0, 1, 0), (1, 0, 0, 1), (0, 1, 0, 1), (1, 1, 1, 1))
+
+
+def leg_box_form() -> EpsilonForm:
+    """Box with one off-shell leg, x = t/s, y = p4^2/s; matrices from the chain."""
+    eps, x, y = (TWO.variable(name) for name in ("eps", "x", "y"))
+    factors = (1 - 2 * eps, 1 - 2 * eps, 1 - 2 * eps, eps * x)
+    size = range(4)
+    entries = {
+        x: {(2, 2): -1, (3, 3): -1},
+        x - y: {(3, 1): -2, (3, 2): 2},
+        x - y + 1: {(3, 0): -2, (3, 1): 2, (3, 2): -2, (3, 3): 1},
+        y: {(1, 1): -1, (3, 1): 2},
+        y - 1: {(3, 0): 2, (3, 1): -2},
+    }
+    matrices = tuple(
+        tuple(tuple(Fraction(found.get((i, j), 0)) for j in size) for i in size) for found in entries.values()
+    )
+    forward = tuple(tuple(1 / factors[i] if i == j else TWO.zero for j in size) for i in size)
+    inverse = tuple(tuple(factors[i] if i == j else TWO.zero for j in size) for i in size)
+    return EpsilonForm(("x", "y"), TWO, tuple(entries), matrices, forward, inverse, ((),) * 4)
