@@ -14,6 +14,9 @@ class Progress(Protocol):
     def advance(self, done: int, total: int | None) -> None:
         """`done` units of the current part are finished, of `total` where that is known."""
 
+    def plan(self, text: str, done: int, total: int) -> None:
+        """What the current part will take, told before it gets long: `done` of `total` units so far."""
+
 
 class Silent:
     """Progress that nobody watches."""
@@ -22,6 +25,9 @@ class Silent:
         """Say nothing."""
 
     def advance(self, done: int, total: int | None) -> None:
+        """Say nothing."""
+
+    def plan(self, text: str, done: int, total: int) -> None:
         """Say nothing."""
 
 

@@ -13,17 +13,52 @@ _SECONDS_BETWEEN_LINES = 5.0
 _SECONDS_BETWEEN_DRAWS = 0.1
 
 
+class _Pace:
+    """How fast the samples of one task come."""
+
+    def __init__(self) -> None:
+        self._task = ""
+        self._began = 0.0
+
+    def stage(self, name: str) -> None:
+        """Parts of one task, ``task: part``, share one clock."""
+        task = name.partition(":")[0]
+        if task != self._task:
+            self._task, self._began = task, time.monotonic()
+
+    def left(self, done: int, total: int) -> float:
+        """Seconds that the rest will take at the pace so far."""
+        return (time.monotonic() - self._began) * max(0, total - done) / max(1, done)
+
+
+def duration(seconds: float) -> str:
+    """Words for a time that is only roughly known."""
+    for size, unit in ((86400.0, "days"), (3600.0, "h"), (60.0, "min")):
+        if seconds >= 2 * size:
+            return f"{seconds / size:.0f} {unit}"
+    return f"{seconds:.0f} s" if seconds >= 1 else "less than 1 s"
+
+
+def _plan_line(text: str, seconds: float) -> str:
+    return f"ibpred: plan: {text}; about {duration(seconds)}"
+
+
 class _Lines:
     """A line when a part of the work begins, and one every few seconds while it lasts."""
 
     def __init__(self) -> None:
         self._name = ""
         self._said = 0.0
+        self._pace = _Pace()
 
     def stage(self, name: str) -> None:
         self._name = name
         self._said = time.monotonic()
+        self._pace.stage(name)
         print(f"ibpred: {name}", file=sys.stderr, flush=True)
+
+    def plan(self, text: str, done: int, total: int) -> None:
+        print(_plan_line(text, self._pace.left(done, total)), file=sys.stderr, flush=True)
 
     def advance(self, done: int, total: int | None) -> None:
         now = time.monotonic()
@@ -31,13 +66,22 @@ class _Lines:
             return
         self._said = now
         of = f" of {total}" if total is not None else ""
+        if total is not None and done < total:
+            of += f", about {duration(self._pace.left(done, total))} left"
         print(f"ibpred: {self._name}: {done}{of}", file=sys.stderr, flush=True)
 
 
 @contextmanager
 def _bar() -> Iterator[Progress]:
     from rich.console import Console
-    from rich.progress import BarColumn, MofNCompleteColumn, SpinnerColumn, TextColumn, TimeElapsedColumn
+    from rich.progress import (
+        BarColumn,
+        MofNCompleteColumn,
+        SpinnerColumn,
+        TextColumn,
+        TimeElapsedColumn,
+        TimeRemainingColumn,
+    )
     from rich.progress import Progress as Bars
 
     columns = (
@@ -46,6 +90,7 @@ def _bar() -> Iterator[Progress]:
         BarColumn(),
         MofNCompleteColumn(),
         TimeElapsedColumn(),
+        TimeRemainingColumn(),
     )
     with Bars(*columns, console=Console(stderr=True), transient=True) as bars:
         task = bars.add_task("starting", total=None)
@@ -53,8 +98,13 @@ def _bar() -> Iterator[Progress]:
         class Bar:
             def __init__(self) -> None:
                 self._drawn = 0.0
+                self._pace = _Pace()
+
+            def plan(self, text: str, done: int, total: int) -> None:
+                bars.console.print(_plan_line(text, self._pace.left(done, total)), highlight=False)
 
             def stage(self, name: str) -> None:
+                self._pace.stage(name)
                 bars.reset(task, description=name, total=None, completed=0)
 
             def advance(self, done: int, total: int | None) -> None:

@@ -13,10 +13,9 @@ from ibpred.identities.derivatives import derivative_templates
 from ibpred.identities.quantities import template_at
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence
+from ibpred.reduction.deck import PLAIN_DECK, Deck
 from ibpred.reduction.recording import (
     Effort,
-    Sampling,
-    TapeSampler,
     check_masters,
     coefficients,
     record_quantities,
@@ -50,7 +49,7 @@ def differential_system(
     masters: Sequence[Powers],
     primes: Sequence[int],
     seed: int,
-    sampling: Sampling = TapeSampler,
+    deck: Deck = PLAIN_DECK,
     progress: Progress = SILENT,
 ) -> Derivation:
     """Differentiate the masters in every invariant (the unit included) and reduce the result.
@@ -67,8 +66,8 @@ def differential_system(
         The masters, as `find_masters` gives them.
     primes, seed
         Engine primes in the order in which they are used, and the seed of all random points.
-    sampling
-        How the tape is sampled.
+    deck
+        Where tapes are kept and played.
     progress
         Told about the parts of the work.
 
@@ -85,8 +84,8 @@ def differential_system(
         return Derivation(_system(family, masters, {}), None, None)
     templates = derivative_templates(family)
     quantities = [template_at(templates[name], tuple(powers)) for name in names for powers in masters]
-    recorded = record_quantities(family, analysis, masters, quantities, primes, seed, progress)
-    values, evidence, effort = coefficients(family, recorded, primes, seed, sampling, progress)
+    recorded = record_quantities(family, analysis, masters, quantities, primes, seed, deck, progress)
+    values, evidence, effort = coefficients(family, recorded, primes, seed, deck, progress)
     sizes = {invariant.name: invariant.dimension for invariant in family.invariants}
     weights = [integral_dimension(family, powers)[0] for powers in masters]
     entries: dict[str, list[tuple[int, int, Rational]]] = {name: [] for name in names}

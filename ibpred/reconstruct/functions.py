@@ -4,30 +4,27 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
 
 from ibpred.errors import ReconstructionError
+from ibpred.exact.polynomial import plain_terms
 from ibpred.exact.rational import Polynomial, Rational, Ring, polynomial_text
 from ibpred.exact.rational import ring as ring_of
+from ibpred.reconstruct.coefficients import CONFIRMING_POINTS, coefficients
 from ibpred.reconstruct.denominators import Probes, Structure, structure
-from ibpred.reconstruct.factors import products
-from ibpred.reconstruct.lift import chinese_remainder, rational_vector
-from ibpred.reconstruct.modular import (
-    LARGEST_BITS,
-    SMALLEST_BITS,
-    matrix_product,
-    monomials,
-    multiply,
-    residues,
-)
-from ibpred.reconstruct.numerators import numerators
+from ibpred.reconstruct.factors import factor
+from ibpred.reconstruct.modular import LARGEST_BITS, SMALLEST_BITS
+from ibpred.reconstruct.notes import FORGETFUL, Notes
+from ibpred.reconstruct.plan import UNWATCHED, Plan, Watch
 from ibpred.reconstruct.probe import Probe, equal_rows, probe
-from ibpred.reconstruct.sampling import Draws, InconsistentError, Progress, Sampler, UnluckyPrimeError
-from ibpred.reconstruct.support import universe
+from ibpred.reconstruct.sampling import Draws, InconsistentError, Sampler, UnluckyPrimeError
+from ibpred.reconstruct.sizes import primes_needed
+from ibpred.reconstruct.support import size_within
+from ibpred.reconstruct.univariate import SURPLUS
 
-_CONFIRMING_POINTS = 2
 _ATTEMPTS = 3
 
 
@@ -89,7 +86,8 @@ def reconstruct(
     ring: Ring,
     *,
     degree_limit: int = 400,
-    progress: Progress | None = None,
+    notes: Notes = FORGETFUL,
+    watch: Watch = UNWATCHED,
 ) -> Reconstruction:
     """Reconstruct every entry of a black box as a rational function over Q.
 
@@ -109,8 +107,11 @@ def reconstruct(
         Ring of the results; it holds the sampler's variables.
     degree_limit
         Largest sum of numerator and denominator degree along a line.
-    progress
-        Called with the present step and the number of samples so far.
+    notes
+        Where finished parts are kept, so that an interrupted reconstruction goes on from them; the
+        result is the same. They must belong to this black box, these primes and this seed.
+    watch
+        Told about the samples, and about the plan once degrees and denominators are known.
 
     Raises
     ------
@@ -127,42 +128,122 @@ def reconstruct(
             raise ValueError(f"the prime {prime} has not {SMALLEST_BITS} to {LARGEST_BITS} bits")
     if len(set(primes)) != len(primes):
         raise ValueError("the primes of a reconstruction must be distinct")
-    draws = Draws(sampler, seed, progress)
+    draws = Draws(sampler, seed, watch)
     order = list(primes)
-    for _ in range(_ATTEMPTS - 1):
+    for number in range(_ATTEMPTS - 1):
         try:
-            return _attempt(draws, order, ring, degree_limit)
+            return _attempt(draws, order, ring, degree_limit, notes, number)
         except InconsistentError as error:  # that prime may hide a degree: it goes to the end
             order = [prime for prime in order if prime != error.prime] + [error.prime]
-    return _attempt(draws, order, ring, degree_limit)
+    return _attempt(draws, order, ring, degree_limit, notes, _ATTEMPTS - 1)
 
 
-def _attempt(draws: Draws, primes: Sequence[int], ring: Ring, degree_limit: int) -> Reconstruction:
+@dataclass(frozen=True)
+class Outline:
+    """What is known of a black box before its numerators are interpolated; plain data, to be noted.
+
+    Attributes
+    ----------
+    label, rows
+        For each entry its number among the distinct ones; for each distinct one its first entry.
+    degrees
+        Of each distinct entry: total degrees of numerator and denominator.
+    front
+        The primes of the structure.
+    factors
+        Terms (exponents, coefficient) of each common factor.
+    powers, bounds
+        As in a `Structure`.
+    primes
+        Primes that the coefficients are expected to need.
+    samples
+        Points drawn so far.
+    """
+
+    label: tuple[int, ...]
+    rows: tuple[int, ...]
+    degrees: tuple[tuple[int, int], ...]
+    front: tuple[int, int]
+    factors: tuple[tuple[tuple[tuple[int, ...], int], ...], ...]
+    powers: tuple[tuple[int, ...], ...]
+    bounds: tuple[tuple[int, ...], ...]
+    primes: int
+    samples: int
+
+    def structure(self, own: Ring) -> Structure:
+        """The structure in arrays."""
+        return Structure(
+            tuple(factor(own.polynomial(dict(terms)), own) for terms in self.factors),
+            np.array(self.powers, dtype=np.int64).reshape(len(self.rows), len(self.factors)),
+            np.array(self.bounds, dtype=np.int64).reshape(len(self.rows), len(own.names) + 1),
+        )
+
+    def plan(self, names: tuple[str, ...]) -> Plan:
+        """What the numerators will take."""
+        terms = max((size_within(bound[:-1], bound[-1]) for bound in self.bounds), default=0)
+        samples = self.samples + self.primes * (terms + SURPLUS + CONFIRMING_POINTS)
+        top = max((above for above, _ in self.degrees), default=0)
+        bottom = max((below for _, below in self.degrees), default=0)
+        return Plan(
+            names, len(self.label), len(self.rows), (max(top, 0), bottom), terms, self.primes, samples
+        )
+
+
+def _attempt(
+    draws: Draws, primes: Sequence[int], ring: Ring, degree_limit: int, notes: Notes, number: int
+) -> Reconstruction:
     """One reconstruction with the structure taken modulo the first primes that agree."""
+    own_ring = ring_of(draws.sampler.variables)
+    draws.begin(number)
+    outline = notes.kept(
+        f"structure {number}", Outline, partial(_outline, draws, primes, degree_limit, own_ring)
+    )
+    draws.samples = outline.samples
+    plan = outline.plan(draws.sampler.variables)
+    draws.expected = plan.samples
+    draws.watch.plan(plan, draws.samples)
+    found, rows = outline.structure(own_ring), np.array(outline.rows, dtype=np.int64)
+    others = tuple(prime for prime in primes if prime not in outline.front)
+    lifted, data_primes, confirmed = coefficients(
+        draws, rows, found, outline.front[0], others, outline.primes, notes, number
+    )
+    entries = _assembled(lifted, found, own_ring, ring)
+    used_factors = [item for k, item in enumerate(found.factors) if (found.powers[:, k] > 0).any()]
+    return Reconstruction(
+        tuple(entries[i] for i in outline.label),
+        Evidence(
+            samples=draws.samples,
+            distinct=len(rows),
+            degrees=tuple(outline.degrees[i] for i in outline.label),
+            factors=tuple(polynomial_text(item.polynomial) for item in used_factors),
+            structure_primes=outline.front,
+            data_primes=tuple(data_primes),
+            confirmed=tuple(int(confirmed[i]) for i in outline.label),
+            points=CONFIRMING_POINTS,
+        ),
+    )
+
+
+def _outline(draws: Draws, primes: Sequence[int], degree_limit: int, own_ring: Ring) -> Outline:
     first, second = _agreeing_probes(draws, primes, degree_limit)
     label, rows = equal_rows(np.stack([first.label, second.label], axis=1).astype(np.uint64))
     first, second = _restricted(first, rows), _restricted(second, rows)
     slices = _slices(draws, first, rows, degree_limit)
     front = (first.line.prime, second.line.prime)
     others = tuple(prime for prime in primes if prime not in front)
-    own_ring = ring_of(draws.sampler.variables)
     found = structure(draws, Probes(rows, first, second, slices, front + others, own_ring))
-    lifted, data_primes, confirmed = _coefficients(draws, rows, found, front[0], others)
-    entries = _assembled(lifted, found, own_ring, ring)
-    degrees = first.degrees()
-    used_factors = [item for k, item in enumerate(found.factors) if (found.powers[:, k] > 0).any()]
-    return Reconstruction(
-        tuple(entries[i] for i in label),
-        Evidence(
-            samples=draws.samples,
-            distinct=len(rows),
-            degrees=tuple((int(degrees[i, 0]), int(degrees[i, 1])) for i in label),
-            factors=tuple(polynomial_text(item.polynomial) for item in used_factors),
-            structure_primes=front,
-            data_primes=tuple(data_primes),
-            confirmed=tuple(int(confirmed[i]) for i in label),
-            points=_CONFIRMING_POINTS,
-        ),
+    draws.doing = "sizes"
+    needed = primes_needed(draws, rows, found.factors, found.powers, found.bounds, (front[0], *others))
+    return Outline(
+        label=tuple(label.tolist()),
+        rows=tuple(rows.tolist()),
+        degrees=tuple((above, below) for above, below in first.degrees().tolist()),
+        front=front,
+        factors=tuple(tuple(plain_terms(item.polynomial).items()) for item in found.factors),
+        powers=tuple(map(tuple, found.powers.tolist())),
+        bounds=tuple(map(tuple, found.bounds.tolist())),
+        primes=needed,
+        samples=draws.samples,
     )
 
 
@@ -207,129 +288,6 @@ def _slices(draws: Draws, first: Probe, rows: NDArray[np.int64], degree_limit: i
         base[i], direction[i] = 0, 1
         pieces.append(probe(draws, base, direction, prime, rows, degree_limit))
     return tuple(pieces)
-
-
-@dataclass
-class _Open:
-    """A numerator in the making: residues of the coefficients seen so far."""
-
-    terms: dict[int, int]
-    modulus: int
-    lifted: tuple[dict[int, int], int] | None
-
-
-def _coefficients(
-    draws: Draws,
-    rows: NDArray[np.int64],
-    found: Structure,
-    first_prime: int,
-    others: Sequence[int],
-) -> tuple[list[tuple[dict[tuple[int, ...], int], int]], list[int], NDArray[np.int64]]:
-    """Numerators over Q: integer terms and a denominator; primes used; confirming primes."""
-    exponents, full = universe(found.bounds)
-    state = [_Open({}, 1, None) for _ in rows]
-    confirmed = np.zeros(len(rows), dtype=np.int64)
-    pending = np.arange(len(rows))
-    used: list[int] = []
-    for prime in (first_prime, *others):
-        try:
-            if used:
-                right = _confirm(draws, rows[pending], found, pending, prime, exponents, state)
-                confirmed[pending[right]] = prime
-                pending = pending[~right]
-                if not len(pending):
-                    break
-            supports = [
-                np.array(sorted(state[r].terms), dtype=np.int64) if used else full[r] for r in pending
-            ]
-            _add_prime(draws, rows, found, pending, prime, exponents, full, supports, state, first_prime)
-        except UnluckyPrimeError:
-            continue
-        used.append(prime)
-    else:
-        worst = int(pending[0]) if len(pending) else 0
-        raise ReconstructionError(
-            f"{len(pending)} of {len(rows)} distinct functions, first of them entry {int(rows[worst])}, "
-            f"were not confirmed with {len(used)} primes for coefficients; give more primes"
-        )
-    result = []
-    for item in state:
-        assert item.lifted is not None
-        terms, denominator = item.lifted
-        result.append(({tuple(int(e) for e in exponents[m]): c for m, c in terms.items()}, denominator))
-    return result, used, confirmed
-
-
-def _add_prime(
-    draws: Draws,
-    rows: NDArray[np.int64],
-    found: Structure,
-    pending: NDArray[np.int64],
-    prime: int,
-    exponents: NDArray[np.int64],
-    full: list[NDArray[np.int64]],
-    supports: list[NDArray[np.int64]],
-    state: list[_Open],
-    structure_prime: int,
-) -> None:
-    """Interpolate the pending numerators modulo one more prime and lift what can be lifted."""
-    powers = found.powers[pending]
-    image = numerators(draws, prime, rows[pending], found.factors, powers, exponents, supports)
-    again = np.nonzero(~image.fits)[0]
-    if len(again):  # a coefficient that vanishes modulo the earlier primes
-        wide = [full[pending[k]] for k in again]
-        retried = numerators(
-            draws, prime, rows[pending[again]], found.factors, powers[again], exponents, wide
-        )
-        if not retried.fits.all():
-            entry = int(rows[pending[again[np.argmin(retried.fits)]]])
-            raise InconsistentError(
-                structure_prime,
-                f"entry {entry} modulo {prime} is no polynomial of the degrees found along lines, after its "
-                "denominator was removed; the black box is not one rational function of its variables",
-            )
-        for position, failed in enumerate(again):
-            image.coefficients[failed] = retried.coefficients[position]
-            image.supports[failed] = retried.supports[position]
-    for k, r in enumerate(pending):
-        fresh = {int(m): int(c) for m, c in zip(image.supports[k], image.coefficients[k], strict=True) if c}
-        item = state[r]
-        keys = sorted(set(item.terms) | set(fresh))
-        combined = chinese_remainder(
-            [item.terms.get(m, 0) for m in keys], item.modulus, [fresh.get(m, 0) for m in keys], prime
-        )
-        item.terms, item.modulus = dict(zip(keys, combined, strict=True)), item.modulus * prime
-        numbers = rational_vector(combined, item.modulus)
-        item.lifted = None if numbers is None else (dict(zip(keys, numbers[0], strict=True)), numbers[1])
-
-
-def _confirm(
-    draws: Draws,
-    entries: NDArray[np.int64],
-    found: Structure,
-    pending: NDArray[np.int64],
-    prime: int,
-    exponents: NDArray[np.int64],
-    state: list[_Open],
-) -> NDArray[np.bool_]:
-    """Which of the lifted functions agree with the black box at fresh points modulo a fresh prime."""
-    draws.doing = "confirmation"
-    points, values = draws.scattered(_CONFIRMING_POINTS, prime, entries)
-    known, good = products(found.factors, found.powers[pending], points, prime)
-    if not good.all():
-        raise UnluckyPrimeError(prime, len(good), int(good.sum()))
-    expected = multiply(values, known, prime)
-    basis = monomials(exponents, points, prime)
-    right = np.zeros(len(pending), dtype=np.bool_)
-    for k, r in enumerate(pending):
-        lifted = state[r].lifted
-        if lifted is None or lifted[1] % prime == 0:
-            continue
-        terms, denominator = lifted
-        coefficients = residues([*terms.values()], prime)[None, :]
-        total = matrix_product(coefficients, basis[list(terms)], prime)[0]
-        right[k] = np.array_equal(total, multiply(expected[k], denominator % prime, prime))
-    return right
 
 
 def _assembled(

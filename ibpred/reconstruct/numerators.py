@@ -100,6 +100,7 @@ def numerators(
     powers: NDArray[np.int64],
     exponents: NDArray[np.int64],
     candidates: Sequence[NDArray[np.int64]],
+    primes_left: int = 1,
 ) -> Numerators:
     """Interpolate the numerators of all rows modulo a prime.
 
@@ -113,6 +114,8 @@ def numerators(
         (monomials, variables): the universe of monomials.
     candidates
         For each row the monomials (indices, sorted) that may occur.
+    primes_left
+        Primes expected to follow, this one included: for the number of samples that is announced.
 
     Raises
     ------
@@ -131,6 +134,7 @@ def numerators(
     count = _FIRST_COUNT
     while True:
         target = max((len(support) for support in supports), default=0) + SURPLUS
+        draws.expected = draws.samples + max(0, primes_left * target - sequence.usable)
         sequence = _extend(draws, sequence, min(count, target), rows, factors, powers)
         capacity = sequence.usable - SURPLUS
         if target <= sequence.usable:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Protocol
 
@@ -11,9 +10,7 @@ from numpy.typing import NDArray
 
 from ibpred.errors import ReconstructionError
 from ibpred.reconstruct.modular import Residues, add, multiply
-
-Progress = Callable[[str, int], None]
-"""Called with what is being done and the number of points sampled so far."""
+from ibpred.reconstruct.plan import Watch
 
 _CELLS = 2**22  # values per call of the sampler
 PATIENCE = 64  # lanes that may be drawn for each good one, before the prime is given up
@@ -94,16 +91,32 @@ class Draws:
         The black box.
     seed
         All random points follow from it.
-    progress
+    watch
         Told about every batch.
+
+    Attributes
+    ----------
+    samples
+        Points drawn so far.
+    expected
+        Points expected in all, where that is known.
     """
 
-    def __init__(self, sampler: Sampler, seed: int, progress: Progress | None) -> None:
+    def __init__(self, sampler: Sampler, seed: int, watch: Watch) -> None:
         self.sampler = sampler
+        self.seed = seed
         self.random = np.random.default_rng(seed)
-        self.progress = progress
+        self.watch = watch
         self.samples = 0
+        self.expected: int | None = None
         self.doing = ""
+
+    def begin(self, *part: int) -> None:
+        """Start a part whose random points depend on the seed and its name only.
+
+        So parts that an earlier run has finished can be left out.
+        """
+        self.random = np.random.default_rng([self.seed, *part])
 
     @property
     def variables(self) -> int:
@@ -140,8 +153,9 @@ class Draws:
             values[:, lanes] = found if rows is None else found[rows]
             good[lanes] = usable
             self.samples += lanes.stop - start
-            if self.progress is not None:
-                self.progress(self.doing, self.samples)
+            if self.expected is not None:
+                self.expected = max(self.expected, self.samples)
+            self.watch.samples(self.doing, self.samples, self.expected)
         return values, good
 
     def line(self, base: Residues, direction: Residues, prime: int, rows: int) -> Line:

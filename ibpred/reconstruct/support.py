@@ -39,6 +39,20 @@ def monomials_within(degrees: Sequence[int], total: int, lowest: int = 0) -> NDA
     return found[keep]
 
 
+def size_within(degrees: Sequence[int], total: int) -> int:
+    """Number of exponents with e_i <= degrees[i] and sum <= total; none for a negative total."""
+    if total < 0:
+        return 0
+    counts = [1] + [0] * total  # exponents so far by their sum
+    for degree in degrees:
+        window, fresh = 0, []
+        for k in range(total + 1):
+            window += counts[k] - (counts[k - degree - 1] if k > degree else 0)
+            fresh.append(window)
+        counts = fresh
+    return sum(counts)
+
+
 def universe(
     bounds: NDArray[np.int64],
 ) -> tuple[NDArray[np.int64], list[NDArray[np.int64]]]:

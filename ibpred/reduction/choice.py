@@ -24,8 +24,9 @@ from ibpred.identities.seeding import Depth, seeds_of_sector
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.modular import Residues, add, invert, multiply, subtract
 from ibpred.reconstruct.univariate import rational_functions
+from ibpred.reduction.deck import TapeSampler
 from ibpred.reduction.masters import Masters, find_masters
-from ibpred.reduction.recording import TapeSampler, record_quantities
+from ibpred.reduction.recording import record_quantities
 from ibpred.reduction.wanted import single
 from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.order import dots, rank, sector_of, sort_key

@@ -16,10 +16,9 @@ from ibpred.identities.quantities import Integral
 from ibpred.identities.rows import FamilyIdentities
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence
+from ibpred.reduction.deck import PLAIN_DECK, Deck
 from ibpred.reduction.recording import (
     Effort,
-    Sampling,
-    TapeSampler,
 )
 from ibpred.reduction.several import (
     CommonTable,
@@ -106,7 +105,7 @@ def reduce_by_cuts(
     masters: Sequence[Integral],
     primes: Sequence[int],
     seed: int,
-    sampling: Sampling = TapeSampler,
+    deck: Deck = PLAIN_DECK,
     progress: Progress = SILENT,
 ) -> CommonTable:
     """The table of `reduce_together`, obtained on a spanning set of cuts.
@@ -115,7 +114,7 @@ def reduce_by_cuts(
 
     Parameters
     ----------
-    members, wanted, masters, primes, seed, sampling, progress
+    members, wanted, masters, primes, seed, deck, progress
         As `reduce_together`.
 
     Raises
@@ -134,7 +133,7 @@ def reduce_by_cuts(
         progress.stage(f"cut {step + 1} of {len(cuts)}")
         on = [i for i, (number, powers) in enumerate(masters) if cut.keeps((number, sector_of(powers)))]
         part = reduce_together(
-            on_cut(members, cut), asked, [masters[i] for i in on], primes, seed, sampling, progress
+            on_cut(members, cut), asked, [masters[i] for i in on], primes, seed, deck, progress
         )
         evidence += part.evidence
         effort += part.effort

@@ -2,26 +2,28 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
+from ibpred.digest import digest
 from ibpred.elimination.discovery import Reduced, discover, reduced
 from ibpred.elimination.pruning import prune
 from ibpred.elimination.recording import record_pruned
-from ibpred.elimination.replaying import check_tape, replay
+from ibpred.elimination.replaying import check_tape
 from ibpred.elimination.system import SparseSystem
 from ibpred.elimination.tape import Tape
 from ibpred.errors import InputError, UnfinishedError
+from ibpred.exact.codec import to_data
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.identities.quantities import Integral, Quantity
 from ibpred.identities.rows import FamilyIdentities, IntegralRows, family_identities, write_rows
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence, reconstruct
-from ibpred.reconstruct.sampling import Sampler
+from ibpred.reconstruct.plan import Plan
+from ibpred.reduction.deck import PLAIN_DECK, Deck, Recorded
 from ibpred.reduction.masters import random_point
 from ibpred.reduction.seeds import GROWTH, plans_for
 from ibpred.reduction.system import sparse_system
@@ -51,58 +53,6 @@ class Effort:
     samples: int
 
 
-@dataclass(frozen=True)
-class Recorded:
-    """A validated tape for some quantities.
-
-    Attributes
-    ----------
-    masters, owners
-        The masters, in the order given, and the number of the family of each.
-    names
-        The quantities, for messages.
-    tape
-        The recorded elimination.
-    entries
-        For each output of the tape the indices of its quantity and its master.
-    rows, columns
-        Size of the system that the tape was recorded and validated on.
-    """
-
-    masters: tuple[Powers, ...]
-    owners: tuple[int, ...]
-    names: tuple[str, ...]
-    tape: Tape
-    entries: tuple[tuple[int, int], ...]
-    rows: int
-    columns: int
-
-
-@dataclass(frozen=True)
-class TapeSampler:
-    """A tape as the black box of a reconstruction."""
-
-    tape: Tape
-
-    @property
-    def variables(self) -> tuple[str, ...]:
-        return self.tape.variables
-
-    @property
-    def entries(self) -> int:
-        return len(self.tape.outputs)
-
-    def __call__(
-        self, points: NDArray[np.uint64], prime: int
-    ) -> tuple[NDArray[np.uint64], NDArray[np.bool_]]:
-        """Values and good lanes at the points."""
-        return replay(self.tape, points, prime)
-
-
-Sampling = Callable[[Tape], Sampler]
-"""How a tape is sampled: `TapeSampler` in this thread, or something that shares the work out."""
-
-
 def record_quantities(
     family: FamilyDefinition,
     analysis: SectorAnalysis,
@@ -110,6 +60,7 @@ def record_quantities(
     quantities: Sequence[Quantity],
     primes: Sequence[int],
     seed: int,
+    deck: Deck = PLAIN_DECK,
     progress: Progress = SILENT,
 ) -> Recorded:
     """Write identities deep enough that all quantities reduce to the masters, and record them.
@@ -125,6 +76,8 @@ def record_quantities(
     primes, seed
         Engine primes: the first one for the record, the second one to validate it; the seed of the random
         points.
+    deck
+        Where the tape may be kept already.
     progress
         Told about each depth that is tried.
 
@@ -135,7 +88,9 @@ def record_quantities(
         agrees with a fresh elimination elsewhere.
     """
     members = family_identities([family], [analysis])
-    return record_together(members, [(0, tuple(m)) for m in masters], quantities, primes, seed, progress)
+    return record_together(
+        members, [(0, tuple(m)) for m in masters], quantities, primes, seed, deck, progress
+    )
 
 
 def record_together(
@@ -144,6 +99,7 @@ def record_together(
     quantities: Sequence[Quantity],
     primes: Sequence[int],
     seed: int,
+    deck: Deck = PLAIN_DECK,
     progress: Progress = SILENT,
 ) -> Recorded:
     """`record_quantities` for several families that were analysed together.
@@ -154,7 +110,7 @@ def record_together(
         The families.
     masters
         The masters, as `find_common_masters` gives them.
-    quantities, primes, seed, progress
+    quantities, primes, seed, deck, progress
         As `record_quantities`.
 
     Raises
@@ -162,6 +118,26 @@ def record_together(
     UnfinishedError
         As `record_quantities`.
     """
+    key = digest(
+        [
+            "tape",
+            [[to_data(member.family), sorted(member.analysis.zero)] for member in members],
+            to_data(masters),
+            to_data(quantities),
+            [*primes[:2], seed],
+        ]
+    )
+    return deck.recorded(key, lambda: _recorded(members, masters, quantities, primes, seed, progress))
+
+
+def _recorded(
+    members: Sequence[FamilyIdentities],
+    masters: Sequence[Integral],
+    quantities: Sequence[Quantity],
+    primes: Sequence[int],
+    seed: int,
+    progress: Progress,
+) -> Recorded:
     family = members[0].family
     names = ", ".join(member.family.name for member in members)
     point = random_point(family, primes[0], seed)
@@ -253,7 +229,7 @@ def coefficients(
     recorded: Recorded,
     primes: Sequence[int],
     seed: int,
-    sampling: Sampling = TapeSampler,
+    deck: Deck = PLAIN_DECK,
     progress: Progress = SILENT,
 ) -> tuple[Mapping[tuple[int, int], Rational], Evidence | None, Effort]:
     """Reconstruct the coefficients that a tape yields, the unit set to one.
@@ -276,7 +252,14 @@ def coefficients(
     if not recorded.entries:
         return {}, None, Effort(*size, 0)
     report = _Report(progress)
-    found = reconstruct(sampling(recorded.tape), primes, seed, family.internal_ring, progress=report)
+    found = reconstruct(
+        deck.sampler(recorded.tape),
+        primes,
+        seed,
+        family.internal_ring,
+        notes=deck.notes(recorded.tape),
+        watch=report,
+    )
     values = {entry: value for entry, value in zip(recorded.entries, found.entries, strict=True) if value}
     return values, found.evidence, Effort(*size, found.evidence.samples)
 
@@ -288,11 +271,14 @@ class _Report:
         self.progress = progress
         self.step = ""
 
-    def __call__(self, step: str, samples: int) -> None:
+    def samples(self, step: str, done: int, expected: int | None) -> None:
         if step != self.step:
             self.step = step
             self.progress.stage(f"samples: {step}")
-        self.progress.advance(samples, None)
+        self.progress.advance(done, expected)
+
+    def plan(self, plan: Plan, done: int) -> None:
+        self.progress.plan(plan.text(), done, plan.samples)
 
 
 def check_masters(family: FamilyDefinition, masters: Sequence[Powers]) -> None:

@@ -12,7 +12,8 @@ from ibpred.identities.quantities import Integral, Quantity
 from ibpred.identities.rows import FamilyIdentities
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence
-from ibpred.reduction.recording import Effort, Sampling, TapeSampler, coefficients, record_together
+from ibpred.reduction.deck import PLAIN_DECK, Deck
+from ibpred.reduction.recording import Effort, coefficients, record_together
 from ibpred.reduction.wanted import Combination, check_powers, single
 from ibpred.sectors.order import sector_of
 
@@ -76,7 +77,7 @@ def reduce_together(
     masters: Sequence[Integral],
     primes: Sequence[int],
     seed: int,
-    sampling: Sampling = TapeSampler,
+    deck: Deck = PLAIN_DECK,
     progress: Progress = SILENT,
 ) -> CommonTable:
     """Reduce integrals of several families to common masters.
@@ -92,8 +93,8 @@ def reduce_together(
     primes, seed
         Engine primes in the order in which they are used (the first two record and validate the
         tape), and the seed of all random points.
-    sampling
-        How the tape is sampled.
+    deck
+        Where tapes are kept and played.
     progress
         Told about the parts of the work.
 
@@ -112,9 +113,9 @@ def reduce_together(
     if not alive:
         return CommonTable(families, tuple(masters), reductions, (), ())
     quantities = [quantity_of(members, integral) for integral in alive]
-    recorded = record_together(members, masters, quantities, primes, seed, progress)
+    recorded = record_together(members, masters, quantities, primes, seed, deck, progress)
     family = members[0].family
-    values, evidence, effort = coefficients(family, recorded, primes, seed, sampling, progress)
+    values, evidence, effort = coefficients(family, recorded, primes, seed, deck, progress)
     rows: dict[int, list[tuple[int, Rational]]] = {}
     for (quantity, master), value in sorted(values.items()):
         # all families have the kinematics of the first, but lines of their own dimensions

@@ -12,10 +12,9 @@ from ibpred.family.units import integral_dimension, restore_unit, set_unit
 from ibpred.identities.quantities import combination
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence
+from ibpred.reduction.deck import PLAIN_DECK, Deck
 from ibpred.reduction.recording import (
     Effort,
-    Sampling,
-    TapeSampler,
     check_masters,
     coefficients,
     record_quantities,
@@ -106,7 +105,7 @@ def reduce_sums(
     masters: Sequence[Powers],
     primes: Sequence[int],
     seed: int,
-    sampling: Sampling = TapeSampler,
+    deck: Deck = PLAIN_DECK,
     progress: Progress = SILENT,
 ) -> ReducedSums:
     """Reduce sums of integrals to masters, without reducing the integrals one by one.
@@ -124,8 +123,8 @@ def reduce_sums(
         The masters, as `find_masters` gives them.
     primes, seed
         Engine primes in the order in which they are used, and the seed of all random points.
-    sampling
-        How the tape is sampled.
+    deck
+        Where tapes are kept and played.
     progress
         Told about the parts of the work.
 
@@ -151,8 +150,8 @@ def reduce_sums(
         quantities.append(combination(name, alive, family.internal_ring))
     if not any(quantity.terms for quantity in quantities):
         return ReducedSums(family.name, tuple(masters), dict.fromkeys(sums, ()), None, None)
-    recorded = record_quantities(family, analysis, masters, quantities, primes, seed, progress)
-    values, evidence, effort = coefficients(family, recorded, primes, seed, sampling, progress)
+    recorded = record_quantities(family, analysis, masters, quantities, primes, seed, deck, progress)
+    values, evidence, effort = coefficients(family, recorded, primes, seed, deck, progress)
     rows: dict[int, list[tuple[int, Rational]]] = {}
     for (quantity, master), value in sorted(values.items()):
         theirs, _ = integral_dimension(family, recorded.masters[master])

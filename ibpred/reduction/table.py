@@ -9,7 +9,8 @@ from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.identities.rows import family_identities
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence
-from ibpred.reduction.recording import Effort, Sampling, TapeSampler
+from ibpred.reduction.deck import PLAIN_DECK, Deck
+from ibpred.reduction.recording import Effort
 from ibpred.reduction.several import reduce_together
 from ibpred.reduction.wanted import Combination
 from ibpred.sectors.analysis import SectorAnalysis
@@ -48,7 +49,7 @@ def reduce_integrals(
     masters: Sequence[Powers],
     primes: Sequence[int],
     seed: int,
-    sampling: Sampling = TapeSampler,
+    deck: Deck = PLAIN_DECK,
     progress: Progress = SILENT,
 ) -> ReductionTable:
     """Reduce integrals to masters.
@@ -64,8 +65,8 @@ def reduce_integrals(
     primes, seed
         Engine primes in the order in which they are used (the first two record and validate the
         tape), and the seed of all random points.
-    sampling
-        How the tape is sampled.
+    deck
+        Where tapes are kept and played.
     progress
         Told about the parts of the work.
 
@@ -83,7 +84,7 @@ def reduce_integrals(
         [(0, tuple(powers)) for powers in masters],
         primes,
         seed,
-        sampling,
+        deck,
         progress,
     )
     return ReductionTable(

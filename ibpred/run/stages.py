@@ -6,12 +6,12 @@ from collections.abc import Callable
 from typing import TypeVar
 
 from ibpred.digest import digest
-from ibpred.elimination.tape import Tape
 from ibpred.exact.codec import from_data, to_data
 from ibpred.exact.primes import first_primes
 from ibpred.progress import Progress
-from ibpred.run.sampling import Meter, StoredSampler
+from ibpred.run.deck import Meter, StoredDeck
 from ibpred.run.store import Store
+from ibpred.run.workers import Threads, Workers
 
 SEED = 20_260_301
 """Seed of every random choice of a run, so that the same input gives the same bytes."""
@@ -34,15 +34,16 @@ class Stages:
     progress
         Told what is being done.
     workers
-        Threads that sample the reduction.
+        Who replays the tapes; a number of threads of this process.
     """
 
-    def __init__(self, identity: str, store: Store, progress: Progress, workers: int) -> None:
+    def __init__(self, identity: str, store: Store, progress: Progress, workers: int | Workers) -> None:
         self.identity = identity
         self.store = store
         self.progress = progress
-        self.workers = workers
+        self.workers: Workers = Threads(workers) if isinstance(workers, int) else workers
         self.meter = Meter()
+        self.deck = StoredDeck(store, self.workers, self.meter)
         self.primes = first_primes(PRIMES)
 
     def _kept(self, stage: str, kind: type[R], options: object, compute: Callable[[], R]) -> R:
@@ -50,10 +51,14 @@ class Stages:
         stored = self.store.get(key)
         if stored is not None:
             return from_data(kind, stored)
-        result = compute()
-        self.store.put(key, stage, to_data(result))
+        with self.deck.working_for(key):
+            result = compute()
+        with self.store.transaction():
+            self.store.put(key, stage, to_data(result))
+            self.store.forget_work(key)
         return result
 
-    def sampling(self, tape: Tape) -> StoredSampler:
-        """How the tapes of this run are sampled."""
-        return StoredSampler(tape, self.workers, self.store, self.meter)
+    @property
+    def sampling(self) -> StoredDeck:
+        """Where the tapes of this run are kept and played."""
+        return self.deck

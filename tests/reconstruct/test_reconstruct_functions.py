@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 import pytest
@@ -11,10 +12,11 @@ from hypothesis import strategies as st
 from numpy.typing import NDArray
 
 from ibpred.errors import ReconstructionError
+from ibpred.exact.codec import from_data, to_data
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes
 from ibpred.exact.rational import Rational, Ring, ring
-from ibpred.reconstruct import reconstruct
+from ibpred.reconstruct import Plan, reconstruct
 from ibpred.reconstruct.sampling import UnluckyPrimeError
 
 Residues = NDArray[np.uint64]
@@ -267,13 +269,105 @@ def test_wrong_shapes_and_primes_are_refused() -> None:
         reconstruct(box, first_primes(4), 1, ring(("d",)))
 
 
-def test_progress_is_told() -> None:
-    told: list[tuple[str, int]] = []
-    functions = read(["d/(x*d-1)", "1"], ("d", "x"))
+class Listener:
+    """Remembers what a reconstruction tells."""
+
+    def __init__(self) -> None:
+        self.told: list[tuple[str, int, int | None]] = []
+        self.plans: list[Plan] = []
+
+    def samples(self, step: str, done: int, expected: int | None) -> None:
+        self.told.append((step, done, expected))
+
+    def plan(self, plan: Plan, done: int) -> None:
+        assert done == self.told[-1][1]
+        self.plans.append(plan)
+
+
+def test_the_plan_is_told_and_kept_true() -> None:
+    listener = Listener()
+    functions = read(["d/(x*d-1)", "1", "(7*d^3*x-5/3*x^2)/(d-4)"], ("d", "x"))
     box = Known(functions, ("d", "x"))
-    result = reconstruct(box, first_primes(4), 1, ring(("d", "x")), progress=lambda *now: told.append(now))
-    assert told[-1][1] == result.evidence.samples
-    assert {"degrees", "denominators", "numerators", "confirmation"} == {step for step, _ in told}
+    result = reconstruct(box, first_primes(4), 1, ring(("d", "x")), watch=listener)
+    (plan,) = listener.plans
+    assert (plan.variables, plan.entries, plan.distinct, plan.degrees) == (("d", "x"), 3, 3, (4, 2))
+    assert plan.primes == len(result.evidence.data_primes) == 1
+    assert plan.samples >= result.evidence.samples
+    assert "2 variables (d, x)" in plan.text()
+    assert listener.told[-1][1] == result.evidence.samples
+    assert {"degrees", "denominators", "sizes", "numerators", "confirmation"} == {t[0] for t in listener.told}
+    for _, done, expected in listener.told:
+        assert expected is None or done <= expected <= plan.samples
+
+
+def test_primes_of_large_coefficients_are_foreseen() -> None:
+    for digits in (30, 100, 300):
+        listener = Listener()
+        number = 10**digits + 7
+        functions = read([f"({number}*d+x)/(d*x-1)", f"x/{number}"], ("d", "x"))
+        found = reconstruct(
+            Known(functions, ("d", "x")), first_primes(40), 2, ring(("d", "x")), watch=listener
+        )
+        (plan,) = listener.plans
+        assert abs(plan.primes - len(found.evidence.data_primes)) <= 1
+
+
+class Memory:
+    """Notes in JSON data, as a store keeps them; the black box may be cut off after some samples."""
+
+    def __init__(self) -> None:
+        self.notes: dict[str, object] = {}
+
+    def kept(self, name, kind, compute):
+        if name not in self.notes:
+            self.notes[name] = to_data(compute())
+        return from_data(kind, self.notes[name])
+
+
+class CutError(Exception):
+    pass
+
+
+@dataclass
+class Cut:
+    box: Known
+    left: int
+
+    @property
+    def variables(self) -> tuple[str, ...]:
+        return self.box.variables
+
+    @property
+    def entries(self) -> int:
+        return self.box.entries
+
+    def __call__(self, points, prime):
+        self.left -= points.shape[1]
+        if self.left < 0:
+            raise CutError
+        return self.box(points, prime)
+
+
+def test_an_interrupted_reconstruction_goes_on_from_its_notes() -> None:
+    """Cut at many places and resumed it gives what an undisturbed one gives, evidence included."""
+    number = 10**60 + 7
+    functions = read([f"({number}*d^2+x)/(d*x-1)", f"x/{number}", "d^3/(x-2)"], ("d", "x"))
+    box, primes, target = Known(functions, ("d", "x")), first_primes(20), ring(("d", "x"))
+    listener = Listener()
+    whole = reconstruct(box, primes, 5, target, watch=listener)
+    structure = min(done for step, done, _ in listener.told if step == "numerators")
+    for allowed in range(structure, whole.evidence.samples, 37):
+        memory = Memory()
+        runs = 1
+        while True:
+            try:
+                found = reconstruct(Cut(box, allowed), primes, 5, target, notes=memory)
+                break
+            except CutError:
+                runs += 1
+                assert runs < 30
+        assert runs > 1
+        assert found == whole
 
 
 def test_two_hundred_entries_of_degree_six() -> None:
