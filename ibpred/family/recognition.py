@@ -53,8 +53,8 @@ def recognise(lines: Sequence[Line], loops: int, external: Sequence[str]) -> Gra
     Graph or None
         Momentum is conserved at each of its vertices, numbered from 1 in the order in which the edges reach
         them. Where several graphs do (they have equal U and F), the first one found. None if there is none: a
-        line is given by an expression, or no connected graph carries these momenta. Graphs of more than eleven
-        vertices are not sought.
+        line is given by an expression, or no connected graph carries these momenta. Graphs of more than
+        eleven vertices are not sought.
     """
     momenta = [line.momentum for line in lines]
     if any(q is None for q in momenta):

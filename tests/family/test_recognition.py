@@ -20,6 +20,7 @@ from ibpred.family.recognition import recognise
 
 FAMILIES = sorted((Path(__file__).parents[2] / "families").glob("*.toml"))
 LINEAR = {
+    "eikonal-vertex",
     "heavy-quark-self-energy",
     "heavy-quark-self-energy-crossed",
     "heavy-quark-self-energy-two-loop",
