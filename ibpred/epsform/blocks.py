@@ -8,6 +8,7 @@ from fractions import Fraction
 
 from ibpred.epsform.form import Matrix
 from ibpred.epsform.matrices import Constants
+from ibpred.epsform.tags import Tag
 from ibpred.exact.rational import Rational
 
 
@@ -35,7 +36,7 @@ class Exponent:
 
 @dataclass(frozen=True)
 class Block:
-    """A diagonal block in epsilon-form: ``I = T f``, ``f' = eps sum_l R_l dlog(letter_l)/dx f``.
+    """A diagonal block in epsilon-form: ``sqrt(tag) I = T f``, ``f' = eps sum_l R_l dlog(letter_l)/dx f``.
 
     Attributes
     ----------
@@ -43,11 +44,14 @@ class Block:
         T and its inverse.
     residues
         R_l by the text of the letter; letters with a zero matrix are left out.
+    tag
+        Polynomials whose product's square root multiplies all functions of the block.
     """
 
     transformation: Matrix
     inverse: Matrix
     residues: Mapping[str, Constants]
+    tag: Tag = ()
 
 
 @dataclass(frozen=True)
@@ -147,4 +151,12 @@ def conjugate(point: str) -> str:
     return (
         f"the roots of {point} have different residues, so an odd letter with the square root of its "
         "discriminant is needed: such letters are not supported yet"
+    )
+
+
+def not_fuchsian_root(point: str) -> str:
+    """The sentence for a coupling between functions with different roots whose pole cannot be lowered."""
+    return (
+        f"the coupling between functions with different square roots has a pole at {point} that no change "
+        "of basis lowers to order one"
     )

@@ -19,10 +19,11 @@ from random import Random
 
 import flint
 
-from ibpred.epsform.blocks import Finding, conjugate, moving
+from ibpred.epsform.blocks import Finding
 from ibpred.epsform.content import content
 from ibpred.epsform.decompose import conjugated, constants, exact_matrix
 from ibpred.epsform.form import Matrix
+from ibpred.epsform.fuchsian import Fuchsian, Stuck
 from ibpred.epsform.intertwine import (
     closure,
     intertwiners,
@@ -32,19 +33,11 @@ from ibpred.epsform.intertwine import (
 )
 from ibpred.epsform.matrices import Constants, inverse, lifted, part, product
 from ibpred.epsform.pencil import ModularMatrix
-from ibpred.epsform.places import Place, places_of
 from ibpred.epsform.sampling import Sample, reconstruct_in_eps
 from ibpred.epsform.structure import reachable
+from ibpred.epsform.tags import Tag
 from ibpred.errors import UnfinishedError
 from ibpred.exact.rational import Rational, Ring
-
-
-@dataclass(frozen=True)
-class Fuchsian:
-    """``A = sum_l R_l(eps) dlog(letter_l)``."""
-
-    places: tuple[Place, ...]
-    residues: tuple[Matrix, ...]
 
 
 @dataclass(frozen=True)
@@ -55,55 +48,11 @@ class Factored:
     residues: Mapping[str, Constants]
 
 
-@dataclass(frozen=True)
-class Stuck:
-    """A block of rows whose coupling has no epsilon-form."""
-
-    block: int
-    finding: Finding
-
-
-def fuchsian(matrices: Mapping[str, Matrix], blocks: Sequence[range], ring: Ring) -> Fuchsian | Stuck:
-    """Residues of an integrable system with simple poles that vanishes at infinity in every ratio."""
-    owner = {row: k for k, block in enumerate(blocks) for row in block}
-    places: dict[str, Place] = {}
-    residues: list[Matrix] = []
-    for name, matrix in matrices.items():
-        for place in places_of((e for row in matrix for e in row), ring, name):
-            # a letter with two ratios has the same residue in both, since the system is integrable
-            if place.text() in places:
-                continue
-            places[place.text()] = place
-            rows = []
-            for i, row in enumerate(matrix):
-                values = []
-                for entry in row:
-                    residue = _residue(entry, place, ring)
-                    if isinstance(residue, Finding):
-                        return Stuck(owner[i], residue)
-                    values.append(residue)
-                rows.append(tuple(values))
-            residues.append(tuple(rows))
-    return Fuchsian(tuple(places.values()), tuple(residues))
-
-
-def _residue(entry: Rational, place: Place, ring: Ring) -> Rational | Finding:
-    if not entry:
-        return ring.zero
-    residue = place.divide(place.principal(entry, 1), place.slope())
-    if any(residue[1:]):
-        return Finding(conjugate(place.text()), ())
-    if place.moves and residue[0]:
-        return Finding(moving(place.text()), ())
-    if any(variable != "eps" for variable in residue[0].variables()):
-        return Finding(f"the residue of the coupling at {place.text()} depends on the other ratios", ())
-    return residue[0]
-
-
 def factor_eps(
     system: Fuchsian,
     blocks: Sequence[range],
     diagonal: Sequence[Matrix],
+    tags: Sequence[Tag],
     primes: Sequence[int],
     seed: int,
 ) -> Factored | Stuck:
@@ -117,18 +66,22 @@ def factor_eps(
         The rows of each diagonal block.
     diagonal
         For each block the inverse of the change of basis made so far (for the choice of scales).
+    tags
+        The tag of each row; C connects rows of equal tags only.
     primes, seed
         For the modular samples.
     """
     ring = diagonal[0][0][0].ring
     size = blocks[-1].stop
     eps = ring.variable("eps")
-    scaled = [tuple(tuple(e / eps if e else e for e in row) for row in r) for r in system.residues]
+    terms = (*system.residues, *system.odd)
+    scaled = [tuple(tuple(e / eps if e else e for e in row) for row in r) for r in terms]
     pattern = [[any(r[i][j] for r in scaled) for j in range(size)] for i in range(size)]
-    support = closure(pattern, blocks)
+    reach = closure(pattern, blocks)
+    support = tuple(tuple(j for j in row if tags[j] == tags[i]) for i, row in enumerate(reach))
     if not scaled:
         unit = tuple(tuple(Fraction(int(i == j)) for j in range(size)) for i in range(size))
-        return _chosen(lifted(ring, unit), {}, blocks, diagonal, ring)
+        return _chosen(lifted(ring, unit), {}, (), blocks, diagonal, ring)
     filled = [(i, j) for i in range(size) for j in range(size) if pattern[i][j]]
 
     def images(number: int, prime: int) -> list[ModularMatrix] | None:
@@ -162,13 +115,15 @@ def factor_eps(
     for i in range(size):
         for j in support[i]:
             rows[i][j] = next(source)
-    residues: dict[str, Constants] = {}
-    for place in system.places:
+    tables: list[Constants] = []
+    for _ in terms:
         table = [[Fraction(0)] * size for _ in range(size)]
         for i, j in filled:
             table[i][j] = next(source).to_fraction()
-        residues[place.text()] = tuple(map(tuple, table))
-    return _chosen(tuple(map(tuple, rows)), residues, blocks, diagonal, ring)
+        tables.append(tuple(map(tuple, table)))
+    residues = {place.text(): table for place, table in zip(system.places, tables, strict=False)}
+    odd = tables[len(system.places) :]
+    return _chosen(tuple(map(tuple, rows)), residues, odd, blocks, diagonal, ring)
 
 
 def _no_constant() -> str:
@@ -201,6 +156,7 @@ def _reference(
 def _chosen(
     matrix: Matrix,
     residues: Mapping[str, Constants],
+    odd: Sequence[Constants],
     blocks: Sequence[range],
     diagonal: Sequence[Matrix],
     ring: Ring,
@@ -212,9 +168,8 @@ def _chosen(
         content((e for row in product(inv, before, ring) for e in row), ring)
         for inv, before in zip(inverses, diagonal, strict=True)
     ]
-    links = [
-        {j for j in range(size) if j != i and any(a[i][j] for a in residues.values())} for i in range(size)
-    ]
+    tables = (*residues.values(), *odd)
+    links = [{j for j in range(size) if j != i and any(a[i][j] for a in tables)} for i in range(size)]
     for i in range(size):
         for j in tuple(links[i]):
             links[j].add(i)

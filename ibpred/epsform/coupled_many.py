@@ -16,12 +16,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ibpred.epsform.blocks import Block, Finding
-from ibpred.epsform.constant import Stuck, factor_eps, fuchsian
+from ibpred.epsform.constant import factor_eps
 from ibpred.epsform.content import simplified
 from ibpred.epsform.coupled import matrix_of, reduced_entries
 from ibpred.epsform.decompose import conjugated
 from ibpred.epsform.findings import finding
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix, Obstructed
+from ibpred.epsform.fuchsian import Stuck, fuchsian
 from ibpred.epsform.image import Pattern, block_pattern, splits
 from ibpred.epsform.local import Obstacle
 from ibpred.epsform.matrices import derivative, identity, inverse, product, subtracted
@@ -167,10 +168,11 @@ def _finished(block: Connection, transformation: Matrix, primes: Sequence[int], 
         )
         for name, matrix in block.matrices.items()
     }
-    system = fuchsian(matrices, rows, field)
+    tags = ((),) * size
+    system = fuchsian(matrices, rows, tags, field, primes[0], seed)
     if isinstance(system, Stuck):
         return system.finding
-    factored = factor_eps(system, rows, [identity(field, size)], primes, seed)
+    factored = factor_eps(system, rows, [identity(field, size)], tags, primes, seed)
     if isinstance(factored, Stuck):
         return factored.finding
     whole, change = simplified(product(transformation, factored.matrix, field), rows, field)

@@ -12,6 +12,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 from ibpred.epsform.form import Connection, Matrix
+from ibpred.epsform.tags import Tag
 from ibpred.errors import InputError
 from ibpred.exact.rational import Rational, Ring, ring
 
@@ -44,6 +45,19 @@ def new_ratio(names: tuple[str, ...]) -> str:
     while name in names:
         name, number = f"w{number}", number + 1
     return name
+
+
+def branch_points(tag: Tag, name: str) -> tuple[Fraction | None, ...] | None:
+    """Where the square root of a product branches; None where some branch point is not rational."""
+    points: list[Fraction | None] = []
+    for factor in tag:
+        slope = factor.derivative(name)
+        if not slope.is_constant():
+            return None
+        points.append(-(factor.substitute({name: 0}) / slope).to_fraction())
+    if len(points) % 2:
+        points.append(None)
+    return tuple(points)
 
 
 def parametrisation(points: tuple[Fraction | None, ...], target: Ring, name: str) -> Rational:

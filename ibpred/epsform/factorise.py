@@ -2,39 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from fractions import Fraction
-from itertools import pairwise
+from collections.abc import Sequence
 
+from ibpred.epsform.assemble import assembled
 from ibpred.epsform.blocks import Block, Finding
-from ibpred.epsform.constant import Stuck, factor_eps, fuchsian
 from ibpred.epsform.coupled import solve_coupled
 from ibpred.epsform.coupled_many import solve_coupled_many
-from ibpred.epsform.cover import (
-    Cover,
-    describe,
-    double_cover,
-)
-from ibpred.epsform.form import Connection, EpsilonForm, Matrix, Obstructed, Obstruction
-from ibpred.epsform.matrices import (
-    Constants,
-    added,
-    derivative,
-    identity,
-    inverse,
-    part,
-    product,
-    subtracted,
-    vanishes,
-)
+from ibpred.epsform.cover import Cover, branch_points, describe, double_cover
+from ibpred.epsform.form import Connection, EpsilonForm, Obstructed, Obstruction
+from ibpred.epsform.matrices import part, vanishes
 from ibpred.epsform.picardfuchs import picard_fuchs
-from ibpred.epsform.places import Place, places_of
 from ibpred.epsform.single import solve_single
-from ibpred.epsform.structure import coupled_blocks, couplings, reachable
-from ibpred.epsform.triangular import Grid, eliminate
-from ibpred.epsform.verify import verify
-from ibpred.errors import ReconstructionError, UnfinishedError
-from ibpred.exact.rational import Ring
+from ibpred.epsform.structure import coupled_blocks, couplings, reachable, restricted
+from ibpred.errors import UnfinishedError
 from ibpred.progress import SILENT, Progress
 
 
@@ -63,7 +43,7 @@ def factorise(
     -------
     outcome
         `Obstructed` is a mathematical finding, not an error: no form exists over functions rational in
-        the ratio.
+        the ratios, times a square root for each uncoupled function.
 
     Raises
     ------
@@ -90,7 +70,7 @@ def factorise(
         free = tuple(block for block in blocks if not reach[block[0]] & stuck)
         if not free:
             return Obstructed(tuple(obstructions), (), None)
-        outcome_ = _assembled(connection, free, [solved[block] for block in free], primes, seed)
+        outcome_ = assembled(connection, free, [solved[block] for block in free], primes, seed)
         if isinstance(outcome_, EpsilonForm):
             break
         rows = free[outcome_.block]
@@ -142,10 +122,11 @@ def on_cover(found: Finding, block: Connection, primes: Sequence[int], seed: int
 
 
 def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cover | None:
-    """The double cover that removes the first square root with two branch points, if there is one.
+    """The double cover that removes the first square root with two rational branch points, if there is one.
 
-    Epsilon-forms on the cover come from `factorise` of its connection; where that needs another root,
-    take the cover again.
+    Single functions carry their roots as tags also without a cover; coupled blocks need it, and on it all
+    letters are rational. Epsilon-forms on the cover come from `factorise` of its connection; where that
+    needs another root, take the cover again.
 
     Parameters
     ----------
@@ -157,8 +138,13 @@ def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cove
     if len(connection.variables) != 1:
         return None
     for _, outcome in diagonal_blocks(connection, primes, seed, SILENT):
-        if isinstance(outcome, Finding) and len(outcome.branch_points) == 2:
-            return double_cover(connection, outcome.branch_points)
+        points = (
+            outcome.branch_points
+            if isinstance(outcome, Finding)
+            else branch_points(outcome.tag, connection.variables[0])
+        )
+        if points is not None and len(points) == 2:
+            return double_cover(connection, points)
     return None
 
 
@@ -167,141 +153,3 @@ def _obstruction(connection: Connection, rows: tuple[int, ...], found: Finding) 
     own = {name: part(connection.matrices[name], rows, rows) for name in connection.variables}
     name = next((n for n in own if not vanishes(own[n])), connection.variables[0])
     return Obstruction(rows, found.reason, picard_fuchs(own[name], name), found.exponents)
-
-
-def restricted(connection: Connection, rows: Sequence[int]) -> Connection:
-    """The closed subsystem of some rows."""
-    return Connection(
-        connection.variables,
-        connection.ring,
-        {name: part(matrix, rows, rows) for name, matrix in connection.matrices.items()},
-        (1,) * len(rows),
-        tuple(connection.labels[i] for i in rows),
-    )
-
-
-def _assembled(
-    connection: Connection,
-    blocks: Sequence[tuple[int, ...]],
-    solved: Sequence[Block],
-    primes: Sequence[int],
-    seed: int,
-) -> EpsilonForm | Stuck:
-    """The form of the subsystem made of some blocks, from the forms of the blocks."""
-    field = connection.ring
-    order = [i for block in blocks for i in block]
-    starts = [sum(len(b) for b in blocks[:k]) for k in range(len(blocks) + 1)]
-    ranges = [range(a, b) for a, b in pairwise(starts)]
-    grids = {
-        name: _diagonalised(connection.matrices[name], blocks, solved, field, name)
-        for name in connection.variables
-    }
-    unipotent = identity(field, len(order))
-    local = [block.residues for block in solved]
-    for name in connection.variables:
-        letters = _letters(connection, blocks, name)
-        grids[name], change = eliminate(grids[name], local, letters, field, name)
-        step = added(identity(field, len(order)), _joined(change))
-        unipotent = product(unipotent, step, field)
-        for other in connection.variables:
-            if other != name:
-                grids[other] = _cut(_gauged(_joined(grids[other]), step, other, field), ranges)
-    system = fuchsian({name: _joined(grid) for name, grid in grids.items()}, ranges, field)
-    if isinstance(system, Stuck):
-        return system
-    factored = factor_eps(system, ranges, [block.inverse for block in solved], primes, seed)
-    if isinstance(factored, Stuck):
-        return factored
-    left = _diagonal([block.transformation for block in solved], field)
-    right = _diagonal([block.inverse for block in solved], field)
-    transformation = product(product(left, unipotent, field), factored.matrix, field)
-    back = product(inverse(factored.matrix, field), product(inverse(unipotent, field), right, field), field)
-    place_in = {row: k for k, row in enumerate(order)}
-    sort = [place_in[row] for row in sorted(order)]
-    form = _form(
-        connection,
-        part(transformation, sort, sort),
-        part(back, sort, sort),
-        {text: _permuted(a, sort) for text, a in factored.residues.items()},
-        system.places,
-    )
-    if not verify(restricted(connection, sorted(order)), form):
-        raise ReconstructionError(
-            "the epsilon-form fails the exact check by substitution; give larger primes and another seed"
-        )
-    return form
-
-
-def _form(
-    connection: Connection,
-    transformation: Matrix,
-    back: Matrix,
-    residues: Mapping[str, Constants],
-    places: Sequence[Place],
-) -> EpsilonForm:
-    letters = [p for p in places if any(v for row in residues[p.text()] for v in row)]
-    return EpsilonForm(
-        connection.variables,
-        connection.ring,
-        tuple(p.element for p in letters),
-        tuple(residues[p.text()] for p in letters),
-        transformation,
-        back,
-        ((),) * len(transformation),
-    )
-
-
-def _letters(connection: Connection, blocks: Sequence[tuple[int, ...]], name: str) -> dict[str, Place]:
-    matrix = connection.matrices[name]
-    entries = [matrix[i][j] for block in blocks for i in block for j in block]
-    return {place.text(): place for place in places_of(entries, connection.ring, name)}
-
-
-def _diagonalised(
-    matrix: Matrix, blocks: Sequence[tuple[int, ...]], solved: Sequence[Block], ring: Ring, name: str
-) -> Grid:
-    """The system cut into blocks, in the basis of the blocks' epsilon-forms."""
-    grid: Grid = []
-    for i, rows in enumerate(blocks):
-        line: list[Matrix] = []
-        for j, columns in enumerate(blocks):
-            own = part(matrix, rows, columns)
-            if any(e for row in own for e in row):
-                own = product(product(solved[i].inverse, own, ring), solved[j].transformation, ring)
-            if i == j:
-                slope = tuple(tuple(e.derivative(name) for e in row) for row in solved[i].transformation)
-                own = subtracted(own, product(solved[i].inverse, slope, ring))
-            line.append(own)
-        grid.append(line)
-    return grid
-
-
-def _gauged(matrix: Matrix, step: Matrix, name: str, ring: Ring) -> Matrix:
-    """``S^-1 (A S - dS/dx)``."""
-    whole = subtracted(product(matrix, step, ring), derivative(step, name))
-    return product(inverse(step, ring), whole, ring)
-
-
-def _cut(matrix: Matrix, ranges: Sequence[range]) -> Grid:
-    return [[part(matrix, rows, columns) for columns in ranges] for rows in ranges]
-
-
-def _joined(grid: Grid) -> Matrix:
-    rows: list[tuple[object, ...]] = []
-    for line in grid:
-        rows.extend(tuple(e for block in line for e in block[k]) for k in range(len(line[0])))
-    return tuple(rows)  # type: ignore[arg-type]
-
-
-def _diagonal(blocks: Sequence[Matrix], ring: Ring) -> Matrix:
-    size = sum(map(len, blocks))
-    rows, start = [], 0
-    for block in blocks:
-        for row in block:
-            rows.append((*(ring.zero,) * start, *row, *(ring.zero,) * (size - start - len(block))))
-        start += len(block)
-    return tuple(rows)
-
-
-def _permuted(matrix: Constants, order: Sequence[int]) -> tuple[tuple[Fraction, ...], ...]:
-    return tuple(tuple(matrix[i][j] for j in order) for i in order)

@@ -59,8 +59,26 @@ class Obstruction:
 
 
 @dataclass(frozen=True)
+class OddLetter:
+    """The letter ``(P - sqrt(Q)) / (P + sqrt(Q))``, which turns into its inverse with the sign of the root.
+
+    Attributes
+    ----------
+    polynomial
+        P, a polynomial in the ratios.
+    roots
+        Q is the product of these radicands (indices) of the epsilon-form.
+    """
+
+    polynomial: Rational
+    roots: tuple[int, ...]
+
+
+@dataclass(frozen=True)
 class EpsilonForm:
-    """``I = T f`` with ``d f = eps sum_l A_l dlog(letter_l) f``.
+    """``I = T D f`` with ``d f = eps (sum_l A_l dlog(letter_l) + sum_m A'_m dlog(odd letter_m)) f``.
+
+    D is the unit matrix where no square roots occur, else diagonal with the entries ``1/sqrt(tag)``.
 
     Attributes
     ----------
@@ -73,8 +91,14 @@ class EpsilonForm:
     transformation, inverse
         T and its inverse over `ring`; I is the vector of masters.
     tags
-        For each canonical function the letters (indices) whose product's square root multiplies it;
-        empty tuples where no square root occurs. Then ``I = T diag(1/sqrt(tag)) f``.
+        For each canonical function the radicands (indices) whose product's square root multiplies it, so
+        that ``f_i = sqrt(tag) (T^-1 I)_i``; empty tuples where no square root occurs.
+    radicands
+        Irreducible polynomials with coprime integer coefficients, positive where all ratios are small and
+        each is much smaller than the next one.
+    odd_letters, odd_matrices
+        The letters with square roots, and a matrix of rationals for each. A matrix of an odd letter
+        connects functions whose tags differ by just the roots of the letter.
     """
 
     variables: tuple[str, ...]
@@ -84,6 +108,9 @@ class EpsilonForm:
     transformation: Matrix
     inverse: Matrix
     tags: tuple[tuple[int, ...], ...]
+    radicands: tuple[Rational, ...] = ()
+    odd_letters: tuple[OddLetter, ...] = ()
+    odd_matrices: tuple[tuple[tuple[Fraction, ...], ...], ...] = ()
 
 
 @dataclass(frozen=True)

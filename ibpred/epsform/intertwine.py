@@ -114,10 +114,15 @@ def _extended(
     index = {place: len(basis) + k for k, place in enumerate(places)}
     unknowns = len(basis) + len(places)
     rows: list[list[int]] = []
-    columns = sorted({c for r in block for c in support[r]})
+    own = sorted({c for r in block for c in support[r]})
     for b, a in zip(left, right, strict=True):
         b_rows = [[int(b[r, m]) for m in range(size)] for r in block]
-        a_table = {m: [(c, int(a[m, c])) for c in columns if int(a[m, c])] for m in columns}
+        a_table = {m: [(c, int(a[m, c])) for c in range(size) if int(a[m, c])] for m in own}
+        # the columns where a product may be nonzero
+        columns = sorted(
+            {c for row in b_rows for m, factor in enumerate(row) if factor for c in support[m]}
+            | {c for entries in a_table.values() for c, _ in entries}
+        )
         flat = [e for row in b_rows for e in row]
         known = flint.nmod_mat(len(block), size, flat, prime)
         images = [(known * matrix).table() for matrix in basis]

@@ -173,6 +173,11 @@ class Place:
         return total
 
 
+def positive(polynomial: Polynomial) -> Polynomial:
+    """The polynomial or its negative: that with a positive leading coefficient."""
+    return polynomial if polynomial.leading_coefficient() > 0 else -polynomial
+
+
 def place(polynomial: Polynomial, ring: Ring, name: str) -> Place:
     """The place of an irreducible polynomial that depends on `name`."""
     parts = coefficients(polynomial, ring, name)
@@ -194,8 +199,8 @@ def places_of(values: Iterable[Rational], ring: Ring, name: str) -> tuple[Place,
         _, factors = denominator.factor()
         for factor, _ in factors:
             if factor.degrees()[index] > 0:
-                positive = factor if factor.leading_coefficient() > 0 else -factor
-                found[str(positive)] = positive
+                normal = positive(factor)
+                found[str(normal)] = normal
     all_places = [place(polynomial, ring, name) for polynomial in found.values()]
     return tuple(sorted(all_places, key=_rank))
 

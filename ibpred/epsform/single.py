@@ -1,4 +1,7 @@
-"""Diagonal blocks of size one: the solution is a product of powers, read off exactly."""
+"""Diagonal blocks of size one: the solution is a product of powers, read off exactly.
+
+Half-integer powers are carried as a tag (see `tags`).
+"""
 
 from __future__ import annotations
 
@@ -19,6 +22,7 @@ from ibpred.epsform.blocks import (
 )
 from ibpred.epsform.matrices import Constants
 from ibpred.epsform.places import Place, places_of
+from ibpred.epsform.tags import tag_of
 from ibpred.exact.rational import Rational
 
 
@@ -32,7 +36,6 @@ def solve_single(values: Mapping[str, Rational]) -> Block | Finding:
     """
     found: dict[str, tuple[Place, Fraction, Fraction]] = {}
     exponents: list[tuple[str, tuple[str, ...]]] = []
-    at_infinity = Fraction(0)
     for name, value in values.items():
         ring, rest = value.ring, value
         for place in places_of([value], ring, name):
@@ -50,30 +53,23 @@ def solve_single(values: Mapping[str, Rational]) -> Block | Finding:
                 continue
             found[place.text()] = (place, *exponent)
             exponents.append((place.text(), (exponent_text(linear(*exponent)),)))
-            at_infinity -= place.degree * exponent[0]
             if place.moves and exponent[1]:
                 return Finding(moving(place.text()), tuple(exponents))
         if rest:
             return Finding(irregular(f"{name} = infinity"), tuple(exponents))
-    fractions = [(a, place) for place, a, _ in found.values() if a.denominator > 1]
-    if fractions:
-        worst, place = max(fractions, key=lambda item: item[0].denominator)
-        branch = _branch_points(fractions, at_infinity) if len(values) == 1 else ()
-        return Finding(fractional(worst, place.text()), tuple(exponents), branch)
-    factor = next(iter(values.values())).ring.one
     for place, a, _ in found.values():
+        if a.denominator > 2:
+            return Finding(fractional(a, place.text()), tuple(exponents))
+        if a.denominator == 2 and place.moves:
+            return Finding(moving(place.text()), tuple(exponents))
+    field = next(iter(values.values())).ring
+    factor = field.one
+    tagged = []
+    for place, a, _ in found.values():
+        if a.denominator == 2:
+            # the exponent of the rational function g in f = sqrt(tag) g is -1/2
+            tagged.append(place.polynomial)
+            a += Fraction(1, 2)
         factor = factor * place.element ** int(a)
     residues: dict[str, Constants] = {text: ((b,),) for text, (_, _, b) in found.items() if b}
-    return Block(((factor,),), ((1 / factor,),), residues)
-
-
-def _branch_points(
-    fractions: list[tuple[Fraction, Place]], at_infinity: Fraction
-) -> tuple[Fraction | None, ...]:
-    """The branch points if all roots are square roots at fixed rational points."""
-    if any(a.denominator > 2 or p.root is None for a, p in fractions):
-        return ()
-    points: list[Fraction | None] = [p.root for _, p in fractions]
-    if at_infinity.denominator > 1:
-        points.append(None)
-    return tuple(points)
+    return Block(((factor,),), ((1 / factor,),), residues, tag_of(tagged, field, tuple(values)))

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from ibpred.epsform.form import Connection
+from ibpred.epsform.matrices import part
 
 
 def couplings(connection: Connection) -> tuple[tuple[int, ...], ...]:
@@ -51,3 +52,14 @@ def coupled_blocks(links: Sequence[Sequence[int]]) -> tuple[tuple[int, ...], ...
         done |= set(block)
         ordered.append(block)
     return tuple(ordered)
+
+
+def restricted(connection: Connection, rows: Sequence[int]) -> Connection:
+    """The closed subsystem of some rows."""
+    return Connection(
+        connection.variables,
+        connection.ring,
+        {name: part(matrix, rows, rows) for name, matrix in connection.matrices.items()},
+        (1,) * len(rows),
+        tuple(connection.labels[i] for i in rows),
+    )

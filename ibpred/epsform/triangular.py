@@ -7,18 +7,22 @@ pole of order m + 1 > 1 the leading term is removed by ``D = D0 / q^m``, where D
     (m + eps ad) (q' D0) = -lead,     ad X = R_i X - X R_j   (residues of the diagonal at q),
 
 which is always possible for generic eps; growth like ``x^(m-1)`` at infinity likewise by ``D0 x^m`` with
-``(m - eps ad_inf) D0 = lead``. Since only the integer m and the residues enter, half-integer exponents
-(square roots that multiply single functions) would shift m by one half and change nothing else.
+``(m - eps ad_inf) D0 = lead``. Where the two blocks carry different square roots, the coupling and D are
+taken without the factor W of `tags`; then m is replaced by m - 1/2 at the zeros of R and by m + deg(R)/2 at
+infinity, and there ``sqrt(R) B`` must be Fuchsian in the end.
 """
 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
 from fractions import Fraction
 
 from ibpred.epsform.form import Matrix
-from ibpred.epsform.matrices import Constants, added, product, solve, subtracted
-from ibpred.epsform.places import Place, Residue, growth, leading, places_of
+from ibpred.epsform.matrices import Constants, added, identity, product, scaled, solve, subtracted
+from ibpred.epsform.places import Place, Residue, degree, growth, leading, places_of, positive
+from ibpred.epsform.places import place as finite_place
+from ibpred.epsform.tags import Tag, difference, only_in, product_of
 from ibpred.exact.rational import Rational, Ring
 
 Residues = Mapping[str, Constants]
@@ -27,19 +31,37 @@ Grid = list[list[Matrix]]
 """A matrix cut into blocks."""
 
 
+@dataclass(frozen=True)
+class Relation:
+    """How two tags differ: W and R of `tags`, the places where R vanishes, and its degree in the variable."""
+
+    weight: Rational
+    root: Rational
+    places: frozenset[str]
+    degree: int
+
+
 def eliminate(
-    grid: Grid, residues: Sequence[Residues], letters: Mapping[str, Place], ring: Ring, name: str
+    grid: Grid,
+    residues: Sequence[Residues],
+    letters: Mapping[str, Place],
+    tags: Sequence[Tag],
+    ring: Ring,
+    name: str,
 ) -> tuple[Grid, Grid]:
     """Make all couplings Fuchsian.
 
     Parameters
     ----------
     grid
-        The system cut into blocks, block lower triangular, with the diagonal in epsilon-form.
+        The system cut into blocks, block lower triangular, in the rational basis: the diagonal in
+        epsilon-form up to the exponents -1/2 of the tags.
     residues
         For each diagonal block its canonical residues (the coefficients of eps).
     letters
         The places of these residues by their text.
+    tags
+        The tag of each block.
 
     Returns
     -------
@@ -54,8 +76,9 @@ def eliminate(
     changes: Grid = zero
     for i in range(count):
         for j in range(i - 1, -1, -1):
+            relation = _relation(tags[i], tags[j], ring, name)
             change, rest = _reduced(
-                grid[i][j], (grid[i][i], grid[j][j]), (residues[i], residues[j]), letters, name
+                grid[i][j], (grid[i][i], grid[j][j]), (residues[i], residues[j]), letters, relation, name
             )
             changes[i][j] = change
             grid[i][j] = rest
@@ -80,31 +103,50 @@ def _reduced(
     diagonal: tuple[Matrix, Matrix],
     residues: tuple[Residues, Residues],
     letters: Mapping[str, Place],
+    relation: Relation,
     name: str,
 ) -> tuple[Matrix, Matrix]:
     """D for one coupling, and what is left of the coupling."""
     ring = diagonal[0][0][0].ring
     total = _zero(ring, len(coupling), len(coupling[0]))
+    half = Fraction(1, 2)
+    if not relation.weight.is_one():
+        coupling = scaled(coupling, 1 / relation.weight)
+        # 1 + W D: the logarithmic derivative of W goes with the diagonal
+        log = relation.weight.derivative(name) / relation.weight
+        diagonal = (subtracted(diagonal[0], scaled(identity(ring, len(coupling)), log)), diagonal[1])
     x = ring.variable(name)
-    for place in places_of((e for row in coupling for e in row), ring, name):
-        local = _at(residues, place.text())
-        slope = place.slope()
-        while (power := _order(coupling, place) - 1) > 0:
-            lead = [[place.divide(place.principal(e, power + 1), slope) for e in row] for row in coupling]
-            step = _solve_place(lead, power, local, place)
+    for spot in places_of((e for row in coupling for e in row), ring, name):
+        local = _at(residues, spot.text())
+        slope = spot.slope()
+        shift = half if spot.text() in relation.places else Fraction(0)
+        while (power := _order(coupling, spot) - 1) > 0:
+            lead = [[spot.divide(spot.principal(e, power + 1), slope) for e in row] for row in coupling]
+            step = _solve_place(lead, power, power - shift, local, spot)
             total = added(total, step)
             coupling = _applied(coupling, step, diagonal, name)
     at_infinity = _infinity(residues, letters)
-    while (power := max((growth(e, name) for row in coupling for e in row if e), default=-1) + 1) > 0:
+    lowest = 0 if relation.degree else 1
+    while (power := max((growth(e, name) for row in coupling for e in row if e), default=-2) + 1) >= lowest:
         target = tuple(
             tuple(leading(e, name) if e and growth(e, name) == power - 1 else ring.zero for e in row)
             for row in coupling
         )
-        step = _sylvester(target, power, at_infinity, Fraction(-1), ring)
+        step = _sylvester(target, power + half * relation.degree, at_infinity, Fraction(-1), ring)
         step = tuple(tuple(e * x**power for e in row) for row in step)
         total = added(total, step)
         coupling = _applied(coupling, step, diagonal, name)
+    if not relation.weight.is_one():
+        total, coupling = scaled(total, relation.weight), scaled(coupling, relation.weight)
     return total, coupling
+
+
+def _relation(left: Tag, right: Tag, ring: Ring, name: str) -> Relation:
+    roots = difference(left, right)
+    depending = [root.numerator for root in roots if degree(root.numerator, ring, name)]
+    places = frozenset(finite_place(positive(p), ring, name).text() for p in depending)
+    total = sum(degree(p, ring, name) for p in depending)
+    return Relation(product_of(only_in(right, left), ring), product_of(roots, ring), places, total)
 
 
 def _applied(coupling: Matrix, step: Matrix, diagonal: tuple[Matrix, Matrix], name: str) -> Matrix:
@@ -145,14 +187,18 @@ def _infinity(
 
 
 def _solve_place(
-    lead: list[list[Residue]], power: int, local: tuple[Constants | None, Constants | None], place: Place
+    lead: list[list[Residue]],
+    power: int,
+    exponent: Fraction,
+    local: tuple[Constants | None, Constants | None],
+    place: Place,
 ) -> Matrix:
     """``D0 / q^power``: the equation has constant coefficients, so it is solved power by power of x."""
     ring = place.ring
     parts = []
     for k in range(place.degree):
         target = tuple(tuple(-entry[k] for entry in row) for row in lead)
-        parts.append(_sylvester(target, power, local, Fraction(1), ring))
+        parts.append(_sylvester(target, exponent, local, Fraction(1), ring))
     below = place.element**power
     return tuple(
         tuple(place.lift(tuple(part[i][j] for part in parts)) / below for j in range(len(lead[0])))
@@ -162,7 +208,7 @@ def _solve_place(
 
 def _sylvester(
     target: Matrix,
-    power: int,
+    power: Fraction,
     local: tuple[Constants | None, Constants | None],
     sign: Fraction,
     ring: Ring,

@@ -201,15 +201,27 @@ def test_irregular_points_are_named() -> None:
     assert "x = 2 is an irregular" in coupled
 
 
-def test_half_integer_exponents_are_named_with_the_remedy() -> None:
-    found = obstruction([["-1/2/x-1/2/(x-4)+eps/x"]]).obstructions[0]
-    assert "exponent -1/2 at x = 0: a square root is needed" in found.reason
-    assert "x = (w+1)^2/w" in found.reason
-    assert found.exponents == (("x = 0", ("-1/2+eps",)), ("x = 4", ("-1/2",)))
-    four = obstruction([["1/2/x+1/2/(x-4)+1/2/(x-1)+1/2/(x-2)+eps/x"]]).obstructions[0]
-    assert "4 branch points" in four.reason
+def test_half_integer_exponents_become_tags() -> None:
+    form = solved(connection(matrix([["-1/2/x-1/2/(x-4)+eps/x"]])))
+    assert [str(r) for r in form.radicands] == ["x", "-x+4"]
+    assert form.tags == ((0, 1),)
     third = obstruction([["1/3/x"]]).obstructions[0]
     assert "a root of order 3" in third.reason
+
+
+def test_half_integer_exponents_of_coupled_rows_are_named_with_the_remedy() -> None:
+    """The two-loop sunrise with one massless line and massive legs off shell, as the identities give it."""
+    rows = [
+        ["-(4*eps*x+4*eps-3*x-2)/(x*(x+4))", "6*(eps-1)/(x*(x+4))"],
+        ["-(eps-1)", "(eps-1)/x"],
+    ]
+    system = connection(matrix(rows), (2,))
+    (found,) = obstruction(rows, (2,)).obstructions
+    assert "exponent 1/2 at x = 0: a square root is needed" in found.reason
+    assert "x = (w-1)^2/w" in found.reason
+    cover = root_cover(system, PRIMES, seed=1)
+    assert cover is not None
+    assert {str(letter) for letter in solved(cover.connection).letters} == {"w", "w+1", "w-1"}
 
 
 def test_exponents_that_are_not_linear_in_eps() -> None:
@@ -233,11 +245,27 @@ def test_coupling_whose_eps_cannot_be_factored_out() -> None:
     assert "constant" in found.reason
 
 
+MASSIVE_BUBBLE = [["0", "0"], ["2*(1-eps)/(x*(x+4))", "-(2+eps*x)/(x*(x+4))"]]
+"""A bubble with massive lines over a tadpole, x = -s/m^2."""
+
+
+def test_square_root_of_a_single_function() -> None:
+    """sqrt(x (x+4)) times the bubble, with the letter (x - root)/(x + root) over the tadpole."""
+    form = solved(connection(matrix(MASSIVE_BUBBLE)))
+    assert [str(r) for r in form.radicands] == ["x", "x+4"]
+    assert form.tags == ((), (0, 1))
+    assert [str(letter) for letter in form.letters] == ["x+4"]
+    (odd,) = form.odd_letters
+    assert (str(odd.polynomial), odd.roots) == ("x", (0, 1))
+    ((_, _), (off, _)) = form.odd_matrices[0]
+    assert abs(off) == 1
+    broken = replace(form, odd_matrices=(((Fraction(0), Fraction(0)), (off, Fraction(1))),))
+    assert not verify(connection(matrix(MASSIVE_BUBBLE)), broken)
+
+
 def test_square_root_on_the_double_cover() -> None:
-    """A bubble with massive lines over a tadpole: x = (1-w)^2/w, letters w and 1 + w."""
-    system = connection(matrix([["0", "0"], ["2*(1-eps)/(x*(x+4))", "-(2+eps*x)/(x*(x+4))"]]))
-    assert isinstance(factorise(system, PRIMES, seed=1), Obstructed)
-    cover = root_cover(system, PRIMES, seed=1)
+    """x = (1-w)^2/w, letters w and 1 + w."""
+    cover = root_cover(connection(matrix(MASSIVE_BUBBLE)), PRIMES, seed=1)
     assert cover is not None
     assert str(cover.substitution) == "(w^2-2*w+1)/w"
     form = solved(cover.connection)
