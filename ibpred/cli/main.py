@@ -17,6 +17,7 @@ from ibpred.cli.masters import masters
 from ibpred.cli.reduce import reduce
 from ibpred.cli.run import run
 from ibpred.cli.solve import solve
+from ibpred.cli.verify import verify
 
 
 @click.group(context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
@@ -29,7 +30,7 @@ def group() -> None:
     """
 
 
-for command in (inspect, masters, reduce, diffeq, epsform, solve, evaluate, export, run):
+for command in (inspect, masters, reduce, diffeq, epsform, solve, evaluate, export, run, verify):
     group.add_command(command)
 
 

@@ -201,3 +201,9 @@ def run_text(data: Data) -> str:
     """What a whole run did."""
     rows = [[stage["name"], stage["outcome"], f"{stage['seconds']} s"] for stage in data["stages"]]
     return "\n".join([*columns(rows), f"results in {data['folder']}"])
+
+
+def checks_text(data: Data) -> str:
+    """Checks, one a line."""
+    rows = [["holds" if c["passed"] else "FAILS", c["name"], c["detail"]] for c in data["checks"]]
+    return "\n".join(columns(rows))

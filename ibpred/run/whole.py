@@ -17,6 +17,7 @@ from ibpred.epsform.form import EpsilonForm, Obstructed
 from ibpred.epsform.verify import verify
 from ibpred.errors import UnfinishedError
 from ibpred.iterated.solution import letter_roots
+from ibpred.report.drawing import sheet_svg
 from ibpred.report.json_tables import (
     differential_data,
     epsilon_data,
@@ -30,6 +31,9 @@ from ibpred.run.chain import Chain
 from ibpred.run.files import check_writable, write_folder
 from ibpred.run.points import euclidean_point, physical_point
 from ibpred.run.stages import SEED
+from ibpred.sectors.order import sector_of
+
+_PICTURES_A_ROW = 5
 
 Data = dict[str, Any]
 R = TypeVar("R")
@@ -120,6 +124,9 @@ def run_whole(chain: Chain, source: Path, folder: Path, digits: int) -> Data:
     }
     files[f"{family.name}.toml"] = source.read_text(encoding="utf-8")
     files["summary.md"] = text
+    if family.graph is not None:
+        sectors = tuple(dict.fromkeys(sector_of(powers) for powers in masters.masters))
+        files["graphs.svg"] = sheet_svg(family, sectors, _PICTURES_A_ROW)
     write_folder(folder, files)
     return {
         "family": family.name,

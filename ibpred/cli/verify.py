@@ -1,0 +1,40 @@
+"""``ibpred verify``: the evidence once more, from the files alone."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+
+import click
+
+
+@click.command()
+@click.argument("folder", metavar="FOLDER")
+@click.option("--json", "as_json", is_flag=True, help="Print the result as one JSON object.")
+@click.option("--quiet", is_flag=True, help="Show no progress.")
+@click.option(
+    "--samples",
+    type=click.IntRange(min=1000),
+    default=20_000,
+    show_default=True,
+    metavar="N",
+    help="Sample points of the direct integration.",
+)
+def verify(folder: str, as_json: bool, quiet: bool, samples: int) -> None:
+    """Re-run the evidence for a FOLDER that `run` wrote; exit code 1 if a check fails."""
+    from ibpred.cli.progress import terminal_progress
+    from ibpred.errors import UnfinishedError
+    from ibpred.progress import SILENT
+    from ibpred.report.text import checks_text
+    from ibpred.run.verification import verify_folder
+
+    if quiet:
+        checks = verify_folder(Path(folder), samples, SILENT)
+    else:
+        with terminal_progress() as progress:
+            checks = verify_folder(Path(folder), samples, progress)
+    data = {"checks": [{"name": c.name, "passed": c.passed, "detail": c.detail} for c in checks]}
+    click.echo(json.dumps(data, ensure_ascii=False) if as_json else checks_text(data))
+    failed = [c.name for c in checks if not c.passed]
+    if failed:
+        raise UnfinishedError(f"{folder}: {len(failed)} check(s) failed: {', '.join(failed)}")
