@@ -59,13 +59,25 @@ def residue_at(residues: Residues, point: Point) -> Any:
 
 
 @dataclass(frozen=True)
-class _Chart:
-    """x = r t / (1 - kappa t) maps [0, 1] to the path from 0 to the target."""
+class IntervalMap:
+    """``x = r t / (1 - kappa t)`` maps [0, 1] to the path from 0 to a goal.
 
-    scale: Fraction  # r: x = r t + ... at t -> 0
-    end_scale: Fraction  # q: u = q (1 - t) + ... at t -> 1
-    letters: Mapping[Fraction, Fraction | None]  # image of each letter, None at t = infinity
-    pole: Fraction | None  # image of x = infinity
+    Attributes
+    ----------
+    scale
+        r: ``x = r t + ...`` at t -> 0.
+    end_scale
+        q: the distance from the goal (1/x for the goal infinity) is ``q (1 - t) + ...`` at t -> 1.
+    letters
+        Image of each letter; None at t = infinity.
+    pole
+        Image of x = infinity; None where it is t = infinity.
+    """
+
+    scale: Fraction
+    end_scale: Fraction
+    letters: Mapping[Fraction, Fraction | None]
+    pole: Fraction | None
 
 
 def connection(
@@ -168,34 +180,54 @@ def _exponential_to_one(at: Mapping[Fraction, Any], start: Any, order: int) -> M
     return MatrixSeries(tuple(nonzero(c) for c in orders))
 
 
-def _chart(letters: Mapping[Fraction, Any], goal: Point, target: Point) -> _Chart:
+def _chart(letters: Mapping[Fraction, Any], goal: Point, target: Point) -> IntervalMap:
     inside = [a for a in letters if a > 0 and (isinstance(goal, Infinity) or a < goal)]
     if inside:
         raise BoundaryError(
             f"the straight path from x = 0 to {point_text(target)} meets the singular point "
             f"x = {inside[0]}: this transport is not available"
         )
-    found = None
-    for scale, kappa in _moebius_candidates(letters, goal):
-        images = {a: _image(a, scale, kappa) for a in letters}
-        pole = None if kappa == 0 else 1 / kappa
-        used = {image for image in images.values() if image is not None}
-        total = residue_at(letters, INFINITY) if letters else None
-        if pole is not None and total is not None and total:
-            used.add(pole)
-        end_scale = 1 / scale if isinstance(goal, Infinity) else goal / (1 - kappa)
-        if used <= _UNIT_LETTERS or used <= _TURNED_LETTERS:
-            chart = _Chart(scale, end_scale, images, pole)
-            simplicity = (not used <= {0, 1}, scale != 1, end_scale != 1)
-            if found is None or simplicity < found[0]:
-                found = simplicity, chart
+    found = interval_map(tuple(letters), goal, bool(residue_at(letters, INFINITY)) if letters else False)
     if found is None:
         listed = ", ".join(str(a) for a in sorted(letters))
         raise BoundaryError(
             f"the transport from x = 0 to {point_text(target)} with the letters {listed} needs iterated "
             "integrals that are no alternating sums; their exact values are not known here"
         )
-    return found[1]
+    return found
+
+
+def interval_map(letters: Sequence[Fraction], goal: Point, singular_infinity: bool) -> IntervalMap | None:
+    """A map of [0, 1] to the path from 0 to the goal that brings the letters to 0, 1, -1 or to 0, 1, 2.
+
+    Parameters
+    ----------
+    letters
+        Letters, none inside the path.
+    goal
+        A positive number or infinity.
+    singular_infinity
+        Whether x = infinity is a letter as well.
+
+    Returns
+    -------
+    IntervalMap or None
+        The simplest of those tried; None where none fits.
+    """
+    found = None
+    for scale, kappa in _moebius_candidates(letters, goal):
+        images = {a: _image(a, scale, kappa) for a in letters}
+        pole = None if kappa == 0 else 1 / kappa
+        used = {image for image in images.values() if image is not None}
+        if pole is not None and singular_infinity:
+            used.add(pole)
+        end_scale = 1 / scale if isinstance(goal, Infinity) else goal / (1 - kappa)
+        if used <= _UNIT_LETTERS or used <= _TURNED_LETTERS:
+            chart = IntervalMap(scale, end_scale, images, pole)
+            simplicity = (not used <= {0, 1}, scale != 1, end_scale != 1)
+            if found is None or simplicity < found[0]:
+                found = simplicity, chart
+    return None if found is None else found[1]
 
 
 def _image(a: Fraction, scale: Fraction, kappa: Fraction) -> Fraction | None:
@@ -203,9 +235,7 @@ def _image(a: Fraction, scale: Fraction, kappa: Fraction) -> Fraction | None:
     return None if below == 0 else a / below
 
 
-def _moebius_candidates(
-    letters: Sequence[Fraction] | Mapping[Fraction, Any], goal: Point
-) -> Iterator[tuple[Fraction, Fraction]]:
+def _moebius_candidates(letters: Sequence[Fraction], goal: Point) -> Iterator[tuple[Fraction, Fraction]]:
     """Maps x = r t/(1 - kappa t) with x(0) = 0, x(1) = goal that send one letter to -1, 2 or infinity."""
     others = [a for a in letters if a not in (0, goal)]
     if isinstance(goal, Infinity):

@@ -29,6 +29,7 @@ from ibpred.iterated.constants import (
     Monomial,
     zeta,
 )
+from ibpred.iterated.sums import quasi_shuffle
 from ibpred.iterated.words import Word, add_scaled, regularised, shuffle
 
 Index = tuple[int, int]
@@ -120,22 +121,6 @@ def word_of(indices: Sequence[Index]) -> Word:
         last *= sigma
         word += [0] * (s - 1) + [last]
     return tuple(word)
-
-
-def quasi_shuffle(left: tuple[Index, ...], right: tuple[Index, ...]) -> dict[tuple[Index, ...], int]:
-    """Product of nested sums; contractions: (s, sigma)(s', sigma') = (s + s', sigma sigma')."""
-    if not left or not right:
-        return {left + right: 1}
-    total: dict[tuple[Index, ...], int] = {}
-    merged = (left[0][0] + right[0][0], left[0][1] * right[0][1])
-    for first, rest in (
-        (left[0], quasi_shuffle(left[1:], right)),
-        (right[0], quasi_shuffle(left, right[1:])),
-        (merged, quasi_shuffle(left[1:], right[1:])),
-    ):
-        for key, count in rest.items():
-            total[first, *key] = total.get((first, *key), 0) + count
-    return total
 
 
 def _as_words(sums: Mapping[tuple[Index, ...], int | Fraction]) -> dict[Word, Fraction]:
