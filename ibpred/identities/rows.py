@@ -181,29 +181,40 @@ def _identity_rows(template: Template, seeds: IntArray, code: Packing, pool: Coe
 
 @dataclass(frozen=True)
 class _Definitions:
-    """Right-hand sides of the quantities, and minus their weights."""
+    """Right-hand sides of the quantities, and minus their weights.
+
+    `part_row`, `part` and `part_coefficient` are the entries with earlier quantities.
+    """
 
     entries: Entries
     weights: NDArray[np.int32]
+    part_row: IntArray
+    part: IntArray
+    part_coefficient: NDArray[np.int32]
 
 
 def _definitions(
     quantities: Sequence[Quantity], codes: Sequence[Packing], pool: CoefficientPool, lines: int
 ) -> _Definitions:
     row, integral, ids, weights = [], [], [], []
+    parts: list[tuple[int, int, int]] = []
     for q, quantity in enumerate(quantities):
         weights.append(pool.number({e: -c for e, c in quantity.weight.items()}))
         for (number, powers), (_, polynomial) in zip(quantity.integrals, quantity.terms, strict=True):
             row.append(q)
             integral.append(int(codes[number].code(np.array(powers, dtype=np.int64))))
             ids.append(pool.number(polynomial))
+        parts += [(q, part, pool.number(polynomial)) for part, polynomial in quantity.parts]
     entries = Entries(
         np.array(row, dtype=np.int64),
         np.array(integral, dtype=np.int64),
         np.array(ids, dtype=np.int32),
         np.zeros((len(quantities), lines), dtype=np.int64),
     )
-    return _Definitions(entries, np.array(weights, dtype=np.int32))
+    table = np.array(parts, dtype=np.int64).reshape(-1, 3)
+    return _Definitions(
+        entries, np.array(weights, dtype=np.int32), table[:, 0], table[:, 1], table[:, 2].astype(np.int32)
+    )
 
 
 def _mapped_rows(
@@ -298,9 +309,9 @@ def _compress(
         rank[by_seed] = np.arange(seeds)
         sector_of_row = np.column_stack([families, key_columns(stacked)[1]])[by_seed]
     own = np.arange(quantities)
-    row = np.concatenate([rank[row[kept]], own + seeds])
-    column = np.concatenate([column[kept], own + len(order)])
-    coefficient = np.concatenate([coefficient[kept], definitions.weights])
+    row = np.concatenate([rank[row[kept]], own + seeds, definitions.part_row + seeds])
+    column = np.concatenate([column[kept], own + len(order), definitions.part + len(order)])
+    coefficient = np.concatenate([coefficient[kept], definitions.weights, definitions.part_coefficient])
     sorting = np.argsort(row * (len(order) + quantities + 1) - column, kind="stable")
     row = row[sorting]
     begins = np.flatnonzero(np.concatenate([[True], row[1:] != row[:-1]])) if len(row) else row

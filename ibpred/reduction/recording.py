@@ -142,7 +142,7 @@ def _recorded(
     names = ", ".join(member.family.name for member in members)
     point = random_point(family, primes[0], seed)
     wanted = [integral for quantity in quantities for integral in quantity.integrals]
-    known = set(masters)
+    known, asked = set(masters), _asked(quantities)
     progress.stage("identities")
     tried: set[tuple[tuple[int, int, int, int], ...]] = set()
     left: tuple[str, ...] = ()
@@ -158,11 +158,11 @@ def _recorded(
         tried.add(signature)
         rows = write_rows(members, plans, quantities, masters)
         system = sparse_system(rows)
-        found = reduced(discover(system, point, primes[0]), _own_columns(rows))
-        left = _left_over(rows, found, quantities, known)
+        found = reduced(discover(system, point, primes[0]), _columns(rows, asked))
+        left = _left_over(rows, found, [quantities[q].name for q in asked], known)
         progress.advance(step + 1, len(GROWTH))
         if not left:
-            tape = _record(family, system, _own_columns(rows), primes, seed)
+            tape = _record(family, system, _columns(rows, asked), primes, seed)
             return _labelled(rows, system, tape, masters, quantities)
     more = f" and {len(left) - _NAMED} more" if len(left) > _NAMED else ""
     raise UnfinishedError(
@@ -171,21 +171,29 @@ def _recorded(
     )
 
 
-def _own_columns(rows: IntegralRows) -> range:
-    return range(rows.columns - rows.quantities, rows.columns)
+def _asked(quantities: Sequence[Quantity]) -> list[int]:
+    """Numbers of the quantities that are no parts of others."""
+    parts = {part for quantity in quantities for part, _ in quantity.parts}
+    return [q for q in range(len(quantities)) if q not in parts]
+
+
+def _columns(rows: IntegralRows, numbers: Sequence[int]) -> list[int]:
+    """Columns of quantities."""
+    first = rows.columns - rows.quantities
+    return [first + q for q in numbers]
 
 
 def _left_over(
-    rows: IntegralRows, found: Reduced, quantities: Sequence[Quantity], known: set[Integral]
+    rows: IntegralRows, found: Reduced, names: Sequence[str], known: set[Integral]
 ) -> tuple[str, ...]:
     """Names of the quantities whose reduction contains more than masters."""
     foreign = [i for i, column in enumerate(found.masters) if rows.integral(column) not in known]
     bad = np.flatnonzero(found.values[:, foreign].any(axis=1))
-    return tuple(quantities[int(i)].name for i in bad)
+    return tuple(names[int(i)] for i in bad)
 
 
 def _record(
-    family: FamilyDefinition, system: SparseSystem, columns: range, primes: Sequence[int], seed: int
+    family: FamilyDefinition, system: SparseSystem, columns: Sequence[int], primes: Sequence[int], seed: int
 ) -> Tape:
     """Record at a random point, validate against the whole system at another point and prime."""
     for attempt in range(_ATTEMPTS):

@@ -7,24 +7,21 @@ from dataclasses import dataclass
 
 from ibpred.errors import InputError
 from ibpred.exact.rational import Polynomial, Rational
-from ibpred.family.definition import FamilyDefinition, Powers
+from ibpred.family.definition import FamilyDefinition
+from ibpred.family.members import integral_text
 from ibpred.family.units import integral_dimension, restore_unit, set_unit
-from ibpred.identities.quantities import combination
+from ibpred.identities.quantities import Integral, Quantity, combination
+from ibpred.identities.rows import FamilyIdentities
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence
 from ibpred.reduction.deck import PLAIN_DECK, Deck
-from ibpred.reduction.recording import (
-    Effort,
-    check_masters,
-    coefficients,
-    record_quantities,
-)
+from ibpred.reduction.recording import Effort, coefficients, record_together
+from ibpred.reduction.several import check_common_masters
 from ibpred.reduction.wanted import Combination, check_powers
-from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.order import sector_of
 
-Sum = Mapping[Powers, Rational]
-"""Coefficients, in the family's full ring, of the integrals of a sum."""
+Sum = Mapping[Integral, Rational]
+"""Coefficients, in the full ring, of the integrals (number of the family, powers) of a sum."""
 
 
 @dataclass(frozen=True)
@@ -33,18 +30,18 @@ class ReducedSums:
 
     Attributes
     ----------
-    family
-        Name of the family.
+    families
+        Names of the families, crossed ones included.
     masters
-        The masters.
+        Number of the family and powers of each master.
     sums
-        For each named sum its combination over the family's full ring.
+        For each named sum its combination over the full ring.
     evidence, effort
         Of the reconstruction; None where every sum vanishes.
     """
 
-    family: str
-    masters: tuple[Powers, ...]
+    families: tuple[str, ...]
+    masters: tuple[Integral, ...]
     sums: Mapping[str, Combination]
     evidence: Evidence | None
     effort: Effort | None
@@ -72,7 +69,7 @@ def mass_dimension(value: Rational, family: FamilyDefinition) -> int | None:
     return above.pop() - below.pop()
 
 
-def sum_dimension(name: str, terms: Sum, family: FamilyDefinition) -> int:
+def sum_dimension(name: str, terms: Sum, members: Sequence[FamilyIdentities]) -> int:
     """Mass dimension (without its eps part) that all terms of a sum share.
 
     Raises
@@ -81,28 +78,30 @@ def sum_dimension(name: str, terms: Sum, family: FamilyDefinition) -> int:
         If they do not.
     """
     found: int | None = None
-    for powers, value in terms.items():
+    for (number, powers), value in terms.items():
         if not value:
             continue
+        family = members[number].family
         own = mass_dimension(value, family)
         if own is None:
             raise InputError(
-                f"{name}: the coefficient {value} of {powers} is not homogeneous in mass dimension"
+                f"{name}: the coefficient {value} of {integral_text(family.name, powers)} is not "
+                "homogeneous in mass dimension"
             )
         total = own + integral_dimension(family, powers)[0]
         if found is not None and total != found:
             raise InputError(
-                f"{name}: the term with {powers} has mass dimension {total}, the ones before have {found}"
+                f"{name}: the term with {integral_text(family.name, powers)} has mass dimension {total}, the "
+                f"ones before have {found}"
             )
         found = total
     return found or 0
 
 
 def reduce_sums(
-    family: FamilyDefinition,
-    analysis: SectorAnalysis,
+    members: Sequence[FamilyIdentities],
     sums: Mapping[str, Sum],
-    masters: Sequence[Powers],
+    masters: Sequence[Integral],
     primes: Sequence[int],
     seed: int,
     deck: Deck = PLAIN_DECK,
@@ -115,12 +114,12 @@ def reduce_sums(
 
     Parameters
     ----------
-    family, analysis
-        The family and its sectors.
+    members
+        The families, analysed together.
     sums
-        Named sums; coefficients in the family's full ring, all terms of one mass dimension.
+        Named sums; coefficients in the full ring, all terms of a sum of one mass dimension.
     masters
-        The masters, as `find_masters` gives them.
+        The masters, as `find_common_masters` gives them.
     primes, seed
         Engine primes in the order in which they are used, and the seed of all random points.
     deck
@@ -131,32 +130,37 @@ def reduce_sums(
     Raises
     ------
     InputError
-        If an integral does not fit the family, or a sum is not homogeneous.
+        If an integral does not fit its family, or a sum is not homogeneous.
     UnfinishedError
         If a sum does not reduce to the masters, or its coefficients cannot be reconstructed.
     """
-    check_masters(family, masters)
-    dimensions: list[int] = []
-    quantities = []
+    check_common_masters(members, masters)
+    families = tuple(member.family.name for member in members)
+    family = members[0].family
+    dimensions: dict[str, int] = {}
+    quantities: list[Quantity] = []
+    ends: dict[int, str] = {}
     for name, terms in sums.items():
-        for powers in terms:
-            check_powers(family, powers)
+        for number, powers in terms:
+            check_powers(members[number].family, powers)
+        dimensions[name] = sum_dimension(name, terms, members)
         alive = {
-            tuple(powers): set_unit(value, family)
-            for powers, value in terms.items()
-            if value and sector_of(powers) not in analysis.zero
+            (number, tuple(powers)): set_unit(value, family)
+            for (number, powers), value in terms.items()
+            if value and sector_of(powers) not in members[number].analysis.zero
         }
-        dimensions.append(sum_dimension(name, terms, family))
-        quantities.append(combination(name, alive, family.internal_ring))
-    if not any(quantity.terms for quantity in quantities):
-        return ReducedSums(family.name, tuple(masters), dict.fromkeys(sums, ()), None, None)
-    recorded = record_quantities(family, analysis, masters, quantities, primes, seed, deck, progress)
+        if alive:
+            quantities += combination(name, alive, family.internal_ring, len(quantities))
+            ends[len(quantities) - 1] = name
+    found: dict[str, Combination] = dict.fromkeys(sums, ())
+    if not quantities:
+        return ReducedSums(families, tuple(masters), found, None, None)
+    recorded = record_together(members, masters, quantities, primes, seed, deck, progress)
     values, evidence, effort = coefficients(family, recorded, primes, seed, deck, progress)
-    rows: dict[int, list[tuple[int, Rational]]] = {}
+    rows: dict[str, list[tuple[int, Rational]]] = {}
     for (quantity, master), value in sorted(values.items()):
-        theirs, _ = integral_dimension(family, recorded.masters[master])
-        rows.setdefault(quantity, []).append(
-            (master, restore_unit(value, dimensions[quantity] - theirs, family))
-        )
-    found = {name: tuple(rows.get(i, ())) for i, name in enumerate(sums)}
-    return ReducedSums(family.name, recorded.masters, found, evidence, effort)
+        name, (number, powers) = ends[quantity], masters[master]
+        theirs, _ = integral_dimension(members[number].family, powers)
+        rows.setdefault(name, []).append((master, restore_unit(value, dimensions[name] - theirs, family)))
+    found |= {name: tuple(row) for name, row in rows.items()}
+    return ReducedSums(families, tuple(masters), found, evidence, effort)
