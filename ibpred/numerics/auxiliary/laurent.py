@@ -1,0 +1,224 @@
+"""Laurent coefficients from values at several small eps, with an error that one more eps checks.
+
+With n values at eps of size r the coefficient of order j past the leading pole has an error of about
+r^(n-j), and loses j log10(1/r) digits of the values: few tiny eps at raised precision do best. The truncation
+is not in the balls, so the difference of the fits with and without the last value is the error given, never
+called certified.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from functools import partial
+from math import ceil
+from typing import Protocol
+
+import flint
+
+from ibpred.balls.accuracy import bits_for, until_accurate
+from ibpred.balls.context import Ball, precision
+from ibpred.balls.decimal import DecimalBall, decimal_ball
+from ibpred.errors import PrecisionError
+from ibpred.numerics.auxiliary.plan import AuxiliaryPlan
+from ibpred.numerics.auxiliary.solve import sampled
+from ibpred.numerics.frobenius.system import fmpq
+from ibpred.numerics.value import Route, Value
+from ibpred.progress import SILENT, Progress
+
+_SPARE_DIGITS = 6
+_MOST_BITS = 20_000
+_ROUNDS = 3
+
+
+class Mapper(Protocol):
+    """Applies a function to every item, in order; `map` itself or a pool's."""
+
+    def __call__(
+        self, function: Callable[[Fraction], tuple[Ball, ...]], items: Sequence[Fraction], /
+    ) -> Iterable[tuple[Ball, ...]]: ...
+
+
+def one_by_one(
+    function: Callable[[Fraction], tuple[Ball, ...]], items: Sequence[Fraction], /
+) -> Iterable[tuple[Ball, ...]]:
+    """The mapper without helpers."""
+    return map(function, items)
+
+
+@dataclass(frozen=True)
+class Sampling:
+    """Which eps are used, and how accurate values must be.
+
+    Attributes
+    ----------
+    points
+        The values of eps; the last one is the check.
+    digits
+        Relative digits of every value.
+    """
+
+    points: tuple[Fraction, ...]
+    digits: int
+
+
+def choose_sampling(orders: int, digits: int, extra: int) -> Sampling:
+    """Values of eps for coefficients through `orders` past the lowest power.
+
+    Parameters
+    ----------
+    orders
+        How many orders lie between the lowest and the highest power wanted.
+    digits
+        Digits wanted of the highest one.
+    extra
+        Further values, where fewer did not suffice.
+    """
+    count = 2 * orders + 4 + extra
+    goal = digits + _SPARE_DIGITS
+    exponent = ceil(goal / (count - 1 - orders)) + 1
+    unit = Fraction(1, 10**exponent)
+    # alternating signs keep the values close together
+    points = tuple(unit * ((i // 2 + 1) * (-1) ** i) for i in range(count))
+    return Sampling(points, goal + orders * exponent + _SPARE_DIGITS)
+
+
+def accurate_sample(plan: AuxiliaryPlan, digits: int, start_bits: int, eps: Fraction) -> tuple[Ball, ...]:
+    """The wanted integrals at one eps to so many digits.
+
+    Raises
+    ------
+    PrecisionError
+        If they are not reached.
+    """
+    return until_accurate(
+        lambda bits: sampled(plan, eps, bits), lambda values: values, digits, start_bits, _MOST_BITS
+    )
+
+
+def auxiliary_values(
+    plan: AuxiliaryPlan,
+    order: int,
+    digits: int,
+    mapper: Mapper = one_by_one,
+    progress: Progress = SILENT,
+) -> tuple[Value, ...]:
+    """Laurent coefficients of the wanted integrals of a plan.
+
+    Parameters
+    ----------
+    plan
+        See `ibpred.numerics.auxiliary.build.auxiliary_plan`.
+    order
+        Highest power of eps.
+    digits
+        Digits wanted of every coefficient, relative to its modulus (absolute where it vanishes).
+    mapper
+        Works on several eps, possibly at the same time.
+    progress
+        Told about the values of eps done.
+
+    Returns
+    -------
+    One value an integral, with estimated radii (`certified` is False).
+
+    Raises
+    ------
+    PrecisionError
+        If the digits are not reached with the most values of eps tried.
+    BoundaryError
+        If regions and differential equations contradict each other.
+    """
+    lowest = -2 * plan.loops
+    if order < lowest:
+        return tuple(Value(powers, {}, False, Route.AUXILIARY_MASS) for powers in plan.wanted)
+    missing = 0
+    for round_ in range(_ROUNDS):
+        sampling = choose_sampling(order - lowest, digits, 2 * round_)
+        progress.stage("auxiliary mass")
+        balls = _samples(plan, sampling, mapper, progress)
+        bits = bits_for(4 * sampling.digits)
+        fits = [
+            fitted(sampling.points, [values[i] for values in balls], lowest, order, bits)
+            for i in range(len(plan.wanted))
+        ]
+        missing = sum(not _is_good(ball, digits) for fit in fits for ball in fit.values())
+        if not missing:
+            return tuple(
+                Value(powers, _decimals(fit, digits), False, Route.AUXILIARY_MASS)
+                for powers, fit in zip(plan.wanted, fits, strict=True)
+            )
+    raise PrecisionError(
+        f"{plan.family}: {missing} coefficients did not settle to {digits} digits when values of eps were added;"
+        " ask for fewer digits"
+    )
+
+
+def _samples(
+    plan: AuxiliaryPlan, sampling: Sampling, mapper: Mapper, progress: Progress
+) -> list[tuple[Ball, ...]]:
+    # nearly equal exponents, eps apart, cost several times the digits of eps
+    tiny = len(str(sampling.points[0].denominator)) - 1
+    start = bits_for(sampling.digits + 12 * tiny + 15)
+    function = partial(accurate_sample, plan, sampling.digits, start)
+    found = []
+    for values in mapper(function, sampling.points):
+        found.append(values)
+        progress.advance(len(found), len(sampling.points))
+    return found
+
+
+def fitted(
+    points: Sequence[Fraction], values: Sequence[Ball], lowest: int, order: int, bits: int
+) -> dict[int, Ball]:
+    """Coefficients of eps^lowest ... eps^order; each ball holds the fits with and without the last point.
+
+    Parameters
+    ----------
+    points, values
+        Values of eps and of the function there.
+    lowest
+        The lowest power that can occur.
+    order
+        The highest power wanted.
+    bits
+        Working precision.
+    """
+    with precision(bits):
+        scaled = [
+            value * flint.arb(fmpq(eps ** (-lowest))) for eps, value in zip(points, values, strict=True)
+        ]
+        full = _interpolated(points, scaled)
+        short = _interpolated(points[:-1], scaled[:-1])
+        found = {}
+        for j in range(order - lowest + 1):
+            difference = flint.arb((full[j] - short[j]).abs_upper())
+            margin = flint.arb(0, difference)
+            found[lowest + j] = full[j] + flint.acb(margin, margin)
+        return found
+
+
+def _interpolated(points: Sequence[Fraction], values: Sequence[Ball]) -> list[Ball]:
+    size = len(points)
+    matrix = flint.fmpq_mat([[fmpq(x**j) for j in range(size)] for x in points])
+    inverse = flint.acb_mat(matrix.inv())
+    return list((inverse * flint.acb_mat([[value] for value in values])).entries())
+
+
+def _is_good(ball: Ball, digits: int) -> bool:
+    with precision(64):
+        radius = ball.real.rad().max(ball.imag.rad())
+        size = ball.mid().abs_upper()
+        goal = flint.arb(10) ** (-digits)
+        return bool(radius <= goal * size) or bool(ball.contains(0) and radius <= goal)
+
+
+def _decimals(fit: dict[int, Ball], digits: int) -> dict[int, DecimalBall]:
+    found = {}
+    leading = True
+    for power, ball in fit.items():
+        leading = leading and ball.contains(0)
+        if not leading:
+            found[power] = decimal_ball(ball, digits + 3)
+    return found
