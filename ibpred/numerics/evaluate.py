@@ -2,23 +2,68 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from typing import Protocol
 
 from ibpred.balls.accuracy import bits_for, until_accurate
 from ibpred.balls.context import Ball
 from ibpred.balls.decimal import decimal_ball
+from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError
 from ibpred.iterated.constants import Constant
-from ibpred.numerics.canonical import CanonicalSystem
+from ibpred.numerics.canonical import CanonicalSystem, Orders, SparseRows, sparse_rows
 from ibpred.numerics.continuation import evaluate_many
 from ibpred.numerics.masters import Row, assemble, needed_order
 from ibpred.numerics.path import Target
+from ibpred.numerics.several import evaluate_several
 from ibpred.numerics.value import Route, Value
 from ibpred.numerics.vanishing import vanishes
 
 _SPARE_BITS = 64
 _SPARE_DIGITS = 2
+
+
+class Functions(Protocol):
+    """Canonical functions that can be evaluated anywhere from their boundary constants."""
+
+    @property
+    def matrices(self) -> Sequence[SparseRows]:
+        """One constant matrix for each letter."""
+
+    def at(self, constants: Orders, targets: Sequence[Mapping[str, Target]], bits: int) -> Sequence[Orders]:
+        """The functions at several points, given by the ratios on their sheets."""
+
+
+@dataclass(frozen=True)
+class InOneRatio:
+    """Functions of one ratio, or of none where there are no letters."""
+
+    system: CanonicalSystem
+
+    @property
+    def matrices(self) -> Sequence[SparseRows]:
+        return [letter.rows for letter in self.system.letters]
+
+    def at(self, constants: Orders, targets: Sequence[Mapping[str, Target]], bits: int) -> Sequence[Orders]:
+        if not self.system.letters:
+            return [constants] * len(targets)
+        return evaluate_many(self.system, constants, [next(iter(t.values())) for t in targets], bits)
+
+
+@dataclass(frozen=True)
+class InSeveralRatios:
+    """Functions of several ratios from their constants at a corner (the smallest ratio first)."""
+
+    form: EpsilonForm
+    corner: tuple[str, ...]
+
+    @property
+    def matrices(self) -> Sequence[SparseRows]:
+        return [sparse_rows(matrix) for matrix in self.form.matrices]
+
+    def at(self, constants: Orders, targets: Sequence[Mapping[str, Target]], bits: int) -> Sequence[Orders]:
+        return [evaluate_several(self.form, self.corner, constants, target, bits) for target in targets]
 
 
 @dataclass(frozen=True)
@@ -28,13 +73,13 @@ class Place:
     Attributes
     ----------
     rows
-        The integrals, at the rational value of the ratio.
-    ratio, unit
-        The ratio on its sheet, and y_u.
+        The integrals, at the rational values of the ratios.
+    ratios, unit
+        The ratios on their sheets, and y_u.
     """
 
     rows: tuple[Row, ...]
-    ratio: Target
+    ratios: Mapping[str, Target]
     unit: Target
 
 
@@ -49,13 +94,13 @@ def evaluate_rows(
     digits: int,
     max_bits: int,
 ) -> tuple[Value, ...]:
-    """Values of integrals at one point; see `evaluate_places`."""
-    place = Place(tuple(rows), ratio, unit)
-    return evaluate_places(system, constants, start, (place,), order, digits, max_bits)[0]
+    """Values of integrals in one ratio at one point; see `evaluate_places`."""
+    place = Place(tuple(rows), {"x": ratio}, unit)
+    return evaluate_places(InOneRatio(system), constants, start, (place,), order, digits, max_bits)[0]
 
 
 def evaluate_places(
-    system: CanonicalSystem,
+    functions: Functions,
     constants: Sequence[Sequence[Constant]],
     start: int,
     places: Sequence[Place],
@@ -67,10 +112,10 @@ def evaluate_places(
 
     Parameters
     ----------
-    system
-        The canonical system; without letters (one-scale families) the functions are the constants.
+    functions
+        The canonical functions; without letters (one-scale families) they are the constants.
     constants, start
-        Boundary constants ``constants[k][i]`` at x -> 0+ from ``eps^start`` on.
+        Boundary constants ``constants[k][i]`` at the corner from ``eps^start`` on.
     places
         The points with their integrals.
     order
@@ -89,7 +134,7 @@ def evaluate_places(
     BoundaryError
         If the constants stop before the power that is needed.
     PointError
-        If a ratio is the zero of a letter.
+        If a letter vanishes at a place.
     PrecisionError
         If `max_bits` does not suffice.
     """
@@ -102,16 +147,17 @@ def evaluate_places(
             f"{needed - start}"
         )
     used = constants[: needed - start + 1]
+    matrices = functions.matrices
 
     def compute(bits: int) -> list[list[dict[int, Ball]]]:
         at_base = tuple(tuple(c.ball(bits) for c in vector) for vector in used)
-        functions = evaluate_many(system, at_base, [place.ratio for place in places], bits)
+        values = functions.at(at_base, [place.ratios for place in places], bits)
         found = []
-        for place, orders in zip(places, functions, strict=True):
+        for place, orders in zip(places, values, strict=True):
             of_place = []
             for row in place.rows:
                 coefficients = assemble(row, orders, start, place.unit, order, bits)
-                of_place.append(_without_zeros(row, coefficients, system, used, start, place.unit))
+                of_place.append(_without_zeros(row, coefficients, matrices, used, start, place.unit))
             found.append(of_place)
         return found
 
@@ -139,7 +185,7 @@ def evaluate_places(
 def _without_zeros(
     row: Row,
     coefficients: dict[int, Ball],
-    system: CanonicalSystem,
+    matrices: Sequence[SparseRows],
     constants: Sequence[Sequence[Constant]],
     start: int,
     unit: Target,
@@ -152,7 +198,7 @@ def _without_zeros(
         if ball.is_zero():
             continue
         doubtful = (leading or at_one) and ball.contains(0)
-        if doubtful and vanishes(row, system, constants, start, power):
+        if doubtful and vanishes(row, matrices, constants, start, power):
             continue
         leading = False
         kept[power] = ball

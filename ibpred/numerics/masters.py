@@ -45,25 +45,25 @@ class Row:
 
 def master_rows(
     form: EpsilonForm,
-    x: Fraction,
+    ratios: Mapping[str, Fraction],
     masters: Sequence[Powers],
     exponents: Sequence[tuple[Fraction, Fraction]],
 ) -> tuple[Row, ...]:
-    """The masters at a rational value of the ratio.
+    """The masters at rational values of the ratios.
 
     Parameters
     ----------
     form
-        In one ratio or none, without square roots.
-    x
-        The ratio, negative on the negative axis whatever the side; without meaning where there is none.
+        Without square roots.
+    ratios
+        Values, negative on the negative axis whatever the side.
     masters, exponents
         Powers of the masters, and their mass dimensions over that of the unit as (A, B) of A + B eps.
 
     Raises
     ------
     PointError
-        If the transformation has a pole at x.
+        If the transformation has a pole there.
     ObstructionError
         If canonical functions carry square roots.
     """
@@ -73,20 +73,20 @@ def master_rows(
         )
     rows = []
     for powers, exponent, line in zip(masters, exponents, form.transformation, strict=True):
-        entries = tuple(_at(entry, form.variables, x) for entry in line)
+        entries = tuple(_at(entry, ratios) for entry in line)
         rows.append(Row(powers, exponent, entries))
     return tuple(rows)
 
 
-def _at(entry: Rational, variables: Sequence[str], x: Fraction) -> Rational:
+def _at(entry: Rational, ratios: Mapping[str, Fraction]) -> Rational:
+    images = {name: EPSILON.constant(value) for name, value in ratios.items()}
     try:
-        return entry.substitute(
-            {"eps": EPSILON.variable("eps"), **{variable: EPSILON.constant(x) for variable in variables}}
-        )
+        return entry.substitute({"eps": EPSILON.variable("eps"), **images})
     except ZeroDivisionError:
+        place = ", ".join(f"{name} = {value}" for name, value in ratios.items())
         raise PointError(
-            f"the masters' basis is singular at {', '.join(variables)} = {x}: {entry.denominator} vanishes "
-            "there; choose another point"
+            f"the masters' basis is singular at {place}: {entry.denominator} vanishes there; choose another "
+            "point"
         ) from None
 
 

@@ -11,22 +11,22 @@ from collections.abc import Sequence
 
 from ibpred.iterated.constants import ZERO, Constant
 from ibpred.iterated.series import laurent
-from ibpred.numerics.canonical import CanonicalSystem
+from ibpred.numerics.canonical import SparseRows
 from ibpred.numerics.masters import Row
 
 Layer = dict[tuple[int, ...], dict[int, Constant]]
 """word -> row -> its constant, for one order in eps."""
 
 
-def word_layers(system: CanonicalSystem, constants: Sequence[Sequence[Constant]]) -> list[Layer]:
+def word_layers(matrices: Sequence[SparseRows], constants: Sequence[Sequence[Constant]]) -> list[Layer]:
     """The canonical functions as combinations of words, one layer an order."""
     layers: list[Layer] = []
     for vector in constants:
         layer: Layer = {(): {row: c for row, c in enumerate(vector) if c}}
         for word, inner in layers[-1].items() if layers else ():
-            for index, letter in enumerate(system.letters):
+            for index, rows in enumerate(matrices):
                 image: dict[int, Constant] = {}
-                for row, entries in letter.rows:
+                for row, entries in rows:
                     total = ZERO
                     for column, value in entries:
                         if column in inner:
@@ -41,7 +41,7 @@ def word_layers(system: CanonicalSystem, constants: Sequence[Sequence[Constant]]
 
 def vanishes(
     row: Row,
-    system: CanonicalSystem,
+    matrices: Sequence[SparseRows],
     constants: Sequence[Sequence[Constant]],
     start: int,
     power: int,
@@ -53,6 +53,8 @@ def vanishes(
 
     Parameters
     ----------
+    matrices
+        One for each letter.
     constants, start
         Exact boundary constants from ``eps^start`` on, far enough for this power.
     """
@@ -67,7 +69,7 @@ def vanishes(
                 factors.append((order, column, factor))
     if not factors:
         return True
-    layers = word_layers(system, constants[: 1 + max(order for order, _, _ in factors)])
+    layers = word_layers(matrices, constants[: 1 + max(order for order, _, _ in factors)])
     totals: dict[tuple[int, ...], Constant] = {}
     for order, column, exact in factors:
         for word, inner in layers[order].items():

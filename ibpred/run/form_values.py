@@ -6,23 +6,24 @@ from collections.abc import Mapping, Sequence
 from fractions import Fraction
 from typing import TYPE_CHECKING
 
+from ibpred.boundary.fix import Boundary
 from ibpred.epsform.form import EpsilonForm
-from ibpred.errors import PointError, UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import masses
 from ibpred.family.units import integral_dimension
-from ibpred.numerics.canonical import CanonicalSystem, canonical_system, refuse_singular
-from ibpred.numerics.evaluate import Place, evaluate_places
+from ibpred.numerics.canonical import CanonicalSystem, canonical_system
+from ibpred.numerics.evaluate import Functions, InOneRatio, InSeveralRatios, Place, evaluate_places
 from ibpred.numerics.masters import Row, integral_row, master_rows, needed_order
 from ibpred.numerics.path import Target
 from ibpred.numerics.point import KinematicPoint, kinematic_point
+from ibpred.numerics.several import refuse_singular_point
 from ibpred.numerics.value import Value
+from ibpred.reduction.table import ReductionTable
 
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
 
 _BITS_PER_DIGIT = 40  # ceiling of the working precision before evaluation gives up
-_AT_REST = Target(Fraction(1), 0)  # the ratio of a family that has none
 
 
 def form_values(
@@ -42,45 +43,34 @@ def form_values(
         If the family is not solved, or the digits cannot be reached.
     """
     family = chain.definition
-    if len(family.invariants) > 2:
-        raise UnfinishedError(
-            f"{family.name} depends on {len(family.invariants) - 1} ratios, and canonical functions are "
-            "summed for one ratio or none"
-        )
     chosen = [_place(chain, point) for point in points]
     form = chain.solved_form()
-    system = canonical_system(form) if form.variables else CanonicalSystem(len(form.transformation), ())
+    named = [dict(zip(form.variables, place.ratios.values(), strict=False)) for place in chosen]
+    for ratios in named:
+        refuse_singular_point(form, ratios)
+    masters = chain.masters().masters
+    table = chain.reduction(tuple(dict.fromkeys(wanted))) if wanted else None
     places = []
-    for place in chosen:
-        ratio = next(iter(place.ratios.values()), _AT_REST)
-        if form.variables:
-            refuse_singular(system, ratio.value)
-        masters = _master_rows(family, form, ratio.value, chain.masters().masters)
-        rows = masters if not wanted else _integral_rows(chain, wanted, masters, place)
-        places.append(Place(rows, ratio, place.unit))
+    for place, ratios in zip(chosen, named, strict=True):
+        rows = _master_rows(family, form, ratios, masters)
+        if table is not None:
+            rows = _integral_rows(chain, table, wanted, rows, place)
+        places.append(Place(rows, ratios, place.unit))
     rows_of_all = [row for place in places for row in place.rows]
     weight = max(needed_order(rows_of_all, order) or 0, 2 * len(family.loops))
     boundary = chain.boundary(weight)
     chain.progress.stage("values")
     ceiling = _BITS_PER_DIGIT * digits + 4000
-    return evaluate_places(system, boundary.constants, boundary.start, places, order, digits, ceiling)
+    functions = _functions(form, boundary)
+    return evaluate_places(functions, boundary.constants, boundary.start, places, order, digits, ceiling)
 
 
-def is_singular(chain: Chain, point: Mapping[str, Fraction]) -> str | None:
-    """Why a point is none at which values exist; None where it is one.
-
-    A point is singular where a letter, or a pole of the masters' basis, vanishes.
-    """
-    try:
-        place = _place(chain, point)
-        form = chain.solved_form()
-        if form.variables:
-            ratio = next(iter(place.ratios.values()))
-            refuse_singular(canonical_system(form), ratio.value)
-            _master_rows(chain.definition, form, ratio.value, chain.masters().masters)
-    except PointError as error:
-        return str(error)
-    return None
+def _functions(form: EpsilonForm, boundary: Boundary) -> Functions:
+    if not form.variables:
+        return InOneRatio(CanonicalSystem(len(form.transformation), ()))
+    if len(form.variables) == 1:
+        return InOneRatio(canonical_system(form))
+    return InSeveralRatios(form, boundary.corner)
 
 
 def _place(chain: Chain, point: Mapping[str, Fraction]) -> KinematicPoint:
@@ -99,17 +89,20 @@ def _exponent(family: FamilyDefinition, powers: Powers) -> tuple[Fraction, Fract
 
 
 def _master_rows(
-    family: FamilyDefinition, form: EpsilonForm, x: Fraction, masters: Sequence[Powers]
+    family: FamilyDefinition, form: EpsilonForm, ratios: Mapping[str, Target], masters: Sequence[Powers]
 ) -> tuple[Row, ...]:
     exponents = [_exponent(family, powers) for powers in masters]
-    return master_rows(form, x, masters, exponents)
+    return master_rows(form, {name: ratio.value for name, ratio in ratios.items()}, masters, exponents)
 
 
 def _integral_rows(
-    chain: Chain, wanted: Sequence[Powers], masters: Sequence[Row], place: KinematicPoint
+    chain: Chain,
+    table: ReductionTable,
+    wanted: Sequence[Powers],
+    masters: Sequence[Row],
+    place: KinematicPoint,
 ) -> tuple[Row, ...]:
     family = chain.definition
-    table = chain.reduction(tuple(dict.fromkeys(wanted)))
     unit = Fraction(1)
     if family.unit is not None:
         unit = chain.euclidean_signs()[family.unit] * place.values[family.unit]

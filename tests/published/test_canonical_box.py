@@ -127,7 +127,7 @@ def test_box_integral(s, t):
     point = kinematic_point(values, SIGNS, "s", DIMENSIONS)
     form = box_form()
     x = point.ratios["t"]
-    rows = master_rows(form, x.value, MASTERS, EXPONENTS)
+    rows = master_rows(form, {"x": x.value}, MASTERS, EXPONENTS)
     assert needed_order(rows, 2) == 4
     results = evaluate_rows(canonical_system(form), full_constants(), 0, rows, x, point.unit, 2, 30, 2000)
     with mp.workdps(45):
@@ -158,7 +158,7 @@ def test_reduction_and_exact_zeros():
     point = kinematic_point(values, SIGNS, "s", DIMENSIONS)
     form = box_form()
     x = point.ratios["t"]
-    rows = master_rows(form, x.value, MASTERS, EXPONENTS)
+    rows = master_rows(form, {"x": x.value}, MASTERS, EXPONENTS)
     base = ring(("d", "s", "t"))
     d, s, t = (base.variable(name) for name in base.names)
     eps = (-d + 4) / 2
@@ -183,12 +183,12 @@ def test_errors():
     constants = tuple(tuple(c.ball(80) for c in vector) for vector in box_constants(2))
     with pytest.raises(PointError, match=r"x = -1 lies on a singularity: the letter x \+ 1"):
         evaluate_canonical(system, constants, Target(Fraction(1), 1), 80)
-    rows = master_rows(form, Fraction(1, 3), MASTERS, EXPONENTS)
+    rows = master_rows(form, {"x": Fraction(1, 3)}, MASTERS, EXPONENTS)
     with pytest.raises(BoundaryError, match="solve through weight 4"):
         evaluate_rows(
             system, box_constants(3), 0, rows, Target(Fraction(1, 3), 0), Target(Fraction(1), 0), 2, 20, 999
         )
     with pytest.raises(PointError, match="basis is singular at x = 0"):
-        master_rows(form, Fraction(0), MASTERS, EXPONENTS)
+        master_rows(form, {"x": Fraction(0)}, MASTERS, EXPONENTS)
     with pytest.raises(PointError, match="lacks a value for t"):
         kinematic_point({"s": Fraction(1)}, SIGNS, "s", DIMENSIONS)
