@@ -28,7 +28,7 @@ class NumeratorImages:
     Attributes
     ----------
     lines
-        The lines that can be numerators: those outside the source sector.
+        The lines that can be numerators: those outside the source sector that have images.
     factors
         For each of them the image times its denominator, as terms.
     denominators
@@ -47,7 +47,7 @@ class NumeratorImages:
 
 
 def numerator_images(map_: SectorMap, family: FamilyDefinition, rank: int) -> NumeratorImages:
-    """Prepare a momentum map for numerators up to a rank.
+    """Prepare a map for numerators up to a rank.
 
     Raises
     ------
@@ -56,12 +56,14 @@ def numerator_images(map_: SectorMap, family: FamilyDefinition, rank: int) -> Nu
     """
     ring = family.internal_ring
     inside = set(lines_of(map_.source))
-    lines = tuple(i for i in range(len(family.lines)) if i not in inside)
+    lines = tuple(i for i in range(len(family.lines)) if i not in inside and map_.reaches(i))
     width = len(family.lines)
     cleared: list[tuple[list[tuple[int, Polynomial]], Polynomial]] = []
     degree = 0
     for i in lines:
-        constant, entries = map_.images[i]
+        image = map_.images[i]
+        assert image is not None, "only lines with images are numerators here"
+        constant, entries = image
         values: list[tuple[int, Rational]] = [(-1, internal(constant, family))]
         values += [(line, internal(value, family)) for line, value in entries]
         common = common_denominator((value for _, value in values), ring)

@@ -43,7 +43,7 @@ def symmetry_rows(
     Parameters
     ----------
     map_
-        A map from the family. A scalar one is applied to the integrals without numerators only.
+        A map from the family. It is applied to the integrals whose numerators all have images.
     powers
         (integrals, lines), all in the source sector.
     code
@@ -55,15 +55,16 @@ def symmetry_rows(
     """
     n = len(family.lines)
     inside = np.array(lines_of(map_.source), dtype=np.int64)
-    outside = np.array([i for i in range(n) if not map_.source >> i & 1], dtype=np.int64)
-    if map_.kind == "scalar":
-        powers = powers[(powers[:, outside] == 0).all(axis=1)]
+    others = [i for i in range(n) if not map_.source >> i & 1]
+    outside = np.array([i for i in others if map_.reaches(i)], dtype=np.int64)
+    unreached = np.array([i for i in others if not map_.reaches(i)], dtype=np.int64)
+    powers = powers[(powers[:, unreached] == 0).all(axis=1)]
     if not len(powers):
         return _nothing(n)
     moved = np.zeros_like(powers)
     moved[:, np.array(map_.lines, dtype=np.int64)] = powers[:, inside]
     numerators, group = _groups(-powers[:, outside])
-    if map_.kind == "scalar" or not numerators.any():
+    if not numerators.any():
         unit = (0,) * len(pool.variables)
         plus = np.array([pool.number({unit: 1})], dtype=np.int32)
         minus = np.array([pool.number({unit: -1})], dtype=np.int32)

@@ -78,7 +78,7 @@ def plans_for(
         own = Depth(depth.dots + growth.dots, depth.rank + growth.rank)
         below = Depth(own.dots, max(_LEAST.rank, depth.rank + growth.rank_below))
         for part in _below(node, members, targets):
-            # a sector that only a scalar map joins to the wanted one counts as the same
+            # a sector that no map of momenta joins to the wanted one counts as the same
             same = part[1].bit_count() == node[1].bit_count()
             depth_there = own if same else below
             reach[part] = depth_there.cover(reach.get(part, depth_there))
@@ -87,21 +87,23 @@ def plans_for(
 
 @dataclass(frozen=True)
 class _Targets:
-    """Where sectors are mapped: by momenta (then they need no seeds), or without numerators only."""
+    """Where sectors are mapped: by momenta (then they need no seeds), or for some numerators only."""
 
     momentum: Mapping[Node, Node]
-    scalar: Mapping[Node, Node]
+    lesser: Mapping[Node, Node]
 
 
 def _targets(members: Sequence[FamilyIdentities]) -> _Targets:
     number_of = {member.family.name: number for number, member in enumerate(members)}
-    found: dict[str, dict[Node, Node]] = {"momentum": {}, "scalar": {}}
+    momentum: dict[Node, Node] = {}
+    lesser: dict[Node, Node] = {}
     for number, member in enumerate(members):
         for map_ in member.analysis.maps:
             if not map_.is_symmetry:
                 target = (number_of[map_.target_family], map_.target)
-                found[map_.kind][number, map_.source] = target
-    return _Targets(found["momentum"], found["scalar"])
+                chosen = momentum if map_.kind == "momentum" else lesser
+                chosen[number, map_.source] = target
+    return _Targets(momentum, lesser)
 
 
 def _below(top: Node, members: Sequence[FamilyIdentities], targets: _Targets) -> list[Node]:
@@ -115,7 +117,7 @@ def _below(top: Node, members: Sequence[FamilyIdentities], targets: _Targets) ->
         found.add(node)
         number, sector = node
         parts = [(number, sector ^ (1 << line)) for line in lines_of(sector)]
-        for part in parts + ([targets.scalar[node]] if node in targets.scalar else []):
+        for part in parts + ([targets.lesser[node]] if node in targets.lesser else []):
             if part[1] not in members[part[0]].analysis.zero:
                 waiting.append(targets.momentum.get(part, part))
     return sorted(found)

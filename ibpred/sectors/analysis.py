@@ -12,7 +12,7 @@ from ibpred.sectors.mapping import SectorMap
 from ibpred.sectors.momenta import FamilyPair, family_pair
 from ibpred.sectors.parameters import all_sectors, family_terms
 from ibpred.sectors.scaleless import zero_sectors_of
-from ibpred.sectors.symmetry import Place, momentum_map, scalar_map, self_maps
+from ibpred.sectors.symmetry import Place, lesser_map, momentum_map, self_maps
 
 
 @dataclass(frozen=True)
@@ -33,7 +33,7 @@ class SectorAnalysis:
     maps
         For each sector of a class but the first, one map to a simpler sector of the class: a map
         of momenta to the first one that such a map reaches (which no map of momenta takes further),
-        or else a scalar map to the representative. Then, for the sectors that no map of momenta
+        or else a partial or scalar map to the representative. Then, for the sectors that no map of momenta
         takes elsewhere, self-maps (``source == target`` and equal families) that generate their
         symmetries, none trivial. Where several families are analysed together, classes reach over all
         of them for this purpose, and a target may belong to an earlier family.
@@ -116,7 +116,7 @@ def analyse_together(families: Sequence[FamilyDefinition]) -> tuple[SectorAnalys
                 if reached is None:
                     if simpler:
                         target, first = simpler[0]
-                        reached = scalar_map(pair(number, target), place, first)
+                        reached = lesser_map(pair(number, target), place, first)
                         assert reached is not None, "sectors of one class have equal canonical forms"
                     simpler.append((number, place))
                     own.extend(self_maps(pair(number, number), place))

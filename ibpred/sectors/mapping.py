@@ -32,17 +32,19 @@ class SectorMap:
     lines
         ``lines[i]`` is the target line that line ``lines_of(source)[i]`` becomes.
     kind
-        ``"momentum"``: found as a change of momenta, holds with numerators. ``"scalar"``: only U
-        and F agree, holds for integrals without numerators (dots are allowed).
+        ``"momentum"``: found as a change of momenta, holds with numerators. ``"partial"``: a change
+        of the momenta that the sector sees, holds for the numerators that see no more.
+        ``"scalar"``: only U and F agree, holds for integrals without numerators. Dots are allowed.
     images
         For each line of the source family its image, in the target's kinematic ring, lines
-        ascending, no zero coefficients; empty for a scalar map.
+        ascending, no zero coefficients; None for a line that a partial map does not reach; empty for a
+        scalar map.
     loop_map
         L x (L + E): ``k_i -> sum_j loop_map[i][j] k_j + sum_e loop_map[i][L+e] p_e``; empty for a
         scalar map.
     leg_map
-        E x E: ``p_e -> sum_f leg_map[e][f] p_f``; keeps all products of external momenta. Empty
-        for a scalar map.
+        E x E: ``p_e -> sum_f leg_map[e][f] p_f``; keeps all products of external momenta (a partial
+        map those of the momenta that the sector sees). Empty for a scalar map.
     """
 
     source_family: str
@@ -51,7 +53,7 @@ class SectorMap:
     target: int
     lines: tuple[int, ...]
     kind: str
-    images: tuple[Image, ...]
+    images: tuple[Image | None, ...]
     loop_map: tuple[tuple[Fraction, ...], ...]
     leg_map: tuple[tuple[Fraction, ...], ...]
 
@@ -59,3 +61,7 @@ class SectorMap:
     def is_symmetry(self) -> bool:
         """Whether it takes a sector to itself."""
         return self.source == self.target and self.source_family == self.target_family
+
+    def reaches(self, line: int) -> bool:
+        """Whether the line has an image."""
+        return bool(self.images) and self.images[line] is not None

@@ -6,11 +6,12 @@ from dataclasses import dataclass
 
 from ibpred.exact.labelling import Permutation, compose, group_elements, isomorphism
 from ibpred.sectors.closure import ChangeGroup
-from ibpred.sectors.forms import Matrix
+from ibpred.sectors.forms import Matrix, is_line
 from ibpred.sectors.mapping import Image, SectorMap
 from ibpred.sectors.momenta import FamilyPair, momentum_changes, verified_images
 from ibpred.sectors.order import lines_of
 from ibpred.sectors.parameters import FamilyTerms
+from ibpred.sectors.partial import partial_images
 
 
 @dataclass(frozen=True)
@@ -27,17 +28,6 @@ class Place:
 
     terms: FamilyTerms
     sector: int
-
-
-def find_map(pair: FamilyPair, source: Place, target: Place) -> SectorMap | None:
-    """A map from one sector to another: a change of momenta if there is one, else a scalar map.
-
-    Returns
-    -------
-    SectorMap or None
-        None if U and F do not agree under any renaming of lines.
-    """
-    return momentum_map(pair, source, target) or scalar_map(pair, source, target)
 
 
 def momentum_map(pair: FamilyPair, source: Place, target: Place) -> SectorMap | None:
@@ -70,20 +60,32 @@ def momentum_map(pair: FamilyPair, source: Place, target: Place) -> SectorMap | 
     return None
 
 
-def scalar_map(pair: FamilyPair, source: Place, target: Place) -> SectorMap | None:
-    """A renaming of lines that carries U and F of one sector into those of another, or None."""
+def lesser_map(pair: FamilyPair, source: Place, target: Place) -> SectorMap | None:
+    """A partial map from one sector to another, or else a scalar one.
+
+    Returns
+    -------
+    SectorMap or None
+        None if U and F do not agree under any renaming of lines.
+    """
     first = isomorphism(source.terms.canonical(source.sector), target.terms.canonical(target.sector))
     if first is None:
         return None
+    sectors = (source.sector, target.sector)
     places = lines_of(target.sector)
-    return _scalar_map(pair, (source.sector, target.sector), tuple(places[i] for i in first))
+    for symmetry in group_elements(target.terms.symmetries(target.sector), len(places)):
+        lines = tuple(places[i] for i in compose(first, symmetry))
+        found = _partial_map(pair, sectors, lines)
+        if found is not None:
+            return found
+    return _scalar_map(pair, sectors, tuple(places[i] for i in first))
 
 
 def self_maps(pair: FamilyPair, place: Place) -> tuple[SectorMap, ...]:
     """Generators of the symmetries of a sector, none trivial.
 
-    Changes of momenta come first and generate all that were found; scalar maps follow for
-    the renamings of lines that keep U and F and are not among the changes of momenta.
+    Changes of momenta come first and generate all that were found; partial or scalar maps follow
+    for the renamings of lines that keep U and F and are not among the changes of momenta.
 
     Parameters
     ----------
@@ -115,7 +117,8 @@ def self_maps(pair: FamilyPair, place: Place) -> tuple[SectorMap, ...]:
         if renaming not in known:
             renamings.append(renaming)
             known = set(group_elements(renamings, size))
-            result.append(_scalar_map(pair, (sector, sector), tuple(lines[i] for i in renaming)))
+            renamed, own = tuple(lines[i] for i in renaming), (sector, sector)
+            result.append(_partial_map(pair, own, renamed) or _scalar_map(pair, own, renamed))
     return tuple(result)
 
 
@@ -124,7 +127,8 @@ def _momentum_map(
     sectors: tuple[int, int],
     lines: tuple[int, ...],
     change: Matrix,
-    images: tuple[Image, ...],
+    images: tuple[Image | None, ...],
+    kind: str = "momentum",
 ) -> SectorMap:
     loops = len(pair.source.family.loops)
     return SectorMap(
@@ -133,11 +137,22 @@ def _momentum_map(
         source=sectors[0],
         target=sectors[1],
         lines=lines,
-        kind="momentum",
+        kind=kind,
         images=images,
         loop_map=change[:loops],
         leg_map=tuple(row[loops:] for row in change[loops:]),
     )
+
+
+def _partial_map(pair: FamilyPair, sectors: tuple[int, int], lines: tuple[int, ...]) -> SectorMap | None:
+    """The map that takes the sector's lines to the given ones, if it reaches a numerator."""
+    source_lines = lines_of(sectors[0])
+    for change, found in partial_images(pair, source_lines, lines):
+        mapped = [found[i] for i in source_lines]
+        exact = all(image and is_line(image, j) for image, j in zip(mapped, lines, strict=True))
+        if exact and sum(image is not None for image in found) > len(source_lines):
+            return _momentum_map(pair, sectors, lines, change, found, "partial")
+    return None
 
 
 def _scalar_map(pair: FamilyPair, sectors: tuple[int, int], lines: tuple[int, ...]) -> SectorMap:
