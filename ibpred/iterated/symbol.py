@@ -1,0 +1,215 @@
+"""Symbols: what remains of a function when all constants are forgotten but rational numbers.
+
+A symbol is a sum of tensors of letters, first entries (innermost integrations, discontinuities) first. It is
+taken modulo constant factors of letters, so it depends on dlog of the letters only. References: Goncharov,
+Spradlin, Vergu, Volovich, arXiv:1006.5703; Duhr, Gangl, Rhodes, arXiv:1110.0458.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+
+from ibpred.epsform.form import EpsilonForm
+from ibpred.errors import InputError
+from ibpred.exact.rational import Rational
+from ibpred.iterated.constants import Constant
+from ibpred.iterated.fibration import FibredFunction, Level
+from ibpred.iterated.words import shuffle
+
+Entries = tuple[Rational, ...]
+Terms = dict[Entries, Fraction]
+
+
+@dataclass(frozen=True)
+class Symbol:
+    """``sum c l1 x l2 x ... x ln``, the first entry first.
+
+    Attributes
+    ----------
+    terms
+        Letters (irreducible polynomials, up to constant factors) -> rational coefficient, without zeros.
+    """
+
+    terms: Mapping[Entries, Fraction]
+
+    def __add__(self, other: Symbol) -> Symbol:
+        total = dict(self.terms)
+        for entries, value in other.terms.items():
+            _add(total, entries, value)
+        return Symbol(total)
+
+    def scaled(self, factor: Fraction | int) -> Symbol:
+        """The symbol times a rational number."""
+        return Symbol({entries: value * factor for entries, value in self.terms.items()} if factor else {})
+
+    def product(self, other: Symbol) -> Symbol:
+        """Symbol of the product of the functions: the shuffle product."""
+        total: Terms = {}
+        for left, a in self.terms.items():
+            for right, b in other.terms.items():
+                for entries, count in shuffle(left, right).items():
+                    _add(total, entries, a * b * count)
+        return Symbol(total)
+
+    def letters(self) -> tuple[Rational, ...]:
+        """All letters that occur, in a fixed order."""
+        return tuple(sorted({letter for entries in self.terms for letter in entries}, key=_size))
+
+    def first_entries(self) -> tuple[Rational, ...]:
+        """Letters at whose zeros the function has discontinuities on its first sheet."""
+        return tuple(sorted({entries[0] for entries in self.terms if entries}, key=_size))
+
+
+def _size(letter: Rational) -> tuple[int, str]:
+    text = str(letter)
+    return len(text), text
+
+
+def _add(total: Terms, entries: Entries, value: Fraction) -> None:
+    new = total.get(entries, Fraction(0)) + value
+    if new:
+        total[entries] = new
+    else:
+        total.pop(entries, None)
+
+
+def letters_of(value: Rational) -> dict[Rational, int]:
+    """``value = constant * prod letter^power``: the irreducible polynomials, leading coefficient positive."""
+    found: dict[Rational, int] = {}
+    for polynomial, power in value.factors()[1]:
+        letter = value.ring.fraction(polynomial, value.ring.context.constant(1))
+        if not letter.is_constant():
+            if letter.numerator.coeffs()[0] < 0:
+                letter = -letter
+            found[letter] = found.get(letter, 0) + power
+    return found
+
+
+def symbol_of_polylog(arguments: Sequence[Rational], x: Rational) -> Symbol:
+    """Symbol of ``G(a1, ..., an; x)`` with all arguments variable.
+
+    From the total differential (Goncharov, math/0103059), with a0 = x and a(n+1) = 0,
+
+    ``d G(a1..an; x) = sum_i G(.. without ai ..; x) [dlog(a(i-1) - ai) - dlog(a(i+1) - ai)]``,
+
+    differences that vanish left out.
+    """
+    return Symbol(_polylog_terms(tuple(arguments), x, {}))
+
+
+def _polylog_terms(arguments: Entries, x: Rational, known: dict[Entries, Terms]) -> Terms:
+    if not arguments:
+        return {(): Fraction(1)}
+    if arguments in known:
+        return known[arguments]
+    chain = (x, *arguments, x.ring.zero)
+    total: Terms = {}
+    for i in range(1, len(chain) - 1):
+        factors: dict[Rational, int] = {}
+        for neighbour, sign in ((chain[i - 1], 1), (chain[i + 1], -1)):
+            difference = neighbour - chain[i]
+            if difference:
+                for letter, power in letters_of(difference).items():
+                    factors[letter] = factors.get(letter, 0) + sign * power
+        if any(factors.values()):
+            shorter = _polylog_terms(arguments[: i - 1] + arguments[i:], x, known)
+            for letter, power in factors.items():
+                for entries, value in shorter.items():
+                    if power:
+                        _add(total, (*entries, letter), value * power)
+    known[arguments] = total
+    return total
+
+
+def symbol_of_function(function: FibredFunction, levels: Sequence[Level]) -> Symbol:
+    """Symbol of a combination of products of polylogarithms; terms with transcendental constants drop out."""
+    total = Symbol({})
+    for key, constant in function:
+        factor = _rational_part(constant)
+        if not factor:
+            continue
+        term = Symbol({(): factor})
+        for word, level in zip(key, levels, strict=True):
+            if word:
+                arguments = [level.roots[a] for a in word]
+                end = arguments[0].ring.variable(level.variable)
+                term = term.product(symbol_of_polylog(arguments, end))
+        total = total + term
+    return total
+
+
+def symbols_of_form(form: EpsilonForm, leading: Sequence[Fraction], length: int) -> tuple[Symbol, ...]:
+    """Symbols of the canonical functions at one order, from the alphabet alone.
+
+    Parameters
+    ----------
+    form
+        The epsilon-form, in any number of ratios.
+    leading
+        The rational constants with which the functions begin.
+    length
+        The order counted from there: the number of entries.
+
+    Raises
+    ------
+    InputError
+        If the form has square roots.
+    """
+    if any(form.tags):
+        raise InputError(
+            "the odd letters of a form with square roots are no polynomials: no symbol here"
+        )
+    alphabet = [letters_of(letter) for letter in form.letters]
+    size = range(len(form.inverse))
+    layer: list[Terms] = [{(): value} if value else {} for value in leading]
+    for _ in range(length):
+        grown: list[Terms] = [{} for _ in size]
+        for matrix, factors in zip(form.matrices, alphabet, strict=True):
+            for i in size:
+                for j in size:
+                    if matrix[i][j]:
+                        for entries, value in layer[j].items():
+                            for letter, power in factors.items():
+                                _add(grown[i], (*entries, letter), value * matrix[i][j] * power)
+        layer = grown
+    return tuple(Symbol(terms) for terms in layer)
+
+
+def is_integrable(symbol: Symbol, variables: Sequence[str]) -> bool:
+    """Whether a symbol is that of a function: for all neighbouring entries ``sum c dlog l ^ dlog l' = 0``.
+
+    Parameters
+    ----------
+    symbol
+        The symbol.
+    variables
+        The ratios on which its letters depend.
+    """
+    forms: dict[tuple[Rational, Rational], tuple[Rational, ...]] = {}
+    sums: dict[tuple[int, Entries, Entries], list[Rational]] = {}
+    for entries, value in symbol.terms.items():
+        for i in range(len(entries) - 1):
+            pair = entries[i], entries[i + 1]
+            if pair not in forms:
+                forms[pair] = _wedge(*pair, variables)
+            key = i, entries[:i], entries[i + 2 :]
+            terms = [component * value for component in forms[pair]]
+            held = sums.get(key)
+            sums[key] = terms if held is None else [a + b for a, b in zip(held, terms, strict=True)]
+    return not any(component for total in sums.values() for component in total)
+
+
+def _wedge(left: Rational, right: Rational, variables: Sequence[str]) -> tuple[Rational, ...]:
+    """Components of ``dlog left ^ dlog right``."""
+    a = [left.derivative(name) / left for name in variables]
+    b = [right.derivative(name) / right for name in variables]
+    return tuple(
+        a[i] * b[j] - a[j] * b[i] for i in range(len(variables)) for j in range(i + 1, len(variables))
+    )
+
+
+def _rational_part(constant: Constant) -> Fraction:
+    part = constant.part(0)
+    return part.real().to_fraction()
