@@ -40,6 +40,8 @@ def symmetry_rows(
 ) -> Entries:
     """One row ``image of I(a) - I(a) = 0`` for each integral of the map's source sector.
 
+    Where cut lines change their sign, I(a) comes with the sign (-1)^(sum of their dots).
+
     Parameters
     ----------
     map_
@@ -63,15 +65,18 @@ def symmetry_rows(
         return _nothing(n)
     moved = np.zeros_like(powers)
     moved[:, np.array(map_.lines, dtype=np.int64)] = powers[:, inside]
-    numerators, group = _groups(-powers[:, outside])
-    if not numerators.any():
+    flips = np.array(map_.flips, dtype=np.int64)
+    odd = (powers[:, flips] - 1).sum(axis=1, keepdims=True) % 2
+    distinct, group = _groups(np.hstack([odd, -powers[:, outside]]))
+    signs, numerators = 1 - 2 * distinct[:, 0], distinct[:, 1:]
+    if not distinct.any():
         unit = (0,) * len(pool.variables)
         plus = np.array([pool.number({unit: 1})], dtype=np.int32)
         minus = np.array([pool.number({unit: -1})], dtype=np.int32)
         expansions = [(np.zeros((1, n), dtype=np.int64), plus, minus, np.zeros(1, dtype=np.int32))]
         group = np.zeros(len(powers), dtype=np.int64)
     else:
-        expansions = _expansions(map_, family, numerators, pool)
+        expansions = _expansions(map_, family, numerators, signs, pool)
     return _assemble(powers, group, expansions, code.code(powers), (target_code or code).code(moved), code)
 
 
@@ -90,7 +95,11 @@ Expansion = tuple[IntArray, NDArray[np.int32], NDArray[np.int32], NDArray[np.int
 
 
 def _expansions(
-    map_: SectorMap, family: FamilyDefinition, numerators: IntArray, pool: CoefficientPool
+    map_: SectorMap,
+    family: FamilyDefinition,
+    numerators: IntArray,
+    signs: IntArray,
+    pool: CoefficientPool,
 ) -> list[Expansion]:
     images = numerator_images(map_, family, int(numerators.sum(axis=1).max()))
     memo: dict[tuple[int, ...], Terms] = {}
@@ -100,7 +109,7 @@ def _expansions(
         top, bottom = expand(images.factors, row, memo), expand(images.denominators, row, weights)
         # the source's own coefficient comes first, marked by an owner of its own
         codes += [bottom[0], top[0]]
-        values += [-bottom[1], top[1]]
+        values += [-bottom[1] * signs[g], top[1]]
         owner += [np.full(len(bottom[0]), 2 * g), np.full(len(top[0]), 2 * g + 1)]
     vectors = images.code.vectors(np.concatenate(codes))
     exponents, monomial = vectors[:, : images.width], vectors[:, images.width :]

@@ -149,10 +149,10 @@ def images(source: LineForms, target: LineForms, change: Matrix) -> tuple[Image,
     return tuple(result)
 
 
-def is_line(image: Image, line: int) -> bool:
-    """Whether an image is exactly one line."""
+def is_line(image: Image, line: int, sign: int = 1) -> bool:
+    """Whether an image is exactly one line, or minus that line."""
     constant, parts = image
-    return not constant and len(parts) == 1 and parts[0][0] == line and parts[0][1].is_one()
+    return not constant and len(parts) == 1 and parts[0][0] == line and (parts[0][1] * sign).is_one()
 
 
 def _monomial_matrix(forms: NDArray[np.object_], scale: int, pairs: Sequence[tuple[int, int]]) -> Any:

@@ -17,7 +17,7 @@ class SectorMap:
 
     With ``(k, p) -> (loop_map (k, p), leg_map p)`` put into the lines of the source family, line j
     becomes `images[j]`, a combination of the lines of the target family, and every line of the
-    source sector becomes exactly one line of the target sector. So
+    source sector becomes exactly one line of the target sector (up to the sign of `flips`). So
 
     ``I_source(a) = integral over prod_j images[j]^(-a_j)``
 
@@ -45,6 +45,9 @@ class SectorMap:
     leg_map
         E x E: ``p_e -> sum_f leg_map[e][f] p_f``; keeps all products of external momenta (a partial
         map those of the momenta that the sector sees). Empty for a scalar map.
+    flips
+        Cut lines of the source sector that become minus their target line. A cut stands for
+        delta(D) and, with dots, its derivatives, so power a takes the sign (-1)^(a-1).
     """
 
     source_family: str
@@ -56,6 +59,7 @@ class SectorMap:
     images: tuple[Image | None, ...]
     loop_map: tuple[tuple[Fraction, ...], ...]
     leg_map: tuple[tuple[Fraction, ...], ...]
+    flips: tuple[int, ...] = ()
 
     @property
     def is_symmetry(self) -> bool:

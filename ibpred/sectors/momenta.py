@@ -124,12 +124,23 @@ def momentum_changes(
 
 def verified_images(
     pair: FamilyPair, source_lines: Sequence[int], target_lines: Sequence[int], change: Matrix
-) -> tuple[Image, ...] | None:
-    """Images of all lines of the source family, if the given lines become exactly the given lines."""
+) -> tuple[tuple[Image, ...], tuple[int, ...]] | None:
+    """Images of all lines of the source family, if the given lines become exactly the given lines.
+
+    Returns
+    -------
+    images, flips
+        With the cut lines that become minus the given line; None if a line becomes something else.
+    """
     found = images(pair.source, pair.target, change)
-    if all(is_line(found[i], j) for i, j in zip(source_lines, target_lines, strict=True)):
-        return found
-    return None
+    flips = []
+    for i, j in zip(source_lines, target_lines, strict=True):
+        if is_line(found[i], j):
+            continue
+        if not pair.source.family.lines[i].cut or not is_line(found[i], j, -1):
+            return None
+        flips.append(i)
+    return found, tuple(flips)
 
 
 def independent_rows(rows: Sequence[Sequence[int]], wanted: int) -> list[int]:

@@ -56,7 +56,7 @@ def momentum_map(pair: FamilyPair, source: Place, target: Place) -> SectorMap | 
         for change in momentum_changes(pair, source_lines, lines):
             found = verified_images(pair, source_lines, lines, change)
             if found is not None:
-                return _momentum_map(pair, (source.sector, target.sector), lines, change, found)
+                return _momentum_map(pair, (source.sector, target.sector), lines, change, *found)
     return None
 
 
@@ -111,7 +111,7 @@ def self_maps(pair: FamilyPair, place: Place) -> tuple[SectorMap, ...]:
             if found is not None:
                 group.adjoin(change)
                 renamings.append(renaming)
-                result.append(_momentum_map(pair, (sector, sector), renamed, change, found))
+                result.append(_momentum_map(pair, (sector, sector), renamed, change, *found))
     known = set(group_elements(renamings, size))
     for renaming in symmetries:
         if renaming not in known:
@@ -128,6 +128,7 @@ def _momentum_map(
     lines: tuple[int, ...],
     change: Matrix,
     images: tuple[Image | None, ...],
+    flips: tuple[int, ...] = (),
     kind: str = "momentum",
 ) -> SectorMap:
     loops = len(pair.source.family.loops)
@@ -141,6 +142,7 @@ def _momentum_map(
         images=images,
         loop_map=change[:loops],
         leg_map=tuple(row[loops:] for row in change[loops:]),
+        flips=flips,
     )
 
 
@@ -151,7 +153,7 @@ def _partial_map(pair: FamilyPair, sectors: tuple[int, int], lines: tuple[int, .
         mapped = [found[i] for i in source_lines]
         exact = all(image and is_line(image, j) for image, j in zip(mapped, lines, strict=True))
         if exact and sum(image is not None for image in found) > len(source_lines):
-            return _momentum_map(pair, sectors, lines, change, found, "partial")
+            return _momentum_map(pair, sectors, lines, change, found, kind="partial")
     return None
 
 

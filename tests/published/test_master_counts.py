@@ -97,7 +97,7 @@ UNPUBLISHED = {
     "planar-vertex": 3,
     "planar-vertex-massive-fermion": 10,
     "planar-vertex-massive-loop": 13,
-    "post-minkowskian-two-loop": 16,
+    "post-minkowskian-two-loop": 13,
     "propagator-benz": 4,
     "propagator-non-planar": 5,
     "propagator-planar-ladder": 5,

@@ -162,7 +162,9 @@ def check_map(source, target, found):
                 right[key] = right[key] + value * coefficient
         assert left == {key: value for key, value in right.items() if value}
         if i in renaming:
-            assert (str(constant), [(m, str(c)) for m, c in parts]) == ("0", [(renaming[i], "1")])
+            sign = "-1" if i in found.flips else "1"
+            assert (str(constant), [(m, str(c)) for m, c in parts]) == ("0", [(renaming[i], sign)])
+    assert all(source.lines[i].cut and i in renaming for i in found.flips)
 
 
 def check_analysis(family, analysis):
@@ -311,6 +313,19 @@ def test_cut_lines_stay_cut():
     analysis = analyse(family)
     check_analysis(family, analysis)
     assert analysis.classes == ((0b0101,), (0b0111, 0b1101), (0b1111,))
+
+
+def test_cut_linear_lines_may_change_their_sign():
+    """Two worldlines: k and q reversed turn both linear lines over, which only their cuts allow."""
+    products = {"u u": "1", "v v": "1", "u v": "y", "q q": "-q2"}
+    texts = ["k . u||cut", "k . v||{}", "k", "k-q"]
+    for flag in ("cut", ""):
+        lines = [text.format(flag) for text in texts]
+        family = families.make_family("worldlines", "k", "u v q", "q2 y", products, lines)
+        analysis = analyse(family)
+        check_analysis(family, analysis)
+        flips = {m.flips for m in analysis.maps_from(0b1111) if m.kind == "momentum"}
+        assert ((0, 1) in flips) == (flag == "cut")
 
 
 def test_self_maps_generate_all_symmetries():
