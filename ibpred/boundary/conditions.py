@@ -67,11 +67,14 @@ class Condition:
         m x n `flint.fmpq_mat`, free of eps.
     values
         One series in eps for each row; None for zero.
+    only
+        The power of eps at which alone it holds; None for all.
     """
 
     name: str
     rows: Any
     values: tuple[Series | None, ...]
+    only: int | None = None
 
 
 @dataclass(frozen=True)

@@ -43,7 +43,8 @@ class Edge:
     values
         The ratios in terms of scales and variable.
     residues
-        Finite point of the variable -> residue; 0 is always there.
+        Finite point of the variable -> residue; 0 is always there, and so are points at which only the
+        basis is singular (their residue vanishes).
     scale_residues
         For each scale its residue, which commutes with all others.
     nonlinear
@@ -121,5 +122,24 @@ def _edge(
                 text = str(form.ring.fraction(polynomial, form.ring.context.constant(1)))
                 others[text] = others.get(text, flint.fmpq_mat(size, size)) + matrix * multiplicity
     residues = {root: matrix for root, matrix in by_root.items() if matrix or root == 0}
+    for row in form.inverse:
+        for entry in row:
+            for root in _linear_roots(entry, values, scales, place):
+                residues.setdefault(root, flint.fmpq_mat(size, size))
     nonlinear = tuple(text for text, matrix in others.items() if matrix)
     return Edge(start, end, tuple(scales), variable, label, dict(values), residues, tuple(totals), nonlinear)
+
+
+def _linear_roots(
+    entry: Rational, values: Mapping[str, Rational], scales: Sequence[str], place: int
+) -> list[Fraction]:
+    """Rational zeros and poles in the variable of the leading term of a function."""
+    if not entry:
+        return []
+    found = []
+    for polynomial, _ in leading(entry.substitute(values), scales)[1].factors()[1]:
+        terms = {tuple(int(n) for n in e): int(c) for e, c in polynomial.to_dict().items()}
+        powers = {e[place]: c for e, c in terms.items()}
+        if len(powers) == len(terms) and max(powers) == 1 and all(sum(e) == e[place] for e in terms):
+            found.append(Fraction(-powers.get(0, 0), powers[1]))
+    return found

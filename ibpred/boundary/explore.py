@@ -61,6 +61,11 @@ class Gathered:
     unused: tuple[str, ...]
 
 
+def unit_transport(size: int, order: int) -> MatrixSeries:
+    """The transport from a corner to itself, through ``eps^order``."""
+    return MatrixSeries(({(0,) * len(NAMES): identity(size)}, *({} for _ in range(order))))
+
+
 def explore(problem: BoundaryProblem, last: int, order: int) -> Iterator[Gathered]:
     """Conditions on the vector at the problem's corner, more of them at each step.
 
@@ -141,7 +146,8 @@ def _walk(
                         "regular"
                     )
                 break
-            passed.append(point)
+            if edge.residues[point]:
+                passed.append(point)
     return end
 
 

@@ -11,11 +11,15 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from ibpred.boundary.explore import BoundaryProblem, Gathered, explore
-from ibpred.boundary.linear import Determined, Undetermined, solve_all
+import flint
+
+from ibpred.boundary.conditions import Condition
+from ibpred.boundary.explore import BoundaryProblem, Gathered, explore, unit_transport
+from ibpred.boundary.linear import Determined, Transported, Undetermined, solve_all, transported
+from ibpred.boundary.recognise import Fit
 from ibpred.errors import BoundaryError, InputError
 from ibpred.iterated.constants import Constant
-from ibpred.iterated.series import eps_valuation
+from ibpred.iterated.series import Series, eps_valuation
 
 _MOST_EXTRA_ORDERS = 3
 _LEAST_CORNERS = 2  # where there are more: the second one confirms the first
@@ -44,6 +48,23 @@ class Evidence:
 
 
 @dataclass(frozen=True)
+class Fitted:
+    """A boundary constant that was recognised from its value, not derived.
+
+    Attributes
+    ----------
+    row, order
+        Canonical function and power of eps.
+    fit
+        The constant, the digits that support it, the odds of a chance hit.
+    """
+
+    row: int
+    order: int
+    fit: Fit
+
+
+@dataclass(frozen=True)
 class Boundary:
     """Boundary constants at a corner ``x1 << x2 << ... -> 0+``: ``f ~ prod_i x_i^(eps A_i) c(eps)``.
 
@@ -59,6 +80,8 @@ class Boundary:
         Points whose conditions could not be used, with the reason.
     corner
         The ratios, the smallest first; empty for a family without a ratio.
+    fitted
+        The constants that rest on a fit; all others are derived, from these too.
     """
 
     start: int
@@ -66,27 +89,37 @@ class Boundary:
     evidence: tuple[Evidence, ...]
     unused: tuple[str, ...]
     corner: tuple[str, ...] = ()
+    fitted: tuple[Fitted, ...] = ()
 
 
-def fix_constants(problem: BoundaryProblem) -> Boundary:
+def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Boundary:
     """Determine the boundary constants exactly.
 
     Parameters
     ----------
     problem
         The epsilon-form and what is known of its masters.
+    fitted
+        Constants at the problem's corner that come from values; everything that follows from the
+        conditions is derived all the same, and a fit that contradicts them is an error.
 
     Raises
     ------
     InputError
-        If the form has square roots or no ratio, or the number of masters or the corner does not fit.
+        If the form has no ratio, or the number of masters or the corner does not fit.
     BoundaryError
-        If constants stay undetermined (names rows and orders), or conditions contradict each other
-        (names the first that does).
+        If the form has square roots, if constants stay undetermined (names rows and orders), or conditions
+        contradict each other (names the first that does).
     """
     form = problem.form
-    if not form.variables or any(form.tags):
-        raise InputError("boundary constants are determined here for ratios without square roots")
+    if not form.variables:
+        raise InputError("a form without ratios has no boundary to fix constants from")
+    if any(form.tags):
+        raise BoundaryError(
+            "the canonical functions carry square roots of "
+            f"{', '.join(str(r) for r in form.radicands)}; boundary constants are determined in variables in "
+            "which all roots are rational: give such variables in [variables]"
+        )
     if sorted(problem.corner) != sorted(form.variables):
         raise InputError(
             f"the corner {' << '.join(problem.corner)} does not name the ratios {', '.join(form.variables)}"
@@ -99,7 +132,7 @@ def fix_constants(problem: BoundaryProblem) -> Boundary:
     extra = 0
     while True:
         # conditions at one order often fix constants of the order before only
-        outcome, gathered = _solve(problem, starts, weight, weight + extra)
+        outcome, gathered = _solve(problem, fitted, starts, weight, weight + extra)
         if isinstance(outcome, Determined):
             break
         extra += 1
@@ -116,7 +149,7 @@ def fix_constants(problem: BoundaryProblem) -> Boundary:
     while len(vectors) > 1 and not any(vectors[0]):
         del vectors[0]
         first += 1
-    return Boundary(first, tuple(vectors), evidence, gathered.unused, problem.corner)
+    return Boundary(first, tuple(vectors), evidence, gathered.unused, problem.corner, tuple(fitted))
 
 
 def _starts(problem: BoundaryProblem) -> tuple[int, ...]:
@@ -131,16 +164,31 @@ def _starts(problem: BoundaryProblem) -> tuple[int, ...]:
 
 
 def _solve(
-    problem: BoundaryProblem, starts: Sequence[int], weight: int, last: int
+    problem: BoundaryProblem, fitted: Sequence[Fitted], starts: Sequence[int], weight: int, last: int
 ) -> tuple[Determined | Undetermined, Gathered]:
     """Visit corners until the constants are determined and confirmed, or no corner is left."""
     outcome: Determined | Undetermined = Undetermined(())
     gathered = Gathered((), ())
+    # fits come last: what follows without them does not rest on them
+    extra = _as_conditions(fitted, len(problem.masters), last - min(starts))
     for count, gathered in enumerate(explore(problem, last, last - min(starts)), start=1):
+        gathered = Gathered((*gathered.conditions, *extra), gathered.unused)
         outcome = solve_all(gathered.conditions, starts, weight, last)
         if isinstance(outcome, Determined) and count >= _LEAST_CORNERS:
             break
     return outcome, gathered
+
+
+def _as_conditions(fitted: Sequence[Fitted], size: int, order: int) -> list[Transported]:
+    found = []
+    for item in fitted:
+        if not 0 <= item.row < size:
+            raise InputError(f"a fit names canonical function {item.row + 1}, but there are {size}")
+        row = flint.fmpq_mat(1, size, [int(k == item.row) for k in range(size)])
+        name = f"fit of canonical function {item.row + 1} at eps^{item.order} ({item.fit.digits} digits)"
+        value = Series(item.order, (item.fit.constant,))
+        found.append(transported(Condition(name, row, (value,), item.order), unit_transport(size, order)))
+    return found
 
 
 def _complaint(problem: BoundaryProblem, outcome: Undetermined, unused: Sequence[str]) -> str:

@@ -175,6 +175,8 @@ def _equations(
     """Nonzero equations of one condition: column -> coefficient, the right-hand side in column -1."""
     result: list[dict[int, Any]] = []
     for order in range(deficit, min(last, deficit + len(item.orders) - 1) + 1):
+        if item.condition.only not in (None, order):
+            continue
         rows: dict[tuple[int, Monomial], dict[int, Any]] = {}
         for j in range(order - deficit + 1):
             for right in monomials_of_weight(order - j - deficit, steps):

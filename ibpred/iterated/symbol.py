@@ -158,9 +158,7 @@ def symbols_of_form(form: EpsilonForm, leading: Sequence[Fraction], length: int)
         If the form has square roots.
     """
     if any(form.tags):
-        raise InputError(
-            "the odd letters of a form with square roots are no polynomials: no symbol here"
-        )
+        raise InputError("the odd letters of a form with square roots are no polynomials: no symbol here")
     alphabet = [letters_of(letter) for letter in form.letters]
     size = range(len(form.inverse))
     layer: list[Terms] = [{(): value} if value else {} for value in leading]

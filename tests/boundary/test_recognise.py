@@ -1,0 +1,90 @@
+from __future__ import annotations
+
+from dataclasses import replace
+from fractions import Fraction
+
+import flint
+import pytest
+from canonical_forms import LEG_BOX_MASTERS, family, leg_box_form
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from ibpred.balls.context import precision, widened
+from ibpred.boundary.fix import Fitted, fix_constants
+from ibpred.boundary.problem import boundary_problem
+from ibpred.boundary.recognise import ALTERNATING, SINGLE_SCALE, Fit, basis_of_weights, recognise
+from ibpred.errors import BoundaryError
+from ibpred.exact.codec import from_data, to_data
+from ibpred.iterated.constants import Constant
+from ibpred.iterated.polylog_values import Place, polylog
+
+rationals = st.fractions(min_value=-30, max_value=30, max_denominator=120)
+
+
+def blurred(constant: Constant, digits: int) -> flint.acb:
+    ball = constant.ball(4 * digits + 60)
+    return widened(ball, flint.arb(10) ** (-digits), 4 * digits + 60)
+
+
+@settings(max_examples=25, deadline=None)
+@given(st.lists(rationals, min_size=4, max_size=4), st.integers(0, 4))
+def test_what_is_put_in_comes_out(coefficients: list[Fraction], weight: int) -> None:
+    basis = basis_of_weights((weight,), SINGLE_SCALE, 2)
+    exact = Constant.from_terms(dict(zip(basis, coefficients, strict=False)))
+    value = blurred(exact, 60)
+    if exact:
+        value = flint.acb(value.real, 0)
+    fit = recognise(flint.acb(value.real), (weight,), SINGLE_SCALE, -20)
+    if basis:
+        assert fit is not None
+        assert fit.constant == exact
+        assert fit.digits in (59, 60)
+
+
+def test_both_parts() -> None:
+    exact = Constant.read("7*zeta3/3 - I*pi^3/6")
+    fit = recognise(blurred(exact, 40), (3,), SINGLE_SCALE, -15)
+    assert fit is not None
+    assert fit.constant == exact
+    assert fit.odds < -25
+
+
+def test_an_alternating_sum_from_its_value() -> None:
+    """G(-1, 0, 1, 1; 1) of weight four, from its series; the tables of double shuffle say the same."""
+    value = polylog([Place(Fraction(a)) for a in (-1, 0, 1, 1)], Place(Fraction(1)), 70)
+    fit = recognise(flint.acb(value.real), (4,), ALTERNATING, -20)
+    assert fit is not None
+    assert fit.constant.ball(300).overlaps(value)
+    assert fit.constant.weights() == {4}
+
+
+def test_numbers_that_are_no_such_constants_are_left_alone() -> None:
+    with precision(400):
+        stranger = flint.acb(flint.arb(1) / 3).gamma()
+        assert recognise(widened(stranger, flint.arb(10) ** -50, 400), (4,), SINGLE_SCALE, -10) is None
+        # too few digits: a relation is found but chance would do as well
+        few = widened(Constant.read("355*zeta3/113").ball(200), flint.arb(10) ** -6, 200)
+        assert recognise(flint.acb(few.real), (3, 2, 0), SINGLE_SCALE, -10) is None
+        assert recognise(flint.acb(flint.arb(1, 10)), (3,), SINGLE_SCALE, -10) is None
+
+
+def test_fits_stand_in_for_what_stays_open() -> None:
+    """Without its conditions the box is open; its constants from values give the same, and are marked."""
+    form = leg_box_form()
+    right = boundary_problem(family("box-one-leg"), LEG_BOX_MASTERS, form, {"s": -1, "t": -1, "p4sq": -1}, 2)
+    derived = fix_constants(right)
+    blind = replace(right, masters=(*right.masters[:3], replace(right.masters[3], powers=None)))
+    fits = []
+    for k, vector in enumerate(derived.constants):
+        fit = recognise(flint.acb(blurred(vector[3], 50).real), (k,), SINGLE_SCALE, -15)
+        assert fit is not None
+        fits.append(Fitted(3, derived.start + k, fit))
+    found = fix_constants(blind, fits)
+    assert found.constants == derived.constants
+    assert found.fitted == tuple(fits)
+    assert from_data(type(found), to_data(found)) == found
+    wrong = [replace(fits[0], fit=Fit(Constant.rational(3), 50, -30)), *fits[1:]]
+    with pytest.raises(BoundaryError, match="fit of canonical function 4"):
+        fix_constants(right, wrong)
+    with pytest.raises(BoundaryError, match="undetermined"):
+        fix_constants(blind, fits[:-1])
