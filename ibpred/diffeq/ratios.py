@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from ibpred.diffeq.system import DifferentialSystem
 from ibpred.errors import InputError
 from ibpred.exact.rational import Rational, Ring, ring
+from ibpred.family.definition import VariableChange
 from ibpred.sectors.order import sector_of
 
 DenseMatrix = tuple[tuple[Rational, ...], ...]
@@ -16,35 +17,60 @@ _LETTERS = ("x", "y", "z")
 
 
 @dataclass(frozen=True)
-class DimensionlessSystem:
-    """``d I / d x = A_x(eps, x) I`` at ``unit = sign``, ``v = sign_v x_v``, ``d = d0 - 2 eps``.
+class Coordinates:
+    """Dimensionless variables for the kinematic space, the unit at plus or minus one.
 
     Attributes
     ----------
-    ratios
-        Names of the ratios, one for each invariant but the unit.
+    names
+        The variables, one for each invariant but the unit.
     definitions
-        For each ratio its definition, e.g. ``t/s`` or ``-s/m2``.
-    invariants
-        For each ratio the invariant it stands for.
-    signs
-        The sign of every invariant in the region where the unit has modulus one and all ratios are
-        positive.
+        For each of them what it means, e.g. ``t/s`` or ``-s/m2``, or an equation such as
+        ``s = -m2*(1-x)^2/x``.
     ring
-        Q(eps, ratios).
+        Q(eps, variables).
+    values
+        Every invariant in terms of the variables, in `ring`.
+    """
+
+    names: tuple[str, ...]
+    definitions: tuple[str, ...]
+    ring: Ring
+    values: Mapping[str, Rational]
+
+
+@dataclass(frozen=True)
+class DimensionlessSystem:
+    """``d I / d x = A_x(eps, x) I`` in dimensionless variables, ``d = d0 - 2 eps``.
+
+    Attributes
+    ----------
+    coordinates
+        The variables and what they mean.
     matrices
-        For each ratio a dense n x n matrix over `ring`.
+        For each variable a dense n x n matrix over the ring of the coordinates.
     blocks
         Number of masters of each sector, in the order of the masters.
     """
 
-    ratios: tuple[str, ...]
-    definitions: tuple[str, ...]
-    invariants: tuple[str, ...]
-    signs: Mapping[str, int]
-    ring: Ring
+    coordinates: Coordinates
     matrices: Mapping[str, DenseMatrix]
     blocks: tuple[int, ...]
+
+    @property
+    def ratios(self) -> tuple[str, ...]:
+        """Names of the variables."""
+        return self.coordinates.names
+
+    @property
+    def definitions(self) -> tuple[str, ...]:
+        """What the variables mean."""
+        return self.coordinates.definitions
+
+    @property
+    def ring(self) -> Ring:
+        """Q(eps, variables)."""
+        return self.coordinates.ring
 
 
 def ratio_names(count: int, taken: tuple[str, ...]) -> tuple[str, ...]:
@@ -59,8 +85,10 @@ def ratio_names(count: int, taken: tuple[str, ...]) -> tuple[str, ...]:
     return tuple(found)
 
 
-def dimensionless(system: DifferentialSystem, signs: Mapping[str, int]) -> DimensionlessSystem:
-    """Set the unit to its sign and pass to ratios that are positive in the region of the signs.
+def ratio_coordinates(
+    system: DifferentialSystem, signs: Mapping[str, int], changes: Sequence[VariableChange] = ()
+) -> Coordinates:
+    """Ratios that are positive in the region of the signs, or the user's variables in place of some of them.
 
     Parameters
     ----------
@@ -68,6 +96,8 @@ def dimensionless(system: DifferentialSystem, signs: Mapping[str, int]) -> Dimen
         The differential equations.
     signs
         +1 or -1 for every invariant, e.g. those of the Euclidean region.
+    changes
+        The user's variables, each instead of the ratio of one invariant.
 
     Raises
     ------
@@ -78,26 +108,79 @@ def dimensionless(system: DifferentialSystem, signs: Mapping[str, int]) -> Dimen
         if signs.get(name) not in (1, -1):
             raise InputError(f"{system.family}: the sign of {name} must be 1 or -1 to form ratios")
     others = tuple(name for name in system.variables if name != system.unit)
-    names = ratio_names(len(others), ("d", "eps", *system.variables))
+    chosen = {change.invariant: change for change in changes}
+    taken = ("d", "eps", *system.variables, *(change.name for change in changes))
+    free = iter(ratio_names(len(others), taken))
+    names = tuple(chosen[name].name if name in chosen else next(free) for name in others)
     target = ring(("eps", *names))
     sizes = dict(zip(system.variables, system.dimensions, strict=True))
-    images = {"d": target.variable("eps") * -2 + system.dimension}
+    values: dict[str, Rational] = {}
     if system.unit is not None:
-        images[system.unit] = target.constant(signs[system.unit])
+        values[system.unit] = target.constant(signs[system.unit])
     definitions = []
     for ratio, name in zip(names, others, strict=True):
-        images[name] = target.variable(ratio) * signs[name]
-        definitions.append(_definition(system, name, sizes, signs))
+        if name in chosen:
+            definitions.append(f"{name} = {chosen[name].text}")
+        else:
+            values[name] = target.variable(ratio) * signs[name]
+            definitions.append(_definition(system, name, sizes, signs))
+    for change in changes:
+        images = {name: values[name] for name in change.value.variables() if name in values}
+        images |= {name: target.variable(name) for name in change.value.variables() if name in names}
+        values[change.invariant] = change.value.substitute(images)
+    return Coordinates(names, tuple(definitions), target, values)
+
+
+def substituted(coordinates: Coordinates, old: str, new: str, value: Rational) -> Coordinates:
+    """Replace one variable by a function of a new one.
+
+    Parameters
+    ----------
+    coordinates
+        The variables so far.
+    old, new
+        The variable that goes and the one that comes in its place.
+    value
+        The old one in terms of the new one, in the new ring.
+    """
+    place = coordinates.names.index(old)
+    names = tuple(new if name == old else name for name in coordinates.names)
+    target = ring(new if name == old else name for name in coordinates.ring.names)
+    image = value.to_ring(target)
+    values = {name: v.substitute({old: image}).to_ring(target) for name, v in coordinates.values.items()}
+    before = coordinates.definitions[place]
+    text = f"{old} = {value.factored_text()}" + (f", {before}" if "=" in before else f", {old} = {before}")
+    if "=" not in before:
+        text = f"{before} = {value.factored_text()}"
+    definitions = tuple(text if k == place else d for k, d in enumerate(coordinates.definitions))
+    return Coordinates(names, definitions, target, values)
+
+
+def dimensionless(system: DifferentialSystem, coordinates: Coordinates) -> DimensionlessSystem:
+    """The equations in dimensionless variables, by the chain rule.
+
+    Parameters
+    ----------
+    system
+        The differential equations.
+    coordinates
+        The invariants as functions of the variables.
+    """
+    target = coordinates.ring
+    images = {"d": target.variable("eps") * -2 + system.dimension, **coordinates.values}
     count = len(system.masters)
-    matrices: dict[str, DenseMatrix] = {}
-    for ratio, name in zip(names, others, strict=True):
-        dense = [[target.zero] * count for _ in range(count)]
-        for row, column, value in system.matrices.get(name, ()):
-            dense[row][column] = value.substitute(images) * signs[name]
-        matrices[ratio] = tuple(map(tuple, dense))
-    return DimensionlessSystem(
-        names, tuple(definitions), others, dict(signs), target, matrices, sector_blocks(system)
-    )
+    dense = {name: [[target.zero] * count for _ in range(count)] for name in coordinates.names}
+    for invariant, value in coordinates.values.items():
+        slopes = {name: value.derivative(name) for name in coordinates.names}
+        used = {name: slope for name, slope in slopes.items() if slope}
+        if not used:
+            continue
+        for row, column, entry in system.matrices.get(invariant, ()):
+            here = entry.substitute(images)
+            for name, slope in used.items():
+                dense[name][row][column] = dense[name][row][column] + here * slope
+    matrices = {name: tuple(map(tuple, rows)) for name, rows in dense.items()}
+    return DimensionlessSystem(coordinates, matrices, sector_blocks(system))
 
 
 def _definition(

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from fractions import Fraction
 
 from ibpred.epsform.assemble import assembled
 from ibpred.epsform.blocks import Block, Finding
@@ -137,15 +138,33 @@ def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cove
     """
     if len(connection.variables) != 1:
         return None
-    for _, outcome in diagonal_blocks(connection, primes, seed, SILENT):
-        points = (
-            outcome.branch_points
-            if isinstance(outcome, Finding)
-            else branch_points(outcome.tag, connection.variables[0])
-        )
-        if points is not None and len(points) == 2:
-            return double_cover(connection, points)
+    for rows, outcome in diagonal_blocks(connection, primes, seed, SILENT):
+        if isinstance(outcome, Finding):
+            points = outcome.branch_points
+            if len(points) == 2 and _helps(restricted(connection, rows), points, primes, seed, _COVERS):
+                return double_cover(connection, points)
+        elif outcome.tag:
+            rational = branch_points(outcome.tag, connection.variables[0])
+            if rational is not None and len(rational) == 2:
+                return double_cover(connection, rational)
     return None
+
+
+_COVERS = 3
+"""Double covers on top of each other that are tried for one block."""
+
+
+def _helps(
+    block: Connection, points: tuple[Fraction | None, ...], primes: Sequence[int], seed: int, most: int
+) -> bool:
+    """Whether a block has an epsilon-form on a double cover, or on a double cover of that."""
+    covered = double_cover(block, points).connection
+    outcome = _solve_block(covered, primes, seed)
+    if not isinstance(outcome, Finding):
+        return True
+    if len(outcome.branch_points) != 2 or most <= 1:
+        return False
+    return _helps(covered, outcome.branch_points, primes, seed, most - 1)
 
 
 def _obstruction(connection: Connection, rows: tuple[int, ...], found: Finding) -> Obstruction:

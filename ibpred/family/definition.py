@@ -102,6 +102,28 @@ class Crossing:
 
 
 @dataclass(frozen=True)
+class VariableChange:
+    """A dimensionless variable that stands for an invariant.
+
+    Attributes
+    ----------
+    name
+        The variable.
+    invariant
+        The invariant that it replaces.
+    value
+        The invariant in terms of the variables and of the invariants that stay.
+    text
+        The same as the user wrote it.
+    """
+
+    name: str
+    invariant: str
+    value: Rational
+    text: str
+
+
+@dataclass(frozen=True)
 class FamilyDefinition:
     """An integral family, complete: every scalar product of a loop momentum is a combination of lines.
 
@@ -127,6 +149,8 @@ class FamilyDefinition:
         The graph, as given or recognised from the momenta of the lines; None where there is none.
     crossings
         Crossings under which the family's integrals are wanted too.
+    variables
+        Variables in which the user wants the epsilon-form and all that follows.
     """
 
     name: str
@@ -140,6 +164,7 @@ class FamilyDefinition:
     lines: tuple[Line, ...]
     graph: Graph | None
     crossings: tuple[Crossing, ...] = ()
+    variables: tuple[VariableChange, ...] = ()
 
     @property
     def kinematic_ring(self) -> Ring:

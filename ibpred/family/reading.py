@@ -23,8 +23,9 @@ from ibpred.family.reading_graph import read_edges, read_joins, read_loop_names
 from ibpred.family.reading_lines import check_independent, read_lines
 from ibpred.family.recognition import recognise
 from ibpred.family.source import Path, Source, parse_source
+from ibpred.family.variables import read_variables
 
-SECTIONS = ("title", "dimension", "momenta", "kinematics", "line", "edge", "legs", "crossings")
+SECTIONS = ("title", "dimension", "momenta", "kinematics", "line", "edge", "legs", "crossings", "variables")
 RESERVED = {"d": "the space-time dimension", "eps": "the regulator"}
 
 _IDENTIFIER = re.compile(r"[A-Za-z_][A-Za-z_0-9]*\Z")
@@ -84,18 +85,20 @@ def read_family(text: str, file: str, name: str) -> FamilyDefinition:
     check_independent(source, records, space, edges=len(edges))
     if graph is None:
         graph = recognise([line for line in records if not line.numerator], len(loops), external)
+    unit = _read_unit(source, invariants)
     family = FamilyDefinition(
         name=name,
         title=title if title is not None else name,
         loops=loops,
         external=external,
         invariants=tuple(Invariant(v, n) for v, n in invariants.items()),
-        unit=_read_unit(source, invariants),
+        unit=unit,
         dimension=4 if dimension is None else dimension,
         gram=gram,
         lines=completed(records, space),
         graph=graph,
         crossings=read_crossings(source, external, gram, momenta.ring),
+        variables=read_variables(source, invariants, unit),
     )
     if not symanzik(family)[0]:
         raise source.error(
@@ -140,6 +143,7 @@ def _check_names(
         ("a loop momentum", ("momenta", "loop"), loops),
         ("an external momentum", ("momenta", "external"), external),
         ("an invariant", ("kinematics", "invariants"), tuple(invariants)),
+        ("a variable", ("variables",), tuple(source.data.get("variables", ()))),
     )
     for kind, path, names in groups:
         for name in names:

@@ -8,31 +8,43 @@ from fractions import Fraction
 from itertools import product
 
 import ibpred
+from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.fix import Boundary, fix_constants
-from ibpred.boundary.problem import boundary_problem, one_scale_values
+from ibpred.boundary.problem import one_scale_values, problem_in_variables
 from ibpred.diffeq.derive import Derivation, differential_system
-from ibpred.diffeq.ratios import DimensionlessSystem, dimensionless
+from ibpred.diffeq.ratios import (
+    Coordinates,
+    DimensionlessSystem,
+    dimensionless,
+    ratio_coordinates,
+    substituted,
+)
 from ibpred.digest import digest
-from ibpred.epsform.factorise import factorise
+from ibpred.epsform.factorise import factorise, root_cover
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
 from ibpred.epsform.matrices import identity, scaled
+from ibpred.epsform.parity import involution, with_parity
 from ibpred.errors import ObstructionError, UnfinishedError
 from ibpred.exact.codec import to_data
 from ibpred.exact.rational import ring
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import euclidean_signs
+from ibpred.identities.rows import family_identities
 from ibpred.iterated.series import Series
 from ibpred.iterated.solution import Solution, solve_orders
 from ibpred.numerics.value import Value
 from ibpred.progress import Progress
 from ibpred.reduction.independent import SectorCount, compare_counts
 from ibpred.reduction.masters import Masters, find_masters
-from ibpred.reduction.table import ReductionTable, reduce_integrals
+from ibpred.reduction.several import reduce_together
+from ibpred.reduction.table import ReductionTable
 from ibpred.reduction.wanted import check_powers
 from ibpred.report.text import integral_text
+from ibpred.run.rows import table_rows
 from ibpred.run.stages import SEED, Stages
 from ibpred.run.store import Store
 from ibpred.run.values import evaluate
+from ibpred.run.workers import Workers
 from ibpred.sectors.analysis import SectorAnalysis, analyse
 
 
@@ -48,10 +60,12 @@ class Chain(Stages):
     progress
         Told what is being done.
     workers
-        Threads that sample the reduction.
+        Who samples the reduction; a number of threads.
     """
 
-    def __init__(self, definition: FamilyDefinition, store: Store, progress: Progress, workers: int) -> None:
+    def __init__(
+        self, definition: FamilyDefinition, store: Store, progress: Progress, workers: int | Workers
+    ) -> None:
         identity = digest(["family", ibpred.__version__, to_data(definition)])
         super().__init__(identity, store, progress, workers)
         self.definition = definition
@@ -82,9 +96,7 @@ class Chain(Stages):
             _Counts,
             None,
             lambda: _Counts(
-                compare_counts(
-                    self.definition, self.analysis(), masters, self.primes[0], SEED, self.progress
-                )
+                compare_counts(self.definition, self.analysis(), masters, self.primes[0], SEED, self.progress)
             ),
         ).sectors
 
@@ -113,21 +125,31 @@ class Chain(Stages):
         """Integrals in terms of the masters."""
         for powers in wanted:
             check_powers(self.definition, powers)
-        masters = self.masters().masters
-        return self._kept(
-            "reduction",
-            ReductionTable,
-            wanted,
-            lambda: reduce_integrals(
-                self.definition,
-                self.analysis(),
-                wanted,
-                masters,
-                self.primes,
-                SEED,
-                self.sampling,
-                self.progress,
-            ),
+        masters = tuple((0, powers) for powers in self.masters().masters)
+        rows = table_rows(self.store, [self.definition], masters)
+        asked = [(0, powers) for powers in wanted]
+        missing = rows.missing(asked)
+        if missing:
+            self._stored(
+                digest([rows.collection, to_data(missing)]),
+                lambda: reduce_together(
+                    family_identities([self.definition], [self.analysis()]),
+                    missing,
+                    masters,
+                    self.primes,
+                    SEED,
+                    self.deck,
+                    self.progress,
+                ),
+                rows.put,
+            )
+        batches = rows.batches(asked)
+        return ReductionTable(
+            self.definition.name,
+            tuple(powers for _, powers in masters),
+            {powers: rows.combination((0, powers)) for powers in wanted},
+            tuple(item for batch in batches for item in batch.evidence),
+            tuple(item for batch in batches for item in batch.effort),
         )
 
     def derivation(self) -> Derivation:
@@ -143,7 +165,7 @@ class Chain(Stages):
                 masters,
                 self.primes,
                 SEED,
-                self.sampling,
+                self.deck,
                 self.progress,
             ),
         )
@@ -155,13 +177,32 @@ class Chain(Stages):
             return {invariant.name: 1 for invariant in self.definition.invariants}
         return found
 
+    def coordinates(self) -> Coordinates:
+        """Dimensionless variables: the ratios, the user's, or those in which square roots are rational."""
+        system = self.derivation().system
+        first = ratio_coordinates(system, self.signs(), self.definition.variables)
+        if self.definition.variables or len(first.names) != 1:
+            return first
+
+        def without_roots() -> Coordinates:
+            found = first
+            while (cover := root_cover(self._connection(found), self.primes, SEED)) is not None:
+                new = cover.connection.variables[0]
+                found = substituted(found, cover.ratio, new, cover.substitution)
+            return found
+
+        return self._kept("coordinates", Coordinates, None, without_roots)
+
     def dimensionless(self) -> DimensionlessSystem:
-        """The differential equations in dimensionless ratios and eps."""
-        return dimensionless(self.derivation().system, self.signs())
+        """The differential equations in dimensionless variables and eps."""
+        return dimensionless(self.derivation().system, self.coordinates())
 
     def connection(self) -> Connection:
         """What is brought to epsilon-form."""
-        system = self.dimensionless()
+        return self._connection(self.coordinates())
+
+    def _connection(self, coordinates: Coordinates) -> Connection:
+        system = dimensionless(self.derivation().system, coordinates)
         labels = tuple(self.label(i) for i in range(len(self.masters().masters)))
         return Connection(system.ratios, system.ring, system.matrices, system.blocks, labels)
 
@@ -179,16 +220,18 @@ class Chain(Stages):
         return found
 
     def _normalised(self, found: EpsilonForm | Obstructed) -> EpsilonForm | Obstructed:
-        """Scale all functions by one power of eps so that they begin at ``eps^0``.
+        """Choose functions of definite parity where the variable has a symmetry, beginning at ``eps^0``.
 
-        The differential equation is blind to such a factor; the boundary constants tell it. Where they
-        stay open the form is left as it is.
+        The differential equation is blind to a power of eps that multiplies all of them; the boundary
+        constants tell it. Where they stay open no power is taken out.
         """
         if isinstance(found, Obstructed) or len(found.variables) != 1 or any(found.tags):
             return found
-        masters = self.masters().masters
+        symmetry = involution(self.coordinates().values.values(), found.variables[0])
+        if symmetry is not None:
+            found = with_parity(found, symmetry)
         try:
-            problem = boundary_problem(self.definition, masters, found, self.euclidean_signs(), 0)
+            problem = self._boundary_problem(found, 0)
             start = fix_constants(problem).start
         except UnfinishedError:
             return found
@@ -240,10 +283,15 @@ class Chain(Stages):
             form, signs, masters = self.solved_form(), self.euclidean_signs(), self.masters().masters
             self.progress.stage("boundary constants")
             if form.variables:
-                return fix_constants(boundary_problem(self.definition, masters, form, signs, weight))
+                return fix_constants(self._boundary_problem(form, weight))
             return _one_scale_boundary(one_scale_values(self.definition, masters, signs, weight))
 
         return self._kept("boundary", Boundary, weight, compute)
+
+    def _boundary_problem(self, form: EpsilonForm, weight: int) -> BoundaryProblem:
+        self.euclidean_signs()
+        values, masters = self.coordinates().values, self.masters().masters
+        return problem_in_variables(self.definition, masters, form, values, weight)
 
     def solution(self, weight: int) -> Solution:
         """The canonical functions in iterated integrals through ``eps^weight``."""

@@ -11,10 +11,11 @@ import pytest
 
 from ibpred.diffeq.checks import check_integrability, check_scaling, check_system
 from ibpred.diffeq.derive import Derivation, differential_system
-from ibpred.diffeq.ratios import dimensionless, ratio_names
+from ibpred.diffeq.ratios import dimensionless, ratio_coordinates, ratio_names, substituted
 from ibpred.errors import InputError
 from ibpred.exact.primes import first_primes
 from ibpred.family.definition import FamilyDefinition
+from ibpred.exact.rational import ring
 from ibpred.family.reading import read_family
 from ibpred.family.signs import euclidean_signs
 from ibpred.reduction.masters import find_masters
@@ -81,7 +82,7 @@ def test_massless_box_in_canonical_form() -> None:
     family, found = derived("massless-box", ((2, 0, 1, 0), (0, 2, 0, 1)))
     signs = euclidean_signs(family)
     assert signs == {"s": -1, "t": -1}
-    system = dimensionless(found.system, signs)
+    system = dimensionless(found.system, ratio_coordinates(found.system, signs))
     assert system.ratios == ("x",)
     assert system.definitions == ("t/s",)
     ring = system.ring
@@ -126,10 +127,10 @@ def test_ratios_take_signs_and_dimensions_into_account() -> None:
     family, found = derived("bubble-two-masses")
     signs = euclidean_signs(family)
     assert signs == {"s": -1, "m2": 1}
-    system = dimensionless(found.system, signs)
+    system = dimensionless(found.system, ratio_coordinates(found.system, signs))
     # at the point x = 3 the matrix is the chain rule's image of the original one
     unit = found.system.unit
-    other = system.invariants[0]
+    (other,) = (name for name in system.coordinates.values if name != unit)
     point = {"d": Fraction(17, 5), unit: Fraction(signs[unit]), other: Fraction(3 * signs[other])}
     eps = (found.system.dimension - Fraction(17, 5)) / 2
     dense = {(i, j): v for i, j, v in found.system.matrices[other]}
@@ -139,7 +140,21 @@ def test_ratios_take_signs_and_dimensions_into_account() -> None:
             theirs = dense[i, j].substitute(point).to_fraction() if (i, j) in dense else Fraction(0)
             assert ours == theirs * signs[other]
     with pytest.raises(InputError, match="sign of"):
-        dimensionless(found.system, {unit: 1})
+        ratio_coordinates(found.system, {unit: 1})
+
+
+def test_substitution_of_a_variable_is_the_chain_rule() -> None:
+    family, found = derived("bubble-two-masses")
+    first = ratio_coordinates(found.system, euclidean_signs(family))
+    w = ring(("eps", "w")).variable("w")
+    second = substituted(first, "x", "w", (1 - w) ** 2 / w)
+    assert second.definitions == ("-s/m2 = (w-1)^2/w",)
+    old, new = dimensionless(found.system, first), dimensionless(found.system, second)
+    slope = (w * w - 1) / w**2
+    for i in range(2):
+        for j in range(2):
+            image = old.matrices["x"][i][j].substitute({"x": (1 - w) ** 2 / w})
+            assert new.matrices["w"][i][j] == image * slope
 
 
 def test_ratio_names_avoid_those_taken() -> None:
@@ -150,7 +165,7 @@ def test_ratio_names_avoid_those_taken() -> None:
 def test_blocks_are_sectors() -> None:
     family, found = derived("planar-double-box")
     signs = euclidean_signs(family)
-    system = dimensionless(found.system, signs)
+    system = dimensionless(found.system, ratio_coordinates(found.system, signs))
     assert system.blocks == (1, 1, 1, 1, 1, 1, 2)
     start = 0
     for size in system.blocks:

@@ -7,7 +7,7 @@ from pathlib import Path
 import pytest
 
 from ibpred.diffeq.derive import differential_system
-from ibpred.diffeq.ratios import dimensionless
+from ibpred.diffeq.ratios import dimensionless, ratio_coordinates
 from ibpred.epsform.exponents import exponents
 from ibpred.epsform.factorise import factorise, root_cover
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
@@ -31,7 +31,7 @@ def connection_of(name: str) -> Connection:
     masters = find_masters(family, analysis, PRIMES[0], 1).masters
     system = differential_system(family, analysis, masters, PRIMES, 1).system
     signs = euclidean_signs(family) or {i.name: 1 for i in family.invariants}
-    whole = dimensionless(system, signs)
+    whole = dimensionless(system, ratio_coordinates(system, signs))
     return Connection(whole.ratios, whole.ring, whole.matrices, whole.blocks, tuple(map(str, masters)))
 
 
