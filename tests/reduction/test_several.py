@@ -55,6 +55,29 @@ def test_form_factor_has_four_masters() -> None:
     assert found.trials[-1].count == found.trials[-2].count == 4
 
 
+def test_three_loop_propagators_have_six_masters() -> None:
+    """Planar ladder, benz and non-planar together: Chetyrkin, Tkachov, Nucl. Phys. B192 (1981) 159."""
+    _, _, found = joined(
+        ("propagator-planar-ladder", ""), ("propagator-benz", ""), ("propagator-non-planar", "")
+    )
+    assert len(found.masters) == 6
+    assert {found.families[number] for number, _ in found.masters} == {
+        "propagator-planar-ladder",
+        "propagator-non-planar",
+    }
+
+
+def test_double_boxes_and_a_crossing() -> None:
+    """Eight of the crossed box's twelve masters (Tausk, hep-ph/9909506) are planar, three of them in u."""
+    more = '[crossings]\nu = { p1 = "p2", p2 = "p1" }\n'
+    _, _, found = joined(("planar-double-box", more), ("crossed-double-box", ""))
+    names = [found.families[number] for number, _ in found.masters]
+    assert names.count("planar-double-box") == 8
+    assert names.count("planar-double-box.u") == 3
+    assert names.count("crossed-double-box") == 4
+    assert len(names) == 15
+
+
 def test_one_member_is_one_family() -> None:
     _, _, found = joined(("planar-vertex", ""))
     family = shipped("planar-vertex")
