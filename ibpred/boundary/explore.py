@@ -43,6 +43,8 @@ class BoundaryProblem:
         L: an integral that is not known in closed form has poles of order at most 2 L in eps.
     weight
         Constants are wanted through ``eps^weight`` of the canonical functions.
+    start
+        All canonical functions are known to vanish before this power of eps; None where nothing is known.
     """
 
     form: EpsilonForm
@@ -51,6 +53,7 @@ class BoundaryProblem:
     corner: Corner
     loops: int
     weight: int
+    start: int | None = None
 
 
 @dataclass(frozen=True)

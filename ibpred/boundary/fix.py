@@ -157,10 +157,11 @@ def _starts(problem: BoundaryProblem) -> tuple[int, ...]:
     poles = []
     for master in problem.masters:
         poles.append(-2 * problem.loops if master.closed is None else eps_valuation(master.closed.rational))
-    return tuple(
+    bounds = (
         min(eps_valuation(entry) + poles[j] for j, entry in enumerate(row) if entry)
         for row in problem.form.inverse
     )
+    return tuple(bound if problem.start is None else max(bound, problem.start) for bound in bounds)
 
 
 def _solve(

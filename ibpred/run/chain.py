@@ -31,7 +31,7 @@ from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import euclidean_signs
 from ibpred.identities.rows import family_identities
 from ibpred.iterated.series import Series
-from ibpred.iterated.solution import Solution, solve_orders
+from ibpred.iterated.solution import Solution, constant_solution, solve_orders
 from ibpred.numerics.value import Value
 from ibpred.progress import Progress
 from ibpred.reduction.independent import SectorCount, compare_counts
@@ -291,18 +291,22 @@ class Chain(Stages):
     def _boundary_problem(self, form: EpsilonForm, weight: int) -> BoundaryProblem:
         self.euclidean_signs()
         values, masters = self.coordinates().values, self.masters().masters
-        return problem_in_variables(self.definition, masters, form, values, weight)
+        problem = problem_in_variables(self.definition, masters, form, values, weight)
+        if weight <= 0:
+            return problem
+        # where the functions begin is seen at the first orders, and saves transports of high order
+        try:
+            return replace(problem, start=self.boundary(0).start)
+        except UnfinishedError:
+            return problem
 
     def solution(self, weight: int) -> Solution:
         """The canonical functions in iterated integrals through ``eps^weight``."""
         form, boundary = self.solved_form(), self.boundary(weight)
         self.progress.stage("iterated integrals")
         if form.variables:
-            return solve_orders(form, boundary.constants, weight, boundary.start)
-        orders = tuple(
-            tuple((((), value),) if value else () for value in vector) for vector in boundary.constants
-        )
-        return Solution((), boundary.start, orders)
+            return solve_orders(form, boundary.corner, boundary.constants, weight, boundary.start)
+        return constant_solution(boundary.constants, boundary.start)
 
     def evaluate(
         self, point: Mapping[str, Fraction], wanted: tuple[Powers, ...], order: int, digits: int
