@@ -22,6 +22,7 @@ if TYPE_CHECKING:
     from ibpred.run.chain import Chain
     from ibpred.run.joint import Joint, NamedPowers
     from ibpred.run.store import Store
+    from ibpred.run.workers import Workers
 
 C = TypeVar("C", bound=Callable[..., Any])
 
@@ -36,6 +37,7 @@ class Shared:
     json: bool
     quiet: bool
     others: tuple[Path, ...] = ()
+    cluster: str | None = None
 
 
 def shared_options(command: C) -> C:
@@ -57,11 +59,12 @@ def _with_options(command: C, argument: Callable[[C], C]) -> C:
         workers: int,
         as_json: bool,
         quiet: bool,
+        cluster: str | None,
         **own: Any,
     ) -> Any:
         first, *others = (Path(name) for name in ([family] if isinstance(family, str) else family))
         folder = Path(work) if work else None
-        return command(Shared(first, folder, workers, as_json, quiet, tuple(others)), **own)
+        return command(Shared(first, folder, workers, as_json, quiet, tuple(others), cluster), **own)
 
     entry.__doc__ = command.__doc__
     entry.__name__ = command.__name__
@@ -70,6 +73,11 @@ def _with_options(command: C, argument: Callable[[C], C]) -> C:
     for decorate in (
         click.option("--quiet", is_flag=True, help="Show no progress."),
         click.option("--json", "as_json", is_flag=True, help="Print the result as one JSON object."),
+        click.option(
+            "--cluster",
+            metavar="ADDRESS",
+            help="Hand the samples to the workers of a running Dask scheduler instead.",
+        ),
         click.option(
             "--workers",
             type=click.IntRange(min=1),
@@ -94,8 +102,8 @@ def open_chain(shared: Shared) -> Iterator[Chain]:
     from ibpred.run.files import read_family_file
 
     definition = read_family_file(shared.file)
-    with _opened(shared, definition.name) as (store, progress):
-        yield Chain(definition, store, progress, shared.workers)
+    with _opened(shared, definition.name) as (store, progress, workers):
+        yield Chain(definition, store, progress, workers)
 
 
 @contextmanager
@@ -105,22 +113,33 @@ def open_joint(shared: Shared) -> Iterator[Joint]:
     from ibpred.run.joint import Joint
 
     definitions = [read_family_file(file) for file in (shared.file, *shared.others)]
-    with _opened(shared, definitions[0].name) as (store, progress):
-        yield Joint(definitions, store, progress, shared.workers)
+    with _opened(shared, definitions[0].name) as (store, progress, workers):
+        yield Joint(definitions, store, progress, workers)
 
 
 @contextmanager
-def _opened(shared: Shared, name: str) -> Iterator[tuple[Store, Progress]]:
+def _opened(shared: Shared, name: str) -> Iterator[tuple[Store, Progress, Workers]]:
     from ibpred.cli.progress import terminal_progress
     from ibpred.progress import SILENT
     from ibpred.run.store import Store
+    from ibpred.run.workers import Threads
 
     with Store(shared.work or shared.file.parent / ".ibpred" / name) as store:
-        if shared.quiet:
-            yield store, SILENT
-        else:
-            with terminal_progress() as progress:
-                yield store, progress
+        workers: Workers = _cluster(shared.cluster) if shared.cluster else Threads(shared.workers)
+        try:
+            if shared.quiet:
+                yield store, SILENT, workers
+            else:
+                with terminal_progress() as progress:
+                    yield store, progress, workers
+        finally:
+            workers.close()
+
+
+def _cluster(address: str) -> Workers:
+    from ibpred.run.cluster import Cluster
+
+    return Cluster(address)
 
 
 def emit(shared: Shared, data: Any, text: Callable[[], str]) -> None:

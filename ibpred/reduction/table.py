@@ -29,17 +29,15 @@ class ReductionTable:
     reductions
         For each wanted integral, in the order asked, its combination over the family's full ring; empty for
         an integral that vanishes.
-    evidence
-        Of the reconstruction; None where nothing had to be reconstructed.
-    effort
-        What it took; None likewise.
+    evidence, effort
+        Of each reconstruction that was needed, and what it took.
     """
 
     family: str
     masters: tuple[Powers, ...]
     reductions: Mapping[Powers, Combination]
-    evidence: Evidence | None
-    effort: Effort | None
+    evidence: tuple[Evidence, ...]
+    effort: tuple[Effort, ...]
 
 
 def reduce_integrals(
@@ -91,6 +89,6 @@ def reduce_integrals(
         family.name,
         tuple(powers for _, powers in table.masters),
         {powers: row for (_, powers), row in table.reductions.items()},
-        table.evidence[0] if table.evidence else None,
-        table.effort[0] if table.effort else None,
+        table.evidence,
+        table.effort,
     )

@@ -2,15 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from typing import Any
 
 from ibpred.family.members import Member
 from ibpred.identities.quantities import Integral
 from ibpred.reduction.masters import CommonMasters
-from ibpred.reduction.several import CommonTable
+from ibpred.reduction.sums import ReducedSums
 
 Data = dict[str, Any]
+
+TextTerms = Sequence[tuple[int, str]]
+"""(index of a master, coefficient as text) of a combination."""
 
 
 def integral_data(members: Sequence[Member], integral: Integral) -> Data:
@@ -37,38 +40,61 @@ def common_masters_data(members: Sequence[Member], masters: CommonMasters) -> Da
     }
 
 
-def common_reduction_data(members: Sequence[Member], table: CommonTable) -> Data:
+def reduction_entry(
+    members: Sequence[Member], masters: Sequence[Integral], integral: Integral, terms: TextTerms
+) -> Data:
+    """One integral in terms of the masters, of one family or several."""
+    return {
+        **integral_data(members, integral),
+        "terms": [
+            {"master": integral_data(members, masters[index]), "coefficient": text} for index, text in terms
+        ],
+    }
+
+
+def common_reduction_data(
+    members: Sequence[Member], masters: Sequence[Integral], reductions: Iterable[Data]
+) -> Data:
     """What `reduce` prints for several families."""
     return {
         "families": _families(members),
-        "masters": [integral_data(members, integral) for integral in table.masters],
-        "reductions": [
+        "masters": [integral_data(members, integral) for integral in masters],
+        "reductions": list(reductions),
+    }
+
+
+def sums_data(members: Sequence[Member], found: ReducedSums) -> Data:
+    """What `reduce` prints for sums."""
+    return {
+        "families": _families(members),
+        "masters": [integral_data(members, integral) for integral in found.masters],
+        "sums": [
             {
-                **integral_data(members, integral),
+                "name": name,
                 "terms": [
                     {
-                        "master": integral_data(members, table.masters[index]),
+                        "master": integral_data(members, found.masters[index]),
                         "coefficient": value.factored_text(),
                     }
                     for index, value in combination
                 ],
             }
-            for integral, combination in table.reductions.items()
+            for name, combination in found.sums.items()
         ],
     }
+
+
+def plain_entry(entry: Data) -> Data:
+    """An entry of one family that is not crossed: masters by their powers alone."""
+    terms = [{**term, "master": term["master"]["powers"]} for term in entry["terms"]]
+    kept = {key: value for key, value in entry.items() if key != "family"}
+    return {**kept, "terms": terms}
 
 
 def without_families(data: Data) -> Data:
-    """The reductions of one family that is not crossed, in the shape that has its name once."""
+    """Reductions or sums of one family that is not crossed, in the shape that has its name once."""
     (name,) = data["families"]
-    return {
-        "family": name,
-        "masters": [master["powers"] for master in data["masters"]],
-        "reductions": [
-            {
-                "powers": reduction["powers"],
-                "terms": [{**term, "master": term["master"]["powers"]} for term in reduction["terms"]],
-            }
-            for reduction in data["reductions"]
-        ],
+    entries: Data = {
+        key: [plain_entry(e) for e in data[key]] for key in ("reductions", "sums") if key in data
     }
+    return {"family": name, "masters": [master["powers"] for master in data["masters"]], **entries}

@@ -50,7 +50,7 @@ def masters_text(data: Data) -> str:
     return "\n".join(lines + columns(rows))
 
 
-def _named(integral: Data) -> str:
+def named_integral(integral: Data) -> str:
     """An integral of several families' tables."""
     name = integral["family"] + (f".{integral['crossing']}" if "crossing" in integral else "")
     return integral_text(name, integral["powers"])
@@ -73,7 +73,7 @@ def common_masters_text(data: Data) -> str:
     """The masters of several families, one a line."""
     lines = [f"{data['count']} master integral{'s' if data['count'] != 1 else ''}"]
     rows = [
-        [f"  {number}", _named(master), f"{master['lines']} lines"]
+        [f"  {number}", named_integral(master), f"{master['lines']} lines"]
         for number, master in enumerate(data["masters"], start=1)
     ]
     return "\n".join(lines + columns(rows))
@@ -108,13 +108,10 @@ def _is_sum(text: str) -> bool:
     return False
 
 
-def common_reduction_text(data: Data) -> str:
-    """The reductions, of one family or several, one a line."""
-    lines = []
-    for reduction in data["reductions"]:
-        terms = [(t["coefficient"], _named(t["master"])) for t in reduction["terms"]]
-        lines.append(f"{_named(reduction)} = {_sum(terms)}")
-    return "\n".join(lines)
+def reduction_line(entry: Data) -> str:
+    """One integral or named sum in terms of the masters."""
+    terms = [(t["coefficient"], named_integral(t["master"])) for t in entry["terms"]]
+    return f"{entry['name'] if 'name' in entry else named_integral(entry)} = {_sum(terms)}"
 
 
 def differential_text(data: Data) -> str:

@@ -29,6 +29,7 @@ from ibpred.run.workers import LANES, Samples, Workers, joined, pieces
 R = TypeVar("R")
 
 _PIECE_WORK = 2**36  # multiply-adds of one saved batch of samples: seconds on one core
+_THREADS_A_PIECE = 8  # more threads than that get several batches at once
 _UNSAVED_SECONDS = 5.0  # work that may wait for the next saving
 _UNSAVED_BYTES = 2**26
 _SECONDS_A_BYTE = 5e-9  # samples that are replayed faster than that are not worth saving
@@ -176,14 +177,26 @@ class StoredSampler:
         """Values and good lanes at the points."""
         work = _PIECE_WORK // max(1, self.tape.multiply_adds)
         size = max(LANES, work // LANES * LANES)
-        return joined([self._piece(points[:, a:b], prime) for a, b in pieces(points.shape[1], size)])
+        blocks = [points[:, a:b] for a, b in pieces(points.shape[1], size)]
+        keys = [self._key(block, prime) for block in blocks]
+        found: dict[str, Samples] = {}
+        for key, block in zip(keys, blocks, strict=True):
+            stored = self.deck.store.get_bytes(key)
+            if stored is not None:
+                found[key] = self._unpacked(stored, block.shape[1])
+        missing = [(key, block) for key, block in zip(keys, blocks, strict=True) if key not in found]
+        together = -(-self.deck.workers.width // _THREADS_A_PIECE)
+        for a, b in pieces(len(missing), together):
+            found.update(self._replayed(missing[a:b], prime))
+        return joined([found[key] for key in keys])
 
-    def _piece(self, points: NDArray[np.uint64], prime: int) -> Samples:
+    def _key(self, points: NDArray[np.uint64], prime: int) -> str:
         content = hashlib.sha256(np.ascontiguousarray(points, "<u8").tobytes()).hexdigest()
-        key = digest(["samples", self.identity, prime, content])
-        stored = self.deck.store.get_bytes(key)
-        if stored is not None:
-            return self._unpacked(stored, points.shape[1])
+        return digest(["samples", self.identity, prime, content])
+
+    def _replayed(self, blocks: list[tuple[str, NDArray[np.uint64]]], prime: int) -> dict[str, Samples]:
+        """Replay some blocks together; keep them one by one, so that their size depends on the tape only."""
+        points = np.concatenate([block for _, block in blocks], axis=1)
         began = time.perf_counter()
         values, good = self.deck.workers.replay(self.tape, points, prime)
         seconds = time.perf_counter() - began
@@ -191,10 +204,18 @@ class StoredSampler:
         meter.seconds += seconds
         meter.samples += points.shape[1]
         meter.terms += points.shape[1] * self.tape.multiply_adds
-        if seconds > _SECONDS_A_BYTE * values.nbytes:
-            body = values.astype("<u8").tobytes() + good.astype(np.uint8).tobytes()
-            self.deck.keep(key, "samples", body, False, seconds)
-        return values, good
+        worth = seconds > _SECONDS_A_BYTE * values.nbytes
+        found: dict[str, Samples] = {}
+        start = 0
+        for key, block in blocks:
+            lanes = slice(start, start + block.shape[1])
+            start = lanes.stop
+            part = values[:, lanes], good[lanes]
+            found[key] = part
+            if worth:
+                body = part[0].astype("<u8").tobytes() + part[1].astype(np.uint8).tobytes()
+                self.deck.keep(key, "samples", body, False, seconds / len(blocks))
+        return found
 
     def _unpacked(self, body: bytes, count: int) -> Samples:
         size = self.entries * count * 8

@@ -5,7 +5,7 @@ from __future__ import annotations
 import os
 import shutil
 import tempfile
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from pathlib import Path
 
 from ibpred.errors import InputError, UnwritableError
@@ -58,15 +58,27 @@ def write_file(path: Path, content: str | bytes) -> None:
     UnwritableError
         If the file cannot be written; an old one then stays.
     """
+    write_pieces(path, [content])
+
+
+def write_pieces(path: Path, content: Iterable[str | bytes]) -> None:
+    """The same for a file that is made piece by piece, as long tables are.
+
+    Raises
+    ------
+    UnwritableError
+        If the file cannot be written; an old one then stays.
+    """
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
         handle, fresh = tempfile.mkstemp(prefix=f".{path.name}-", dir=path.parent)
         try:
             with os.fdopen(handle, "wb") as stream:
-                stream.write(content.encode() if isinstance(content, str) else content)
+                for piece in content:
+                    stream.write(piece.encode() if isinstance(piece, str) else piece)
             os.chmod(fresh, 0o644)
             os.replace(fresh, path)
-        except OSError:
+        except BaseException:
             os.unlink(fresh)
             raise
     except OSError as error:

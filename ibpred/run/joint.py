@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
 import ibpred
 from ibpred.digest import digest
@@ -15,12 +15,17 @@ from ibpred.identities.quantities import Integral
 from ibpred.identities.rows import FamilyIdentities, family_identities
 from ibpred.identities.seeding import Depth, seeds_of_sector
 from ibpred.progress import Progress
+from ibpred.reduction.check import TableCheck, check_table
 from ibpred.reduction.cuts import reduce_by_cuts
 from ibpred.reduction.masters import CommonMasters, find_common_masters
-from ibpred.reduction.several import CommonTable, asked_for, reduce_together
+from ibpred.reduction.several import reduce_together
+from ibpred.reduction.sums import ReducedSums, Sum, reduce_sums
+from ibpred.reduction.wanted import check_powers
 from ibpred.run.chain import Chain
+from ibpred.run.rows import TableRows, table_rows
 from ibpred.run.stages import SEED, Stages
 from ibpred.run.store import Store
+from ibpred.run.workers import Workers
 from ibpred.sectors.analysis import analyse_together
 
 NamedPowers = tuple[str | None, Powers]
@@ -44,7 +49,11 @@ class Joint(Stages):
     """
 
     def __init__(
-        self, definitions: Sequence[FamilyDefinition], store: Store, progress: Progress, workers: int
+        self,
+        definitions: Sequence[FamilyDefinition],
+        store: Store,
+        progress: Progress,
+        workers: int | Workers,
     ) -> None:
         identity = digest(["families", ibpred.__version__, *map(to_data, definitions)])
         super().__init__(identity, store, progress, workers)
@@ -110,16 +119,59 @@ class Joint(Stages):
             ),
         )
 
-    def reduction(self, wanted: Sequence[Integral], by_cuts: bool) -> CommonTable:
-        """Integrals in terms of the common masters, whole or on one cut after the other."""
-        asked = asked_for(self.identities(), wanted)
-        masters = self.masters(asked).masters
-        reduce = reduce_by_cuts if by_cuts else reduce_together
+    def rows(self, wanted: Sequence[Integral]) -> TableRows:
+        """The reductions known so far to the masters that wanted integrals need.
+
+        Raises
+        ------
+        InputError
+            If an integral does not fit its family.
+        """
+        for number, powers in wanted:
+            check_powers(self.members[number].definition, powers)
+        families = [member.definition for member in self.members]
+        return table_rows(self.store, families, self.masters(wanted).masters)
+
+    def reduction(self, wanted: Sequence[Integral], by_cuts: bool) -> TableRows:
+        """Reduce integrals to the common masters, whole or on one cut after the other.
+
+        Those that are known are not reduced again; the table is the same either way.
+        """
+        rows = self.rows(wanted)
+        missing = rows.missing(tuple(dict.fromkeys(wanted)))
+        if missing:
+            reduce = reduce_by_cuts if by_cuts else reduce_together
+            self._stored(
+                digest([rows.collection, to_data(missing), by_cuts]),
+                lambda: reduce(
+                    self.identities(), missing, rows.masters, self.primes, SEED, self.deck, self.progress
+                ),
+                rows.put,
+            )
+        return rows
+
+    def sums(self, sums: Mapping[str, Sum]) -> ReducedSums:
+        """Sums of integrals in terms of the common masters."""
+        wanted = tuple(integral for terms in sums.values() for integral in terms)
+        masters = self.masters(wanted).masters
         return self._kept(
-            "reduction by cuts" if by_cuts else "common reduction",
-            CommonTable,
-            asked,
-            lambda: reduce(
-                self.identities(), asked, masters, self.primes, SEED, self.sampling, self.progress
+            "sums",
+            ReducedSums,
+            [to_data(sums), to_data(masters)],
+            lambda: reduce_sums(
+                self.identities(), sums, masters, self.primes, SEED, self.deck, self.progress
             ),
+        )
+
+    def check(self, rows: TableRows, wanted: Sequence[Integral], count: int) -> TableCheck:
+        """Check random rows of the table by a fresh elimination; see `ibpred.reduction.check`."""
+        return check_table(
+            self.identities(),
+            rows.masters,
+            wanted,
+            rows.combination,
+            count,
+            self.primes[-1],
+            SEED + count,
+            self.progress,
         )

@@ -51,14 +51,17 @@ class Stages:
         stored = self.store.get(key)
         if stored is not None:
             return from_data(kind, stored)
+
+        def put(result: R) -> None:
+            self.store.put(key, stage, to_data(result))
+
+        return self._stored(key, compute, put)
+
+    def _stored(self, key: str, compute: Callable[[], R], put: Callable[[R], None]) -> R:
+        """Compute a result and store it; the pieces of work that led to it are kept until then."""
         with self.deck.working_for(key):
             result = compute()
         with self.store.transaction():
-            self.store.put(key, stage, to_data(result))
+            put(result)
             self.store.forget_work(key)
         return result
-
-    @property
-    def sampling(self) -> StoredDeck:
-        """Where the tapes of this run are kept and played."""
-        return self.deck

@@ -25,6 +25,11 @@ _BLOCKS = 4  # tasks a worker, so that a slow one holds nobody up
 class Workers(Protocol):
     """Replays tapes; the values do not depend on how the work is shared."""
 
+    @property
+    def width(self) -> int:
+        """Threads that work at once."""
+        ...
+
     def replay(self, tape: Tape, points: NDArray[np.uint64], prime: int) -> Samples:
         """Values and good lanes at points (variables, B)."""
         ...
@@ -46,7 +51,7 @@ class Threads:
     """
 
     def __init__(self, count: int) -> None:
-        self.count = count
+        self.width = count
         self._pool = ThreadPoolExecutor(count) if count > 1 else None
 
     def replay(self, tape: Tape, points: NDArray[np.uint64], prime: int) -> Samples:
@@ -54,7 +59,7 @@ class Threads:
         count = points.shape[1]
         if self._pool is None or count <= LANES or count * tape.multiply_adds < _SMALL:
             return replay(tape, points, prime)
-        size = -(-count // (self.count * _BLOCKS * LANES)) * LANES
+        size = -(-count // (self.width * _BLOCKS * LANES)) * LANES
         return joined(
             list(
                 self._pool.map(lambda ab: replay(tape, points[:, ab[0] : ab[1]], prime), pieces(count, size))
