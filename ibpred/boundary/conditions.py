@@ -17,6 +17,7 @@ from typing import Any
 
 import flint
 
+from ibpred.boundary.combinations import Combination, vanishing_combinations
 from ibpred.boundary.edges import Edge
 from ibpred.boundary.eigen import JointSpace, joint_spaces
 from ibpred.boundary.expansion import ClosedForm
@@ -142,15 +143,24 @@ def conditions_at(view: EdgeView, point: Point, order: int) -> tuple[Condition, 
     behaviours = [_behaviour(view, master, point) for master in view.masters]
     gathered: dict[str, list[_Row]] = {}
     for i in range(size):
-        sources = _sources(view, behaviours, i, point)
+        sources = _sources(view, behaviours, view.inverse[i], point)
         if sources is None:
             continue
         if not sources.unknown:
             _check_poles(sources.values, order, view, i)
         _check_classes(sources, spaces, order, view, i)
+        unit = tuple(Fraction(int(j == i)) for j in range(size))
         for space in spaces:
-            for name, row in _row_conditions(sources, space, i, view, point, order):
+            for name, row in _row_conditions(sources, space, unit, view, point, order):
                 gathered.setdefault(name, []).append(row)
+    if not edge.scales:
+        for vector in vanishing_combinations(view.inverse, edge.variable, point):
+            sources = _sources(view, behaviours, _combined(vector, view.inverse), point)
+            if sources is None:
+                continue
+            for space in spaces:
+                for name, row in _row_conditions(sources, space, vector, view, point, order):
+                    gathered.setdefault(name, []).append(row)
     found = []
     for name, rows in gathered.items():
         matrix = flint.fmpq_mat(len(rows), size, [entry for row, _ in rows for entry in row])
@@ -214,12 +224,21 @@ def _behaviour(view: EdgeView, master: Master, point: Point) -> Behaviour | None
     return behaviour(view.family, master.powers, approach)
 
 
+def _combined(vector: Combination, rows: Sequence[Sequence[Rational]]) -> tuple[Rational, ...]:
+    """The combination of rows."""
+    total = tuple(entry * 0 for entry in rows[0])
+    for factor, row in zip(vector, rows, strict=True):
+        if factor:
+            total = tuple(a + b * factor for a, b in zip(total, row, strict=True))
+    return total
+
+
 def _sources(
-    view: EdgeView, behaviours: Sequence[Behaviour | None], row: int, point: Point
+    view: EdgeView, behaviours: Sequence[Behaviour | None], entries: Sequence[Rational], point: Point
 ) -> _Sources | None:
     values: list[Contribution] = []
     unknown: list[tuple[Behaviour, tuple[int, ...]]] = []
-    for master, known, entry in zip(view.masters, behaviours, view.inverse[row], strict=True):
+    for master, known, entry in zip(view.masters, behaviours, entries, strict=True):
         if not entry:
             continue
         if master.closed is not None and point == 0:
@@ -232,12 +251,13 @@ def _sources(
 
 
 def _row_conditions(
-    sources: _Sources, space: JointSpace, row: int, view: EdgeView, point: Point, order: int
+    sources: _Sources, space: JointSpace, vector: Combination, view: EdgeView, point: Point, order: int
 ) -> Iterator[tuple[str, _Row]]:
-    """Conditions on one row in one joint generalised eigenspace."""
+    """Conditions on one function, or a combination, in one joint generalised eigenspace."""
     allowed = sources.allowed(space.values)
     logarithmic = {i for exponent in allowed for i, logs in enumerate(exponent.logs) if logs}
     size = space.projector.ncols()
+    left = flint.fmpq_mat(1, size, [flint.fmpq(v.numerator, v.denominator) for v in vector])
     zero = (0,) * len(space.values)
     series = None
     if not allowed and any(v.slopes == space.values for v in sources.values):
@@ -246,14 +266,14 @@ def _row_conditions(
             series = None
     name = _name(space.values, bool(allowed), series is not None, view.edge.point_text(point))
     if not allowed:
-        entries = [space.projector[row, k] for k in range(size)]
+        entries = (left * space.projector).entries()
         if any(entries) or series is not None:
             yield name, (entries, series)
     for factors, matrix in space.nilpotents:
         # a product of nilpotent parts multiplies a product of logarithms of the same quantities
         if factors <= logarithmic:
             continue
-        entries = [matrix[row, k] for k in range(size)]
+        entries = (left * matrix).entries()
         if any(entries):
             yield name, (entries, None)
 
