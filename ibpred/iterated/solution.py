@@ -1,19 +1,52 @@
-"""Solutions of an epsilon-form order by order, as exact combinations of words."""
+"""Solutions of an epsilon-form order by order, as exact combinations of words, one word for each ratio.
+
+At a corner ``x1 << x2 << ... << xn`` the solution is a product of path-ordered exponentials: the last ratio
+moves first, all others still at zero; then the one before it, the later ones held fixed; at last x1. On each
+level the letters are the leading terms in the smaller ratios. Where they are linear in the moving ratio the
+words are polylogarithms ``G(a1, ..., am; x_j)`` with a's rational in the larger ratios (a fibration basis:
+Brown, arXiv:0804.1660; Anastasiou, Duhr, Dulat, Mistlberger, arXiv:1302.4379).
+"""
 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from itertools import permutations
+from typing import Any
 
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import Rational
 from ibpred.iterated.constants import ZERO, Constant
+from ibpred.iterated.matrices import rational_matrix
 from ibpred.iterated.words import Word
 
-Function = tuple[tuple[Word, Constant], ...]
-"""A combination of iterated integrals: (word, coefficient), words by length, then alphabetically."""
+Product = tuple[Word, ...]
+"""One word for each level, of indices into its letters; the function is the product of their integrals."""
+
+Function = tuple[tuple[Product, Constant], ...]
+"""A combination of products of iterated integrals, short words first."""
+
+
+@dataclass(frozen=True)
+class Level:
+    """The iterated integrals in one ratio, from its value zero.
+
+    Attributes
+    ----------
+    variable
+        The ratio.
+    letters
+        Polynomials in it, with coefficients in the larger ratios.
+    """
+
+    variable: str
+    letters: tuple[Rational, ...]
+
+    def roots(self) -> tuple[Rational | None, ...]:
+        """The root of each letter that is linear in the ratio; None for the others."""
+        return tuple(_root(letter, self.variable) for letter in self.letters)
 
 
 @dataclass(frozen=True)
@@ -22,15 +55,15 @@ class Solution:
 
     Attributes
     ----------
-    letters
-        The alphabet of the epsilon-form, in its order; words hold indices into it.
+    levels
+        In the order of the corner, the smallest ratio first; none for a family without ratios.
     start
         The power of eps of ``orders[0]``.
     orders
         ``orders[k][i]`` is the coefficient of ``eps^(start + k)`` of f_i.
     """
 
-    letters: tuple[Rational, ...]
+    levels: tuple[Level, ...]
     start: int
     orders: tuple[tuple[Function, ...], ...]
 
@@ -39,46 +72,114 @@ class Solution:
         excess = 0
         for k, functions in enumerate(self.orders):
             for function in functions:
-                for word, constant in function:
-                    weights = constant.weights()
-                    excess = max([excess, *(len(word) + w - k for w in weights)])
+                for product, constant in function:
+                    excess = max([excess, *(length(product) + w - k for w in constant.weights())])
         return excess
 
     def is_pure(self) -> bool:
         """Whether every f_i has uniform weight k at the k-th order from `start`."""
         return all(
-            constant.weights() == {k - len(word)}
+            constant.weights() == {k - length(product)}
             for k, functions in enumerate(self.orders)
             for function in functions
-            for word, constant in function
+            for product, constant in function
         )
 
 
+def length(product: Product) -> int:
+    """Weight of a product of words."""
+    return sum(len(word) for word in product)
+
+
+def _root(letter: Rational, variable: str) -> Rational | None:
+    slope = letter.derivative(variable)
+    if not letter.is_polynomial() or not slope or variable in slope.variables():
+        return None
+    return -letter.substitute({variable: 0}) / slope
+
+
 def letter_roots(letters: Sequence[Rational], variable: str) -> tuple[Fraction | None, ...]:
-    """The root of each letter that is linear in the variable; None for the others."""
+    """The root of each letter that is linear in the variable and depends on it alone; None for the others."""
     roots: list[Fraction | None] = []
     for letter in letters:
-        slope = letter.derivative(variable)
-        if letter.is_polynomial() and slope.is_constant() and slope and letter.variables() == (variable,):
-            offset = letter.substitute({variable: 0}).to_fraction()
-            roots.append(-offset / slope.to_fraction())
-        else:
-            roots.append(None)
+        root = _root(letter, variable) if letter.variables() == (variable,) else None
+        roots.append(None if root is None else root.to_fraction())
     return tuple(roots)
 
 
-def solve_orders(
-    form: EpsilonForm, constants: Sequence[Sequence[Constant]], weight: int, start: int = 0
-) -> Solution:
-    """Solve ``d f = eps sum_l A_l dlog(letter_l) f`` order by order in one ratio.
-
-    ``f^(k) = sum_j sum_w A_w1 ... A_wj c^(k-j) I_w(x)`` over all words w of length j; the base point is
-    x -> 0+ with tangent vector 1, where ``f ~ x^(eps A_0) c(eps)``.
+def fibration(form: EpsilonForm, corner: Sequence[str]) -> tuple[tuple[Level, tuple[Any, ...]], ...]:
+    """The levels of a form at a corner, each with one matrix (`flint.fmpq_mat`) for each letter.
 
     Parameters
     ----------
     form
-        The epsilon-form, in one ratio.
+        The epsilon-form, without square roots.
+    corner
+        Its ratios, the smallest first.
+
+    Raises
+    ------
+    InputError
+        If the form has square roots, or the corner does not name its ratios.
+    """
+    if any(form.tags):
+        raise InputError("a form with square roots has no words in its ratios: change variables")
+    if sorted(corner) != sorted(form.variables):
+        listed = ", ".join(form.variables)
+        raise InputError(f"the corner {' << '.join(corner)} does not name the ratios {listed}")
+    letters = list(form.letters)
+    found = []
+    for name in corner:
+        held: dict[Rational, Any] = {}
+        for letter, rows in zip(letters, form.matrices, strict=True):
+            matrix = rational_matrix(rows)
+            for polynomial, multiplicity in letter.factors()[1]:
+                factor = form.ring.fraction(polynomial, form.ring.context.constant(1))
+                if name not in factor.variables():
+                    continue
+                # letters up to a constant factor: x - y and y - x are the same
+                factor = -factor if -factor in held or -factor == letter else factor
+                more = matrix * multiplicity
+                held[factor] = held[factor] + more if factor in held else more
+        kept = {factor: matrix for factor, matrix in held.items() if matrix}
+        found.append((Level(name, tuple(kept)), tuple(kept.values())))
+        letters = [_lowest(letter, name) for letter in letters]
+    return tuple(found)
+
+
+def linear_corner(form: EpsilonForm) -> tuple[str, ...] | None:
+    """A corner at which the letters of all levels are linear in their ratio; None where there is none.
+
+    The reversed order of the form's ratios is tried first, then all others.
+    """
+    for corner in permutations(reversed(form.variables)):
+        if all(root is not None for level, _ in fibration(form, corner) for root in level.roots()):
+            return corner
+    return None
+
+
+def _lowest(letter: Rational, name: str) -> Rational:
+    """Leading coefficient of a polynomial at ``name -> 0``."""
+    place = letter.ring.index(name)
+    least = min(int(e[place]) for e in letter.numerator.monoms())
+    return (letter / letter.ring.variable(name) ** least).substitute({name: 0})
+
+
+def solve_orders(
+    form: EpsilonForm,
+    corner: Sequence[str],
+    constants: Sequence[Sequence[Constant]],
+    weight: int,
+    start: int = 0,
+) -> Solution:
+    """Solve ``d f = eps sum_l A_l dlog(letter_l) f`` order by order.
+
+    Parameters
+    ----------
+    form
+        The epsilon-form, without square roots.
+    corner
+        Its ratios, the smallest first; there ``f ~ prod_i x_i^(eps A_i) c(eps)``.
     constants
         ``constants[k][i]``: boundary constant of f_i at ``eps^(start + k)``.
     weight
@@ -89,75 +190,108 @@ def solve_orders(
     Raises
     ------
     InputError
-        If the form has several ratios.
+        As `fibration`.
     BoundaryError
         If the constants stop before ``eps^weight``.
     """
-    if len(form.variables) != 1:
-        raise InputError(f"one ratio expected, not {', '.join(form.variables) or 'none'}")
-    if len(constants) < weight - start + 1:
+    count = weight - start + 1
+    if len(constants) < count:
         raise BoundaryError(
             f"boundary constants reach eps^{start + len(constants) - 1}, but eps^{weight} is asked for"
         )
-    size = len(form.tags)
-    layers: list[Mapping[Word, tuple[Constant, ...]]] = []
-    for k in range(weight - start + 1):
-        current: dict[Word, tuple[Constant, ...]] = {}
-        if any(constants[k]):
-            current[()] = tuple(constants[k])
-        for word, vector in layers[-1].items() if layers else ():
-            for letter, matrix in enumerate(form.matrices):
-                image = tuple(_row_times(matrix[i], vector) for i in range(size))
-                if any(image):
-                    current[letter, *word] = image
-        layers.append(current)
-    return Solution(form.letters, start, tuple(_functions(layer, size) for layer in layers))
+    levels = fibration(form, corner)
+    blank: Product = ((),) * len(levels)
+    layers: list[dict[Product, tuple[Constant, ...]]] = [
+        {blank: tuple(constants[k])} if any(constants[k]) else {} for k in range(count)
+    ]
+    for depth in range(len(levels) - 1, -1, -1):
+        matrices = [_rows(matrix) for matrix in levels[depth][1]]
+        for k in range(1, count):
+            # words at this level grow by one letter from one order to the next
+            for key, vector in layers[k - 1].items():
+                for letter, rows in enumerate(matrices):
+                    image = tuple(_row_times(row, vector) for row in rows)
+                    if any(image):
+                        grown = (*key[:depth], (letter, *key[depth]), *key[depth + 1 :])
+                        layers[k][grown] = image
+    size = len(form.inverse)
+    return Solution(
+        tuple(level for level, _ in levels),
+        start,
+        tuple(tuple(_function(layer, i) for i in range(size)) for layer in layers),
+    )
 
 
-def _row_times(row: Sequence[Fraction], vector: Sequence[Constant]) -> Constant:
+def constant_solution(constants: Sequence[Sequence[Constant]], start: int) -> Solution:
+    """The solution of a family without ratios: its constants."""
+    orders = tuple(tuple((((), value),) if value else () for value in vector) for vector in constants)
+    return Solution((), start, orders)
+
+
+def _rows(matrix: Any) -> list[list[tuple[int, Fraction]]]:
+    return [
+        [
+            (c, Fraction(int(matrix[r, c].p), int(matrix[r, c].q)))
+            for c in range(matrix.ncols())
+            if matrix[r, c] != 0
+        ]
+        for r in range(matrix.nrows())
+    ]
+
+
+def _row_times(row: Sequence[tuple[int, Fraction]], vector: Sequence[Constant]) -> Constant:
     total = ZERO
-    for factor, constant in zip(row, vector, strict=True):
-        if factor and constant:
-            total = total + constant * factor
+    for column, factor in row:
+        if vector[column]:
+            total = total + vector[column] * factor
     return total
 
 
-def _functions(layer: Mapping[Word, tuple[Constant, ...]], size: int) -> tuple[Function, ...]:
-    words = sorted(layer, key=lambda w: (len(w), w))
-    return tuple(tuple((w, layer[w][i]) for w in words if layer[w][i]) for i in range(size))
+def _function(layer: Mapping[Product, tuple[Constant, ...]], row: int) -> Function:
+    keys = sorted((key for key in layer if layer[key][row]), key=lambda k: (length(k), k))
+    return tuple((key, layer[key][row]) for key in keys)
 
 
-def word_text(word: Word, roots: Sequence[Fraction | None], variable: str) -> str:
-    """A word as a multiple polylogarithm ``G(a1,...,an;x)`` with a_i the roots of its letters.
+def product_text(product: Product, levels: Sequence[Level]) -> str:
+    """A product of words in multiple polylogarithms, e.g. ``G(0,x+1;y)*G(-1;x)``; 1 for the empty one.
 
     ``G(0,...,0;x) = log(x)^n/n!`` and ``G(a,w;x) = int_0^x dt/(t-a) G(w;t)`` otherwise.
 
     Raises
     ------
     InputError
-        If a letter is not linear.
+        If a letter is not linear in its ratio.
     """
-    arguments = []
-    for letter in word:
-        root = roots[letter]
-        if root is None:
-            raise InputError(f"letter {letter + 1} is not linear in {variable}: no polylogarithm of it")
-        arguments.append(str(root))
-    return f"G({','.join(arguments)};{variable})" if word else "1"
+    pieces = []
+    for word, level in zip(product, levels, strict=True):
+        if not word:
+            continue
+        roots = level.roots()
+        arguments = []
+        for letter in word:
+            root = roots[letter]
+            if root is None:
+                raise InputError(
+                    f"the letter {level.letters[letter]} is not linear in {level.variable}: no polylogarithm "
+                    "of it"
+                )
+            arguments.append(str(root))
+        pieces.append(f"G({','.join(arguments)};{level.variable})")
+    return "*".join(pieces) or "1"
 
 
-def function_text(function: Function, roots: Sequence[Fraction | None], variable: str) -> str:
+def function_text(function: Function, levels: Sequence[Level]) -> str:
     """A canonical function at one order as text in polylogarithms and constants."""
     text = ""
-    for word, constant in function:
+    for product, constant in function:
         factor, negative = str(constant), False
         if " " in factor:
             factor = f"({factor})"
         elif factor.startswith("-"):
             factor, negative = factor[1:], True
         piece = factor
-        if word:
-            integral = word_text(word, roots, variable)
+        if length(product):
+            integral = product_text(product, levels)
             piece = integral if factor == "1" else f"{factor}*{integral}"
         if not text:
             text = f"-{piece}" if negative else piece

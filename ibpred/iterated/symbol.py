@@ -15,7 +15,7 @@ from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import InputError
 from ibpred.exact.rational import Rational
 from ibpred.iterated.constants import Constant
-from ibpred.iterated.fibration import FibredFunction, Level
+from ibpred.iterated.solution import Function, Level
 from ibpred.iterated.words import shuffle
 
 Entries = tuple[Rational, ...]
@@ -123,8 +123,14 @@ def _polylog_terms(arguments: Entries, x: Rational, known: dict[Entries, Terms])
     return total
 
 
-def symbol_of_function(function: FibredFunction, levels: Sequence[Level]) -> Symbol:
-    """Symbol of a combination of products of polylogarithms; terms with transcendental constants drop out."""
+def symbol_of_function(function: Function, levels: Sequence[Level]) -> Symbol:
+    """Symbol of a combination of products of polylogarithms; terms with transcendental constants drop out.
+
+    Raises
+    ------
+    InputError
+        If a letter is not linear in the ratio of its level.
+    """
     total = Symbol({})
     for key, constant in function:
         factor = _rational_part(constant)
@@ -133,7 +139,10 @@ def symbol_of_function(function: FibredFunction, levels: Sequence[Level]) -> Sym
         term = Symbol({(): factor})
         for word, level in zip(key, levels, strict=True):
             if word:
-                arguments = [level.roots[a] for a in word]
+                roots = level.roots()
+                arguments = [root for a in word if (root := roots[a]) is not None]
+                if len(arguments) < len(word):
+                    raise InputError(f"a letter is not linear in {level.variable}: no polylogarithms of it")
                 end = arguments[0].ring.variable(level.variable)
                 term = term.product(symbol_of_polylog(arguments, end))
         total = total + term

@@ -2,18 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from typing import Any
 
 from ibpred.epsform.form import Matrix
 from ibpred.exact.rational import Rational
-from ibpred.iterated.constants import Constant, Monomial, monomial_weight
+from ibpred.iterated.constants import Monomial, monomial_weight
 from ibpred.iterated.series import eps_valuation
-
-Orders = Sequence[Sequence[Sequence[tuple[Any, Constant]]]]
-"""``orders[k][j]``: eps^(start + k) of f_j as pairs (word or product of words, constant)."""
+from ibpred.iterated.solution import Function, Product, Solution, length
 
 
 @dataclass(frozen=True)
@@ -36,19 +32,14 @@ class Excess:
     bound: int
 
 
-def word_length(key: Sequence[Any]) -> int:
-    """Weight of a word, or of a product of words (one word for each ratio)."""
-    return sum(len(word) for word in key) if key and isinstance(key[0], tuple) else len(key)
-
-
-def weight_excesses(transformation: Matrix, start: int, orders: Orders, loops: int) -> tuple[Excess, ...]:
+def weight_excesses(transformation: Matrix, solution: Solution, loops: int) -> tuple[Excess, ...]:
     """All coefficients of the masters ``I = T f`` whose weight is beyond ``2 L + k``; there should be none.
 
     Parameters
     ----------
     transformation
         T, in eps and the ratios.
-    start, orders
+    solution
         The canonical functions.
     loops
         L.
@@ -58,12 +49,12 @@ def weight_excesses(transformation: Matrix, start: int, orders: Orders, loops: i
     Cancellations between canonical functions are taken into account: the coefficient of each word and
     monomial of constants is formed as a rational function.
     """
-    bound = 2 * loops
+    bound, start, orders = 2 * loops, solution.start, solution.orders
     weighed = [[_weighed(function) for function in functions] for functions in orders]
     last = start + len(orders) - 1
     found = []
     for i, row in enumerate(transformation):
-        totals: dict[tuple[int, Any, Monomial], Rational] = {}
+        totals: dict[tuple[int, Product, Monomial], Rational] = {}
         # beyond this order some canonical function has stopped
         complete = last + min(eps_valuation(entry) for entry in row if entry)
         for j, entry in enumerate(row):
@@ -87,16 +78,16 @@ def weight_excesses(transformation: Matrix, start: int, orders: Orders, loops: i
         worst: dict[int, int] = {}
         for (order, word, monomial), total in totals.items():
             if total:
-                weight = word_length(word) + monomial_weight(monomial)
+                weight = length(word) + monomial_weight(monomial)
                 worst[order] = max(weight, worst.get(order, 0))
         found += [Excess(i, order, weight, bound + order) for order, weight in sorted(worst.items())]
     return tuple(found)
 
 
-def _weighed(function: Sequence[tuple[Any, Constant]]) -> dict[tuple[int, Any, Monomial], Fraction]:
+def _weighed(function: Function) -> dict[tuple[int, Product, Monomial], Fraction]:
     """All terms by weight, word and monomial of constants."""
     return {
-        (word_length(word) + monomial_weight(monomial), word, monomial): value
+        (length(word) + monomial_weight(monomial), word, monomial): value
         for word, constant in function
         for monomial, value in constant.terms()
     }

@@ -14,7 +14,7 @@ from ibpred.exact.polynomial import polynomial_text
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.polynomials import symanzik
-from ibpred.iterated.solution import Solution, function_text, letter_roots
+from ibpred.iterated.solution import Product, Solution, function_text
 from ibpred.numerics.value import Value
 from ibpred.reduction.independent import SectorCount
 from ibpred.reduction.masters import Masters
@@ -140,35 +140,53 @@ def epsilon_data(
     return data
 
 
-def solution_data(
-    family: FamilyDefinition, form: EpsilonForm, boundary: Boundary, solution: Solution
-) -> Data:
-    """What `solve` prints: canonical functions by order, and the boundary constants at x -> 0+."""
-    names = [letter_text(letter) for letter in form.letters]
-    variable = form.variables[0] if form.variables else ""
-    roots = letter_roots(form.letters, variable)
+def solution_data(family: FamilyDefinition, boundary: Boundary, solution: Solution) -> Data:
+    """What `solve` prints: canonical functions by order, and the boundary constants at the corner.
+
+    A term holds one word for each level; with one ratio at most this is its ``word``.
+    """
+    names = [[letter_text(letter) for letter in level.letters] for level in solution.levels]
     functions = []
-    for row in range(len(form.tags)):
+    for row in range(len(boundary.constants[0])):
         orders = []
         for k, layer in enumerate(solution.orders):
+            terms = [_term(product, str(value), names) for product, value in layer[row]]
             orders.append(
                 {
                     "order": solution.start + k,
-                    "text": function_text(layer[row], roots, variable),
-                    "terms": [
-                        {"word": [names[letter] for letter in word], "coefficient": str(value)}
-                        for word, value in layer[row]
-                    ],
+                    "text": function_text(layer[row], solution.levels),
+                    "terms": terms,
                 }
             )
         functions.append({"master": row, "orders": orders})
-    constants = [
-        {"master": row, "order": boundary.start + k, "value": str(value)}
-        for k, vector in enumerate(boundary.constants)
-        for row, value in enumerate(vector)
-        if value
-    ]
-    return {"family": family.name, "letters": names, "functions": functions, "constants": constants}
+    marked = {(item.row, item.order): item.fit for item in boundary.fitted}
+    constants = []
+    for k, vector in enumerate(boundary.constants):
+        for row, value in enumerate(vector):
+            if value:
+                constant: Data = {"master": row, "order": boundary.start + k, "value": str(value)}
+                fit = marked.get((row, boundary.start + k))
+                if fit is not None:
+                    constant["fitted"] = {"digits": fit.digits, "odds": f"1e{fit.odds}"}
+                constants.append(constant)
+    return {
+        "family": family.name,
+        "letters": list(dict.fromkeys(name for level in names for name in level)),
+        "corner": list(boundary.corner),
+        "levels": [
+            {"variable": level.variable, "letters": listed}
+            for level, listed in zip(solution.levels, names, strict=True)
+        ],
+        "functions": functions,
+        "constants": constants,
+    }
+
+
+def _term(product: Product, coefficient: str, names: Sequence[Sequence[str]]) -> Data:
+    words = [[names[level][letter] for letter in word] for level, word in enumerate(product)]
+    if len(words) > 1:
+        return {"words": words, "coefficient": coefficient}
+    return {"word": words[0] if words else [], "coefficient": coefficient}
 
 
 def values_data(

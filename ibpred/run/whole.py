@@ -17,6 +17,7 @@ from ibpred.epsform.form import EpsilonForm, Obstructed
 from ibpred.epsform.verify import verify
 from ibpred.errors import UnfinishedError
 from ibpred.iterated.solution import letter_roots
+from ibpred.iterated.weights import weight_excesses
 from ibpred.report.drawing import sheet_svg
 from ibpred.report.json_tables import (
     differential_data,
@@ -93,7 +94,7 @@ def run_whole(chain: Chain, source: Path, folder: Path, digits: int) -> Data:
     journal.note("masters", f"{len(masters.masters)}", seconds)
     derivation, seconds = journal.timed(chain.derivation)
     journal.files["diffeq.json"] = differential_data(derivation.system)
-    checks += check_system(derivation.system, family)
+    checks += check_system(derivation.system, family, chain.primes[-2:], SEED)
     effort = None
     if derivation.effort is not None:
         meter = chain.meter
@@ -156,11 +157,17 @@ def _solve(chain: Chain, journal: _Journal, checks: list[CheckResult], digits: i
             checks.append(CheckResult("boundary", True, f"{confirming} redundant conditions hold exactly"))
         solution, seconds = journal.timed(lambda: chain.solution(weight))
         form = chain.solved_form()
-        journal.files["solution.json"] = solution_data(family, form, boundary, solution)
+        journal.files["solution.json"] = solution_data(family, boundary, solution)
         journal.note("iterated integrals", f"through weight {weight}", seconds)
         if form.variables:
             excess = solution.weight_excess()
             checks.append(CheckResult("weight", excess <= 0, "the weight at each order is at most the order"))
+        if family.dimension == 4:
+            beyond = weight_excesses(form.transformation, solution, len(family.loops))
+            told = "every eps^k of every master has weight at most 2 L + k"
+            if beyond:
+                told = f"{chain.label(beyond[0].row)} has weight {beyond[0].weight} at eps^{beyond[0].order}"
+            checks.append(CheckResult("weight bound", not beyond, told))
         journal.files["values.json"] = _values(chain, journal, form, digits)
     except UnfinishedError as error:
         journal.note("stopped", str(error), 0.0)

@@ -14,14 +14,9 @@ from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.fix import fix_constants
 from ibpred.boundary.problem import boundary_problem, problem_in_variables, region_values
 from ibpred.errors import BoundaryError, InputError
-from ibpred.iterated.fibration import (
-    fibration,
-    fibred_values,
-    linear_order,
-    product_text,
-    solve_fibration,
-)
 from ibpred.iterated.matrices import identity, rational_matrix
+from ibpred.iterated.solution import fibration, linear_corner, product_text, solve_orders
+from ibpred.iterated.solution_values import solution_values
 
 SIGNS = {"s": -1, "t": -1, "p4sq": -1}
 
@@ -50,11 +45,11 @@ def test_the_box_with_one_leg_off_its_mass_shell() -> None:
     assert [str(v[3]) for v in boundary.constants] == ["2", "0", "-7*pi^2/6", "-20*zeta3/3"]
     assert sum(e.confirming for e in boundary.evidence) > 5
     assert any("y/x = 1" in e.condition for e in boundary.evidence)
-    solution = solve_fibration(leg_box_form(), boundary.corner, boundary.constants, 2, boundary.start)
+    solution = solve_orders(leg_box_form(), boundary.corner, boundary.constants, 2, boundary.start)
     # both sides of the walls y = x and y = 1, at which single polylogarithms are cut but the box is regular
     for x, y in (("1/3", "1/5"), ("1/3", "1/2"), ("1/3", "5/2"), ("4", "3")):
         point = {"x": Fraction(x), "y": Fraction(y)}
-        values = fibred_values(solution, point, 30)
+        values = solution_values(solution, point, 30)
         with mp.workdps(40):
             expected = box(*(mpf(v.numerator) / v.denominator for v in point.values()))
             for k in range(3):
@@ -70,8 +65,8 @@ def test_any_corner_gives_the_same_function() -> None:
     found = []
     for corner in (("x", "y"), ("y", "x")):
         boundary = fix_constants(replace(problem(2), corner=corner))
-        solution = solve_fibration(leg_box_form(), corner, boundary.constants, 2, boundary.start)
-        found.append(fibred_values(solution, point, 40))
+        solution = solve_orders(leg_box_form(), corner, boundary.constants, 2, boundary.start)
+        found.append(solution_values(solution, point, 40))
     for one, other in zip(*found, strict=True):
         for left, right in zip(one, other, strict=True):
             assert left.overlaps(right)
@@ -79,14 +74,14 @@ def test_any_corner_gives_the_same_function() -> None:
 
 def test_levels_of_the_fibration() -> None:
     form = leg_box_form()
-    assert linear_order(form) == ("y", "x")
+    assert linear_corner(form) == ("y", "x")
     levels = [level for level, _ in fibration(form, ("y", "x"))]
     x = TWO.variable("x")
-    assert set(levels[0].roots) == {TWO.zero, TWO.one, x, x + 1}
-    assert set(levels[1].roots) == {TWO.zero, -TWO.one}
-    one, where = levels[0].roots.index(TWO.one), levels[1].roots.index(TWO.zero)
-    assert product_text(((one,), (where,)), levels) == "G(1; y)*G(0; x)"
-    with pytest.raises(InputError, match="order"):
+    assert set(levels[0].roots()) == {TWO.zero, TWO.one, x, x + 1}
+    assert set(levels[1].roots()) == {TWO.zero, -TWO.one}
+    one, where = levels[0].roots().index(TWO.one), levels[1].roots().index(TWO.zero)
+    assert product_text(((one,), (where,)), levels) == "G(1;y)*G(0;x)"
+    with pytest.raises(InputError, match="corner"):
         fibration(form, ("x",))
 
 

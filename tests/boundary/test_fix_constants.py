@@ -24,15 +24,15 @@ from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.codec import from_data, to_data
 from ibpred.iterated.matrices import identity, rational_matrix
-from ibpred.iterated.solution import Solution, letter_roots, solve_orders
+from ibpred.iterated.solution import Solution, solve_orders
 
 SIGNS = {"s": -1, "t": -1}
 
 
 def number(solution: Solution, order: int, row: int, x: mpf) -> mpf:
-    roots = [root or Fraction(0) for root in letter_roots(solution.letters, "x")]
+    roots = [root.to_fraction() for root in solution.levels[0].roots() if root is not None]
     total = mpf(0)
-    for word, constant in solution.orders[order - solution.start][row]:
+    for (word,), constant in solution.orders[order - solution.start][row]:
         total += mpf(complex(constant.ball(60)).real) * series_value([roots[letter] for letter in word], x)
     return total
 
@@ -43,7 +43,7 @@ def test_massless_box_against_its_hypergeometric_form() -> None:
     assert boundary.start == -1
     assert boundary.unused == ()
     assert any(e.confirming for e in boundary.evidence)
-    solution = solve_orders(box_form(), boundary.constants, 3, boundary.start)
+    solution = solve_orders(box_form(), boundary.corner, boundary.constants, 3, boundary.start)
     assert solution.is_pure()
     assert solution.weight_excess() == 0
     with mp.workdps(30):
@@ -69,11 +69,11 @@ def test_planar_double_box() -> None:
     seventh = [str(vector[6]) for vector in boundary.constants]
     assert seventh == ["4", "0", "-5*pi^2/2", "-65*zeta3/3", "-29*pi^4/30"]
     assert sum(e.confirming for e in boundary.evidence) > 50
-    solution = solve_orders(double_box_form(), boundary.constants, 4)
+    solution = solve_orders(double_box_form(), boundary.corner, boundary.constants, 4)
     assert solution.weight_excess() == 0
     assert solution.is_pure()
     # -5 log x at first order, then (4/2!) log^2 x
-    assert [(w, str(c)) for w, c in solution.orders[1][6]] == [((0,), "-5")]
+    assert [(w, str(c)) for w, c in solution.orders[1][6]] == [(((0,),), "-5")]
 
 
 def test_bubble_with_one_mass() -> None:
@@ -86,7 +86,7 @@ def test_bubble_with_one_mass() -> None:
     form = EpsilonForm(("x",), FIELD, (X, X + 1), (at_zero, at_threshold), forward, inverse, ((), ()))
     signs = {"s": -1, "m2": 1}
     boundary = fix_constants(boundary_problem(family("bubble-one-mass"), ((0, 1), (1, 1)), form, signs, 3))
-    solution = solve_orders(form, boundary.constants, 3, boundary.start)
+    solution = solve_orders(form, boundary.corner, boundary.constants, 3, boundary.start)
     with mp.workdps(30):
         x = mpf(1) / 3
 

@@ -4,7 +4,7 @@ from canonical_forms import LEG_BOX_MASTERS, TWO, family, leg_box_form
 
 from ibpred.boundary.fix import fix_constants
 from ibpred.boundary.problem import boundary_problem
-from ibpred.iterated.fibration import solve_fibration
+from ibpred.iterated.solution import solve_orders
 from ibpred.iterated.symbol import is_integrable, symbol_of_function, symbols_of_form
 
 SIGNS = {"s": -1, "t": -1, "p4sq": -1}
@@ -14,7 +14,7 @@ def test_the_box_by_two_routes() -> None:
     """The symbol from the alphabet alone and from the polylogarithms agree, and it is integrable."""
     form = leg_box_form()
     boundary = fix_constants(boundary_problem(family("box-one-leg"), LEG_BOX_MASTERS, form, SIGNS, 2))
-    solution = solve_fibration(form, boundary.corner, boundary.constants, 2, boundary.start)
+    solution = solve_orders(form, boundary.corner, boundary.constants, 2, boundary.start)
     leading = [c.to_fraction() for c in boundary.constants[0]]
     x, y = TWO.variable("x"), TWO.variable("y")
     for length in (1, 2, 3):

@@ -10,7 +10,7 @@ from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import ring
 from ibpred.iterated.constants import Constant
-from ibpred.iterated.solution import Solution, function_text, letter_roots, solve_orders
+from ibpred.iterated.solution import Solution, function_text, letter_roots, linear_corner, solve_orders
 
 FIELD = ring(("eps", "x"))
 X = FIELD.variable("x")
@@ -29,17 +29,19 @@ def constants(*rows: tuple[str, str]) -> list[tuple[Constant, ...]]:
 
 
 def value(solution: Solution, order: int, row: int, x: mpf) -> mpf:
-    roots = letter_roots(solution.letters, "x")
+    roots = [root.to_fraction() for root in solution.levels[0].roots() if root is not None]
     total = mpf(0)
-    for word, constant in solution.orders[order][row]:
+    for (word,), constant in solution.orders[order][row]:
         arguments = [roots[letter] for letter in word]
-        total += mpf(complex(constant.ball(60)).real) * series_value([a or Fraction(0) for a in arguments], x)
+        total += mpf(complex(constant.ball(60)).real) * series_value(arguments, x)
     return total
 
 
 def test_orders_obey_the_differential_equation() -> None:
     form = two_by_two()
-    solution = solve_orders(form, constants(("1", "1"), ("0", "0"), ("pi^2", "-pi^2/6"), ("0", "zeta3")), 3)
+    solution = solve_orders(
+        form, ("x",), constants(("1", "1"), ("0", "0"), ("pi^2", "-pi^2/6"), ("0", "zeta3")), 3
+    )
     with mp.workdps(25):
         x = mpf(1) / 3
         for k in range(1, 4):
@@ -59,18 +61,18 @@ def test_orders_obey_the_differential_equation() -> None:
 
 
 def test_weights_and_text() -> None:
-    pure = solve_orders(two_by_two(), constants(("1", "1"), ("0", "0"), ("pi^2", "-pi^2/6")), 2)
+    pure = solve_orders(two_by_two(), ("x",), constants(("1", "1"), ("0", "0"), ("pi^2", "-pi^2/6")), 2)
     assert pure.is_pure()
     assert pure.weight_excess() == 0
-    roots = letter_roots(pure.letters, "x")
-    assert roots == (0, -1)
-    assert function_text(pure.orders[1][1], roots, "x") == "G(0;x) - G(-1;x)"
-    assert function_text(pure.orders[2][1], roots, "x").startswith("-pi^2/6 - G(0,0;x) + G(0,-1;x)")
-    assert function_text(pure.orders[1][0], roots, "x") == "0"
-    mixed = solve_orders(two_by_two(), constants(("1", "1"), ("3", "0")), 1)
+    assert linear_corner(two_by_two()) == ("x",)
+    assert pure.levels[0].letters == (X, X + 1)
+    assert function_text(pure.orders[1][1], pure.levels) == "G(0;x) - G(-1;x)"
+    assert function_text(pure.orders[2][1], pure.levels).startswith("-pi^2/6 - G(0,0;x) + G(0,-1;x)")
+    assert function_text(pure.orders[1][0], pure.levels) == "0"
+    mixed = solve_orders(two_by_two(), ("x",), constants(("1", "1"), ("3", "0")), 1)
     assert not mixed.is_pure()
     assert mixed.weight_excess() == 0
-    heavy = solve_orders(two_by_two(), constants(("pi^2", "0")), 0)
+    heavy = solve_orders(two_by_two(), ("x",), constants(("pi^2", "0")), 0)
     assert heavy.weight_excess() == 2
 
 
@@ -80,13 +82,9 @@ def test_letters_that_are_not_linear_have_no_root() -> None:
 
 def test_missing_orders_are_named() -> None:
     with pytest.raises(BoundaryError, match=r"reach eps\^1, but eps\^2"):
-        solve_orders(two_by_two(), constants(("1", "1"), ("0", "0")), 2)
+        solve_orders(two_by_two(), ("x",), constants(("1", "1"), ("0", "0")), 2)
 
 
-def test_several_ratios_are_refused() -> None:
-    form = two_by_two()
-    twisted = EpsilonForm(
-        ("x", "y"), form.ring, form.letters, form.matrices, form.transformation, form.inverse, form.tags
-    )
-    with pytest.raises(InputError, match="one ratio"):
-        solve_orders(twisted, constants(("1", "1")), 0)
+def test_the_corner_must_name_the_ratios() -> None:
+    with pytest.raises(InputError, match="corner"):
+        solve_orders(two_by_two(), ("y",), constants(("1", "1")), 0)

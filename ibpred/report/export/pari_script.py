@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 
 from ibpred.report.export.expressions import Dialect, translated
 from ibpred.report.export.material import Data, Material, checked_names, conventions
@@ -82,6 +82,13 @@ def _epsilon(data: Data, count: int, invariants: Sequence[str]) -> list[str]:
     return lines
 
 
+def _numbers(term: Data, number: Mapping[str, int]) -> list[object]:
+    """Numbers of the letters of a word, or of the words of all levels."""
+    if "words" in term:
+        return [[number[letter] for letter in word] for word in term["words"]]
+    return [number[letter] for letter in term["word"]]
+
+
 def _solution(data: Data, epsilon: Data) -> list[str]:
     dialect = _dialect(epsilon["variables"])
     number = {letter: i for i, letter in enumerate(data["letters"], start=1)}
@@ -89,6 +96,8 @@ def _solution(data: Data, epsilon: Data) -> list[str]:
         "",
         "\\\\ functions[i] = list of [order, [[coefficient, word], ...]]; a word lists the numbers of its",
         "\\\\ letters, the one integrated last first; integrals are from 0, [x, ..., x] is log(x)^n/n!",
+        f"\\\\ with several ratios one word for each of [{', '.join(v['variable'] for v in data['levels'])}]",
+        f"wordletters = [{', '.join(translated(letter, dialect) for letter in data['letters'])}];",
         "{functions = [",
     ]
     functions = []
@@ -96,7 +105,7 @@ def _solution(data: Data, epsilon: Data) -> list[str]:
         orders = []
         for entry in function["orders"]:
             terms = [
-                f"[{translated(term['coefficient'], dialect)}, {[number[letter] for letter in term['word']]}]"
+                f"[{translated(term['coefficient'], dialect)}, {_numbers(term, number)}]"
                 for term in entry["terms"]
             ]
             orders.append(f"[{entry['order']}, [{', '.join(terms)}]]")

@@ -107,6 +107,7 @@ def _solution(data: Data, ratios: Sequence[str]) -> list[str]:
     lines = [
         "",
         "# word(l1, ..., ln) = int_0^x dlog(l1) word(l2, ..., ln), word(x, ..., x) = log(x)^n/n!",
+        "# (with several ratios the first argument says which one runs from 0)",
         'word = Function("word")',
         "functions = {",
     ]
@@ -116,8 +117,16 @@ def _solution(data: Data, ratios: Sequence[str]) -> list[str]:
             terms = []
             for term in entry["terms"]:
                 factor = translated(term["coefficient"], dialect)
-                letters = ", ".join(translated(letter, dialect) for letter in term["word"])
-                terms.append(f"({factor})*word({letters})" if letters else f"({factor})")
+                words = term["words"] if "words" in term else [term["word"]]
+                pieces = [f"({factor})"]
+                for word, level in zip(words, data["levels"], strict=False):
+                    letters = ", ".join(translated(letter, dialect) for letter in word)
+                    # with several ratios each word says which of them it is integrated in
+                    if letters and len(words) > 1:
+                        letters = f"{translated(level['variable'], dialect)}, {letters}"
+                    if letters:
+                        pieces.append(f"word({letters})")
+                terms.append("*".join(pieces))
             lines.append(f"        {entry['order']}: {' + '.join(terms) or '0'},")
         lines.append("    },")
     lines.append("}")

@@ -110,12 +110,21 @@ def _solution(data: Data, ratios: Sequence[str]) -> str:
             terms = []
             for term in entry["terms"]:
                 factor = translated(term["coefficient"], dialect)
-                letters = ", ".join(translated(letter, dialect) for letter in term["word"])
-                terms.append(f"({factor})*word[{letters}]" if letters else f"({factor})")
+                words = term["words"] if "words" in term else [term["word"]]
+                pieces = [f"({factor})"]
+                for word, level in zip(words, data["levels"], strict=False):
+                    letters = ", ".join(translated(letter, dialect) for letter in word)
+                    # with several ratios each word says which of them it is integrated in
+                    if letters and len(words) > 1:
+                        pieces.append(f"wordIn[{translated(level['variable'], dialect)}, {letters}]")
+                    elif letters:
+                        pieces.append(f"word[{letters}]")
+                terms.append("*".join(pieces))
             orders.append(f"{entry['order']} -> {' + '.join(terms) or '0'}")
         functions.append("<|" + ", ".join(orders) + "|>")
     joined = ",\n    ".join(functions)
     return (
         "(* word[l1, ..., ln] is the integral over dlog(l1) of word[l2, ..., ln] from 0, "
-        f'word[x, ..., x] = Log[x]^n/n! *)\n  "functions" -> {{\n    {joined}}}'
+        "word[x, ..., x] = Log[x]^n/n!; wordIn[x, l1, ...] the same where x of several ratios runs *)\n"
+        f'  "functions" -> {{\n    {joined}}}'
     )
