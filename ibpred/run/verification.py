@@ -66,7 +66,7 @@ def _checks(material: Material, samples: int, progress: Progress) -> Iterator[Ch
         "masters", same, f"{len(masters.masters)} found anew modulo {primes[0]}, {len(system.masters)} listed"
     )
     progress.stage("differential equation")
-    yield from check_system(system, family)
+    yield from check_system(system, family, primes, _SEED)
     yield check_samples(system, family, analysis, primes, _SEED, progress)
     for table in material.tables:
         point = {name: parse_number(text) for name, text in table["point"].items()}

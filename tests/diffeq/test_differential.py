@@ -7,15 +7,17 @@ from fractions import Fraction
 from functools import cache
 from pathlib import Path
 
+import numpy as np
 import pytest
 
-from ibpred.diffeq.checks import check_integrability, check_scaling, check_system
+from ibpred.diffeq.checks import check_integrability, check_scaling, check_system, sample_system
 from ibpred.diffeq.derive import Derivation, differential_system
+from ibpred.diffeq.jets import matrix_jets
 from ibpred.diffeq.ratios import dimensionless, ratio_coordinates, ratio_names, substituted
 from ibpred.errors import InputError
 from ibpred.exact.primes import first_primes
-from ibpred.family.definition import FamilyDefinition
 from ibpred.exact.rational import ring
+from ibpred.family.definition import FamilyDefinition
 from ibpred.family.reading import read_family
 from ibpred.family.signs import euclidean_signs
 from ibpred.reduction.masters import find_masters
@@ -51,9 +53,9 @@ def derived(name: str, preferred: tuple[tuple[int, ...], ...] = ()) -> tuple[Fam
         "planar-double-box",
     ],
 )
-def test_scaling_and_integrability_are_exact(name: str) -> None:
+def test_scaling_and_integrability(name: str) -> None:
     family, found = derived(name)
-    for result in check_system(found.system, family):
+    for result in check_system(found.system, family, PRIMES[-2:], 3):
         assert result.passed, result.detail
 
 
@@ -63,9 +65,21 @@ def test_checks_notice_a_wrong_entry() -> None:
     row, column, value = system.matrices["t"][1]
     spoiled = (system.matrices["t"][0], (row, column, value * 2), *system.matrices["t"][2:])
     wrong = replace(system, matrices={**system.matrices, "t": spoiled})
-    assert not check_scaling(wrong, family).passed
-    assert "column" in check_scaling(wrong, family).detail
-    assert not check_integrability(wrong).passed
+    samples = sample_system(wrong, PRIMES[-2:], 3)
+    assert not check_scaling(wrong, family, samples).passed
+    assert "column" in check_scaling(wrong, family, samples).detail
+    assert not check_integrability(wrong, samples).passed
+
+
+def test_derivatives_at_points_are_those_of_the_functions() -> None:
+    _, found = derived("planar-double-box")
+    prime, system = PRIMES[-1], found.system
+    point = (12345, 678910, 1112131415)
+    jets = matrix_jets(system.matrices["t"], 8, np.array([[x] for x in point], np.uint64), prime)
+    for row, column, value in system.matrices["t"]:
+        assert jets.values[0, row, column] == value.modular(point, prime)
+        for v, name in enumerate(system.ring.names):
+            assert jets.derivatives[0, v, row, column] == value.derivative(name).modular(point, prime)
 
 
 def test_singular_locus_of_the_double_box() -> None:
