@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
-from itertools import combinations_with_replacement
 
 from ibpred.boundary.gamma import GammaForm, gamma_form
 from ibpred.errors import BoundaryError, ReconstructionError, UnfinishedError
@@ -13,6 +12,7 @@ from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.identities.derivatives import derivative_templates
 from ibpred.identities.quantities import Quantity, template_at
+from ibpred.numerics.auxiliary.bases import SMOOTH, dotted_integrals, dotted_masters, roughness
 from ibpred.numerics.auxiliary.families import MASS, at_point, check_lines, restricted, with_mass
 from ibpred.numerics.auxiliary.infinity import at_infinity, undetermined
 from ibpred.numerics.auxiliary.plan import (
@@ -28,11 +28,11 @@ from ibpred.numerics.auxiliary.plan import (
 from ibpred.numerics.auxiliary.regions import Region, regions, vacuum
 from ibpred.progress import SILENT, Progress
 from ibpred.reduction.deck import PLAIN_DECK, Deck
-from ibpred.reduction.masters import Masters, find_masters
+from ibpred.reduction.masters import find_masters
 from ibpred.reduction.recording import coefficients, record_quantities
 from ibpred.reduction.wanted import single
 from ibpred.sectors.analysis import SectorAnalysis, analyse
-from ibpred.sectors.order import lines_of, sector_of
+from ibpred.sectors.order import sector_of
 
 _TRIAL = Fraction(1, 1009)  # an eps without meaning, at which ranks are looked at
 _DOTS = 2  # most dots of the integrals that serve as further conditions
@@ -161,7 +161,7 @@ class _Builder:
                 own = [powers for powers in left if sector_of(powers) & ~top == 0]
                 values |= dict(zip(own, self.values(restricted(family, top), own), strict=True))
             else:
-                own = self._flow(family, analysis, left, values)
+                own = self._flow(family, left, values)
             left = [powers for powers in left if powers not in own]
         self.nodes.append(Node(None, tuple(values[powers] for powers in masters)))
         return _Place(family, analysis, masters, len(self.nodes) - 1)
@@ -186,16 +186,16 @@ class _Builder:
     def _flow(
         self,
         family: FamilyDefinition,
-        analysis: SectorAnalysis,
         wanted: Sequence[Powers],
         values: dict[Powers, Combination],
     ) -> list[Powers]:
         """Values of integrals of a family by a flow, as far as they contain its massive line."""
         failures = []
-        for heavy, enlarged, enlarged_analysis, masters in self._choices(family):
+        for heavy, enlarged, analysis, masters in self._choices(family):
             own = [powers for powers in wanted if powers[heavy] > 0]
             try:
-                flow = self._flow_on(family, heavy, enlarged, enlarged_analysis, masters, own)
+                flow = self._smooth_flow(family, heavy, enlarged, analysis, masters, own)
+                flow = self._determined(flow, family, heavy, enlarged, analysis)
             except (ReconstructionError, BoundaryError, UnfinishedError) as error:
                 failures.append(f"{family.lines[heavy].text}: {error}")
                 continue
@@ -209,27 +209,55 @@ class _Builder:
 
     def _choices(
         self, family: FamilyDefinition
-    ) -> Iterator[tuple[int, FamilyDefinition, SectorAnalysis, Masters]]:
+    ) -> Iterator[tuple[int, FamilyDefinition, SectorAnalysis, tuple[Powers, ...]]]:
         """Lines for the mass, those with few masters first."""
         found = []
         for heavy in family.propagators:
             enlarged = with_mass(family, heavy)
             analysis = analyse(enlarged)
             masters = find_masters(enlarged, analysis, self.primes[0], self.seed, progress=self.progress)
-            found.append((len(masters.masters), heavy, enlarged, analysis, masters))
-        for _, heavy, enlarged, analysis, masters in sorted(found, key=lambda item: item[:2]):
-            yield heavy, enlarged, analysis, masters
+            found.append((len(masters.masters), heavy, enlarged, analysis, masters.masters))
+        for _, heavy, enlarged, analysis, powers in sorted(found, key=lambda item: item[:2]):
+            yield heavy, enlarged, analysis, powers
 
-    def _flow_on(
+    def _smooth_flow(
         self,
         family: FamilyDefinition,
         heavy: int,
         enlarged: FamilyDefinition,
         analysis: SectorAnalysis,
-        found: Masters,
+        masters: tuple[Powers, ...],
         wanted: Sequence[Powers],
     ) -> Flow:
-        masters = found.masters
+        """The differential equations of the better of two bases, without conditions yet."""
+        numerators: Flow | ReconstructionError
+        try:
+            numerators = self._derived(family, heavy, enlarged, analysis, masters, wanted)
+            rough = roughness(numerators, _TRIAL)
+            if rough < SMOOTH:
+                return numerators
+        except ReconstructionError as error:
+            numerators = error
+        dotted = dotted_masters(enlarged, analysis, masters, self.primes, self.seed, self.progress)
+        if isinstance(numerators, ReconstructionError):
+            return self._derived(family, heavy, enlarged, analysis, dotted, wanted)
+        if dotted == masters:
+            return numerators
+        try:
+            other = self._derived(family, heavy, enlarged, analysis, dotted, wanted)
+        except ReconstructionError:
+            return numerators
+        return other if roughness(other, _TRIAL) < rough else numerators
+
+    def _derived(
+        self,
+        family: FamilyDefinition,
+        heavy: int,
+        enlarged: FamilyDefinition,
+        analysis: SectorAnalysis,
+        masters: tuple[Powers, ...],
+        wanted: Sequence[Powers],
+    ) -> Flow:
         template = derivative_templates(enlarged)[MASS]
         derivatives = [template_at(template, powers) for powers in masters]
         targets = [single(enlarged, powers) for powers in wanted]
@@ -237,7 +265,7 @@ class _Builder:
         matrix = tuple(
             (row, column, value) for row, line in enumerate(rows[: len(masters)]) for column, value in line
         )
-        flow = Flow(
+        return Flow(
             family.name,
             family.lines[heavy].text,
             family.dimension,
@@ -246,15 +274,28 @@ class _Builder:
             (),
             tuple(rows[len(masters) :]),
         )
+
+    def _determined(
+        self,
+        flow: Flow,
+        family: FamilyDefinition,
+        heavy: int,
+        enlarged: FamilyDefinition,
+        analysis: SectorAnalysis,
+    ) -> Flow:
+        """The flow with as many conditions at infinity as its solution needs."""
+        masters = flow.masters
         places = regions(family, heavy)
         one = enlarged.internal_ring.one
         own = {powers: ((index, one),) for index, powers in enumerate(masters)}
         flow = self._with_conditions(flow, family, heavy, places, own)
         done = set(own)
-        for dots in range(1, _DOTS + 1):
+        for dots in range(_DOTS + 1):
             if not undetermined(at_infinity(flow, _TRIAL, self.loops)):
                 return flow
             more = [p for p in _dotted(masters, dots) if p not in done]
+            if not more:
+                continue
             done.update(more)
             more_rows = self._rows(enlarged, analysis, masters, [single(enlarged, p) for p in more])
             extra = dict(zip(more, more_rows, strict=True))
@@ -332,15 +373,8 @@ def _soft_powers(region: Region, powers: Powers) -> Powers:
 
 def _dotted(masters: Sequence[Powers], dots: int) -> list[Powers]:
     """Integrals of the masters' sectors with so many dots and no numerators."""
-    found: dict[Powers, None] = {}
-    for sector in dict.fromkeys(sector_of(powers) for powers in masters):
-        lines = lines_of(sector)
-        for chosen in combinations_with_replacement(lines, dots):
-            powers = [1 if i in lines else 0 for i in range(len(masters[0]))]
-            for line in chosen:
-                powers[line] += 1
-            found[tuple(powers)] = None
-    return list(found)
+    sectors = dict.fromkeys(sector_of(powers) for powers in masters)
+    return [powers for sector in sectors for powers in dotted_integrals(sector, len(masters[0]), dots)]
 
 
 def _content(family: FamilyDefinition) -> tuple[object, ...]:

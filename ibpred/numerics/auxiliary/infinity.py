@@ -281,7 +281,7 @@ def constants(flow: Flow, part: ClassAtInfinity, leading: Sequence[Ball], bits: 
                 at = part.equations[i].condition
                 name = "an integral that should vanish" if at is None else str(flow.conditions[at].powers)
                 raise BoundaryError(
-                    f"{flow.family}: the regions at infinite auxiliary mass on the line {flow.line} contradict"
+                    f"{flow.family}: the regions at infinite auxiliary mass on {flow.line} contradict"
                     f" the differential equation at {name} ({part.loops} hard loops)"
                 )
         return column

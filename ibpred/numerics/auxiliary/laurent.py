@@ -150,7 +150,7 @@ def auxiliary_values(
                 for powers, fit in zip(plan.wanted, fits, strict=True)
             )
     raise PrecisionError(
-        f"{plan.family}: {missing} coefficients did not settle to {digits} digits when values of eps were added;"
+        f"{plan.family}: {missing} coefficients did not settle to {digits} digits when eps were added;"
         " ask for fewer digits"
     )
 

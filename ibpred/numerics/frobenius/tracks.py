@@ -141,7 +141,7 @@ def _laurent(
     derivative = pole.factor
     around = []
     for i in range(order + 1):
-        around.append(derivative(position))
+        around.append(flint.acb_poly(derivative)(position))
         derivative = derivative.derivative() / (i + 1)
     cofactor = _inverse_series(around[1:], order)
     powers = [_power_series(position, j, order) for j in range(degree)]
