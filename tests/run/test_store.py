@@ -61,3 +61,42 @@ def test_a_folder_that_cannot_be_made(tmp_path: Path) -> None:
     (tmp_path / "file").write_text("")
     with pytest.raises(UnwritableError, match="--work"):
         Store(tmp_path / "file" / "work")
+
+
+def test_work_goes_with_its_owner(tmp_path: Path) -> None:
+    with Store(tmp_path) as store:
+        store.put_bytes("a", "samples", b"1", owner="x")
+        store.put_bytes("b", "samples", b"2", owner="y")
+        store.put_bytes("c", "masters", b"3")
+        store.forget_work("x")
+        assert [store.get_bytes(key) for key in "abc"] == [None, b"2", b"3"]
+        assert [store.has(key) for key in "abc"] == [False, True, True]
+
+
+def test_entries_in_parts(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("ibpred.run.store._PART", 10)
+    body = bytes(range(95))
+    with Store(tmp_path) as store:
+        for packed in (True, False):
+            store.put_bytes("a", "tape", body, packed=packed)
+            assert store.get_bytes("a") == body
+        store.put_bytes("a", "tape", body[:5])
+        assert store.get_bytes("a") == body[:5]
+        store.put_bytes("a", "tape", body)
+    database = sqlite3.connect(tmp_path / "store.sqlite", isolation_level=None)
+    database.execute("delete from entry where part = 9")
+    database.close()
+    with Store(tmp_path) as store, pytest.raises(StoreError, match="'tape' is damaged"):
+        store.get_bytes("a")
+
+
+def test_a_transaction_is_whole_or_nothing(tmp_path: Path) -> None:
+    with Store(tmp_path) as store:
+        with pytest.raises(RuntimeError), store.transaction():
+            store.put("a", "masters", [1])
+            raise RuntimeError
+        assert store.get("a") is None
+        with store.transaction():
+            store.put("a", "masters", [1])
+            store.put("b", "masters", [2])
+        assert (store.get("a"), store.get("b")) == ([1], [2])
