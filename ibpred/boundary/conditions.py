@@ -34,7 +34,7 @@ from ibpred.errors import BoundaryError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
 from ibpred.iterated.series import Series
-from ibpred.iterated.transport import Point, residue_at
+from ibpred.iterated.transport import Infinity, Point, residue_at
 
 
 @dataclass(frozen=True)
@@ -127,7 +127,8 @@ def conditions_at(view: EdgeView, point: Point, order: int) -> tuple[Condition, 
     view
         The problem on the edge.
     point
-        The point; at 0 closed forms are used with their values, elsewhere with their exponents.
+        The point; closed forms are used with their values at 0 and where they are constant along the edge,
+        elsewhere with their exponents.
     order
         Values are given through ``eps^order``.
 
@@ -241,13 +242,28 @@ def _sources(
     for master, known, entry in zip(view.masters, behaviours, entries, strict=True):
         if not entry:
             continue
-        if master.closed is not None and point == 0:
-            values += contributions(entry, master.closed, view.names)
+        if master.closed is not None and (point == 0 or _is_constant(master.closed, view.edge.variable)):
+            values += contributions(_moved(entry, view.edge.variable, point), master.closed, view.names)
             continue
         if known is None:
             return None
         unknown.append((known, view.edge.approach(point).orders(entry)))
     return _Sources(tuple(values), tuple(unknown))
+
+
+def _is_constant(form: ClosedForm, variable: str) -> bool:
+    """Whether a closed form does not change along an edge."""
+    return not any(
+        variable in v.variables() for v in (form.rational, *(letter for letter, _ in form.letters))
+    )
+
+
+def _moved(value: Rational, variable: str, point: Point) -> Rational:
+    """In terms of the distance to a point (the inverse at infinity)."""
+    if point == 0:
+        return value
+    x = value.ring.variable(variable)
+    return value.substitute({variable: 1 / x if isinstance(point, Infinity) else x + point})
 
 
 def _row_conditions(

@@ -111,6 +111,35 @@ def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Bo
         If the form has square roots, if constants stay undetermined (names rows and orders), or conditions
         contradict each other (names the first that does).
     """
+    outcome, gathered, weight = _determine(problem, fitted)
+    if isinstance(outcome, Undetermined):
+        raise BoundaryError(_complaint(problem, outcome, gathered.unused))
+    starts = _starts(problem)
+    first = min(starts)
+    evidence = tuple(
+        Evidence(item.condition.name, total, new, total - new)
+        for item, (total, new) in zip(gathered.conditions, outcome.counts, strict=True)
+    )
+    vectors = [
+        tuple(outcome.constant(order, row) for row in range(len(starts)))
+        for order in range(first, weight + 1)
+    ]
+    while len(vectors) > 1 and not any(vectors[0]):
+        del vectors[0]
+        first += 1
+    return Boundary(first, tuple(vectors), evidence, gathered.unused, problem.corner, tuple(fitted))
+
+
+def open_constants(problem: BoundaryProblem) -> tuple[tuple[int, int], ...]:
+    """What the conditions leave open: pairs (power of eps, canonical function); see `fix_constants`."""
+    outcome, _, _ = _determine(problem, ())
+    return outcome.open if isinstance(outcome, Undetermined) else ()
+
+
+def _determine(
+    problem: BoundaryProblem, fitted: Sequence[Fitted]
+) -> tuple[Determined | Undetermined, Gathered, int]:
+    """The outcome of all conditions, the conditions, and the order through which constants are given."""
     form = problem.form
     if not form.variables:
         raise InputError("a form without ratios has no boundary to fix constants from")
@@ -127,29 +156,14 @@ def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Bo
     if len(problem.masters) != len(form.inverse):
         raise InputError(f"{len(problem.masters)} masters are given for {len(form.inverse)} functions")
     starts = _starts(problem)
-    first = min(starts)
-    weight = max(problem.weight, first)
+    weight = max(problem.weight, min(starts))
     extra = 0
     while True:
         # conditions at one order often fix constants of the order before only
         outcome, gathered = _solve(problem, fitted, starts, weight, weight + extra)
-        if isinstance(outcome, Determined):
-            break
+        if isinstance(outcome, Determined) or extra == _MOST_EXTRA_ORDERS:
+            return outcome, gathered, weight
         extra += 1
-        if extra > _MOST_EXTRA_ORDERS:
-            raise BoundaryError(_complaint(problem, outcome, gathered.unused))
-    evidence = tuple(
-        Evidence(item.condition.name, total, new, total - new)
-        for item, (total, new) in zip(gathered.conditions, outcome.counts, strict=True)
-    )
-    vectors = [
-        tuple(outcome.constant(order, row) for row in range(len(starts)))
-        for order in range(first, weight + 1)
-    ]
-    while len(vectors) > 1 and not any(vectors[0]):
-        del vectors[0]
-        first += 1
-    return Boundary(first, tuple(vectors), evidence, gathered.unused, problem.corner, tuple(fitted))
 
 
 def _starts(problem: BoundaryProblem) -> tuple[int, ...]:

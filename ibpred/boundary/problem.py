@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from types import MappingProxyType
 
 from ibpred.boundary.conditions import Master
 from ibpred.boundary.expansion import ClosedForm, expand, on_line
@@ -55,7 +56,11 @@ def closed_form_on_line(
 
 
 def one_scale_values(
-    family: FamilyDefinition, masters: Sequence[Powers], signs: Mapping[str, int], order: int
+    family: FamilyDefinition,
+    masters: Sequence[Powers],
+    signs: Mapping[str, int],
+    order: int,
+    fitted: Mapping[Powers, Series] = MappingProxyType({}),
 ) -> tuple[Series, ...]:
     """Laurent expansions of the masters of a family without a ratio, the unit at its Euclidean sign.
 
@@ -69,27 +74,42 @@ def one_scale_values(
         Sign of the unit in the Euclidean region.
     order
         Highest power of eps.
+    fitted
+        Masters that were recognised from values (`ibpred.boundary.recognise.recognise_series`); closed
+        forms go first.
 
     Raises
     ------
     InputError
         If the family has a ratio.
     BoundaryError
-        If a master is no product of Gamma functions (names it), or needs a constant that is not known
-        exactly.
+        If a master is no product of Gamma functions and not fitted through that order (names it), or needs
+        a constant that is not known exactly.
     """
     field = ring(("eps",))
     values = region_values(family, signs, field, ())
     found = []
     for powers in masters:
         closed = closed_form_on_line(family, powers, values, field)
-        if closed is None:
+        if closed is not None:
+            found.append(expand(closed, order))
+        elif powers in fitted and fitted[powers].end >= order:
+            found.append(fitted[powers])
+        else:
             raise BoundaryError(
                 f"{master_label(family, powers)} is no product of Gamma functions, and without a ratio no "
                 "differential equation fixes its value"
             )
-        found.append(expand(closed, order))
     return tuple(found)
+
+
+def without_closed_form(
+    family: FamilyDefinition, masters: Sequence[Powers], signs: Mapping[str, int]
+) -> tuple[Powers, ...]:
+    """The masters of a family without a ratio that are no products of Gamma functions: to be fitted."""
+    field = ring(("eps",))
+    values = region_values(family, signs, field, ())
+    return tuple(p for p in masters if closed_form_on_line(family, p, values, field) is None)
 
 
 def master_label(family: FamilyDefinition, powers: Powers) -> str:

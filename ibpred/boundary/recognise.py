@@ -7,7 +7,7 @@ How often chance alone would give one as short is estimated by counting vectors.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from math import floor, log10
@@ -15,7 +15,9 @@ from math import floor, log10
 import flint
 
 from ibpred.balls.context import Ball, RealBall, precision
+from ibpred.errors import BoundaryError
 from ibpred.iterated.constants import NAMES, ZERO, Constant, Monomial, monomials_of_weight
+from ibpred.iterated.series import Series
 
 _BITS_PER_DIGIT = 3.3219280948873626
 
@@ -162,3 +164,42 @@ def _odds(relation: Sequence[int], values: Sequence[float], digits: int) -> int:
     window = log10(2 * abs(relation[0])) - digits
     spread = log10(height * max(*(abs(v) for v in values), 1e-300))
     return floor(vectors + window - spread) + 1
+
+
+def recognise_series(
+    values: Mapping[int, Ball], loops: int, generators: Sequence[str], odds: int
+) -> tuple[Series, tuple[Fit, ...]]:
+    """Fit the Laurent coefficients of one integral without a scale that varies.
+
+    Parameters
+    ----------
+    values
+        Power of eps -> value, all powers between the lowest and the highest; powers below vanish.
+    loops
+        L: the weight at eps^k is at most 2 L + k (in four dimensions).
+    generators, odds
+        As for `recognise`.
+
+    Returns
+    -------
+    tuple
+        The series and the fit of each of its coefficients.
+
+    Raises
+    ------
+    BoundaryError
+        If a coefficient is not recognised (names the power of eps).
+    """
+    fits = []
+    for order in range(min(values), max(values) + 1):
+        highest = 2 * loops + order
+        weights = range(highest, -1, -1) if highest >= 0 else ()
+        fit = recognise(values[order], tuple(weights), generators, odds)
+        if fit is None:
+            raise BoundaryError(
+                f"the value {values[order].str(12)} at eps^{order} is no combination of the constants "
+                f"{', '.join(generators)} up to weight {highest} that chance would not give as well; "
+                "more digits may help"
+            )
+        fits.append(fit)
+    return Series(min(values), tuple(fit.constant for fit in fits)), tuple(fits)

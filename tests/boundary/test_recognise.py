@@ -10,13 +10,24 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from ibpred.balls.context import precision, widened
-from ibpred.boundary.fix import Fitted, fix_constants
-from ibpred.boundary.problem import boundary_problem
-from ibpred.boundary.recognise import ALTERNATING, SINGLE_SCALE, Fit, basis_of_weights, recognise
+from ibpred.boundary.fix import Fitted, fix_constants, open_constants
+from ibpred.boundary.from_values import fitted_constants
+from ibpred.boundary.problem import boundary_problem, one_scale_values, without_closed_form
+from ibpred.boundary.recognise import (
+    ALTERNATING,
+    SINGLE_SCALE,
+    Fit,
+    basis_of_weights,
+    recognise,
+    recognise_series,
+)
 from ibpred.errors import BoundaryError
 from ibpred.exact.codec import from_data, to_data
 from ibpred.iterated.constants import Constant
 from ibpred.iterated.polylog_values import Place, polylog
+from ibpred.iterated.series import Series
+from ibpred.iterated.solution import solve_orders
+from ibpred.iterated.solution_values import solution_values
 
 rationals = st.fractions(min_value=-30, max_value=30, max_denominator=120)
 
@@ -88,3 +99,48 @@ def test_fits_stand_in_for_what_stays_open() -> None:
         fix_constants(right, wrong)
     with pytest.raises(BoundaryError, match="undetermined"):
         fix_constants(blind, fits[:-1])
+
+
+def test_laurent_coefficients_with_mixed_weights() -> None:
+    """The massless two-loop sunrise from its numbers: its closed form says the same."""
+    powers, definition = (1, 1, 1, 0, 0), family("sunrise")
+    (exact,) = one_scale_values(definition, (powers,), {"s": -1}, 3)
+    values = {k: flint.acb(blurred(exact.coefficient(k), 120).real) for k in range(exact.start, 4)}
+    series, fits = recognise_series(values, 2, SINGLE_SCALE, -15)
+    assert series == exact
+    assert all(fit.odds <= -15 for fit in fits)
+    values[2] = flint.acb(flint.arb(values[2].real.str(12, radius=False)) + flint.arb(0, flint.arb("1e-12")))
+    with pytest.raises(BoundaryError, match=r"eps\^2"):
+        recognise_series(values, 2, SINGLE_SCALE, -15)
+
+
+def test_fitted_masters_take_the_place_of_closed_forms() -> None:
+    """Crossed vertex with six lines, as in Gonsalves, Phys. Rev. D 28 (1983) 1542 (from memory)."""
+    definition, signs = family("crossed-vertex"), {"s": -1}
+    six = (1, 1, 1, 1, 1, 1, 0)
+    assert without_closed_form(definition, (six,), signs) == (six,)
+    with pytest.raises(BoundaryError, match="Gamma"):
+        one_scale_values(definition, (six,), signs, 0)
+    known = Series(-4, tuple(Constant.read(t) for t in ("1", "0", "-pi^2", "-83*zeta3/3", "-59*pi^4/120")))
+    assert one_scale_values(definition, (six,), signs, 0, {six: known}) == (known,)
+
+
+def test_constants_from_values_at_a_point() -> None:
+    """The blind box once more, from values of its canonical functions at x = 1/3, y = 1/5."""
+    form = leg_box_form()
+    right = boundary_problem(family("box-one-leg"), LEG_BOX_MASTERS, form, {"s": -1, "t": -1, "p4sq": -1}, 2)
+    derived = fix_constants(right)
+    solution = solve_orders(form, derived.corner, derived.constants, 2, derived.start)
+    point = {"x": Fraction(1, 3), "y": Fraction(1, 5)}
+    values = solution_values(solution, point, 50)
+    blind = replace(right, masters=(*right.masters[:3], replace(right.masters[3], powers=None)))
+    assert {row for _, row in open_constants(blind)} == {3}
+    assert open_constants(right) == ()
+    fits = fitted_constants(blind, values, derived.start, point, 50, SINGLE_SCALE, -12)
+    found = fix_constants(blind, fits)
+    assert found.constants == derived.constants
+    assert {item.row for item in found.fitted} == {3}
+    shifted = [list(row) for row in values]
+    shifted[2][3] = shifted[2][3] + flint.acb(flint.arb("0.1234567"))
+    with pytest.raises(BoundaryError, match=r"function 4 .* at eps\^1"):
+        fitted_constants(blind, shifted, derived.start, point, 50, SINGLE_SCALE, -12)
