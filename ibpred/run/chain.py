@@ -26,11 +26,11 @@ from ibpred.epsform.matrices import identity, scaled
 from ibpred.epsform.parity import involution, with_parity
 from ibpred.errors import ObstructionError, UnfinishedError
 from ibpred.exact.codec import to_data
-from ibpred.exact.rational import ring
+from ibpred.exact.rational import Rational, ring
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import euclidean_signs
 from ibpred.identities.rows import family_identities
-from ibpred.iterated.series import Series
+from ibpred.iterated.series import Series, eps_valuation
 from ibpred.iterated.solution import Solution, constant_solution, solve_orders
 from ibpred.numerics.value import Value
 from ibpred.progress import Progress
@@ -230,17 +230,30 @@ class Chain(Stages):
         symmetry = involution(self.coordinates().values.values(), found.variables[0])
         if symmetry is not None:
             found = with_parity(found, symmetry)
+        found = _scaled(found, 1 / self._first_factor(found))
         try:
             problem = self._boundary_problem(found, 0)
             start = fix_constants(problem).start
         except UnfinishedError:
             return found
-        factor = found.ring.variable("eps") ** start
-        return replace(
-            found,
-            transformation=scaled(found.transformation, factor),
-            inverse=scaled(found.inverse, 1 / factor),
-        )
+        return _scaled(found, found.ring.variable("eps") ** -start)
+
+    def _first_factor(self, form: EpsilonForm) -> Rational:
+        """What multiplies Gamma functions in the first function that is one closed form: a function of eps.
+
+        Without it that function is as pure as its Gamma functions, and so are those that couple to it.
+        """
+        masters = self._boundary_problem(form, 0).masters
+        for row in form.inverse:
+            used = [j for j, entry in enumerate(row) if entry]
+            closed = masters[used[0]].closed
+            if len(used) != 1 or closed is None:
+                continue
+            factor = row[used[0]] * closed.rational
+            if set(factor.variables()) <= {"eps"}:
+                rest = factor / form.ring.variable("eps") ** eps_valuation(factor)
+                return rest / rest.substitute({"eps": 0})
+        return form.ring.one
 
     def euclidean_signs(self) -> dict[str, int]:
         """Signs of the invariants in the Euclidean region.
@@ -317,6 +330,13 @@ class Chain(Stages):
     def label(self, row: int) -> str:
         """A master by name."""
         return integral_text(self.definition.name, self.masters().masters[row])
+
+
+def _scaled(form: EpsilonForm, factor: Rational) -> EpsilonForm:
+    """All functions times a function of eps."""
+    return replace(
+        form, transformation=scaled(form.transformation, 1 / factor), inverse=scaled(form.inverse, factor)
+    )
 
 
 def _trivial_form(count: int) -> EpsilonForm:
