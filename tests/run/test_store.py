@@ -92,9 +92,14 @@ def test_entries_in_parts(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> No
 
 def test_a_transaction_is_whole_or_nothing(tmp_path: Path) -> None:
     with Store(tmp_path) as store:
-        with pytest.raises(RuntimeError), store.transaction():
-            store.put("a", "masters", [1])
-            raise RuntimeError
+
+        def fail() -> None:
+            with store.transaction():
+                store.put("a", "masters", [1])
+                raise RuntimeError
+
+        with pytest.raises(RuntimeError):
+            fail()
         assert store.get("a") is None
         with store.transaction():
             store.put("a", "masters", [1])
