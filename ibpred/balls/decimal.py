@@ -7,7 +7,7 @@ from typing import Any
 
 import flint
 
-from ibpred.balls.context import Ball, RealBall
+from ibpred.balls.context import Ball, RealBall, precision
 from ibpred.errors import PrecisionError
 
 _PLAIN_EXPONENTS = range(-6, 25)
@@ -51,6 +51,13 @@ def decimal_ball(ball: Ball, digits: int) -> DecimalBall:
     re, re_error = _decimal(ball.real, digits)
     im, im_error = _decimal(ball.imag, digits)
     return DecimalBall(re, im, _radius(max(re_error, im_error, key=_size)))
+
+
+def ball_of_decimal(value: DecimalBall, bits: int) -> Ball:
+    """The complex ball of decimal digits: both parts with the radius."""
+    with precision(bits):
+        margin = flint.arb(0, flint.arb(value.radius).upper())
+        return flint.acb(flint.arb(value.re) + margin, flint.arb(value.im) + margin)
 
 
 # A decimal number m * 10^e is kept as the pair (m, e) of integers.

@@ -6,9 +6,11 @@ from collections.abc import Mapping, Sequence
 from fractions import Fraction
 from typing import TYPE_CHECKING
 
+from ibpred.errors import PrecisionError, UnfinishedError
 from ibpred.family.definition import Powers
 from ibpred.numerics.value import Value
 from ibpred.reduction.wanted import check_powers
+from ibpred.run.continued_values import continued_values
 from ibpred.run.form_values import form_values
 
 if TYPE_CHECKING:
@@ -30,6 +32,10 @@ def evaluate_points(
     digits: int,
 ) -> tuple[tuple[Value, ...], ...]:
     """Values at points, of the masters or of given integrals.
+
+    The first of these routes that is open is taken, and every value says which one it was: the epsilon-form
+    solved with exact constants (rigorous balls); continuation by the differential system from a point where
+    the masters are known; the auxiliary mass at the point itself (both with estimated errors).
 
     Parameters
     ----------
@@ -53,8 +59,22 @@ def evaluate_points(
     PointError
         If a point is incomplete or singular.
     UnfinishedError
-        If the family is not solved, or the digits cannot be reached.
+        If no route is open, or the digits cannot be reached.
     """
     for powers in wanted:
         check_powers(chain.definition, powers)
-    return form_values(chain, points, wanted, order, digits)
+    try:
+        return form_values(chain, points, wanted, order, digits)
+    except PrecisionError:
+        raise
+    except UnfinishedError as error:
+        chain.progress.stage(f"no values from an epsilon-form ({error})")
+        unsolved = error
+    try:
+        return continued_values(chain, points, wanted, order, digits)
+    except PrecisionError:
+        raise
+    except UnfinishedError as error:
+        raise UnfinishedError(
+            f"no route to values is open: from an epsilon-form: {unsolved}; by the auxiliary mass: {error}"
+        ) from error

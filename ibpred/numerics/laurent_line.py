@@ -1,0 +1,207 @@
+"""Laurent coefficients of the masters carried along a line by the differential system, order by order.
+
+Neither an epsilon-form nor numeric eps is needed: ``J_i = eps^(r_i) I_i`` obeys a system without poles at
+eps = 0 (`ibpred.numerics.expanded`), whose coefficients of eps^0, eps^1, ... form one larger system over Q(x)
+on the line. The continuation is rigorous; the errors of the values at the start are carried along.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from itertools import pairwise
+
+import flint
+
+from ibpred.balls.context import Ball, precision
+from ibpred.diffeq.system import DifferentialSystem
+from ibpred.errors import InputError, PrecisionError
+from ibpred.exact.rational import Rational
+from ibpred.numerics.crossings import around, crossings
+from ibpred.numerics.expanded import ExpandedSystem
+from ibpred.numerics.frobenius.continuation import carried
+from ibpred.numerics.frobenius.path import Path, Point, approximate
+from ibpred.numerics.frobenius.poles import PartialFractions, partial_fractions
+from ibpred.numerics.frobenius.system import RationalSystem, fmpq, rational_system, system_in
+from ibpred.numerics.frobenius.tracks import BallMatrix, all_positions
+
+_GUARD_BITS = 64
+_MOST_FOLD = 12  # working bits over wanted bits
+
+_GUARD_BITS = 64
+_MOST_FOLD = 12  # working bits over wanted bits
+
+Laurent = Mapping[int, Ball]
+"""Power of eps -> coefficient; what is missing below the highest power vanishes."""
+
+
+@dataclass(frozen=True)
+class LaurentLine:
+    """A line between two points with the system on it.
+
+    Attributes
+    ----------
+    fractions
+        The system of all orders together, order k of master i in row ``k n + i``.
+    path
+        From 0 to 1 around the singular points.
+    shifts
+        r_i.
+    depth
+        How many orders.
+    """
+
+    fractions: PartialFractions
+    path: Path
+    shifts: tuple[int, ...]
+    depth: int
+
+
+def laurent_line(
+    expanded: ExpandedSystem,
+    locus: Sequence[Rational],
+    start: Mapping[str, Fraction],
+    end: Mapping[str, Fraction],
+    turns: Mapping[str, int],
+) -> LaurentLine:
+    """Plan the way between two points.
+
+    Parameters
+    ----------
+    expanded
+        The system order by order, to as many orders as are carried.
+    locus
+        Irreducible polynomials in the invariants: where the system is singular.
+    start, end
+        Two regular points.
+    turns
+        For every invariant the sign of the imaginary part that i0 gives it, or 0.
+
+    Raises
+    ------
+    PointError
+        If a point or the whole line is singular, or no way is found.
+    """
+    depth = len(next(iter(expanded.matrices.values()), ()))
+    if depth == 0:
+        raise InputError("a system in at least one invariant and one order is needed")
+    passed = crossings(locus, start, end, turns)
+    fractions = partial_fractions(_whole_system(expanded, start, end, depth))
+    path = around(approximate(all_positions(fractions, 64)), passed)
+    return LaurentLine(fractions, path, expanded.shifts, depth)
+
+
+def _whole_system(
+    expanded: ExpandedSystem, start: Mapping[str, Fraction], end: Mapping[str, Fraction], depth: int
+) -> RationalSystem:
+    size = len(expanded.shifts)
+    images = {
+        name: flint.fmpq_poly([fmpq(start[name]), fmpq(end[name] - start[name])])
+        for name in expanded.variables
+    }
+    parts = []
+    for name in expanded.variables:
+        speed = fmpq(end[name] - start[name])
+        if not speed:
+            continue
+        for order, layer in enumerate(expanded.matrices[name]):
+            for (i, j), (p, q) in system_in(size, layer, images).entries.items():
+                for k in range(order, depth):
+                    parts.append((k * size + i, (k - order) * size + j, p * speed, q))
+    return rational_system(size * depth, parts)
+
+
+def spread(expanded: ExpandedSystem) -> int:
+    """How many more powers of eps are needed at the start than are had at the end."""
+    return max(expanded.shifts) - min(expanded.shifts)
+
+
+def carry_laurent(
+    line: LaurentLine, values: Sequence[Laurent], lowest: int, highest: int, bits: int
+) -> tuple[dict[int, Ball], ...]:
+    """The masters at the end of a line.
+
+    Parameters
+    ----------
+    line
+        The line; its depth must be ``highest + max r - lowest + 1``.
+    values
+        Laurent coefficients of every master at the start, through ``highest`` plus the spread.
+    lowest
+        The lowest power of any ``eps^(r_i) I_i``.
+    highest
+        Highest power wanted at the end.
+    bits
+        Working precision.
+
+    Returns
+    -------
+    For each master its coefficients from the lowest power it can have on.
+    """
+    top = highest + max(line.shifts)
+    if line.depth != top - lowest + 1:
+        raise InputError(f"the line holds {line.depth} orders, the values need {top - lowest + 1}")
+    orders = [
+        flint.acb_mat(
+            [[values[i].get(lowest + k - shift, flint.acb(0))] for i, shift in enumerate(line.shifts)]
+        )
+        for k in range(line.depth)
+    ]
+    for step in pairwise(line.path):
+        blocks = _transfer(line, step, bits)
+        with precision(bits):
+            orders = [_applied(blocks, orders, k) for k in range(line.depth)]
+    return tuple(
+        {lowest + k - shift: orders[k][i, 0] for k in range(line.depth) if lowest + k - shift <= highest}
+        for i, shift in enumerate(line.shifts)
+    )
+
+
+def _applied(blocks: Sequence[BallMatrix], orders: Sequence[BallMatrix], k: int) -> BallMatrix:
+    total = blocks[0] * orders[k]
+    for j in range(1, k + 1):
+        total = total + blocks[j] * orders[k - j]
+    return total
+
+
+def _transfer(line: LaurentLine, step: tuple[Point, Point], bits: int) -> list[BallMatrix]:
+    """The matrices U_j of ``J^(k)(end) = sum_j U_j J^(k-j)(start)`` for one step.
+
+    They start from exact unit vectors: balls that start wide would grow far beyond the true errors in the
+    recurrences of the series, whose rounding errors only ask for more bits.
+    """
+    size = len(line.shifts)
+    rows = size * line.depth
+    unit = flint.acb_mat([[flint.acb(1 if i == j else 0) for j in range(size)] for i in range(rows)])
+    working = bits + _GUARD_BITS
+    while True:
+        found = carried(line.fractions, step, unit, working)
+        if _is_sharp(found, bits):
+            break
+        if working > _MOST_FOLD * (bits + _GUARD_BITS):
+            raise PrecisionError("the series on the way to the point lose all their digits; move the point")
+        working += working // 2
+    table = found.table()
+    return [flint.acb_mat(table[j * size : (j + 1) * size]) for j in range(line.depth)]
+
+
+def _is_sharp(matrix: BallMatrix, bits: int) -> bool:
+    """Whether no entry's radius exceeds ``2^-bits`` of the largest entry."""
+    entries = matrix.entries()
+    if not all(value.is_finite() for value in entries):
+        return False
+    with precision(64):
+        size = max((value.mid().abs_upper() for value in entries), key=float)
+        goal = size * flint.arb(2) ** (-bits)
+        return all(value.real.rad() <= goal and value.imag.rad() <= goal for value in entries)
+
+
+def line_depth(expanded_shifts: Sequence[int], lowest: int, highest: int) -> int:
+    """How many orders a line must hold (see `carry_laurent`)."""
+    return highest + max(expanded_shifts) - lowest + 1
+
+
+def regular_locus(system: DifferentialSystem) -> tuple[Rational, ...]:
+    """The singular locus in the invariants alone."""
+    return tuple(letter for letter in system.singular_locus if "d" not in letter.variables())

@@ -1,0 +1,246 @@
+"""Routes two and three to numbers: continuation from a known point, or the auxiliary mass at the point.
+
+Neither needs an epsilon-form. The known points come from the auxiliary-mass method; their errors are
+estimates, and so are those of the values.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import TYPE_CHECKING
+
+import flint
+
+from ibpred.balls.accuracy import bits_for, is_accurate
+from ibpred.balls.context import Ball, complex_ball, precision
+from ibpred.balls.decimal import ball_of_decimal, decimal_ball
+from ibpred.errors import PointError, PrecisionError
+from ibpred.exact.rational import Rational
+from ibpred.family.definition import Powers
+from ibpred.family.signs import euclidean_signs
+from ibpred.iterated.series import eps_valuation, laurent
+from ibpred.numerics.crossings import crossings
+from ibpred.numerics.expanded import ExpandedSystem, expanded_system
+from ibpred.numerics.laurent_line import carry_laurent, laurent_line, line_depth, regular_locus, spread
+from ibpred.numerics.power_series import EPSILON
+from ibpred.numerics.value import Route, Value
+from ibpred.run.known_points import KnownPoint, known_points, new_point
+from ibpred.run.points import euclidean_point
+
+if TYPE_CHECKING:
+    from ibpred.run.chain import Chain
+
+_SPARE_DIGITS = 12  # of a known point, lost on the way to others
+_SPARE_BITS = 120
+_ROUNDS = 2
+
+Point = Mapping[str, Fraction]
+Masters = tuple[Mapping[int, Ball], ...]
+
+
+@dataclass(frozen=True)
+class _Found:
+    """The masters at a point, and how they were obtained."""
+
+    masters: Masters
+    route: Route
+
+
+def continued_values(
+    chain: Chain, points: Sequence[Point], wanted: Sequence[Powers], order: int, digits: int
+) -> tuple[tuple[Value, ...], ...]:
+    """Values at points without an epsilon-form; see `ibpred.run.values.evaluate_points`.
+
+    Where the digits wanted are not reached after a second attempt with more, the values say how many were.
+
+    Raises
+    ------
+    PointError
+        If a point is incomplete or singular.
+    UnfinishedError
+        If the auxiliary-mass method does not apply to the family.
+    """
+    found = []
+    for done, point in enumerate(points):
+        chain.progress.advance(done, len(points))
+        found.append(_at_point(chain, point, wanted, order, digits))
+    return tuple(found)
+
+
+def _at_point(
+    chain: Chain, point: Point, wanted: Sequence[Powers], order: int, digits: int
+) -> tuple[Value, ...]:
+    _check_point(chain, point)
+    count = len(chain.masters().masters)
+    names = list(wanted) if wanted else list(chain.masters().masters)
+    if wanted:
+        table = chain.reduction(tuple(dict.fromkeys(wanted)))
+        sums = [_coefficients(chain, dict(table.reductions[powers]), point) for powers in wanted]
+    else:
+        sums = [{index: EPSILON.one} for index in range(count)]
+    needed = max((order - eps_valuation(c) for total in sums for c in total.values()), default=order)
+    asked = digits
+    results: list[dict[int, Ball]] = []
+    for round_ in range(_ROUNDS):
+        bits = 2 * bits_for(asked) + _SPARE_BITS
+        found = _masters_at(chain, point, needed, asked, bits)
+        results = [_combined(total, found.masters, order, bits) for total in sums]
+        missing = [ball for result in results for ball in result.values() if not is_accurate(ball, digits)]
+        if not missing or round_ == _ROUNDS - 1:
+            break
+        chain.progress.stage(f"{len(missing)} coefficients lack digits; once more with more")
+        asked += digits // 2 + _SPARE_DIGITS
+    return tuple(
+        Value(
+            tuple(powers),
+            {k: decimal_ball(ball, digits + 2) for k, ball in result.items()},
+            certified=False,
+            route=found.route,
+        )
+        for powers, result in zip(names, results, strict=True)
+    )
+
+
+def _check_point(chain: Chain, point: Point) -> None:
+    family = chain.definition
+    names = [invariant.name for invariant in family.invariants]
+    unknown = [name for name in point if name not in names]
+    if unknown:
+        raise PointError(
+            f"{family.name} has no invariant {unknown[0]!r}; known are {', '.join(names) or 'none'}"
+        )
+    missing = [name for name in names if name not in point]
+    if missing:
+        raise PointError(f"the point lacks a value for {', '.join(missing)}; give every invariant")
+    for letter in regular_locus(chain.derivation().system) if names else ():
+        if not letter.substitute({**point, "d": 0}):
+            raise PointError(f"the point lies on the singularity {letter} = 0; choose another point")
+
+
+def _coefficients(chain: Chain, combination: Mapping[int, Rational], point: Point) -> dict[int, Rational]:
+    images = {name: EPSILON.constant(value) for name, value in point.items()}
+    images["d"] = EPSILON.variable("eps") * -2 + chain.definition.dimension
+    found = {}
+    for index, coefficient in combination.items():
+        try:
+            value = coefficient.substitute(images)
+        except ZeroDivisionError:
+            raise PointError(
+                f"the reduction is singular at this point: {coefficient.denominator} vanishes; choose "
+                "another point"
+            ) from None
+        if value:
+            found[index] = value
+    return found
+
+
+def _combined(total: Mapping[int, Rational], masters: Masters, order: int, bits: int) -> dict[int, Ball]:
+    """Coefficients through ``eps^order`` of a sum over the masters, without leading balls that hold zero."""
+    sums: dict[int, Ball] = {}
+    with precision(bits):
+        for index, coefficient in total.items():
+            master = masters[index]
+            if not master:
+                continue
+            series = laurent(coefficient, order - min(master))
+            for i, factor in enumerate(series.coefficients):
+                if not factor:
+                    continue
+                ball = complex_ball(factor.to_fraction(), 0, bits)
+                for k, value in master.items():
+                    power = series.start + i + k
+                    if power <= order:
+                        sums[power] = sums.get(power, flint.acb(0)) + ball * value
+    kept: dict[int, Ball] = {}
+    for power, value in sorted(sums.items()):
+        if kept or not value.contains(0):
+            kept[power] = value
+    return kept
+
+
+def _masters_at(chain: Chain, point: Point, highest: int, digits: int, bits: int) -> _Found:
+    """The masters through ``eps^highest``, by continuation where a way leads from a known point."""
+    for known in known_points(chain):
+        if dict(known.point) == dict(point) and known.order >= highest and known.digits >= digits:
+            return _Found(_balls(known, highest, bits), Route.AUXILIARY_MASS)
+    signs = euclidean_signs(chain.definition)
+    system = chain.derivation().system
+    if not system.variables:
+        return _Found(_balls(new_point(chain, point, highest, digits), highest, bits), Route.AUXILIARY_MASS)
+    reduced = expanded_system(system, 0)
+    top = highest + spread(reduced)
+    usable = [k for k in known_points(chain) if k.order >= top and k.digits >= digits + _SPARE_DIGITS]
+    for known in _by_way(chain, usable, point, signs):
+        return _Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
+    if signs is None:
+        found = new_point(chain, point, top, digits + _SPARE_DIGITS)
+        return _Found(_balls(found, highest, bits), Route.AUXILIARY_MASS)
+    base = euclidean_point(chain.definition, signs)
+    if dict(base) == dict(point) or not list(_by_way(chain, [_empty(base)], point, signs)):
+        found = new_point(chain, point, top, digits + _SPARE_DIGITS)
+        return _Found(_balls(found, highest, bits), Route.AUXILIARY_MASS)
+    known = new_point(chain, base, top, digits + _SPARE_DIGITS)
+    return _Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
+
+
+def _empty(point: Point) -> KnownPoint:
+    return KnownPoint(point, 0, 0, ())
+
+
+def _turns(chain: Chain, signs: Mapping[str, int] | None) -> dict[str, int]:
+    if signs is None:
+        return dict.fromkeys((i.name for i in chain.definition.invariants), 0)
+    return {name: -sign for name, sign in signs.items()}
+
+
+def _by_way(
+    chain: Chain, known: Sequence[KnownPoint], point: Point, signs: Mapping[str, int] | None
+) -> Iterator[KnownPoint]:
+    """Known points from which a line leads to the point, those with the fewest crossings first.
+
+    Without a Euclidean region the sides are not known, so only lines without crossings count.
+    """
+    locus = regular_locus(chain.derivation().system)
+    ways = []
+    for place, candidate in enumerate(known):
+        try:
+            passed = crossings(locus, candidate.point, point, _turns(chain, signs))
+        except PointError:
+            continue
+        if signs is None and passed:
+            continue
+        ways.append((len(passed), place, candidate))
+    for _, _, candidate in sorted(ways, key=lambda way: way[:2]):
+        yield candidate
+
+
+def _balls(known: KnownPoint, highest: int, bits: int) -> Masters:
+    return tuple(
+        {k: ball_of_decimal(ball, bits) for k, ball in value.items() if k <= highest}
+        for value in known.values
+    )
+
+
+def _carried(
+    chain: Chain,
+    known: KnownPoint,
+    point: Point,
+    highest: int,
+    signs: Mapping[str, int] | None,
+    bits: int,
+) -> Masters:
+    chain.progress.stage("continuation")
+    system = chain.derivation().system
+    values = _balls(known, known.order, bits)
+    shifts = expanded_system(system, 0).shifts
+    lowest = min((k + shift for value, shift in zip(values, shifts, strict=True) for k in value), default=0)
+    expanded: ExpandedSystem = expanded_system(system, line_depth(shifts, lowest, highest))
+    line = laurent_line(expanded, regular_locus(system), known.point, point, _turns(chain, signs))
+    carried = carry_laurent(line, values, lowest, highest, bits)
+    for value in carried:
+        for ball in value.values():
+            if not ball.is_finite():
+                raise PrecisionError("the continuation lost all digits; ask for more digits")
+    return carried
