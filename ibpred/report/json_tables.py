@@ -9,7 +9,7 @@ from typing import Any
 from ibpred.boundary.fix import Boundary
 from ibpred.diffeq.ratios import DimensionlessSystem
 from ibpred.diffeq.system import DifferentialSystem
-from ibpred.epsform.form import EpsilonForm, Obstructed
+from ibpred.epsform.form import EpsilonForm, Obstructed, OddLetter
 from ibpred.exact.polynomial import polynomial_text
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
@@ -95,6 +95,23 @@ def letter_text(letter: Rational) -> str:
     return "+".join(texts).replace("+-", "-")
 
 
+def root_text(roots: Sequence[int], form: EpsilonForm) -> str:
+    """The product under a square root; empty for no root."""
+    factors = [letter_text(form.radicands[k]) for k in roots]
+    if len(factors) == 1:
+        return factors[0]
+    return "*".join(f if f.isidentifier() else f"({f})" for f in factors)
+
+
+def odd_letter_text(letter: OddLetter, form: EpsilonForm) -> str:
+    """A letter with a square root: ``(x-sqrt(x*(4+x)))/(x+sqrt(x*(4+x)))``."""
+    above = letter.polynomial.factored_text()
+    if "+" in above or "-" in above:
+        above = letter_text(letter.polynomial) if letter.polynomial.denominator.is_one() else f"({above})"
+    root = f"sqrt({root_text(letter.roots, form)})"
+    return f"({above}-{root})/({above}+{root})"
+
+
 def sparse(matrix: Sequence[Sequence[Fraction | Rational]]) -> list[list[Any]]:
     """Nonzero entries as (row, column, text)."""
     return [
@@ -120,12 +137,18 @@ def epsilon_data(
         "obstructions": [],
     }
     if form is not None:
-        data["letters"] = [letter_text(letter) for letter in form.letters]
+        even = [letter_text(letter) for letter in form.letters]
+        odd = [odd_letter_text(letter, form) for letter in form.odd_letters]
+        matrices = (*form.matrices, *form.odd_matrices)
+        data["letters"] = [*even, *odd]
         data["matrices"] = {
-            letter_text(letter): sparse(matrix)
-            for letter, matrix in zip(form.letters, form.matrices, strict=True)
+            text: sparse(matrix) for text, matrix in zip(data["letters"], matrices, strict=True)
         }
-        data["transformation"] = sparse(form.transformation)
+        roots = [root_text(tag, form) for tag in form.tags]
+        data["transformation"] = [
+            [row, column, f"{value}/sqrt({roots[column]})" if roots[column] else value]
+            for row, column, value in sparse(form.transformation)
+        ]
     if isinstance(outcome, Obstructed):
         data["rows"] = list(outcome.rows)
         data["obstructions"] = [

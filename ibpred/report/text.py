@@ -131,7 +131,10 @@ def differential_text(data: Data) -> str:
 
 def epsilon_text(data: Data) -> str:
     """The canonical system, or what stands in its way."""
-    lines = [f"ratio {name} = {text}" for name, text in data["ratios"].items()]
+    lines = [
+        f"variable {name} with {text}" if "=" in text else f"ratio {name} = {text}"
+        for name, text in data["ratios"].items()
+    ]
     if data["obstructions"]:
         lines.append("no ε-form was found:")
         for obstruction in data["obstructions"]:
