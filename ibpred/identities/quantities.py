@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import flint
+import numpy as np
 
 from ibpred.errors import UnfinishedError
 from ibpred.exact.polynomial import Polynomial, plain_terms
@@ -57,18 +59,27 @@ class Quantity:
 
 def template_at(template: Template, powers: Powers) -> Quantity:
     """The quantity that a template defines at given powers."""
-    place = (*powers, 1)
+    place = np.array([*powers, 1], dtype=np.int64)
+    values = template.values @ place
+    shifted = template.shifts + place[:-1]
+    filled = values.any(axis=1)
     terms = []
-    for shift, values in zip(template.shifts.tolist(), template.values.tolist(), strict=True):
-        polynomial = {}
-        for exponents, form in zip(template.monomials, values, strict=True):
-            value = sum(c * a for c, a in zip(form, place, strict=True))
-            if value:
-                polynomial[exponents] = value
-        if polynomial:
-            terms.append((tuple(a + s for a, s in zip(powers, shift, strict=True)), polynomial))
+    for target, row in zip(shifted[filled].tolist(), values[filled].tolist(), strict=True):
+        polynomial = {e: c for e, c in zip(template.monomials, row, strict=True) if c}
+        terms.append((tuple(target), polynomial))
     weight = {e: int(c) for e, c in zip(template.monomials, template.weight.tolist(), strict=True) if c}
     return Quantity(f"{template.name} of {powers}", weight, tuple(terms))
+
+
+def fingerprint(quantities: Sequence[Quantity]) -> str:
+    """SHA-256 of quantities, in hexadecimal; it does not depend on the order within a polynomial."""
+    found = hashlib.sha256()
+    for quantity in quantities:
+        terms = [(powers, sorted(polynomial.items())) for powers, polynomial in quantity.terms]
+        parts = [(number, sorted(polynomial.items())) for number, polynomial in quantity.parts]
+        whole = (quantity.name, sorted(quantity.weight.items()), terms, quantity.families, parts)
+        found.update(repr(whole).encode())
+    return found.hexdigest()
 
 
 def combination(

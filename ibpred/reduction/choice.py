@@ -9,7 +9,7 @@ samples of the differential equation along one line in d and one in the invarian
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from itertools import combinations, islice
 
@@ -19,14 +19,16 @@ from numpy.typing import NDArray
 from ibpred.errors import UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.identities.derivatives import derivative_templates
-from ibpred.identities.quantities import template_at
+from ibpred.identities.quantities import Integral, template_at
+from ibpred.identities.rows import FamilyIdentities, family_identities
 from ibpred.identities.seeding import Depth, seeds_of_sector
+from ibpred.identities.templates import Template
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.modular import Residues, add, invert, multiply, subtract
 from ibpred.reconstruct.univariate import rational_functions
 from ibpred.reduction.deck import TapeSampler
-from ibpred.reduction.masters import Masters, find_masters
-from ibpred.reduction.recording import record_quantities
+from ibpred.reduction.masters import CommonMasters, Masters, find_common_masters
+from ibpred.reduction.recording import record_together
 from ibpred.reduction.wanted import single
 from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.order import dots, rank, sector_of, sort_key
@@ -41,11 +43,10 @@ def choose_masters(
     analysis: SectorAnalysis,
     primes: Sequence[int],
     seed: int,
+    preferred: Sequence[Powers] = (),
     progress: Progress = SILENT,
 ) -> Masters:
-    """Find masters and exchange them, sector by sector, for ones whose denominators split.
-
-    The masters that the total order gives are kept where no other choice is better.
+    """Find the masters of one family and choose among them; see `choose_common_masters`.
 
     Parameters
     ----------
@@ -53,33 +54,75 @@ def choose_masters(
         The family and its sectors.
     primes, seed
         Engine primes (two are used), and the seed of all random points.
+    preferred
+        Integrals that are to be masters.
+    progress
+        Told about each sector.
+
+    Raises
+    ------
+    InputError, UnfinishedError
+        As `choose_common_masters`.
+    """
+    members = family_identities([family], [analysis])
+    wish = [(0, tuple(powers)) for powers in preferred]
+    found = choose_common_masters(members, [0], primes, seed, wish, progress)
+    return Masters(
+        family.name, tuple(powers for _, powers in found.masters), found.prime, found.point, found.trials
+    )
+
+
+def choose_common_masters(
+    members: Sequence[FamilyIdentities],
+    roots: Sequence[int],
+    primes: Sequence[int],
+    seed: int,
+    preferred: Sequence[Integral] = (),
+    progress: Progress = SILENT,
+) -> CommonMasters:
+    """Find masters and exchange them, sector by sector, for ones whose denominators split.
+
+    The masters that the total order gives are kept where no other choice is better, and in sectors
+    for which the user prefers some.
+
+    Parameters
+    ----------
+    members, roots
+        As for `find_common_masters`.
+    primes, seed
+        Engine primes (two are used), and the seed of all random points.
+    preferred
+        Integrals that are to be masters.
     progress
         Told about each sector.
 
     Raises
     ------
     InputError
-        If all integrals vanish.
+        If all integrals vanish; if a preferred integral vanishes or reduces to other masters.
     UnfinishedError
         If the masters keep changing with the seeds.
     """
-    found = find_masters(family, analysis, primes[0], seed, progress=progress)
-    if len(family.internal_ring.names) < 2:
+    found = find_common_masters(members, roots, primes[0], seed, preferred, progress)
+    if len(members[0].family.internal_ring.names) < 2:
         return found
-    sectors: dict[int, list[Powers]] = {}
-    for powers in found.masters:
-        sectors.setdefault(sector_of(powers), []).append(powers)
-    coupled = {sector: tuple(own) for sector, own in sectors.items() if len(own) > 1}
-    progress.stage("choice of masters")
-    wish: list[Powers] = []
-    for done, (sector, own) in enumerate(coupled.items()):
-        better = _best(family, analysis, sector, own, primes, seed)
+    sectors: dict[tuple[int, int], list[Powers]] = {}
+    for number, powers in found.masters:
+        sectors.setdefault((number, sector_of(powers)), []).append(powers)
+    settled = {(number, sector_of(powers)) for number, powers in preferred}
+    coupled = {place: tuple(own) for place, own in sectors.items() if len(own) > 1 and place not in settled}
+    if coupled:
+        progress.stage("choice of masters")
+    wish = list(preferred)
+    templates = {number: derivative_templates(members[number].family) for number in {n for n, _ in coupled}}
+    for done, ((number, sector), own) in enumerate(coupled.items()):
+        better = _best(members[number], templates[number], sector, own, primes, seed)
         if better != own:
-            wish.extend(better)
+            wish += [(number, powers) for powers in better]
         progress.advance(done + 1, len(coupled))
-    if not wish:
+    if len(wish) == len(preferred):
         return found
-    return find_masters(family, analysis, primes[0], seed, preferred=wish, progress=progress)
+    return find_common_masters(members, roots, primes[0], seed, wish, progress)
 
 
 @dataclass(frozen=True)
@@ -101,7 +144,7 @@ def _cut(analysis: SectorAnalysis, sector: int) -> SectorAnalysis:
     return replace(
         analysis,
         zero=frozenset(analysis.sectors) - {sector},
-        maps=tuple(m for m in analysis.maps if m.source == m.target == sector),
+        maps=tuple(m for m in analysis.maps if m.source == sector and m.is_symmetry),
     )
 
 
@@ -119,16 +162,17 @@ def _pool(family: FamilyDefinition, sector: int, own: Sequence[Powers]) -> tuple
 
 
 def _best(
-    family: FamilyDefinition,
-    analysis: SectorAnalysis,
+    member: FamilyIdentities,
+    templates: Mapping[str, Template],
     sector: int,
     own: tuple[Powers, ...],
     primes: Sequence[int],
     seed: int,
 ) -> tuple[Powers, ...]:
-    pool = _pool(family, sector, own)
+    pool = _pool(member.family, sector, own)
+    cut = replace(member, analysis=_cut(member.analysis, sector))
     try:
-        samples = _sample(family, _cut(analysis, sector), own, pool, primes, seed)
+        samples = _sample(cut, templates, own, pool, primes, seed)
     except UnfinishedError:
         # identities of higher sectors relate integrals of this one: its cut alone has more masters, and
         # says nothing about the choice
@@ -152,18 +196,18 @@ def _sets(pool: Sequence[Powers], size: int) -> Iterator[tuple[int, ...]]:
 
 
 def _sample(
-    family: FamilyDefinition,
-    cut: SectorAnalysis,
+    cut: FamilyIdentities,
+    templates: Mapping[str, Template],
     own: tuple[Powers, ...],
     pool: tuple[Powers, ...],
     primes: Sequence[int],
     seed: int,
 ) -> _Samples:
-    templates = derivative_templates(family)
+    family = cut.family
     names = family.internal_ring.names[1:]
     quantities = [single(family, powers) for powers in pool]
     quantities += [template_at(templates[name], powers) for name in names for powers in pool]
-    recorded = record_quantities(family, cut, own, quantities, primes, seed)
+    recorded = record_together([cut], [(0, powers) for powers in own], quantities, primes, seed)
     prime = primes[0]
     random = np.random.default_rng(seed)
 

@@ -18,7 +18,7 @@ from ibpred.errors import InputError, UnfinishedError
 from ibpred.exact.codec import to_data
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.identities.quantities import Integral, Quantity
+from ibpred.identities.quantities import Integral, Quantity, fingerprint
 from ibpred.identities.rows import FamilyIdentities, IntegralRows, family_identities, write_rows
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence, reconstruct
@@ -123,7 +123,7 @@ def record_together(
             "tape",
             [[to_data(member.family), sorted(member.analysis.zero)] for member in members],
             to_data(masters),
-            to_data(quantities),
+            fingerprint(quantities),
             [*primes[:2], seed],
         ]
     )
