@@ -34,8 +34,9 @@ from ibpred.iterated.series import Series, eps_valuation
 from ibpred.iterated.solution import Solution, constant_solution, solve_orders
 from ibpred.numerics.value import Value
 from ibpred.progress import Progress
+from ibpred.reduction.choice import choose_masters
 from ibpred.reduction.independent import SectorCount, compare_counts
-from ibpred.reduction.masters import Masters, find_masters
+from ibpred.reduction.masters import Masters
 from ibpred.reduction.several import reduce_together
 from ibpred.reduction.table import ReductionTable
 from ibpred.reduction.wanted import check_powers
@@ -61,14 +62,22 @@ class Chain(Stages):
         Told what is being done.
     workers
         Who samples the reduction; a number of threads.
+    preferred
+        Integrals that are to be masters; in the other sectors masters are chosen.
     """
 
     def __init__(
-        self, definition: FamilyDefinition, store: Store, progress: Progress, workers: int | Workers
+        self,
+        definition: FamilyDefinition,
+        store: Store,
+        progress: Progress,
+        workers: int | Workers,
+        preferred: tuple[Powers, ...] = (),
     ) -> None:
-        identity = digest(["family", ibpred.__version__, to_data(definition)])
+        identity = digest(["family", ibpred.__version__, to_data(definition), preferred])
         super().__init__(identity, store, progress, workers)
         self.definition = definition
+        self.preferred = preferred
         self._analysis: SectorAnalysis | None = None
 
     def analysis(self) -> SectorAnalysis:
@@ -80,12 +89,13 @@ class Chain(Stages):
 
     def masters(self) -> Masters:
         """The master integrals."""
-        prime = self.primes[0]
         return self._kept(
             "masters",
             Masters,
             None,
-            lambda: find_masters(self.definition, self.analysis(), prime, SEED, progress=self.progress),
+            lambda: choose_masters(
+                self.definition, self.analysis(), self.primes, SEED, self.preferred, self.progress
+            ),
         )
 
     def counts(self) -> tuple[SectorCount, ...]:
@@ -192,6 +202,13 @@ class Chain(Stages):
             return found
 
         return self._kept("coordinates", Coordinates, None, without_roots)
+
+    def in_ratios(self) -> bool:
+        """Whether the variables of the epsilon-form are just the ratios of the invariants."""
+        if len(self.definition.invariants) <= 1:
+            return True
+        plain = ratio_coordinates(self.derivation().system, self.signs())
+        return dict(self.coordinates().values) == dict(plain.values)
 
     def dimensionless(self) -> DimensionlessSystem:
         """The differential equations in dimensionless variables and eps."""

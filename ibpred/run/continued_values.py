@@ -16,7 +16,7 @@ import flint
 from ibpred.balls.accuracy import bits_for, is_accurate
 from ibpred.balls.context import Ball, complex_ball, precision
 from ibpred.balls.decimal import ball_of_decimal, decimal_ball
-from ibpred.errors import PointError, PrecisionError
+from ibpred.errors import PointError, PrecisionError, UnfinishedError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
 from ibpred.family.signs import euclidean_signs
@@ -27,6 +27,7 @@ from ibpred.numerics.laurent_line import carry_laurent, laurent_line, line_depth
 from ibpred.numerics.power_series import EPSILON
 from ibpred.numerics.value import Route, Value
 from ibpred.run.known_points import KnownPoint, known_points, new_point
+from ibpred.run.lifted_point import lifted_point
 from ibpred.run.points import euclidean_point
 
 if TYPE_CHECKING:
@@ -96,7 +97,7 @@ def _at_point(
         Value(
             tuple(powers),
             {k: decimal_ball(ball, digits + 2) for k, ball in result.items()},
-            certified=False,
+            certified=found.route is Route.EPSILON_FORM,
             route=found.route,
         )
         for powers, result in zip(names, results, strict=True)
@@ -171,6 +172,9 @@ def _masters_at(chain: Chain, point: Point, highest: int, digits: int, bits: int
         return _Found(_balls(new_point(chain, point, highest, digits), highest, bits), Route.AUXILIARY_MASS)
     reduced = expanded_system(system, 0)
     top = highest + spread(reduced)
+    lifted = _lifted(chain, point, highest, top, digits, signs, bits)
+    if lifted is not None:
+        return lifted
     usable = [k for k in known_points(chain) if k.order >= top and k.digits >= digits + _SPARE_DIGITS]
     for known in _by_way(chain, usable, point, signs):
         return _Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
@@ -183,6 +187,31 @@ def _masters_at(chain: Chain, point: Point, highest: int, digits: int, bits: int
         return _Found(_balls(found, highest, bits), Route.AUXILIARY_MASS)
     known = new_point(chain, base, top, digits + _SPARE_DIGITS)
     return _Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
+
+
+def _lifted(
+    chain: Chain,
+    point: Point,
+    highest: int,
+    top: int,
+    digits: int,
+    signs: Mapping[str, int] | None,
+    bits: int,
+) -> _Found | None:
+    """The masters from a solved epsilon-form in variables other than the ratios: rigorous."""
+    if chain.in_ratios():
+        return None
+    try:
+        known = lifted_point(chain, top, digits + _SPARE_DIGITS)
+    except PrecisionError:
+        raise
+    except UnfinishedError:
+        return None
+    if dict(known.point) == dict(point):
+        return _Found(_balls(known, highest, bits), Route.EPSILON_FORM)
+    if not list(_by_way(chain, [known], point, signs)):
+        return None
+    return _Found(_carried(chain, known, point, highest, signs, bits), Route.EPSILON_FORM)
 
 
 def _empty(point: Point) -> KnownPoint:

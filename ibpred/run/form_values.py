@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 
 from ibpred.boundary.fix import Boundary
 from ibpred.epsform.form import EpsilonForm
+from ibpred.errors import UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import masses
 from ibpred.family.units import integral_dimension
@@ -23,7 +24,7 @@ from ibpred.reduction.table import ReductionTable
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
 
-_BITS_PER_DIGIT = 40  # ceiling of the working precision before evaluation gives up
+_BITS_PER_DIGIT = 40
 
 
 def form_values(
@@ -43,7 +44,12 @@ def form_values(
         If the family is not solved, or the digits cannot be reached.
     """
     family = chain.definition
-    chosen = [_place(chain, point) for point in points]
+    if not chain.in_ratios():
+        raise UnfinishedError(
+            f"it is in the variables {', '.join(chain.coordinates().names)}, in which values are taken at "
+            "one point and carried from there"
+        )
+    chosen = [place_of(chain, point) for point in points]
     form = chain.solved_form()
     named = [dict(zip(form.variables, place.ratios.values(), strict=False)) for place in chosen]
     for ratios in named:
@@ -60,12 +66,18 @@ def form_values(
     weight = max(needed_order(rows_of_all, order) or 0, 2 * len(family.loops))
     boundary = chain.boundary(weight)
     chain.progress.stage("values")
-    ceiling = _BITS_PER_DIGIT * digits + 4000
-    functions = _functions(form, boundary)
+    ceiling = bits_ceiling(digits)
+    functions = form_functions(form, boundary)
     return evaluate_places(functions, boundary.constants, boundary.start, places, order, digits, ceiling)
 
 
-def _functions(form: EpsilonForm, boundary: Boundary) -> Functions:
+def bits_ceiling(digits: int) -> int:
+    """The highest working precision before an evaluation gives up."""
+    return _BITS_PER_DIGIT * digits + 4000
+
+
+def form_functions(form: EpsilonForm, boundary: Boundary) -> Functions:
+    """The canonical functions of a solved form."""
     if not form.variables:
         return InOneRatio(CanonicalSystem(len(form.transformation), ()))
     if len(form.variables) == 1:
@@ -73,14 +85,16 @@ def _functions(form: EpsilonForm, boundary: Boundary) -> Functions:
     return InSeveralRatios(form, boundary.corner)
 
 
-def _place(chain: Chain, point: Mapping[str, Fraction]) -> KinematicPoint:
+def place_of(chain: Chain, point: Mapping[str, Fraction]) -> KinematicPoint:
+    """A point of the family with the prescriptions of its invariants."""
     family = chain.definition
     signs = chain.euclidean_signs()
     dimensions = {invariant.name: invariant.dimension for invariant in family.invariants}
     return kinematic_point(point, signs, family.unit, dimensions, masses(family))
 
 
-def _exponent(family: FamilyDefinition, powers: Powers) -> tuple[Fraction, Fraction]:
+def unit_exponent(family: FamilyDefinition, powers: Powers) -> tuple[Fraction, Fraction]:
+    """The mass dimension of an integral over that of the unit, as (A, B) of A + B eps."""
     constant, slope = integral_dimension(family, powers)
     if family.unit is None:
         return Fraction(0), Fraction(0)
@@ -91,7 +105,7 @@ def _exponent(family: FamilyDefinition, powers: Powers) -> tuple[Fraction, Fract
 def _master_rows(
     family: FamilyDefinition, form: EpsilonForm, ratios: Mapping[str, Target], masters: Sequence[Powers]
 ) -> tuple[Row, ...]:
-    exponents = [_exponent(family, powers) for powers in masters]
+    exponents = [unit_exponent(family, powers) for powers in masters]
     return master_rows(form, {name: ratio.value for name, ratio in ratios.items()}, masters, exponents)
 
 
@@ -109,7 +123,7 @@ def _integral_rows(
     rows = []
     for powers in wanted:
         combination = dict(table.reductions[powers])
-        exponent = _exponent(family, powers)
+        exponent = unit_exponent(family, powers)
         rows.append(
             integral_row(powers, exponent, combination, masters, family.dimension, place.values, unit)
         )
