@@ -38,6 +38,7 @@ class Shared:
     quiet: bool
     others: tuple[Path, ...] = ()
     cluster: str | None = None
+    masters: tuple[str, ...] = ()
 
 
 def shared_options(command: C) -> C:
@@ -60,11 +61,13 @@ def _with_options(command: C, argument: Callable[[C], C]) -> C:
         as_json: bool,
         quiet: bool,
         cluster: str | None,
+        masters: tuple[str, ...],
         **own: Any,
     ) -> Any:
         first, *others = (Path(name) for name in ([family] if isinstance(family, str) else family))
         folder = Path(work) if work else None
-        return command(Shared(first, folder, workers, as_json, quiet, tuple(others), cluster), **own)
+        shared = Shared(first, folder, workers, as_json, quiet, tuple(others), cluster, masters)
+        return command(shared, **own)
 
     entry.__doc__ = command.__doc__
     entry.__name__ = command.__name__
@@ -73,6 +76,13 @@ def _with_options(command: C, argument: Callable[[C], C]) -> C:
     for decorate in (
         click.option("--quiet", is_flag=True, help="Show no progress."),
         click.option("--json", "as_json", is_flag=True, help="Print the result as one JSON object."),
+        click.option(
+            "--master",
+            "masters",
+            multiple=True,
+            metavar="POWERS",
+            help="An integral that is to be a master (repeatable); the others are chosen.",
+        ),
         click.option(
             "--cluster",
             metavar="ADDRESS",
@@ -102,8 +112,16 @@ def open_chain(shared: Shared) -> Iterator[Chain]:
     from ibpred.run.files import read_family_file
 
     definition = read_family_file(shared.file)
+    preferred = tuple(_own_powers(text, definition.name) for text in shared.masters)
     with _opened(shared, definition.name) as (store, progress, workers):
-        yield Chain(definition, store, progress, workers)
+        yield Chain(definition, store, progress, workers, preferred)
+
+
+def _own_powers(text: str, family: str) -> tuple[int, ...]:
+    name, powers = parse_integral(text, "--master")
+    if name not in (None, family):
+        raise InputError(f"--master: {text!r} does not belong to the family {family}")
+    return powers
 
 
 @contextmanager
@@ -114,7 +132,8 @@ def open_joint(shared: Shared) -> Iterator[Joint]:
 
     definitions = [read_family_file(file) for file in (shared.file, *shared.others)]
     with _opened(shared, definitions[0].name) as (store, progress, workers):
-        yield Joint(definitions, store, progress, workers)
+        preferred = [parse_integral(text, "--master") for text in shared.masters]
+        yield Joint(definitions, store, progress, workers, preferred)
 
 
 @contextmanager

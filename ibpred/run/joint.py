@@ -16,8 +16,9 @@ from ibpred.identities.rows import FamilyIdentities, family_identities
 from ibpred.identities.seeding import Depth, seeds_of_sector
 from ibpred.progress import Progress
 from ibpred.reduction.check import TableCheck, check_table
+from ibpred.reduction.choice import choose_common_masters
 from ibpred.reduction.cuts import reduce_by_cuts
-from ibpred.reduction.masters import CommonMasters, find_common_masters
+from ibpred.reduction.masters import CommonMasters
 from ibpred.reduction.several import reduce_together
 from ibpred.reduction.sums import ReducedSums, Sum, reduce_sums
 from ibpred.reduction.wanted import check_powers
@@ -41,11 +42,13 @@ class Joint(Stages):
         The families; each comes with the crossings that it declares.
     store, progress, workers
         As for a chain.
+    preferred
+        Integrals that are to be masters.
 
     Raises
     ------
     InputError
-        If the families do not fit together.
+        If the families do not fit together; if a preferred integral is of none of them.
     """
 
     def __init__(
@@ -54,11 +57,15 @@ class Joint(Stages):
         store: Store,
         progress: Progress,
         workers: int | Workers,
+        preferred: Sequence[NamedPowers] = (),
     ) -> None:
-        identity = digest(["families", ibpred.__version__, *map(to_data, definitions)])
+        identity = digest(
+            ["families", ibpred.__version__, to_data(tuple(preferred)), *map(to_data, definitions)]
+        )
         super().__init__(identity, store, progress, workers)
         self.members: tuple[Member, ...] = members_of(definitions)
         self.roots = tuple(i for i, member in enumerate(self.members) if member.crossing is None)
+        self.preferred = tuple(self.integral(named) for named in preferred)
         self._identities: tuple[FamilyIdentities, ...] | None = None
 
     def identities(self) -> tuple[FamilyIdentities, ...]:
@@ -105,17 +112,18 @@ class Joint(Stages):
 
         Those of a single family are the ones that its chain uses.
         """
-        roots = tuple(sorted({*self.roots, *(number for number, _ in wanted)}))
+        roots = tuple(sorted({*self.roots, *(number for number, _ in (*wanted, *self.preferred))}))
         if roots == (0,):
-            own = Chain(self.members[0].definition, self.store, self.progress, self.workers).masters()
+            wish = tuple(powers for _, powers in self.preferred)
+            own = Chain(self.members[0].definition, self.store, self.progress, self.workers, wish).masters()
             integrals = tuple((0, powers) for powers in own.masters)
             return CommonMasters((own.family,), integrals, own.prime, own.point, own.trials)
         return self._kept(
             "common masters",
             CommonMasters,
             roots,
-            lambda: find_common_masters(
-                self.identities(), roots, self.primes[0], SEED, progress=self.progress
+            lambda: choose_common_masters(
+                self.identities(), roots, self.primes, SEED, self.preferred, self.progress
             ),
         )
 
