@@ -15,6 +15,7 @@ from ibpred.exact.grammar import parse_number
 if TYPE_CHECKING:
     from ibpred.family.definition import Powers
     from ibpred.run.chain import Chain
+    from ibpred.run.expansions import Approach
     from ibpred.run.grids import Axis
 
 
@@ -27,6 +28,14 @@ if TYPE_CHECKING:
     multiple=True,
     metavar="RANGE",
     help='Points along an invariant, "t=-0.9:-0.1:50" (first, last, how many); several make a grid.',
+)
+@click.option(
+    "--approach",
+    metavar="POINT",
+    help='Expand in the distance h from a point, "t=0-": t = 0 - h ("t=0+": t = 0 + h).',
+)
+@click.option(
+    "--terms", type=click.IntRange(-20, 500), default=3, show_default=True, metavar="N", help="Up to h^N."
 )
 @click.option("--csv", "csv_file", metavar="FILE", help="Write the values of a grid as CSV.")
 @click.option(
@@ -41,24 +50,31 @@ def evaluate(
     shared: Shared,
     at: str | None,
     grids: tuple[str, ...],
+    approach: str | None,
+    terms: int,
     csv_file: str | None,
     plot_file: str | None,
     digits: int,
     order: int,
     integrals: tuple[str, ...],
 ) -> None:
-    """Values of the masters, or of given integrals, at a point or on a grid."""
+    """Values of the masters, or of given integrals, at a point, on a grid, or near a singular point."""
     from ibpred.report.json_tables import values_data
     from ibpred.report.text import values_text
 
-    if at is None and not grids:
+    if at is None and not grids and approach is None:
         raise InputError('no point: give --at "s=-1,t=-1/3" or --grid "t=-0.9:-0.1:50"')
+    if grids and approach is not None:
+        raise InputError("--grid and --approach do not go together")
     if not grids and (csv_file or plot_file):
         raise InputError("--csv and --plot need a --grid")
     point = parse_point(at) if at is not None else {}
     axes = tuple(parse_axis(text) for text in grids)
     wanted = tuple(parse_powers(text, "--integral") for text in integrals)
     with open_chain(shared) as chain:
+        if approach is not None:
+            _near(shared, chain, point, approach, wanted, order, terms, digits)
+            return
         if axes:
             _on_grid(shared, chain, point, axes, wanted, order, digits, csv_file, plot_file)
             return
@@ -86,6 +102,51 @@ def parse_axis(text: str) -> Axis:
         raise PointError(f"the range {text!r} needs two different ends and at least two points")
     step = Fraction(last - first, count - 1)
     return Axis(name.strip(), tuple(first + step * i for i in range(count)))
+
+
+def parse_approach(text: str) -> Approach:
+    """A point with a side, ``t=0-`` or ``s=4+``.
+
+    Raises
+    ------
+    PointError
+        If it is none.
+    """
+    from ibpred.run.expansions import Approach
+
+    name, equals, rest = text.partition("=")
+    rest = rest.strip()
+    if not equals or not name.strip() or rest[-1:] not in ("+", "-") or len(rest) < 2:
+        raise PointError(
+            f'{text!r} is no point with a side; write "t=0-" for t = 0 - h, "t=0+" for t = 0 + h'
+        )
+    return Approach(name.strip(), parse_number(rest[:-1].strip()), 1 if rest[-1] == "+" else -1)
+
+
+def _near(
+    shared: Shared,
+    chain: Chain,
+    point: dict[str, Fraction],
+    approach: str,
+    wanted: tuple[Powers, ...],
+    order: int,
+    terms: int,
+    digits: int,
+) -> None:
+    from ibpred.report.expansions import expansion_data, expansion_text
+    from ibpred.run.expansions import expand
+
+    goal = parse_approach(approach)
+    found = expand(chain, point, goal, wanted, order, terms, digits)
+    data = expansion_data(
+        chain.definition,
+        point,
+        f"{goal.name} = {goal.place} {'+' if goal.side > 0 else '-'} h",
+        terms,
+        digits,
+        [(expansion.powers, expansion.epsilon) for expansion in found],
+    )
+    emit(shared, data, lambda: expansion_text(data))
 
 
 def _on_grid(

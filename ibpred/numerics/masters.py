@@ -209,13 +209,20 @@ def assemble(row: Row, orders: Orders, start: int, unit: Target, order: int, bit
                     if at >= count:
                         break
                     sums[at] = sums[at] + ball * orders[k][j]
-        logarithm = _unit_logarithm(unit, bits)
-        phase = _unit_power(unit, row.exponent[0], logarithm, bits)
-        slope = logarithm * complex_ball(row.exponent[1], 0, bits)
-    factors = exponential_series(slope, count, bits)
+    factors = unit_factors(unit, row.exponent, count, bits)
     product = truncated_product(sums, factors, count, bits)
+    return {lowest + k: value for k, value in enumerate(product)}
+
+
+def unit_factors(unit: Target, exponent: tuple[Fraction, Fraction], count: int, bits: int) -> list[Ball]:
+    """The first coefficients in eps of ``y_u^(A + B eps)``."""
     with precision(bits):
-        return {lowest + k: phase * value for k, value in enumerate(product)}
+        logarithm = _unit_logarithm(unit, bits)
+        phase = _unit_power(unit, exponent[0], logarithm, bits)
+        slope = logarithm * complex_ball(exponent[1], 0, bits)
+    factors = exponential_series(slope, count, bits)
+    with precision(bits):
+        return [phase * factor for factor in factors]
 
 
 def _unit_logarithm(unit: Target, bits: int) -> Ball:

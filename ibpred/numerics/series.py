@@ -114,6 +114,35 @@ def carried_to(
     return _march(centre, match, len(values), (start, *ends), bits)[1:]
 
 
+def local_levels(centre: Centre, constants: Orders, terms: int, bits: int) -> tuple[Level, ...]:
+    """The series themselves, in powers of h: for each order the coefficients of ``L^j/j!``.
+
+    Parameters
+    ----------
+    centre, constants
+        As in `from_base`.
+    terms
+        How many powers of h.
+    bits
+        Working precision.
+    """
+    found: list[Level] = []
+    with precision(bits):
+        count = max(terms, 2)
+        grid = _Grid(flint.arb(1), count, [flint.arb(0)] + [1 / flint.arb(m) for m in range(1, count)])
+        level: Level = []
+        for vector in constants:
+            level = _next_level(centre, level, grid)
+            for row, value in enumerate(vector):
+                series = level[0][row]
+                if series is None:
+                    series = [flint.acb(0)] * count
+                    level[0][row] = series
+                series[0] = value
+            found.append(level)
+    return tuple(found)
+
+
 def _march(
     centre: Centre,
     free: Callable[[int, Sequence[Sequence[Ball]]], list[Ball]],
