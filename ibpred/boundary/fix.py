@@ -92,6 +92,22 @@ class Boundary:
     fitted: tuple[Fitted, ...] = ()
 
 
+class OpenConstantsError(BoundaryError):
+    """The conditions leave constants open.
+
+    Parameters
+    ----------
+    problem
+        The message.
+    open_
+        Pairs (power of eps, canonical function).
+    """
+
+    def __init__(self, problem: str, open_: tuple[tuple[int, int], ...]) -> None:
+        self.open = open_
+        super().__init__(problem)
+
+
 def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Boundary:
     """Determine the boundary constants exactly.
 
@@ -107,13 +123,14 @@ def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Bo
     ------
     InputError
         If the form has no ratio, or the number of masters or the corner does not fit.
+    OpenConstantsError
+        If constants stay undetermined (names rows and orders).
     BoundaryError
-        If the form has square roots, if constants stay undetermined (names rows and orders), or conditions
-        contradict each other (names the first that does).
+        If the form has square roots, or conditions contradict each other (names the first that does).
     """
     outcome, gathered, weight = _determine(problem, fitted)
     if isinstance(outcome, Undetermined):
-        raise BoundaryError(_complaint(problem, outcome, gathered.unused))
+        raise OpenConstantsError(_complaint(problem, outcome, gathered.unused), outcome.open)
     starts = _starts(problem)
     first = min(starts)
     evidence = tuple(
@@ -128,12 +145,6 @@ def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Bo
         del vectors[0]
         first += 1
     return Boundary(first, tuple(vectors), evidence, gathered.unused, problem.corner, tuple(fitted))
-
-
-def open_constants(problem: BoundaryProblem) -> tuple[tuple[int, int], ...]:
-    """What the conditions leave open: pairs (power of eps, canonical function); see `fix_constants`."""
-    outcome, _, _ = _determine(problem, ())
-    return outcome.open if isinstance(outcome, Undetermined) else ()
 
 
 def _determine(

@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from fractions import Fraction
 
 from ibpred.balls.accuracy import bits_for
 from ibpred.balls.context import Ball, precision
 from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import Fitted, open_constants
+from ibpred.boundary.fix import Fitted
 from ibpred.boundary.recognise import recognise
 from ibpred.errors import BoundaryError
 from ibpred.iterated.constants import ZERO, Constant
@@ -18,6 +18,7 @@ from ibpred.iterated.solution_values import solution_values
 
 def fitted_constants(
     problem: BoundaryProblem,
+    wanted: Collection[tuple[int, int]],
     values: Sequence[Sequence[Ball]],
     start: int,
     point: Mapping[str, Fraction],
@@ -34,6 +35,8 @@ def fitted_constants(
     ----------
     problem
         The problem.
+    wanted
+        What is open: pairs (power of eps, canonical function), as an `OpenConstantsError` tells them.
     values
         ``values[k][i]``: canonical function i at ``eps^(start + k)``, real, at the point.
     start
@@ -52,7 +55,6 @@ def fitted_constants(
     InputError
         If a letter is not linear at its level.
     """
-    wanted = set(open_constants(problem))
     last = max((order for order, _ in wanted), default=start - 1)
     constants: list[tuple[Constant, ...]] = []
     found = []

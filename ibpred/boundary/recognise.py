@@ -193,8 +193,11 @@ def recognise_series(
     fits = []
     for order in range(min(values), max(values) + 1):
         highest = 2 * loops + order
-        weights = range(highest, -1, -1) if highest >= 0 else ()
-        fit = recognise(values[order], tuple(weights), generators, odds)
+        weights = tuple(range(highest, -1, -1))
+        # uniform weight first: fewer constants need fewer digits
+        fit = recognise(values[order], weights[:1], generators, odds)
+        if fit is None:
+            fit = recognise(values[order], weights, generators, odds)
         if fit is None:
             raise BoundaryError(
                 f"the value {values[order].str(12)} at eps^{order} is no combination of the constants "

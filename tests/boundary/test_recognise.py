@@ -10,7 +10,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from ibpred.balls.context import precision, widened
-from ibpred.boundary.fix import Fitted, fix_constants, open_constants
+from ibpred.boundary.fix import Fitted, OpenConstantsError, fix_constants
 from ibpred.boundary.from_values import fitted_constants
 from ibpred.boundary.problem import boundary_problem, one_scale_values, without_closed_form
 from ibpred.boundary.recognise import (
@@ -134,13 +134,15 @@ def test_constants_from_values_at_a_point() -> None:
     point = {"x": Fraction(1, 3), "y": Fraction(1, 5)}
     values = solution_values(solution, point, 50)
     blind = replace(right, masters=(*right.masters[:3], replace(right.masters[3], powers=None)))
-    assert {row for _, row in open_constants(blind)} == {3}
-    assert open_constants(right) == ()
-    fits = fitted_constants(blind, values, derived.start, point, 50, SINGLE_SCALE, -12)
+    with pytest.raises(OpenConstantsError, match="undetermined") as caught:
+        fix_constants(blind)
+    wanted = caught.value.open
+    assert {row for _, row in wanted} == {3}
+    fits = fitted_constants(blind, wanted, values, derived.start, point, 50, SINGLE_SCALE, -12)
     found = fix_constants(blind, fits)
     assert found.constants == derived.constants
     assert {item.row for item in found.fitted} == {3}
     shifted = [list(row) for row in values]
     shifted[2][3] = shifted[2][3] + flint.acb(flint.arb("0.1234567"))
     with pytest.raises(BoundaryError, match=r"function 4 .* at eps\^1"):
-        fitted_constants(blind, shifted, derived.start, point, 50, SINGLE_SCALE, -12)
+        fitted_constants(blind, wanted, shifted, derived.start, point, 50, SINGLE_SCALE, -12)

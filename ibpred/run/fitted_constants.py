@@ -1,0 +1,130 @@
+"""Boundary constants that no condition fixes: recognised from values by the auxiliary-mass method."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from fractions import Fraction
+from typing import TYPE_CHECKING
+
+import flint
+
+from ibpred.balls.accuracy import bits_for
+from ibpred.balls.context import Ball, precision
+from ibpred.balls.decimal import ball_of_decimal
+from ibpred.boundary.explore import BoundaryProblem
+from ibpred.boundary.fix import Boundary, Fitted, OpenConstantsError, fix_constants
+from ibpred.boundary.from_values import fitted_constants
+from ibpred.boundary.problem import one_scale_values, without_closed_form
+from ibpred.boundary.recognise import ALTERNATING, SINGLE_SCALE, Fit, recognise_series
+from ibpred.epsform.form import EpsilonForm
+from ibpred.errors import BoundaryError
+from ibpred.family.definition import Powers
+from ibpred.family.signs import masses
+from ibpred.iterated.series import Series, eps_valuation, laurent
+from ibpred.run.known_points import new_point
+
+if TYPE_CHECKING:
+    from ibpred.run.chain import Chain
+
+_DIGITS = 40
+_ODDS = -12
+"""A fit is believed if chance would give one as good once in 10^12."""
+
+_RATIOS = (Fraction(1, 3), Fraction(1, 5), Fraction(1, 7), Fraction(1, 11), Fraction(1, 13))
+
+
+def _generators(chain: Chain) -> tuple[str, ...]:
+    """Massless integrals of one scale give multiple zeta values, massive ones alternating sums as well."""
+    return ALTERNATING if masses(chain.definition) else SINGLE_SCALE
+
+
+def one_scale_boundary(chain: Chain, order: int) -> Boundary:
+    """The masters of a family without a ratio through ``eps^order``: closed forms, the rest fitted.
+
+    Raises
+    ------
+    UnfinishedError
+        If a master without a closed form has no values, or is not recognised.
+    """
+    family, masters, signs = chain.definition, chain.masters().masters, chain.euclidean_signs()
+    missing = without_closed_form(family, masters, signs)
+    series: dict[Powers, Series] = {}
+    fitted: list[Fitted] = []
+    if missing:
+        chain.progress.stage(f"values of {len(missing)} masters without a closed form")
+        point = {name: Fraction(sign) for name, sign in signs.items()}
+        known = new_point(chain, point, order, _DIGITS)
+        for row, powers in enumerate(masters):
+            if powers in missing:
+                values = {
+                    k: flint.acb(ball_of_decimal(v, 2 * bits_for(_DIGITS)).real)
+                    for k, v in known.values[row].items()
+                }
+                series[powers], fits = recognise_series(values, len(family.loops), _generators(chain), _ODDS)
+                fitted += _marked(row, series[powers].start, fits)
+    exact = one_scale_values(family, masters, signs, order, series)
+    start, end = min(s.start for s in exact), min(s.end for s in exact)
+    constants = tuple(tuple(s.coefficient(k) for s in exact) for k in range(start, end + 1))
+    return Boundary(start, constants, (), (), (), tuple(fitted))
+
+
+def _marked(row: int, start: int, fits: Sequence[Fit]) -> list[Fitted]:
+    return [Fitted(row, start + k, fit) for k, fit in enumerate(fits)]
+
+
+def boundary_with_fits(chain: Chain, problem: BoundaryProblem) -> Boundary:
+    """Boundary constants of a family with ratios; what the conditions leave open is fitted.
+
+    Raises
+    ------
+    UnfinishedError
+        If open constants have no values, or are not recognised; the message says which and why the
+        conditions did not fix them.
+    """
+    try:
+        return fix_constants(problem)
+    except OpenConstantsError as error:
+        complaint = error
+    chain.progress.stage("values for the constants that no condition fixes")
+    form = problem.form
+    ratios = dict(zip(form.variables, _RATIOS, strict=False))
+    values = chain.coordinates().values
+    point = {name: value.substitute(dict(ratios)).to_fraction() for name, value in values.items()}
+    start = problem.start if problem.start is not None else 0
+    needed = problem.weight - min(eps_valuation(e) for row in form.inverse for e in row if e)
+    try:
+        known = new_point(chain, point, needed, _DIGITS)
+        bits = 2 * bits_for(_DIGITS)
+        numbers = [{k: ball_of_decimal(v, bits) for k, v in master.items()} for master in known.values]
+        functions = _canonical(form, ratios, numbers, start, problem.weight, bits)
+        fits = fitted_constants(
+            problem, complaint.open, functions, start, ratios, _DIGITS, _generators(chain), _ODDS
+        )
+    except BoundaryError as error:
+        raise BoundaryError(f"{complaint}. A fit from values failed: {error}") from None
+    return fix_constants(problem, fits)
+
+
+def _canonical(
+    form: EpsilonForm,
+    ratios: Mapping[str, Fraction],
+    masters: Sequence[Mapping[int, Ball]],
+    start: int,
+    weight: int,
+    bits: int,
+) -> list[list[Ball]]:
+    """``f = T^-1 I`` at a point: one list for each order from `start` through `weight`."""
+    with precision(bits):
+        found = [[flint.acb(0)] * len(form.inverse) for _ in range(weight - start + 1)]
+        for i, row in enumerate(form.inverse):
+            for entry, master in zip(row, masters, strict=True):
+                if not entry or not master:
+                    continue
+                series = laurent(entry.substitute(dict(ratios)), weight - min(master))
+                for k, factor in enumerate(series.coefficients):
+                    ball = factor.ball(bits)
+                    for power, value in master.items():
+                        order = series.start + k + power
+                        if start <= order <= weight:
+                            found[order - start][i] += ball * value
+        return found
