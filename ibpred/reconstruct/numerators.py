@@ -12,16 +12,15 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-import flint
 import numpy as np
 from numpy.typing import NDArray
 
+from ibpred.reconstruct.exponentials import exponential_coefficients
 from ibpred.reconstruct.factors import Factor, products
 from ibpred.reconstruct.modular import (
     Residues,
     add,
     invert,
-    lagrange_coefficients,
     matrix_product,
     monomials,
     multiply,
@@ -146,8 +145,11 @@ def numerators(
     coefficients: list[Residues] = [np.zeros(0, dtype=np.uint64)] * len(rows)
     fits = np.zeros(len(rows), dtype=np.bool_)
     scale = invert(monomials(exponents, start[:, None], prime)[:, 0], prime)
-    for support, members in shared_systems(supports, len(exponents), capacity):
-        solved, right = _solve(draws, sequence, nodes[support], members)
+    usable = np.cumsum(sequence.good)
+    for support, members in shared_systems(supports, len(exponents)):
+        length = int(np.searchsorted(usable, len(support) + SURPLUS)) + 1
+        values, good = sequence.values[members][:, :length], sequence.good[:length]
+        solved, right = exponential_coefficients(values, good, nodes[support], prime)
         solved = multiply(solved, scale[support][None, :], prime)
         for k, r in enumerate(members):
             coefficients[r] = solved[k]
@@ -200,31 +202,3 @@ def _sparse_support(
         total = add(multiply(total, nodes[possible], prime), coefficient, prime)
     support = possible[total == 0]
     return support if len(support) == terms else None
-
-
-def _solve(
-    draws: Draws, sequence: _Sequence, nodes: Residues, members: list[int]
-) -> tuple[Residues, NDArray[np.bool_]]:
-    """Coefficients (rows, nodes) of the exponentials, and whether surplus samples agree.
-
-    The system is made square by random nodes whose coefficients must come out zero; bad lanes are
-    unknowns that some of these conditions determine, the others check the solution.
-    """
-    prime = sequence.prime
-    length, support = len(sequence.good), len(nodes)
-    fillers = draws.residues(length - support, prime)
-    while len(np.unique(np.concatenate([nodes, fillers]))) != length:
-        fillers = draws.residues(length - support, prime)
-    inverse = lagrange_coefficients(np.concatenate([nodes, fillers]), prime)
-    bad = np.nonzero(~sequence.good)[0]
-    values = sequence.values[members].T.copy()
-    values[bad] = 0
-    solved = matrix_product(inverse, values, prime)
-    if len(bad):
-        chosen = slice(support, support + len(bad))
-        matrix = flint.nmod_mat(inverse[chosen][:, bad].tolist(), prime)
-        right = flint.nmod_mat(solved[chosen].tolist(), prime)
-        lost = np.array([[int(x) for x in row] for row in matrix.solve(-right).tolist()], dtype=np.uint64)
-        solved = add(solved, matrix_product(inverse[:, bad], lost, prime), prime)
-    fits = np.logical_not(np.any(solved[support:] != 0, axis=0))
-    return solved[:support].T.copy(), np.atleast_1d(fits)

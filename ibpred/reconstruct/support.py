@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from ibpred.errors import ReconstructionError
 
 LARGEST_SUPPORT = 2_000_000
+_COMPARED = 16  # systems that a support is compared with
 
 
 def monomials_within(degrees: Sequence[int], total: int, lowest: int = 0) -> NDArray[np.int64]:
@@ -84,16 +85,16 @@ def universe(
 
 
 def shared_systems(
-    supports: Sequence[NDArray[np.int64]], size: int, capacity: int
+    supports: Sequence[NDArray[np.int64]], size: int
 ) -> list[tuple[NDArray[np.int64], list[int]]]:
-    """Put rows whose joint support stays within the capacity into one linear system each.
+    """Put rows with similar supports into one linear system each, where that saves work.
 
-    First fit, largest supports first.
+    A system with s monomials for r rows is taken to cost ``(r + 1) s^2``.
 
     Parameters
     ----------
     supports
-        Indices of monomials, each at most `capacity` many.
+        Indices of monomials.
     size
         Number of monomials in all.
 
@@ -103,14 +104,21 @@ def shared_systems(
     """
     distinct: dict[bytes, list[int]] = {}
     for row, support in enumerate(supports):
-        distinct.setdefault(support.tobytes(), []).append(row)
+        distinct.setdefault(np.asarray(support, dtype=np.int64).tobytes(), []).append(row)
     order = sorted(distinct.values(), key=lambda rows: (-len(supports[rows[0]]), rows[0]))
     masks: list[NDArray[np.bool_]] = []
     members: list[list[int]] = []
+
+    def cost(count: int, rows: int) -> int:
+        return (rows + 1) * count * count
+
     for rows in order:
         support = supports[rows[0]]
-        for mask, inside in zip(masks, members, strict=True):
-            if int(mask.sum()) + int((~mask[support]).sum()) <= capacity:
+        alone = cost(len(support), len(rows))
+        for mask, inside in zip(masks[-_COMPARED:], members[-_COMPARED:], strict=True):
+            before = int(mask.sum())
+            joint = before + int((~mask[support]).sum())
+            if cost(joint, len(inside) + len(rows)) <= cost(before, len(inside)) + alone:
                 mask[support] = True
                 inside.extend(rows)
                 break

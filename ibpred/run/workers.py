@@ -42,7 +42,7 @@ class Workers(Protocol):
 class Threads:
     """Threads that share one tape: the replay runs outside the interpreter's lock.
 
-    (Measured against processes: the same speed without copies of the tape.)
+    Processes would do the same work with a copy of the tape and of its results each.
 
     Parameters
     ----------

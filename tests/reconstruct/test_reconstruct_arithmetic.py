@@ -14,6 +14,7 @@ from hypothesis import strategies as st
 
 from ibpred.errors import ReconstructionError
 from ibpred.exact.primes import first_primes
+from ibpred.reconstruct.exponentials import exponential_coefficients
 from ibpred.reconstruct.lift import chinese_remainder, rational_number, rational_vector
 from ibpred.reconstruct.modular import (
     add,
@@ -176,14 +177,51 @@ def test_universe_holds_each_rows_monomials() -> None:
         assert exponents[share].tolist() == monomials_within(row[:-1].tolist(), int(row[-1])).tolist()
 
 
-def test_shared_systems_respect_the_capacity() -> None:
-    random = np.random.default_rng(8)
-    supports = [np.sort(random.choice(30, size=k, replace=False)) for k in random.integers(0, 11, size=40)]
-    systems = shared_systems(supports, 30, 10)
-    assert sorted(r for _, rows in systems for r in rows) == list(range(40))
-    for joint, rows in systems:
-        assert len(joint) <= 10
-        assert all(set(supports[r]) <= set(joint) for r in rows)
+def test_shared_systems_hold_every_support_and_save_work() -> None:
+    random = np.random.default_rng(3)
+    supports = [np.sort(random.choice(30, size, replace=False)) for size in random.integers(0, 10, 40)]
+    supports += [np.arange(20), np.arange(19), np.arange(20)]
+    systems = shared_systems(supports, 30)
+    rows = [row for _, members in systems for row in members]
+    assert sorted(rows) == list(range(len(supports)))
+    for support, members in systems:
+        for row in members:
+            assert set(supports[row]) <= set(support)
+    cost = sum((len(members) + 1) * len(support) ** 2 for support, members in systems)
+    assert cost <= sum(2 * len(support) ** 2 for support in supports)
+    assert any({40, 41, 42} <= set(members) for _, members in systems)
+
+
+@pytest.mark.parametrize("count", [0, 1, 7, 40])
+@pytest.mark.parametrize("rows", [1, 60])
+@pytest.mark.parametrize("gaps", [(), (0,), (3, 5, 41), (42, 43)])
+def test_sums_of_exponentials(count: int, rows: int, gaps: tuple[int, ...]) -> None:
+    """Known coefficients come back, from any good samples; a wrong sample is noticed."""
+    prime = first_primes(1)[0]
+    random = np.random.default_rng(count + rows)
+    nodes = np.unique(random.integers(1, prime, size=count, dtype=np.uint64))
+    length = count + len(gaps) + 2
+    gaps = tuple(gap for gap in gaps if gap < length)
+    good = np.ones(length, dtype=np.bool_)
+    good[list(gaps)] = False
+    wanted = random.integers(0, prime, size=(rows, count), dtype=np.uint64)
+    values = [
+        [
+            sum(int(c) * pow(int(v), j, prime) for c, v in zip(row, nodes, strict=True)) % prime
+            for j in range(length)
+        ]
+        for row in wanted
+    ]
+    sequence = np.array(values, dtype=np.uint64).reshape(rows, length)
+    sequence[:, ~good] = 12345
+    found, fits = exponential_coefficients(sequence, good, nodes, prime)
+    assert np.array_equal(found, wanted)
+    assert fits.all()
+    place = int(np.nonzero(good)[0][-1])
+    sequence[0, place] = (int(sequence[0, place]) + 1) % prime
+    _, fits = exponential_coefficients(sequence, good, nodes, prime)
+    assert not fits[0]
+    assert fits[1:].all()
 
 
 def test_vanishing_polynomial() -> None:
