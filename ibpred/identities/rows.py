@@ -9,15 +9,17 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ibpred.family.definition import FamilyDefinition
+from ibpred.identities.collection import IntegralCollection, Part
 from ibpred.identities.packing import Packing, packings
 from ibpred.identities.pool import CoefficientPool
 from ibpred.identities.quantities import Integral, Quantity
 from ibpred.identities.seeding import Depth, SeedPlan, seeds_of_sector
 from ibpred.identities.symmetry import Entries, symmetry_rows
 from ibpred.identities.templates import Template, ibp_templates
+from ibpred.kernels.gathering import count_entries, scatter_entries, sort_rows
 from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.mapping import SectorMap
-from ibpred.sectors.order import key_columns, order_columns
+from ibpred.sectors.order import order_columns
 
 IntArray = NDArray[np.int64]
 
@@ -126,7 +128,8 @@ def write_rows(
     codes = _packings(members, plans, quantities, preferred)
     family = members[0].family
     pool = CoefficientPool(family.internal_ring.names)
-    parts: list[tuple[int, Entries]] = []
+    integrals = IntegralCollection(codes)
+    parts: list[Part] = []
     for number, (member, plan, code) in enumerate(zip(members, plans, codes, strict=True)):
         analysis, count = member.analysis, len(member.family.lines)
         chosen = {
@@ -137,16 +140,20 @@ def write_rows(
         if chosen:
             stacked = np.vstack(list(chosen.values()))
             for template in member.templates:
-                parts.append((number, _identity_rows(template, stacked, code, pool)))
+                parts.append(integrals.part(_identity_rows(template, stacked, code, pool), number))
         for map_ in analysis.maps:
             if map_.is_symmetry and map_.source in chosen:
                 entries = symmetry_rows(map_, chosen[map_.source], member.family, code, pool)
-                parts.append((number, entries))
-    definitions = _definitions(quantities, codes, pool, len(family.lines))
-    met = [*(part.integral for _, part in parts), definitions.entries.integral]
-    met += [codes[number].code(np.array([powers], dtype=np.int64)) for number, powers in preferred]
-    parts += _mapped_rows(members, met, codes, pool)
-    return _compress(parts, definitions, codes[0], pool, [m.analysis.zero for m in members], preferred)
+                parts.append(integrals.part(entries, number))
+    definitions = _definitions(quantities, integrals, pool)
+    wish = [_number(integrals, integral) for integral in preferred]
+    parts += _mapped_rows(members, integrals, pool)
+    return _compress(parts, definitions, integrals, pool, [m.analysis.zero for m in members], wish)
+
+
+def _number(integrals: IntegralCollection, integral: Integral) -> int:
+    family, powers = integral
+    return int(integrals.numbers(integrals.codes[family].code(np.array([powers], dtype=np.int64)))[0])
 
 
 def _packings(
@@ -186,43 +193,42 @@ class _Definitions:
     `part_row`, `part` and `part_coefficient` are the entries with earlier quantities.
     """
 
-    entries: Entries
+    row: NDArray[np.int32]
+    integral: NDArray[np.int32]
+    coefficient: NDArray[np.int32]
     weights: NDArray[np.int32]
-    part_row: IntArray
-    part: IntArray
+    part_row: NDArray[np.int32]
+    part: NDArray[np.int32]
     part_coefficient: NDArray[np.int32]
 
 
 def _definitions(
-    quantities: Sequence[Quantity], codes: Sequence[Packing], pool: CoefficientPool, lines: int
+    quantities: Sequence[Quantity], integrals: IntegralCollection, pool: CoefficientPool
 ) -> _Definitions:
-    row, integral, ids, weights = [], [], [], []
+    terms: list[tuple[int, int]] = []
+    codes: list[int] = []
+    weights: list[int] = []
     parts: list[tuple[int, int, int]] = []
     for q, quantity in enumerate(quantities):
         weights.append(pool.number({e: -c for e, c in quantity.weight.items()}))
         for (number, powers), (_, polynomial) in zip(quantity.integrals, quantity.terms, strict=True):
-            row.append(q)
-            integral.append(int(codes[number].code(np.array(powers, dtype=np.int64))))
-            ids.append(pool.number(polynomial))
+            codes.append(int(integrals.codes[number].code(np.array(powers, dtype=np.int64))))
+            terms.append((q, pool.number(polynomial)))
         parts += [(q, part, pool.number(polynomial)) for part, polynomial in quantity.parts]
-    entries = Entries(
-        np.array(row, dtype=np.int64),
-        np.array(integral, dtype=np.int64),
-        np.array(ids, dtype=np.int32),
-        np.zeros((len(quantities), lines), dtype=np.int64),
-    )
-    table = np.array(parts, dtype=np.int64).reshape(-1, 3)
+    entries = np.array(terms, dtype=np.int32).reshape(-1, 2)
+    table = np.array(parts, dtype=np.int32).reshape(-1, 3)
     return _Definitions(
-        entries, np.array(weights, dtype=np.int32), table[:, 0], table[:, 1], table[:, 2].astype(np.int32)
+        entries[:, 0].copy(),
+        integrals.numbers(np.array(codes, dtype=np.int64)),
+        entries[:, 1].copy(),
+        np.array(weights, dtype=np.int32),
+        *(table[:, k].copy() for k in range(3)),
     )
 
 
 def _mapped_rows(
-    members: Sequence[FamilyIdentities],
-    met: Sequence[IntArray],
-    codes: Sequence[Packing],
-    pool: CoefficientPool,
-) -> list[tuple[int, Entries]]:
+    members: Sequence[FamilyIdentities], integrals: IntegralCollection, pool: CoefficientPool
+) -> list[Part]:
     """Take every integral of a mapped sector to the sector's representative, top sectors first.
 
     Images lie in the target and its subsectors, which all come before the source in the order, so
@@ -230,19 +236,6 @@ def _mapped_rows(
     """
     number_of = {member.family.name: number for number, member in enumerate(members)}
     maps = [(i, m) for i, member in enumerate(members) for m in member.analysis.maps if not m.is_symmetry]
-    waiting: dict[tuple[int, int], list[IntArray]] = {(i, m.source): [] for i, m in maps}
-
-    def meet(integrals: IntArray) -> None:
-        distinct = np.unique(integrals)
-        owners = distinct // codes[0].total
-        sectors = key_columns(codes[0].vectors(distinct))[1]
-        for place in np.unique(np.column_stack([owners, sectors]), axis=0).tolist():
-            if (place[0], place[1]) in waiting:
-                chosen = (owners == place[0]) & (sectors == place[1])
-                waiting[place[0], place[1]].append(distinct[chosen])
-
-    for integrals in met:
-        meet(integrals)
 
     def place_of(entry: tuple[int, SectorMap]) -> tuple[int, int, int]:
         number, map_ = entry
@@ -250,81 +243,93 @@ def _mapped_rows(
 
     found = []
     for number, map_ in sorted(maps, key=place_of, reverse=True):
-        if waiting[number, map_.source]:
-            vectors = codes[0].vectors(np.unique(np.concatenate(waiting[number, map_.source])))
-            goal = codes[number_of[map_.target_family]]
-            entries = symmetry_rows(map_, vectors, members[number].family, codes[number], pool, goal)
-            meet(entries.integral)
-            found.append((number, entries))
+        vectors = integrals.of_sector(number, map_.source)
+        if len(vectors):
+            source, goal = integrals.codes[number], integrals.codes[number_of[map_.target_family]]
+            entries = symmetry_rows(map_, vectors, members[number].family, source, pool, goal)
+            found.append(integrals.part(entries, number))
     return found
 
 
-def _ranking(vectors: IntArray, owners: IntArray, preferred: Sequence[Integral]) -> IntArray:
-    """The total order, with preferred integrals moved to the start of their sector."""
-    order = order_columns(vectors, owners)
+def _ranking(order: IntArray, places: IntArray, preferred: Sequence[int]) -> IntArray:
+    """Integrals in the total order with the preferred ones moved to the start of their sector."""
     if not preferred:
         return order
-    wish = {(number, *powers): i for i, (number, powers) in enumerate(preferred)}
-    ranked = np.column_stack([owners, vectors])[order]
-    lines, sectors, _, _ = key_columns(ranked[:, 1:])
-    last = len(wish)
-    wished = np.array([wish.get(tuple(row), last) for row in ranked.tolist()], dtype=np.int64)
-    return order[np.lexsort((wished, sectors, ranked[:, 0], lines))]
+    wished = np.full(len(places), len(preferred), dtype=np.int64)
+    wished[preferred] = np.arange(len(preferred))
+    # places come in runs along the order
+    moved = (places[order][1:] != places[order][:-1]).any(axis=1)
+    run = np.concatenate([[0], np.cumsum(moved)])
+    return order[np.lexsort((wished[order], run))]
 
 
 def _compress(
-    parts: Sequence[tuple[int, Entries]],
+    parts: Sequence[Part],
     definitions: _Definitions,
-    code: Packing,
+    integrals: IntegralCollection,
     pool: CoefficientPool,
     zero: Sequence[frozenset[int]],
-    preferred: Sequence[Integral],
+    preferred: Sequence[int],
 ) -> IntegralRows:
-    offsets = np.cumsum([0, *(len(part.owners) for _, part in parts)])
-    seeds, quantities = int(offsets[-1]), len(definitions.weights)
-    last = definitions.entries
-    row = np.concatenate([*(p.row + o for (_, p), o in zip(parts, offsets, strict=False)), last.row + seeds])
-    integral = np.concatenate([*(p.integral for _, p in parts), last.integral])
-    coefficient = np.concatenate([*(p.coefficient for _, p in parts), last.coefficient])
-    # columns: the integrals without zero sectors, ranked, then the quantities
-    codes, place = np.unique(integral, return_inverse=True)
-    vectors, owners = code.vectors(codes), codes // code.total
-    sectors = key_columns(vectors)[1]
-    vanishing = np.zeros(len(codes), dtype=bool)
-    for number, empty in enumerate(zero):
-        vanishing |= (owners == number) & np.isin(sectors, np.array(sorted(empty), dtype=np.int64))
-    alive = np.flatnonzero(~vanishing)
-    order = _ranking(vectors[alive], owners[alive], preferred)
-    column_of = np.full(len(codes), -1, dtype=np.int64)
-    column_of[alive[order]] = np.arange(len(order))
-    column = column_of[place]
-    kept = column >= 0
-    # rows: in the order of their seeds, definitions last
-    rank = np.arange(seeds + quantities)
-    sector_of_row = np.zeros((seeds, 2), dtype=np.int64)
-    if parts:
-        families = np.concatenate([np.full(len(part.owners), number) for number, part in parts])
-        stacked = np.vstack([part.owners for _, part in parts])
-        by_seed = order_columns(stacked, families)
-        rank[by_seed] = np.arange(seeds)
-        sector_of_row = np.column_stack([families, key_columns(stacked)[1]])[by_seed]
+    last, quantities = definitions, len(definitions.weights)
+    vectors, places = integrals.vectors(), integrals.places()
+    order = order_columns(vectors, places[:, 0])
+    # rows: in the order of the integrals they belong to, definitions last
+    position = np.empty(len(order), dtype=np.int64)
+    position[order] = np.arange(len(order))
+    owners = np.concatenate([part.owner for part in parts]) if parts else np.zeros(0, dtype=np.int32)
+    seeds = len(owners)
+    by_owner = np.argsort(position[owners], kind="stable")
+    rank = np.empty(seeds, dtype=np.int64)
+    rank[by_owner] = np.arange(seeds)
+    offsets = np.cumsum([0, *(len(part.owner) for part in parts)])
+    pieces = [
+        (part.row, part.integral, part.coefficient, rank[begin:end])
+        for part, begin, end in zip(parts, offsets[:-1], offsets[1:], strict=True)
+    ]
     own = np.arange(quantities)
-    row = np.concatenate([rank[row[kept]], own + seeds, definitions.part_row + seeds])
-    column = np.concatenate([column[kept], own + len(order), definitions.part + len(order)])
-    coefficient = np.concatenate([coefficient[kept], definitions.weights, definitions.part_coefficient])
-    sorting = np.argsort(row * (len(order) + quantities + 1) - column, kind="stable")
-    row = row[sorting]
-    begins = np.flatnonzero(np.concatenate([[True], row[1:] != row[:-1]])) if len(row) else row
-    written = sector_of_row[row[begins][row[begins] < seeds]]
+    pieces.append((last.row, last.integral, last.coefficient, own + seeds))
+    # columns: the integrals outside zero sectors that occur, ranked, then the quantities
+    alive = np.zeros(len(vectors), dtype=np.int32)
+    for number, empty in enumerate(zero):
+        zeros = np.array(sorted(empty), dtype=np.int64)
+        alive[(places[:, 0] == number) & np.isin(places[:, 1], zeros)] = -1
+    counts = np.zeros(seeds + quantities, dtype=np.int64)
+    occurs = np.zeros(len(vectors), dtype=np.bool_)
+    for row, number_, _, place in pieces:
+        count_entries(row, number_, alive, place, counts, occurs)
+    ranked = _ranking(order, places, preferred)
+    ranked = ranked[occurs[ranked]]
+    column = np.full(len(vectors), -1, dtype=np.int32)
+    column[ranked] = np.arange(len(ranked))
+    # a quantity's own column, and those of its parts
+    counts[seeds:] += 1 + np.bincount(last.part_row, minlength=quantities)
+    start = np.concatenate([[0], np.cumsum(counts)])
+    following = start[:-1].copy()
+    columns = np.empty(start[-1], dtype=np.int32)
+    coefficients = np.empty(start[-1], dtype=np.int32)
+    for row, number_, coefficient, place in pieces:
+        scatter_entries(row, number_, coefficient, column, place, following, columns, coefficients)
+    of_quantities = np.arange(len(ranked), len(ranked) + quantities, dtype=np.int32)
+    for row, number_, coefficient in (
+        (own.astype(np.int32), own.astype(np.int32), last.weights),
+        (last.part_row, last.part, last.part_coefficient),
+    ):
+        scatter_entries(
+            row, number_, coefficient, of_quantities, own + seeds, following, columns, coefficients
+        )
+    sort_rows(start, columns, coefficients)
+    filled = counts > 0
+    written = places[owners[by_owner]][filled[:seeds]]
     ends = np.flatnonzero((written[1:] != written[:-1]).any(axis=1)) + 1
     exponents, values = pool.arrays()
     return IntegralRows(
-        vectors[alive[order]],
-        owners[alive[order]],
+        vectors[ranked],
+        places[ranked, 0],
         quantities,
-        np.append(begins, len(row)).astype(np.int64),
-        column[sorting].astype(np.int32),
-        coefficient[sorting].astype(np.int32),
+        np.concatenate([[0], start[1:][filled]]),
+        columns,
+        coefficients,
         np.append(ends, len(written)).astype(np.int64),
         pool.variables,
         exponents,
