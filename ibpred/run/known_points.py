@@ -12,6 +12,7 @@ from ibpred.digest import digest
 from ibpred.exact.codec import from_data, to_data
 from ibpred.numerics.auxiliary.build import auxiliary_plan
 from ibpred.numerics.auxiliary.laurent import auxiliary_values
+from ibpred.numerics.value import Value
 from ibpred.run.stages import SEED
 
 if TYPE_CHECKING:
@@ -55,8 +56,8 @@ def _key(chain: Chain) -> str:
     return digest([chain.identity, "known points"])
 
 
-def new_point(chain: Chain, point: Mapping[str, Fraction], order: int, digits: int) -> KnownPoint:
-    """Compute the masters at a point by the auxiliary-mass method, and keep them.
+def auxiliary_at(chain: Chain, point: Mapping[str, Fraction], order: int, digits: int) -> tuple[Value, ...]:
+    """The masters at a point by the auxiliary-mass method.
 
     Raises
     ------
@@ -68,7 +69,12 @@ def new_point(chain: Chain, point: Mapping[str, Fraction], order: int, digits: i
     plan = auxiliary_plan(
         chain.definition, point, chain.masters().masters, chain.primes, SEED, chain.deck, chain.progress
     )
-    values = auxiliary_values(plan, order, digits, progress=chain.progress)
+    return auxiliary_values(plan, order, digits, progress=chain.progress)
+
+
+def new_point(chain: Chain, point: Mapping[str, Fraction], order: int, digits: int) -> KnownPoint:
+    """Compute the masters at a point by the auxiliary-mass method, and keep them; see `auxiliary_at`."""
+    values = auxiliary_at(chain, point, order, digits)
     found = KnownPoint(dict(point), order, digits, tuple(value.epsilon for value in values))
     keep_point(chain, found)
     return found
