@@ -18,5 +18,5 @@ def solve(shared: Shared, weight: int | None) -> None:
     with open_chain(shared) as chain:
         highest = 2 * len(chain.definition.loops) if weight is None else weight
         solution = chain.solution(highest)
-        data = solution_data(chain.definition, chain.boundary(highest), solution)
+        data = solution_data(chain.definition, chain.completed_boundary(highest), solution)
     emit(shared, data, lambda: solution_text(data))

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from itertools import product
@@ -24,13 +24,13 @@ from ibpred.epsform.factorise import factorise, root_cover
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
 from ibpred.epsform.matrices import identity, scaled
 from ibpred.epsform.parity import involution, with_parity
-from ibpred.errors import ObstructionError, UnfinishedError
+from ibpred.errors import BoundaryError, ObstructionError, UnfinishedError
 from ibpred.exact.codec import to_data
 from ibpred.exact.rational import Rational, ring
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import euclidean_signs
 from ibpred.identities.rows import family_identities
-from ibpred.iterated.series import Series, eps_valuation
+from ibpred.iterated.series import eps_valuation
 from ibpred.iterated.solution import Solution, constant_solution, solve_orders
 from ibpred.numerics.value import Value
 from ibpred.progress import Progress
@@ -41,6 +41,7 @@ from ibpred.reduction.several import reduce_together
 from ibpred.reduction.table import ReductionTable
 from ibpred.reduction.wanted import check_powers
 from ibpred.report.text import integral_text
+from ibpred.run.fitted_constants import boundary_of_series, completed_by_fits, one_scale_boundary
 from ibpred.run.rows import table_rows
 from ibpred.run.stages import SEED, Stages
 from ibpred.run.store import Store
@@ -307,16 +308,32 @@ class Chain(Stages):
         return found
 
     def boundary(self, weight: int) -> Boundary:
-        """Boundary constants through ``eps^weight`` of the canonical functions."""
+        """Boundary constants through ``eps^weight`` of the canonical functions, all of them derived."""
 
         def compute() -> Boundary:
-            form, signs, masters = self.solved_form(), self.euclidean_signs(), self.masters().masters
+            form = self.solved_form()
             self.progress.stage("boundary constants")
             if form.variables:
                 return fix_constants(self._boundary_problem(form, weight))
-            return _one_scale_boundary(one_scale_values(self.definition, masters, signs, weight))
+            masters, signs = self.masters().masters, self.euclidean_signs()
+            return boundary_of_series(one_scale_values(self.definition, masters, signs, weight))
 
         return self._kept("boundary", Boundary, weight, compute)
+
+    def completed_boundary(self, weight: int) -> Boundary:
+        """As `boundary`; what stays open is recognised from values and marked as fitted."""
+
+        def compute() -> Boundary:
+            form = self.solved_form()
+            if form.variables:
+                return completed_by_fits(self, self._boundary_problem(form, weight), caught)
+            return one_scale_boundary(self, weight)
+
+        try:
+            return self.boundary(weight)
+        except BoundaryError as error:
+            caught = error
+        return self._kept("boundary with fits", Boundary, weight, compute)
 
     def _boundary_problem(self, form: EpsilonForm, weight: int) -> BoundaryProblem:
         self.euclidean_signs()
@@ -332,7 +349,7 @@ class Chain(Stages):
 
     def solution(self, weight: int) -> Solution:
         """The canonical functions in iterated integrals through ``eps^weight``."""
-        form, boundary = self.solved_form(), self.boundary(weight)
+        form, boundary = self.solved_form(), self.completed_boundary(weight)
         self.progress.stage("iterated integrals")
         if form.variables:
             return solve_orders(form, boundary.corner, boundary.constants, weight, boundary.start)
@@ -361,12 +378,6 @@ def _trivial_form(count: int) -> EpsilonForm:
     field = ring(("eps",))
     one = identity(field, count)
     return EpsilonForm((), field, (), (), one, one, ((),) * count)
-
-
-def _one_scale_boundary(values: Sequence[Series]) -> Boundary:
-    start, end = min(series.start for series in values), min(series.end for series in values)
-    constants = tuple(tuple(s.coefficient(order) for s in values) for order in range(start, end + 1))
-    return Boundary(start, constants, (), ())
 
 
 @dataclass(frozen=True)

@@ -90,7 +90,7 @@ def chain_material(chain: Chain, order: int, digits: int) -> Material:
     weight = 2 * len(family.loops)
     try:
         solved = chain.solution(weight)
-        solution = solution_data(family, chain.boundary(weight), solved)
+        solution = solution_data(family, chain.completed_boundary(weight), solved)
     except UnfinishedError as error:
         notes.append(f"no solution in iterated integrals: {error}")
     singular = []

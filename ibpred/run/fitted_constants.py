@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from fractions import Fraction
 from typing import TYPE_CHECKING
 
@@ -17,7 +18,7 @@ from ibpred.boundary.from_values import fitted_constants
 from ibpred.boundary.problem import one_scale_values, without_closed_form
 from ibpred.boundary.recognise import ALTERNATING, SINGLE_SCALE, Fit, recognise_series
 from ibpred.epsform.form import EpsilonForm
-from ibpred.errors import BoundaryError
+from ibpred.errors import BoundaryError, UnfinishedError
 from ibpred.family.definition import Powers
 from ibpred.family.signs import masses
 from ibpred.iterated.series import Series, eps_valuation, laurent
@@ -63,17 +64,31 @@ def one_scale_boundary(chain: Chain, order: int) -> Boundary:
                 series[powers], fits = recognise_series(values, len(family.loops), _generators(chain), _ODDS)
                 fitted += _marked(row, series[powers].start, fits)
     exact = one_scale_values(family, masters, signs, order, series)
+    return replace(boundary_of_series(exact), fitted=tuple(fitted))
+
+
+def boundary_of_series(exact: Sequence[Series]) -> Boundary:
+    """The boundary constants of a family without a ratio: the coefficients of its masters."""
     start, end = min(s.start for s in exact), min(s.end for s in exact)
     constants = tuple(tuple(s.coefficient(k) for s in exact) for k in range(start, end + 1))
-    return Boundary(start, constants, (), (), (), tuple(fitted))
+    return Boundary(start, constants, (), ())
 
 
 def _marked(row: int, start: int, fits: Sequence[Fit]) -> list[Fitted]:
     return [Fitted(row, start + k, fit) for k, fit in enumerate(fits)]
 
 
-def boundary_with_fits(chain: Chain, problem: BoundaryProblem) -> Boundary:
+def completed_by_fits(chain: Chain, problem: BoundaryProblem, complaint: BoundaryError) -> Boundary:
     """Boundary constants of a family with ratios; what the conditions leave open is fitted.
+
+    Parameters
+    ----------
+    chain
+        The family's chain.
+    problem
+        The problem.
+    complaint
+        What `fix_constants` said of it; raised again where it is not about open constants.
 
     Raises
     ------
@@ -81,10 +96,8 @@ def boundary_with_fits(chain: Chain, problem: BoundaryProblem) -> Boundary:
         If open constants have no values, or are not recognised; the message says which and why the
         conditions did not fix them.
     """
-    try:
-        return fix_constants(problem)
-    except OpenConstantsError as error:
-        complaint = error
+    if not isinstance(complaint, OpenConstantsError):
+        raise complaint
     chain.progress.stage("values for the constants that no condition fixes")
     form = problem.form
     ratios = dict(zip(form.variables, _RATIOS, strict=False))
@@ -100,8 +113,8 @@ def boundary_with_fits(chain: Chain, problem: BoundaryProblem) -> Boundary:
         fits = fitted_constants(
             problem, complaint.open, functions, start, ratios, _DIGITS, _generators(chain), _ODDS
         )
-    except BoundaryError as error:
-        raise BoundaryError(f"{complaint}. A fit from values failed: {error}") from None
+    except UnfinishedError as error:
+        raise BoundaryError(f"{complaint}. A fit from values failed: {error}") from error
     return fix_constants(problem, fits)
 
 

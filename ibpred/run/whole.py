@@ -148,10 +148,16 @@ def _solve(chain: Chain, journal: _Journal, checks: list[CheckResult], digits: i
             if isinstance(found, EpsilonForm):
                 checks.append(_substitution(chain, found))
         weight = 2 * len(family.loops)
-        boundary, seconds = journal.timed(lambda: chain.boundary(weight))
+        boundary, seconds = journal.timed(lambda: chain.completed_boundary(weight))
         confirming = sum(item.confirming for item in boundary.evidence)
         used = sum(item.independent for item in boundary.evidence)
         told = f"{used} conditions, {confirming} more confirm them" if used else "Gamma functions"
+        if boundary.fitted:
+            told += f"; {len(boundary.fitted)} constants fitted"
+            worst = max(item.fit.odds for item in boundary.fitted)
+            digits_held = min(item.fit.digits for item in boundary.fitted)
+            supported = f"{digits_held} digits at least, odds of a chance hit at most 1e{worst}"
+            checks.append(CheckResult("fitted constants", True, supported))
         journal.note("boundary constants", told, seconds)
         if confirming:
             checks.append(CheckResult("boundary", True, f"{confirming} redundant conditions hold exactly"))
