@@ -17,7 +17,6 @@ from ibpred.reconstruct.modular import matrix_product, monomials, multiply, resi
 from ibpred.reconstruct.notes import Notes
 from ibpred.reconstruct.numerators import numerators
 from ibpred.reconstruct.sampling import Draws, InconsistentError, UnluckyPrimeError
-from ibpred.reconstruct.support import universe
 
 CONFIRMING_POINTS = 2
 
@@ -35,6 +34,8 @@ def coefficients(
     draws: Draws,
     rows: NDArray[np.int64],
     found: Structure,
+    exponents: NDArray[np.int64],
+    full: list[NDArray[np.int64]],
     first_prime: int,
     others: Sequence[int],
     expected: int,
@@ -49,6 +50,8 @@ def coefficients(
         Entries of the sampler.
     found
         Their factors and bounds.
+    exponents, full
+        The monomials that may occur, and which of them in each row; see `universe`.
     first_prime, others
         Primes in the order in which they are used; the structure was found modulo the first one.
     expected
@@ -72,7 +75,6 @@ def coefficients(
     InconsistentError
         If a row does not fit what is known of it.
     """
-    exponents, full = universe(found.bounds)
     state = [_Open({}, 1, None) for _ in rows]
     confirmed = np.zeros(len(rows), dtype=np.int64)
     pending = np.arange(len(rows))

@@ -46,11 +46,15 @@ class Structure:
     bounds
         (rows, variables + 1): degrees and total degree of the numerator that remains; total -1
         for the zero function.
+    subsets, mixed
+        Sets of variables, and (rows, subsets) the degrees in them together, as far as they are known.
     """
 
     factors: tuple[Factor, ...]
     powers: NDArray[np.int64]
     bounds: NDArray[np.int64]
+    subsets: tuple[tuple[int, ...], ...] = ()
+    mixed: NDArray[np.int64] | None = None
 
 
 @dataclass(frozen=True)

@@ -16,13 +16,14 @@ from ibpred.exact.rational import ring as ring_of
 from ibpred.reconstruct.coefficients import CONFIRMING_POINTS, coefficients
 from ibpred.reconstruct.denominators import Probes, Structure, structure
 from ibpred.reconstruct.factors import factor
+from ibpred.reconstruct.mixed import mixed_bounds
 from ibpred.reconstruct.modular import LARGEST_BITS, SMALLEST_BITS
 from ibpred.reconstruct.notes import FORGETFUL, Notes
 from ibpred.reconstruct.plan import UNWATCHED, Plan, Watch
 from ibpred.reconstruct.probe import Probe, equal_rows, probe
 from ibpred.reconstruct.sampling import Draws, InconsistentError, Sampler, UnluckyPrimeError
 from ibpred.reconstruct.sizes import primes_needed
-from ibpred.reconstruct.support import size_within
+from ibpred.reconstruct.support import universe
 from ibpred.reconstruct.univariate import SURPLUS
 
 _ATTEMPTS = 3
@@ -152,7 +153,7 @@ class Outline:
         The primes of the structure.
     factors
         Terms (exponents, coefficient) of each common factor.
-    powers, bounds
+    powers, bounds, subsets, mixed
         As in a `Structure`.
     primes
         Primes that the coefficients are expected to need.
@@ -167,6 +168,8 @@ class Outline:
     factors: tuple[tuple[tuple[tuple[int, ...], int], ...], ...]
     powers: tuple[tuple[int, ...], ...]
     bounds: tuple[tuple[int, ...], ...]
+    subsets: tuple[tuple[int, ...], ...]
+    mixed: tuple[tuple[int, ...], ...]
     primes: int
     samples: int
 
@@ -176,11 +179,12 @@ class Outline:
             tuple(factor(own.polynomial(dict(terms)), own) for terms in self.factors),
             np.array(self.powers, dtype=np.int64).reshape(len(self.rows), len(self.factors)),
             np.array(self.bounds, dtype=np.int64).reshape(len(self.rows), len(own.names) + 1),
+            self.subsets,
+            np.array(self.mixed, dtype=np.int64).reshape(len(self.rows), len(self.subsets)),
         )
 
-    def plan(self, names: tuple[str, ...]) -> Plan:
-        """What the numerators will take."""
-        terms = max((size_within(bound[:-1], bound[-1]) for bound in self.bounds), default=0)
+    def plan(self, names: tuple[str, ...], terms: int) -> Plan:
+        """What numerators of up to so many terms will take."""
         samples = self.samples + self.primes * (terms + SURPLUS + CONFIRMING_POINTS)
         top = max((above for above, _ in self.degrees), default=0)
         bottom = max((below for _, below in self.degrees), default=0)
@@ -199,13 +203,14 @@ def _attempt(
         f"structure {number}", Outline, partial(_outline, draws, primes, degree_limit, own_ring)
     )
     draws.samples = outline.samples
-    plan = outline.plan(draws.sampler.variables)
+    found, rows = outline.structure(own_ring), np.array(outline.rows, dtype=np.int64)
+    exponents, full = universe(found.bounds, found.subsets, found.mixed)
+    plan = outline.plan(draws.sampler.variables, max(map(len, full), default=0))
     draws.expected = plan.samples
     draws.watch.plan(plan, draws.samples)
-    found, rows = outline.structure(own_ring), np.array(outline.rows, dtype=np.int64)
     others = tuple(prime for prime in primes if prime not in outline.front)
     lifted, data_primes, confirmed = coefficients(
-        draws, rows, found, outline.front[0], others, outline.primes, notes, number
+        draws, rows, found, exponents, full, outline.front[0], others, outline.primes, notes, number
     )
     entries = _assembled(lifted, found, own_ring, ring)
     used_factors = [item for k, item in enumerate(found.factors) if (found.powers[:, k] > 0).any()]
@@ -232,6 +237,9 @@ def _outline(draws: Draws, primes: Sequence[int], degree_limit: int, own_ring: R
     front = (first.line.prime, second.line.prime)
     others = tuple(prime for prime in primes if prime not in front)
     found = structure(draws, Probes(rows, first, second, slices, front + others, own_ring))
+    subsets, mixed = mixed_bounds(
+        draws, front[0], rows, found.factors, found.powers, found.bounds, len(first.line.nodes), degree_limit
+    )
     draws.doing = "sizes"
     needed = primes_needed(draws, rows, found.factors, found.powers, found.bounds, (front[0], *others))
     return Outline(
@@ -242,6 +250,8 @@ def _outline(draws: Draws, primes: Sequence[int], degree_limit: int, own_ring: R
         factors=tuple(tuple(plain_terms(item.polynomial).items()) for item in found.factors),
         powers=tuple(map(tuple, found.powers.tolist())),
         bounds=tuple(map(tuple, found.bounds.tolist())),
+        subsets=subsets,
+        mixed=tuple(map(tuple, mixed.tolist())),
         primes=needed,
         samples=draws.samples,
     )

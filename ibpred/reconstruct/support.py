@@ -11,11 +11,22 @@ from numpy.typing import NDArray
 from ibpred.errors import ReconstructionError
 
 LARGEST_SUPPORT = 2_000_000
+UNBOUNDED = 2**30
+"""A degree that is not known."""
+Mixed = Sequence[tuple[tuple[int, ...], int]]
+"""Sets of variables, and how much their exponents may add up to."""
 _COMPARED = 16  # systems that a support is compared with
 
 
-def monomials_within(degrees: Sequence[int], total: int, lowest: int = 0) -> NDArray[np.int64]:
+def monomials_within(
+    degrees: Sequence[int], total: int, lowest: int = 0, mixed: Mixed = ()
+) -> NDArray[np.int64]:
     """All exponents with e_i <= degrees[i] and lowest <= sum <= total, in lexicographic order.
+
+    Parameters
+    ----------
+    mixed
+        Further bounds: the sum over some variables is at most so much.
 
     Raises
     ------
@@ -24,11 +35,17 @@ def monomials_within(degrees: Sequence[int], total: int, lowest: int = 0) -> NDA
     """
     found = np.zeros((1, 0), dtype=np.int64)
     sums = np.zeros(1, dtype=np.int64)
+    partial = np.zeros((1, len(mixed)), dtype=np.int64)
+    limits = np.array([bound for _, bound in mixed], dtype=np.int64)
     for i, degree in enumerate(degrees):
         rest = int(sum(degrees[i + 1 :]))
         steps = np.arange(degree + 1)
         new_sums = sums[:, None] + steps[None, :]
-        old, step = np.nonzero((new_sums <= total) & (new_sums + rest >= lowest))
+        inside = (new_sums <= total) & (new_sums + rest >= lowest)
+        touched = [k for k, (subset, _) in enumerate(mixed) if i in subset]
+        for k in touched:
+            inside &= partial[:, k, None] + steps[None, :] <= limits[k]
+        old, step = np.nonzero(inside)
         if len(old) > LARGEST_SUPPORT:
             raise ReconstructionError(
                 f"a numerator with degrees {tuple(degrees)} and total degree {total} has more than "
@@ -36,7 +53,9 @@ def monomials_within(degrees: Sequence[int], total: int, lowest: int = 0) -> NDA
             )
         found = np.concatenate([found[old], step[:, None]], axis=1)
         sums = new_sums[old, step]
-    keep = (sums <= total) & (sums >= lowest)
+        partial = partial[old]
+        partial[:, touched] += step[:, None]
+    keep = (sums <= total) & (sums >= lowest) & (partial <= limits).all(axis=1)
     return found[keep]
 
 
@@ -56,6 +75,8 @@ def size_within(degrees: Sequence[int], total: int) -> int:
 
 def universe(
     bounds: NDArray[np.int64],
+    subsets: Sequence[tuple[int, ...]] = (),
+    mixed: NDArray[np.int64] | None = None,
 ) -> tuple[NDArray[np.int64], list[NDArray[np.int64]]]:
     """Union of the monomials within several degree bounds, and each one's share of it.
 
@@ -63,15 +84,22 @@ def universe(
     ----------
     bounds
         (rows, variables + 1): degrees and total degree of each row; a negative total means empty.
+    subsets, mixed
+        Sets of variables and (rows, subsets) the degrees in them together, ``UNBOUNDED`` where unknown.
 
     Returns
     -------
     exponents, members
         (monomials, variables); for each row the sorted indices of its monomials.
     """
-    distinct, inverse = np.unique(bounds, axis=0, return_inverse=True)
-    sets = [monomials_within(tuple(int(x) for x in row[:-1]), int(row[-1])) for row in distinct]
     variables = bounds.shape[1] - 1
+    whole = bounds if mixed is None else np.concatenate([bounds, mixed], axis=1)
+    distinct, inverse = np.unique(whole, axis=0, return_inverse=True)
+    sets = []
+    for row in distinct.tolist():
+        known = zip(subsets, row[variables + 1 :], strict=True)
+        extra = [(subset, bound) for subset, bound in known if bound < UNBOUNDED]
+        sets.append(monomials_within(row[:variables], row[variables], mixed=extra))
     if variables == 0:
         exponents = np.zeros((1, 0), dtype=np.int64)
         shares = [np.arange(len(part)) for part in sets]

@@ -27,7 +27,7 @@ from ibpred.reconstruct.modular import (
     power_table,
     subtract,
 )
-from ibpred.reconstruct.support import monomials_within, shared_systems, universe
+from ibpred.reconstruct.support import UNBOUNDED, monomials_within, shared_systems, size_within, universe
 from ibpred.reconstruct.univariate import polynomial, rational_function, values_of, vanishing_polynomial
 
 PRIMES = [*first_primes(2), *first_primes(1, bits=50), 2**31 - 1, 101]
@@ -167,6 +167,27 @@ def test_monomials_within_bounds_against_enumeration(degrees: list[int], total: 
 def test_too_many_monomials_is_said() -> None:
     with pytest.raises(ReconstructionError, match="monomials"):
         monomials_within([40] * 6, 240)
+
+
+@given(
+    st.lists(st.integers(0, 4), min_size=3, max_size=3),
+    st.integers(0, 10),
+    st.lists(st.integers(0, 6), min_size=2, max_size=2),
+)
+def test_mixed_bounds_against_enumeration(degrees: list[int], total: int, mixed: list[int]) -> None:
+    subsets = ((0, 2), (1, 2))
+    expected = [
+        list(e)
+        for e in product(*(range(d + 1) for d in degrees))
+        if sum(e) <= total and all(e[i] + e[j] <= m for (i, j), m in zip(subsets, mixed, strict=True))
+    ]
+    bounds = list(zip(subsets, mixed, strict=True))
+    assert monomials_within(degrees, total, mixed=bounds).tolist() == expected
+    exponents, (share, whole) = universe(
+        np.array([[*degrees, total]] * 2), subsets, np.array([mixed, [UNBOUNDED, UNBOUNDED]])
+    )
+    assert exponents[share].tolist() == expected
+    assert len(whole) == size_within(degrees, total)
 
 
 def test_universe_holds_each_rows_monomials() -> None:

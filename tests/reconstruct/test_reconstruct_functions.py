@@ -18,6 +18,7 @@ from ibpred.exact.primes import first_primes
 from ibpred.exact.rational import Rational, Ring, ring
 from ibpred.reconstruct import Plan, reconstruct
 from ibpred.reconstruct.sampling import UnluckyPrimeError
+from ibpred.reconstruct.support import size_within
 
 Residues = NDArray[np.uint64]
 
@@ -298,6 +299,18 @@ def test_the_plan_is_told_and_kept_true() -> None:
     assert {"degrees", "denominators", "sizes", "numerators", "confirmation"} == {t[0] for t in listener.told}
     for _, done, expected in listener.told:
         assert expected is None or done <= expected <= plan.samples
+
+
+def test_mixed_degrees_save_samples() -> None:
+    """A product of functions of different variables does not fill its box of exponents."""
+    names = ("x", "y", "z", "w")
+    listener = Listener()
+    functions = read(["(x-y+1)^6*(z+3*w-2)^6", "1/(x*y-z)"], names)
+    found = reconstruct(Known(functions, names), first_primes(8), 3, ring(names), watch=listener)
+    assert list(found.entries) == functions
+    assert "mixed degrees" in {step for step, _, _ in listener.told}
+    (plan,) = listener.plans
+    assert plan.terms == 28 * 28 < size_within([6, 6, 6, 6], 12) / 1.5
 
 
 def test_primes_of_large_coefficients_are_foreseen() -> None:
