@@ -11,17 +11,15 @@ import random
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
-from ibpred.elimination.discovery import discover, reduced
 from ibpred.errors import UnfinishedError
 from ibpred.family.members import integral_text
 from ibpred.family.units import set_unit
 from ibpred.identities.quantities import Integral
-from ibpred.identities.rows import FamilyIdentities, write_rows
+from ibpred.identities.rows import FamilyIdentities
 from ibpred.progress import SILENT, Progress
+from ibpred.reduction.deepening import deepen
 from ibpred.reduction.masters import random_point
-from ibpred.reduction.seeds import GROWTH, plans_for
 from ibpred.reduction.several import quantity_of
-from ibpred.reduction.system import sparse_system
 from ibpred.reduction.wanted import Combination
 from ibpred.sectors.order import sector_of
 
@@ -81,7 +79,6 @@ def check_table(
         If a row is wrong (it is named), or identities do not reach the integrals.
     """
     source = random.Random(seed)
-    family = members[0].family
     chosen = sorted(source.sample(list(wanted), min(count, len(wanted))))
     alive = [(n, p) for n, p in chosen if sector_of(p) not in members[n].analysis.zero]
     progress.stage("check of the table")
@@ -91,24 +88,13 @@ def check_table(
     point, expected = _values(members, alive, row, prime, seed)
     quantities = [quantity_of(members, integral) for integral in alive]
     known = {integral: i for i, integral in enumerate(masters)}
-    for step, growth in enumerate(GROWTH):
-        rows = write_rows(members, plans_for(members, alive, growth), quantities, masters)
-        progress.advance(step + 1, len(GROWTH))
-        places = range(rows.columns - rows.quantities, rows.columns)
-        found = reduced(discover(sparse_system(rows), point, prime), places)
-        names = [rows.integral(column) for column in found.masters]
-        foreign = [i for i, name in enumerate(names) if name not in known]
-        if found.values[:, foreign].any():
-            continue
-        for integral, values, table in zip(alive, found.values.tolist(), expected, strict=True):
-            fresh = {known[name]: v for name, v in zip(names, values, strict=True) if v}
-            if fresh != {index: v for index, v in table.items() if v}:
-                raise _wrong(members, integral, f"a fresh elimination modulo {prime} gives something else")
-        return TableCheck(tuple(chosen), len(rows.start) - 1, prime, point)
-    raise UnfinishedError(
-        f"{family.name}: the identities tried do not reduce all of the {len(alive)} integrals to be checked; "
-        "nothing was found wrong"
-    )
+    found = deepen(members, quantities, range(len(quantities)), masters, point, prime, progress)
+    names = [found.rows.integral(column) for column in found.found.masters]
+    for integral, values, table in zip(alive, found.found.values.tolist(), expected, strict=True):
+        fresh = {known[name]: v for name, v in zip(names, values, strict=True) if v}
+        if fresh != {index: v for index, v in table.items() if v}:
+            raise _wrong(members, integral, f"a fresh elimination modulo {prime} gives something else")
+    return TableCheck(tuple(chosen), found.system.rows, prime, point)
 
 
 def _wrong(members: Sequence[FamilyIdentities], integral: Integral, why: str) -> UnfinishedError:

@@ -11,18 +11,18 @@ import numpy as np
 from ibpred.elimination.discovery import discover, reduced
 from ibpred.errors import InputError, UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
+from ibpred.family.members import integral_text
 from ibpred.identities.quantities import Integral
 from ibpred.identities.rows import FamilyIdentities, IntegralRows, family_identities, write_rows
 from ibpred.identities.seeding import Depth
 from ibpred.progress import SILENT, Progress
-from ibpred.reduction.seeds import full_plans
+from ibpred.reduction.seeds import LARGEST_SYSTEM, depths, expected_entries, full_plans
 from ibpred.reduction.system import sparse_system
 from ibpred.reduction.wanted import check_powers
 from ibpred.sectors.analysis import SectorAnalysis
 from ibpred.sectors.order import key_columns, sector_of
 
-DEPTHS = (Depth(1, 2), Depth(1, 3), Depth(2, 3), Depth(2, 4), Depth(3, 4), Depth(3, 5))
-"""Seeds tried, until two in a row leave the same masters, all well inside the seeds."""
+_NAMED = 5  # how many integrals an error message lists
 
 
 @dataclass(frozen=True)
@@ -163,7 +163,7 @@ def find_common_masters(
     InputError
         If all integrals vanish; if a preferred integral vanishes or reduces to other masters.
     UnfinishedError
-        If the masters keep changing with the seeds.
+        If the masters keep changing with the seeds until these are more than `LARGEST_SYSTEM`.
     """
     names = ", ".join(members[number].family.name for number in roots)
     if not any(members[number].analysis.nonzero for number in roots):
@@ -175,21 +175,28 @@ def find_common_masters(
             raise InputError(f"{member.family.name}: the preferred master {powers} is scaleless and vanishes")
     point = random_point(members[0].family, prime, seed)
     trials: list[MastersTrial] = []
+    before: tuple[Integral, ...] | None = None
     last: tuple[Integral, ...] | None = None
-    for depth in DEPTHS:
+    for depth in depths():
+        plans = full_plans(members, roots, depth)
+        if trials and expected_entries(members, plans) > LARGEST_SYSTEM:
+            break
         progress.stage(f"masters: sectors, seeds with {depth.dots} dots and rank {depth.rank}")
-        rows = write_rows(members, full_plans(members, roots, depth), preferred=preferred)
+        rows = write_rows(members, plans, preferred=preferred)
         found, settled = _irreducible(rows, depth, point, prime, progress)
         trials.append(MastersTrial(depth.dots, depth.rank, len(rows.start) - 1, len(found)))
         if found == last and settled:
             _check_preferred(members, preferred, found)
             families = tuple(member.family.name for member in members)
             return CommonMasters(families, found, prime, point, tuple(trials))
-        last = found
+        before, last = last, found
     counts = ", ".join(str(trial.count) for trial in trials)
+    changed = sorted(set(before or ()) ^ set(last or ()))
+    listed = ", ".join(integral_text(members[n].family.name, powers) for n, powers in changed[:_NAMED])
     raise UnfinishedError(
-        f"{names}: the set of masters did not settle as identities were added (counts {counts}); "
-        "the family may need a missing symmetry or cannot be reduced by identities of this depth"
+        f"{names}: the set of masters did not settle as identities were added (counts {counts}; among the "
+        f"last to change: {listed or 'none, but some lie at the edge of the seeds'}); deeper identities "
+        f"would have more than {LARGEST_SYSTEM} entries"
     )
 
 

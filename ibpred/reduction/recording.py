@@ -5,10 +5,8 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
-import numpy as np
-
 from ibpred.digest import digest
-from ibpred.elimination.discovery import Reduced, discover, reduced
+from ibpred.elimination.discovery import discover
 from ibpred.elimination.pruning import prune
 from ibpred.elimination.recording import record_pruned
 from ibpred.elimination.replaying import check_tape
@@ -19,17 +17,15 @@ from ibpred.exact.codec import to_data
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.identities.quantities import Integral, Quantity, fingerprint
-from ibpred.identities.rows import FamilyIdentities, IntegralRows, family_identities, write_rows
+from ibpred.identities.rows import FamilyIdentities, IntegralRows, family_identities
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import Evidence, reconstruct
 from ibpred.reconstruct.plan import Plan
 from ibpred.reduction.deck import PLAIN_DECK, Deck, Recorded
+from ibpred.reduction.deepening import Deepened, deepen
 from ibpred.reduction.masters import random_point
-from ibpred.reduction.seeds import GROWTH, plans_for
-from ibpred.reduction.system import sparse_system
 from ibpred.sectors.analysis import SectorAnalysis
 
-_NAMED = 5  # how many quantities an error message lists
 _ATTEMPTS = 3  # random points at which recording is tried
 
 
@@ -139,36 +135,12 @@ def _recorded(
     progress: Progress,
 ) -> Recorded:
     family = members[0].family
-    names = ", ".join(member.family.name for member in members)
-    point = random_point(family, primes[0], seed)
-    wanted = [integral for quantity in quantities for integral in quantity.integrals]
-    known, asked = set(masters), _asked(quantities)
     progress.stage("identities")
-    tried: set[tuple[tuple[int, int, int, int], ...]] = set()
-    left: tuple[str, ...] = ()
-    for step, growth in enumerate(GROWTH):
-        plans = plans_for(members, wanted, growth)
-        signature = tuple(
-            (number, sector, d.dots, d.rank)
-            for number, plan in enumerate(plans)
-            for sector, d in sorted(plan.items())
-        )
-        if signature in tried:
-            continue
-        tried.add(signature)
-        rows = write_rows(members, plans, quantities, masters)
-        system = sparse_system(rows)
-        found = reduced(discover(system, point, primes[0]), _columns(rows, asked))
-        left = _left_over(rows, found, [quantities[q].name for q in asked], known)
-        progress.advance(step + 1, len(GROWTH))
-        if not left:
-            tape = _record(family, system, _columns(rows, asked), primes, seed)
-            return _labelled(rows, system, tape, masters, quantities)
-    more = f" and {len(left) - _NAMED} more" if len(left) > _NAMED else ""
-    raise UnfinishedError(
-        f"{names}: {', '.join(left[:_NAMED])}{more} did not reduce to the {len(known)} masters "
-        "with the deepest identities tried; check the list of masters"
-    )
+    point = random_point(family, primes[0], seed)
+    asked = _asked(quantities)
+    deep = deepen(members, quantities, asked, masters, point, primes[0], progress)
+    tape = _record(family, deep, primes, seed)
+    return _labelled(deep.rows, deep.system, tape, masters, quantities)
 
 
 def _asked(quantities: Sequence[Quantity]) -> list[int]:
@@ -177,31 +149,16 @@ def _asked(quantities: Sequence[Quantity]) -> list[int]:
     return [q for q in range(len(quantities)) if q not in parts]
 
 
-def _columns(rows: IntegralRows, numbers: Sequence[int]) -> list[int]:
-    """Columns of quantities."""
-    first = rows.columns - rows.quantities
-    return [first + q for q in numbers]
-
-
-def _left_over(
-    rows: IntegralRows, found: Reduced, names: Sequence[str], known: set[Integral]
-) -> tuple[str, ...]:
-    """Names of the quantities whose reduction contains more than masters."""
-    foreign = [i for i, column in enumerate(found.masters) if rows.integral(column) not in known]
-    bad = np.flatnonzero(found.values[:, foreign].any(axis=1))
-    return tuple(names[int(i)] for i in bad)
-
-
-def _record(
-    family: FamilyDefinition, system: SparseSystem, columns: Sequence[int], primes: Sequence[int], seed: int
-) -> Tape:
+def _record(family: FamilyDefinition, deep: Deepened, primes: Sequence[int], seed: int) -> Tape:
     """Record at a random point, validate against the whole system at another point and prime."""
+    discovery = deep.discovery
     for attempt in range(_ATTEMPTS):
-        point = random_point(family, primes[0], seed + 2 * attempt)
         elsewhere = random_point(family, primes[1], seed + 2 * attempt + 1)
-        tape = record_pruned(prune(system, discover(system, point, primes[0]), columns), point, primes[0])
-        if check_tape(system, tape, elsewhere, primes[1]):
+        pruned = prune(deep.system, discovery, deep.columns)
+        tape = record_pruned(pruned, discovery.point, discovery.prime)
+        if check_tape(deep.system, tape, elsewhere, primes[1]):
             return tape
+        discovery = discover(deep.system, random_point(family, primes[0], seed + 2 * attempt + 2), primes[0])
     raise UnfinishedError(
         f"{family.name}: recorded at {_ATTEMPTS} random points, the elimination never agreed with a fresh "
         f"one modulo {primes[1]}; try another seed"

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
+from itertools import count
+from math import comb
 
 from ibpred.identities.quantities import Integral
 from ibpred.identities.rows import FamilyIdentities
@@ -28,16 +30,41 @@ class Growth:
     rank_below: int
 
 
-GROWTH = (
-    Growth(0, 0, -1),
-    Growth(0, 0, 0),
-    Growth(0, 1, 0),
-    Growth(0, 1, 1),
-    Growth(1, 1, 1),
-    Growth(1, 2, 2),
-    Growth(2, 2, 2),
-)
-"""Tried in this order until all that is wanted reduces to the masters."""
+LARGEST_SYSTEM = 60_000_000
+"""Bound on the entries of a system, estimated as the seeds times the terms of all identities. An entry
+takes about fifty bytes while the system is written and eliminated: three gigabytes in all."""
+
+
+def growths() -> Iterator[Growth]:
+    """Steps of deepening, to be tried in this order; there is always another one."""
+    yield from (Growth(0, 0, -1), Growth(0, 0, 0), Growth(0, 1, 0))
+    for more in count():
+        yield Growth(more, more + 1, more + 1)
+        yield Growth(more + 1, more + 1, more + 1)
+
+
+def depths() -> Iterator[Depth]:
+    """Depths of seeds in all sectors, to be tried in this order for the masters."""
+    for more in count(1):
+        yield Depth(more, more + 1)
+        yield Depth(more, more + 2)
+
+
+def expected_entries(members: Sequence[FamilyIdentities], plans: Sequence[SeedPlan]) -> int:
+    """Seeds of the plans times the terms of the identities: about the size of the system.
+
+    Many coefficients vanish; the relations from symmetries come on top.
+    """
+    total = 0
+    for member, plan in zip(members, plans, strict=True):
+        terms = sum(template.terms for template in member.templates)
+        lines = len(member.family.lines)
+        for sector, depth in plan.items():
+            inside = sector.bit_count()
+            seeds = comb(inside + depth.dots, inside) * comb(lines - inside + depth.rank, depth.rank)
+            total += seeds * terms
+    return total
+
 
 _LEAST = Depth(1, 1)  # without dots the identities leave masters that are none
 
