@@ -1,0 +1,48 @@
+from __future__ import annotations
+
+from fractions import Fraction
+from pathlib import Path
+
+import flint
+import pytest
+from canonical_forms import family
+
+from ibpred.iterated.solution_values import solution_values
+from ibpred.progress import Silent
+from ibpred.run.chain import Chain
+from ibpred.run.store import Store
+
+
+def chain_of(name: str, store: Store) -> Chain:
+    return Chain(family(name), store, Silent(), 1)
+
+
+@pytest.mark.slow
+def test_the_planar_double_box_with_one_leg(tmp_path: Path) -> None:
+    """Eighteen masters of three scales: all constants derived, real on both sides of every wall."""
+    with Store(tmp_path) as store:
+        chain = chain_of("planar-double-box-one-leg", store)
+        boundary, solution = chain.boundary(4), chain.solution(4)
+    assert not boundary.fitted
+    assert sum(item.confirming for item in boundary.evidence) > 1000
+    values = []
+    for x, y in (("1/3", "1/5"), ("1/3", "1/2"), ("2", "7/2")):
+        values.append(solution_values(solution, {"x": Fraction(x), "y": Fraction(y)}, 12))
+        for row in values[-1]:
+            for value in row:
+                assert value.imag.contains(0)
+                assert value.imag.abs_upper() < flint.arb(10) ** -10
+    assert all(any(not value.contains(0) for row in table for value in row) for table in values)
+
+
+@pytest.mark.slow
+def test_the_crossed_vertex_is_fitted(tmp_path: Path) -> None:
+    """Gonsalves, Phys. Rev. D 28 (1983) 1542: 1, 0, -pi^2, -83 zeta3/3, -59 pi^4/120 (from memory)."""
+    with Store(tmp_path) as store:
+        boundary = chain_of("crossed-vertex", store).completed_boundary(0)
+    row = len(boundary.constants[0]) - 1
+    shown = [str(vector[row]) for vector in boundary.constants]
+    assert boundary.start == -4
+    assert shown == ["1", "0", "-pi^2", "-83*zeta3/3", "-59*pi^4/120"]
+    assert {item.row for item in boundary.fitted} == {row}
+    assert all(item.fit.odds < -20 for item in boundary.fitted)
