@@ -14,17 +14,23 @@ _SECONDS_BETWEEN_DRAWS = 0.1
 
 
 class _Pace:
-    """How fast the samples of one task come."""
+    """How fast the units of one planned task come."""
 
     def __init__(self) -> None:
         self._task = ""
         self._began = 0.0
+        self.planned = False
 
     def stage(self, name: str) -> None:
         """Parts of one task, ``task: part``, share one clock."""
         task = name.partition(":")[0]
         if task != self._task:
-            self._task, self._began = task, time.monotonic()
+            self._task, self._began, self.planned = task, time.monotonic(), False
+
+    def plan(self, done: int, total: int) -> float:
+        """Seconds that the rest is going to take, as known when the plan is."""
+        self.planned = True
+        return self.left(done, total)
 
     def left(self, done: int, total: int) -> float:
         """Seconds that the rest will take at the pace so far."""
@@ -58,7 +64,7 @@ class _Lines:
         print(f"ibpred: {name}", file=sys.stderr, flush=True)
 
     def plan(self, text: str, done: int, total: int) -> None:
-        print(_plan_line(text, self._pace.left(done, total)), file=sys.stderr, flush=True)
+        print(_plan_line(text, self._pace.plan(done, total)), file=sys.stderr, flush=True)
 
     def advance(self, done: int, total: int | None) -> None:
         now = time.monotonic()
@@ -66,7 +72,7 @@ class _Lines:
             return
         self._said = now
         of = f" of {total}" if total is not None else ""
-        if total is not None and done < total:
+        if self._pace.planned and total is not None and done < total:
             of += f", about {duration(self._pace.left(done, total))} left"
         print(f"ibpred: {self._name}: {done}{of}", file=sys.stderr, flush=True)
 
@@ -80,7 +86,6 @@ def _bar() -> Iterator[Progress]:
         SpinnerColumn,
         TextColumn,
         TimeElapsedColumn,
-        TimeRemainingColumn,
     )
     from rich.progress import Progress as Bars
 
@@ -90,7 +95,6 @@ def _bar() -> Iterator[Progress]:
         BarColumn(),
         MofNCompleteColumn(),
         TimeElapsedColumn(),
-        TimeRemainingColumn(),
     )
     with Bars(*columns, console=Console(stderr=True), transient=True) as bars:
         task = bars.add_task("starting", total=None)
@@ -99,19 +103,25 @@ def _bar() -> Iterator[Progress]:
             def __init__(self) -> None:
                 self._drawn = 0.0
                 self._pace = _Pace()
+                self._name = ""
 
             def plan(self, text: str, done: int, total: int) -> None:
-                bars.console.print(_plan_line(text, self._pace.left(done, total)), highlight=False)
+                line = _plan_line(text, self._pace.plan(done, total))
+                bars.console.print(line, highlight=False, markup=False)
 
             def stage(self, name: str) -> None:
                 self._pace.stage(name)
+                self._name = name
                 bars.reset(task, description=name, total=None, completed=0)
 
             def advance(self, done: int, total: int | None) -> None:
                 now = time.monotonic()
                 if now - self._drawn >= _SECONDS_BETWEEN_DRAWS or done == total:
                     self._drawn = now
-                    bars.update(task, completed=done, total=total)
+                    name = self._name
+                    if self._pace.planned and total is not None and done < total:
+                        name += f", about {duration(self._pace.left(done, total))} left"
+                    bars.update(task, description=name, completed=done, total=total)
 
         yield Bar()
 
