@@ -14,13 +14,15 @@ from itertools import combinations_with_replacement
 import flint
 import numpy as np
 
-from ibpred.balls.context import complex_ball, precision
+from ibpred.balls.context import RealBall, complex_ball, precision
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.numerics.auxiliary.infinity import flow_system
 from ibpred.numerics.auxiliary.plan import Flow
 from ibpred.numerics.auxiliary.solve import lower_path
-from ibpred.numerics.frobenius.majorant import majorant
-from ibpred.numerics.frobenius.poles import partial_fractions
+from ibpred.numerics.frobenius.formal import singular_point
+from ibpred.numerics.frobenius.majorant import majorant, operator_norm
+from ibpred.numerics.frobenius.poles import PartialFractions, partial_fractions
+from ibpred.numerics.frobenius.system import RationalSystem, inverted
 from ibpred.numerics.frobenius.tracks import all_positions, tracks_around
 from ibpred.progress import SILENT, Progress
 from ibpred.reduction.deck import TapeSampler
@@ -109,18 +111,43 @@ def dotted_masters(
 
 
 def roughness(flow: Flow, eps: Fraction) -> float:
-    """The largest norm of the differential equations along the path, relative to its distance from poles."""
-    fractions = partial_fractions(flow_system(flow, eps))
+    """The largest norm of the differential equations along the path, and of its residues at the ends.
+
+    Raises
+    ------
+    UnfinishedError
+        If an end is no regular singular point.
+    """
+    system = flow_system(flow, eps)
+    fractions = partial_fractions(system)
     positions = all_positions(fractions, _BITS)
     worst = 0.0
     for point in lower_path(fractions):
         centre = complex_ball(*point, _BITS)
         with precision(_BITS):
-            scale = flint.arb(1)
-            if positions:
-                scale = flint.arb((positions[0] - centre).abs_lower())
-                for position in positions[1:]:
-                    scale = scale.min(flint.arb((position - centre).abs_lower()))
-            tracks = tracks_around(fractions, centre, scale, _BITS)
+            distances = [flint.arb((position - centre).abs_lower()) for position in positions]
+            tracks = tracks_around(fractions, centre, _least(distances), _BITS)
         worst = max(worst, majorant(tracks, _TERMS).size)
-    return worst
+    return max(
+        worst,
+        *(_end_norm(end, name, flow) for end, name in ((system, "zero"), (inverted(system), "infinite"))),
+    )
+
+
+def _least(distances: Sequence[RealBall]) -> RealBall:
+    least = flint.arb(1)
+    for i, distance in enumerate(distances):
+        least = distance if i == 0 else least.min(distance)
+    return least
+
+
+def _end_norm(system: RationalSystem, name: str, flow: Flow) -> float:
+    point = singular_point(system, f"{name} auxiliary mass of {flow.family}")
+    others = [pole for pole in point.fractions.poles if pole.position() != 0]
+    with precision(_BITS):
+        positions = all_positions(PartialFractions(point.size, tuple(others), ()), _BITS)
+        scale = _least([flint.arb(position.abs_lower()) for position in positions])
+        tracks = tracks_around(point.fractions, flint.acb(0), scale, _BITS)
+        residue = flint.acb_mat(point.residue)
+    bounds = majorant(tracks, _TERMS, residue)
+    return max(bounds.size, operator_norm(residue, bounds))

@@ -243,8 +243,10 @@ def undetermined(place: AtInfinity) -> int:
     return sum(part.formal.solutions - len(part.pivots) for part in place.classes)
 
 
-def constants(flow: Flow, part: ClassAtInfinity, leading: Sequence[Ball], bits: int) -> BallMatrix:
-    """The coefficients of the solutions of a class.
+def solution(
+    flow: Flow, part: ClassAtInfinity, leading: Sequence[Ball], bits: int
+) -> tuple[FormalClass, BallMatrix]:
+    """The solution of a class as a combination of formal solutions.
 
     Parameters
     ----------
@@ -257,7 +259,8 @@ def constants(flow: Flow, part: ClassAtInfinity, leading: Sequence[Ball], bits: 
 
     Returns
     -------
-    A column.
+    Formal solutions, and a column of coefficients. Each solution belongs to one independent equation, so the
+    coefficients are leading coefficients of regions.
 
     Raises
     ------
@@ -270,18 +273,22 @@ def constants(flow: Flow, part: ClassAtInfinity, leading: Sequence[Ball], bits: 
             f"{flow.family}: {width - len(part.pivots)} constants at infinite auxiliary mass on the line "
             f"{flow.line} stay open"
         )
+    square: ExactMatrix = flint.fmpq_mat([list(part.equations[i].coefficients) for i in part.pivots])
+    inverse = square.inv()
+    every = flint.fmpq_mat([list(e.coefficients) for e in part.equations]) * inverse
     with precision(bits):
         zero = flint.acb(0)
         right = [zero if e.condition is None else leading[e.condition] for e in part.equations]
-        square: ExactMatrix = flint.fmpq_mat([list(part.equations[i].coefficients) for i in part.pivots])
-        column = flint.acb_mat(square.inv()) * flint.acb_mat([[right[i]] for i in part.pivots])
-        everything = flint.acb_mat(flint.fmpq_mat([list(e.coefficients) for e in part.equations])) * column
+        column = flint.acb_mat([[right[i]] for i in part.pivots])
+        predicted = flint.acb_mat(every) * column
         for i, value in enumerate(right):
-            if not (everything[i, 0] - value).contains(0):
+            if not (predicted[i, 0] - value).contains(0):
                 at = part.equations[i].condition
                 name = "an integral that should vanish" if at is None else str(flow.conditions[at].powers)
                 raise BoundaryError(
                     f"{flow.family}: the regions at infinite auxiliary mass on {flow.line} contradict"
                     f" the differential equation at {name} ({part.loops} hard loops)"
                 )
-        return column
+    excited = [i for i in range(width) if not column[i, 0].is_zero()]
+    choice = flint.fmpq_mat([[inverse[i, j] for j in excited] for i in range(width)])
+    return part.formal.combined(choice), flint.acb_mat([[column[i, 0]] for i in excited])

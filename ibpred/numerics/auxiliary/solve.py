@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
 
@@ -16,12 +17,12 @@ from ibpred.numerics.auxiliary.infinity import (
     AtInfinity,
     SeriesRow,
     at_infinity,
-    constants,
     expanded,
     flow_system,
     leading_power,
     lowest_order,
     series_row,
+    solution,
 )
 from ibpred.numerics.auxiliary.plan import AuxiliaryPlan, Combination, Flow
 from ibpred.numerics.frobenius.continuation import carried
@@ -161,10 +162,10 @@ def _from_infinity(
         leading = [
             _leading(flow, index, part.loops, values, eps, bits) for index in range(len(flow.conditions))
         ]
-        column = constants(flow, part, leading, bits)
-        if all(value.is_zero() for value in column.entries()):
+        formal, column = solution(flow, part, leading, bits)
+        if not column.nrows():
             continue
-        contribution = frobenius_values(Local(place.point, part.formal), z, log, column, bits)
+        contribution = frobenius_values(Local(place.point, formal), z, log, column, bits)
         with precision(bits):
             total = total + contribution
     return total
@@ -217,12 +218,31 @@ def _at_zero(
     solutions = formal_class(direct, Fraction(0), max(1, order - least + 1))
     duals = formal_class(dual, Fraction(0), max(1, -least - least_dual + 1))
     pairing = _pairing(direct, solutions, dual, duals)
+    readings = [_readings(direct, solutions, row) for row in rows]
+    lines = [line for reading in readings for line in reading]
+    if not lines:
+        return (flint.acb(0),) * len(rows)
+    # exact combinations of the dual solutions that give each coefficient wanted
+    combination = (flint.fmpq_mat([line.values for line in lines]) * pairing.inv()).transpose()
     with precision(bits):
         log = eta.log()
-    sums = frobenius_values(Local(dual, duals), eta, log, None, bits)
+    sums = frobenius_values(Local(dual, duals.combined(combination)), eta, log, None, bits)
     with precision(bits):
-        column = flint.acb_mat(pairing.inv()) * (sums.transpose() * vector)
-    return tuple(_limit(flow, direct, solutions, row, column, bits) for row in rows)
+        products = list((sums.transpose() * vector).entries())
+    found = []
+    for reading in readings:
+        own, products = products[: len(reading)], products[len(reading) :]
+        found.append(_limit(flow, reading, own))
+    return tuple(found)
+
+
+@dataclass(frozen=True)
+class _Reading:
+    """The coefficient of ``x^power log(x)^logs`` of a target, for each integer-exponent solution."""
+
+    power: int
+    logs: int
+    values: list[Any]
 
 
 def _pairing(left: SingularPoint, solutions: FormalClass, right: SingularPoint, duals: FormalClass) -> Any:
@@ -246,22 +266,27 @@ def _component(point: SingularPoint, formal: FormalClass, component: int) -> dic
     return {base + s: values for (s, k), values in expanded(point, formal, row, order).items() if k == 0}
 
 
-def _limit(
-    flow: Flow, point: SingularPoint, formal: FormalClass, row: SeriesRow, column: BallMatrix, bits: int
-) -> Ball:
-    """The coefficient of x^0; lower powers and logarithms must drop out."""
+def _readings(point: SingularPoint, formal: FormalClass, row: SeriesRow) -> list[_Reading]:
+    """The coefficients of a target that matter: that of x^0, and those that must vanish."""
     if not row.start:
-        return flint.acb(0)
+        return []
     order = -int(formal.exponent)
+    return [
+        _Reading(s - order, k, values)
+        for (s, k), values in sorted(expanded(point, formal, row, order).items())
+        if any(values)
+    ]
+
+
+def _limit(flow: Flow, readings: Sequence[_Reading], products: Sequence[Ball]) -> Ball:
+    """The coefficient of x^0; lower powers and logarithms must drop out."""
     value = flint.acb(0)
-    with precision(bits):
-        for (s, k), values in sorted(expanded(point, formal, row, order).items()):
-            product = (flint.acb_mat(flint.fmpq_mat([values])) * column)[0, 0]
-            if s == order and k == 0:
-                value = product
-            elif not product.contains(0):
-                raise BoundaryError(
-                    f"{flow.family}: with the mass on the line {flow.line} the integer powers at zero mass "
-                    f"contain eta^{s - order} log(eta)^{k}; put it on another line"
-                )
+    for reading, product in zip(readings, products, strict=True):
+        if reading.power == 0 and reading.logs == 0:
+            value = product
+        elif not product.contains(0):
+            raise BoundaryError(
+                f"{flow.family}: with the mass on the line {flow.line} the integer powers at zero mass "
+                f"contain eta^{reading.power} log(eta)^{reading.logs}; put it on another line"
+            )
     return value

@@ -66,6 +66,15 @@ class FormalClass:
     def solutions(self) -> int:
         return int(self.terms[0][0].ncols())
 
+    def combined(self, matrix: ExactMatrix) -> FormalClass:
+        """Exact combinations of the solutions, one for each column of the matrix.
+
+        Nearly equal exponents make solutions nearly parallel; combined exactly, nothing is lost to that.
+        """
+        return FormalClass(
+            self.exponent, tuple(tuple(level * matrix for level in levels) for levels in self.terms)
+        )
+
 
 def singular_point(system: RationalSystem, place: str) -> SingularPoint:
     """Analyse zero of the local variable.

@@ -13,16 +13,13 @@ from math import comb, inf
 
 import flint
 import numpy as np
-from numpy.typing import NDArray
 
 from ibpred.balls.context import RealBall, precision
 from ibpred.errors import PrecisionError
 from ibpred.numerics.frobenius.tracks import BallMatrix, Tracks
-
-Floats = NDArray[np.float64]
+from ibpred.numerics.frobenius.weights import Floats, perron_weights
 
 _OUTWARDS = 1 + 1e-9  # covers the rounding of sums of up to a million terms
-_ITERATIONS = 60
 _LEAST = 1e-300  # stands for smaller moduli, which a float cannot hold
 
 
@@ -92,6 +89,12 @@ def majorant(tracks: Tracks, terms: int, besides: BallMatrix | None = None) -> M
     return Majorant(weights, size, radius)
 
 
+def operator_norm(matrix: BallMatrix, bounds: Majorant) -> float:
+    """Upper bound of the weighted norm of a matrix."""
+    values = upper_bounds(matrix)
+    return float((values @ bounds.weights / bounds.weights).max(initial=0.0)) * _OUTWARDS
+
+
 def upper_bounds(matrix: BallMatrix) -> Floats:
     """Upper bounds of the moduli of the entries."""
     found = [
@@ -112,69 +115,6 @@ def _largest(order: int, distance: float, radius: float) -> float:
     peak = 0 if order * ratio <= 1 else int((order * ratio - 1) / (1 - ratio)) + 1
     value: float = max(comb(j + order - 1, order - 1) * ratio**j for j in range(max(0, peak - 2), peak + 2))
     return value * _OUTWARDS / distance**order
-
-
-def perron_weights(bound: Floats) -> Floats:
-    """Positive weights w with ``bound w <= (rho + slack) w``, rho the largest spectral radius of a block.
-
-    Inside a coupled block the Perron vector; each block is weighted such that what it takes from the blocks
-    before it stays below a slack of a few units.
-    """
-    weights = np.ones(len(bound))
-    blocks = _ordered_blocks(bound > 0)
-    vectors = [_perron_vector(bound[np.ix_(block, block)]) for block in blocks]
-    radii = [
-        float((bound[np.ix_(block, block)] @ v / v).max()) for block, v in zip(blocks, vectors, strict=True)
-    ]
-    slack = 4 + max(radii, default=0.0)
-    before: list[int] = []
-    for block, vector in zip(blocks, vectors, strict=True):
-        scale = 1.0
-        if before:
-            load = bound[np.ix_(block, before)] @ weights[before] / vector
-            scale = max(1e-250, float(load.max()) / slack) if load.max() > 0 else 1.0
-        weights[block] = np.minimum(scale * vector, 1e250)
-        before += block
-    return weights
-
-
-def _perron_vector(matrix: Floats) -> Floats:
-    """A vector near the Perron vector of an irreducible matrix, also where its entries differ by orders."""
-    scale = _balanced(matrix)
-    balanced = matrix * scale[None, :] / scale[:, None]
-    # the shift makes the iteration converge for cyclic matrices too
-    shifted = balanced + np.eye(len(matrix)) * (0.1 * balanced.max(initial=0.0) + 1e-100)
-    vector = np.ones(len(matrix))
-    for _ in range(_ITERATIONS):
-        vector = shifted @ vector
-        vector /= vector.max()
-    return np.maximum(vector, 1e-30) * scale
-
-
-def _balanced(matrix: Floats) -> Floats:
-    """Diagonal scaling that makes rows and columns alike (E. E. Osborne, J. ACM 7 (1960) 338)."""
-    scale = np.ones(len(matrix))
-    bare = matrix - np.diag(np.diag(matrix))
-    if len(matrix) == 1:
-        return scale
-    for _ in range(_ITERATIONS):
-        for i in range(len(matrix)):
-            row, column = bare[i] @ scale, bare[:, i] @ (1 / scale)
-            if row > 0 and column > 0:
-                scale[i] = np.sqrt(row / column)
-    return scale
-
-
-def _ordered_blocks(pattern: NDArray[np.bool_]) -> list[list[int]]:
-    """Coupled sets of indices, each after those it depends on."""
-    reach = pattern | np.eye(len(pattern), dtype=bool)
-    for middle in range(len(pattern)):
-        reach |= np.outer(reach[:, middle], reach[middle])
-    blocks: dict[int, list[int]] = {}
-    for i in range(len(pattern)):
-        first = int(np.flatnonzero(reach[i] & reach[:, i])[0])
-        blocks.setdefault(first, []).append(i)
-    return [blocks[first] for first in sorted(blocks, key=lambda i: (int(reach[i].sum()), i))]
 
 
 @dataclass

@@ -12,9 +12,11 @@ from fractions import Fraction
 from typing import Any
 
 import flint
+import numpy as np
 
-from ibpred.numerics.frobenius.spectrum import ExactMatrix, pivot_columns
+from ibpred.numerics.frobenius.spectrum import ExactMatrix
 from ibpred.numerics.frobenius.system import RationalSystem, Univariate
+from ibpred.numerics.frobenius.weights import Floats, perron_weights
 
 
 @dataclass(frozen=True)
@@ -92,7 +94,8 @@ def partial_fractions(system: RationalSystem) -> PartialFractions:
                 for j, value in enumerate(digit.coeffs()):
                     if value:
                         digits.setdefault(key, {}).setdefault((order, j), {})[at] = value
-    poles = tuple(_pole(size, factors[key], digits[key]) for key in sorted(digits))
+    weights = perron_weights(_magnitudes(size, digits))
+    poles = tuple(_pole(size, factors[key], digits[key], weights) for key in sorted(digits))
     degree = max(polynomial, default=-1)
     return PartialFractions(
         size, poles, tuple(_matrix(size, polynomial.get(j, {})) for j in range(degree + 1))
@@ -111,21 +114,80 @@ def _matrix(size: int, values: dict[tuple[int, int], Any]) -> ExactMatrix:
     return matrix
 
 
-def _pole(size: int, factor: Univariate, parts: dict[tuple[int, int], dict[tuple[int, int], Any]]) -> Pole:
+def _magnitudes(size: int, digits: dict[str, dict[tuple[int, int], dict[tuple[int, int], Any]]]) -> Floats:
+    total = np.zeros((size, size))
+    for parts in digits.values():
+        for values in parts.values():
+            for at, value in values.items():
+                total[at] += _size(value)
+    return total
+
+
+def _pole(
+    size: int,
+    factor: Univariate,
+    parts: dict[tuple[int, int], dict[tuple[int, int], Any]],
+    weights: Floats,
+) -> Pole:
     order, degree = max(k for k, _ in parts), factor.degree()
     matrices = {at: _matrix(size, values) for at, values in parts.items()}
     stacked = flint.fmpq_mat([row for at in sorted(matrices) for row in matrices[at].table()])
-    echelon, rank = stacked.rref()
-    rows = flint.fmpq_mat([[echelon[i, j] for j in range(size)] for i in range(rank)])
-    pivots = pivot_columns(echelon, rank)
-    zero = flint.fmpq_mat(size, rank)
+    rows, pivots = row_space(stacked, weights, np.tile(weights, len(matrices)))
+    zero = flint.fmpq_mat(size, len(pivots))
 
     def column(k: int, j: int) -> ExactMatrix:
         if (k, j) not in matrices:
             return zero
-        # the rows are reduced, so coefficients over them stand in the pivot columns
+        # the rows are a unit matrix in the pivot columns, where their coefficients stand
         matrix = matrices[k, j]
         return flint.fmpq_mat([[matrix[i, c] for c in pivots] for i in range(size)])
 
     columns = tuple(tuple(column(k, j) for j in range(degree)) for k in range(1, order + 1))
     return Pole(factor, rows, columns)
+
+
+def row_space(matrix: ExactMatrix, columns: Floats, rows: Floats) -> tuple[ExactMatrix, tuple[int, ...]]:
+    """A basis of the rows that is the unit matrix in some columns and small in the others.
+
+    The largest entries serve as pivots: with the first ones, as in echelon forms, nearly dependent rows
+    (eps apart) would give entries of the size 1/eps, and digits would be lost at every step of a series.
+
+    Parameters
+    ----------
+    matrix
+        Any matrix over Q.
+    columns, rows
+        Scales: an entry counts as ``|a_ij| columns_j/rows_i``.
+
+    Returns
+    -------
+    The basis, and the columns where it is the unit matrix.
+    """
+    left = [(list(row), float(scale)) for row, scale in zip(matrix.table(), rows, strict=True) if any(row)]
+    pivots: list[int] = []
+    done: list[list[Any]] = []
+    while left:
+        r, c = max(
+            ((r, c) for r, (row, _) in enumerate(left) for c, value in enumerate(row) if value),
+            key=lambda at: _size(left[at[0]][0][at[1]]) * columns[at[1]] / left[at[0]][1],
+        )
+        head, _ = left.pop(r)
+        lead = head[c]
+        head = [value / lead if value else value for value in head]
+        done = [_eliminated(row, head, c) for row in done]
+        rest = [(_eliminated(row, head, c), scale) for row, scale in left]
+        left = [(row, scale) for row, scale in rest if any(row)]
+        done.append(head)
+        pivots.append(c)
+    return flint.fmpq_mat(done) if done else flint.fmpq_mat(0, matrix.ncols()), tuple(pivots)
+
+
+def _eliminated(row: list[Any], head: list[Any], column: int) -> list[Any]:
+    factor = row[column]
+    if not factor:
+        return row
+    return [a - factor * b if b else a for a, b in zip(row, head, strict=True)]
+
+
+def _size(value: Any) -> float:
+    return float(abs(int(value.p) / int(value.q)))

@@ -12,7 +12,14 @@ import numpy as np
 from ibpred.balls.context import Ball, RealBall, precision
 from ibpred.errors import PrecisionError
 from ibpred.numerics.frobenius.formal import FormalClass, SingularPoint
-from ibpred.numerics.frobenius.majorant import Majorant, Tail, majorant, upper_bounds, widened_matrix
+from ibpred.numerics.frobenius.majorant import (
+    Majorant,
+    Tail,
+    majorant,
+    operator_norm,
+    upper_bounds,
+    widened_matrix,
+)
 from ibpred.numerics.frobenius.poles import PartialFractions
 from ibpred.numerics.frobenius.spectrum import ExactMatrix
 from ibpred.numerics.frobenius.system import fmpq
@@ -189,7 +196,7 @@ def frobenius_values(
     width = start[0].ncols() // depth
     terms = max(_expected_terms(size, bits), len(start))
     bounds = majorant(tracks, terms, residue)
-    tail = Tail(bounds, _operator_norm(residue, bounds) + 1)
+    tail = Tail(bounds, operator_norm(residue, bounds) + 1)
     with precision(bits):
         rec = recurrence(tracks, bits)
         identity = flint.acb_mat(flint.fmpq_mat(_identity(point.size)))
@@ -265,11 +272,6 @@ def _level_norm(bounds: Majorant, matrix: BallMatrix, width: int) -> float:
     """Bound of the sum over the powers of the logarithm of the largest column."""
     values = (upper_bounds(matrix) / bounds.weights[:, None]).max(axis=0)
     return float(values.reshape(-1, width).max(axis=1).sum()) * (1 + 1e-9)
-
-
-def _operator_norm(matrix: BallMatrix, bounds: Majorant) -> float:
-    values = upper_bounds(matrix)
-    return float((values @ bounds.weights / bounds.weights).max(initial=0.0)) * (1 + 1e-9)
 
 
 def _by_levels(resolvent: BallMatrix, right: BallMatrix, depth: int, width: int) -> BallMatrix:
