@@ -243,13 +243,14 @@ class Chain(Stages):
         The differential equation is blind to a power of eps that multiplies all of them; the boundary
         constants tell it. Where they stay open no power is taken out.
         """
-        if isinstance(found, Obstructed) or len(found.variables) != 1 or any(found.tags):
+        if isinstance(found, Obstructed) or any(found.tags):
             return found
-        symmetry = involution(self.coordinates().values.values(), found.variables[0])
-        if symmetry is not None:
-            found = with_parity(found, symmetry)
-        found = _scaled(found, 1 / self._first_factor(found))
+        if len(found.variables) == 1:
+            symmetry = involution(self.coordinates().values.values(), found.variables[0])
+            if symmetry is not None:
+                found = with_parity(found, symmetry)
         try:
+            found = _scaled(found, 1 / self._first_factor(found))
             problem = self._boundary_problem(found, 0)
             start = fix_constants(problem).start
         except UnfinishedError:
