@@ -9,12 +9,14 @@ _ZETA = re.compile(r"\bzeta(\d+)\b")
 _LOG = re.compile(r"\blog(\d+)\b")
 _NAME = re.compile(r"\b([A-Za-z]+?)(\d+)\b")
 _POWER = re.compile(r"\^(\d+)")
+_ROOT = re.compile(r"\bsqrt\(")
 _GREEK = {"eps": r"\epsilon", "pi": r"\pi"}
 _LARGEST_MATRIX = 20  # columns that amsmath's pmatrix takes once MaxMatrixCols is raised to it
 
 
 def expression_latex(text: str) -> str:
-    """LaTeX of an infix expression; quotients stay in line."""
+    """LaTeX of an infix expression; quotients stay in line, ``sqrt(...)`` becomes a root."""
+    text = _roots(text)
     text = _ZETA.sub(r"\\zeta_{\1}", text)
     text = _LOG.sub(r"\\log \1", text)
     text = _NAME.sub(r"\1_{\2}", text)
@@ -22,6 +24,18 @@ def expression_latex(text: str) -> str:
     for name, symbol in _GREEK.items():
         text = re.sub(rf"\b{name}\b", symbol.replace("\\", "\\\\"), text)
     return text.replace("*", r"\,")
+
+
+def _roots(text: str) -> str:
+    found = ""
+    while (match := _ROOT.search(text)) is not None:
+        depth, end = 1, match.end()
+        while depth and end < len(text):
+            depth += (text[end] == "(") - (text[end] == ")")
+            end += 1
+        found += text[: match.start()] + r"\sqrt{" + _roots(text[match.end() : end - 1]) + "}"
+        text = text[end:]
+    return found + text
 
 
 def integral_latex(family: str, powers: Sequence[int]) -> str:

@@ -21,6 +21,7 @@ from ibpred.progress import SILENT
 from ibpred.report.export.expressions import Dialect, translated
 from ibpred.report.export.formats import Format, exported
 from ibpred.report.export.material import Material
+from ibpred.report.latex import expression_latex
 from ibpred.run.chain import Chain
 from ibpred.run.exports import chain_material, folder_material
 from ibpred.run.files import read_family_file
@@ -213,9 +214,32 @@ def test_dialects_keep_the_value(text: str) -> None:
         return name
 
     values = {name: Fraction(n, 7) for n, name in enumerate("abcdst", start=3)}
-    dialect = Dialect(str, symbol, lambda base, power: f"{base}^({power})")
+    dialect = Dialect(str, symbol, lambda base, power: f"{base}^({power})", str)
 
     def value_of(expression: str) -> Fraction:
         return parse(expression, lambda number: number, lambda name: values[name])
 
     assert value_of(translated(text, dialect)) == value_of(text)
+
+
+def test_square_roots_and_other_variables(tmp_path: Path) -> None:
+    import sympy
+
+    with Store(tmp_path / "box") as store:
+        family = read_family_file(FAMILIES / "triangle-massive-loop.toml")
+        chain = Chain(family, store, SILENT, 1)
+        triangle = chain_material(chain, 0, 15)
+    for target in Format:
+        exported(triangle, target)
+    module = loaded(exported(triangle, Format.SYMPY)[1], "triangle_sympy", tmp_path)
+    s, m2, w = sympy.symbols("s m2 w")
+    assert sympy.Eq(-s / m2, (w - 1) ** 2 / w) in module.ratios
+    assert loaded(exported(triangle, Format.NUMPY)[1], "triangle_numpy", tmp_path).self_test() < 1e-8
+    text = "(x-sqrt(x*(4+x)))/(x+sqrt(x*(4+x)))"
+    roots = Dialect(
+        str, lambda name: name, lambda base, power: f"{base}^{power}", lambda inner: f"R[{inner}]"
+    )
+    assert translated(text, roots) == "(x - R[x*(4 + x)])/(x + R[x*(4 + x)])"
+    assert expression_latex(text) == r"(x-\sqrt{x\,(4+x)})/(x+\sqrt{x\,(4+x)})"
+    with pytest.raises(ExpressionError):
+        translated("sqrt(x", roots)

@@ -219,7 +219,9 @@ def _dialect(names: Sequence[str]) -> Dialect:
             return f"{value.numerator}.0"
         return f"({value.numerator}.0/{value.denominator}.0)"
 
-    return Dialect(number, symbol, lambda base, power: f"power({base}, {power})")
+    return Dialect(
+        number, symbol, lambda base, power: f"power({base}, {power})", lambda text: f"csqrt({text})"
+    )
 
 
 def _assignments(layers: Sequence[Sequence[Entry]], dialect: Dialect) -> list[str]:

@@ -6,11 +6,16 @@ as numbers, known symbols and ``+ - * / ^`` of the target language.
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable
 from dataclasses import dataclass
 from fractions import Fraction
 
+from ibpred.errors import ExpressionError
 from ibpred.exact.grammar import parse
+
+_ROOT = re.compile(r"(?<![A-Za-z_0-9])sqrt\(")
+_PLACE = "__sqrt"  # no symbol of a result file begins with two underscores
 
 _SUM, _PRODUCT, _POWER, _ATOM = range(4)
 
@@ -28,11 +33,14 @@ class Dialect:
     power
         Text of a power, from the text of the base (already in parentheses where it needs them) and the
         exponent.
+    root
+        Text of a square root, an atom of the language, from the text under it.
     """
 
     number: Callable[[Fraction], str]
     symbol: Callable[[str], str]
     power: Callable[[str, int], str]
+    root: Callable[[str], str]
 
 
 @dataclass(frozen=True)
@@ -87,15 +95,35 @@ def _number(dialect: Dialect, value: Fraction) -> _Text:
 
 
 def translated(text: str, dialect: Dialect) -> str:
-    """An expression of a result file in a dialect.
+    """An expression of a result file in a dialect; it may hold square roots ``sqrt(...)``.
 
     Raises
     ------
     ExpressionError
         If the text is no expression in symbols that the dialect knows.
     """
+    plain, roots = _without_roots(text)
+    known = {name: dialect.root(translated(inner, dialect)) for name, inner in roots.items()}
 
     def symbol(name: str) -> _Text:
-        return _Text(dialect.symbol(name), _ATOM, dialect)
+        return _Text(known[name] if name in known else dialect.symbol(name), _ATOM, dialect)
 
-    return parse(text, lambda value: _number(dialect, value), symbol).text
+    return parse(plain, lambda value: _number(dialect, value), symbol).text
+
+
+def _without_roots(text: str) -> tuple[str, dict[str, str]]:
+    """The text with names for its outermost square roots, and what stands under each."""
+    roots: dict[str, str] = {}
+    found = ""
+    while (match := _ROOT.search(text)) is not None:
+        depth, end = 1, match.end()
+        while depth and end < len(text):
+            depth += (text[end] == "(") - (text[end] == ")")
+            end += 1
+        if depth:
+            raise ExpressionError("')' expected after the square root", text, match.start())
+        name = f"{_PLACE}{len(roots)}"
+        roots[name] = text[match.end() : end - 1]
+        found += text[: match.start()] + name
+        text = text[end:]
+    return found + text, roots

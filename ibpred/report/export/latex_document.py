@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from ibpred.report.export.material import Data, Material
+from ibpred.report.export.material import Data, Material, ratio_equation
 from ibpred.report.latex import expression_latex, integral_latex
 
 _HEAD = r"""\documentclass{article}
@@ -94,7 +94,8 @@ def _derivatives(variable: str, entries: Sequence[Sequence[object]]) -> str:
 
 
 def _epsilon(data: Data) -> str:
-    ratios = ", ".join(f"${expression_latex(n)}={expression_latex(t)}$" for n, t in data["ratios"].items())
+    sides = [ratio_equation(name, text) for name, text in data["ratios"].items()]
+    ratios = ", ".join(f"${expression_latex(a)}={expression_latex(b)}$" for a, b in sides)
     parts = [
         "\\subsection*{Canonical form}",
         rf"With {ratios}, $I=T f$ and "

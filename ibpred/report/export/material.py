@@ -122,6 +122,19 @@ def _harmless(line: str) -> str:
     return "".join(c if c.isprintable() and c != "\\" else " " for c in line)
 
 
+def ratio_equation(name: str, text: str) -> tuple[str, str]:
+    """Both sides of the equation that defines a variable: ``x = t/s`` or ``-s/m2 = (1-w)^2/w``."""
+    left, equals, right = text.partition("=")
+    return (left.strip(), right.strip()) if equals else (name, text)
+
+
+def words_of(term: Data, solution: Data) -> list[tuple[str, list[str]]]:
+    """The words of a term, each with the variable it is an integral in; empty words are left out."""
+    words = term["words"] if "words" in term else [term["word"]]
+    variables = [str(level["variable"]) for level in solution["levels"]]
+    return [(variable, list(word)) for variable, word in zip(variables, words, strict=False) if word]
+
+
 def checked_names(names: Sequence[str]) -> tuple[str, ...]:
     """Names of symbols that are identifiers of ASCII letters, digits and underscores.
 

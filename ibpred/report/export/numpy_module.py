@@ -161,9 +161,11 @@ def _dialect(names: Sequence[str]) -> Dialect:
             raise KeyError(name, *known)
         return known[name]
 
-    return Dialect(
-        _number, symbol, lambda base, power: f"{base}**{power}" if power >= 0 else f"{base}**({power})"
-    )
+    return Dialect(_number, symbol, _power, lambda text: f"np.sqrt({text})")
+
+
+def _power(base: str, power: int) -> str:
+    return f"{base}**{power}" if power >= 0 else f"{base}**({power})"
 
 
 def _number(value: Fraction) -> str:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping, Sequence
 
 from ibpred.report.export.expressions import Dialect, translated
-from ibpred.report.export.material import Data, Material, checked_names, conventions
+from ibpred.report.export.material import Data, Material, checked_names, conventions, ratio_equation
 
 _CONSTANTS = {
     "I": "I",
@@ -48,7 +48,9 @@ def _name(name: str) -> str:
     return name if plain and not name.startswith("_") else f"{name.lstrip('_')}_v"
 
 
-def _dialect(names: Iterable[str]) -> Dialect:
+def _dialect(names: Iterable[str], roots: dict[str, str] | None = None) -> Dialect:
+    """The dialect; square roots get names, since GP has none of rational functions."""
+    named = {} if roots is None else roots
     known = {name: _name(name) for name in names}
 
     def symbol(name: str) -> str:
@@ -58,7 +60,11 @@ def _dialect(names: Iterable[str]) -> Dialect:
             return _CONSTANTS[name]
         raise KeyError(name, *known, *_CONSTANTS)
 
-    return Dialect(str, symbol, lambda base, power: f"{base}^{power}" if power >= 0 else f"{base}^({power})")
+    return Dialect(str, symbol, _power, lambda text: named.setdefault(text, f"root{len(named) + 1}"))
+
+
+def _power(base: str, power: int) -> str:
+    return f"{base}^{power}" if power >= 0 else f"{base}^({power})"
 
 
 def _matrix(entries: Sequence[Sequence[object]], size: int, dialect: Dialect) -> str:
@@ -70,15 +76,19 @@ def _matrix(entries: Sequence[Sequence[object]], size: int, dialect: Dialect) ->
 
 def _epsilon(data: Data, count: int, invariants: Sequence[str]) -> list[str]:
     ratios = checked_names(data["variables"])
-    dialect = _dialect(["eps", *ratios])
-    definitions = _dialect(invariants)
+    roots: dict[str, str] = {}
+    dialect = _dialect(["eps", *ratios], roots)
+    definitions = _dialect([*invariants, *ratios])
     lines = ["", "\\\\ epsilon-form: I = T f, df = eps sum_l A_l dlog(l) f"]
     for name in ratios:
-        lines.append(f"\\\\ ratio {_name(name)} = {translated(data['ratios'][name], definitions)}")
+        left, right = ratio_equation(name, data["ratios"][name])
+        lines.append(f"\\\\ {translated(left, definitions)} = {translated(right, definitions)}")
     lines.append("letters = [" + ", ".join(translated(letter, dialect) for letter in data["letters"]) + "];")
     matrices = ", ".join(_matrix(data["matrices"][letter], count, dialect) for letter in data["letters"])
     lines.append(f"letter_matrices = [{matrices}];")
     lines.append(f"transformation = {_matrix(data['transformation'], count, dialect)};")
+    for text, name in roots.items():
+        lines.append(f"\\\\ {name} = sqrt({text})")
     return lines
 
 

@@ -7,9 +7,11 @@ from collections.abc import Iterable, Sequence
 from fractions import Fraction
 
 from ibpred.report.export.expressions import Dialect, translated
-from ibpred.report.export.material import Data, Material, checked_names, conventions
+from ibpred.report.export.material import Data, Material, checked_names, conventions, ratio_equation, words_of
 
 _TAKEN = {
+    "Eq",
+    "sqrt",
     "Matrix",
     "Rational",
     "Symbol",
@@ -38,7 +40,9 @@ def sympy_module(material: Material) -> str:
     """Masters, differential equations, epsilon-form and solution as SymPy objects."""
     count = len(material.masters)
     lines = [*(f"# {line}" for line in conventions(material)), ""]
-    lines.append("from sympy import Function, I, Rational, SparseMatrix, Symbol, log, pi, polylog, zeta")
+    lines.append(
+        "from sympy import Eq, Function, I, Rational, SparseMatrix, Symbol, log, pi, polylog, sqrt, zeta"
+    )
     lines.append("")
     names = checked_names(["d", "eps", *material.variables])
     lines += [f'{_name(name)} = Symbol("{name}")' for name in names]
@@ -73,9 +77,11 @@ def _dialect(names: Iterable[str]) -> Dialect:
             return _CONSTANTS[name]
         raise KeyError(name, *known, *_CONSTANTS)
 
-    return Dialect(
-        _number, symbol, lambda base, power: f"{base}**{power}" if power >= 0 else f"{base}**({power})"
-    )
+    return Dialect(_number, symbol, _power, lambda text: f"sqrt({text})")
+
+
+def _power(base: str, power: int) -> str:
+    return f"{base}**{power}" if power >= 0 else f"{base}**({power})"
 
 
 def _matrix(entries: Sequence[Sequence[object]], size: int, dialect: Dialect) -> str:
@@ -86,13 +92,12 @@ def _matrix(entries: Sequence[Sequence[object]], size: int, dialect: Dialect) ->
 def _epsilon(data: Data, count: int, taken: Sequence[str]) -> list[str]:
     ratios = checked_names(data["variables"])
     dialect = _dialect(["eps", *ratios])
-    definitions = _dialect(taken)
+    definitions = _dialect([*taken, *ratios])
     lines = ["", "# epsilon-form: I = T f, df = eps * sum_l A_l dlog(l) f, in the ratios"]
     lines += [f'{_name(name)} = Symbol("{name}")' for name in ratios]
-    ratio_text = ", ".join(
-        f"{_name(name)}: {translated(data['ratios'][name], definitions)}" for name in ratios
-    )
-    lines.append(f"ratios = {{{ratio_text}}}")
+    sides = [ratio_equation(name, data["ratios"][name]) for name in ratios]
+    equations = ", ".join(f"Eq({translated(a, definitions)}, {translated(b, definitions)})" for a, b in sides)
+    lines.append(f"ratios = [{equations}]")
     lines.append("letters = {")
     for letter in data["letters"]:
         matrix = _matrix(data["matrices"][letter], count, dialect)
@@ -106,7 +111,7 @@ def _solution(data: Data, ratios: Sequence[str]) -> list[str]:
     dialect = _dialect(ratios)
     lines = [
         "",
-        "# word(l1, ..., ln) = int_0^x dlog(l1) word(l2, ..., ln), word(x, ..., x) = log(x)^n/n!",
+        "# word(x, l1, ..., ln) = int_0^x dlog(l1) word(x, l2, ..., ln), word(x, x, ..., x) = log(x)^n/n!",
         "# (with several ratios the first argument says which one runs from 0)",
         'word = Function("word")',
         "functions = {",
@@ -116,17 +121,11 @@ def _solution(data: Data, ratios: Sequence[str]) -> list[str]:
         for entry in function["orders"]:
             terms = []
             for term in entry["terms"]:
-                factor = translated(term["coefficient"], dialect)
-                words = term["words"] if "words" in term else [term["word"]]
-                pieces = [f"({factor})"]
-                for word, level in zip(words, data["levels"], strict=False):
+                factors = [f"({translated(term['coefficient'], dialect)})"]
+                for variable, word in words_of(term, data):
                     letters = ", ".join(translated(letter, dialect) for letter in word)
-                    # with several ratios each word says which of them it is integrated in
-                    if letters and len(words) > 1:
-                        letters = f"{translated(level['variable'], dialect)}, {letters}"
-                    if letters:
-                        pieces.append(f"word({letters})")
-                terms.append("*".join(pieces))
+                    factors.append(f"word({translated(variable, dialect)}, {letters})")
+                terms.append("*".join(factors))
             lines.append(f"        {entry['order']}: {' + '.join(terms) or '0'},")
         lines.append("    },")
     lines.append("}")

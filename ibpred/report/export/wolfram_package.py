@@ -6,7 +6,7 @@ from collections.abc import Iterable, Sequence
 from fractions import Fraction
 
 from ibpred.report.export.expressions import Dialect, translated
-from ibpred.report.export.material import Data, Material, checked_names, conventions
+from ibpred.report.export.material import Data, Material, checked_names, conventions, ratio_equation, words_of
 
 _CONSTANTS = {
     "I": "I",
@@ -74,9 +74,11 @@ def _dialect(names: Iterable[str]) -> Dialect:
     def number(value: Fraction) -> str:
         return str(value)
 
-    return Dialect(
-        number, symbol, lambda base, power: f"{base}^{power}" if power >= 0 else f"{base}^({power})"
-    )
+    return Dialect(number, symbol, _power, lambda text: f"Sqrt[{text}]")
+
+
+def _power(base: str, power: int) -> str:
+    return f"{base}^{power}" if power >= 0 else f"{base}^({power})"
 
 
 def _matrix(entries: Sequence[Sequence[object]], size: int, dialect: Dialect) -> str:
@@ -90,9 +92,10 @@ def _matrix(entries: Sequence[Sequence[object]], size: int, dialect: Dialect) ->
 def _epsilon(data: Data, count: int, invariants: Sequence[str]) -> list[str]:
     ratios = checked_names(data["variables"])
     dialect = _dialect(["eps", *ratios])
-    definitions = _dialect(invariants)
+    definitions = _dialect([*invariants, *ratios])
     matrices = ",\n    ".join(_matrix(data["matrices"][letter], count, dialect) for letter in data["letters"])
-    ratio_text = ", ".join(f"{_name(n)} -> {translated(data['ratios'][n], definitions)}" for n in ratios)
+    sides = [ratio_equation(name, data["ratios"][name]) for name in ratios]
+    ratio_text = ", ".join(f"{translated(a, definitions)} == {translated(b, definitions)}" for a, b in sides)
     return [
         f'"ratios" -> {{{ratio_text}}}',
         f'"letters" -> {_list(translated(letter, dialect) for letter in data["letters"])}',
@@ -109,22 +112,15 @@ def _solution(data: Data, ratios: Sequence[str]) -> str:
         for entry in function["orders"]:
             terms = []
             for term in entry["terms"]:
-                factor = translated(term["coefficient"], dialect)
-                words = term["words"] if "words" in term else [term["word"]]
-                pieces = [f"({factor})"]
-                for word, level in zip(words, data["levels"], strict=False):
+                factors = [f"({translated(term['coefficient'], dialect)})"]
+                for variable, word in words_of(term, data):
                     letters = ", ".join(translated(letter, dialect) for letter in word)
-                    # with several ratios each word says which of them it is integrated in
-                    if letters and len(words) > 1:
-                        pieces.append(f"wordIn[{translated(level['variable'], dialect)}, {letters}]")
-                    elif letters:
-                        pieces.append(f"word[{letters}]")
-                terms.append("*".join(pieces))
+                    factors.append(f"word[{translated(variable, dialect)}, {letters}]")
+                terms.append("*".join(factors))
             orders.append(f"{entry['order']} -> {' + '.join(terms) or '0'}")
         functions.append("<|" + ", ".join(orders) + "|>")
     joined = ",\n    ".join(functions)
     return (
-        "(* word[l1, ..., ln] is the integral over dlog(l1) of word[l2, ..., ln] from 0, "
-        "word[x, ..., x] = Log[x]^n/n!; wordIn[x, l1, ...] the same where x of several ratios runs *)\n"
-        f'  "functions" -> {{\n    {joined}}}'
+        "(* word[x, l1, ..., ln] is the integral over dlog(l1) of word[x, l2, ..., ln] from 0 to x, "
+        f'word[x, x, ..., x] = Log[x]^n/n! *)\n  "functions" -> {{\n    {joined}}}'
     )
