@@ -143,8 +143,16 @@ def epsilon_text(data: Data) -> str:
             )
             if obstruction["operator"]:
                 lines.append(f"    Picard–Fuchs operator at eps = 0: {obstruction['operator']}")
+            if len(obstruction["factors"]) > 1:
+                lines.append(f"    factors: {'; '.join(obstruction['factors'])}")
+            if obstruction["geometry"]:
+                lines.append(f"    {obstruction['geometry']}")
+            for place, exponents in obstruction["operator_exponents"]:
+                lines.append(f"    exponents of the operator at {place}: {', '.join(exponents)}")
             for place, exponents in obstruction["exponents"]:
-                lines.append(f"    exponents at {place}: {', '.join(exponents)}")
+                lines.append(f"    exponents of the block at {place}: {', '.join(exponents)}")
+            if obstruction["period_form"]:
+                lines += _period_lines(obstruction["period_form"])
         return "\n".join(lines)
     lines.append(f"letters: {', '.join(data['letters']) or 'none'}")
     for letter in data["letters"]:
@@ -161,6 +169,29 @@ def epsilon_text(data: Data) -> str:
         by_row.setdefault(row, []).append((value, f"f{column + 1}"))
     lines += [f"  I{row + 1} = {_sum(by_row[row])}" for row in sorted(by_row)]
     return "\n".join(lines)
+
+
+def _period_lines(form: Data) -> list[str]:
+    """The epsilon-form of a block with periods as functions."""
+
+    def series(terms: Sequence[str]) -> str:
+        powers = ("", "t", *(f"t^{k}" for k in range(2, len(terms))))
+        parts = [
+            t if not power else power if t == "1" else f"-{power}" if t == "-1" else f"{t}*{power}"
+            for t, power in zip(terms, powers, strict=False)
+            if t != "0"
+        ]
+        return "+".join(parts).replace("+-", "-") + "+..."
+
+    closed = {(i, j): text for i, j, text in form["closed"]}
+    lines = [
+        f"    eps-form with periods at {form['point']}, t = {form['t']}, theta = t*d/dt: "
+        "theta M = eps B M, where",
+        f"      psi0 = t^({form['exponent']})*({series(form['psi0'])})",
+    ]
+    for i, j, terms in form["matrix"]:
+        lines.append(f"      B{i + 1}{j + 1} = {closed.get((i, j), series(terms))}")
+    return lines
 
 
 def solution_text(data: Data) -> str:
@@ -185,8 +216,11 @@ def values_text(data: Data) -> str:
                 if value["route"] == "epsilon-form"
                 else f", by {value['route']}"
             )
-        if value.get("digits_reached") is not None:
-            kind += f", {value['digits_reached']} digits"
+        reached = value.get("digits_reached")
+        if reached is not None:
+            kind += f", {reached} digits" + (
+                f" of {data['digits']} wanted" if reached < data["digits"] else ""
+            )
         lines.append("")
         lines.append(f"{integral_text(data['family'], value['powers'])}   ({kind})")
         rows = [
