@@ -85,6 +85,7 @@ class TestDispersionAgainstMoments:
 
 
 class TestSunriseInFourDimensions:
+    @pytest.mark.slow
     def test_at_zero(self):
         """Davydychev, Tausk, Nucl. Phys. B397 (1993) 123; from memory, normalised by Gamma(1+eps)^2."""
         found = bessel.coefficients(4, (1, 1, 1), (1, 1, 1), mpf(0), (-2, 0), 25)
@@ -113,7 +114,8 @@ class TestSunriseInFourDimensions:
 class TestBubbles:
     """Bessel moments at one loop against hypergeometric functions and logarithms."""
 
-    @pytest.mark.parametrize("s", [-3, pytest.param(7, marks=pytest.mark.slow)])
+    @pytest.mark.slow
+    @pytest.mark.parametrize("s", [-3, 7])
     def test_equal_masses(self, s):
         moments = bessel.coefficients(4, (1, 1), (1, 1), mpf(s), (-1, 1), 20)
         found = closed.laurent_coefficients(
