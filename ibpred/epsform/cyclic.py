@@ -9,12 +9,16 @@ the points with a single exponent that is no integer (as periods do at a conifol
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 
 import flint
 
+from ibpred.epsform.coupled import reduced_entries
+from ibpred.epsform.form import Matrix
 from ibpred.epsform.image import Pattern, pencil_at, splits
 from ibpred.epsform.local import ObstacleError, normalised, residue_at
-from ibpred.epsform.operators import Operator
+from ibpred.epsform.matrices import dot
+from ibpred.epsform.operators import Operator, operator
 from ibpred.epsform.pencil import (
     Frame,
     ModularPolynomial,
@@ -155,8 +159,29 @@ def _determinant(rows: list[list[ModularPolynomial]], prime: int) -> ModularPoly
     return rows[-1][-1] * sign
 
 
-def operator_in_eps(pattern: Pattern, primes: Sequence[int], seed: int, subject: str) -> Operator | None:
-    """The operator of the singled-out function for generic eps, the leading coefficient monic in x.
+@dataclass(frozen=True)
+class Cyclic:
+    """A function of a block and its differential equation for generic eps.
+
+    Attributes
+    ----------
+    row
+        ``psi = sum_i row[i] I_i``.
+    operator
+        It annihilates psi; the leading coefficient is monic in x.
+    """
+
+    row: tuple[Rational, ...]
+    operator: Operator
+
+    @property
+    def at_zero(self) -> Operator:
+        """The operator at eps = 0."""
+        return operator([c.substitute({"eps": 0}) for c in self.operator.coefficients], self.operator.name)
+
+
+def cyclic_function(pattern: Pattern, primes: Sequence[int], seed: int, subject: str) -> Cyclic | None:
+    """The singled-out function and its operator.
 
     Parameters
     ----------
@@ -169,8 +194,8 @@ def operator_in_eps(pattern: Pattern, primes: Sequence[int], seed: int, subject:
 
     Returns
     -------
-    operator or None
-        None where no function is singled out, or too few samples determine the operator.
+    function or None
+        None where no function is singled out, or the samples do not determine it.
     """
     usable = tuple(p for p in primes if splits(pattern, p))
 
@@ -182,8 +207,12 @@ def operator_in_eps(pattern: Pattern, primes: Sequence[int], seed: int, subject:
         found = operator_at(image[0], section[0][0], section[1])
         if found is None:
             return None
-        shape = tuple(entry.degree() for entry in found)
-        return Sample(shape, tuple(int(c) for entry in found for c in entry.coeffs()))
+        entries = reduced_entries(section[0], section[1])
+        # the free factor of eps
+        scale = next(above for above, _ in entries if above).leading_coefficient()
+        row = [part for above, below in entries for part in (above / scale, below)]
+        shape = tuple(entry.degree() for entry in (*row, *found))
+        return Sample(shape, tuple(int(c) for entry in (*row, *found) for c in entry.coeffs()))
 
     if not usable or len(pattern.parameters) != 1:
         return None
@@ -201,4 +230,20 @@ def operator_in_eps(pattern: Pattern, primes: Sequence[int], seed: int, subject:
         for power in range(degree + 1):
             total = total + next(source) * x**power
         values.append(total)
-    return Operator(tuple(values), pattern.name)
+    size = len(pattern.numerators)
+    row = tuple(values[2 * i] / values[2 * i + 1] for i in range(size))
+    return Cyclic(row, Operator(tuple(values[2 * size :]), pattern.name))
+
+
+def annihilates(found: Cyclic, matrix: Matrix) -> bool:
+    """Whether the operator annihilates the function, exactly, for a block with the given matrix."""
+    ring, name = found.operator.ring, found.operator.name
+    columns = tuple(zip(*matrix, strict=True))
+    row = found.row
+    total = [ring.zero] * len(row)
+    for c in found.operator.coefficients:
+        total = [a + c * b for a, b in zip(total, row, strict=True)]
+        row = tuple(
+            e.derivative(name) + dot(ring, row, column) for e, column in zip(row, columns, strict=True)
+        )
+    return not any(total)

@@ -11,8 +11,7 @@ from ibpred.epsform.coupled import solve_coupled
 from ibpred.epsform.coupled_many import solve_coupled_many
 from ibpred.epsform.cover import Cover, branch_points, describe, double_cover
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed, Obstruction
-from ibpred.epsform.matrices import part, vanishes
-from ibpred.epsform.picardfuchs import picard_fuchs
+from ibpred.epsform.geometry import obstruction
 from ibpred.epsform.single import solve_single
 from ibpred.epsform.structure import coupled_blocks, couplings, reachable, restricted
 from ibpred.errors import UnfinishedError
@@ -60,14 +59,14 @@ def factorise(
     for rows, outcome in diagonal_blocks(connection, primes, seed, progress):
         if isinstance(outcome, Finding):
             outcome = on_cover(outcome, restricted(connection, rows), primes, seed)
-            obstructions.append(_obstruction(connection, rows, outcome))
+            obstructions.append(obstruction(connection, rows, outcome, primes, seed))
         else:
             solved[rows] = outcome
     blocks = coupled_blocks(links)
     progress.stage("epsilon-form of the couplings")
     reach = reachable(links)
     while True:
-        stuck = {row for obstruction in obstructions for row in obstruction.rows}
+        stuck = {row for found in obstructions for row in found.rows}
         free = tuple(block for block in blocks if not reach[block[0]] & stuck)
         if not free:
             return Obstructed(tuple(obstructions), (), None)
@@ -75,8 +74,8 @@ def factorise(
         if isinstance(outcome_, EpsilonForm):
             break
         rows = free[outcome_.block]
-        found = outcome_.finding
-        obstructions.append(Obstruction(rows, found.reason, None, found.exponents))
+        stuck_at = outcome_.finding
+        obstructions.append(Obstruction(rows, stuck_at.reason, None, stuck_at.exponents))
     if not obstructions:
         return outcome_
     return Obstructed(tuple(obstructions), tuple(sorted(i for block in free for i in block)), outcome_)
@@ -165,10 +164,3 @@ def _helps(
     if len(outcome.branch_points) != 2 or most <= 1:
         return False
     return _helps(covered, outcome.branch_points, primes, seed, most - 1)
-
-
-def _obstruction(connection: Connection, rows: tuple[int, ...], found: Finding) -> Obstruction:
-    """With the operator in the first ratio that the block depends on."""
-    own = {name: part(connection.matrices[name], rows, rows) for name in connection.variables}
-    name = next((n for n in own if not vanishes(own[n])), connection.variables[0])
-    return Obstruction(rows, found.reason, picard_fuchs(own[name], name), found.exponents)

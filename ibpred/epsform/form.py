@@ -36,6 +36,47 @@ class Connection:
     labels: tuple[str, ...]
 
 
+Numbers = tuple[Fraction, ...]
+"""Coefficients of a truncated power series."""
+
+
+@dataclass(frozen=True)
+class PeriodForm:
+    """``theta M = eps B M`` with ``M = sum_p eps^p U_p diag(eps^-k) E`` (see `period_form`).
+
+    Attributes
+    ----------
+    row
+        ``psi = sum_i row[i] I_i``, functions of eps and x.
+    point
+        The point of maximal unipotent monodromy as text.
+    coordinate
+        t in terms of x, as text.
+    exponent
+        ``psi_0 = t^exponent (1 + ...)`` at eps = 0.
+    period
+        Taylor coefficients of ``t^-exponent psi_0``.
+    kernels
+        Those of a_1, ..., a_(n-1).
+    gauge
+        (p, rows): those of the entries of U_p.
+    matrix
+        Those of the entries of B.
+    closed
+        (row, column, text): entries of B recognised as rational functions times a power of psi_0.
+    """
+
+    row: tuple[Rational, ...]
+    point: str
+    coordinate: str
+    exponent: Fraction
+    period: Numbers
+    kernels: tuple[Numbers, ...]
+    gauge: tuple[tuple[int, tuple[tuple[Numbers, ...], ...]], ...]
+    matrix: tuple[tuple[Numbers, ...], ...]
+    closed: tuple[tuple[int, int, str], ...]
+
+
 @dataclass(frozen=True)
 class Obstruction:
     """Why a block has no epsilon-form over the functions tried.
@@ -49,13 +90,25 @@ class Obstruction:
     operator
         Picard-Fuchs operator at eps = 0 as text in the variable and ``D`` = d/dx, where found.
     exponents
-        (singular point, local exponents) as text.
+        (singular point, local exponents of the block) as text.
+    factors
+        Factors of the operator, the leftmost first, as far as factors of order one go.
+    operator_exponents
+        (singular point, local exponents of the operator) as text.
+    geometry
+        What the operator points to, a sentence.
+    period_form
+        The epsilon-form of the block with periods as functions, where there is one.
     """
 
     rows: tuple[int, ...]
     reason: str
     operator: str | None
     exponents: tuple[tuple[str, tuple[str, ...]], ...]
+    factors: tuple[str, ...] = ()
+    operator_exponents: tuple[tuple[str, tuple[str, ...]], ...] = ()
+    geometry: str | None = None
+    period_form: PeriodForm | None = None
 
 
 @dataclass(frozen=True)

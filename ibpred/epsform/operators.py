@@ -137,8 +137,8 @@ def _at_place(equation: Operator, place: Place) -> LocalExponents:
     if last is None or top is None or last - equation.order != lowest:
         return LocalExponents(place, False, ())
     weights: list[Fraction] = []
-    for k, (order, lead) in enumerate(zip(orders, leads, strict=True)):
-        if order is None or lead is None or order - k != lowest:
+    for k, (power_, lead) in enumerate(zip(orders, leads, strict=True)):
+        if power_ is None or lead is None or power_ - k != lowest:
             weights.append(Fraction(0))
             continue
         ratio = place.divide(lead, top)

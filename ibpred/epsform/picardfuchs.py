@@ -6,19 +6,19 @@ from collections.abc import Sequence
 
 from ibpred.epsform.form import Matrix
 from ibpred.epsform.matrices import dot, solve
-from ibpred.epsform.places import degree
-from ibpred.exact.rational import Rational, Ring, polynomial_text
+from ibpred.epsform.operators import Operator, operator
+from ibpred.exact.rational import Rational, Ring
 
 
-def picard_fuchs(block: Matrix, name: str) -> str | None:
-    """Differential operator of one function of the block at eps = 0, as text in x and D = d/dx.
+def picard_fuchs(block: Matrix, name: str) -> Operator | None:
+    """Differential operator of one master of the block at eps = 0.
 
     The masters are first scaled by powers of eps so that the block is finite at eps = 0. Of the masters
     that generate the block (cyclic vectors) the one whose operator has the lowest degree is taken.
 
     Returns
     -------
-    text or None
+    operator or None
         None where no scaling makes the block finite, or no master is cyclic.
     """
     limit = _limit(block)
@@ -26,10 +26,7 @@ def picard_fuchs(block: Matrix, name: str) -> str | None:
         return None
     ring = block[0][0].ring
     found = [p for i in range(len(block)) if (p := _operator(limit, i, ring, name)) is not None]
-    if not found:
-        return None
-    best = min(found, key=lambda p: (sum(degree(c.numerator, ring, name) for c in p), str(p)))
-    return _text(best)
+    return min(found, key=lambda p: (p.degree(), p.text()), default=None)
 
 
 def _limit(block: Matrix) -> Matrix | None:
@@ -65,8 +62,8 @@ def _order(value: Rational) -> int:
     return lowest[0] - lowest[1]
 
 
-def _operator(matrix: Matrix, start: int, ring: Ring, name: str) -> tuple[Rational, ...] | None:
-    """Polynomial coefficients of 1, D, ..., D^n for the function `start`."""
+def _operator(matrix: Matrix, start: int, ring: Ring, name: str) -> Operator | None:
+    """The operator of the function `start`."""
     size = len(matrix)
     row: Sequence[Rational] = [ring.one if j == start else ring.zero for j in range(size)]
     chain = [tuple(row)]
@@ -82,30 +79,4 @@ def _operator(matrix: Matrix, start: int, ring: Ring, name: str) -> tuple[Ration
         combination = solve(transposed, tuple((e,) for e in chain[-1]), ring)
     except ZeroDivisionError:
         return None
-    coefficients = [*(-row[0] for row in combination), ring.one]
-    common = ring.context.constant(1)
-    for c in coefficients:
-        common = common * (c.denominator / common.gcd(c.denominator))
-    scale = ring.fraction(common, ring.context.constant(1))
-    coefficients = [c * scale for c in coefficients]
-    shared = ring.context.constant(0)
-    for c in coefficients:
-        shared = shared.gcd(c.numerator)
-    return tuple(c / ring.fraction(shared, ring.context.constant(1)) for c in coefficients)
-
-
-def _text(coefficients: Sequence[Rational]) -> str:
-    terms = []
-    for power in range(len(coefficients) - 1, -1, -1):
-        if not coefficients[power]:
-            continue
-        factor = coefficients[power].factored_text()
-        polynomial = coefficients[power].numerator
-        if len(polynomial) > 1 and factor == polynomial_text(polynomial):
-            factor = f"({factor})"
-        tail = "" if power == 0 else "D" if power == 1 else f"D^{power}"
-        if not tail:
-            terms.append(factor)
-        else:
-            terms.append(tail if factor == "1" else f"{factor}*{tail}")
-    return " + ".join(terms).replace("+ -", "- ")
+    return operator([*(-row[0] for row in combination), ring.one], name)

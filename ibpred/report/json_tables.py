@@ -9,7 +9,7 @@ from typing import Any
 from ibpred.boundary.fix import Boundary
 from ibpred.diffeq.ratios import DimensionlessSystem
 from ibpred.diffeq.system import DifferentialSystem
-from ibpred.epsform.form import EpsilonForm, Obstructed, OddLetter
+from ibpred.epsform.form import EpsilonForm, Obstructed, OddLetter, PeriodForm
 from ibpred.exact.polynomial import polynomial_text
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
@@ -157,10 +157,43 @@ def epsilon_data(
                 "reason": obstruction.reason,
                 "operator": obstruction.operator,
                 "exponents": [[place, list(found)] for place, found in obstruction.exponents],
+                "factors": list(obstruction.factors),
+                "operator_exponents": [
+                    [place, list(found)] for place, found in obstruction.operator_exponents
+                ],
+                "geometry": obstruction.geometry,
+                "period_form": None
+                if obstruction.period_form is None
+                else period_data(obstruction.period_form),
             }
             for obstruction in outcome.obstructions
         ]
     return data
+
+
+_SHOWN_TERMS = 8
+
+
+def period_data(form: PeriodForm) -> Data:
+    """An epsilon-form with periods: ``theta M = eps B M`` with theta = t d/dt, power series in t."""
+
+    def shown(numbers: Sequence[Fraction]) -> list[str]:
+        return [str(value) for value in numbers[:_SHOWN_TERMS]]
+
+    def table(rows: Sequence[Sequence[Sequence[Fraction]]]) -> list[list[Any]]:
+        return [[i, j, shown(e)] for i, row in enumerate(rows) for j, e in enumerate(row) if any(e)]
+
+    return {
+        "point": form.point,
+        "t": form.coordinate,
+        "function": [[i, value.factored_text()] for i, value in enumerate(form.row) if value],
+        "exponent": str(form.exponent),
+        "psi0": shown(form.period),
+        "kernels": [shown(kernel) for kernel in form.kernels],
+        "gauge": [[power, table(rows)] for power, rows in form.gauge],
+        "matrix": table(form.matrix),
+        "closed": [[i, j, text] for i, j, text in form.closed],
+    }
 
 
 def solution_data(family: FamilyDefinition, boundary: Boundary, solution: Solution) -> Data:

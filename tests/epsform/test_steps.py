@@ -195,11 +195,16 @@ def test_single_block_with_apparent_pole() -> None:
     assert found.residues == {"x = 0": ((1,),), "x = -1": ((-3,),)}
 
 
+def operator_text(rows):
+    found = picard_fuchs(rows, "x")
+    return None if found is None else found.text()
+
+
 def test_picard_fuchs_operator_is_read_off() -> None:
     """2(1-x) f' = f; and f'' = x f as a system."""
-    assert picard_fuchs(matrix([["1/2/(1-x)"]]), "x") == "2*(x-1)*D + 1"
+    assert operator_text(matrix([["1/2/(1-x)"]])) == "2*(x-1)*D + 1"
     # an overall 1/eps between the masters is scaled away first
-    assert picard_fuchs(matrix([["0", "1/eps"], ["eps*x", "0"]]), "x") == "D^2 - x"
+    assert operator_text(matrix([["0", "1/eps"], ["eps*x", "0"]])) == "D^2 - x"
     assert picard_fuchs(matrix([["0", "1/eps"], ["1/eps", "0"]]), "x") is None
 
 
