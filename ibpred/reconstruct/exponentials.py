@@ -43,10 +43,14 @@ def exponential_coefficients(
 
     Raises
     ------
+    ValueError
+        If there are fewer values than nodes.
     UnluckyPrimeError
         If the missing values are not determined.
     """
     count, length = len(nodes), values.shape[1]
+    if int(good.sum()) < count:
+        raise ValueError(f"{int(good.sum())} values do not determine {count} coefficients")
     if not count:
         return np.zeros((len(values), 0), dtype=np.uint64), ~(values[:, good] != 0).any(axis=1)
     master = _product([polynomial([1, prime - int(node)], prime) for node in nodes])

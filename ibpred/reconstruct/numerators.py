@@ -146,7 +146,7 @@ def numerators(
     fits = np.zeros(len(rows), dtype=np.bool_)
     scale = invert(monomials(exponents, start[:, None], prime)[:, 0], prime)
     usable = np.cumsum(sequence.good)
-    for support, members in shared_systems(supports, len(exponents)):
+    for support, members in shared_systems(supports, len(exponents), capacity):
         length = int(np.searchsorted(usable, len(support) + SURPLUS)) + 1
         values, good = sequence.values[members][:, :length], sequence.good[:length]
         solved, right = exponential_coefficients(values, good, nodes[support], prime)

@@ -113,7 +113,7 @@ def universe(
 
 
 def shared_systems(
-    supports: Sequence[NDArray[np.int64]], size: int
+    supports: Sequence[NDArray[np.int64]], size: int, capacity: int
 ) -> list[tuple[NDArray[np.int64], list[int]]]:
     """Put rows with similar supports into one linear system each, where that saves work.
 
@@ -122,9 +122,11 @@ def shared_systems(
     Parameters
     ----------
     supports
-        Indices of monomials.
+        Indices of monomials, each at most `capacity` many.
     size
         Number of monomials in all.
+    capacity
+        Monomials that the samples at hand determine.
 
     Returns
     -------
@@ -146,7 +148,8 @@ def shared_systems(
         for mask, inside in zip(masks[-_COMPARED:], members[-_COMPARED:], strict=True):
             before = int(mask.sum())
             joint = before + int((~mask[support]).sum())
-            if cost(joint, len(inside) + len(rows)) <= cost(before, len(inside)) + alone:
+            cheaper = cost(joint, len(inside) + len(rows)) <= cost(before, len(inside)) + alone
+            if joint <= capacity and cheaper:
                 mask[support] = True
                 inside.extend(rows)
                 break

@@ -202,10 +202,11 @@ def test_shared_systems_hold_every_support_and_save_work() -> None:
     random = np.random.default_rng(3)
     supports = [np.sort(random.choice(30, size, replace=False)) for size in random.integers(0, 10, 40)]
     supports += [np.arange(20), np.arange(19), np.arange(20)]
-    systems = shared_systems(supports, 30)
+    systems = shared_systems(supports, 30, 21)
     rows = [row for _, members in systems for row in members]
     assert sorted(rows) == list(range(len(supports)))
     for support, members in systems:
+        assert len(support) <= 21
         for row in members:
             assert set(supports[row]) <= set(support)
     cost = sum((len(members) + 1) * len(support) ** 2 for support, members in systems)

@@ -313,6 +313,21 @@ def test_mixed_degrees_save_samples() -> None:
     assert plan.terms == 28 * 28 < size_within([6, 6, 6, 6], 12) / 1.5
 
 
+def test_similar_numerators_that_do_not_fit_into_one_system() -> None:
+    """Together they have more monomials than there are samples for each of them."""
+    target = ring(("x", "y"))
+    random = np.random.default_rng(6)
+
+    def dense(a: int, b: int) -> Rational:
+        terms = {(i, j): int(random.integers(1, 99)) for i in range(a + 1) for j in range(b + 1)}
+        return target.fraction(target.polynomial(terms), target.context.constant(1))
+
+    functions = [dense(6, 5), dense(5, 6)]
+    found = reconstruct(Known(functions, target.names), first_primes(4), 1, target)
+    assert list(found.entries) == functions
+    assert len(found.evidence.data_primes) == 1
+
+
 def test_primes_of_large_coefficients_are_foreseen() -> None:
     for digits in (30, 100, 300):
         listener = Listener()
