@@ -251,20 +251,25 @@ def _polynomial_solution(equation: Operator, top: int) -> Rational | None:
     return sum((x**n * v for n, v in enumerate(vectors[0]) if v), ring.zero)
 
 
-def right_quotient(equation: Operator, log: Rational) -> Operator:
-    """L' with ``L = L' (D - log)``, for a right factor D - log."""
-    rest = list(equation.coefficients)
-    quotient = [equation.ring.zero] * equation.order
-    # divide from the top: c D^k = c D^(k-1) (D - log) + c D^(k-1) log
-    for k in range(equation.order, 0, -1):
-        head = rest[k]
-        quotient[k - 1] = head
-        rest[k] = equation.ring.zero
-        for j, entry in enumerate(_times_function(k - 1, log, equation.name)):
-            rest[j] = rest[j] + head * entry
-    if rest[0]:
+def right_quotient(equation: Operator, factor: Operator) -> Operator:
+    """A with ``A factor = L`` up to a function on the left.
+
+    Raises
+    ------
+    ArithmeticError
+        If the operator has no such right factor.
+    """
+    rest, name, order = list(equation.coefficients), equation.name, factor.order
+    quotient = [equation.ring.zero] * (equation.order - order + 1)
+    for k in range(equation.order - order, -1, -1):
+        head = rest[k + order] / factor.coefficients[-1]
+        quotient[k] = head
+        for j, c in enumerate(factor.coefficients):
+            for i, entry in enumerate(_times_function(k, c, name)):
+                rest[i + j] = rest[i + j] - head * entry
+    if any(rest):
         raise ArithmeticError("the operator has no such right factor")
-    return operator(quotient, equation.name)
+    return operator(quotient, name)
 
 
 def _times_function(power: int, log: Rational, name: str) -> list[Rational]:
@@ -297,15 +302,16 @@ def factors(equation: Operator) -> tuple[Operator, ...]:
     log = exponential_solution(equation)
     if log is not None:
         first = operator([-log, log.ring.one], equation.name)
-        return (*factors(right_quotient(equation, log)), first)
+        return (*factors(right_quotient(equation, first)), first)
     if equation.order <= 2:
         return (equation,)
-    log = exponential_solution(adjoint(equation))
+    other = adjoint(equation)
+    log = exponential_solution(other)
     if log is None:
         return (equation,)
-    # L* = M (D - log), so L = (-D - log) M*
-    rest = adjoint(right_quotient(adjoint(equation), log))
-    return (operator([log, log.ring.one], equation.name), *factors(rest))
+    # L* = M (D - log), so M* is a right factor of L
+    rest = adjoint(right_quotient(other, operator([-log, log.ring.one], equation.name)))
+    return (right_quotient(equation, rest), *factors(rest))
 
 
 def symmetric_root(equation: Operator) -> Operator | None:

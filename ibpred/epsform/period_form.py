@@ -125,7 +125,7 @@ def _at_point(
     while (lowest := min((p for p, m in matrix.items() if _nonzero(m)), default=1)) < 1:
         step = [[integral(-e) for e in row] for row in matrix[lowest]]
         matrix = _gauged(matrix, lowest, step, length)
-        gauge = _product({0: _unit(size), lowest: step}, gauge, length)
+        gauge = _product(_forward(lowest, step), gauge, length)
     leading = _leading(found, point)
     whole, gauge = _without_square(matrix[1], gauge, links.period, leading, length)
     coordinate, _ = _coordinate(point, name)
@@ -212,10 +212,16 @@ def _product(left: Graded, right: Graded, length: int) -> Graded:
     return found
 
 
+def _forward(order: int, step: SeriesMatrix) -> Graded:
+    """``1 + eps^order X``."""
+    unit = _unit(len(step))
+    return {0: unit, order: step} if order else {0: _sum(unit, step)}
+
+
 def _gauged(matrix: Graded, order: int, step: SeriesMatrix, length: int) -> Graded:
     """The system of ``(1 + eps^order X) E``, X strictly lower triangular."""
     size = len(step)
-    forward: Graded = {0: _unit(size), order: step} if order else {0: _sum(_unit(size), step)}
+    forward = _forward(order, step)
     slope: Graded = {order: [[theta(e) for e in row] for row in step]}
     back: Graded = {0: _unit(size)}
     power: Graded = {0: _unit(size)}
@@ -293,8 +299,7 @@ def _without_square(
     if own[-2] != link[-2] * ratio:
         return matrix, gauge
     step = [[flint.fmpq_poly([0])] * 2, [flint.fmpq_poly([ratio]), flint.fmpq_poly([0])]]
-    unit = {0: _sum(_unit(2), step)}
-    return _gauged({1: matrix}, 0, step, length)[1], _product(unit, gauge, length)
+    return _gauged({1: matrix}, 0, step, length)[1], _product(_forward(0, step), gauge, length)
 
 
 def _closed_text(above: Series, leading: Series, e: int) -> str:

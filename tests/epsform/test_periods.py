@@ -1,0 +1,195 @@
+"""Blocks without epsilon-form: operators, geometry, the form with periods."""
+
+from __future__ import annotations
+
+from fractions import Fraction
+
+import flint
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from synthetic_systems import RING, connection, matrix
+
+from ibpred.epsform.factorise import factorise
+from ibpred.epsform.form import Obstructed, PeriodForm
+from ibpred.epsform.geometry import geometry
+from ibpred.epsform.operators import (
+    Operator,
+    adjoint,
+    factors,
+    is_self_adjoint,
+    maximal_points,
+    operator,
+    right_quotient,
+    singular_points,
+    symmetric_root,
+)
+from ibpred.epsform.power_series import expansion, inverse, series, theta, times
+from ibpred.exact.grammar import parse_rational
+from ibpred.exact.primes import first_primes
+
+PRIMES = first_primes(20)
+
+
+def made(*texts: str) -> Operator:
+    return operator([parse_rational(text, RING) for text in texts], "x")
+
+
+SUNRISE = made("x+3", "3*x^2+20*x+9", "x*(x+1)*(x+9)")
+BANANA = made("x+4", "7*x^2+68*x+64", "6*x*(x^2+15*x+32)", "x^2*(x+4)*(x+16)")
+
+
+def composed(left: Operator, right: Operator) -> Operator:
+    """The product, by the definition: derivatives of the right one, one after the other."""
+    zero = RING.zero
+    total = [zero] * (left.order + right.order + 1)
+    row = [*right.coefficients, *([zero] * left.order)]
+    for c in left.coefficients:
+        total = [a + c * b for a, b in zip(total, row, strict=True)]
+        shifted = [zero, *row[:-1]]
+        row = [e.derivative("x") + s for e, s in zip(row, shifted, strict=True)]
+    return operator(total, "x")
+
+
+def test_exponents_of_the_published_operators() -> None:
+    """Laporta, Remiddi, hep-ph/0406160; Vanhove, arXiv:1401.6438 (from memory)."""
+    assert [p.exponents for p in singular_points(SUNRISE)] == [(0, 0), (0, 0), (0, 0), (1, 1)]
+    half = Fraction(1, 2)
+    assert [p.exponents for p in singular_points(BANANA)] == [
+        (0, 0, 0),
+        (0, half, 1),
+        (0, half, 1),
+        (1, 1, 1),
+    ]
+    assert [p.text("x") for p in maximal_points(BANANA)] == ["x = 0", "x = infinity"]
+
+
+def test_quadratic_singular_points() -> None:
+    (first, last) = singular_points(made("2", "3*x", "x^2+1"))
+    assert (first.text("x"), first.exponents) == ("x^2+1 = 0", (Fraction(-1, 2), 0))
+    assert last.exponents == ()  # s^2 - 2 s + 2 = 0 has no rational root
+
+
+@settings(max_examples=20, deadline=None)
+@given(st.integers(-3, 3), st.integers(-3, 3), st.integers(1, 4))
+def test_factors_of_order_one_are_found_on_both_sides(a: int, b: int, c: int) -> None:
+    first = made(f"-({a}*(x-{c})+{b}*x)", f"x*(x-{c})")  # x^a (x-c)^b
+    for whole in (composed(SUNRISE, first), composed(first, SUNRISE)):
+        parts = factors(whole)
+        assert sorted(p.order for p in parts) == [1, 2]
+        product = composed(parts[0], parts[1])
+        assert product == whole
+    assert right_quotient(composed(SUNRISE, first), first) == SUNRISE
+
+
+def test_adjoint_twice_is_the_identity() -> None:
+    assert adjoint(adjoint(BANANA)) == BANANA
+
+
+def test_symmetric_square() -> None:
+    """The three-loop banana operator is a symmetric square (Joyce 1973 for the diamond lattice)."""
+    root = symmetric_root(BANANA)
+    assert root is not None
+    assert root.order == 2
+    changed = made("x+5", "7*x^2+68*x+64", "6*x*(x^2+15*x+32)", "x^2*(x+4)*(x+16)")
+    assert symmetric_root(changed) is None
+    assert is_self_adjoint(BANANA)
+    assert is_self_adjoint(SUNRISE)
+
+
+def test_geometries() -> None:
+    assert "elliptic curve" in geometry(SUNRISE, factors(SUNRISE))
+    assert "K3 surface" in geometry(BANANA, factors(BANANA))
+    four = made(
+        "x+5",
+        "(3*x+5)*(5*x+57)",
+        "25*x^3+518*x^2+1839*x+450",
+        "2*x*(5*x^3+140*x^2+777*x+450)",
+        "x^2*(x+1)*(x+9)*(x+25)",
+    )
+    assert "a Calabi-Yau variety of dimension 3" in geometry(four, factors(four))
+
+
+@settings(max_examples=20, deadline=None)
+@given(st.lists(st.integers(-9, 9), min_size=1, max_size=8))
+def test_inverse_of_a_power_series(numbers: list[int]) -> None:
+    value = series([1, *numbers])
+    assert times(value, inverse(value, 20), 20) == flint.fmpq_poly([1])
+
+
+def two_dimensional_sunrise() -> list[list[str]]:
+    """psi and psi' of the operator for generic eps (d = 2 - 2 eps), as a system."""
+    lower = ["-(2*eps+1)*(eps*x-eps+x+3)", "-(3*eps*x^2+10*eps*x+3*x^2-9*eps+20*x+9)"]
+    return [["0", "1"], [f"{text}/(x*(x+1)*(x+9))" for text in lower]]
+
+
+def two_dimensional_banana() -> list[list[str]]:
+    """The same at three loops for psi, x psi', x^2 psi''."""
+    c0 = "(2*eps+1)*(3*eps+1)*(eps*x-2*eps+x+4)"
+    c1 = "(11*eps^2*x^2+28*eps^2*x+18*eps*x^2-64*eps^2+120*eps*x+7*x^2+68*x+64)"
+    c2 = "6*(eps*x^2+10*eps*x+x^2+15*x+32)/x"
+    below = "((x+16)*(x+4))"
+    last = [f"-{c0}/{below}", f"-{c1}/(x*{below})", f"2/x-{c2}/{below}"]
+    return [["0", "1/x", "0"], ["0", "1/x", "1/x"], last]
+
+
+def found_form(rows: list[list[str]]) -> PeriodForm:
+    outcome = factorise(connection(matrix(rows), (len(rows),)), PRIMES, seed=1)
+    assert isinstance(outcome, Obstructed)
+    form = outcome.obstructions[0].period_form
+    assert form is not None
+    return form
+
+
+def rows_of(form: PeriodForm, rows: list[list[str]], eps: Fraction, length: int):
+    """The transformation ``M = V I`` as power series at a numeric eps, and the block likewise, t = x."""
+    point = {"eps": eps}
+    block = [[parse_rational(e, RING) * RING.variable("x") for e in row] for row in rows]
+    local = [[expansion(e.substitute(point), "x", length) for e in row] for row in block]
+    kernels = [series(k) for k in form.kernels]
+    period = inverse(series(form.period), length)
+    size = len(rows)
+    chain = [[times(expansion(e.substitute(point), "x", length), period, length) for e in form.row]]
+    for k in range(size - 1):
+        last, factor = chain[-1], inverse(kernels[k], length)
+        new = []
+        for j in range(size):
+            total = theta(last[j])
+            for i in range(size):
+                total = total + times(last[i], local[i][j], length)
+            new.append(times(total, factor, length) * (1 / flint.fmpq(eps.numerator, eps.denominator)))
+        chain.append(new)
+    whole = [[flint.fmpq_poly([0])] * size for _ in range(size)]
+    for power, table in form.gauge:
+        scale = flint.fmpq(eps.numerator, eps.denominator) ** power
+        for i in range(size):
+            for k in range(size):
+                for j in range(size):
+                    whole[i][j] = whole[i][j] + times(series(table[i][k]), chain[k][j], length) * scale
+    return whole, local
+
+
+@pytest.mark.parametrize("rows", [two_dimensional_sunrise(), two_dimensional_banana()], ids=["two", "three"])
+@pytest.mark.parametrize("eps", [Fraction(1, 7), Fraction(-3, 5)])
+def test_period_forms_by_substitution(eps: Fraction, rows: list[list[str]]) -> None:
+    """M = V I with power series V turns the block at numeric eps into eps B."""
+    form, length = found_form(rows), 24
+    transformation, local = rows_of(form, rows, eps, length)
+    scale = flint.fmpq(eps.numerator, eps.denominator)
+    size = len(rows)
+    for i in range(size):
+        for j in range(size):
+            left = theta(transformation[i][j])
+            right = flint.fmpq_poly([0])
+            for k in range(size):
+                left = left + times(transformation[i][k], local[k][j], length)
+                right = right + times(series(form.matrix[i][k]), transformation[k][j], length) * scale
+            assert (left - right).truncate(length - 1) == 0
+
+
+def test_kernels_of_the_sunrise_are_the_published_ones() -> None:
+    """The kernel below the diagonal is (x-3)^4 psi0^2/(...) (Adams, Weinzierl; from memory)."""
+    closed = {(i, j): text for i, j, text in found_form(two_dimensional_sunrise()).closed}
+    assert closed[0, 1] == "9/(t^2+10*t+9)*psi0^-2"
+    assert closed[0, 0] == closed[1, 1] == "(-3*t^2-10*t+9)/(2*(t^2+10*t+9))"
+    assert closed[1, 0] == "(t^4-12*t^3+54*t^2-108*t+81)/(36*(t^2+10*t+9))*psi0^2"
