@@ -18,6 +18,7 @@ from typing import TypeVar
 import numpy as np
 from numpy.typing import NDArray
 
+import ibpred
 from ibpred.digest import canonical_bytes, digest
 from ibpred.elimination.tape import Tape
 from ibpred.errors import StoreError
@@ -112,6 +113,7 @@ class StoredDeck:
 
     def recorded(self, key: str, record: Callable[[], Recorded]) -> Recorded:
         """A tape from the store, or recorded and kept."""
+        key = digest(["tape", ibpred.__version__, key])
         stored = self.store.get_bytes(key)
         if stored is not None:
             return _unpacked(stored)
@@ -126,7 +128,7 @@ class StoredDeck:
 
     def notes(self, tape: Tape) -> StoredNotes:
         """Parts of the reconstruction from a tape."""
-        return StoredNotes(tape.digest(), self)
+        return StoredNotes(digest([ibpred.__version__, tape.digest()]), self)
 
 
 @dataclass(frozen=True)
