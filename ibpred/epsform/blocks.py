@@ -67,11 +67,14 @@ class Finding:
     branch_points
         Where half-integer exponents call for a square root, in case that is the only reason: rational
         points, and None for infinity.
+    common
+        Letters at which all exponents are half-integers: a square root of them multiplies the whole block.
     """
 
     reason: str
     exponents: tuple[tuple[str, tuple[str, ...]], ...]
     branch_points: tuple[Fraction | None, ...] = ()
+    common: Tag = ()
 
 
 def linear(shift: Fraction, slope: Fraction) -> Exponent:

@@ -29,6 +29,7 @@ from ibpred.epsform.matrices import derivative, identity, inverse, product, subt
 from ibpred.epsform.pencil import times_constant
 from ibpred.epsform.probe import Probe, glued_at, letter_residues, probe
 from ibpred.epsform.sections import Glued
+from ibpred.epsform.tags import Tag, between_functions
 from ibpred.errors import ReconstructionError
 from ibpred.exact.rational import Ring, ring
 from ibpred.reconstruct.functions import reconstruct
@@ -132,12 +133,20 @@ def solve_coupled_many(
     if isinstance(outcome, Obstructed):
         reason = f"on the line {name} = {probed.base}: {outcome.obstructions[0].reason}"
         return Finding(reason, outcome.obstructions[0].exponents)
+    if len(set(outcome.tags)) > 1:
+        roots = ", ".join(f"sqrt({root})" for root in outcome.radicands)
+        return Finding(
+            f"on the line {name} = {probed.base} functions of one block carry different square roots, made "
+            f"of {roots}: variables in which they are rational are needed",
+            (),
+        )
+    tag = tuple(outcome.radicands[k].to_ring(field) for k in outcome.tags[0])
     columns = _Columns(pattern, probed, outcome.transformation, None)
     columns = _Columns(pattern, probed, outcome.transformation, _shape(columns, usable[0], seed, subject))
     rebuilt = reconstruct(columns, usable, seed, rest).entries
     coefficients = iter([entry.to_ring(field) for entry in rebuilt])
     transformation = matrix_of(columns.shape or (), coefficients, field, name)
-    return _finished(block, transformation, primes, seed)
+    return _finished(block, transformation, tag, primes, seed)
 
 
 def _shape(columns: _Columns, prime: int, seed: int, subject: str) -> Shape:
@@ -154,8 +163,10 @@ def _shape(columns: _Columns, prime: int, seed: int, subject: str) -> Shape:
     raise ReconstructionError(f"{subject}: too few points at which its poles have roots modulo the prime")
 
 
-def _finished(block: Connection, transformation: Matrix, primes: Sequence[int], seed: int) -> Block | Finding:
-    """Factor eps out of the Fuchsian form that a change of basis leads to."""
+def _finished(
+    block: Connection, transformation: Matrix, tag: Tag, primes: Sequence[int], seed: int
+) -> Block | Finding:
+    """Factor eps out of the Fuchsian form that a change of basis leads to, a common root split off."""
     field: Ring = block.ring
     size = len(transformation)
     rows = [range(size)]
@@ -168,7 +179,8 @@ def _finished(block: Connection, transformation: Matrix, primes: Sequence[int], 
         )
         for name, matrix in block.matrices.items()
     }
-    tags = ((),) * size
+    tags = (tag,) * size
+    matrices = {name: between_functions(m, tags, name, field) for name, m in matrices.items()}
     system = fuchsian(matrices, rows, tags, field, primes[0], seed)
     if isinstance(system, Stuck):
         return system.finding
@@ -178,4 +190,4 @@ def _finished(block: Connection, transformation: Matrix, primes: Sequence[int], 
     whole, change = simplified(product(transformation, factored.matrix, field), rows, field)
     residues = {text: conjugated(a, change) for text, a in factored.residues.items()}
     nonzero = {text: a for text, a in residues.items() if any(v for row in a for v in row)}
-    return Block(whole, inverse(whole, field), nonzero)
+    return Block(whole, inverse(whole, field), nonzero, tag)

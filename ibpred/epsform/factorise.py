@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
+from dataclasses import replace
 from fractions import Fraction
 
 from ibpred.epsform.assemble import assembled
@@ -12,14 +13,20 @@ from ibpred.epsform.coupled_many import solve_coupled_many
 from ibpred.epsform.cover import Cover, branch_points, describe, double_cover
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed, Obstruction
 from ibpred.epsform.geometry import obstruction
+from ibpred.epsform.matrices import added, identity, scaled
 from ibpred.epsform.single import solve_single
 from ibpred.epsform.structure import coupled_blocks, couplings, reachable, restricted
+from ibpred.epsform.tags import Tag, canonical
 from ibpred.errors import UnfinishedError
 from ibpred.progress import SILENT, Progress
 
 
 def factorise(
-    connection: Connection, primes: Sequence[int], seed: int, progress: Progress | None = None
+    connection: Connection,
+    primes: Sequence[int],
+    seed: int,
+    progress: Progress | None = None,
+    expired: Callable[[], bool] | None = None,
 ) -> EpsilonForm | Obstructed:
     """Bring a system to epsilon-factorised form, or say what is in the way.
 
@@ -38,6 +45,9 @@ def factorise(
         Of the sample points.
     progress
         Told about the blocks done.
+    expired
+        Asked before each coupled block whether the time is over. The blocks that are left then count as
+        obstructed, with a sentence that says so, and the outcome is marked as incomplete.
 
     Returns
     -------
@@ -56,8 +66,12 @@ def factorise(
     links = couplings(connection)
     solved: dict[tuple[int, ...], Block] = {}
     obstructions: list[Obstruction] = []
-    for rows, outcome in diagonal_blocks(connection, primes, seed, progress):
-        if isinstance(outcome, Finding):
+    complete = True
+    for rows, outcome in diagonal_blocks(connection, primes, seed, progress, expired):
+        if outcome is None:
+            complete = False
+            obstructions.append(Obstruction(rows, _OVER, None, ()))
+        elif isinstance(outcome, Finding):
             outcome = on_cover(outcome, restricted(connection, rows), primes, seed)
             obstructions.append(obstruction(connection, rows, outcome, primes, seed))
         else:
@@ -69,7 +83,7 @@ def factorise(
         stuck = {row for found in obstructions for row in found.rows}
         free = tuple(block for block in blocks if not reach[block[0]] & stuck)
         if not free:
-            return Obstructed(tuple(obstructions), (), None)
+            return Obstructed(tuple(obstructions), (), None, complete)
         outcome_ = assembled(connection, free, [solved[block] for block in free], primes, seed)
         if isinstance(outcome_, EpsilonForm):
             break
@@ -78,25 +92,59 @@ def factorise(
         obstructions.append(Obstruction(rows, stuck_at.reason, None, stuck_at.exponents))
     if not obstructions:
         return outcome_
-    return Obstructed(tuple(obstructions), tuple(sorted(i for block in free for i in block)), outcome_)
+    rows_solved = tuple(sorted(i for block in free for i in block))
+    return Obstructed(tuple(obstructions), rows_solved, outcome_, complete)
+
+
+_OVER = "not looked at: the time allowed was over before this block's turn"
 
 
 def diagonal_blocks(
-    connection: Connection, primes: Sequence[int], seed: int, progress: Progress
-) -> tuple[tuple[tuple[int, ...], Block | Finding], ...]:
-    """The sets of rows that depend on each other, each with its epsilon-form or what is in the way."""
+    connection: Connection,
+    primes: Sequence[int],
+    seed: int,
+    progress: Progress,
+    expired: Callable[[], bool] | None = None,
+) -> tuple[tuple[tuple[int, ...], Block | Finding | None], ...]:
+    """The sets of rows that depend on each other, each with its epsilon-form or what is in the way.
+
+    None for coupled blocks that were not looked at since the time was over.
+    """
     blocks = coupled_blocks(couplings(connection))
     progress.stage("epsilon-form of the diagonal blocks")
-    found: list[tuple[tuple[int, ...], Block | Finding]] = []
+    found: list[tuple[tuple[int, ...], Block | Finding | None]] = []
     for rows in blocks:
-        found.append((rows, _solve_block(restricted(connection, rows), primes, seed)))
+        if len(rows) > 1 and expired is not None and expired():
+            found.append((rows, None))
+        else:
+            found.append((rows, _solve_block(restricted(connection, rows), primes, seed)))
         progress.advance(len(found), len(blocks))
     return tuple(found)
 
 
 def _solve_block(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
+    """A block, a square root that multiplies all of it split off as its tag."""
     if len(block.labels) == 1:
         return solve_single({name: block.matrices[name][0][0] for name in block.variables})
+    outcome = _solve_coupled(block, primes, seed)
+    if not isinstance(outcome, Finding) or not outcome.common:
+        return outcome
+    rooted = _solve_coupled(_times_root(block, outcome.common), primes, seed)
+    if isinstance(rooted, Finding):
+        return outcome
+    return replace(rooted, tag=canonical((*outcome.common, *rooted.tag)))
+
+
+def _times_root(block: Connection, tag: Tag) -> Connection:
+    """The system of ``sqrt(tag) I``."""
+    matrices = {}
+    for name, matrix in block.matrices.items():
+        log = sum((factor.derivative(name) / factor for factor in tag), block.ring.zero) / 2
+        matrices[name] = added(matrix, scaled(identity(block.ring, len(matrix)), log))
+    return replace(block, matrices=matrices)
+
+
+def _solve_coupled(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
     subject = f"block {', '.join(block.labels)}"
     if len(block.variables) > 1:
 
@@ -142,7 +190,7 @@ def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cove
             points = outcome.branch_points
             if len(points) == 2 and _helps(restricted(connection, rows), points, primes, seed, _COVERS):
                 return double_cover(connection, points)
-        elif outcome.tag:
+        elif outcome is not None and outcome.tag:
             rational = branch_points(outcome.tag, connection.variables[0])
             if rational is not None and len(rational) == 2:
                 return double_cover(connection, rational)

@@ -16,6 +16,7 @@ from ibpred.epsform.blocks import (
 )
 from ibpred.epsform.local import Obstacle, Trouble
 from ibpred.epsform.places import Place
+from ibpred.epsform.tags import Tag, tag_of
 
 
 def finding(obstacle: Obstacle, places: Sequence[Place], name: str) -> Finding:
@@ -36,7 +37,21 @@ def finding(obstacle: Obstacle, places: Sequence[Place], name: str) -> Finding:
         (text(index), tuple(exponent_text(e) for e in found)) for index, found in obstacle.exponents
     )
     branch = _branch_points(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
-    return Finding(_reason(obstacle, text(obstacle.point)), exponents, branch)
+    common = _common_roots(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
+    return Finding(_reason(obstacle, text(obstacle.point)), exponents, branch, common)
+
+
+def _common_roots(obstacle: Obstacle, places: Sequence[Place]) -> Tag:
+    """Fixed places with half-integer exponents only."""
+    found: dict[str, Place] = {}
+    for index, exponents in obstacle.exponents:
+        if index >= 0 and not places[index].moves and all(e.shift.denominator == 2 for e in exponents):
+            found[places[index].text()] = places[index]
+    if not found:
+        return ()
+    first = next(iter(found.values()))
+    variables = tuple(name for name in first.ring.names if name != "eps")
+    return tag_of([place.polynomial for place in found.values()], first.ring, variables)
 
 
 def _branch_points(obstacle: Obstacle, places: Sequence[Place]) -> tuple[Fraction | None, ...]:

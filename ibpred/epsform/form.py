@@ -179,8 +179,11 @@ class Obstructed:
     solved
         The epsilon-form of that subsystem, its functions in the order of `rows`; None where there
         is no such row, or where the subsystem as a whole is obstructed too.
+    complete
+        False where the time was over before all blocks were looked at.
     """
 
     obstructions: tuple[Obstruction, ...]
     rows: tuple[int, ...]
     solved: EpsilonForm | None
+    complete: bool = True

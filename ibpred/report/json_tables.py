@@ -151,6 +151,7 @@ def epsilon_data(
         ]
     if isinstance(outcome, Obstructed):
         data["rows"] = list(outcome.rows)
+        data["complete"] = outcome.complete
         data["obstructions"] = [
             {
                 "rows": list(obstruction.rows),

@@ -136,7 +136,7 @@ def epsilon_text(data: Data) -> str:
         for name, text in data["ratios"].items()
     ]
     if data["obstructions"]:
-        lines.append("no ε-form was found:")
+        lines.append("no ε-form was found:" if data.get("complete", True) else "not finished in the time:")
         for obstruction in data["obstructions"]:
             lines.append(
                 f"  rows {', '.join(str(r + 1) for r in obstruction['rows'])}: {obstruction['reason']}"

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from itertools import product
@@ -224,15 +224,26 @@ class Chain(Stages):
         labels = tuple(self.label(i) for i in range(len(self.masters().masters)))
         return Connection(system.ratios, system.ring, system.matrices, system.blocks, labels)
 
-    def epsilon_form(self) -> EpsilonForm | Obstructed:
-        """The epsilon-factorised form, or what stands in its way."""
+    def epsilon_form(self, expired: Callable[[], bool] | None = None) -> EpsilonForm | Obstructed:
+        """The epsilon-factorised form, or what stands in its way.
+
+        Parameters
+        ----------
+        expired
+            Tells when the time is over; what was reached is returned then, and not kept.
+        """
         connection = self.connection()
-        stored = self._kept(
-            "epsilon-form",
-            _Outcome,
-            None,
-            lambda: _outcome(self._normalised(factorise(connection, self.primes, SEED, self.progress))),
-        )
+
+        def compute() -> _Outcome:
+            found = factorise(connection, self.primes, SEED, self.progress, expired)
+            if isinstance(found, Obstructed) and not found.complete:
+                raise _StoppedError(found)
+            return _outcome(self._normalised(found))
+
+        try:
+            stored = self._kept("epsilon-form", _Outcome, None, compute)
+        except _StoppedError as stopped:
+            return stopped.reached
         found = stored.form if stored.form is not None else stored.obstructed
         assert found is not None
         return found
@@ -384,6 +395,14 @@ def _trivial_form(count: int) -> EpsilonForm:
 @dataclass(frozen=True)
 class _Counts:
     sectors: tuple[SectorCount, ...]
+
+
+class _StoppedError(Exception):
+    """Carries what was reached when the time was over past the store."""
+
+    def __init__(self, reached: Obstructed) -> None:
+        super().__init__("the time is over")
+        self.reached = reached
 
 
 @dataclass(frozen=True)

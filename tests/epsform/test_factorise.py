@@ -13,7 +13,7 @@ from ibpred.epsform.exponents import exponents
 from ibpred.epsform.factorise import factorise, root_cover
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
 from ibpred.epsform.matrices import added, derivative, inverse, product
-from ibpred.epsform.verify import canonical_matrix, verify, verify_modular
+from ibpred.epsform.verify import canonical_matrix, is_integrable, verify, verify_modular
 from ibpred.errors import ReconstructionError, UnfinishedError
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes
@@ -370,3 +370,42 @@ def test_system_without_ratios_is_refused() -> None:
     none = ring(("eps",))
     with pytest.raises(UnfinishedError, match="without ratios"):
         factorise(Connection((), none, {}, (1,), ("I",)), PRIMES, seed=1)
+
+
+def test_time_that_is_over() -> None:
+    """Uncoupled rows are solved; coupled ones are named as not looked at."""
+    system, _ = scrambled(Random(3), [1, 2, 1], [0, -1, 2])
+    found = factorise(system, PRIMES, 1, None, lambda: True)
+    assert isinstance(found, Obstructed)
+    assert not found.complete
+    assert all("time" in o.reason for o in found.obstructions)
+    assert found.solved is not None
+    assert factorise(system, PRIMES, 1, None, lambda: False) == solved(system)
+
+
+def test_square_root_that_multiplies_a_whole_block() -> None:
+    """sqrt(x (x-5)) times two coupled functions is a tag of both."""
+    system, _ = scrambled(Random(5), [2], [0, -1, 2])
+    root = matrix([["-1/2/x-1/2/(x-5)" if i == j else "0" for j in range(2)] for i in range(2)])
+    form = solved(connection(added(system.matrices["x"], root), (2,)))
+    assert [str(r) for r in form.radicands] == ["x", "-x+5"]
+    assert form.tags == ((0, 1), (0, 1))
+
+
+def test_square_root_of_a_block_in_two_ratios() -> None:
+    """The root of x y - 1 times the two coupled rows of the box with one leg, uncoupled from the others."""
+    letters = {text: [row[2:] for row in rows[2:]] for text, rows in ONE_LEG_BOX.items()}
+    letters = {text: rows for text, rows in letters.items() if any(v for row in rows for v in row)}
+    whole = two_ratios(letters, [["1", "1/x"], ["y", "eps"]])
+    root = parse_rational("x*y-1", TWO)
+    matrices = {
+        name: tuple(
+            tuple(e - (root.derivative(name) / root / 2 if i == j else 0) for j, e in enumerate(row))
+            for i, row in enumerate(rows)
+        )
+        for name, rows in whole.matrices.items()
+    }
+    form = solved(replace(whole, matrices=matrices), ENGINE_PRIMES)
+    assert [str(r) for r in form.radicands] == ["-x*y+1"]
+    assert form.tags == ((0,), (0,))
+    assert is_integrable(form)
