@@ -35,7 +35,7 @@ def test_a_run_killed_again_and_again(tmp_path: Path) -> None:
     assert whole.returncode == 0, whole.stderr
     deaths = 0
     while True:
-        found = child("box-one-leg", tmp_path / "parts", 4)
+        found = child("box-one-leg", tmp_path / "parts", 9)
         if found.returncode == 0:
             break
         assert found.returncode == -signal.SIGKILL, found.stderr
