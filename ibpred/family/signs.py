@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Collection
 from itertools import combinations
 
 from ibpred.exact.rational import Polynomial, Rational
@@ -27,7 +28,11 @@ def euclidean_signs(family: FamilyDefinition) -> dict[str, int] | None:
         crossed massless boxes.
     """
     first, second = symanzik(family)
-    coefficients = {*first.terms.values(), *second.terms.values()}
+    return positive_signs(family, {*first.terms.values(), *second.terms.values()})
+
+
+def positive_signs(family: FamilyDefinition, coefficients: Collection[Rational]) -> dict[str, int] | None:
+    """Signs of all invariants for which no term of any coefficient is negative; see `euclidean_signs`."""
     names = tuple(invariant.name for invariant in family.invariants)
     of_masses = masses(family)
     usual = {name: 1 if name in of_masses else -1 for name in names}

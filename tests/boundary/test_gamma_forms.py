@@ -172,9 +172,20 @@ def test_which_masters_have_closed_forms() -> None:
     double_box = family("planar-double-box")
     assert gamma_form(double_box, (1, 1, 1, 1, 1, 1, 1, 0, 0)) is None
     assert gamma_form(double_box, (1, 0, 1, 0, 1, 1, 0, -1, 0)) is None
-    assert gamma_form(family("heavy-quark-self-energy"), (1, 1)) is None
     crossed = family("crossed-vertex")
     assert gamma_form(crossed, (1, 1, 1, 1, 1, 1, *(0,) * (len(crossed.lines) - 6))) is None
+
+
+@pytest.mark.parametrize("powers", [(1, 1), (2, 1), (1, 3)])
+def test_static_self_energy(powers: tuple[int, int]) -> None:
+    """``Gamma(2a + b - d) Gamma(d/2 - a) / (Gamma(a) Gamma(b)) (-2w)^(d - 2a - b)`` for lines -k^2 and
+    -2 k.v - 2 w (as in Broadhurst, Grozin, hep-ph/9410240)."""
+    a, b = powers
+    eps = mpf("0.17")
+    d = 4 - 2 * eps
+    expected = gamma(2 * a + b - d) * gamma(d / 2 - a) / (gamma(a) * gamma(b)) * exp(eps * euler)
+    form = gamma_form(family("heavy-quark-self-energy"), powers)
+    assert mp.almosteq(value(form, {"w": -3}, eps), expected * mpf(6) ** (d - 2 * a - b), 1e-12)
 
 
 def test_triangle_with_light_like_legs() -> None:
