@@ -67,6 +67,8 @@ class Finding:
     branch_points
         Where half-integer exponents call for a square root, in case that is the only reason: rational
         points, and None for infinity.
+    variable
+        The ratio in which these are points.
     common
         Letters at which all exponents are half-integers: a square root of them multiplies the whole block.
     """
@@ -74,6 +76,7 @@ class Finding:
     reason: str
     exponents: tuple[tuple[str, tuple[str, ...]], ...]
     branch_points: tuple[Fraction | None, ...] = ()
+    variable: str = ""
     common: Tag = ()
 
 

@@ -11,7 +11,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from fractions import Fraction
 
-from ibpred.epsform.form import Connection, Matrix
+from ibpred.epsform.form import Connection
+from ibpred.epsform.matrices import scaled
 from ibpred.epsform.tags import Tag
 from ibpred.errors import InputError
 from ibpred.exact.rational import Rational, Ring, ring
@@ -27,16 +28,20 @@ class Cover:
         The system in the new ratio w.
     substitution
         x as a function of w, in the ring of the new connection.
-    ratio
-        The old ratio x.
+    ratio, new
+        The old ratio x and the new one w.
     branch_points
         The two points that were branch points; None for infinity.
+    needed
+        Whether a coupled block has no epsilon-form without it.
     """
 
     connection: Connection
     substitution: Rational
     ratio: str
+    new: str
     branch_points: tuple[Fraction | None, ...]
+    needed: bool
 
 
 def new_ratio(names: tuple[str, ...]) -> str:
@@ -47,8 +52,15 @@ def new_ratio(names: tuple[str, ...]) -> str:
     return name
 
 
-def branch_points(tag: Tag, name: str) -> tuple[Fraction | None, ...] | None:
-    """Where the square root of a product branches; None where some branch point is not rational."""
+def branch_points(tag: Tag) -> tuple[str, tuple[Fraction | None, ...]] | None:
+    """The ratio on which a square root depends, and where it branches.
+
+    None where it depends on several ratios, or a branch point is not rational.
+    """
+    names = {name for factor in tag for name in factor.variables()}
+    if len(names) != 1:
+        return None
+    (name,) = names
     points: list[Fraction | None] = []
     for factor in tag:
         slope = factor.derivative(name)
@@ -57,7 +69,7 @@ def branch_points(tag: Tag, name: str) -> tuple[Fraction | None, ...] | None:
         points.append(-(factor.substitute({name: 0}) / slope).to_fraction())
     if len(points) % 2:
         points.append(None)
-    return tuple(points)
+    return name, tuple(points)
 
 
 def parametrisation(points: tuple[Fraction | None, ...], target: Ring, name: str) -> Rational:
@@ -78,35 +90,43 @@ def parametrisation(points: tuple[Fraction | None, ...], target: Ring, name: str
     return (1 - w) ** 2 / w * ((a - b) / 4) + a
 
 
-def pulled_back(matrix: Matrix, name: str, substitution: Rational, new: str) -> Matrix:
-    """``A(x(w)) dx/dw``."""
-    slope = substitution.derivative(new)
-    return tuple(
-        tuple(
-            entry.substitute({name: substitution}) * slope if entry else substitution.ring.zero
-            for entry in row
-        )
-        for row in matrix
-    )
+def double_cover(
+    connection: Connection, name: str, points: tuple[Fraction | None, ...], needed: bool = False
+) -> Cover:
+    """Pull a system back to the double cover of one of its ratios with the given branch points.
 
-
-def double_cover(connection: Connection, points: tuple[Fraction | None, ...]) -> Cover:
-    """Pull a system in one ratio back to the double cover with the given branch points.
+    Parameters
+    ----------
+    connection
+        The system.
+    name
+        The ratio.
+    points
+        Its two branch points; None for infinity.
+    needed
+        See `Cover`.
 
     Raises
     ------
     InputError
-        If there are not two different points, or not one ratio.
+        If there are not two different points.
     """
-    if len(connection.variables) != 1:
-        raise InputError("a double cover is taken of systems in one ratio")
-    name = connection.variables[0]
     new = new_ratio(connection.ring.names)
     target = ring(new if n == name else n for n in connection.ring.names)
     substitution = parametrisation(points, target, new)
-    matrix = pulled_back(connection.matrices[name], name, substitution, new)
-    whole = Connection((new,), target, {new: matrix}, connection.blocks, connection.labels)
-    return Cover(whole, substitution, name, points)
+    slope = substitution.derivative(new)
+    matrices = {}
+    for variable, matrix in connection.matrices.items():
+        moved = tuple(
+            tuple(e.substitute({name: substitution}) if e else target.zero for e in row) for row in matrix
+        )
+        if variable == name:
+            matrices[new] = scaled(moved, slope)
+        else:
+            matrices[variable] = moved
+    variables = tuple(new if v == name else v for v in connection.variables)
+    whole = Connection(variables, target, matrices, connection.blocks, connection.labels)
+    return Cover(whole, substitution, name, new, points, needed)
 
 
 def describe(points: tuple[Fraction | None, ...], name: str) -> str:

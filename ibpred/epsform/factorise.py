@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import replace
-from fractions import Fraction
 
 from ibpred.epsform.assemble import assembled
 from ibpred.epsform.blocks import Block, Finding
@@ -161,12 +160,12 @@ def on_cover(found: Finding, block: Connection, primes: Sequence[int], seed: int
     points = found.branch_points
     if not points:
         return found
-    reason = f"{found.reason}; {describe(points, block.variables[0])}"
+    reason = f"{found.reason}; {describe(points, found.variable)}"
     if len(points) == 2:
-        outcome = _solve_block(double_cover(block, points).connection, primes, seed)
+        outcome = _solve_block(double_cover(block, found.variable, points).connection, primes, seed)
         if isinstance(outcome, Finding):
             return Finding(f"{reason}, but even then: {outcome.reason}", found.exponents)
-    return Finding(reason, found.exponents, points)
+    return Finding(reason, found.exponents, points, found.variable)
 
 
 def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cover | None:
@@ -179,36 +178,56 @@ def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cove
     Parameters
     ----------
     connection
-        In one ratio (for several there is none).
+        The system.
     primes, seed
         As for `factorise`.
     """
-    if len(connection.variables) != 1:
-        return None
     for rows, outcome in diagonal_blocks(connection, primes, seed, SILENT):
         if isinstance(outcome, Finding):
-            points = outcome.branch_points
-            if len(points) == 2 and _helps(restricted(connection, rows), points, primes, seed, _COVERS):
-                return double_cover(connection, points)
+            if len(outcome.branch_points) == 2 and _helps(
+                restricted(connection, rows), outcome, primes, seed, _COVERS
+            ):
+                return double_cover(connection, outcome.variable, outcome.branch_points, needed=True)
         elif outcome is not None and outcome.tag:
-            rational = branch_points(outcome.tag, connection.variables[0])
-            if rational is not None and len(rational) == 2:
-                return double_cover(connection, rational)
+            found = branch_points(outcome.tag)
+            if found is not None and len(found[1]) == 2:
+                return double_cover(connection, *found)
     return None
+
+
+def root_covers(connection: Connection, primes: Sequence[int], seed: int) -> tuple[Cover, ...]:
+    """Double covers, one on top of the other, on which the square roots are rational.
+
+    For a system in several ratios they are only taken if coupled blocks need them, or if no root is left.
+
+    Parameters
+    ----------
+    connection
+        The system.
+    primes, seed
+        As for `factorise`.
+    """
+    covers: list[Cover] = []
+    while (cover := root_cover(connection, primes, seed)) is not None:
+        covers.append(cover)
+        connection = cover.connection
+    if len(connection.variables) > 1 and covers and not any(cover.needed for cover in covers):
+        for _, outcome in diagonal_blocks(connection, primes, seed, SILENT):
+            if isinstance(outcome, Block) and outcome.tag:
+                return ()
+    return tuple(covers)
 
 
 _COVERS = 3
 """Double covers on top of each other that are tried for one block."""
 
 
-def _helps(
-    block: Connection, points: tuple[Fraction | None, ...], primes: Sequence[int], seed: int, most: int
-) -> bool:
+def _helps(block: Connection, found: Finding, primes: Sequence[int], seed: int, most: int) -> bool:
     """Whether a block has an epsilon-form on a double cover, or on a double cover of that."""
-    covered = double_cover(block, points).connection
+    covered = double_cover(block, found.variable, found.branch_points).connection
     outcome = _solve_block(covered, primes, seed)
     if not isinstance(outcome, Finding):
         return True
     if len(outcome.branch_points) != 2 or most <= 1:
         return False
-    return _helps(covered, outcome.branch_points, primes, seed, most - 1)
+    return _helps(covered, outcome, primes, seed, most - 1)

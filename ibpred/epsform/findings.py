@@ -38,7 +38,7 @@ def finding(obstacle: Obstacle, places: Sequence[Place], name: str) -> Finding:
     )
     branch = _branch_points(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
     common = _common_roots(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
-    return Finding(_reason(obstacle, text(obstacle.point)), exponents, branch, common)
+    return Finding(_reason(obstacle, text(obstacle.point)), exponents, branch, name, common)
 
 
 def _common_roots(obstacle: Obstacle, places: Sequence[Place]) -> Tag:

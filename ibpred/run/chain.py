@@ -20,7 +20,7 @@ from ibpred.diffeq.ratios import (
     substituted,
 )
 from ibpred.digest import digest
-from ibpred.epsform.factorise import factorise, root_cover
+from ibpred.epsform.factorise import factorise, root_covers
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
 from ibpred.epsform.matrices import identity, scaled
 from ibpred.epsform.parity import involution, with_parity
@@ -192,14 +192,14 @@ class Chain(Stages):
         """Dimensionless variables: the ratios, the user's, or those in which square roots are rational."""
         system = self.derivation().system
         first = ratio_coordinates(system, self.signs(), self.definition.variables)
-        if self.definition.variables or len(first.names) != 1:
+        if self.definition.variables or not first.names:
             return first
 
         def without_roots() -> Coordinates:
             found = first
-            while (cover := root_cover(self._connection(found), self.primes, SEED)) is not None:
-                new = cover.connection.variables[0]
-                found = substituted(found, cover.ratio, new, cover.substitution)
+            self.progress.stage("square roots")
+            for cover in root_covers(self._connection(first), self.primes, SEED):
+                found = substituted(found, cover.ratio, cover.new, cover.substitution)
             return found
 
         return self._kept("coordinates", Coordinates, None, without_roots)
