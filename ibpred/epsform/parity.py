@@ -34,17 +34,19 @@ def involution(values: Iterable[Rational], name: str) -> Rational | None:
     return None
 
 
-def with_parity(form: EpsilonForm, image: Rational) -> EpsilonForm:
+def with_parity(form: EpsilonForm, name: str, image: Rational) -> EpsilonForm:
     """The form in functions of definite parity; unchanged where the symmetry is not rational in them.
 
     Parameters
     ----------
     form
-        In one variable, block lower triangular in its own order, without square roots.
+        Without square roots.
+    name
+        The variable.
     image
         The involution as a function of the variable.
     """
-    ring, name, size = form.ring, form.variables[0], len(form.transformation)
+    ring, size = form.ring, len(form.transformation)
     moved = tuple(tuple(e.substitute({name: image}) if e else e for e in row) for row in form.inverse)
     monodromy = product(moved, form.transformation, ring)
     if not all(entry.is_constant() for row in monodromy for entry in row):

@@ -256,10 +256,10 @@ class Chain(Stages):
         """
         if isinstance(found, Obstructed) or any(found.tags):
             return found
-        if len(found.variables) == 1:
-            symmetry = involution(self.coordinates().values.values(), found.variables[0])
+        for name in found.variables:
+            symmetry = involution(self.coordinates().values.values(), name)
             if symmetry is not None:
-                found = with_parity(found, symmetry)
+                found = with_parity(found, name, symmetry)
         try:
             found = _scaled(found, 1 / self._first_factor(found))
             problem = self._boundary_problem(found, 0)
