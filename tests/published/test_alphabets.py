@@ -1,0 +1,124 @@
+"""Alphabets of whole families, from the file to the epsilon-form; sources beside them, from memory."""
+
+from __future__ import annotations
+
+import pytest
+from solving import FAMILIES
+
+from ibpred.epsform.form import EpsilonForm, Obstructed
+from ibpred.epsform.verify import is_integrable, verify
+from ibpred.progress import SILENT
+from ibpred.report.json_tables import letter_text, odd_letter_text
+from ibpred.run.chain import Chain
+from ibpred.run.files import read_family_file
+from ibpred.run.store import Store
+
+
+def outcome(name, folder):
+    """The connection and its epsilon-form."""
+    with Store(folder) as store:
+        chain = Chain(read_family_file(FAMILIES / f"{name}.toml"), store, SILENT, 1)
+        return chain.connection(), chain.epsilon_form()
+
+
+def verified(name, folder) -> EpsilonForm:
+    connection, form = outcome(name, folder)
+    assert isinstance(form, EpsilonForm), form.obstructions
+    assert verify(connection, form)
+    assert is_integrable(form)
+    return form
+
+
+def letters(form):
+    return {letter_text(letter) for letter in form.letters}
+
+
+@pytest.mark.parametrize("name", ["bubble-two-masses", "vertex-massive-fermion", "triangle-massive-loop"])
+def test_one_loop_with_a_threshold(name, tmp_path):
+    """Letters w and 1 + w with s = -m^2 (1-w)^2/w (e.g. Bonciani, Mastrolia, Remiddi, hep-ph/0301170)."""
+    form = verified(name, tmp_path)
+    assert form.variables == ("w",)
+    assert letters(form) == {"w", "1+w"}
+
+
+@pytest.mark.parametrize("name", ["kite-massive", "planar-vertex-massive-loop"])
+def test_two_loops_with_a_threshold(name, tmp_path):
+    """Letters w, 1 + w, 1 - w (Bonciani, Mastrolia, Remiddi, hep-ph/0301170)."""
+    assert letters(verified(name, tmp_path)) == {"w", "1+w", "-1+w"}
+
+
+@pytest.mark.slow
+def test_two_loop_vertex_of_a_massive_fermion(tmp_path):
+    """Letters w, 1 + w, 1 - w (Bonciani, Mastrolia, Remiddi, hep-ph/0301170)."""
+    assert letters(verified("planar-vertex-massive-fermion", tmp_path)) == {"w", "1+w", "-1+w"}
+
+
+def test_box_with_one_leg(tmp_path):
+    """x, y, 1 - y, x - y, 1 + x - y with x = t/s, y = p^2/s (Gehrmann, Remiddi, hep-ph/0008287)."""
+    assert letters(verified("box-one-leg", tmp_path)) == {"x", "y", "-1+y", "-y+x", "1-y+x"}
+
+
+def test_triangle_with_three_legs(tmp_path):
+    """z, zb, 1 - z, 1 - zb, z - zb (Chavez, Duhr, arXiv:1209.2722)."""
+    form = verified("triangle-three-legs", tmp_path)
+    assert form.variables == ("z", "zb")
+    assert letters(form) == {"z", "zb", "-1+z", "-1+zb", "-zb+z"}
+
+
+def test_box_with_a_massive_fermion(tmp_path):
+    """The one-loop part of the alphabet of Bhabha scattering (Henn, Smirnov, arXiv:1307.4083)."""
+    form = verified("box-massive-fermion", tmp_path)
+    a, b = form.variables
+    found = {str(letter) for letter in form.letters}
+    assert found == {a, f"{a}+1", f"{a}-1", b, f"{b}+1", f"{a}+{b}", f"{a}*{b}+1"}
+
+
+def test_box_with_a_massive_loop(tmp_path):
+    """Three roots, u, v and uv + u + v (Caron-Huot, Henn, arXiv:1404.2922)."""
+    form = verified("box-massive-loop", tmp_path)
+    assert letters(form) == {"4+x", "4+y", "y+x", "4*y+4*x+x*y"}
+    assert [str(r) for r in form.radicands] == ["x", "y", "x+4", "y+4", "x*y+4*x+4*y"]
+    assert len({letter.roots for letter in form.odd_letters}) == 5
+    assert "(x-sqrt(x*(4+x)))/(x+sqrt(x*(4+x)))" in {odd_letter_text(o, form) for o in form.odd_letters}
+
+
+def test_box_with_two_adjacent_legs(tmp_path):
+    """One root, that of the Källén function of s and the two legs (Henn, Melnikov, Smirnov, 1402.7078)."""
+    form = verified("box-two-adjacent-legs", tmp_path)
+    (radicand,) = form.radicands
+    y, z = (form.ring.variable(n) for n in ("y", "z"))
+    assert radicand == 1 + y**2 + z**2 - 2 * y - 2 * z - 2 * y * z
+
+
+@pytest.mark.slow
+def test_pentagon_with_one_leg(tmp_path):
+    """Five scales, the root of the Gram determinant and that of the Källén function."""
+    form = verified("pentagon-one-leg", tmp_path)
+    assert len({tag for tag in form.tags if tag}) == 2
+
+
+def test_sunrise_and_banana_are_told(tmp_path):
+    """An elliptic curve; a K3 surface with the operator of Vanhove, arXiv:1401.6438."""
+    _, found = outcome("sunrise-equal-masses", tmp_path / "two")
+    assert isinstance(found, Obstructed)
+    (only,) = found.obstructions
+    assert only.operator == "x*(x+1)*(x+9)*D^2 + (3*x^2+20*x+9)*D + (x+3)"
+    assert only.geometry is not None
+    assert "elliptic" in only.geometry
+    assert only.period_form is not None
+    _, found = outcome("banana-three-loop", tmp_path / "three")
+    (only,) = found.obstructions
+    assert only.operator == ("x^2*(x+16)*(x+4)*D^3 + 6*x*(x^2+15*x+32)*D^2 + (7*x^2+68*x+64)*D + (x+4)")
+    assert "K3" in only.geometry
+    assert only.period_form is not None
+
+
+@pytest.mark.slow
+def test_four_loop_banana(tmp_path):
+    """A Calabi-Yau threefold; periods 1, 5, 45, 545, ... (Bönisch et al., arXiv:2008.10574)."""
+    _, found = outcome("banana-four-loop", tmp_path)
+    (only,) = found.obstructions
+    assert "Calabi-Yau variety of dimension 3" in only.geometry
+    form = only.period_form
+    assert form.point == "x = infinity"
+    assert [abs(c) for c in form.period[:5]] == [1, 5, 45, 545, 7885]
