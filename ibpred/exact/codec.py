@@ -1,8 +1,9 @@
 """Records to JSON data and back, driven by their type hints.
 
 Exact values are text: a `Fraction` is ``"1/3"``; a `Rational` is ``["d,t", "(d-3)/t"]``, its ring
-and its value; a type with a static method ``read`` is its text. Dataclasses are objects keyed by field. Nothing is ever evaluated on the way back:
-the target type, known to the caller, decides how each piece of data is read.
+and its value; a type with a static method ``read`` is its text. Dataclasses are objects keyed by
+field. Nothing is ever evaluated on the way back: the target type, known to the caller, decides how
+each piece of data is read.
 """
 
 from __future__ import annotations

@@ -23,6 +23,10 @@ from ibpred.errors import ExpressionError
 from ibpred.exact.rational import Rational, Ring
 
 _TOKEN = re.compile(r"\s*(?:(\d+\.\d*|\.\d+|\d+)|([A-Za-z_][A-Za-z_0-9]*)|(\*\*|[-+*/^()]))")
+_LONG_SUM = re.compile(r"\(([^()/\s]{40,})\)")
+_FACTOR = r"(?:[0-9]+|[A-Za-z_][A-Za-z_0-9]*(?:\^[0-9]+)?)"
+_SUM = re.compile(rf"[-+]?{_FACTOR}(?:\*{_FACTOR})*(?:[-+]{_FACTOR}(?:\*{_FACTOR})*)*")
+_TERM = re.compile(r"([-+]?)([^-+]+)")
 _LONGEST_POWER = 10_000
 _DEEPEST = 100  # nested parentheses and signs
 
@@ -219,18 +223,64 @@ def parse(text: str, number: Callable[[Fraction], V], name: Callable[[str], V]) 
 def parse_rational(text: str, ring: Ring) -> Rational:
     """Read a rational function of the ring's variables.
 
+    Long expanded polynomials in parentheses, of which large results consist, are read at once.
+
     Raises
     ------
     ExpressionError
         With the text and the position of what is wrong.
     """
+    prefix = max((*ring.names, ""), key=len) + "_"  # such a symbol is none of the ring's
+    polynomials: dict[str, Rational] = {}
+
+    def shorten(match: re.Match[str]) -> str:
+        value = _expanded(match.group(1), ring)
+        if value is None:
+            return match.group(0)
+        symbol = f"{prefix}{len(polynomials)}"
+        polynomials[symbol] = value
+        return f"({symbol})"
 
     def name(symbol: str) -> Rational:
+        if symbol in polynomials:
+            return polynomials[symbol]
         if symbol not in ring.names:
             raise KeyError(symbol, *ring.names)
         return ring.variable(symbol)
 
+    short = _LONG_SUM.sub(shorten, text)
+    try:
+        return parse(short, ring.constant, name)
+    except ExpressionError:
+        if short == text:
+            raise
+    # once more for a message that shows the user's own text
+    polynomials.clear()
     return parse(text, ring.constant, name)
+
+
+def _expanded(text: str, ring: Ring) -> Rational | None:
+    """An expanded polynomial with integer coefficients; None where the text is anything else."""
+    if not _SUM.fullmatch(text):
+        return None
+    places: dict[str, tuple[int, int]] = {}  # of the powers met
+    terms: dict[tuple[int, ...], int] = {}
+    for sign, term in _TERM.findall(text):
+        coefficient, exponents = (-1 if sign == "-" else 1), [0] * len(ring.names)
+        for part in term.split("*"):
+            if part.isdigit():
+                coefficient *= int(part)
+                continue
+            if part not in places:
+                symbol, _, power = part.partition("^")
+                if symbol not in ring.names or len(power) > 4:
+                    return None
+                places[part] = ring.index(symbol), int(power or 1)
+            place, size = places[part]
+            exponents[place] += size
+        key = tuple(exponents)
+        terms[key] = terms.get(key, 0) + coefficient
+    return ring.fraction(ring.polynomial(terms), ring.context.constant(1))
 
 
 def parse_number(text: str) -> Fraction:

@@ -105,3 +105,39 @@ def test_the_grammar_agrees_with_the_ast_of_python(text: str) -> None:
     if isinstance(expected, float):
         return  # numbers only: Python divides them inexactly
     assert parse_rational(text, R) == expected
+
+
+def polynomial_text(terms: list[tuple[int, int, int, int]]) -> str:
+    return "".join(f"{c:+d}*d^{a}*s^{b}*t^{e}" for c, a, b, e in terms)
+
+
+@given(
+    st.lists(
+        st.tuples(st.integers(-(10**20), 10**20), *(st.integers(0, 12) for _ in range(3))),
+        min_size=4,
+        max_size=30,
+    ),
+    st.lists(st.tuples(st.integers(1, 9), *(st.integers(0, 3) for _ in range(3))), min_size=4, max_size=6),
+)
+@settings(deadline=None)
+def test_long_polynomials_are_read_as_term_by_term(above, below) -> None:
+    """Without parentheses around them the same polynomials are read token by token."""
+    top, bottom = polynomial_text(above), polynomial_text(below)
+    expected = parse_rational(top, R) / parse_rational(bottom, R)
+    assert parse_rational(f"({top})/(2*s*({bottom})^2)*2*s*({bottom})", R) == expected
+
+
+@pytest.mark.parametrize(
+    ("text", "position", "word"),
+    [
+        ("(" + "+".join(["s*t"] * 30) + ")*u", 122, "unknown symbol 'u'"),
+        ("(" + "+".join(["s*t"] * 30) + "+u)", 121, "unknown symbol 'u'"),
+        ("s*(" + "+".join(["s*t"] * 30) + "+s^10001)", 125, "not read"),
+        ("s*(" + "+".join(["s*t"] * 30) + "+*s)", 123, "unexpected"),
+    ],
+)
+def test_messages_about_long_polynomials_show_the_text(text: str, position: int, word: str) -> None:
+    with pytest.raises(ExpressionError, match=word) as caught:
+        parse_rational(text, R)
+    assert caught.value.text == text
+    assert caught.value.position == position
