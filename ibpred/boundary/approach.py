@@ -42,6 +42,33 @@ class Approach:
         powers, last = leading(value, self.scales)
         return (*powers, valuation(last, self.variable, self.point))
 
+    def leading(self, value: Rational) -> tuple[tuple[int, ...], Rational]:
+        """The orders, and what multiplies that product of the scales and the distance to the point."""
+        powers, last = leading(value, self.scales)
+        power, coefficient = leading_at(last, self.variable, self.point)
+        return (*powers, power), coefficient
+
+
+def leading_at(value: Rational, variable: str, point: Point) -> tuple[int, Rational]:
+    """Lowest power of the distance to a point, and what multiplies it.
+
+    The distance is ``|x - point|``, from the side of zero, or 1/x at infinity.
+    """
+    power = valuation(value, variable, point)
+    return power, (near(value, variable, point) / value.ring.variable(variable) ** power).substitute(
+        {variable: 0}
+    )
+
+
+def near(value: Rational, variable: str, point: Point) -> Rational:
+    """A function in terms of the distance to a point, which takes the place of the variable."""
+    if point == 0:
+        return value
+    x = value.ring.variable(variable)
+    if isinstance(point, Infinity):
+        return value.substitute({variable: 1 / x})
+    return value.substitute({variable: point - x if point > 0 else x + point})
+
 
 def leading(value: Rational, scales: Sequence[str]) -> tuple[tuple[int, ...], Rational]:
     """Lowest powers in the scales, one after the other, and what multiplies them."""

@@ -20,40 +20,14 @@ import flint
 from ibpred.boundary.combinations import Combination, vanishing_combinations
 from ibpred.boundary.edges import Edge
 from ibpred.boundary.eigen import JointSpace, joint_spaces
-from ibpred.boundary.expansion import ClosedForm
-from ibpred.boundary.local import Contribution, class_sum, contributions
-from ibpred.boundary.regions import (
-    Behaviour,
-    Exponent,
-    ParametricFamily,
-    behaviour,
-    behaviour_of_closed_form,
-)
+from ibpred.boundary.local import Contribution, class_sum
+from ibpred.boundary.regions import ParametricFamily
+from ibpred.boundary.sources import Master, Slopes, Sources, known_at, sources
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError
 from ibpred.exact.rational import Rational
-from ibpred.family.definition import Powers
 from ibpred.iterated.series import Series
-from ibpred.iterated.transport import Infinity, Point, residue_at
-
-
-@dataclass(frozen=True)
-class Master:
-    """What is known of one master integral in the Euclidean region.
-
-    Attributes
-    ----------
-    label
-        Its name, for messages.
-    closed
-        Its closed form, where there is one.
-    powers
-        Its powers, from which its behaviour is read off; None where nothing shall be claimed.
-    """
-
-    label: str
-    closed: ClosedForm | None
-    powers: Powers | None
+from ibpred.iterated.transport import Point, residue_at
 
 
 @dataclass(frozen=True)
@@ -127,40 +101,41 @@ def conditions_at(view: EdgeView, point: Point, order: int) -> tuple[Condition, 
     view
         The problem on the edge.
     point
-        The point; closed forms are used with their values at 0 and where they are constant along the edge,
-        elsewhere with their exponents.
+        The point; at negative ones closed forms that change along the edge are used with their exponents
+        only.
     order
         Values are given through ``eps^order``.
 
     Raises
     ------
     BoundaryError
-        If a closed form contradicts the differential equation at the corner, or the residues do not
+        If a closed form contradicts the differential equation at the point, or the residues do not
         commute.
     """
     edge = view.edge
     spaces = joint_spaces([*edge.scale_residues, residue_at(edge.residues, point)])
     size = len(view.masters)
-    behaviours = [_behaviour(view, master, point) for master in view.masters]
+    approach = edge.approach(point)
+    known = [known_at(master, view.family, approach) for master in view.masters]
     gathered: dict[str, list[_Row]] = {}
     for i in range(size):
-        sources = _sources(view, behaviours, view.inverse[i], point)
-        if sources is None:
+        made_of = sources(known, view.inverse[i], approach)
+        if made_of is None:
             continue
-        if not sources.unknown:
-            _check_poles(sources.values, order, view, i)
-        _check_classes(sources, spaces, order, view, i)
+        if not made_of.parts:
+            _check_poles(made_of.values, order, view, i, point)
+        _check_classes(made_of, spaces, order, view, i, point)
         unit = tuple(Fraction(int(j == i)) for j in range(size))
         for space in spaces:
-            for name, row in _row_conditions(sources, space, unit, view, point, order):
+            for name, row in _row_conditions(made_of, space, unit, view, point, order):
                 gathered.setdefault(name, []).append(row)
     if not edge.scales:
         for vector in vanishing_combinations(view.inverse, edge.variable, point):
-            sources = _sources(view, behaviours, _combined(vector, view.inverse), point)
-            if sources is None:
+            made_of = sources(known, _combined(vector, view.inverse), approach)
+            if made_of is None:
                 continue
             for space in spaces:
-                for name, row in _row_conditions(sources, space, vector, view, point, order):
+                for name, row in _row_conditions(made_of, space, vector, view, point, order):
                     gathered.setdefault(name, []).append(row)
     found = []
     for name, rows in gathered.items():
@@ -187,42 +162,6 @@ def are_regular(conditions: Sequence[Condition], residue: Any) -> bool:
 
 
 _Row = tuple[Sequence[Any], Series | None]
-_Slopes = tuple[Fraction | None, ...]
-
-
-@dataclass(frozen=True)
-class _Sources:
-    """What one canonical function is made of: closed forms expanded, and other masters' behaviours."""
-
-    values: tuple[Contribution, ...]
-    unknown: tuple[tuple[Behaviour, tuple[int, ...]], ...]  # with the orders of the factor
-
-    def allowed(self, slopes: _Slopes) -> tuple[Exponent, ...]:
-        """Behaviours of the masters without values that can show up at u^0 in one class."""
-        return tuple(
-            exponent
-            for behaviour_, shift in self.unknown
-            for exponent in behaviour_
-            if exponent.slope == slopes and _reaches_zero(exponent.power, shift)
-        )
-
-
-def _reaches_zero(powers: Sequence[Fraction], shift: Sequence[int]) -> bool:
-    """Whether powers in integer steps above ``powers + shift`` (lexicographically) can all be zero."""
-    for power, more in zip(powers, shift, strict=True):
-        if power + more != 0:
-            # below a leading term the next powers are not known: anything may happen there
-            return power + more < 0
-    return True
-
-
-def _behaviour(view: EdgeView, master: Master, point: Point) -> Behaviour | None:
-    approach = view.edge.approach(point)
-    if master.closed is not None:
-        return behaviour_of_closed_form(master.closed, approach)
-    if master.powers is None or view.family is None:
-        return None
-    return behaviour(view.family, master.powers, approach)
 
 
 def _combined(vector: Combination, rows: Sequence[Sequence[Rational]]) -> tuple[Rational, ...]:
@@ -234,57 +173,27 @@ def _combined(vector: Combination, rows: Sequence[Sequence[Rational]]) -> tuple[
     return total
 
 
-def _sources(
-    view: EdgeView, behaviours: Sequence[Behaviour | None], entries: Sequence[Rational], point: Point
-) -> _Sources | None:
-    values: list[Contribution] = []
-    unknown: list[tuple[Behaviour, tuple[int, ...]]] = []
-    for master, known, entry in zip(view.masters, behaviours, entries, strict=True):
-        if not entry:
-            continue
-        if master.closed is not None and (point == 0 or _is_constant(master.closed, view.edge.variable)):
-            values += contributions(_moved(entry, view.edge.variable, point), master.closed, view.names)
-            continue
-        if known is None:
-            return None
-        unknown.append((known, view.edge.approach(point).orders(entry)))
-    return _Sources(tuple(values), tuple(unknown))
-
-
-def _is_constant(form: ClosedForm, variable: str) -> bool:
-    """Whether a closed form does not change along an edge."""
-    return not any(
-        variable in v.variables() for v in (form.rational, *(letter for letter, _ in form.letters))
-    )
-
-
-def _moved(value: Rational, variable: str, point: Point) -> Rational:
-    """In terms of the distance to a point (the inverse at infinity)."""
-    if point == 0:
-        return value
-    x = value.ring.variable(variable)
-    return value.substitute({variable: 1 / x if isinstance(point, Infinity) else x + point})
-
-
 def _row_conditions(
-    sources: _Sources, space: JointSpace, vector: Combination, view: EdgeView, point: Point, order: int
+    made_of: Sources, space: JointSpace, vector: Combination, view: EdgeView, point: Point, order: int
 ) -> Iterator[tuple[str, _Row]]:
     """Conditions on one function, or a combination, in one joint generalised eigenspace."""
-    allowed = sources.allowed(space.values)
+    allowed = made_of.allowed(space.values)
     logarithmic = {i for exponent in allowed for i, logs in enumerate(exponent.logs) if logs}
     size = space.projector.ncols()
     left = flint.fmpq_mat(1, size, [flint.fmpq(v.numerator, v.denominator) for v in vector])
     zero = (0,) * len(space.values)
+    entries = (left * space.projector).entries()
+    more = made_of.leading_values(space.values) if any(entries) or not allowed else None
     series = None
-    if not allowed and any(v.slopes == space.values for v in sources.values):
-        series = class_sum(sources.values, _rational(space.values), zero, order)
+    if more is not None and any(v.slopes == space.values for v in (*made_of.values, *more)):
+        series = class_sum((*made_of.values, *more), _rational(space.values), zero, order)
         if not any(series.coefficients):
             series = None
-    name = _name(space.values, bool(allowed), series is not None, view.edge.point_text(point))
-    if not allowed:
-        entries = (left * space.projector).entries()
-        if any(entries) or series is not None:
-            yield name, (entries, series)
+    where = view.edge.point_text(point)
+    if more is not None and (any(entries) or series is not None):
+        yield f"{_name(space.values, series, bool(allowed))} at {where}", (entries, series)
+    absent = f"no logarithm with exponent {_shown(space.values)}*eps"
+    name = f"{absent if allowed else _name(space.values, series, False)} at {where}"
     for factors, matrix in space.nilpotents:
         # a product of nilpotent parts multiplies a product of logarithms of the same quantities
         if factors <= logarithmic:
@@ -294,46 +203,47 @@ def _row_conditions(
             yield name, (entries, None)
 
 
-def _rational(slopes: _Slopes) -> tuple[Fraction, ...]:
+def _rational(slopes: Slopes) -> tuple[Fraction, ...]:
     return tuple(slope for slope in slopes if slope is not None)
 
 
-def _name(slopes: _Slopes, allowed: bool, valued: bool, where: str) -> str:
-    if valued:
-        return f"Gamma-function values at {where}"
+def _shown(slopes: Slopes) -> str:
+    return str(slopes[0]) if len(slopes) == 1 else f"({', '.join(map(str, slopes))})"
+
+
+def _name(slopes: Slopes, series: Series | None, regions: bool) -> str:
+    if regions:
+        return "Gamma-function values of regions"
+    if series is not None:
+        return "Gamma-function values"
     if None in slopes:
-        return f"no irrational exponent at {where}"
-    shown = str(slopes[0]) if len(slopes) == 1 else f"({', '.join(map(str, slopes))})"
-    if allowed:
-        return f"no logarithm with exponent {shown}*eps at {where}"
-    if not any(slopes):
-        return f"vanishing at {where}"
-    return f"no exponent {shown}*eps at {where}"
+        return "no irrational exponent"
+    return f"no exponent {_shown(slopes)}*eps" if any(slopes) else "vanishing"
 
 
 def _check_classes(
-    sources: _Sources, spaces: Sequence[JointSpace], order: int, view: EdgeView, row: int
+    made_of: Sources, spaces: Sequence[JointSpace], order: int, view: EdgeView, row: int, point: Point
 ) -> None:
     """Every class of exponents among the closed forms must be a joint eigenvalue of the residues."""
     eigenvalues = {space.values for space in spaces}
-    for slopes in {value.slopes for value in sources.values} - eigenvalues:
+    for slopes in {value.slopes for value in made_of.values} - eigenvalues:
         zero = (0,) * len(slopes)
-        if any(class_sum(sources.values, slopes, zero, order).coefficients) and not sources.allowed(slopes):
+        if any(class_sum(made_of.values, slopes, zero, order).coefficients) and not made_of.allowed(slopes):
             factors = "*".join(f"{n}^({s}*eps)" for n, s in zip(view.names, slopes, strict=True) if s)
             raise BoundaryError(
                 f"the closed forms in canonical function {row + 1} behave like {factors} at "
-                f"{view.edge.point_text(Fraction(0))}, which the differential equation forbids: one of the "
+                f"{view.edge.point_text(point)}, which the differential equation forbids: one of the "
                 "two is wrong"
             )
 
 
-def _check_poles(values: Sequence[Contribution], order: int, view: EdgeView, row: int) -> None:
-    """A canonical function known in closed form must not have a power-like pole at the corner."""
+def _check_poles(values: Sequence[Contribution], order: int, view: EdgeView, row: int, point: Point) -> None:
+    """A canonical function known in closed form must not have a power-like pole at the point."""
     for slopes, powers in {(value.slopes, value.powers) for value in values}:
         if any(powers) and any(class_sum(values, slopes, powers, order).coefficients):
             pole = "*".join(f"{n}^{p}" for n, p in zip(view.names, powers, strict=True) if p)
             raise BoundaryError(
                 f"the closed forms in canonical function {row + 1} ({view.masters[row].label}) have a pole "
-                f"{pole} at {view.edge.point_text(Fraction(0))}, which the epsilon-form forbids: one of the "
+                f"{pole} at {view.edge.point_text(point)}, which the epsilon-form forbids: one of the "
                 "two is wrong"
             )

@@ -9,7 +9,6 @@ from typing import Any
 
 from ibpred.boundary.conditions import (
     EdgeView,
-    Master,
     are_regular,
     conditions_at,
     view_from,
@@ -17,6 +16,7 @@ from ibpred.boundary.conditions import (
 from ibpred.boundary.edges import Corner, Edge, edges_at
 from ibpred.boundary.linear import Transported, transported
 from ibpred.boundary.regions import ParametricFamily
+from ibpred.boundary.sources import Master
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError
 from ibpred.iterated.constants import NAMES

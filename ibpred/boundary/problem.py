@@ -5,11 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from types import MappingProxyType
 
-from ibpred.boundary.conditions import Master
 from ibpred.boundary.expansion import ClosedForm, expand, on_line
 from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.gamma import gamma_form
 from ibpred.boundary.regions import parametric_family
+from ibpred.boundary.sources import Master
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import Rational, Ring, ring

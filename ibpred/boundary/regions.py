@@ -10,13 +10,15 @@ regions of regions.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
-from itertools import product
+from functools import cached_property
+from math import factorial, prod
 
-from ibpred.boundary.approach import Approach, is_positive_before, leading, valuation
-from ibpred.boundary.expansion import ClosedForm
+from ibpred.boundary.approach import Approach, is_positive_before, leading, leading_at, valuation
+from ibpred.boundary.expansion import ClosedForm, on_line
+from ibpred.boundary.gamma import Piece, parametric_form
 from ibpred.boundary.polytope import LowerFacet, lower_facets, separating_functional
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
@@ -56,12 +58,13 @@ class ParametricFamily:
 
     Attributes
     ----------
-    dimension
-        d0.
+    loops, dimension
+        L and d0.
     first, second
         U and F.
     """
 
+    loops: int
     dimension: int
     first: Coefficients
     second: Coefficients
@@ -69,9 +72,8 @@ class ParametricFamily:
     def substituted(self, values: Mapping[str, Rational]) -> ParametricFamily:
         """U and F on another curve: the ratios replaced."""
         first = {e: c.substitute(values) for e, c in self.first.items()}
-        return ParametricFamily(
-            self.dimension, first, {e: c.substitute(values) for e, c in self.second.items()}
-        )
+        second = {e: c.substitute(values) for e, c in self.second.items()}
+        return replace(self, first=first, second=second)
 
 
 def parametric_family(family: FamilyDefinition, values: Mapping[str, Rational]) -> ParametricFamily:
@@ -89,14 +91,72 @@ def parametric_family(family: FamilyDefinition, values: Mapping[str, Rational]) 
     everything = replace(family, lines=tuple(replace(line, numerator=False) for line in family.lines))
     first, second = symanzik(everything)
     return ParametricFamily(
+        len(family.loops),
         family.dimension,
         {e: c.substitute(values) for e, c in first.terms.items()},
         {e: v for e, c in second.terms.items() if (v := c.substitute(values))},
     )
 
 
+@dataclass(frozen=True)
+class Region:
+    """One region: its behaviour and the integral that stands in front of its leading term.
+
+    Attributes
+    ----------
+    exponent
+        The behaviour.
+    leading
+        What multiplies ``prod u^(power + slope eps)``; None where it is not read off.
+    """
+
+    exponent: Exponent
+    leading: LeadingTerm | None
+
+
+@dataclass(frozen=True)
+class LeadingTerm:
+    """The leading term of a region, a number at every eps.
+
+    Attributes
+    ----------
+    loops, dimension
+        L and d0.
+    lines
+        The powers of all lines.
+    terms
+        The part of U + F on the facet, its coefficients numbers.
+    pieces
+        What is integrated with it.
+    """
+
+    loops: int
+    dimension: int
+    lines: tuple[Fraction, ...]
+    terms: Coefficients
+    pieces: tuple[Piece, ...]
+
+    @cached_property
+    def closed(self) -> tuple[tuple[Fraction, ClosedForm], ...] | None:
+        """Its pieces as multiples of products of Gamma functions; None where they are none."""
+        field = next(iter(self.terms.values())).ring
+        found = []
+        for piece in self.pieces:
+            form = parametric_form(self.terms, self.loops, self.dimension, self.lines, piece)
+            if form is None:
+                return None
+            found.append((piece.coefficient.to_fraction(), on_line(form, {}, field)))
+        return tuple(found)
+
+
 def behaviour(family: ParametricFamily, powers: Sequence[int], approach: Approach) -> Behaviour | None:
-    """What an integral can do at a point, on the sheet of the Euclidean region.
+    """What an integral can do at a point, on the sheet of the Euclidean region; see `regions`."""
+    found = regions(family, powers, approach)
+    return None if found is None else tuple(sorted({region.exponent for region in found}))
+
+
+def regions(family: ParametricFamily, powers: Sequence[int], approach: Approach) -> tuple[Region, ...] | None:
+    """The regions of an integral at a point, on the sheet of the Euclidean region.
 
     Parameters
     ----------
@@ -111,7 +171,7 @@ def behaviour(family: ParametricFamily, powers: Sequence[int], approach: Approac
 
     Returns
     -------
-    Behaviour or None
+    tuple or None
         None where nothing is claimed.
     """
     sector = tuple(i for i, power in enumerate(powers) if power > 0)
@@ -125,11 +185,11 @@ def behaviour(family: ParametricFamily, powers: Sequence[int], approach: Approac
         if not is_positive_before(last, approach.variable, end):
             return None
     start = _Expansion(
-        tuple(Fraction(powers[i]) for i in sector),
-        Fraction(family.dimension, 2),
+        family.loops,
+        family.dimension,
+        tuple(Fraction(power) for power in powers),
         tuple(terms),
-        _derivatives(family, sector, numerators),
-        tuple(numerators.values()),
+        _pieces(family, powers, sector, numerators),
     )
     return _nested(start, approach, approach.scales)
 
@@ -143,77 +203,73 @@ class _Term:
     massive: bool
 
 
-Derivatives = Mapping[tuple[int, ...], Sequence[tuple[tuple[int, ...], Rational]]]
-
-
 @dataclass(frozen=True)
 class _Expansion:
     """An integral, or the leading term of one in a region."""
 
-    powers: tuple[Fraction, ...]
-    half: Fraction  # d0/2
+    loops: int
+    dimension: int
+    lines: tuple[Fraction, ...]
     terms: tuple[_Term, ...]
-    derivatives: Derivatives
-    numerators: tuple[int, ...]
+    pieces: tuple[Piece, ...]
 
 
-def _nested(state: _Expansion, approach: Approach, scales: Sequence[str]) -> Behaviour | None:
+def _nested(state: _Expansion, approach: Approach, scales: Sequence[str]) -> tuple[Region, ...] | None:
     border = isinstance(approach.point, Infinity) or approach.point == 0
     if not scales and not isinstance(approach.point, Infinity) and approach.point < 0:
         second = {t.exponents: t.coefficient for t in state.terms if t.massive}
         if not _separated(second, approach.variable, approach.point):
             return None
-        return (Exponent((Fraction(0),), (Fraction(0),), (False,)),)
+        return (Region(Exponent((Fraction(0),), (Fraction(0),), (False,)), None),)
     name, point = (scales[0], Fraction(0)) if scales else (approach.variable, approach.point)
-    regions = _regions(state, name, point)
-    slopes = [slope for _, slope, _ in regions]
-    found: dict[Exponent, None] = {}
-    for power, slope, facet in regions:
+    facets = lower_facets([(t.exponents, valuation(t.coefficient, name, point)) for t in state.terms])
+    slopes = [facet.offset for facet in facets]
+    found: list[Region] = []
+    for facet in facets if state.pieces else ():
+        power, after = _leading_term(state, facet, name, point)
+        slope = facet.offset
         # regions with the same exponent need a further regulator, which leaves logarithms
         logs = slopes.count(slope) > 1
         if not scales:
-            found[Exponent((power,), (slope,), (logs,))] = None
+            terms = {t.exponents: t.coefficient for t in after.terms}
+            term = LeadingTerm(after.loops, after.dimension, after.lines, terms, after.pieces)
+            found.append(Region(Exponent((power,), (slope,), (logs,)), term))
             continue
-        inner = _nested(_leading_term(state, facet, name), approach, scales[1:])
+        inner = _nested(after, approach, scales[1:])
         if inner is None:
             return None
-        for exponent in inner:
+        for region in inner:
+            exponent = region.exponent
             # the regulator reaches all that become small later, but not a point at finite distance
             later = [logs or more for more in exponent.logs]
             if not border:
                 later[-1] = exponent.logs[-1]
             item = Exponent((power, *exponent.power), (slope, *exponent.slope), (logs, *later))
-            found[item] = None
-    return tuple(sorted(found))
+            found.append(Region(item, region.leading))
+    return tuple(found)
 
 
-def _regions(state: _Expansion, name: str, point: Point) -> list[tuple[Fraction, Fraction, LowerFacet]]:
-    """Power, slope and facet of each region in one small quantity."""
-    facets = lower_facets([(t.exponents, valuation(t.coefficient, name, point)) for t in state.terms])
-    found = []
-    for facet in facets:
-        shift = _numerator_shift(facet, state.derivatives, state.numerators, name, point)
-        if shift is not None:
-            power = sum((v * a for v, a in zip(facet.normal, state.powers, strict=True)), Fraction(0))
-            found.append((power - facet.offset * state.half + shift, facet.offset, facet))
-    return found
-
-
-def _leading_term(state: _Expansion, facet: LowerFacet, name: str) -> _Expansion:
-    """The terms on a facet without the scale."""
+def _leading_term(
+    state: _Expansion, facet: LowerFacet, name: str, point: Point
+) -> tuple[Fraction, _Expansion]:
+    """Power of a region in a small quantity, and the terms and pieces that make up its leading term."""
     kept = []
     for term in state.terms:
-        (power,), coefficient = leading(term.coefficient, (name,))
+        power, coefficient = leading_at(term.coefficient, name, point)
         if power + _along(facet, term.exponents) == facet.offset:
             kept.append(_Term(term.exponents, coefficient, term.massive))
-    # of the derivatives all are kept: this can only lower the bound of the power
-    derivatives = {
-        order: [(r, leading(c, (name,))[1]) for r, c in terms] for order, terms in state.derivatives.items()
-    }
-    return replace(state, terms=tuple(kept), derivatives=derivatives)
+    half = Fraction(state.dimension, 2)
+    heights = []
+    for piece in state.pieces:
+        power, coefficient = leading_at(piece.coefficient, name, point)
+        height = power + _along(facet, piece.powers) - facet.offset * (half + piece.raised)
+        heights.append((height, replace(piece, coefficient=coefficient)))
+    least = min(height for height, _ in heights)
+    pieces = tuple(piece for height, piece in heights if height == least)
+    return least, replace(state, terms=tuple(kept), pieces=pieces)
 
 
-def _along(facet: LowerFacet, exponents: Sequence[int]) -> Fraction:
+def _along(facet: LowerFacet, exponents: Sequence[int | Fraction]) -> Fraction:
     return sum((v * e for v, e in zip(facet.normal, exponents, strict=True)), Fraction(0))
 
 
@@ -262,47 +318,48 @@ def _separated(terms: Coefficients, variable: str, point: Fraction) -> bool:
     return separating_functional(above, below) is not None
 
 
-def _derivatives(
-    family: ParametricFamily, sector: Sequence[int], numerators: Mapping[int, int]
-) -> Derivatives:
-    """Terms of U + F by powers of the numerators' parameters: (exponents in the sector, coefficient)."""
+def _pieces(
+    family: ParametricFamily, powers: Sequence[int], sector: Sequence[int], numerators: Mapping[int, int]
+) -> tuple[Piece, ...]:
+    """What stands in the parametric integral: one piece, or those that numerators bring.
+
+    A power -n of a line is an n-fold derivative in minus its parameter y at zero. With ``U + F = G + D`` and
+    D of order y it acts on ``sum_m (-1)^m Gamma(d/2 + m) / (Gamma(d/2) m!) G^(-d/2 - m) D^m``.
+    """
+    field = next(iter(family.first.values())).ring
+    orders = tuple(numerators.values())
     allowed = {*sector, *numerators}
-    found: dict[tuple[int, ...], list[tuple[tuple[int, ...], Rational]]] = {}
+    change: list[tuple[tuple[int, ...], tuple[int, ...], Rational]] = []
     for terms in (family.first, family.second):
         for exponents, coefficient in terms.items():
-            if any(n for i, n in enumerate(exponents) if i not in allowed):
-                continue
             order = tuple(exponents[i] for i in numerators)
-            found.setdefault(order, []).append((tuple(exponents[i] for i in sector), coefficient))
+            if any(order) and not any(n for i, n in enumerate(exponents) if i not in allowed):
+                change.append((order, tuple(exponents[i] for i in sector), coefficient))
+    power_of_change: dict[tuple[tuple[int, ...], tuple[int, ...]], Rational] = {
+        ((0,) * len(orders), (0,) * len(sector)): field.one
+    }
+    wanted = Fraction(prod(factorial(n) for n in orders)) * (-1) ** sum(orders)
+    found = []
+    for m in range(sum(orders) + 1):
+        for (order, shift), coefficient in power_of_change.items():
+            if order == orders and coefficient:
+                sizes = tuple(Fraction(powers[i] + n) for i, n in zip(sector, shift, strict=True))
+                found.append(Piece(coefficient * (wanted * (-1) ** m / factorial(m)), sizes, m))
+        power_of_change = _product(power_of_change, change, orders)
+    return tuple(found)
+
+
+def _product(
+    left: Mapping[tuple[tuple[int, ...], tuple[int, ...]], Rational],
+    right: Sequence[tuple[tuple[int, ...], tuple[int, ...], Rational]],
+    orders: Sequence[int],
+) -> dict[tuple[tuple[int, ...], tuple[int, ...]], Rational]:
+    """Product of polynomials, without powers of the numerators' parameters beyond those wanted."""
+    found: dict[tuple[tuple[int, ...], tuple[int, ...]], Rational] = {}
+    for (order, shift), value in left.items():
+        for more, further, factor in right:
+            total = tuple(a + b for a, b in zip(order, more, strict=True))
+            if all(t <= n for t, n in zip(total, orders, strict=True)):
+                key = (total, tuple(a + b for a, b in zip(shift, further, strict=True)))
+                found[key] = found[key] + value * factor if key in found else value * factor
     return found
-
-
-def _numerator_shift(
-    facet: LowerFacet, derivatives: Derivatives, orders: tuple[int, ...], name: str, point: Point
-) -> Fraction | None:
-    """Least change of the power by numerators; None where the numerator makes the region vanish.
-
-    A power -n of a line is an n-fold derivative of ``(U+F)^(-d/2)`` in its parameter at zero: products of
-    derivatives of U + F, each with one more inverse power of U + F.
-    """
-    if not any(orders):
-        return Fraction(0)
-    cost: dict[tuple[int, ...], Fraction] = {}
-    for order, terms in derivatives.items():
-        if any(order):
-            cost[order] = min(_along(facet, r) + valuation(c, name, point) for r, c in terms) - facet.offset
-    best: dict[tuple[int, ...], Fraction] = {(0,) * len(orders): Fraction(0)}
-    for total in _below(orders):
-        ways = [
-            best[rest] + value
-            for order, value in cost.items()
-            if (rest := tuple(t - o for t, o in zip(total, order, strict=True))) in best
-        ]
-        if ways and any(total):
-            best[total] = min(ways)
-    return best.get(orders)
-
-
-def _below(orders: tuple[int, ...]) -> Iterator[tuple[int, ...]]:
-    """All multi-indices up to `orders`, each after those below it."""
-    yield from sorted(product(*(range(n + 1) for n in orders)), key=lambda t: (sum(t), t))

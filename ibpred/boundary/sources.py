@@ -1,0 +1,181 @@
+"""What canonical functions are made of near a point: closed forms, and regions of other masters."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+
+from ibpred.boundary.approach import Approach, is_positive_before, leading, near
+from ibpred.boundary.expansion import ClosedForm
+from ibpred.boundary.local import Contribution, contributions
+from ibpred.boundary.regions import (
+    Exponent,
+    ParametricFamily,
+    Region,
+    behaviour_of_closed_form,
+    regions,
+)
+from ibpred.exact.rational import Rational
+from ibpred.family.definition import Powers
+from ibpred.iterated.transport import Infinity
+
+Slopes = tuple[Fraction | None, ...]
+
+
+@dataclass(frozen=True)
+class Master:
+    """What is known of one master integral in the Euclidean region.
+
+    Attributes
+    ----------
+    label
+        Its name, for messages.
+    closed
+        Its closed form, where there is one.
+    powers
+        Its powers, from which its behaviour is read off; None where nothing shall be claimed.
+    """
+
+    label: str
+    closed: ClosedForm | None
+    powers: Powers | None
+
+
+@dataclass(frozen=True)
+class Known:
+    """What is known of one master at a point: its expansion, or its regions.
+
+    Attributes
+    ----------
+    closed
+        Its closed form with the distance to the point in place of the variable; None where its value is not
+        to be used.
+    regions
+        How it may behave, where there is no such form.
+    """
+
+    closed: ClosedForm | None
+    regions: tuple[Region, ...]
+
+
+@dataclass(frozen=True)
+class _Part:
+    """One master in a function, without a value of its own."""
+
+    regions: tuple[Region, ...]
+    orders: tuple[int, ...]  # of the factor in front of it
+    factor: Rational  # and its leading coefficient, a function of eps
+
+
+@dataclass(frozen=True)
+class Sources:
+    """What one function is made of.
+
+    Attributes
+    ----------
+    values
+        Closed forms, expanded.
+    parts
+        Other masters.
+    """
+
+    values: tuple[Contribution, ...]
+    parts: tuple[_Part, ...]
+
+    def allowed(self, slopes: Slopes) -> tuple[Exponent, ...]:
+        """Behaviours of the masters without values that can show up at u^0 in one class."""
+        return tuple(region.exponent for part in self.parts for region in _reaching(part, slopes))
+
+    def leading_values(self, slopes: Slopes) -> tuple[Contribution, ...] | None:
+        """All that masters without values bring at u^0 in one class.
+
+        Returns
+        -------
+        tuple or None
+            None where it is not known: a region's leading term is no product of Gamma functions or needs a
+            further regulator, or terms beyond the leading one take part.
+        """
+        found = []
+        for part in self.parts:
+            for region in _reaching(part, slopes):
+                exponent = region.exponent
+                total = [p + n for p, n in zip(exponent.power, part.orders, strict=True)]
+                if any(total) or any(exponent.logs) or region.leading is None:
+                    return None
+                pieces = region.leading.closed
+                if pieces is None:
+                    return None
+                for number, closed in pieces:
+                    coefficient = part.factor * closed.rational * number
+                    found.append(Contribution((0,) * len(total), exponent.slope, coefficient, closed))
+        return tuple(found)
+
+
+def _reaching(part: _Part, slopes: Slopes) -> list[Region]:
+    return [
+        region
+        for region in part.regions
+        if region.exponent.slope == slopes and _reaches_zero(region.exponent.power, part.orders)
+    ]
+
+
+def _reaches_zero(powers: Sequence[Fraction], shift: Sequence[int]) -> bool:
+    """Whether powers in integer steps above ``powers + shift`` (lexicographically) can all be zero."""
+    for power, more in zip(powers, shift, strict=True):
+        if power + more != 0:
+            # below a leading term the next powers are not known: anything may happen there
+            return power + more < 0
+    return True
+
+
+def known_at(master: Master, family: ParametricFamily | None, approach: Approach) -> Known | None:
+    """What is known of a master at a point; None where nothing is."""
+    point = approach.point
+    if master.closed is not None:
+        if _is_constant(master.closed, approach.variable):
+            return Known(master.closed, ())
+        if isinstance(point, Infinity) or point >= 0:
+            closed = master.closed.substituted({approach.variable: _distance(master.closed, approach)})
+            if all(_is_positive(letter, approach) for letter, _ in master.closed.letters):
+                return Known(closed, ())
+        exponents = behaviour_of_closed_form(master.closed, approach)
+        return Known(None, tuple(Region(exponent, None) for exponent in exponents))
+    if master.powers is None or family is None:
+        return None
+    found = regions(family, master.powers, approach)
+    return None if found is None else Known(None, found)
+
+
+def sources(known: Sequence[Known | None], entries: Sequence[Rational], approach: Approach) -> Sources | None:
+    """What ``sum_j entries[j] I_j`` is made of; None where nothing is known of one of its masters."""
+    values: list[Contribution] = []
+    parts: list[_Part] = []
+    names = (*approach.scales, approach.variable)
+    for item, entry in zip(known, entries, strict=True):
+        if not entry:
+            continue
+        if item is None:
+            return None
+        if item.closed is not None:
+            values += contributions(near(entry, approach.variable, approach.point), item.closed, names)
+        else:
+            parts.append(_Part(item.regions, *approach.leading(entry)))
+    return Sources(tuple(values), tuple(parts))
+
+
+def _is_constant(form: ClosedForm, variable: str) -> bool:
+    """Whether a closed form does not change along an edge."""
+    return not any(
+        variable in v.variables() for v in (form.rational, *(letter for letter, _ in form.letters))
+    )
+
+
+def _distance(form: ClosedForm, approach: Approach) -> Rational:
+    """The variable in terms of the distance to the point."""
+    return near(form.rational.ring.variable(approach.variable), approach.variable, approach.point)
+
+
+def _is_positive(letter: Rational, approach: Approach) -> bool:
+    """Whether a letter's leading term in the scales is positive on the way to the point."""
+    return is_positive_before(leading(letter, approach.scales)[1], approach.variable, approach.point)
