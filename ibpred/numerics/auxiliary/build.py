@@ -32,7 +32,7 @@ from ibpred.reduction.masters import find_masters
 from ibpred.reduction.recording import coefficients, record_quantities
 from ibpred.reduction.wanted import single
 from ibpred.sectors.analysis import SectorAnalysis, analyse
-from ibpred.sectors.order import sector_of
+from ibpred.sectors.order import lines_of, sector_of
 
 _TRIAL = Fraction(1, 1009)  # an eps without meaning, at which ranks are looked at
 _DOTS = 2  # most dots of the integrals that serve as further conditions
@@ -161,7 +161,7 @@ class _Builder:
                 own = [powers for powers in left if sector_of(powers) & ~top == 0]
                 values |= dict(zip(own, self.values(restricted(family, top), own), strict=True))
             else:
-                own = self._flow(family, left, values)
+                own = self._flow(family, analysis, left, values)
             left = [powers for powers in left if powers not in own]
         self.nodes.append(Node(None, tuple(values[powers] for powers in masters)))
         return _Place(family, analysis, masters, len(self.nodes) - 1)
@@ -186,16 +186,17 @@ class _Builder:
     def _flow(
         self,
         family: FamilyDefinition,
+        analysis: SectorAnalysis,
         wanted: Sequence[Powers],
         values: dict[Powers, Combination],
     ) -> list[Powers]:
         """Values of integrals of a family by a flow, as far as they contain its massive line."""
         failures = []
-        for heavy, enlarged, analysis, masters in self._choices(family):
+        for heavy, enlarged, with_eta, masters in self._choices(family, analysis):
             own = [powers for powers in wanted if powers[heavy] > 0]
             try:
-                flow = self._smooth_flow(family, heavy, enlarged, analysis, masters, own)
-                flow = self._determined(flow, family, heavy, enlarged, analysis)
+                flow = self._smooth_flow(family, heavy, enlarged, with_eta, masters, own)
+                flow = self._determined(flow, family, heavy, enlarged, with_eta)
             except (ReconstructionError, BoundaryError, UnfinishedError) as error:
                 failures.append(f"{family.lines[heavy].text}: {error}")
                 continue
@@ -208,17 +209,17 @@ class _Builder:
         raise UnfinishedError(f"{family.name}: no line can carry the auxiliary mass; " + "; ".join(failures))
 
     def _choices(
-        self, family: FamilyDefinition
+        self, family: FamilyDefinition, analysis: SectorAnalysis
     ) -> Iterator[tuple[int, FamilyDefinition, SectorAnalysis, tuple[Powers, ...]]]:
-        """Lines for the mass, those with few masters first."""
+        """Lines for the mass, one of those that a symmetry takes to each other, few masters first."""
         found = []
-        for heavy in family.propagators:
+        for heavy in _inequivalent_lines(family, analysis):
             enlarged = with_mass(family, heavy)
-            analysis = analyse(enlarged)
-            masters = find_masters(enlarged, analysis, self.primes[0], self.seed, progress=self.progress)
-            found.append((len(masters.masters), heavy, enlarged, analysis, masters.masters))
-        for _, heavy, enlarged, analysis, powers in sorted(found, key=lambda item: item[:2]):
-            yield heavy, enlarged, analysis, powers
+            with_eta = analyse(enlarged)
+            masters = find_masters(enlarged, with_eta, self.primes[0], self.seed, progress=self.progress)
+            found.append((len(masters.masters), heavy, enlarged, with_eta, masters.masters))
+        for _, heavy, enlarged, with_eta, powers in sorted(found, key=lambda item: item[:2]):
+            yield heavy, enlarged, with_eta, powers
 
     def _smooth_flow(
         self,
@@ -369,6 +370,19 @@ def _soft_powers(region: Region, powers: Powers) -> Powers:
         return ()
     soft = [powers[i] for i in region.soft]
     return tuple(soft + [0] * (len(region.soft_family.lines) - len(soft)))
+
+
+def _inequivalent_lines(family: FamilyDefinition, analysis: SectorAnalysis) -> list[int]:
+    """One line of each orbit under the symmetries of the sector of all lines."""
+    everything = sum(1 << i for i in family.propagators)
+    inside = lines_of(everything)
+    first = {line: line for line in inside}
+    for map_ in analysis.maps:
+        if map_.source == map_.target == everything:
+            for line, image in zip(inside, map_.lines, strict=True):
+                low, high = sorted((first[line], first[image]))
+                first = {key: low if value == high else value for key, value in first.items()}
+    return sorted(set(first.values()))
 
 
 def _dotted(masters: Sequence[Powers], dots: int) -> list[Powers]:
