@@ -6,7 +6,7 @@ from fractions import Fraction
 
 import massless_references as massless
 import pytest
-from closed_forms import laurent_coefficients
+from bessel_bananas import small_circle
 from mpmath import mp, mpc, mpf, zeta
 from solving import FAMILIES, compare, values
 
@@ -29,7 +29,8 @@ def folder(tmp_path_factory):
 
 
 def expanded(function, lowest):
-    return laurent_coefficients(function, lowest, 0, 38)
+    # three loops have poles at eps = 1/3 and nearer: too near for the larger circle of `closed_forms`
+    return small_circle(function, lowest, 0, 38, True)
 
 
 def complex_values(table):

@@ -44,9 +44,9 @@ class TestBesselMoments:
 
     @pytest.mark.slow
     def test_three_loops_at_the_pseudo_threshold(self):
-        # int x I0(x) K0(x)^4 = pi^2 C, C = (1/16)(1 - 1/sqrt(5)) (1 + 2 sum exp(-n^2 pi sqrt(15)))^4
+        # int x I0(x) K0(x)^4 = pi^2 C, C = (pi/16)(1 - 1/sqrt(5)) (1 + 2 sum exp(-n^2 pi sqrt(15)))^4
         theta = 1 + 2 * nsum(lambda n: exp(-(n**2) * pi * sqrt(15)), [1, inf])
-        assert close(moment(5, 1, 30), 16 * pi**2 * (1 - 1 / sqrt(5)) * theta**4 / 16, 30)
+        assert close(moment(4, 1, 30), pi**3 / 2 * (1 - 1 / sqrt(5)) * theta**4, 30)
 
 
 class TestDispersionAgainstMoments:
