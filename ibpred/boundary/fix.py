@@ -8,14 +8,14 @@ follow from the others are kept as evidence: they could have failed.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import flint
 
 from ibpred.boundary.conditions import Condition
 from ibpred.boundary.explore import BoundaryProblem, Gathered, explore, unit_transport
-from ibpred.boundary.linear import Determined, Transported, Undetermined, solve_all, transported
+from ibpred.boundary.linear import Outcome, Transported, solve_all, transported
 from ibpred.boundary.recognise import Fit
 from ibpred.errors import BoundaryError, InputError
 from ibpred.iterated.constants import Constant
@@ -101,10 +101,15 @@ class OpenConstantsError(BoundaryError):
         The message.
     open_
         Pairs (power of eps, canonical function).
+    known
+        The constants that are determined, likewise; those before the first vanish.
     """
 
-    def __init__(self, problem: str, open_: tuple[tuple[int, int], ...]) -> None:
+    def __init__(
+        self, problem: str, open_: tuple[tuple[int, int], ...], known: Mapping[tuple[int, int], Constant]
+    ) -> None:
         self.open = open_
+        self.known = known
         super().__init__(problem)
 
 
@@ -129,10 +134,12 @@ def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Bo
         If the form has square roots, or conditions contradict each other (names the first that does).
     """
     outcome, gathered, weight = _determine(problem, fitted)
-    if isinstance(outcome, Undetermined):
-        raise OpenConstantsError(_complaint(problem, outcome, gathered.unused), outcome.open)
-    starts = _starts(problem)
+    starts = lowest_orders(problem)
     first = min(starts)
+    if outcome.open:
+        pairs = ((order, row) for order in range(first, weight + 1) for row in range(len(starts)))
+        known = {pair: outcome.constant(*pair) for pair in pairs if pair not in outcome.open}
+        raise OpenConstantsError(_complaint(problem, outcome, gathered.unused), outcome.open, known)
     evidence = tuple(
         Evidence(item.condition.name, total, new, total - new)
         for item, (total, new) in zip(gathered.conditions, outcome.counts, strict=True)
@@ -147,9 +154,7 @@ def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Bo
     return Boundary(first, tuple(vectors), evidence, gathered.unused, problem.corner, tuple(fitted))
 
 
-def _determine(
-    problem: BoundaryProblem, fitted: Sequence[Fitted]
-) -> tuple[Determined | Undetermined, Gathered, int]:
+def _determine(problem: BoundaryProblem, fitted: Sequence[Fitted]) -> tuple[Outcome, Gathered, int]:
     """The outcome of all conditions, the conditions, and the order through which constants are given."""
     form = problem.form
     if not form.variables:
@@ -166,18 +171,18 @@ def _determine(
         )
     if len(problem.masters) != len(form.inverse):
         raise InputError(f"{len(problem.masters)} masters are given for {len(form.inverse)} functions")
-    starts = _starts(problem)
+    starts = lowest_orders(problem)
     weight = max(problem.weight, min(starts))
     extra = 0
     while True:
         # conditions at one order often fix constants of the order before only
         outcome, gathered = _solve(problem, fitted, starts, weight, weight + extra)
-        if isinstance(outcome, Determined) or extra == _MOST_EXTRA_ORDERS:
+        if not outcome.open or extra == _MOST_EXTRA_ORDERS:
             return outcome, gathered, weight
         extra += 1
 
 
-def _starts(problem: BoundaryProblem) -> tuple[int, ...]:
+def lowest_orders(problem: BoundaryProblem) -> tuple[int, ...]:
     """A lower bound of the first order of each canonical function."""
     poles = []
     for master in problem.masters:
@@ -191,16 +196,16 @@ def _starts(problem: BoundaryProblem) -> tuple[int, ...]:
 
 def _solve(
     problem: BoundaryProblem, fitted: Sequence[Fitted], starts: Sequence[int], weight: int, last: int
-) -> tuple[Determined | Undetermined, Gathered]:
+) -> tuple[Outcome, Gathered]:
     """Visit corners until the constants are determined and confirmed, or no corner is left."""
-    outcome: Determined | Undetermined = Undetermined(())
+    outcome = Outcome({}, (), ())
     gathered = Gathered((), ())
     # fits come last: what follows without them does not rest on them
     extra = _as_conditions(fitted, len(problem.masters), last - min(starts))
     for count, gathered in enumerate(explore(problem, last, last - min(starts)), start=1):
         gathered = Gathered((*gathered.conditions, *extra), gathered.unused)
         outcome = solve_all(gathered.conditions, starts, weight, last)
-        if isinstance(outcome, Determined) and count >= _LEAST_CORNERS:
+        if not outcome.open and count >= _LEAST_CORNERS:
             break
     return outcome, gathered
 
@@ -217,7 +222,7 @@ def _as_conditions(fitted: Sequence[Fitted], size: int, order: int) -> list[Tran
     return found
 
 
-def _complaint(problem: BoundaryProblem, outcome: Undetermined, unused: Sequence[str]) -> str:
+def _complaint(problem: BoundaryProblem, outcome: Outcome, unused: Sequence[str]) -> str:
     rows: dict[int, list[int]] = {}
     for order, row in outcome.open:
         rows.setdefault(row, []).append(order)

@@ -51,15 +51,8 @@ class Transported:
 
 
 @dataclass(frozen=True)
-class Undetermined:
-    """The (order, row) pairs that the conditions leave open."""
-
-    open: tuple[tuple[int, int], ...]
-
-
-@dataclass(frozen=True)
-class Determined:
-    """The solution.
+class Outcome:
+    """What the conditions determine.
 
     Attributes
     ----------
@@ -67,13 +60,16 @@ class Determined:
         Nonzero coefficients.
     counts
         For each condition the number of equations and how many of them were new.
+    open
+        The (order, row) pairs that are not fully determined.
     """
 
     values: Mapping[Unknown, Fraction]
     counts: tuple[tuple[int, int], ...]
+    open: tuple[tuple[int, int], ...]
 
     def constant(self, order: int, row: int) -> Constant:
-        """One component of one order."""
+        """One component of one order, where it is determined."""
         terms = {m: v for (k, i, m), v in self.values.items() if k == order and i == row}
         return Constant.from_terms(terms)
 
@@ -96,9 +92,7 @@ def _entries(matrix: Any) -> Entries:
     return [(n // width, n % width, value) for n, value in enumerate(matrix.entries()) if value != 0]
 
 
-def solve_all(
-    system: Sequence[Transported], starts: Sequence[int], weight: int, last: int
-) -> Determined | Undetermined:
+def solve_all(system: Sequence[Transported], starts: Sequence[int], weight: int, last: int) -> Outcome:
     """Solve for all components through ``eps^weight``, with equations through ``eps^last``.
 
     Parameters
@@ -136,9 +130,7 @@ def solve_all(
         fixed = _read_off(echelon, columns)
         values |= {unknown: value for unknown, value in fixed.items() if value and unknown[0] <= weight}
         open_pairs |= {(k, i) for (k, i, m) in columns if k <= weight and (k, i, m) not in fixed}
-    if open_pairs:
-        return Undetermined(tuple(sorted(open_pairs)))
-    return Determined(values, tuple(counts))
+    return Outcome(values, tuple(counts), tuple(sorted(open_pairs)))
 
 
 def _steps(system: Sequence[Transported]) -> dict[str, int]:

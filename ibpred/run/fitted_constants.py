@@ -13,7 +13,7 @@ from ibpred.balls.accuracy import bits_for
 from ibpred.balls.context import Ball, precision
 from ibpred.balls.decimal import ball_of_decimal
 from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import Boundary, Fitted, OpenConstantsError, fix_constants
+from ibpred.boundary.fix import Boundary, Fitted, OpenConstantsError, fix_constants, lowest_orders
 from ibpred.boundary.from_values import fitted_constants
 from ibpred.boundary.problem import one_scale_values, without_closed_form
 from ibpred.boundary.recognise import ALTERNATING, SINGLE_SCALE, Fit, recognise_series
@@ -22,12 +22,14 @@ from ibpred.errors import BoundaryError, UnfinishedError
 from ibpred.family.definition import Powers
 from ibpred.family.signs import masses
 from ibpred.iterated.series import Series, eps_valuation, laurent
-from ibpred.run.known_points import new_point
+from ibpred.run.known_points import KnownPoint, new_point
 
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
 
-_DIGITS = 40
+_DIGITS = (40, 90)
+"""Of the values; the next where a constant is not recognised."""
+
 _ODDS = -12
 """A fit is believed if chance would give one as good once in 10^12."""
 
@@ -54,17 +56,34 @@ def one_scale_boundary(chain: Chain, order: int) -> Boundary:
     if missing:
         chain.progress.stage(f"values of {len(missing)} masters without a closed form")
         point = {name: Fraction(sign) for name, sign in signs.items()}
-        known = new_point(chain, point, order, _DIGITS)
-        for row, powers in enumerate(masters):
-            if powers in missing:
-                values = {
-                    k: flint.acb(ball_of_decimal(v, 2 * bits_for(_DIGITS)).real)
-                    for k, v in known.values[row].items()
-                }
-                series[powers], fits = recognise_series(values, len(family.loops), _generators(chain), _ODDS)
-                fitted += _marked(row, series[powers].start, fits)
+        for digits in _DIGITS:
+            known = new_point(chain, point, order, digits)
+            try:
+                series, fitted = _recognised(chain, known, missing, digits)
+                break
+            except BoundaryError as error:
+                if digits == _DIGITS[-1]:
+                    raise error
     exact = one_scale_values(family, masters, signs, order, series)
     return replace(boundary_of_series(exact), fitted=tuple(fitted))
+
+
+def _recognised(
+    chain: Chain, known: KnownPoint, missing: Sequence[Powers], digits: int
+) -> tuple[dict[Powers, Series], list[Fitted]]:
+    """Masters without a closed form, from their values."""
+    series: dict[Powers, Series] = {}
+    fitted: list[Fitted] = []
+    for row, powers in enumerate(chain.masters().masters):
+        if powers in missing:
+            values = {
+                k: flint.acb(ball_of_decimal(v, 2 * bits_for(digits)).real)
+                for k, v in known.values[row].items()
+            }
+            loops = len(chain.definition.loops)
+            series[powers], fits = recognise_series(values, loops, _generators(chain), _ODDS)
+            fitted += _marked(row, series[powers].start, fits)
+    return series, fitted
 
 
 def boundary_of_series(exact: Sequence[Series]) -> Boundary:
@@ -103,19 +122,23 @@ def completed_by_fits(chain: Chain, problem: BoundaryProblem, complaint: Boundar
     ratios = dict(zip(form.variables, _RATIOS, strict=False))
     values = chain.coordinates().values
     point = {name: value.substitute(dict(ratios)).to_fraction() for name, value in values.items()}
-    start = problem.start if problem.start is not None else 0
+    start = min(lowest_orders(problem))
     needed = problem.weight - min(eps_valuation(e) for row in form.inverse for e in row if e)
-    try:
-        known = new_point(chain, point, needed, _DIGITS)
-        bits = 2 * bits_for(_DIGITS)
-        numbers = [{k: ball_of_decimal(v, bits) for k, v in master.items()} for master in known.values]
-        functions = _canonical(form, ratios, numbers, start, problem.weight, bits)
-        fits = fitted_constants(
-            problem, complaint.open, functions, start, ratios, _DIGITS, _generators(chain), _ODDS
-        )
-    except UnfinishedError as error:
-        raise BoundaryError(f"{complaint}. A fit from values failed: {error}") from error
-    return fix_constants(problem, fits)
+    for digits in _DIGITS:
+        try:
+            known = new_point(chain, point, needed, digits)
+            bits = 2 * bits_for(digits)
+            numbers = [{k: ball_of_decimal(v, bits) for k, v in master.items()} for master in known.values]
+            functions = _canonical(form, ratios, numbers, start, problem.weight, bits)
+            fits = fitted_constants(
+                problem, complaint, functions, start, ratios, digits, _generators(chain), _ODDS
+            )
+            return fix_constants(problem, fits)
+        except UnfinishedError as error:
+            failure = error
+            if not isinstance(error, BoundaryError):
+                break
+    raise BoundaryError(f"{complaint}. A fit from values failed: {failure}") from failure
 
 
 def _canonical(

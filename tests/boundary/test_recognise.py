@@ -136,13 +136,13 @@ def test_constants_from_values_at_a_point() -> None:
     blind = replace(right, masters=(*right.masters[:3], replace(right.masters[3], powers=None)))
     with pytest.raises(OpenConstantsError, match="undetermined") as caught:
         fix_constants(blind)
-    wanted = caught.value.open
-    assert {row for _, row in wanted} == {3}
-    fits = fitted_constants(blind, wanted, values, derived.start, point, 50, SINGLE_SCALE, -12)
+    complaint = caught.value
+    assert {row for _, row in complaint.open} == {3}
+    fits = fitted_constants(blind, complaint, values, derived.start, point, 50, SINGLE_SCALE, -12)
     found = fix_constants(blind, fits)
     assert found.constants == derived.constants
     assert {item.row for item in found.fitted} == {3}
     shifted = [list(row) for row in values]
     shifted[2][3] = shifted[2][3] + flint.acb(flint.arb("0.1234567"))
     with pytest.raises(BoundaryError, match=r"function 4 .* at eps\^1"):
-        fitted_constants(blind, wanted, shifted, derived.start, point, 50, SINGLE_SCALE, -12)
+        fitted_constants(blind, complaint, shifted, derived.start, point, 50, SINGLE_SCALE, -12)
