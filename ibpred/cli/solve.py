@@ -16,7 +16,7 @@ def solve(shared: Shared, weight: int | None) -> None:
     from ibpred.report.text import solution_text
 
     with open_chain(shared) as chain:
-        highest = 2 * len(chain.definition.loops) if weight is None else weight
+        highest = chain.order_of_weight(2 * len(chain.definition.loops) if weight is None else weight)
         solution = chain.solution(highest)
         data = solution_data(chain.definition, chain.completed_boundary(highest), solution)
     emit(shared, data, lambda: solution_text(data))

@@ -84,7 +84,7 @@ class Family:
     def solve(self, weight: int | None = None) -> Solution:
         """The canonical functions in iterated integrals; through weight 2 L by default."""
         highest = 2 * len(self.definition.loops) if weight is None else weight
-        return self._with_chain(lambda chain: chain.solution(highest))
+        return self._with_chain(lambda chain: chain.solution(chain.order_of_weight(highest)))
 
     def evaluate(
         self,

@@ -22,15 +22,11 @@ from ibpred.diffeq.ratios import (
 from ibpred.digest import digest
 from ibpred.epsform.factorise import factorise, root_covers
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
-from ibpred.epsform.matrices import identity, scaled
-from ibpred.epsform.parity import involution, with_parity
 from ibpred.errors import BoundaryError, ObstructionError, UnfinishedError
 from ibpred.exact.codec import to_data
-from ibpred.exact.rational import Rational, ring
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import euclidean_signs
 from ibpred.identities.rows import family_identities
-from ibpred.iterated.series import eps_valuation
 from ibpred.iterated.solution import Solution, constant_solution, solve_orders
 from ibpred.numerics.value import Value
 from ibpred.progress import Progress
@@ -42,6 +38,7 @@ from ibpred.reduction.table import ReductionTable
 from ibpred.reduction.wanted import check_powers
 from ibpred.report.text import integral_text
 from ibpred.run.fitted_constants import boundary_of_series, completed_by_fits, one_scale_boundary
+from ibpred.run.normalisation import normalised, trivial_form
 from ibpred.run.rows import table_rows
 from ibpred.run.stages import SEED, Stages
 from ibpred.run.store import Store
@@ -238,7 +235,8 @@ class Chain(Stages):
             found = factorise(connection, self.primes, SEED, self.progress, expired)
             if isinstance(found, Obstructed) and not found.complete:
                 raise _StoppedError(found)
-            return _outcome(self._normalised(found))
+            values = self.coordinates().values.values()
+            return _outcome(normalised(found, values, lambda form: self._boundary_problem(form, 0)))
 
         try:
             stored = self._kept("epsilon-form", _Outcome, None, compute)
@@ -247,43 +245,6 @@ class Chain(Stages):
         found = stored.form if stored.form is not None else stored.obstructed
         assert found is not None
         return found
-
-    def _normalised(self, found: EpsilonForm | Obstructed) -> EpsilonForm | Obstructed:
-        """Choose functions of definite parity where the variable has a symmetry, beginning at ``eps^0``.
-
-        The differential equation is blind to a power of eps that multiplies all of them; the boundary
-        constants tell it. Where they stay open no power is taken out.
-        """
-        if isinstance(found, Obstructed) or any(found.tags):
-            return found
-        for name in found.variables:
-            symmetry = involution(self.coordinates().values.values(), name)
-            if symmetry is not None:
-                found = with_parity(found, name, symmetry)
-        try:
-            found = _scaled(found, 1 / self._first_factor(found))
-            problem = self._boundary_problem(found, 0)
-            start = fix_constants(problem).start
-        except UnfinishedError:
-            return found
-        return _scaled(found, found.ring.variable("eps") ** -start)
-
-    def _first_factor(self, form: EpsilonForm) -> Rational:
-        """What multiplies Gamma functions in the first function that is one closed form: a function of eps.
-
-        Without it that function is as pure as its Gamma functions, and so are those that couple to it.
-        """
-        masters = self._boundary_problem(form, 0).masters
-        for row in form.inverse:
-            used = [j for j, entry in enumerate(row) if entry]
-            closed = masters[used[0]].closed
-            if len(used) != 1 or closed is None:
-                continue
-            factor = row[used[0]] * closed.rational
-            if set(factor.variables()) <= {"eps"}:
-                rest = factor / form.ring.variable("eps") ** eps_valuation(factor)
-                return rest / rest.substitute({"eps": 0})
-        return form.ring.one
 
     def euclidean_signs(self) -> dict[str, int]:
         """Signs of the invariants in the Euclidean region.
@@ -310,7 +271,7 @@ class Chain(Stages):
             If some block has none.
         """
         if len(self.definition.invariants) <= 1:
-            return _trivial_form(len(self.masters().masters))
+            return trivial_form(len(self.masters().masters))
         found = self.epsilon_form()
         if isinstance(found, Obstructed):
             reasons = "; ".join(
@@ -359,6 +320,14 @@ class Chain(Stages):
         except UnfinishedError:
             return problem
 
+    def order_of_weight(self, weight: int) -> int:
+        """The power of eps at which what is solved for has this weight.
+
+        Canonical functions begin at ``eps^0`` with weight 0. Masters without a ratio stand for themselves:
+        the weight at ``eps^k`` is at most 2 L + k.
+        """
+        return weight if len(self.definition.invariants) > 1 else weight - 2 * len(self.definition.loops)
+
     def solution(self, weight: int) -> Solution:
         """The canonical functions in iterated integrals through ``eps^weight``."""
         form, boundary = self.solved_form(), self.completed_boundary(weight)
@@ -376,20 +345,6 @@ class Chain(Stages):
     def label(self, row: int) -> str:
         """A master by name."""
         return integral_text(self.definition.name, self.masters().masters[row])
-
-
-def _scaled(form: EpsilonForm, factor: Rational) -> EpsilonForm:
-    """All functions times a function of eps."""
-    return replace(
-        form, transformation=scaled(form.transformation, 1 / factor), inverse=scaled(form.inverse, factor)
-    )
-
-
-def _trivial_form(count: int) -> EpsilonForm:
-    """The form of masters that depend on no ratio: they are their own canonical functions."""
-    field = ring(("eps",))
-    one = identity(field, count)
-    return EpsilonForm((), field, (), (), one, one, ((),) * count)
 
 
 @dataclass(frozen=True)

@@ -87,10 +87,10 @@ def chain_material(chain: Chain, order: int, digits: int) -> Material:
         epsilon = epsilon_data(family, chain.dimensionless(), found)
         if isinstance(found, EpsilonForm):
             letters, variables = found.letters, found.variables
-    weight = 2 * len(family.loops)
+    highest = chain.order_of_weight(2 * len(family.loops))
     try:
-        solved = chain.solution(weight)
-        solution = solution_data(family, chain.completed_boundary(weight), solved)
+        solved = chain.solution(highest)
+        solution = solution_data(family, chain.completed_boundary(highest), solved)
     except UnfinishedError as error:
         notes.append(f"no solution in iterated integrals: {error}")
     singular = []

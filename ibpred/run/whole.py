@@ -148,7 +148,8 @@ def _solve(chain: Chain, journal: _Journal, checks: list[CheckResult], digits: i
             if isinstance(found, EpsilonForm):
                 checks.append(_substitution(chain, found))
         weight = 2 * len(family.loops)
-        boundary, seconds = journal.timed(lambda: chain.completed_boundary(weight))
+        order = chain.order_of_weight(weight)
+        boundary, seconds = journal.timed(lambda: chain.completed_boundary(order))
         confirming = sum(item.confirming for item in boundary.evidence)
         used = sum(item.independent for item in boundary.evidence)
         told = f"{used} conditions, {confirming} more confirm them" if used else "Gamma functions"
@@ -161,7 +162,7 @@ def _solve(chain: Chain, journal: _Journal, checks: list[CheckResult], digits: i
         journal.note("boundary constants", told, seconds)
         if confirming:
             checks.append(CheckResult("boundary", True, f"{confirming} redundant conditions hold exactly"))
-        solution, seconds = journal.timed(lambda: chain.solution(weight))
+        solution, seconds = journal.timed(lambda: chain.solution(order))
         form = chain.solved_form()
         journal.files["solution.json"] = solution_data(family, boundary, solution)
         journal.note("iterated integrals", f"through weight {weight}", seconds)
