@@ -1,11 +1,12 @@
-"""The epsilon-form's functions made as pure as the differential equation leaves open: parity, powers of eps."""
+"""Canonical functions made as pure as the differential equation leaves open: parity, powers of eps."""
 
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable
 from dataclasses import replace
 
-from ibpred.boundary.fix import BoundaryProblem, fix_constants
+from ibpred.boundary.explore import BoundaryProblem
+from ibpred.boundary.fix import fix_constants
 from ibpred.epsform.form import EpsilonForm, Obstructed
 from ibpred.epsform.matrices import identity, scaled
 from ibpred.epsform.parity import involution, with_parity
