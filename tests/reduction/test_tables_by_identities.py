@@ -72,7 +72,7 @@ def identity_with(source: Identities, wanted: tuple[int, ...], rng: random.Rando
         pytest.param("planar-double-box", 3, 1, marks=pytest.mark.slow),
         pytest.param("crossed-double-box", 2, 1, marks=pytest.mark.slow),
         pytest.param("planar-double-box-massive-fermion", 2, 3, marks=pytest.mark.slow),
-        pytest.param("pentabox", 1, 3, marks=pytest.mark.slow),
+        pytest.param("pentabox", 1, 12, marks=pytest.mark.slow),
     ],
 )
 def test_tables_by_separate_identities(name: str, rank: int, every: int) -> None:
