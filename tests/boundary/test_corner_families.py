@@ -6,6 +6,7 @@ from pathlib import Path
 import flint
 import pytest
 from canonical_forms import family
+from mpmath import euler, exp, gamma, hyp2f1, mp, mpf, taylor
 
 from ibpred.iterated.solution_values import solution_values
 from ibpred.progress import Silent
@@ -46,3 +47,32 @@ def test_the_crossed_vertex_is_fitted(tmp_path: Path) -> None:
     assert shown == ["1", "0", "-pi^2", "-83*zeta3/3", "-59*pi^4/120"]
     assert {item.row for item in boundary.fitted} == {row}
     assert all(item.fit.odds < -20 for item in boundary.fitted)
+
+
+def test_the_sunrise_with_one_mass(tmp_path: Path) -> None:
+    """Against the massless bubble inside the bubble with one mass:
+
+    ``Gamma(1-e)^2 Gamma(e) Gamma(2e-1) / Gamma(2-e) 2F1(2e-1, e; 2-e; -x)`` with x = -s/m^2.
+    """
+    with Store(tmp_path) as store:
+        chain = chain_of("sunrise-one-mass", store)
+        boundary, value = (
+            chain.boundary(4),
+            chain.evaluate({"s": Fraction(-1, 3), "m2": Fraction(1)}, (), 1, 15),
+        )
+    assert not boundary.fitted
+    assert sum(item.confirming for item in boundary.evidence) > 30
+    masters = {v.powers: v.epsilon for v in value}
+    with mp.workdps(30):
+
+        def squared(eps: mpf) -> mpf:
+            factor = (
+                gamma(1 - eps) ** 2
+                * gamma(1 + eps)
+                * gamma(1 + 2 * eps)
+                / (2 * (2 * eps - 1) * gamma(2 - eps))
+            )
+            return exp(2 * eps * euler) * factor * hyp2f1(2 * eps - 1, eps, 2 - eps, -mpf(1) / 3)
+
+        for k, coefficient in enumerate(taylor(squared, 0, 3)):
+            assert mp.almosteq(mpf(masters[1, 1, 1, 0, 0][k - 2].re), coefficient, 1e-10)
