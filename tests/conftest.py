@@ -1,4 +1,4 @@
-"""What all tests share: property tests have no deadline, since machines differ, and repeat themselves in CI."""
+"""What all tests share: property tests have no deadline (machines differ) and repeat themselves in CI."""
 
 from __future__ import annotations
 

@@ -155,8 +155,9 @@ def _evidence(data: Data) -> str:
     lines += [
         "",
         "Reductions and differential equations are reconstructed from samples modulo primes and confirmed at "
-        "fresh primes and points: certain with overwhelming probability, not proved. Balls are rigorous given "
-        "the ε-form and its boundary constants. Cross-check whatever enters a publication or an error budget.",
+        "fresh primes and points: certain with overwhelming probability, not proved. Balls are rigorous "
+        "given the ε-form and its boundary constants. Cross-check whatever enters a publication or an "
+        "error budget.",
     ]
     return "\n".join(lines)
 

@@ -55,7 +55,10 @@ def test_one_mass_bubble(s, m2, folder):
         compare(value, cf.laurent_coefficients(closed, -1, 2, 38), DIGITS)
 
 
-@pytest.mark.parametrize(("s", "t"), [("-1", "-1/3"), ("1", "-1/3"), ("-2", "-1/3"), ("-1/7", "-40"), ("5", "-2"), ("1", "-99/100")])
+@pytest.mark.parametrize(
+    ("s", "t"),
+    [("-1", "-1/3"), ("1", "-1/3"), ("-2", "-1/3"), ("-1/7", "-40"), ("5", "-2"), ("1", "-99/100")],
+)
 def test_massless_box(s, t, folder):
     found = values("massless-box", folder / "box", {"s": s, "t": t}, 2, DIGITS)
     closed = {
