@@ -12,7 +12,9 @@ from ibpred.digest import digest
 from ibpred.exact.codec import from_data, to_data
 from ibpred.numerics.auxiliary.build import auxiliary_plan
 from ibpred.numerics.auxiliary.laurent import auxiliary_values
+from ibpred.numerics.auxiliary.plan import AuxiliaryPlan
 from ibpred.numerics.value import Value
+from ibpred.run.auxiliary_processes import process_sampler
 from ibpred.run.stages import SEED
 
 if TYPE_CHECKING:
@@ -66,10 +68,32 @@ def auxiliary_at(chain: Chain, point: Mapping[str, Fraction], order: int, digits
     UnfinishedError
         If the method does not apply to the family, or the digits are not reached.
     """
-    plan = auxiliary_plan(
-        chain.definition, point, chain.masters().masters, chain.primes, SEED, chain.deck, chain.progress
+    plan = _plan(chain, point)
+    return auxiliary_values(plan, order, digits, process_sampler(chain.workers.width), chain.progress)
+
+
+def _plan(chain: Chain, point: Mapping[str, Fraction]) -> AuxiliaryPlan:
+    """What the masters at a point need, exactly; it serves any number of digits and is kept."""
+    masters = chain.masters().masters
+    key = digest(
+        [
+            chain.identity,
+            "auxiliary plan",
+            to_data(masters),
+            [[name, str(value)] for name, value in sorted(point.items())],
+        ]
     )
-    return auxiliary_values(plan, order, digits, progress=chain.progress)
+    stored = chain.store.get(key)
+    if stored is not None:
+        return from_data(AuxiliaryPlan, stored)
+    with chain.deck.working_for(key):
+        plan = auxiliary_plan(
+            chain.definition, point, masters, chain.primes, SEED, chain.deck, chain.progress
+        )
+    with chain.store.transaction():
+        chain.store.put(key, "auxiliary plan", to_data(plan))
+        chain.store.forget_work(key)
+    return plan
 
 
 def new_point(chain: Chain, point: Mapping[str, Fraction], order: int, digits: int) -> KnownPoint:

@@ -8,16 +8,14 @@ called certified.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from functools import partial
 from math import ceil
-from typing import Protocol
 
 import flint
 
-from ibpred.balls.accuracy import bits_for, until_accurate
+from ibpred.balls.accuracy import bits_for, is_accurate
 from ibpred.balls.context import Ball, precision
 from ibpred.balls.decimal import DecimalBall, decimal_ball
 from ibpred.errors import PrecisionError
@@ -28,23 +26,36 @@ from ibpred.numerics.value import Route, Value
 from ibpred.progress import SILENT, Progress
 
 _SPARE_DIGITS = 6
-_MOST_BITS = 20_000
+_PATIENCE = 6  # how far the working precision is raised, as a factor
 _ROUNDS = 3
 
 
-class Mapper(Protocol):
-    """Applies a function to every item, in order; `map` itself or a pool's."""
+@dataclass(frozen=True)
+class Task:
+    """One eps of a plan.
 
-    def __call__(
-        self, function: Callable[[Fraction], tuple[Ball, ...]], items: Sequence[Fraction], /
-    ) -> Iterable[tuple[Ball, ...]]: ...
+    Attributes
+    ----------
+    eps
+        The value.
+    digits
+        Relative digits of every integral.
+    start_bits
+        Working precision to begin with.
+    """
+
+    eps: Fraction
+    digits: int
+    start_bits: int
 
 
-def one_by_one(
-    function: Callable[[Fraction], tuple[Ball, ...]], items: Sequence[Fraction], /
-) -> Iterable[tuple[Ball, ...]]:
-    """The mapper without helpers."""
-    return map(function, items)
+Sampler = Callable[[AuxiliaryPlan, Sequence[Task]], Iterable[tuple[Ball, ...]]]
+"""Works on the tasks of a plan, in order: `one_by_one`, or something that shares them out."""
+
+
+def one_by_one(plan: AuxiliaryPlan, tasks: Sequence[Task]) -> Iterator[tuple[Ball, ...]]:
+    """The sampler without helpers."""
+    return (accurate_sample(plan, task) for task in tasks)
 
 
 @dataclass(frozen=True)
@@ -84,24 +95,37 @@ def choose_sampling(orders: int, digits: int, extra: int) -> Sampling:
     return Sampling(points, goal + orders * exponent + _SPARE_DIGITS)
 
 
-def accurate_sample(plan: AuxiliaryPlan, digits: int, start_bits: int, eps: Fraction) -> tuple[Ball, ...]:
-    """The wanted integrals at one eps to so many digits.
+def accurate_sample(plan: AuxiliaryPlan, task: Task) -> tuple[Ball, ...]:
+    """The wanted integrals at one eps to the digits of the task.
 
     Raises
     ------
     PrecisionError
         If they are not reached.
     """
-    return until_accurate(
-        lambda bits: sampled(plan, eps, bits), lambda values: values, digits, start_bits, _MOST_BITS
-    )
+    bits, most = task.start_bits, _PATIENCE * task.start_bits
+    while True:
+        try:
+            values = sampled(plan, task.eps, bits)
+        except PrecisionError:
+            if bits >= most:
+                raise
+        else:
+            if all(is_accurate(value, task.digits) for value in values):
+                return values
+            if bits >= most:
+                raise PrecisionError(
+                    f"{plan.family}: the integrals at eps = {task.eps} are not known to {task.digits} digits "
+                    f"at {bits} bits; ask for fewer digits"
+                )
+        bits = min(most, bits + bits // 2)
 
 
 def auxiliary_values(
     plan: AuxiliaryPlan,
     order: int,
     digits: int,
-    mapper: Mapper = one_by_one,
+    sampler: Sampler = one_by_one,
     progress: Progress = SILENT,
 ) -> tuple[Value, ...]:
     """Laurent coefficients of the wanted integrals of a plan.
@@ -114,7 +138,7 @@ def auxiliary_values(
         Highest power of eps.
     digits
         Digits wanted of every coefficient, relative to its modulus (absolute where it vanishes).
-    mapper
+    sampler
         Works on several eps, possibly at the same time.
     progress
         Told about the values of eps done.
@@ -137,7 +161,7 @@ def auxiliary_values(
     for round_ in range(_ROUNDS):
         sampling = choose_sampling(order - lowest, digits, 2 * round_)
         progress.stage("auxiliary mass")
-        balls = _samples(plan, sampling, mapper, progress)
+        balls = _samples(plan, sampling, sampler, progress)
         bits = bits_for(4 * sampling.digits)
         fits = [
             fitted(sampling.points, [values[i] for values in balls], lowest, order, bits)
@@ -156,14 +180,14 @@ def auxiliary_values(
 
 
 def _samples(
-    plan: AuxiliaryPlan, sampling: Sampling, mapper: Mapper, progress: Progress
+    plan: AuxiliaryPlan, sampling: Sampling, sampler: Sampler, progress: Progress
 ) -> list[tuple[Ball, ...]]:
     # nearly equal exponents, eps apart, cost several times the digits of eps
     tiny = len(str(sampling.points[0].denominator)) - 1
     start = bits_for(sampling.digits + 12 * tiny + 15)
-    function = partial(accurate_sample, plan, sampling.digits, start)
+    tasks = [Task(eps, sampling.digits, start) for eps in sampling.points]
     found = []
-    for values in mapper(function, sampling.points):
+    for values in sampler(plan, tasks):
         found.append(values)
         progress.advance(len(found), len(sampling.points))
     return found

@@ -57,11 +57,15 @@ def sampled(plan: AuxiliaryPlan, eps: Fraction, bits: int) -> tuple[Ball, ...]:
 
     Raises
     ------
+    PointError
+        If eps is zero or a coefficient has a pole there.
     BoundaryError
         If regions and differential equation contradict each other, or the mass cannot be taken to zero.
     PrecisionError
         If the precision is too low for rigorous series.
     """
+    if eps == 0:
+        raise PointError(f"{plan.family}: values are computed at nonzero eps, where integrals are finite")
     values: list[tuple[Ball, ...]] = []
     for node in plan.nodes:
         if node.flow is not None:
