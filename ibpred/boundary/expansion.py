@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
+from math import isqrt
 
 from ibpred.boundary.gamma import EpsLinear, GammaForm
 from ibpred.errors import BoundaryError
@@ -41,6 +42,11 @@ class ClosedForm:
     loops: int
     near_one: Mapping[Fraction, int]
     near_half: Mapping[Fraction, int]
+
+    @property
+    def heaviness(self) -> int:
+        """Weight of what multiplies all orders: each ``Gamma(1/2)`` is half a factor of pi."""
+        return max(0, sum(self.near_half.values()) // 2)
 
     def substituted(self, values: Mapping[str, Rational]) -> ClosedForm:
         """The ratios replaced by other positive functions."""
@@ -127,9 +133,11 @@ def on_line(form: GammaForm, values: Mapping[str, Rational], field: Ring) -> Clo
     numbers: dict[Fraction, Fraction] = {}
     for scale, (p, q) in form.scales:
         value = scale.substitute(values)
-        if p.denominator != 1:
-            raise BoundaryError(f"the scale {scale} has the power {p} at eps = 0, which is no integer")
-        rational = rational * value ** int(p)
+        if p.denominator > 2:
+            raise BoundaryError(
+                f"the scale {scale} has the power {p} at eps = 0: no integer, no half-integer"
+            )
+        rational = rational * (value if p.denominator == 1 else _root(value, scale)) ** p.numerator
         if not q:
             continue
         content, factors = value.factors()
@@ -166,6 +174,27 @@ def expand(closed: ClosedForm, order: int) -> Series:
     if order < lowest:
         return Series(lowest, ())
     return laurent(closed.rational, order) * closed.transcendental(order - lowest + 1)
+
+
+def _root(value: Rational, scale: Rational) -> Rational:
+    """The square root that is positive near zero."""
+    content, factors = value.factors()
+    root = value.ring.one
+    for number, target in ((content.numerator, 1), (content.denominator, -1)):
+        exact = isqrt(max(number, 0))
+        if number <= 0 or exact**2 != number:
+            raise BoundaryError(
+                f"a closed form has the square root of {scale} = {value}, which is not rational"
+            )
+        root = root * Fraction(exact) ** target
+    for polynomial, multiplicity in factors:
+        if multiplicity % 2:
+            raise BoundaryError(
+                f"a closed form has the square root of {scale} = {value}, which is not rational"
+            )
+        letter = value.ring.fraction(polynomial, value.ring.context.constant(1))
+        root = root * (letter if _positive_near_zero(letter) else -letter) ** (multiplicity // 2)
+    return root
 
 
 def _positive_near_zero(letter: Rational) -> bool:

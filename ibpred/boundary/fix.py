@@ -183,15 +183,17 @@ def _determine(problem: BoundaryProblem, fitted: Sequence[Fitted]) -> tuple[Outc
 
 
 def lowest_orders(problem: BoundaryProblem) -> tuple[int, ...]:
-    """A lower bound of the first order of each canonical function."""
+    """Orders k with ``weight <= order - k`` for each canonical function, which begin there or later."""
+    heaviest = max((m.closed.heaviness for m in problem.masters if m.closed is not None), default=0)
     poles = []
     for master in problem.masters:
         poles.append(-2 * problem.loops if master.closed is None else eps_valuation(master.closed.rational))
-    bounds = (
+    bounds = [
         min(eps_valuation(entry) + poles[j] for j, entry in enumerate(row) if entry)
         for row in problem.form.inverse
-    )
-    return tuple(bound if problem.start is None else max(bound, problem.start) for bound in bounds)
+    ]
+    least = min(bounds) if problem.start is None else problem.start
+    return tuple(max(bound, least) - heaviest for bound in bounds)
 
 
 def _solve(

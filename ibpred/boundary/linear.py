@@ -110,6 +110,7 @@ def solve_all(system: Sequence[Transported], starts: Sequence[int], weight: int,
         If conditions contradict each other.
     """
     steps = _steps(system)
+    _check_weights(system, min(starts), last)
     values: dict[Unknown, Fraction] = {}
     counts = [(0, 0)] * len(system)
     open_pairs: set[tuple[int, int]] = set()
@@ -131,6 +132,19 @@ def solve_all(system: Sequence[Transported], starts: Sequence[int], weight: int,
         values |= {unknown: value for unknown, value in fixed.items() if value and unknown[0] <= weight}
         open_pairs |= {(k, i) for (k, i, m) in columns if k <= weight and (k, i, m) not in fixed}
     return Outcome(values, tuple(counts), tuple(sorted(open_pairs)))
+
+
+def _check_weights(system: Sequence[Transported], first: int, last: int) -> None:
+    """No value may be of a higher weight than the ansatz allows: it would be lost."""
+    for item in system:
+        for series in (value for value in item.condition.values if value is not None):
+            for order in range(series.start, min(series.end, last) + 1):
+                heaviest = max(map(monomial_weight, dict(series.coefficient(order).terms())), default=0)
+                if heaviest > order - first:
+                    raise BoundaryError(
+                        f"the condition '{item.condition.name}' holds constants of weight {heaviest} at "
+                        f"eps^{order}, more than the boundary constants can have, which begin at eps^{first}"
+                    )
 
 
 def _steps(system: Sequence[Transported]) -> dict[str, int]:
