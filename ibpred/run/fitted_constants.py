@@ -22,7 +22,7 @@ from ibpred.errors import BoundaryError, UnfinishedError
 from ibpred.family.definition import Powers
 from ibpred.family.signs import masses
 from ibpred.iterated.series import Series, eps_valuation, laurent
-from ibpred.run.known_points import KnownPoint, new_point
+from ibpred.run.known_points import KnownPoint, known_points, new_point
 
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
@@ -57,7 +57,7 @@ def one_scale_boundary(chain: Chain, order: int) -> Boundary:
         chain.progress.stage(f"values of {len(missing)} masters without a closed form")
         point = {name: Fraction(sign) for name, sign in signs.items()}
         for digits in _DIGITS:
-            known = new_point(chain, point, order, digits)
+            known = _values_at(chain, point, order, digits)
             try:
                 series, fitted = _recognised(chain, known, missing, digits)
                 break
@@ -66,6 +66,14 @@ def one_scale_boundary(chain: Chain, order: int) -> Boundary:
                     raise error
     exact = one_scale_values(family, masters, signs, order, series)
     return replace(boundary_of_series(exact), fitted=tuple(fitted))
+
+
+def _values_at(chain: Chain, point: Mapping[str, Fraction], order: int, digits: int) -> KnownPoint:
+    """The masters at a point, kept from before or computed now."""
+    for known in known_points(chain):
+        if dict(known.point) == dict(point) and known.order >= order and known.digits >= digits:
+            return known
+    return new_point(chain, point, order, digits)
 
 
 def _recognised(
@@ -126,7 +134,7 @@ def completed_by_fits(chain: Chain, problem: BoundaryProblem, complaint: Boundar
     needed = problem.weight - min(eps_valuation(e) for row in form.inverse for e in row if e)
     for digits in _DIGITS:
         try:
-            known = new_point(chain, point, needed, digits)
+            known = _values_at(chain, point, needed, digits)
             bits = 2 * bits_for(digits)
             numbers = [{k: ball_of_decimal(v, bits) for k, v in master.items()} for master in known.values]
             functions = _canonical(form, ratios, numbers, start, problem.weight, bits)
