@@ -55,6 +55,11 @@ class BoundaryProblem:
     weight: int
     start: int | None = None
 
+    @property
+    def heaviness(self) -> int:
+        """Weight by which constants may exceed their order: that of factors ``Gamma(1/2)``."""
+        return max((m.closed.heaviness for m in self.masters if m.closed is not None), default=0)
+
 
 @dataclass(frozen=True)
 class Gathered:

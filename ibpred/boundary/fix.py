@@ -184,7 +184,6 @@ def _determine(problem: BoundaryProblem, fitted: Sequence[Fitted]) -> tuple[Outc
 
 def lowest_orders(problem: BoundaryProblem) -> tuple[int, ...]:
     """Orders k with ``weight <= order - k`` for each canonical function, which begin there or later."""
-    heaviest = max((m.closed.heaviness for m in problem.masters if m.closed is not None), default=0)
     poles = []
     for master in problem.masters:
         poles.append(-2 * problem.loops if master.closed is None else eps_valuation(master.closed.rational))
@@ -193,7 +192,7 @@ def lowest_orders(problem: BoundaryProblem) -> tuple[int, ...]:
         for row in problem.form.inverse
     ]
     least = min(bounds) if problem.start is None else problem.start
-    return tuple(max(bound, least) - heaviest for bound in bounds)
+    return tuple(max(bound, least) - problem.heaviness for bound in bounds)
 
 
 def _solve(

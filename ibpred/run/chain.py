@@ -328,6 +328,10 @@ class Chain(Stages):
         """
         return weight if len(self.definition.invariants) > 1 else weight - 2 * len(self.definition.loops)
 
+    def heaviness(self) -> int:
+        """Weight by which what is solved for may exceed the order in eps: that of factors ``Gamma(1/2)``."""
+        return self._boundary_problem(self.solved_form(), 0).heaviness
+
     def solution(self, weight: int) -> Solution:
         """The canonical functions in iterated integrals through ``eps^weight``."""
         form, boundary = self.solved_form(), self.completed_boundary(weight)
