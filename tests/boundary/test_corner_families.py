@@ -6,7 +6,7 @@ from pathlib import Path
 import flint
 import pytest
 from canonical_forms import family
-from mpmath import euler, exp, gamma, hyp2f1, mp, mpf, taylor
+from mpmath import euler, exp, gamma, hyp2f1, mp, mpf, quad, taylor
 
 from ibpred.iterated.solution_values import solution_values
 from ibpred.progress import Silent
@@ -76,3 +76,31 @@ def test_the_sunrise_with_one_mass(tmp_path: Path) -> None:
 
         for k, coefficient in enumerate(taylor(squared, 0, 3)):
             assert mp.almosteq(mpf(masters[1, 1, 1, 0, 0][k - 2].re), coefficient, 1e-10)
+
+
+def test_the_cusp_of_two_static_lines(tmp_path: Path) -> None:
+    """``Gamma(1-e) Gamma(2e) (-2w)^(-2e) int_0^1 du (u^2 + (1-u)^2 + 2 u (1-u) c)^(e-1)`` at w = -1/2."""
+    with Store(tmp_path) as store:
+        chain = chain_of("static-quark-cusp", store)
+        boundary = chain.boundary(2)
+        value = chain.evaluate({"w": Fraction(-1, 2), "c": Fraction(2)}, (), 1, 15)
+    assert not boundary.fitted
+    masters = {v.powers: v.epsilon for v in value}
+    with mp.workdps(30):
+
+        def times_eps(eps: mpf) -> mpf:
+            integral = quad(lambda u: (u**2 + (1 - u) ** 2 + 4 * u * (1 - u)) ** (eps - 1), [0, 1])
+            return exp(eps * euler) * gamma(1 - eps) * gamma(1 + 2 * eps) / 2 * integral
+
+        for k, coefficient in enumerate(taylor(times_eps, 0, 2)):
+            assert mp.almosteq(mpf(masters[1, 1, 1][k - 1].re), coefficient, 1e-10)
+
+
+@pytest.mark.slow
+def test_two_loop_families_without_an_open_constant(tmp_path: Path) -> None:
+    """All constants derived: values of regions close what regularity leaves open."""
+    for name in ("static-quark-cusp-two-loop", "planar-vertex-massive-loop"):
+        with Store(tmp_path / name) as store:
+            boundary = chain_of(name, store).boundary(4)
+        assert not boundary.fitted
+        assert sum(item.confirming for item in boundary.evidence) > 50
