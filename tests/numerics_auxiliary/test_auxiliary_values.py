@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 from fractions import Fraction
 from pathlib import Path
 
@@ -131,11 +132,32 @@ def test_crossed_vertex_from_nothing() -> None:
     compare(value, massless.crossed_vertex(), 12)
 
 
+def test_two_dimensional_sunrise_at_its_pseudo_threshold() -> None:
+    # S(s = m2) = pi^2/4 in d = 2 (Bloch, Vanhove, arXiv:1309.5865, from memory)
+    read = replace(read_family_file(FAMILIES / "sunrise-equal-masses.toml"), dimension=2)
+    point = {"s": Fraction(1), "m2": Fraction(1)}
+    plan = auxiliary_plan(read, point, [(1, 1, 1, 0, 0)], PRIMES, 1)
+    (value,) = auxiliary_values(plan, 0, 12)
+    compare(value, {0: pi**2 / 4}, 12)
+
+
 def test_sunrise_at_its_pseudo_threshold() -> None:
     # s = m2: the leading poles are -3/2 and s/4 - 9/2
-    value = value_of("sunrise-equal-masses", (1, 1, 1, 0, 0), s="1", m2="1")
-    assert abs(mpf(value.epsilon[-2].re) + mpf(3) / 2) < mpf(10) ** -DIGITS
-    assert abs(mpf(value.epsilon[-1].re) + mpf(17) / 4) < mpf(10) ** -DIGITS
+    value = value_of("sunrise-equal-masses", (1, 1, 1, 0, 0), digits=12, s="1", m2="1")
+    assert abs(mpf(value.epsilon[-2].re) + mpf(3) / 2) < mpf(10) ** -12
+    assert abs(mpf(value.epsilon[-1].re) + mpf(17) / 4) < mpf(10) ** -12
+
+
+@pytest.mark.slow
+def test_two_dimensional_sunrise_below_and_above_threshold() -> None:
+    from bessel_bananas import coefficients
+
+    read = replace(read_family_file(FAMILIES / "sunrise-equal-masses.toml"), dimension=2)
+    for s in ("-1", "20"):
+        point = {"s": Fraction(s), "m2": Fraction(1)}
+        plan = auxiliary_plan(read, point, [(1, 1, 1, 0, 0)], PRIMES, 1)
+        (value,) = auxiliary_values(plan, 1, DIGITS)
+        compare(value, coefficients(2, (1, 1, 1), (1, 1, 1), mpf(s), (0, 1), DIGITS + 8))
 
 
 @pytest.mark.slow

@@ -73,12 +73,12 @@ def taylor_step(
         rec = recurrence(tracks, bits)
         current, total, power = values, values, flint.acb(1)
         history = [current]
-        sums = flint.acb_mat(rec.sums, values.ncols())
+        sums = rec.start(values.ncols())
         tail.add(bounds.norm(current))
         n = 0
         while True:
-            sums = rec.step * sums + rec.feed * current
-            right = rec.drain * sums
+            sums = rec.advanced(sums, current)
+            right = rec.drained(sums, fractions.size, values.ncols())
             for matrix, before in zip(tracks.polynomial, reversed(history), strict=False):
                 right = right + matrix * before
             n += 1
@@ -203,16 +203,16 @@ def frobenius_values(
         current = start[0]
         total, power = current, flint.acb(1)
         history = [current]
-        sums = flint.acb_mat(rec.sums, current.ncols())
+        sums = rec.start(current.ncols())
         tail.add(_level_norm(bounds, current, width))
         n = 0
         while True:
-            sums = rec.step * sums + rec.feed * current
+            sums = rec.advanced(sums, current)
             n += 1
             if n < len(start):
                 current = start[n]
             else:
-                right = rec.drain * sums
+                right = rec.drained(sums, point.size, current.ncols())
                 for matrix, before in zip(tracks.polynomial, reversed(history), strict=False):
                     right = right + matrix * before
                 resolvent = (identity * n - residue).inv()

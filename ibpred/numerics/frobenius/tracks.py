@@ -2,8 +2,8 @@
 
 In ``t = (x - c)/scale`` a pole at t = delta of order k contributes ``C_k F/(t - delta)^k``. With
 ``g_k = F f/(t - delta)^k`` the coefficients obey ``g_1[n] = (g_1[n-1] - F f[n])/delta`` and
-``g_k[n] = (g_k[n-1] - g_{k-1}[n])/delta``: one matrix for all poles together, and nothing grows. (The
-recurrence of the system multiplied by its denominators loses all digits to the growth of its terms.)
+``g_k[n] = (g_k[n-1] - g_{k-1}[n])/delta``, and nothing grows. (The recurrence of the system multiplied by
+its denominators loses all digits to the growth of its terms.)
 """
 
 from __future__ import annotations
@@ -195,42 +195,73 @@ def _moved(polynomial: Sequence[ExactMatrix], centre: Ball, scale: RealBall) -> 
 
 @dataclass(frozen=True)
 class Recurrence:
-    """All running sums of a system as one vector G: ``G[n] = step G[n-1] + feed f[n]``.
+    """The running sums of all poles: ``(sum_tracks f)[n] = drain g[n]``.
 
-    The poles act on f by ``(sum_tracks f)[n] = drain G[n]``.
+    Attributes
+    ----------
+    feed
+        ``-F/delta`` of all poles, one under the other: what f adds to the sums of order one.
+    drain
+        The C_k of all poles side by side, pole by pole, orders ascending.
+    chains
+        For each pole (1/delta, rank, order).
     """
 
-    step: BallMatrix
     feed: BallMatrix
     drain: BallMatrix
-    sums: int
+    chains: tuple[tuple[Ball, int, int], ...]
+
+    def start(self, width: int) -> list[list[Ball]]:
+        """The sums before the first term, for so many columns."""
+        count = sum(rank * order for _, rank, order in self.chains)
+        return [[flint.acb(0)] * width for _ in range(count)]
+
+    def advanced(self, sums: Sequence[Sequence[Ball]], coefficient: BallMatrix) -> list[list[Ball]]:
+        """The sums after one more coefficient f[n].
+
+        Entry by entry: as a matrix the recursion is nearly all zeros.
+        """
+        fed = (self.feed * coefficient).table() if self.chains else []
+        found: list[list[Ball]] = []
+        at = entry = 0
+        for inverse, rank, order in self.chains:
+            lower = fed[entry : entry + rank]
+            entry += rank
+            layer = [
+                [a * inverse + b for a, b in zip(row, new, strict=True)]
+                for row, new in zip(sums[at : at + rank], lower, strict=True)
+            ]
+            found += layer
+            at += rank
+            for _ in range(order - 1):
+                layer = [
+                    [(a - b) * inverse for a, b in zip(row, below, strict=True)]
+                    for row, below in zip(sums[at : at + rank], layer, strict=True)
+                ]
+                found += layer
+                at += rank
+        return found
+
+    def drained(self, sums: Sequence[Sequence[Ball]], size: int, width: int) -> BallMatrix:
+        """What the poles contribute to the next coefficient."""
+        if not self.chains:
+            return flint.acb_mat(size, width)
+        return self.drain * flint.acb_mat(sums)
 
 
 def recurrence(tracks: Tracks, bits: int) -> Recurrence:
     """Stack the running sums of all poles."""
-    n = tracks.size
-    sums = sum(len(track.columns) * track.rows.nrows() for track in tracks.tracks)
-    zero = flint.acb(0)
-    step = [[zero] * sums for _ in range(sums)]
     feed: list[list[Ball]] = []
-    drain: list[list[Ball]] = [[] for _ in range(n)]
-    at = 0
+    drain: list[list[Ball]] = [[] for _ in range(tracks.size)]
+    chains = []
     with precision(bits):
         for track in tracks.tracks:
-            rank = track.rows.nrows()
             inverse = 1 / track.position
-            rows = track.rows.table()
-            for k, matrix in enumerate(track.columns, start=1):
-                sign = (-1) ** k
-                factor = sign * inverse**k
-                feed += [[factor * value for value in row] for row in rows]
-                for j in range(1, k + 1):
-                    weight = (-1) ** (k - j) * inverse ** (k - j + 1)
-                    for r in range(rank):
-                        step[at + (k - 1) * rank + r][at + (j - 1) * rank + r] = weight
+            feed += (track.rows * -inverse).table()
+            for matrix in track.columns:
                 for line, values in zip(drain, matrix.table(), strict=True):
                     line += values
-            at += len(track.columns) * rank
-        if not sums:
-            return Recurrence(flint.acb_mat(0, 0), flint.acb_mat(0, n), flint.acb_mat(n, 0), 0)
-        return Recurrence(flint.acb_mat(step), flint.acb_mat(feed), flint.acb_mat(drain), sums)
+            chains.append((inverse, track.rows.nrows(), len(track.columns)))
+        if not chains:
+            return Recurrence(flint.acb_mat(0, tracks.size), flint.acb_mat(tracks.size, 0), ())
+        return Recurrence(flint.acb_mat(feed), flint.acb_mat(drain), tuple(chains))
