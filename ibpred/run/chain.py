@@ -258,7 +258,8 @@ class Chain(Stages):
         if found is None:
             raise UnfinishedError(
                 f"{self.definition.name} has no Euclidean region (no signs of its invariants make F "
-                "positive), and boundary constants are determined from one"
+                "positive), and boundary constants are determined from one; its differential equations and "
+                "epsilon-form stand without it, and `evaluate --at` gives values at a point of a physical region"
             )
         return found
 
