@@ -103,6 +103,11 @@ def accurate_sample(plan: AuxiliaryPlan, task: Task) -> tuple[Ball, ...]:
     PrecisionError
         If they are not reached.
     """
+    return _accurate(plan, task)[0]
+
+
+def _accurate(plan: AuxiliaryPlan, task: Task) -> tuple[tuple[Ball, ...], int]:
+    """The values, and the working precision that they took."""
     bits, most = task.start_bits, _PATIENCE * task.start_bits
     while True:
         try:
@@ -112,7 +117,7 @@ def accurate_sample(plan: AuxiliaryPlan, task: Task) -> tuple[Ball, ...]:
                 raise
         else:
             if all(is_accurate(value, task.digits) for value in values):
-                return values
+                return values, bits
             if bits >= most:
                 raise PrecisionError(
                     f"{plan.family}: the integrals at eps = {task.eps} are not known to {task.digits} digits "
@@ -185,9 +190,12 @@ def _samples(
     # nearly equal exponents, eps apart, cost several times the digits of eps
     tiny = len(str(sampling.points[0].denominator)) - 1
     start = bits_for(sampling.digits + 12 * tiny + 15)
-    tasks = [Task(eps, sampling.digits, start) for eps in sampling.points]
-    found = []
-    for values in sampler(plan, tasks):
+    first, *others = sampling.points
+    # the first value tells what precision the others take
+    values, bits = _accurate(plan, Task(first, sampling.digits, start))
+    found = [values]
+    progress.advance(1, len(sampling.points))
+    for values in sampler(plan, [Task(eps, sampling.digits, bits) for eps in others]):
         found.append(values)
         progress.advance(len(found), len(sampling.points))
     return found
