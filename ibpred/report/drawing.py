@@ -153,7 +153,7 @@ def _panel(graph: Graph, styles: Sequence[EdgeStyle], caption: str) -> _Panel:
         half = 3.2 * len(name)
         corners += [(outer[0] - half, outer[1]), (outer[0] + half, outer[1])]
     dots = [
-        f'<circle cx="{places[node][0]:.1f}" cy="{places[node][1]:.1f}" r="2.6" fill="#222"></circle>'
+        f'<circle cx="{places[node][0]:z.1f}" cy="{places[node][1]:z.1f}" r="2.6" fill="#222"></circle>'
         for node in places
         if node[0] == "vertex"
     ]
@@ -163,7 +163,7 @@ def _panel(graph: Graph, styles: Sequence[EdgeStyle], caption: str) -> _Panel:
     shift = (width_ - (max(x for x, _ in corners) + _MARGIN - left)) / 2
     return _Panel(
         (
-            f'<g transform="translate({shift - left:.1f} {-top:.1f})">',
+            f'<g transform="translate({shift - left:z.1f} {-top:z.1f})">',
             *lines,
             *dots,
             *labels,
@@ -198,13 +198,13 @@ def _self_loop(at: Point, towards: Point) -> tuple[str, Point]:
 
 def _text(at: Point, text: str, colour: str) -> str:
     return (
-        f'<text x="{at[0]:.1f}" y="{at[1]:.1f}" fill="{colour}" stroke="#fff" stroke-width="4" '
+        f'<text x="{at[0]:z.1f}" y="{at[1]:z.1f}" fill="{colour}" stroke="#fff" stroke-width="4" '
         f'paint-order="stroke" text-anchor="middle" dominant-baseline="central">{escape(text)}</text>'
     )
 
 
 def _pair(point: Point) -> str:
-    return f"{point[0]:.1f} {point[1]:.1f}"
+    return f"{point[0]:z.1f} {point[1]:z.1f}"
 
 
 def _document(panels: Sequence[_Panel], columns: int, title: str) -> str:
@@ -216,12 +216,12 @@ def _document(panels: Sequence[_Panel], columns: int, title: str) -> str:
     for row in rows:
         x = _GAP
         for panel in row:
-            body += [f'<g transform="translate({x:.1f} {y:.1f})">', *panel.elements, "</g>"]
+            body += [f'<g transform="translate({x:z.1f} {y:z.1f})">', *panel.elements, "</g>"]
             x += panel.width + _GAP
         y += max(panel.height for panel in row) + _GAP
     head = (
         f'<svg xmlns="http://www.w3.org/2000/svg" width="{width:.0f}" height="{y:.0f}" '
-        f'viewBox="0 0 {width:.1f} {y:.1f}" role="img" font-family="sans-serif" font-size="11">'
+        f'viewBox="0 0 {width:z.1f} {y:z.1f}" role="img" font-family="sans-serif" font-size="11">'
     )
     return "\n".join(
         [
