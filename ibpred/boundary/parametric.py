@@ -233,23 +233,29 @@ class _Search:
         scales: list[tuple[Rational, EpsLinear]] = []
         for polynomial, exponent in new:
             number, pieces = polynomial.factor()
-            # factors with terms of both signs are positive only together: they stay one polynomial
-            mixed = self.whole.context.constant(1)
+            together = []
             for piece, multiplicity in pieces:
-                signs = {int(c) > 0 for c in piece.coeffs()}
                 used = [i - skip for i, degree in enumerate(piece.degrees()) if degree > 0 and i >= skip]
-                if len(signs) > 1 and used:
-                    mixed = mixed * piece ** int(multiplicity)
+                if used and len(piece) > 1:
+                    together.append((piece, int(multiplicity)))
                     continue
-                if not signs.pop():
+                if piece.leading_coefficient() < 0:
                     piece, number = -piece, number * (-1) ** int(multiplicity)
-                total = times(exponent, int(multiplicity))
-                if not used:
-                    scales.append((self.scale(piece), times(total, -1)))
-                elif len(piece) == 1:
-                    powers[used[0]] = plus(powers[used[0]], times(total, -1))
+                total = times(exponent, -int(multiplicity))
+                if used:
+                    powers[used[0]] = plus(powers[used[0]], total)
                 else:
-                    _add(factors, piece, total)
+                    scales.append((self.scale(piece), total))
+            # factors with terms of both signs are positive only together: then all stay one polynomial
+            mixed = self.whole.context.constant(1)
+            split = all(len({int(c) > 0 for c in piece.coeffs()}) == 1 for piece, _ in together)
+            for piece, multiplicity in together:
+                if not split:
+                    mixed = mixed * piece**multiplicity
+                    continue
+                if piece.leading_coefficient() < 0:
+                    piece, number = -piece, number * (-1) ** multiplicity
+                _add(factors, piece, times(exponent, multiplicity))
             if number < 0:
                 mixed, number = -mixed, -number
             if not mixed.is_constant():

@@ -259,7 +259,7 @@ class Chain(Stages):
             raise UnfinishedError(
                 f"{self.definition.name} has no Euclidean region (no signs of its invariants make F "
                 "positive), and boundary constants are determined from one; its differential equations and "
-                "epsilon-form stand without it, and `evaluate --at` gives values at a point of a physical region"
+                "epsilon-form stand without it, and `evaluate --at` gives values in a physical region"
             )
         return found
 

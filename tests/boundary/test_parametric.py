@@ -5,7 +5,7 @@ from itertools import product
 
 import pytest
 from canonical_forms import family
-from hypothesis import assume, given
+from hypothesis import assume, example, given
 from hypothesis import strategies as st
 from mpmath import euler, exp, gamma, mp, mpf
 
@@ -50,6 +50,7 @@ def terms(*items: tuple[tuple[int, ...], int]) -> dict[tuple[int, ...], Rational
     st.lists(st.integers(1, 5), min_size=3, max_size=3),
     st.lists(st.integers(1, 4), min_size=3, max_size=3),
 )
+@example([(0, 0), (0, 3), (3, 0)], [1, 1, 1], [1, 1, 1])  # 1 + y^3 must not be split
 def test_simplices_are_dirichlet_integrals(
     corners: list[tuple[int, int]], coefficients: list[int], weights: list[int]
 ) -> None:
