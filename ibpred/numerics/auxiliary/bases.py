@@ -36,7 +36,7 @@ SMOOTH = 40.0
 
 _BITS = 128
 _TERMS = 400
-_DOTS = 2
+_DOTS = 2  # most dots tried up to three loops; one more for every further loop
 
 
 def dotted_integrals(sector: int, lines: int, dots: int) -> list[Powers]:
@@ -78,8 +78,9 @@ def dotted_masters(
     sectors: dict[int, list[int]] = {}
     for index, powers in enumerate(masters):
         sectors.setdefault(sector_of(powers), []).append(index)
+    most = max(_DOTS, len(family.loops) - 1)
     pools = {
-        sector: [p for dots in range(_DOTS + 1) for p in dotted_integrals(sector, len(masters[0]), dots)]
+        sector: [p for dots in range(most + 1) for p in dotted_integrals(sector, len(masters[0]), dots)]
         for sector, own in sectors.items()
         if any(power < 0 for index in own for power in masters[index])
     }
