@@ -139,7 +139,8 @@ def _check_weights(system: Sequence[Transported], first: int, last: int) -> None
     for item in system:
         for series in (value for value in item.condition.values if value is not None):
             for order in range(series.start, min(series.end, last) + 1):
-                heaviest = max(map(monomial_weight, dict(series.coefficient(order).terms())), default=0)
+                weights = [monomial_weight(monomial) for monomial, _ in series.coefficient(order).terms()]
+                heaviest = max(weights, default=order - first)  # a zero has no weight at all
                 if heaviest > order - first:
                     raise BoundaryError(
                         f"the condition '{item.condition.name}' holds constants of weight {heaviest} at "
