@@ -91,6 +91,8 @@ def _masters(family: FamilyDefinition, masters: Sequence[Powers]) -> str:
     lines = ["## Masters", ""]
     for number, powers in enumerate(masters, start=1):
         lines.append(f"{number}. $I_{{{number}}} = {integral_latex(family.name, powers)}$")
+    if family.graph is not None:
+        lines += ["", "![The family's graph and those of the masters' sectors](graphs.svg)"]
     return "\n".join(lines)
 
 
