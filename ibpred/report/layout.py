@@ -60,14 +60,18 @@ def layout(graph: Graph) -> dict[Node, Point]:
 
 def _starts(skeleton: nx.Graph[Node]) -> Iterator[dict[Node, Point]]:
     """Starting arrangements: planar with the legs outside if there is one, planar, on a circle."""
-    hub: Node = ("hub", 0)
-    closed = skeleton.copy()
-    closed.add_edges_from((hub, node) for node in skeleton if node[0] == "leg")
-    for candidate in (closed, skeleton):
+    # numbers for nodes: sets of names would be walked in an order that differs from run to run
+    number = {node: i for i, node in enumerate(skeleton)}
+    inner: nx.Graph[int] = nx.Graph()
+    inner.add_nodes_from(number.values())
+    inner.add_edges_from((number[a], number[b]) for a, b in skeleton.edges)
+    closed = inner.copy()
+    closed.add_edges_from((len(number), i) for node, i in number.items() if node[0] == "leg")
+    for candidate in (closed, inner):
         if nx.is_planar(candidate):
-            places: Any = nx.planar_layout(candidate)
-            yield {node: (float(places[node][0]), float(places[node][1])) for node in skeleton}
-    places = nx.circular_layout(skeleton)
+            planar: Any = nx.planar_layout(candidate)
+            yield {node: (float(planar[i][0]), float(planar[i][1])) for node, i in number.items()}
+    places: Any = nx.circular_layout(skeleton)
     yield {node: (float(places[node][0]), float(places[node][1])) for node in skeleton}
 
 
