@@ -121,7 +121,7 @@ def is_positive_before(value: Rational, variable: str, point: Point) -> bool:
         coefficients = _coefficients(polynomial, place)
         if multiplicity % 2:
             sign *= 1 if next(c for c in coefficients if c) > 0 else -1
-        if point != 0 and multiplicity % 2 and _has_root_before(coefficients, point):
+        if point != 0 and multiplicity % 2 and has_root_before(coefficients, point):
             return False
     return sign > 0
 
@@ -131,7 +131,7 @@ def _coefficients(polynomial: Polynomial, place: int) -> list[int]:
     return [terms.get(k, 0) for k in range(max(terms) + 1)]
 
 
-def _has_root_before(coefficients: Sequence[int], point: Point) -> bool:
+def has_root_before(coefficients: Sequence[int], point: Point) -> bool:
     """Whether an irreducible polynomial may have a root in the open interval from 0 to the point."""
     if all(c >= 0 for c in coefficients) or all(c <= 0 for c in coefficients):
         return False

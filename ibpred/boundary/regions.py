@@ -20,6 +20,7 @@ from ibpred.boundary.approach import Approach, is_positive_before, leading, lead
 from ibpred.boundary.expansion import ClosedForm, on_line
 from ibpred.boundary.gamma import Piece, parametric_form
 from ibpred.boundary.polytope import LowerFacet, lower_facets, separating_functional
+from ibpred.boundary.thresholds import Monomials, threshold_exponents
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.polynomials import symanzik
@@ -217,10 +218,7 @@ class _Expansion:
 def _nested(state: _Expansion, approach: Approach, scales: Sequence[str]) -> tuple[Region, ...] | None:
     border = isinstance(approach.point, Infinity) or approach.point == 0
     if not scales and not isinstance(approach.point, Infinity) and approach.point < 0:
-        second = {t.exponents: t.coefficient for t in state.terms if t.massive}
-        if not _separated(second, approach.variable, approach.point):
-            return None
-        return (Region(Exponent((Fraction(0),), (Fraction(0),), (False,)), None),)
+        return _at_negative(state, approach.variable, approach.point)
     name, point = (scales[0], Fraction(0)) if scales else (approach.variable, approach.point)
     facets = lower_facets([(t.exponents, valuation(t.coefficient, name, point)) for t in state.terms])
     slopes = [facet.offset for facet in facets]
@@ -247,6 +245,25 @@ def _nested(state: _Expansion, approach: Approach, scales: Sequence[str]) -> tup
             item = Exponent((power, *exponent.power), (slope, *exponent.slope), (logs, *later))
             found.append(Region(item, region.leading))
     return tuple(found)
+
+
+def _at_negative(state: _Expansion, variable: str, point: Fraction) -> tuple[Region, ...] | None:
+    """Behaviour at a negative point: that of a regular one, or that at a threshold."""
+    second = {t.exponents: t.coefficient for t in state.terms if t.massive}
+    if _separated(second, variable, point):
+        return (Region(Exponent((Fraction(0),), (Fraction(0),), (False,)), None),)
+    pieces = []
+    for piece in state.pieces:
+        powers = tuple(int(power) for power in piece.powers)
+        pieces.append(Monomials(valuation(piece.coefficient, variable, point), powers, piece.raised))
+    terms = {t.exponents: t.coefficient for t in state.terms}
+    found = threshold_exponents(terms, pieces, state.dimension, variable, point)
+    if found is None:
+        return None
+    slopes = [slope for _, slope in found]
+    # parts that share an exponent may need a further regulator
+    exponents = {Exponent((power,), (slope,), (slopes.count(slope) > 1,)) for power, slope in found}
+    return tuple(Region(exponent, None) for exponent in sorted(exponents))
 
 
 def _leading_term(

@@ -122,8 +122,8 @@ def test_bubble_with_one_mass() -> None:
     bubble = on_line("bubble-one-mass", {"s": -X, "m2": FIELD.one})
     assert pairs(behaviour(bubble, (1, 1), to(INFINITY))) == {(1, 0), (0, 1)}
     assert behaviour(bubble, (1, 1), to(Fraction(0))) == ANALYTIC
-    # the threshold: nothing is claimed
-    assert behaviour(bubble, (1, 1), to(Fraction(-1))) is None
+    # the threshold
+    assert pairs(behaviour(bubble, (1, 1), to(Fraction(-1)))) == {(0, 0), (1, -2)}
 
 
 def test_numerators_shift_the_power() -> None:
