@@ -34,6 +34,9 @@ from ibpred.sectors.order import lines_of, sector_of
 SMOOTH = 40.0
 """Roughness below which no other basis is looked for."""
 
+TRIAL = Fraction(1, 1009)
+"""An eps without meaning, at which ranks and sizes are looked at."""
+
 _BITS = 128
 _TERMS = 400
 _DOTS = 2  # most dots tried up to three loops; one more for every further loop

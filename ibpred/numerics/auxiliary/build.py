@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 
@@ -10,10 +10,10 @@ from ibpred.boundary.gamma import GammaForm, gamma_form
 from ibpred.errors import BoundaryError, ReconstructionError, UnfinishedError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.identities.derivatives import derivative_templates
-from ibpred.identities.quantities import Quantity, template_at
-from ibpred.numerics.auxiliary.bases import SMOOTH, dotted_integrals, dotted_masters, roughness
-from ibpred.numerics.auxiliary.families import MASS, at_point, check_lines, restricted, with_mass
+from ibpred.numerics.auxiliary.bases import TRIAL, dotted_integrals
+from ibpred.numerics.auxiliary.choice import places_for_mass, smooth_flow
+from ibpred.numerics.auxiliary.curved import FLATNESS, has_linear_propagators
+from ibpred.numerics.auxiliary.families import at_point, check_lines, restricted
 from ibpred.numerics.auxiliary.infinity import at_infinity, undetermined
 from ibpred.numerics.auxiliary.plan import (
     AuxiliaryPlan,
@@ -23,18 +23,18 @@ from ibpred.numerics.auxiliary.plan import (
     Node,
     Part,
     Row,
+    Straightening,
     Term,
 )
+from ibpred.numerics.auxiliary.reducer import Enlarged, Reducer
 from ibpred.numerics.auxiliary.regions import Region, regions, vacuum
+from ibpred.numerics.auxiliary.straighten import straightening
 from ibpred.progress import SILENT, Progress
 from ibpred.reduction.deck import PLAIN_DECK, Deck
-from ibpred.reduction.masters import find_masters
-from ibpred.reduction.recording import coefficients, record_quantities
 from ibpred.reduction.wanted import single
 from ibpred.sectors.analysis import SectorAnalysis, analyse
-from ibpred.sectors.order import lines_of, sector_of
+from ibpred.sectors.order import sector_of
 
-_TRIAL = Fraction(1, 1009)  # an eps without meaning, at which ranks are looked at
 _DOTS = 2  # most dots of the integrals that serve as further conditions
 
 
@@ -73,7 +73,7 @@ def auxiliary_plan(
     """
     check_lines(family)
     numeric = at_point(family, point)
-    builder = _Builder(primes, seed, deck, progress, len(family.loops))
+    builder = _Builder(Reducer(primes, seed, deck, progress), len(family.loops))
     values = builder.values(numeric, [tuple(powers) for powers in wanted])
     return AuxiliaryPlan(
         family.name,
@@ -99,11 +99,8 @@ class _Place:
 class _Builder:
     """Collects the nodes; families met again are not done again."""
 
-    def __init__(self, primes: Sequence[int], seed: int, deck: Deck, progress: Progress, loops: int) -> None:
-        self.primes = primes
-        self.seed = seed
-        self.deck = deck
-        self.progress = progress
+    def __init__(self, reducer: Reducer, loops: int) -> None:
+        self.reducer = reducer
         self.loops = loops
         self.nodes: list[Node] = []
         self.places: dict[tuple[object, ...], _Place] = {}
@@ -134,7 +131,8 @@ class _Builder:
         if not alive:
             return found
         place = self._place(family, analysis)
-        rows = self._rows(family, analysis, place.masters, [single(family, powers) for powers in alive])
+        quantities = [single(family, powers) for powers in alive]
+        rows = self.reducer.rows(family, analysis, place.masters, quantities)
         for powers, row in zip(alive, rows, strict=True):
             found[powers] = tuple(Part(value, None, place.node, index) for index, value in row)
         return found
@@ -146,7 +144,7 @@ class _Builder:
         return self.places[key]
 
     def _new_place(self, family: FamilyDefinition, analysis: SectorAnalysis) -> _Place:
-        masters = find_masters(family, analysis, self.primes[0], self.seed, progress=self.progress).masters
+        masters = self.reducer.masters(family, analysis)
         one = family.internal_ring.one
         values: dict[Powers, Combination] = {}
         for powers in masters:
@@ -161,147 +159,76 @@ class _Builder:
                 own = [powers for powers in left if sector_of(powers) & ~top == 0]
                 values |= dict(zip(own, self.values(restricted(family, top), own), strict=True))
             else:
-                own = self._flow(family, analysis, left, values)
+                own = self._flowing(family, analysis, left, values)
             left = [powers for powers in left if powers not in own]
-        self.nodes.append(Node(None, tuple(values[powers] for powers in masters)))
+        self.nodes.append(Node(values=tuple(values[powers] for powers in masters)))
         return _Place(family, analysis, masters, len(self.nodes) - 1)
 
-    def _rows(
-        self,
-        family: FamilyDefinition,
-        analysis: SectorAnalysis,
-        masters: Sequence[Powers],
-        quantities: Sequence[Quantity],
-    ) -> list[Row]:
-        recorded = record_quantities(
-            family, analysis, masters, quantities, self.primes, self.seed, self.deck, self.progress
-        )
-        values, _, _ = coefficients(family, recorded, self.primes, self.seed, self.deck, self.progress)
-        rows: list[list[tuple[int, Rational]]] = [[] for _ in quantities]
-        for (quantity, master), value in sorted(values.items(), key=lambda item: item[0]):
-            rows[quantity].append((master, value))
-        return [tuple(row) for row in rows]
-
-    # -- families with the mass ------------------------------------------------------------------
-    def _flow(
+    # -- families with the mass, or with curved lines ----------------------------------------------
+    def _flowing(
         self,
         family: FamilyDefinition,
         analysis: SectorAnalysis,
         wanted: Sequence[Powers],
         values: dict[Powers, Combination],
     ) -> list[Powers]:
-        """Values of integrals of a family by a flow, as far as they contain its massive line."""
+        """Values of integrals of a family, those of all lines among them, as the end of a flow."""
+        if has_linear_propagators(family):
+            own = list(wanted)
+            node = Node(straightening=self._straightening(family, own))
+        else:
+            flow = self._flow(family, analysis, wanted)
+            own = [powers for powers in wanted if powers[flow.place] > 0]
+            node = Node(flow=flow)
+        self.nodes.append(node)
+        one = family.internal_ring.one
+        for index, powers in enumerate(own):
+            values[powers] = (Part(one, None, len(self.nodes) - 1, index),)
+        return own
+
+    def _straightening(self, family: FamilyDefinition, wanted: Sequence[Powers]) -> Straightening:
+        open_ = straightening(self.reducer, family, wanted)
+        start = at_point(open_.place.family, {FLATNESS: open_.start})
+        return Straightening(
+            family.name,
+            family.dimension,
+            open_.place.masters,
+            open_.derived.matrix,
+            open_.start,
+            self.values(start, open_.place.masters),
+            open_.derived.targets,
+        )
+
+    def _flow(self, family: FamilyDefinition, analysis: SectorAnalysis, wanted: Sequence[Powers]) -> Flow:
         failures = []
-        for heavy, enlarged, with_eta, masters in self._choices(family, analysis):
+        for heavy, place in places_for_mass(self.reducer, family, analysis):
             own = [powers for powers in wanted if powers[heavy] > 0]
             try:
-                flow = self._smooth_flow(family, heavy, enlarged, with_eta, masters, own)
-                flow = self._determined(flow, family, heavy, enlarged, with_eta)
+                flow, place = smooth_flow(self.reducer, family, heavy, place, own)
+                return self._determined(flow, family, place)
             except (ReconstructionError, BoundaryError, UnfinishedError) as error:
                 failures.append(f"{family.lines[heavy].text}: {error}")
-                continue
-            self.nodes.append(Node(flow))
-            one = family.internal_ring.one
-            node = len(self.nodes) - 1
-            for index, powers in enumerate(own):
-                values[powers] = (Part(one, None, node, index),)
-            return own
         raise UnfinishedError(f"{family.name}: no line can carry the auxiliary mass; " + "; ".join(failures))
 
-    def _choices(
-        self, family: FamilyDefinition, analysis: SectorAnalysis
-    ) -> Iterator[tuple[int, FamilyDefinition, SectorAnalysis, tuple[Powers, ...]]]:
-        """Lines for the mass, one of those that a symmetry takes to each other, few masters first."""
-        found = []
-        for heavy in _inequivalent_lines(family, analysis):
-            enlarged = with_mass(family, heavy)
-            with_eta = analyse(enlarged)
-            masters = find_masters(enlarged, with_eta, self.primes[0], self.seed, progress=self.progress)
-            found.append((len(masters.masters), heavy, enlarged, with_eta, masters.masters))
-        for _, heavy, enlarged, with_eta, powers in sorted(found, key=lambda item: item[:2]):
-            yield heavy, enlarged, with_eta, powers
-
-    def _smooth_flow(
-        self,
-        family: FamilyDefinition,
-        heavy: int,
-        enlarged: FamilyDefinition,
-        analysis: SectorAnalysis,
-        masters: tuple[Powers, ...],
-        wanted: Sequence[Powers],
-    ) -> Flow:
-        """The differential equations of the better of two bases, without conditions yet."""
-        numerators: Flow | ReconstructionError
-        try:
-            numerators = self._derived(family, heavy, enlarged, analysis, masters, wanted)
-            rough = roughness(numerators, _TRIAL)
-            if rough < SMOOTH:
-                return numerators
-        except ReconstructionError as error:
-            numerators = error
-        dotted = dotted_masters(enlarged, analysis, masters, self.primes, self.seed, self.progress)
-        if isinstance(numerators, ReconstructionError):
-            return self._derived(family, heavy, enlarged, analysis, dotted, wanted)
-        if dotted == masters:
-            return numerators
-        try:
-            other = self._derived(family, heavy, enlarged, analysis, dotted, wanted)
-        except ReconstructionError:
-            return numerators
-        return other if roughness(other, _TRIAL) < rough else numerators
-
-    def _derived(
-        self,
-        family: FamilyDefinition,
-        heavy: int,
-        enlarged: FamilyDefinition,
-        analysis: SectorAnalysis,
-        masters: tuple[Powers, ...],
-        wanted: Sequence[Powers],
-    ) -> Flow:
-        template = derivative_templates(enlarged)[MASS]
-        derivatives = [template_at(template, powers) for powers in masters]
-        targets = [single(enlarged, powers) for powers in wanted]
-        rows = self._rows(enlarged, analysis, masters, [*derivatives, *targets])
-        matrix = tuple(
-            (row, column, value) for row, line in enumerate(rows[: len(masters)]) for column, value in line
-        )
-        return Flow(
-            family.name,
-            family.lines[heavy].text,
-            family.dimension,
-            masters,
-            matrix,
-            (),
-            tuple(rows[len(masters) :]),
-        )
-
-    def _determined(
-        self,
-        flow: Flow,
-        family: FamilyDefinition,
-        heavy: int,
-        enlarged: FamilyDefinition,
-        analysis: SectorAnalysis,
-    ) -> Flow:
+    def _determined(self, flow: Flow, family: FamilyDefinition, place: Enlarged) -> Flow:
         """The flow with as many conditions at infinity as its solution needs."""
-        masters = flow.masters
-        places = regions(family, heavy)
-        one = enlarged.internal_ring.one
-        own = {powers: ((index, one),) for index, powers in enumerate(masters)}
-        flow = self._with_conditions(flow, family, heavy, places, own)
+        found = regions(family, flow.place)
+        one = family.internal_ring.one
+        own = {powers: ((index, one),) for index, powers in enumerate(place.masters)}
+        flow = self._with_conditions(flow, family, found, own)
         done = set(own)
         for dots in range(_DOTS + 1):
-            if not undetermined(at_infinity(flow, _TRIAL, self.loops)):
+            if not undetermined(at_infinity(flow, TRIAL, self.loops)):
                 return flow
-            more = [p for p in _dotted(masters, dots) if p not in done]
+            more = [p for p in _dotted(place.masters, dots) if p not in done]
             if not more:
                 continue
             done.update(more)
-            more_rows = self._rows(enlarged, analysis, masters, [single(enlarged, p) for p in more])
+            quantities = [single(place.family, p) for p in more]
+            more_rows = self.reducer.rows(place.family, place.analysis, place.masters, quantities)
             extra = dict(zip(more, more_rows, strict=True))
-            flow = self._with_conditions(flow, family, heavy, places, extra)
-        open_ = undetermined(at_infinity(flow, _TRIAL, self.loops))
+            flow = self._with_conditions(flow, family, found, extra)
+        open_ = undetermined(at_infinity(flow, TRIAL, self.loops))
         if open_:
             raise BoundaryError(f"{open_} constants at infinite auxiliary mass stay open")
         return flow
@@ -310,11 +237,11 @@ class _Builder:
         self,
         flow: Flow,
         family: FamilyDefinition,
-        heavy: int,
         places: Sequence[Region],
         rows: Mapping[Powers, Row],
     ) -> Flow:
         """Add the behaviour of integrals at large mass, where it is simple."""
+        heavy = flow.place
         simple = [powers for powers in rows if powers[heavy] == 0 or all(power >= 0 for power in powers)]
         terms: dict[Powers, list[Term]] = {powers: [] for powers in simple}
         for region in places:
@@ -370,19 +297,6 @@ def _soft_powers(region: Region, powers: Powers) -> Powers:
         return ()
     soft = [powers[i] for i in region.soft]
     return tuple(soft + [0] * (len(region.soft_family.lines) - len(soft)))
-
-
-def _inequivalent_lines(family: FamilyDefinition, analysis: SectorAnalysis) -> list[int]:
-    """One line of each orbit under the symmetries of the sector of all lines."""
-    everything = sum(1 << i for i in family.propagators)
-    inside = lines_of(everything)
-    first = {line: line for line in inside}
-    for map_ in analysis.maps:
-        if map_.source == map_.target == everything:
-            for line, image in zip(inside, map_.lines, strict=True):
-                low, high = sorted((first[line], first[image]))
-                first = {key: low if value == high else value for key, value in first.items()}
-    return sorted(set(first.values()))
 
 
 def _dotted(masters: Sequence[Powers], dots: int) -> list[Powers]:

@@ -51,7 +51,7 @@ def at_point(family: FamilyDefinition, point: Mapping[str, Fraction]) -> FamilyD
 
 
 def check_lines(family: FamilyDefinition) -> None:
-    """Check that all lines that can have positive powers are ``m2 - q^2``.
+    """Check that all lines that can have positive powers are ``m2 - q^2`` or linear in the loop momenta.
 
     Raises
     ------
@@ -59,14 +59,16 @@ def check_lines(family: FamilyDefinition) -> None:
         Otherwise, or if lines are cut.
     """
     for number, line in enumerate(family.lines, start=1):
-        if not line.numerator and line.momentum is None:
-            raise UnfinishedError(
-                f"{family.name}: line {number} ({line.text}) is given by an expression; the auxiliary-mass "
-                "method needs lines given by a momentum and a mass"
-            )
         if line.cut:
             raise UnfinishedError(
-                f"{family.name}: line {number} ({line.text}) is cut; its mass must stay zero"
+                f"{family.name}: line {number} ({line.text}) is cut; a cut fixes which identities hold, not "
+                "the factor of the delta function that stands for the line, so that integrals have no values;"
+                " take the cuts out of the family to evaluate the integrals with propagators"
+            )
+        if not line.numerator and line.momentum is None and any(map(any, line.quadratic)):
+            raise UnfinishedError(
+                f"{family.name}: line {number} ({line.text}) is given by an expression with products of loop "
+                "momenta; the auxiliary-mass method needs it as a momentum and a mass2"
             )
 
 

@@ -11,7 +11,9 @@ import flint
 
 from ibpred.balls.context import Ball, precision
 from ibpred.errors import BoundaryError
-from ibpred.numerics.auxiliary.plan import Flow, Row
+from ibpred.numerics.auxiliary.curved import FLATNESS
+from ibpred.numerics.auxiliary.families import MASS
+from ibpred.numerics.auxiliary.plan import Flow, Row, Straightening
 from ibpred.numerics.frobenius.formal import (
     FormalClass,
     SingularPoint,
@@ -32,8 +34,6 @@ from ibpred.numerics.frobenius.system import (
     valuation,
 )
 from ibpred.numerics.frobenius.tracks import BallMatrix
-
-MASS = "eta"
 
 
 @dataclass(frozen=True)
@@ -65,17 +65,18 @@ class SeriesRow:
         return found
 
 
-def flow_system(flow: Flow, eps: Fraction) -> RationalSystem:
-    """The differential equations of a flow at a fixed eps."""
+def flow_system(flow: Flow | Straightening, eps: Fraction) -> RationalSystem:
+    """The differential equations of a flow, or of a straightening, at a fixed eps."""
     return system_in(len(flow.masters), flow.matrix, _images(flow, eps))
 
 
-def _images(flow: Flow, eps: Fraction) -> dict[str, Univariate]:
-    return {"d": flint.fmpq_poly([fmpq(flow.dimension - 2 * eps)]), MASS: flint.fmpq_poly([0, 1])}
+def _images(flow: Flow | Straightening, eps: Fraction) -> dict[str, Univariate]:
+    variable = flint.fmpq_poly([0, 1])
+    return {"d": flint.fmpq_poly([fmpq(flow.dimension - 2 * eps)]), MASS: variable, FLATNESS: variable}
 
 
-def series_row(flow: Flow, row: Row, eps: Fraction, at_infinity: bool) -> SeriesRow:
-    """A combination of the masters at a fixed eps, in eta or in 1/eta."""
+def series_row(flow: Flow | Straightening, row: Row, eps: Fraction, at_infinity: bool) -> SeriesRow:
+    """A combination of the masters at a fixed eps, in the variable or in its inverse."""
     images = _images(flow, eps)
     entries = {}
     for column, value in row:

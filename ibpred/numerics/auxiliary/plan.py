@@ -77,8 +77,8 @@ class Flow:
     ----------
     family
         Name of the family, for messages.
-    line
-        Text of the line with the mass.
+    line, place
+        Text and index of the line with the mass.
     dimension
         d0.
     masters
@@ -93,6 +93,7 @@ class Flow:
 
     family: str
     line: str
+    place: int
     dimension: int
     masters: tuple[Powers, ...]
     matrix: SparseMatrix
@@ -101,10 +102,42 @@ class Flow:
 
 
 @dataclass(frozen=True)
-class Node:
-    """Values: the targets of a flow, or else combinations of what is known earlier."""
+class Straightening:
+    """Values of integrals with linear lines, from those with curved ones.
 
-    flow: Flow | None
+    Attributes
+    ----------
+    family
+        Name of the family, for messages.
+    dimension
+        d0.
+    masters
+        Masters of the family with curved lines.
+    matrix
+        ``dI/dr = matrix I`` over Q(d, r).
+    start
+        The value of r where the masters are known; all singular points are nearer to zero.
+    known
+        The masters there.
+    targets
+        The values: integrals in the masters, at infinite r.
+    """
+
+    family: str
+    dimension: int
+    masters: tuple[Powers, ...]
+    matrix: SparseMatrix
+    start: Fraction
+    known: tuple[Combination, ...]
+    targets: tuple[Row, ...]
+
+
+@dataclass(frozen=True)
+class Node:
+    """Values: the targets of a flow or of a straightening, or else combinations of what is known earlier."""
+
+    flow: Flow | None = None
+    straightening: Straightening | None = None
     values: tuple[Combination, ...] = ()
 
 

@@ -24,7 +24,7 @@ from ibpred.numerics.auxiliary.infinity import (
     series_row,
     solution,
 )
-from ibpred.numerics.auxiliary.plan import AuxiliaryPlan, Combination, Flow
+from ibpred.numerics.auxiliary.plan import AuxiliaryPlan, Combination, Flow, Straightening
 from ibpred.numerics.frobenius.continuation import carried
 from ibpred.numerics.frobenius.formal import (
     FormalClass,
@@ -36,7 +36,7 @@ from ibpred.numerics.frobenius.formal import (
 from ibpred.numerics.frobenius.path import Path, Point, approximate, straight
 from ibpred.numerics.frobenius.poles import PartialFractions, partial_fractions
 from ibpred.numerics.frobenius.series import Local, frobenius_values
-from ibpred.numerics.frobenius.system import RationalSystem, adjoint, fmpq
+from ibpred.numerics.frobenius.system import RationalSystem, adjoint, fmpq, inverted
 from ibpred.numerics.frobenius.tracks import BallMatrix, all_positions
 
 _DIRECTIONS = ((0, -1), (3, -4), (-3, -4), (8, -15), (-8, -15), (4, -3), (-4, -3))
@@ -70,6 +70,8 @@ def sampled(plan: AuxiliaryPlan, eps: Fraction, bits: int) -> tuple[Ball, ...]:
     for node in plan.nodes:
         if node.flow is not None:
             values.append(flow_values(node.flow, values, plan.loops, eps, bits))
+        elif node.straightening is not None:
+            values.append(straightened_values(node.straightening, values, eps, bits))
         else:
             values.append(tuple(combined(c, values, plan.dimension, eps, bits) for c in node.values))
     return tuple(combined(c, values, plan.dimension, eps, bits) for c in plan.values)
@@ -126,7 +128,22 @@ def flow_values(
     place = at_infinity(flow, eps, loops)
     vector = _from_infinity(flow, place, values, eps, complex_ball(*start, bits), bits)
     vector = carried(fractions, path, vector, bits)
-    return _at_zero(flow, system, eps, vector, complex_ball(*end, bits), bits)
+    name = f"zero auxiliary mass of {flow.family} on the line {flow.line}"
+    rows = [series_row(flow, row, eps, at_infinity=False) for row in flow.targets]
+    return _at_zero(name, system, rows, vector, complex_ball(*end, bits), bits)
+
+
+def straightened_values(
+    node: Straightening, values: Sequence[Sequence[Ball]], eps: Fraction, bits: int
+) -> tuple[Ball, ...]:
+    """The targets of a straightening at one eps."""
+    known = [combined(c, values, node.dimension, eps, bits) for c in node.known]
+    with precision(bits):
+        vector = flint.acb_mat([[value] for value in known])
+    rows = [series_row(node, row, eps, at_infinity=True) for row in node.targets]
+    flat = complex_ball(1 / node.start, 0, bits)
+    name = f"straight lines of {node.family}"
+    return _at_zero(name, inverted(flow_system(node, eps)), rows, vector, flat, bits)
 
 
 def lower_path(fractions: PartialFractions) -> Path:
@@ -204,18 +221,21 @@ def _unit_row(column: int) -> SeriesRow:
 
 
 def _at_zero(
-    flow: Flow, system: RationalSystem, eps: Fraction, vector: BallMatrix, eta: Ball, bits: int
+    name: str,
+    system: RationalSystem,
+    rows: Sequence[SeriesRow],
+    vector: BallMatrix,
+    place: Ball,
+    bits: int,
 ) -> tuple[Ball, ...]:
-    """Read the class of integer exponents off: the other regions vanish with the mass or are dropped.
+    """Read the class of integer exponents at zero off: the other regions vanish there or are dropped.
 
     The coefficients of that class are pairings with the integer-exponent solutions of the adjoint system,
     so that only these have to be summed up.
     """
-    name = f"zero auxiliary mass of {flow.family}"
-    rows = [series_row(flow, row, eps, at_infinity=False) for row in flow.targets]
     direct, dual = singular_point(system, name), singular_point(adjoint(system), name)
     if Fraction(0) not in direct.spectrum.classes():
-        raise BoundaryError(f"{name}: no solution has an integer exponent")
+        raise BoundaryError(f"at {name} no solution has an integer exponent")
     least = int(resonance(direct, Fraction(0))[0]) + min(direct.gauge)
     least_dual = int(resonance(dual, Fraction(0))[0]) + min(dual.gauge)
     order = max([-least_dual, *(-min(row.start.values()) for row in rows if row.start), 0])
@@ -229,14 +249,14 @@ def _at_zero(
     # exact combinations of the dual solutions that give each coefficient wanted
     combination = (flint.fmpq_mat([line.values for line in lines]) * pairing.inv()).transpose()
     with precision(bits):
-        log = eta.log()
-    sums = frobenius_values(Local(dual, duals.combined(combination)), eta, log, None, bits)
+        log = place.log()
+    sums = frobenius_values(Local(dual, duals.combined(combination)), place, log, None, bits)
     with precision(bits):
         products = list((sums.transpose() * vector).entries())
     found = []
     for reading in readings:
         own, products = products[: len(reading)], products[len(reading) :]
-        found.append(_limit(flow, reading, own))
+        found.append(_limit(name, reading, own))
     return tuple(found)
 
 
@@ -282,7 +302,7 @@ def _readings(point: SingularPoint, formal: FormalClass, row: SeriesRow) -> list
     ]
 
 
-def _limit(flow: Flow, readings: Sequence[_Reading], products: Sequence[Ball]) -> Ball:
+def _limit(name: str, readings: Sequence[_Reading], products: Sequence[Ball]) -> Ball:
     """The coefficient of x^0; lower powers and logarithms must drop out."""
     value = flint.acb(0)
     for reading, product in zip(readings, products, strict=True):
@@ -290,7 +310,7 @@ def _limit(flow: Flow, readings: Sequence[_Reading], products: Sequence[Ball]) -
             value = product
         elif not product.contains(0):
             raise BoundaryError(
-                f"{flow.family}: with the mass on the line {flow.line} the integer powers at zero mass "
-                f"contain eta^{reading.power} log(eta)^{reading.logs}; put it on another line"
+                f"at {name} the solutions with integer exponents contain x^{reading.power} "
+                f"log(x)^{reading.logs}: there is no limit"
             )
     return value
