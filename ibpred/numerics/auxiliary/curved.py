@@ -54,7 +54,7 @@ def curved(family: FamilyDefinition) -> FamilyDefinition:
         if i not in linear and shared:
             raise UnfinishedError(
                 f"{family.name}: {', '.join(shared)} occurs in linear lines and in line {i + 1} "
-                f"({line.text}); the auxiliary-mass method needs external momenta of their own in linear lines"
+                f"({line.text}); the auxiliary-mass method needs external momenta of their own there"
             )
     flat = target.variable(FLATNESS)
     gram = tuple(
