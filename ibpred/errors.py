@@ -12,6 +12,7 @@
     │   ├── ObstructionError  no ε-form, or none found
     │   ├── BoundaryError     boundary constants that stay open
     │   └── PrecisionError    digits that could not be reached
+    ├── OutOfTimeError        the time allowed is over (exit code 1)
     └── StoreError            damaged, foreign, locked or unwritable work folder (exit code 1 or 2)
 """
 
@@ -106,6 +107,27 @@ class BoundaryError(UnfinishedError):
 
 class PrecisionError(UnfinishedError):
     """The digits asked for could not be reached."""
+
+
+class OutOfTimeError(IbpredError):
+    """The time allowed is over.
+
+    It is no `UnfinishedError`: where one of several ways cannot be gone another is tried, but when the time
+    is over nothing is.
+
+    Parameters
+    ----------
+    during
+        What was being done.
+    statement
+        What is kept and how to go on, where that is known.
+    """
+
+    def __init__(self, during: str, statement: str = "") -> None:
+        self.during = during
+        self.statement = statement
+        text = f"the time allowed is over (during: {during})"
+        super().__init__(f"{text}. {statement}" if statement else text)
 
 
 class StoreError(IbpredError):

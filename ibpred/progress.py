@@ -1,8 +1,24 @@
-"""How a long stage reports its progress: an object passed in, with a silent one as default."""
+"""How a long stage reports its progress: an object passed in, with a silent one as default.
+
+A report is also where a stage may be stopped: an object that watches a deadline raises `OutOfTimeError` from
+it. Nothing is half done then, since stages only return whole records; who called the stage keeps what was
+finished before.
+"""
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import Protocol
+
+from ibpred.errors import OutOfTimeError
+
+Expired = Callable[[], bool]
+"""Tells whether the time allowed is over."""
+
+
+def never() -> bool:
+    """The deadline of who has no deadline."""
+    return False
 
 
 class Progress(Protocol):
@@ -33,3 +49,40 @@ class Silent:
 
 SILENT: Progress = Silent()
 """The default of every stage."""
+
+
+class Limited:
+    """Progress with a deadline: the first report after it stops the work.
+
+    Parameters
+    ----------
+    watcher
+        Told everything.
+    expired
+        The deadline.
+    """
+
+    def __init__(self, watcher: Progress, expired: Expired) -> None:
+        self._watcher = watcher
+        self._expired = expired
+        self._name = "the first stage"
+
+    def _check(self) -> None:
+        if self._expired():
+            raise OutOfTimeError(self._name)
+
+    def stage(self, name: str) -> None:
+        """Tell it, unless the time is over."""
+        self._check()
+        self._name = name
+        self._watcher.stage(name)
+
+    def advance(self, done: int, total: int | None) -> None:
+        """Tell it, unless the time is over."""
+        self._check()
+        self._watcher.advance(done, total)
+
+    def plan(self, text: str, done: int, total: int) -> None:
+        """Tell it, unless the time is over."""
+        self._check()
+        self._watcher.plan(text, done, total)

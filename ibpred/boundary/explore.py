@@ -23,6 +23,7 @@ from ibpred.iterated.constants import NAMES
 from ibpred.iterated.matrices import MatrixSeries, identity
 from ibpred.iterated.transport import INFINITY, Infinity, Point, connection
 from ibpred.iterated.zeta import LONGEST_ALTERNATING, LONGEST_PLAIN
+from ibpred.progress import SILENT, Progress
 
 
 @dataclass(frozen=True)
@@ -74,7 +75,9 @@ def unit_transport(size: int, order: int) -> MatrixSeries:
     return MatrixSeries(({(0,) * len(NAMES): identity(size)}, *({} for _ in range(order))))
 
 
-def explore(problem: BoundaryProblem, last: int, order: int) -> Iterator[Gathered]:
+def explore(
+    problem: BoundaryProblem, last: int, order: int, progress: Progress = SILENT
+) -> Iterator[Gathered]:
     """Conditions on the vector at the problem's corner, more of them at each step.
 
     Parameters
@@ -85,6 +88,8 @@ def explore(problem: BoundaryProblem, last: int, order: int) -> Iterator[Gathere
         Highest power of eps of the values.
     order
         Transports are taken through ``eps^order``.
+    progress
+        Told about the conditions found, edge by edge and point by point.
 
     Yields
     ------
@@ -104,7 +109,7 @@ def explore(problem: BoundaryProblem, last: int, order: int) -> Iterator[Gathere
                 conditions += [transported(c, here) for c in conditions_at(view, Fraction(0), last)]
             if edge.end in reached:
                 continue
-            end = _walk(view, here, last, order, conditions, unused)
+            end = _walk(view, here, last, order, conditions, unused, progress)
             if edge.end is not None and end is not None:
                 reached[edge.end] = end
                 queue.append(edge.end)
@@ -118,6 +123,7 @@ def _walk(
     order: int,
     conditions: list[Transported],
     unused: list[str],
+    progress: Progress,
 ) -> MatrixSeries | None:
     """Collect the conditions along one edge; the transport to its end, where the way is free."""
     edge = view.edge
@@ -133,6 +139,7 @@ def _walk(
     for direction in (positive, negative):
         passed: list[Fraction] = []
         for point in direction:
+            progress.advance(len(conditions), None)
             found = conditions_at(view, point, last)
             needed = bool(found) or (isinstance(point, Infinity) and edge.end is not None)
             if needed:

@@ -20,6 +20,7 @@ from ibpred.boundary.recognise import Fit
 from ibpred.errors import BoundaryError, InputError
 from ibpred.iterated.constants import Constant
 from ibpred.iterated.series import Series, eps_valuation
+from ibpred.progress import SILENT, Progress
 
 _MOST_EXTRA_ORDERS = 3
 _LEAST_CORNERS = 2  # where there are more: the second one confirms the first
@@ -113,7 +114,9 @@ class OpenConstantsError(BoundaryError):
         super().__init__(problem)
 
 
-def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Boundary:
+def fix_constants(
+    problem: BoundaryProblem, fitted: Sequence[Fitted] = (), progress: Progress = SILENT
+) -> Boundary:
     """Determine the boundary constants exactly.
 
     Parameters
@@ -123,6 +126,8 @@ def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Bo
     fitted
         Constants at the problem's corner that come from values; everything that follows from the
         conditions is derived all the same, and a fit that contradicts them is an error.
+    progress
+        Told about the conditions found.
 
     Raises
     ------
@@ -133,7 +138,7 @@ def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Bo
     BoundaryError
         If the form has square roots, or conditions contradict each other (names the first that does).
     """
-    outcome, gathered, weight = _determine(problem, fitted)
+    outcome, gathered, weight = _determine(problem, fitted, progress)
     starts = lowest_orders(problem)
     first = min(starts)
     if outcome.open:
@@ -154,7 +159,9 @@ def fix_constants(problem: BoundaryProblem, fitted: Sequence[Fitted] = ()) -> Bo
     return Boundary(first, tuple(vectors), evidence, gathered.unused, problem.corner, tuple(fitted))
 
 
-def _determine(problem: BoundaryProblem, fitted: Sequence[Fitted]) -> tuple[Outcome, Gathered, int]:
+def _determine(
+    problem: BoundaryProblem, fitted: Sequence[Fitted], progress: Progress
+) -> tuple[Outcome, Gathered, int]:
     """The outcome of all conditions, the conditions, and the order through which constants are given."""
     form = problem.form
     if not form.variables:
@@ -176,7 +183,7 @@ def _determine(problem: BoundaryProblem, fitted: Sequence[Fitted]) -> tuple[Outc
     extra = 0
     while True:
         # conditions at one order often fix constants of the order before only
-        outcome, gathered = _solve(problem, fitted, starts, weight, weight + extra)
+        outcome, gathered = _solve(problem, fitted, starts, weight, weight + extra, progress)
         if not outcome.open or extra == _MOST_EXTRA_ORDERS:
             return outcome, gathered, weight
         extra += 1
@@ -196,16 +203,21 @@ def lowest_orders(problem: BoundaryProblem) -> tuple[int, ...]:
 
 
 def _solve(
-    problem: BoundaryProblem, fitted: Sequence[Fitted], starts: Sequence[int], weight: int, last: int
+    problem: BoundaryProblem,
+    fitted: Sequence[Fitted],
+    starts: Sequence[int],
+    weight: int,
+    last: int,
+    progress: Progress,
 ) -> tuple[Outcome, Gathered]:
     """Visit corners until the constants are determined and confirmed, or no corner is left."""
     outcome = Outcome({}, (), ())
     gathered = Gathered((), ())
     # fits come last: what follows without them does not rest on them
     extra = _as_conditions(fitted, len(problem.masters), last - min(starts))
-    for count, gathered in enumerate(explore(problem, last, last - min(starts)), start=1):
+    for count, gathered in enumerate(explore(problem, last, last - min(starts), progress), start=1):
         gathered = Gathered((*gathered.conditions, *extra), gathered.unused)
-        outcome = solve_all(gathered.conditions, starts, weight, last)
+        outcome = solve_all(gathered.conditions, starts, weight, last, progress)
         if not outcome.open and count >= _LEAST_CORNERS:
             break
     return outcome, gathered

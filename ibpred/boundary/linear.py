@@ -26,6 +26,7 @@ from ibpred.iterated.constants import (
     multiply_monomials,
 )
 from ibpred.iterated.matrices import MatrixSeries
+from ibpred.progress import SILENT, Progress
 
 Unknown = tuple[int, int, Monomial]
 """(order, row, monomial)."""
@@ -92,7 +93,13 @@ def _entries(matrix: Any) -> Entries:
     return [(n // width, n % width, value) for n, value in enumerate(matrix.entries()) if value != 0]
 
 
-def solve_all(system: Sequence[Transported], starts: Sequence[int], weight: int, last: int) -> Outcome:
+def solve_all(
+    system: Sequence[Transported],
+    starts: Sequence[int],
+    weight: int,
+    last: int,
+    progress: Progress = SILENT,
+) -> Outcome:
     """Solve for all components through ``eps^weight``, with equations through ``eps^last``.
 
     Parameters
@@ -103,6 +110,8 @@ def solve_all(system: Sequence[Transported], starts: Sequence[int], weight: int,
         First order of each component; its weight at order k is at most k minus it.
     weight, last
         See above.
+    progress
+        Told about the conditions used.
 
     Raises
     ------
@@ -118,6 +127,7 @@ def solve_all(system: Sequence[Transported], starts: Sequence[int], weight: int,
         columns = _columns(starts, deficit, last, steps)
         echelon = flint.fmpq_mat(0, len(columns) + 1)
         for index, item in enumerate(system):
+            progress.advance(index, len(system))
             rows = _equations(item, columns, deficit, last, steps)
             before = echelon.nrows()
             echelon = _extended(echelon, rows, len(columns))

@@ -39,6 +39,7 @@ class Shared:
     others: tuple[Path, ...] = ()
     cluster: str | None = None
     masters: tuple[str, ...] = ()
+    seconds: float | None = None
 
 
 def shared_options(command: C) -> C:
@@ -62,11 +63,12 @@ def _with_options(command: C, argument: Callable[[C], C]) -> C:
         quiet: bool,
         cluster: str | None,
         masters: tuple[str, ...],
+        seconds: float | None,
         **own: Any,
     ) -> Any:
         first, *others = (Path(name) for name in ([family] if isinstance(family, str) else family))
         folder = Path(work) if work else None
-        shared = Shared(first, folder, workers, as_json, quiet, tuple(others), cluster, masters)
+        shared = Shared(first, folder, workers, as_json, quiet, tuple(others), cluster, masters, seconds)
         return command(shared, **own)
 
     entry.__doc__ = command.__doc__
@@ -82,6 +84,12 @@ def _with_options(command: C, argument: Callable[[C], C]) -> C:
             multiple=True,
             metavar="POWERS",
             help="An integral that is to be a master (repeatable); the others are chosen.",
+        ),
+        click.option(
+            "--seconds",
+            type=click.FloatRange(min=0),
+            metavar="S",
+            help="Stop after about so many seconds with what was reached; the same command goes on.",
         ),
         click.option(
             "--cluster",
@@ -108,13 +116,16 @@ def _with_options(command: C, argument: Callable[[C], C]) -> C:
 @contextmanager
 def open_chain(shared: Shared) -> Iterator[Chain]:
     """The chain of the family file, its store open and progress shown on standard error."""
+    from ibpred.run.budget import deadline, told
     from ibpred.run.chain import Chain
     from ibpred.run.files import read_family_file
 
     definition = read_family_file(shared.file)
     preferred = tuple(_own_powers(text, definition.name) for text in shared.masters)
     with _opened(shared, definition.name) as (store, progress, workers):
-        yield Chain(definition, store, progress, workers, preferred)
+        chain = Chain(definition, store, progress, workers, preferred, deadline(shared.seconds))
+        with told(chain):
+            yield chain
 
 
 def _own_powers(text: str, family: str) -> tuple[int, ...]:
@@ -127,13 +138,16 @@ def _own_powers(text: str, family: str) -> tuple[int, ...]:
 @contextmanager
 def open_joint(shared: Shared) -> Iterator[Joint]:
     """The families of all files together, likewise."""
+    from ibpred.run.budget import deadline, told
     from ibpred.run.files import read_family_file
     from ibpred.run.joint import Joint
 
     definitions = [read_family_file(file) for file in (shared.file, *shared.others)]
     with _opened(shared, definitions[0].name) as (store, progress, workers):
         preferred = [parse_integral(text, "--master") for text in shared.masters]
-        yield Joint(definitions, store, progress, workers, preferred)
+        joint = Joint(definitions, store, progress, workers, preferred, deadline(shared.seconds))
+        with told(joint):
+            yield joint
 
 
 @contextmanager

@@ -182,3 +182,5 @@ def _on_grid(
     if plot_file:
         write_file(Path(plot_file), curve_figure(data, kind))
     emit(shared, data, lambda: grid_text(data))
+    if grid.stopped is not None:
+        raise grid.stopped

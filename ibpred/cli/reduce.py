@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from ibpred.cli.common import Shared, emit, open_joint, parse_integral, parse_list_file, several_families
-from ibpred.errors import ExpressionError, InputError
+from ibpred.errors import ExpressionError, InputError, OutOfTimeError
 
 if TYPE_CHECKING:
     from ibpred.identities.quantities import Integral
@@ -58,7 +58,10 @@ def reduce(
     check: int | None,
     output: str | None,
 ) -> None:
-    """Reduce integrals to master integrals, those of several families to common ones."""
+    """Reduce integrals to master integrals, those of several families to common ones.
+
+    With --seconds the reductions known when the time is over are given.
+    """
     from ibpred.report.json_common import common_reduction_data, reduction_entry, sums_data, without_families
     from ibpred.report.text import reduction_line
 
@@ -87,8 +90,12 @@ def reduce(
         if everything:
             wanted += joint.integrals_within(max_dots or 0, max_rank or 0)
         wanted = list(dict.fromkeys(wanted))
-        rows = joint.reduction(wanted, by_cuts)
-        if check is not None:
+        rows, over = _rows_in_time(joint, wanted, by_cuts)
+        missing: set[Integral] = set()
+        if over is not None:
+            missing |= set(rows.missing(wanted))
+            wanted = [integral for integral in wanted if integral not in missing]
+        elif check is not None:
             _check(joint, rows, wanted, check)
         several = bool(shared.others) or _crossed(joint, [*wanted, *rows.masters])
         entries = (
@@ -103,6 +110,21 @@ def reduce(
         else:
             for entry in entries:
                 click.echo(reduction_line(entry))
+        if over is not None:
+            raise OutOfTimeError(
+                over.during, f"{len(wanted)} of {len(wanted) + len(missing)} integrals are given."
+            )
+
+
+def _rows_in_time(
+    joint: Joint, wanted: Sequence[Integral], by_cuts: bool
+) -> tuple[TableRows, OutOfTimeError | None]:
+    """The reductions; where the time is over those that were known before, and the error that says so."""
+    try:
+        return joint.reduction(wanted, by_cuts), None
+    except OutOfTimeError as over:
+        # without the masters there is nothing to give: then this raises the same error again
+        return joint.rows(wanted), over
 
 
 def _crossed(joint: Joint, integrals: Sequence[Integral]) -> bool:

@@ -20,5 +20,7 @@ def run(shared: Shared, output: str | None, digits: int) -> None:
 
     with open_chain(shared) as chain:
         folder = Path(output) if output else Path("solutions") / chain.definition.name
-        data = run_whole(chain, shared.file, folder, digits)
-    emit(shared, data, lambda: run_text(data))
+        done = run_whole(chain, shared.file, folder, digits)
+        emit(shared, done.data, lambda: run_text(done.data))
+        if done.stopped is not None:
+            raise done.stopped

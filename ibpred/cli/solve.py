@@ -11,12 +11,18 @@ from ibpred.cli.common import Shared, emit, open_chain, shared_options
 @shared_options
 @click.option("--weight", type=click.IntRange(min=0), metavar="W", help="Highest weight [default: 2 L].")
 def solve(shared: Shared, weight: int | None) -> None:
-    """Solve in iterated integrals, with boundary constants."""
+    """Solve in iterated integrals, with boundary constants.
+
+    With --seconds the weights are taken one after the other, and those reached in time are printed.
+    """
     from ibpred.report.json_tables import solution_data
     from ibpred.report.text import solution_text
+    from ibpred.run.budget import solved_in_time
 
     with open_chain(shared) as chain:
         highest = chain.order_of_weight(2 * len(chain.definition.loops) if weight is None else weight)
-        solution = chain.solution(highest)
-        data = solution_data(chain.definition, chain.completed_boundary(highest), solution)
-    emit(shared, data, lambda: solution_text(data))
+        found = solved_in_time(chain, highest)
+        data = solution_data(chain.definition, found.boundary, found.solution)
+        emit(shared, data, lambda: solution_text(data))
+        if found.stopped is not None:
+            raise found.stopped

@@ -27,6 +27,7 @@ from ibpred.epsform.triangular import Grid, eliminate
 from ibpred.epsform.verify import verify
 from ibpred.errors import ReconstructionError
 from ibpred.exact.rational import Ring
+from ibpred.progress import SILENT, Progress
 
 
 def assembled(
@@ -35,6 +36,7 @@ def assembled(
     solved: Sequence[Block],
     primes: Sequence[int],
     seed: int,
+    progress: Progress = SILENT,
 ) -> EpsilonForm | Stuck:
     """The form of the subsystem made of some blocks, from the forms of the blocks.
 
@@ -48,6 +50,8 @@ def assembled(
         Their forms.
     primes, seed
         For the modular samples.
+    progress
+        Told about the couplings done, variable by variable and row by row.
 
     Returns
     -------
@@ -73,22 +77,27 @@ def assembled(
     by_row = [tag for tag, rows in zip(tags, blocks, strict=True) for _ in rows]
     for name in connection.variables:
         letters = _letters(connection, blocks, name)
-        grids[name], change = eliminate(grids[name], local, letters, tags, field, name)
+        grids[name], change = eliminate(grids[name], local, letters, tags, field, name, progress)
         step = added(identity(field, len(order)), _joined(change))
         unipotent = product(unipotent, step, field)
+        progress.advance(len(blocks), len(blocks))
         for other in connection.variables:
             if other != name:
                 grids[other] = _cut(_gauged(_joined(grids[other]), step, other, field), ranges)
+    progress.stage("epsilon-form of the couplings: constant matrix")
     coupled = {name: between_functions(_joined(grid), by_row, name, field) for name, grid in grids.items()}
     system = fuchsian(coupled, ranges, by_row, field, primes[0], seed)
     if isinstance(system, Stuck):
         return system
+    progress.advance(1, None)
     factored = factor_eps(system, ranges, [block.inverse for block in solved], by_row, primes, seed)
     if isinstance(factored, Stuck):
         return factored
+    progress.advance(2, None)
     odd = odd_part(coupled, factored.matrix, by_row, system.places, field, primes, seed)
     if isinstance(odd, Finding):
         return Stuck(len(blocks) - 1, odd)
+    progress.stage("epsilon-form: substitution")
     left = _diagonal([block.transformation for block in solved], field)
     right = _diagonal([block.inverse for block in solved], field)
     transformation = product(product(left, unipotent, field), factored.matrix, field)

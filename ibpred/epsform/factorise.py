@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from dataclasses import replace
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 
 from ibpred.epsform.assemble import assembled
 from ibpred.epsform.blocks import Block, Finding
@@ -17,7 +17,8 @@ from ibpred.epsform.single import solve_single
 from ibpred.epsform.structure import coupled_blocks, couplings, reachable, restricted
 from ibpred.epsform.tags import Tag, canonical
 from ibpred.errors import UnfinishedError
-from ibpred.progress import SILENT, Progress
+from ibpred.progress import SILENT, Expired, Limited, Progress, never
+from ibpred.reconstruct.notes import FORGETFUL, Notes
 
 
 def factorise(
@@ -25,7 +26,8 @@ def factorise(
     primes: Sequence[int],
     seed: int,
     progress: Progress | None = None,
-    expired: Callable[[], bool] | None = None,
+    expired: Expired = never,
+    notes: Notes = FORGETFUL,
 ) -> EpsilonForm | Obstructed:
     """Bring a system to epsilon-factorised form, or say what is in the way.
 
@@ -47,6 +49,8 @@ def factorise(
     expired
         Asked before each coupled block whether the time is over. The blocks that are left then count as
         obstructed, with a sentence that says so, and the outcome is marked as incomplete.
+    notes
+        Where the forms of coupled blocks are noted, so that an interrupted factorisation goes on.
 
     Returns
     -------
@@ -58,6 +62,8 @@ def factorise(
     ------
     UnfinishedError
         Where primes and samples do not suffice.
+    OutOfTimeError
+        If the time is over when all blocks are done but not the couplings between them.
     """
     progress = SILENT if progress is None else progress
     if not connection.variables:
@@ -66,7 +72,7 @@ def factorise(
     solved: dict[tuple[int, ...], Block] = {}
     obstructions: list[Obstruction] = []
     complete = True
-    for rows, outcome in diagonal_blocks(connection, primes, seed, progress, expired):
+    for rows, outcome in diagonal_blocks(connection, primes, seed, progress, expired, notes):
         if outcome is None:
             complete = False
             obstructions.append(Obstruction(rows, _OVER, None, ()))
@@ -76,14 +82,16 @@ def factorise(
         else:
             solved[rows] = outcome
     blocks = coupled_blocks(links)
-    progress.stage("epsilon-form of the couplings")
     reach = reachable(links)
+    # an incomplete outcome is worth having: then the couplings of the few blocks done are not cut short
+    limited = Limited(progress, expired if complete else never)
+    limited.stage("epsilon-form of the couplings")
     while True:
         stuck = {row for found in obstructions for row in found.rows}
         free = tuple(block for block in blocks if not reach[block[0]] & stuck)
         if not free:
             return Obstructed(tuple(obstructions), (), None, complete)
-        outcome_ = assembled(connection, free, [solved[block] for block in free], primes, seed)
+        outcome_ = assembled(connection, free, [solved[block] for block in free], primes, seed, limited)
         if isinstance(outcome_, EpsilonForm):
             break
         rows = free[outcome_.block]
@@ -103,7 +111,8 @@ def diagonal_blocks(
     primes: Sequence[int],
     seed: int,
     progress: Progress,
-    expired: Callable[[], bool] | None = None,
+    expired: Expired = never,
+    notes: Notes = FORGETFUL,
 ) -> tuple[tuple[tuple[int, ...], Block | Finding | None], ...]:
     """The sets of rows that depend on each other, each with its epsilon-form or what is in the way.
 
@@ -113,12 +122,36 @@ def diagonal_blocks(
     progress.stage("epsilon-form of the diagonal blocks")
     found: list[tuple[tuple[int, ...], Block | Finding | None]] = []
     for rows in blocks:
-        if len(rows) > 1 and expired is not None and expired():
+        if len(rows) > 1 and expired():
             found.append((rows, None))
         else:
-            found.append((rows, _solve_block(restricted(connection, rows), primes, seed)))
+            found.append((rows, _noted(rows, connection, primes, seed, notes)))
         progress.advance(len(found), len(blocks))
     return tuple(found)
+
+
+@dataclass(frozen=True)
+class _Outcome:
+    block: Block | None
+    finding: Finding | None
+
+
+def _noted(
+    rows: tuple[int, ...], connection: Connection, primes: Sequence[int], seed: int, notes: Notes
+) -> Block | Finding:
+    """A block, from the notes where it is noted; one function alone is solved sooner than read."""
+
+    def compute() -> _Outcome:
+        found = _solve_block(restricted(connection, rows), primes, seed)
+        return _Outcome(found, None) if isinstance(found, Block) else _Outcome(None, found)
+
+    if len(rows) == 1:
+        outcome = compute()
+    else:
+        outcome = notes.kept(f"block of rows {', '.join(map(str, rows))}", _Outcome, compute)
+    found = outcome.block if outcome.block is not None else outcome.finding
+    assert found is not None
+    return found
 
 
 def _solve_block(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
@@ -168,7 +201,9 @@ def on_cover(found: Finding, block: Connection, primes: Sequence[int], seed: int
     return Finding(reason, found.exponents, points, found.variable)
 
 
-def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cover | None:
+def root_cover(
+    connection: Connection, primes: Sequence[int], seed: int, progress: Progress = SILENT
+) -> Cover | None:
     """The double cover that removes the first square root with two rational branch points, if there is one.
 
     Single functions carry their roots as tags also without a cover; coupled blocks need it, and on it all
@@ -179,10 +214,10 @@ def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cove
     ----------
     connection
         The system.
-    primes, seed
+    primes, seed, progress
         As for `factorise`.
     """
-    for rows, outcome in diagonal_blocks(connection, primes, seed, SILENT):
+    for rows, outcome in diagonal_blocks(connection, primes, seed, progress):
         if isinstance(outcome, Finding):
             if len(outcome.branch_points) == 2 and _helps(
                 restricted(connection, rows), outcome, primes, seed, _COVERS
@@ -195,7 +230,9 @@ def root_cover(connection: Connection, primes: Sequence[int], seed: int) -> Cove
     return None
 
 
-def root_covers(connection: Connection, primes: Sequence[int], seed: int) -> tuple[Cover, ...]:
+def root_covers(
+    connection: Connection, primes: Sequence[int], seed: int, progress: Progress = SILENT
+) -> tuple[Cover, ...]:
     """Double covers, one on top of the other, on which the square roots are rational.
 
     For a system in several ratios they are only taken if coupled blocks need them, or if no root is left.
@@ -204,15 +241,15 @@ def root_covers(connection: Connection, primes: Sequence[int], seed: int) -> tup
     ----------
     connection
         The system.
-    primes, seed
+    primes, seed, progress
         As for `factorise`.
     """
     covers: list[Cover] = []
-    while (cover := root_cover(connection, primes, seed)) is not None:
+    while (cover := root_cover(connection, primes, seed, progress)) is not None:
         covers.append(cover)
         connection = cover.connection
     if len(connection.variables) > 1 and covers and not any(cover.needed for cover in covers):
-        for _, outcome in diagonal_blocks(connection, primes, seed, SILENT):
+        for _, outcome in diagonal_blocks(connection, primes, seed, progress):
             if isinstance(outcome, Block) and outcome.tag:
                 return ()
     return tuple(covers)

@@ -24,6 +24,7 @@ from ibpred.epsform.places import Place, Residue, degree, growth, leading, place
 from ibpred.epsform.places import place as finite_place
 from ibpred.epsform.tags import Tag, difference, only_in, product_of
 from ibpred.exact.rational import Rational, Ring
+from ibpred.progress import SILENT, Progress
 
 Residues = Mapping[str, Constants]
 """Canonical residues of a diagonal block by the text of the letter."""
@@ -48,6 +49,7 @@ def eliminate(
     tags: Sequence[Tag],
     ring: Ring,
     name: str,
+    progress: Progress = SILENT,
 ) -> tuple[Grid, Grid]:
     """Make all couplings Fuchsian.
 
@@ -62,6 +64,8 @@ def eliminate(
         The places of these residues by their text.
     tags
         The tag of each block.
+    progress
+        Told about the rows of blocks done.
 
     Returns
     -------
@@ -75,6 +79,7 @@ def eliminate(
     zero = [[_zero(ring, len(grid[i][i]), len(grid[j][j])) for j in range(count)] for i in range(count)]
     changes: Grid = zero
     for i in range(count):
+        progress.advance(i, count)
         for j in range(i - 1, -1, -1):
             relation = _relation(tags[i], tags[j], ring, name)
             change, rest = _reduced(

@@ -11,6 +11,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
+from functools import partial
 from itertools import combinations, islice
 
 import numpy as np
@@ -25,6 +26,7 @@ from ibpred.identities.seeding import Depth, seeds_of_sector
 from ibpred.identities.templates import Template
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.modular import Residues, add, invert, multiply, subtract
+from ibpred.reconstruct.notes import FORGETFUL, Notes
 from ibpred.reconstruct.univariate import rational_functions
 from ibpred.reduction.deck import TapeSampler
 from ibpred.reduction.masters import CommonMasters, Masters, find_common_masters
@@ -45,6 +47,7 @@ def choose_masters(
     seed: int,
     preferred: Sequence[Powers] = (),
     progress: Progress = SILENT,
+    notes: Notes = FORGETFUL,
 ) -> Masters:
     """Find the masters of one family and choose among them; see `choose_common_masters`.
 
@@ -58,6 +61,8 @@ def choose_masters(
         Integrals that are to be masters.
     progress
         Told about each sector.
+    notes
+        Where finished parts are noted, so that an interrupted choice goes on.
 
     Raises
     ------
@@ -66,7 +71,7 @@ def choose_masters(
     """
     members = family_identities([family], [analysis])
     wish = [(0, tuple(powers)) for powers in preferred]
-    found = choose_common_masters(members, [0], primes, seed, wish, progress)
+    found = choose_common_masters(members, [0], primes, seed, wish, progress, notes)
     return Masters(
         family.name, tuple(powers for _, powers in found.masters), found.prime, found.point, found.trials
     )
@@ -79,6 +84,7 @@ def choose_common_masters(
     seed: int,
     preferred: Sequence[Integral] = (),
     progress: Progress = SILENT,
+    notes: Notes = FORGETFUL,
 ) -> CommonMasters:
     """Find masters and exchange them, sector by sector, for ones whose denominators split.
 
@@ -95,6 +101,8 @@ def choose_common_masters(
         Integrals that are to be masters.
     progress
         Told about each sector.
+    notes
+        Where finished parts are noted, so that an interrupted choice goes on.
 
     Raises
     ------
@@ -103,7 +111,11 @@ def choose_common_masters(
     UnfinishedError
         If the masters keep changing with the seeds.
     """
-    found = find_common_masters(members, roots, primes[0], seed, preferred, progress)
+    found = notes.kept(
+        "masters by the order",
+        CommonMasters,
+        lambda: find_common_masters(members, roots, primes[0], seed, preferred, progress),
+    )
     if len(members[0].family.internal_ring.names) < 2:
         return found
     sectors: dict[tuple[int, int], list[Powers]] = {}
@@ -116,13 +128,19 @@ def choose_common_masters(
     wish = list(preferred)
     templates = {number: derivative_templates(members[number].family) for number in {n for n, _ in coupled}}
     for done, ((number, sector), own) in enumerate(coupled.items()):
-        better = _best(members[number], templates[number], sector, own, primes, seed)
+        search = partial(_best, members[number], templates[number], sector, own, primes, seed)
+        better = notes.kept(f"choice in sector {sector} of family {number}", _Chosen, search).masters
         if better != own:
             wish += [(number, powers) for powers in better]
         progress.advance(done + 1, len(coupled))
     if len(wish) == len(preferred):
         return found
     return find_common_masters(members, roots, primes[0], seed, wish, progress)
+
+
+@dataclass(frozen=True)
+class _Chosen:
+    masters: tuple[Powers, ...]
 
 
 @dataclass(frozen=True)
@@ -168,7 +186,7 @@ def _best(
     own: tuple[Powers, ...],
     primes: Sequence[int],
     seed: int,
-) -> tuple[Powers, ...]:
+) -> _Chosen:
     pool = _pool(member.family, sector, own)
     cut = replace(member, analysis=_cut(member.analysis, sector))
     try:
@@ -176,13 +194,13 @@ def _best(
     except UnfinishedError:
         # identities of higher sectors relate integrals of this one: its cut alone has more masters, and
         # says nothing about the choice
-        return own
+        return _Chosen(own)
     best, least = own, _score(samples, tuple(range(len(own))))
     for chosen in islice(_sets(pool, len(own)), _SETS):
         score = _score(samples, chosen)
         if score is not None and (least is None or score < least):
             best, least = tuple(pool[i] for i in chosen), score
-    return best
+    return _Chosen(best)
 
 
 def _sets(pool: Sequence[Powers], size: int) -> Iterator[tuple[int, ...]]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from itertools import product
@@ -29,7 +29,7 @@ from ibpred.family.signs import euclidean_signs
 from ibpred.identities.rows import family_identities
 from ibpred.iterated.solution import Solution, constant_solution, solve_orders
 from ibpred.numerics.value import Value
-from ibpred.progress import Progress
+from ibpred.progress import Expired, Progress, never
 from ibpred.reduction.choice import choose_masters
 from ibpred.reduction.independent import SectorCount, compare_counts
 from ibpred.reduction.masters import Masters
@@ -62,6 +62,8 @@ class Chain(Stages):
         Who samples the reduction; a number of threads.
     preferred
         Integrals that are to be masters; in the other sectors masters are chosen.
+    expired
+        The deadline; see `ibpred.run.stages.Stages`.
     """
 
     def __init__(
@@ -71,9 +73,10 @@ class Chain(Stages):
         progress: Progress,
         workers: int | Workers,
         preferred: tuple[Powers, ...] = (),
+        expired: Expired = never,
     ) -> None:
         identity = digest(["family", ibpred.__version__, to_data(definition), preferred])
-        super().__init__(identity, store, progress, workers)
+        super().__init__(identity, store, progress, workers, expired)
         self.definition = definition
         self.preferred = preferred
         self._analysis: SectorAnalysis | None = None
@@ -92,7 +95,13 @@ class Chain(Stages):
             Masters,
             None,
             lambda: choose_masters(
-                self.definition, self.analysis(), self.primes, SEED, self.preferred, self.progress
+                self.definition,
+                self.analysis(),
+                self.primes,
+                SEED,
+                self.preferred,
+                self.progress,
+                self._notes("masters"),
             ),
         )
 
@@ -195,7 +204,7 @@ class Chain(Stages):
         def without_roots() -> Coordinates:
             found = first
             self.progress.stage("square roots")
-            for cover in root_covers(self._connection(first), self.primes, SEED):
+            for cover in root_covers(self._connection(first), self.primes, SEED, self.progress):
                 found = substituted(found, cover.ratio, cover.new, cover.substitution)
             return found
 
@@ -221,18 +230,17 @@ class Chain(Stages):
         labels = tuple(self.label(i) for i in range(len(self.masters().masters)))
         return Connection(system.ratios, system.ring, system.matrices, system.blocks, labels)
 
-    def epsilon_form(self, expired: Callable[[], bool] | None = None) -> EpsilonForm | Obstructed:
+    def epsilon_form(self) -> EpsilonForm | Obstructed:
         """The epsilon-factorised form, or what stands in its way.
 
-        Parameters
-        ----------
-        expired
-            Tells when the time is over; what was reached is returned then, and not kept.
+        Where the time allowed is over before all blocks were looked at, what was reached is returned (an
+        `Obstructed` that is not complete); the blocks that were looked at are kept.
         """
         connection = self.connection()
 
         def compute() -> _Outcome:
-            found = factorise(connection, self.primes, SEED, self.progress, expired)
+            notes = self._notes("blocks")
+            found = factorise(connection, self.primes, SEED, self.watcher, self.expired, notes)
             if isinstance(found, Obstructed) and not found.complete:
                 raise _StoppedError(found)
             values = self.coordinates().values.values()
@@ -288,7 +296,7 @@ class Chain(Stages):
             form = self.solved_form()
             self.progress.stage("boundary constants")
             if form.variables:
-                return fix_constants(self._boundary_problem(form, weight))
+                return fix_constants(self._boundary_problem(form, weight), progress=self.progress)
             masters, signs = self.masters().masters, self.euclidean_signs()
             return boundary_of_series(one_scale_values(self.definition, masters, signs, weight))
 

@@ -141,7 +141,7 @@ def completed_by_fits(chain: Chain, problem: BoundaryProblem, complaint: Boundar
             fits = fitted_constants(
                 problem, complaint, functions, start, ratios, digits, _generators(chain), _ODDS
             )
-            return fix_constants(problem, fits)
+            return fix_constants(problem, fits, chain.progress)
         except UnfinishedError as error:
             failure = error
             if not isinstance(error, BoundaryError):

@@ -8,19 +8,20 @@ from fractions import Fraction
 from itertools import product
 from typing import TYPE_CHECKING
 
-import flint
-
-from ibpred.errors import InputError, PointError
+from ibpred.errors import InputError, OutOfTimeError, PointError
 from ibpred.exact.grammar import nearest
-from ibpred.exact.rational import Rational, ring
+from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
 from ibpred.numerics.value import Value
+from ibpred.progress import never
+from ibpred.run.points import zeros_along
 from ibpred.run.values import evaluate_points
 
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
 
 _MOST_POINTS = 100_000
+_PORTION = 8  # points between two looks at the deadline
 
 Point = Mapping[str, Fraction]
 
@@ -47,12 +48,15 @@ class Grid:
         (point, reason) where there are no values: points on singularities.
     thresholds
         For a curve: (letter, place) of the singular points within its range, sorted.
+    stopped
+        Why there are no values at the last points, for want of time; None where all were reached.
     """
 
     axes: tuple[Axis, ...]
     values: tuple[tuple[Point, tuple[Value, ...]], ...]
     left_out: tuple[tuple[Point, str], ...]
     thresholds: tuple[tuple[str, Fraction | float], ...]
+    stopped: OutOfTimeError | None = None
 
 
 def evaluate_grid(
@@ -83,6 +87,8 @@ def evaluate_grid(
     ------
     PointError
         If an invariant is missing, unknown or given twice, or no point of the grid has values.
+    OutOfTimeError
+        If the time allowed is over before any point has values.
     """
     family = chain.definition
     names = [invariant.name for invariant in family.invariants]
@@ -114,9 +120,27 @@ def evaluate_grid(
             left_out.append((point, reason))
     if not regular:
         raise PointError(f"every point of the grid is singular: {left_out[0][1]}")
-    values = evaluate_points(chain, regular, wanted, order, digits)
+    values, stopped = _in_time(chain, regular, wanted, order, digits)
+    left_out += [(point, "the time allowed was over") for point in regular[len(values) :]]
     thresholds = _thresholds(locus, fixed, axes[0]) if len(axes) == 1 else ()
-    return Grid(tuple(axes), tuple(zip(regular, values, strict=True)), tuple(left_out), thresholds)
+    reached = tuple(zip(regular, values, strict=False))
+    return Grid(tuple(axes), reached, tuple(left_out), thresholds, stopped)
+
+
+def _in_time(
+    chain: Chain, points: Sequence[Point], wanted: Sequence[Powers], order: int, digits: int
+) -> tuple[tuple[tuple[Value, ...], ...], OutOfTimeError | None]:
+    """Values at the points; with a deadline in portions, and those that were reached."""
+    size = len(points) if chain.expired is never else _PORTION
+    found: tuple[tuple[Value, ...], ...] = ()
+    for start in range(0, len(points), size):
+        try:
+            found += evaluate_points(chain, points[start : start + size], wanted, order, digits)
+        except OutOfTimeError as over:
+            if not found:
+                raise
+            return found, OutOfTimeError(over.during, f"{len(found)} of {len(points)} points are given.")
+    return found, None
 
 
 def _singular(locus: Sequence[Rational], point: Point) -> str | None:
@@ -133,24 +157,12 @@ def _thresholds(
     locus: Sequence[Rational], fixed: Point, axis: Axis
 ) -> tuple[tuple[str, Fraction | float], ...]:
     """Real zeros of the singular locus along a curve, within its range."""
-    target = ring((axis.name,))
     low, high = min(axis.values), max(axis.values)
     found: dict[Fraction | float, str] = {}
     for letter in locus:
         if axis.name not in letter.variables() or "d" in letter.variables():
             continue
-        images = {name: target.constant(value) for name, value in fixed.items()}
-        along = letter.substitute({**images, "d": target.zero, axis.name: target.variable(axis.name)})
-        terms = {int(e[0]): int(c) for e, c in along.numerator.to_dict().items()}
-        polynomial = flint.fmpz_poly([terms.get(k, 0) for k in range(max(terms, default=0) + 1)])
-        for factor, _ in polynomial.factor()[1]:
-            for place in _real_zeros(factor):
-                if low <= place <= high:
-                    found.setdefault(place, str(letter))
+        for place in zeros_along(letter, fixed, axis.name):
+            if low <= place <= high:
+                found.setdefault(place, str(letter))
     return tuple(sorted(((letter, place) for place, letter in found.items()), key=lambda item: item[1]))
-
-
-def _real_zeros(factor: flint.fmpz_poly) -> list[Fraction | float]:
-    if factor.degree() == 1:
-        return [Fraction(-int(factor[0]), int(factor[1]))]
-    return [float(root.real) for root, _ in factor.complex_roots() if root.imag.is_zero()]

@@ -14,7 +14,7 @@ from ibpred.family.members import Member, members_of
 from ibpred.identities.quantities import Integral
 from ibpred.identities.rows import FamilyIdentities, family_identities
 from ibpred.identities.seeding import Depth, seeds_of_sector
-from ibpred.progress import Progress
+from ibpred.progress import Expired, Progress, never
 from ibpred.reduction.check import TableCheck, check_table
 from ibpred.reduction.choice import choose_common_masters
 from ibpred.reduction.cuts import reduce_by_cuts
@@ -44,6 +44,8 @@ class Joint(Stages):
         As for a chain.
     preferred
         Integrals that are to be masters.
+    expired
+        The deadline; see `ibpred.run.stages.Stages`.
 
     Raises
     ------
@@ -58,11 +60,12 @@ class Joint(Stages):
         progress: Progress,
         workers: int | Workers,
         preferred: Sequence[NamedPowers] = (),
+        expired: Expired = never,
     ) -> None:
         identity = digest(
             ["families", ibpred.__version__, to_data(tuple(preferred)), *map(to_data, definitions)]
         )
-        super().__init__(identity, store, progress, workers)
+        super().__init__(identity, store, progress, workers, expired)
         self.members: tuple[Member, ...] = members_of(definitions)
         self.roots = tuple(i for i, member in enumerate(self.members) if member.crossing is None)
         self.preferred = tuple(self.integral(named) for named in preferred)
@@ -115,7 +118,10 @@ class Joint(Stages):
         roots = tuple(sorted({*self.roots, *(number for number, _ in (*wanted, *self.preferred))}))
         if roots == (0,):
             wish = tuple(powers for _, powers in self.preferred)
-            own = Chain(self.members[0].definition, self.store, self.progress, self.workers, wish).masters()
+            family = self.members[0].definition
+            chain = Chain(family, self.store, self.watcher, self.workers, wish, self.expired)
+            own = chain.masters()
+            self.finished += chain.finished
             integrals = tuple((0, powers) for powers in own.masters)
             return CommonMasters((own.family,), integrals, own.prime, own.point, own.trials)
         return self._kept(
@@ -123,7 +129,13 @@ class Joint(Stages):
             CommonMasters,
             roots,
             lambda: choose_common_masters(
-                self.identities(), roots, self.primes, SEED, self.preferred, self.progress
+                self.identities(),
+                roots,
+                self.primes,
+                SEED,
+                self.preferred,
+                self.progress,
+                self._notes("common masters"),
             ),
         )
 

@@ -4,7 +4,11 @@ from __future__ import annotations
 
 from collections.abc import Collection, Mapping
 from fractions import Fraction
+from math import ceil
 
+import flint
+
+from ibpred.exact.rational import Rational, ring
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.signs import masses
 
@@ -37,12 +41,9 @@ def physical_point(
         Finite singular points of the ratio, to keep away from.
     """
     point = euclidean_point(family, signs)
-    fixed = masses(family)
-    free = [name for name in point if name not in fixed]
-    if not free:
+    chosen = free_invariant(family)
+    if chosen is None:
         return None
-    chosen = family.unit if family.unit in free else free[0]
-    assert chosen is not None
     if chosen == family.unit:
         point[chosen] = -point[chosen]
         others = [name for name in point if name != chosen]
@@ -53,3 +54,45 @@ def physical_point(
     beyond = max([abs(a) for a in singular], default=Fraction(1)) + 2
     point[chosen] = -signs[chosen] * beyond
     return point
+
+
+def free_invariant(family: FamilyDefinition) -> str | None:
+    """The invariant that changes sign: the unit if it is no mass, else the first that is none."""
+    fixed = masses(family)
+    free = [invariant.name for invariant in family.invariants if invariant.name not in fixed]
+    if not free:
+        return None
+    return family.unit if family.unit in free else free[0]
+
+
+def singular_ratios(
+    family: FamilyDefinition, signs: Mapping[str, int], locus: Collection[Rational]
+) -> list[Fraction]:
+    """What `physical_point` keeps away from, read off a singular locus; irrational places are rounded up."""
+    point = euclidean_point(family, signs)
+    chosen = free_invariant(family)
+    others = [name for name in point if name != chosen]
+    if chosen is None or (chosen == family.unit and not others):
+        return []
+    if chosen == family.unit:
+        point[chosen] = -point[chosen]
+        along = [z for letter in locus for z in zeros_along(letter, point, others[0])]
+        return [-signs[others[0]] * z for z in along if isinstance(z, Fraction)]
+    along = [z for letter in locus for z in zeros_along(letter, point, chosen)]
+    return [abs(z) if isinstance(z, Fraction) else Fraction(ceil(abs(z))) for z in along]
+
+
+def zeros_along(letter: Rational, point: Mapping[str, Fraction], name: str) -> list[Fraction | float]:
+    """Real zeros of a letter where one invariant varies and the others stay at a point; d is set to zero."""
+    target = ring((name,))
+    images = {other: target.constant(value) for other, value in point.items() if other != name}
+    along = letter.substitute({**images, "d": target.zero, name: target.variable(name)})
+    terms = {int(e[0]): int(c) for e, c in along.numerator.to_dict().items()}
+    polynomial = flint.fmpz_poly([terms.get(k, 0) for k in range(max(terms, default=0) + 1)])
+    return [zero for factor, _ in polynomial.factor()[1] for zero in _real_zeros(factor)]
+
+
+def _real_zeros(factor: flint.fmpz_poly) -> list[Fraction | float]:
+    if factor.degree() == 1:
+        return [Fraction(-int(factor[0]), int(factor[1]))]
+    return [float(root.real) for root, _ in factor.complex_roots() if root.imag.is_zero()]

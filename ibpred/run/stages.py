@@ -8,8 +8,8 @@ from typing import TypeVar
 from ibpred.digest import digest
 from ibpred.exact.codec import from_data, to_data
 from ibpred.exact.primes import first_primes
-from ibpred.progress import Progress
-from ibpred.run.deck import Meter, StoredDeck
+from ibpred.progress import Expired, Limited, Progress, never
+from ibpred.run.deck import Meter, StoredDeck, StoredNotes
 from ibpred.run.store import Store
 from ibpred.run.workers import Threads, Workers
 
@@ -35,12 +35,31 @@ class Stages:
         Told what is being done.
     workers
         Who replays the tapes; a number of threads of this process.
+    expired
+        The deadline: a stage that reports progress after it is stopped with an `OutOfTimeError`.
+
+    Attributes
+    ----------
+    finished
+        Names of the stages whose results are at hand, in the order of use.
+    watcher
+        The progress without the deadline.
     """
 
-    def __init__(self, identity: str, store: Store, progress: Progress, workers: int | Workers) -> None:
+    def __init__(
+        self,
+        identity: str,
+        store: Store,
+        progress: Progress,
+        workers: int | Workers,
+        expired: Expired = never,
+    ) -> None:
         self.identity = identity
         self.store = store
-        self.progress = progress
+        self.watcher = progress
+        self.expired = expired
+        self.progress: Progress = Limited(progress, expired)
+        self.finished: list[str] = []
         self.workers: Workers = Threads(workers) if isinstance(workers, int) else workers
         self.meter = Meter()
         self.deck = StoredDeck(store, self.workers, self.meter)
@@ -50,12 +69,19 @@ class Stages:
         key = digest([self.identity, stage, to_data(options)])
         stored = self.store.get(key)
         if stored is not None:
+            self.finished.append(stage)
             return from_data(kind, stored)
 
         def put(result: R) -> None:
             self.store.put(key, stage, to_data(result))
 
-        return self._stored(key, compute, put)
+        result = self._stored(key, compute, put)
+        self.finished.append(stage)
+        return result
+
+    def _notes(self, name: str) -> StoredNotes:
+        """Where parts of an unfinished stage are noted."""
+        return StoredNotes(digest([self.identity, name]), self.deck)
 
     def _stored(self, key: str, compute: Callable[[], R], put: Callable[[R], None]) -> R:
         """Compute a result and store it; the pieces of work that led to it are kept until then."""

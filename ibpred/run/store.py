@@ -217,6 +217,12 @@ class Store:
         with self.transaction():
             self._database.execute("delete from entry where owner = ?", (owner,))
 
+    def work(self) -> dict[str, int]:
+        """How many pieces of unfinished work there are, by kind."""
+        query = "select kind, count(*) from entry where owner is not null and part = 0 group by kind"
+        with self._guarded("read"):
+            return dict(sorted(self._database.execute(query).fetchall()))
+
     def get(self, key: str) -> JsonData:
         """The stored JSON data, or None."""
         body = self.get_bytes(key)
