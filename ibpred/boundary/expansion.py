@@ -198,20 +198,26 @@ def _root(value: Rational, scale: Rational) -> Rational:
 
 
 def _positive_near_zero(letter: Rational) -> bool:
-    """Sign of a polynomial at small positive arguments: that of all terms, or of the lowest in one ratio.
+    """Sign of a polynomial at small positive arguments, whatever their order.
+
+    Every term of the other sign must be a multiple of a term of this one, and so be smaller.
 
     Raises
     ------
     BoundaryError
-        If terms in several ratios have different signs.
+        If there is no such sign.
     """
-    signs = {c > 0 for c in letter.numerator.coeffs()}
-    if len(signs) == 1:
-        return bool(signs.pop())
-    if len(letter.variables()) > 1:
-        raise BoundaryError(f"the sign of the scale {letter} is not the same everywhere for positive ratios")
-    terms = {sum(int(e) for e in exponents): c for exponents, c in letter.numerator.to_dict().items()}
-    return bool(terms[min(terms)] > 0)
+    terms = {tuple(map(int, e)): c > 0 for e, c in letter.numerator.to_dict().items()}
+    for sign in (True, False):
+        leading = [e for e, positive in terms.items() if positive == sign]
+        if all(
+            positive == sign or any(all(a >= b for a, b in zip(e, low, strict=True)) for low in leading)
+            for e, positive in terms.items()
+        ):
+            return sign
+    raise BoundaryError(
+        f"the sign of the scale {letter} is not the same everywhere for small positive ratios"
+    )
 
 
 def _reduced_gamma(argument: EpsLinear, field: Ring) -> Rational:

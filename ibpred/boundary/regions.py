@@ -216,7 +216,7 @@ class _Expansion:
 
 
 def _nested(state: _Expansion, approach: Approach, scales: Sequence[str]) -> tuple[Region, ...] | None:
-    border = isinstance(approach.point, Infinity) or approach.point == 0
+    border = _is_border(state, approach)
     if not scales and not isinstance(approach.point, Infinity) and approach.point < 0:
         return _at_negative(state, approach.variable, approach.point)
     name, point = (scales[0], Fraction(0)) if scales else (approach.variable, approach.point)
@@ -238,7 +238,7 @@ def _nested(state: _Expansion, approach: Approach, scales: Sequence[str]) -> tup
             return None
         for region in inner:
             exponent = region.exponent
-            # the regulator reaches all that become small later, but not a point at finite distance
+            # the regulator reaches all that become small later, but not a point with finite coefficients
             later = [logs or more for more in exponent.logs]
             if not border:
                 later[-1] = exponent.logs[-1]
@@ -264,6 +264,14 @@ def _at_negative(state: _Expansion, variable: str, point: Fraction) -> tuple[Reg
     # parts that share an exponent may need a further regulator
     exponents = {Exponent((power,), (slope,), (slopes.count(slope) > 1,)) for power, slope in found}
     return tuple(Region(exponent, None) for exponent in sorted(exponents))
+
+
+def _is_border(state: _Expansion, approach: Approach) -> bool:
+    """Whether some coefficient tends to zero or infinity at the point of the variable."""
+    if isinstance(approach.point, Infinity) or approach.point == 0:
+        return True
+    lasts = [leading(term.coefficient, approach.scales)[1] for term in state.terms]
+    return any(valuation(last, approach.variable, approach.point) for last in lasts)
 
 
 def _leading_term(

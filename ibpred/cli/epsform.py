@@ -18,7 +18,7 @@ def epsform(shared: Shared) -> None:
 
     with open_chain(shared) as chain:
         found = chain.epsilon_form()
-        data = epsilon_data(chain.definition, chain.dimensionless(), found)
+        data = epsilon_data(chain.definition, chain.dimensionless(), found, chain.offered())
         emit(shared, data, lambda: epsilon_text(data))
         if isinstance(found, Obstructed) and not found.complete:
             raise OutOfTimeError("epsilon-form of the diagonal blocks")

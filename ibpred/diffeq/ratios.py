@@ -131,29 +131,35 @@ def ratio_coordinates(
     return Coordinates(names, tuple(definitions), target, values)
 
 
-def substituted(coordinates: Coordinates, old: str, new: str, value: Rational) -> Coordinates:
-    """Replace one variable by a function of a new one.
+def changed(
+    coordinates: Coordinates, names: Sequence[str], images: Sequence[Rational], partners: Sequence[str]
+) -> Coordinates:
+    """Replace the variables by functions of new ones.
 
     Parameters
     ----------
     coordinates
         The variables so far.
-    old, new
-        The variable that goes and the one that comes in its place.
-    value
-        The old one in terms of the new one, in the new ring.
+    names
+        The new variables, in their order.
+    images
+        The old variables, in order, in terms of the new ones, in the ring ``("eps", *names)``.
+    partners
+        For each old variable the new one whose definition tells its image.
     """
-    place = coordinates.names.index(old)
-    names = tuple(new if name == old else name for name in coordinates.names)
-    target = ring(new if name == old else name for name in coordinates.ring.names)
-    image = value.to_ring(target)
-    values = {name: v.substitute({old: image}).to_ring(target) for name, v in coordinates.values.items()}
-    before = coordinates.definitions[place]
-    text = f"{old} = {value.factored_text()}" + (f", {before}" if "=" in before else f", {old} = {before}")
-    if "=" not in before:
-        text = f"{before} = {value.factored_text()}"
-    definitions = tuple(text if k == place else d for k, d in enumerate(coordinates.definitions))
-    return Coordinates(names, definitions, target, values)
+    target = ring(("eps", *names))
+    inserted = dict(zip(coordinates.names, images, strict=True))
+    values = {name: v.substitute(inserted).to_ring(target) for name, v in coordinates.values.items()}
+    texts = {}
+    for old, before, partner in zip(coordinates.names, coordinates.definitions, partners, strict=True):
+        text = inserted[old].factored_text()
+        if old == partner and inserted[old] == target.variable(old):
+            texts[partner] = before
+        elif "=" in before:
+            texts[partner] = f"{old} = {text}, {before}"
+        else:
+            texts[partner] = f"{before} = {text}"
+    return Coordinates(tuple(names), tuple(texts[name] for name in names), target, values)
 
 
 def dimensionless(system: DifferentialSystem, coordinates: Coordinates) -> DimensionlessSystem:

@@ -71,6 +71,8 @@ class Finding:
         The ratio in which these are points.
     common
         Letters at which all exponents are half-integers: a square root of them multiplies the whole block.
+    roots
+        Letters at which some exponents are half-integers, in case that is the only reason.
     """
 
     reason: str
@@ -78,6 +80,7 @@ class Finding:
     branch_points: tuple[Fraction | None, ...] = ()
     variable: str = ""
     common: Tag = ()
+    roots: Tag = ()
 
 
 def linear(shift: Fraction, slope: Fraction) -> Exponent:

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 from ibpred.epsform.form import Connection
-from ibpred.epsform.matrices import scaled
+from ibpred.epsform.matrices import added, scaled
 from ibpred.epsform.tags import Tag
 from ibpred.errors import InputError
 from ibpred.exact.rational import Rational, Ring, ring
@@ -114,19 +114,37 @@ def double_cover(
     new = new_ratio(connection.ring.names)
     target = ring(new if n == name else n for n in connection.ring.names)
     substitution = parametrisation(points, target, new)
-    slope = substitution.derivative(new)
-    matrices = {}
-    for variable, matrix in connection.matrices.items():
-        moved = tuple(
-            tuple(e.substitute({name: substitution}) if e else target.zero for e in row) for row in matrix
-        )
-        if variable == name:
-            matrices[new] = scaled(moved, slope)
-        else:
-            matrices[variable] = moved
-    variables = tuple(new if v == name else v for v in connection.variables)
-    whole = Connection(variables, target, matrices, connection.blocks, connection.labels)
+    whole = pulled_back(connection, name, new, substitution)
     return Cover(whole, substitution, name, new, points, needed)
+
+
+def pulled_back(connection: Connection, old: str, new: str, value: Rational) -> Connection:
+    """A system in which one ratio is expressed by a new one and the others.
+
+    Parameters
+    ----------
+    connection
+        The system.
+    old, new
+        The ratio that goes and the one that comes in its place.
+    value
+        The old one, in the ring with the new one in its place.
+    """
+    target = value.ring
+    moved = {
+        variable: tuple(
+            tuple(e.substitute({old: value}) if e else target.zero for e in row) for row in matrix
+        )
+        for variable, matrix in connection.matrices.items()
+    }
+    matrices = {new: scaled(moved[old], value.derivative(new))}
+    for variable, matrix in moved.items():
+        slope = value.derivative(variable) if variable != old else target.zero
+        if variable != old:
+            matrices[variable] = added(matrix, scaled(moved[old], slope)) if slope else matrix
+    variables = tuple(new if v == old else v for v in connection.variables)
+    ordered = {variable: matrices[variable] for variable in variables}
+    return Connection(variables, target, ordered, connection.blocks, connection.labels)
 
 
 def describe(points: tuple[Fraction | None, ...], name: str) -> str:

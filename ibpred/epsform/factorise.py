@@ -106,6 +106,10 @@ def factorise(
 _OVER = "not looked at: the time allowed was over before this block's turn"
 
 
+Outcomes = tuple[tuple[tuple[int, ...], Block | Finding | None], ...]
+"""The rows of each diagonal block with its form or what is in the way."""
+
+
 def diagonal_blocks(
     connection: Connection,
     primes: Sequence[int],
@@ -113,7 +117,7 @@ def diagonal_blocks(
     progress: Progress,
     expired: Expired = never,
     notes: Notes = FORGETFUL,
-) -> tuple[tuple[tuple[int, ...], Block | Finding | None], ...]:
+) -> Outcomes:
     """The sets of rows that depend on each other, each with its epsilon-form or what is in the way.
 
     None for coupled blocks that were not looked at since the time was over.
@@ -142,7 +146,7 @@ def _noted(
     """A block, from the notes where it is noted; one function alone is solved sooner than read."""
 
     def compute() -> _Outcome:
-        found = _solve_block(restricted(connection, rows), primes, seed)
+        found = solve_block(restricted(connection, rows), primes, seed)
         return _Outcome(found, None) if isinstance(found, Block) else _Outcome(None, found)
 
     if len(rows) == 1:
@@ -154,7 +158,7 @@ def _noted(
     return found
 
 
-def _solve_block(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
+def solve_block(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
     """A block, a square root that multiplies all of it split off as its tag."""
     if len(block.labels) == 1:
         return solve_single({name: block.matrices[name][0][0] for name in block.variables})
@@ -195,7 +199,7 @@ def on_cover(found: Finding, block: Connection, primes: Sequence[int], seed: int
         return found
     reason = f"{found.reason}; {describe(points, found.variable)}"
     if len(points) == 2:
-        outcome = _solve_block(double_cover(block, found.variable, points).connection, primes, seed)
+        outcome = solve_block(double_cover(block, found.variable, points).connection, primes, seed)
         if isinstance(outcome, Finding):
             return Finding(f"{reason}, but even then: {outcome.reason}", found.exponents)
     return Finding(reason, found.exponents, points, found.variable)
@@ -217,7 +221,12 @@ def root_cover(
     primes, seed, progress
         As for `factorise`.
     """
-    for rows, outcome in diagonal_blocks(connection, primes, seed, progress):
+    return cover_for(connection, diagonal_blocks(connection, primes, seed, progress), primes, seed)
+
+
+def cover_for(connection: Connection, outcomes: Outcomes, primes: Sequence[int], seed: int) -> Cover | None:
+    """As `root_cover`, the diagonal blocks given."""
+    for rows, outcome in outcomes:
         if isinstance(outcome, Finding):
             if len(outcome.branch_points) == 2 and _helps(
                 restricted(connection, rows), outcome, primes, seed, _COVERS
@@ -230,31 +239,6 @@ def root_cover(
     return None
 
 
-def root_covers(
-    connection: Connection, primes: Sequence[int], seed: int, progress: Progress = SILENT
-) -> tuple[Cover, ...]:
-    """Double covers, one on top of the other, on which the square roots are rational.
-
-    For a system in several ratios they are only taken if coupled blocks need them, or if no root is left.
-
-    Parameters
-    ----------
-    connection
-        The system.
-    primes, seed, progress
-        As for `factorise`.
-    """
-    covers: list[Cover] = []
-    while (cover := root_cover(connection, primes, seed, progress)) is not None:
-        covers.append(cover)
-        connection = cover.connection
-    if len(connection.variables) > 1 and covers and not any(cover.needed for cover in covers):
-        for _, outcome in diagonal_blocks(connection, primes, seed, progress):
-            if isinstance(outcome, Block) and outcome.tag:
-                return ()
-    return tuple(covers)
-
-
 _COVERS = 3
 """Double covers on top of each other that are tried for one block."""
 
@@ -262,7 +246,7 @@ _COVERS = 3
 def _helps(block: Connection, found: Finding, primes: Sequence[int], seed: int, most: int) -> bool:
     """Whether a block has an epsilon-form on a double cover, or on a double cover of that."""
     covered = double_cover(block, found.variable, found.branch_points).connection
-    outcome = _solve_block(covered, primes, seed)
+    outcome = solve_block(covered, primes, seed)
     if not isinstance(outcome, Finding):
         return True
     if len(outcome.branch_points) != 2 or most <= 1:

@@ -38,7 +38,26 @@ def finding(obstacle: Obstacle, places: Sequence[Place], name: str) -> Finding:
     )
     branch = _branch_points(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
     common = _common_roots(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
-    return Finding(_reason(obstacle, text(obstacle.point)), exponents, branch, name, common)
+    roots = _roots(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
+    return Finding(_reason(obstacle, text(obstacle.point)), exponents, branch, name, common, roots)
+
+
+def _roots(obstacle: Obstacle, places: Sequence[Place]) -> Tag:
+    """Fixed finite places with half-integer exponents; none where other fractions occur too."""
+    found: dict[str, Place] = {}
+    for index, exponents in obstacle.exponents:
+        orders = {e.shift.denominator for e in exponents} - {1}
+        if not orders:
+            continue
+        if orders != {2} or (index >= 0 and places[index].moves):
+            return ()
+        if index >= 0:
+            found[places[index].text()] = places[index]
+    if not found:
+        return ()
+    field = next(iter(found.values())).ring
+    variables = tuple(name for name in field.names if name != "eps")
+    return tag_of([place.polynomial for place in found.values()], field, variables)
 
 
 def _common_roots(obstacle: Obstacle, places: Sequence[Place]) -> Tag:

@@ -7,9 +7,10 @@ from fractions import Fraction
 from typing import Any
 
 from ibpred.boundary.fix import Boundary
-from ibpred.diffeq.ratios import DimensionlessSystem
+from ibpred.diffeq.ratios import Coordinates, DimensionlessSystem
 from ibpred.diffeq.system import DifferentialSystem
 from ibpred.epsform.form import EpsilonForm, Obstructed, OddLetter, PeriodForm
+from ibpred.epsform.variables import Variables
 from ibpred.exact.polynomial import polynomial_text
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
@@ -123,9 +124,15 @@ def sparse(matrix: Sequence[Sequence[Fraction | Rational]]) -> list[list[Any]]:
 
 
 def epsilon_data(
-    family: FamilyDefinition, system: DimensionlessSystem, outcome: EpsilonForm | Obstructed
+    family: FamilyDefinition,
+    system: DimensionlessSystem,
+    outcome: EpsilonForm | Obstructed,
+    offered: tuple[Coordinates, Variables] | None = None,
 ) -> Data:
-    """What `epsform` prints; where some block is obstructed, the rest of the system is given."""
+    """What `epsform` prints; where some block is obstructed, the rest of the system is given.
+
+    Variables in which the roots are rational that are not used are offered beside it.
+    """
     form = outcome.solved if isinstance(outcome, Obstructed) else outcome
     data: Data = {
         "family": family.name,
@@ -169,6 +176,13 @@ def epsilon_data(
             }
             for obstruction in outcome.obstructions
         ]
+    if offered is not None:
+        coordinates, variables = offered
+        data["offered_variables"] = {
+            "variables": dict(zip(coordinates.names, coordinates.definitions, strict=True)),
+            "radicands": [letter_text(radicand) for radicand in variables.radicands],
+            "letters_linear": variables.linear,
+        }
     return data
 
 

@@ -153,7 +153,7 @@ def epsilon_text(data: Data) -> str:
                 lines.append(f"    exponents of the block at {place}: {', '.join(exponents)}")
             if obstruction["period_form"]:
                 lines += _period_lines(obstruction["period_form"])
-        return "\n".join(lines)
+        return "\n".join(lines + _offer_lines(data))
     lines.append(f"letters: {', '.join(data['letters']) or 'none'}")
     for letter in data["letters"]:
         by_row: dict[int, list[tuple[str, str]]] = {}
@@ -168,7 +168,18 @@ def epsilon_text(data: Data) -> str:
     for row, column, value in data["transformation"]:
         by_row.setdefault(row, []).append((value, f"f{column + 1}"))
     lines += [f"  I{row + 1} = {_sum(by_row[row])}" for row in sorted(by_row)]
-    return "\n".join(lines)
+    return "\n".join(lines + _offer_lines(data))
+
+
+def _offer_lines(data: Data) -> list[str]:
+    """Variables in which the square roots are rational, where they are not used."""
+    offer = data.get("offered_variables")
+    if offer is None:
+        return []
+    roots = ", ".join(f"sqrt({radicand})" for radicand in offer["radicands"])
+    letters = "all letters linear" if offer["letters_linear"] else "not all letters linear"
+    lines = ["", f"variables in which {roots} are rational ({letters}), not used by itself:"]
+    return lines + [f"  {name} with {text}" for name, text in offer["variables"].items()]
 
 
 def _period_lines(form: Data) -> list[str]:

@@ -15,13 +15,14 @@ from ibpred.diffeq.derive import Derivation, differential_system
 from ibpred.diffeq.ratios import (
     Coordinates,
     DimensionlessSystem,
+    changed,
     dimensionless,
     ratio_coordinates,
-    substituted,
 )
 from ibpred.digest import digest
-from ibpred.epsform.factorise import factorise, root_covers
+from ibpred.epsform.factorise import factorise
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
+from ibpred.epsform.variables import RootVariables, Variables, root_variables
 from ibpred.errors import BoundaryError, ObstructionError, UnfinishedError
 from ibpred.exact.codec import to_data
 from ibpred.family.definition import FamilyDefinition, Powers
@@ -201,14 +202,27 @@ class Chain(Stages):
         if self.definition.variables or not first.names:
             return first
 
-        def without_roots() -> Coordinates:
-            found = first
-            self.progress.stage("square roots")
-            for cover in root_covers(self._connection(first), self.primes, SEED, self.progress):
-                found = substituted(found, cover.ratio, cover.new, cover.substitution)
-            return found
+        used = self.root_variables(first).used
+        return first if used is None else changed(first, used.names, used.images, used.partners)
 
-        return self._kept("coordinates", Coordinates, None, without_roots)
+    def root_variables(self, ratios: Coordinates) -> RootVariables:
+        """What is done about the square roots of the equations in the ratios."""
+
+        def search() -> RootVariables:
+            self.progress.stage("square roots")
+            return root_variables(self.connection_in(ratios), self.primes, SEED, self.progress)
+
+        return self._kept("square roots", RootVariables, None, search)
+
+    def offered(self) -> tuple[Coordinates, Variables] | None:
+        """Variables in which all square roots are rational, where the chain does not use them by itself."""
+        ratios = ratio_coordinates(self.derivation().system, self.signs(), self.definition.variables)
+        if self.definition.variables or not ratios.names:
+            return None
+        found = self.root_variables(ratios).offered
+        if found is None:
+            return None
+        return changed(ratios, found.names, found.images, found.partners), found
 
     def in_ratios(self) -> bool:
         """Whether the variables of the epsilon-form are just the ratios of the invariants."""
@@ -223,9 +237,10 @@ class Chain(Stages):
 
     def connection(self) -> Connection:
         """What is brought to epsilon-form."""
-        return self._connection(self.coordinates())
+        return self.connection_in(self.coordinates())
 
-    def _connection(self, coordinates: Coordinates) -> Connection:
+    def connection_in(self, coordinates: Coordinates) -> Connection:
+        """The differential equations in some dimensionless variables."""
         system = dimensionless(self.derivation().system, coordinates)
         labels = tuple(self.label(i) for i in range(len(self.masters().masters)))
         return Connection(system.ratios, system.ring, system.matrices, system.blocks, labels)

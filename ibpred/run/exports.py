@@ -84,7 +84,7 @@ def chain_material(chain: Chain, order: int, digits: int) -> Material:
     variables: tuple[str, ...] = ()
     if len(family.invariants) > 1:
         found = chain.epsilon_form()
-        epsilon = epsilon_data(family, chain.dimensionless(), found)
+        epsilon = epsilon_data(family, chain.dimensionless(), found, chain.offered())
         if isinstance(found, EpsilonForm):
             letters, variables = found.letters, found.variables
     highest = chain.order_of_weight(2 * len(family.loops))

@@ -196,7 +196,9 @@ def _form(chain: Chain, journal: _Journal) -> EpsilonForm | Obstructed | None:
     except UnfinishedError as error:
         journal.not_done("epsilon-form", error)
         return None
-    journal.files["epsform.json"] = epsilon_data(chain.definition, chain.dimensionless(), found)
+    journal.files["epsform.json"] = epsilon_data(
+        chain.definition, chain.dimensionless(), found, chain.offered()
+    )
     if isinstance(found, Obstructed):
         if not found.complete:
             raise OutOfTimeError("epsilon-form of the diagonal blocks")

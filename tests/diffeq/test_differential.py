@@ -13,7 +13,7 @@ import pytest
 from ibpred.diffeq.checks import check_integrability, check_scaling, check_system, sample_system
 from ibpred.diffeq.derive import Derivation, differential_system
 from ibpred.diffeq.jets import matrix_jets
-from ibpred.diffeq.ratios import dimensionless, ratio_coordinates, ratio_names, substituted
+from ibpred.diffeq.ratios import changed, dimensionless, ratio_coordinates, ratio_names
 from ibpred.errors import InputError
 from ibpred.exact.primes import first_primes
 from ibpred.exact.rational import ring
@@ -161,7 +161,7 @@ def test_substitution_of_a_variable_is_the_chain_rule() -> None:
     family, found = derived("bubble-two-masses")
     first = ratio_coordinates(found.system, euclidean_signs(family))
     w = ring(("eps", "w")).variable("w")
-    second = substituted(first, "x", "w", (1 - w) ** 2 / w)
+    second = changed(first, ("w",), ((1 - w) ** 2 / w,), ("w",))
     assert second.definitions == ("-s/m2 = (w-1)^2/w",)
     old, new = dimensionless(found.system, first), dimensionless(found.system, second)
     slope = (w * w - 1) / w**2

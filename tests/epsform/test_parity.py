@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from synthetic_systems import connection, matrix
 
-from ibpred.epsform.factorise import factorise, root_covers
+from ibpred.epsform.factorise import factorise, root_cover
 from ibpred.epsform.form import EpsilonForm
 from ibpred.epsform.parity import involution, with_parity
 from ibpred.epsform.verify import verify
@@ -30,7 +30,8 @@ def test_involutions() -> None:
 
 def test_the_bubble_is_odd_and_the_tadpole_even() -> None:
     rows = [["0", "0"], ["2*(1-eps)/(x*(x+4))", "-(2+eps*x)/(x*(x+4))"]]
-    (cover,) = root_covers(connection(matrix(rows)), PRIMES, 1)
+    cover = root_cover(connection(matrix(rows)), PRIMES, 1)
+    assert cover is not None
     form = factorise(cover.connection, PRIMES, 1)
     assert isinstance(form, EpsilonForm)
     image = 1 / cover.connection.ring.variable("w")

@@ -5,7 +5,10 @@ from __future__ import annotations
 import pytest
 from solving import FAMILIES
 
+from ibpred.diffeq.ratios import ratio_coordinates
+from ibpred.epsform.factorise import factorise
 from ibpred.epsform.form import EpsilonForm, Obstructed
+from ibpred.epsform.places import degree
 from ibpred.epsform.verify import is_integrable, verify
 from ibpred.progress import SILENT
 from ibpred.report.json_tables import letter_text, odd_letter_text
@@ -73,21 +76,50 @@ def test_box_with_a_massive_fermion(tmp_path):
     assert found == {a, f"{a}+1", f"{a}-1", b, f"{b}+1", f"{a}+{b}", f"{a}*{b}+1"}
 
 
+def in_the_ratios(name, folder) -> EpsilonForm:
+    """The epsilon-form with its square roots, not in variables in which these are rational."""
+    with Store(folder) as store:
+        chain = Chain(read_family_file(FAMILIES / f"{name}.toml"), store, SILENT, 1)
+        system = chain.derivation().system
+        connection = chain.connection_in(ratio_coordinates(system, chain.signs()))
+        form = factorise(connection, chain.primes, 1)
+    assert isinstance(form, EpsilonForm), form.obstructions
+    assert verify(connection, form)
+    assert is_integrable(form)
+    return form
+
+
 def test_box_with_a_massive_loop(tmp_path):
     """Three roots, u, v and uv + u + v (Caron-Huot, Henn, arXiv:1404.2922)."""
-    form = verified("box-massive-loop", tmp_path)
+    form = in_the_ratios("box-massive-loop", tmp_path)
     assert letters(form) == {"4+x", "4+y", "y+x", "4*y+4*x+x*y"}
     assert [str(r) for r in form.radicands] == ["x", "y", "x+4", "y+4", "x*y+4*x+4*y"]
     assert len({letter.roots for letter in form.odd_letters}) == 5
     assert "(x-sqrt(x*(4+x)))/(x+sqrt(x*(4+x)))" in {odd_letter_text(o, form) for o in form.odd_letters}
 
 
+def test_box_with_a_massive_loop_in_rational_variables(tmp_path):
+    """With z = w w3: w, z, 1-w^2, 1-z^2, w-z, w+z, 1-wz, 1+wz and two more (Caron-Huot, Henn, 1404.2922)."""
+    form = verified("box-massive-loop", tmp_path)
+    assert not any(form.tags)
+    w3, w = form.variables
+    rational = {w3, f"{w3}+1", f"{w3}-1", w, f"{w}+1", f"{w3}*{w}+1", f"{w3}*{w}-1"}
+    assert rational < {str(letter) for letter in form.letters}
+    # linear in the smallest variable
+    assert all(degree(letter.numerator, form.ring, w) <= 1 for letter in form.letters)
+
+
 def test_box_with_two_adjacent_legs(tmp_path):
     """One root, that of the Källén function of s and the two legs (Henn, Melnikov, Smirnov, 1402.7078)."""
-    form = verified("box-two-adjacent-legs", tmp_path)
+    form = in_the_ratios("box-two-adjacent-legs", tmp_path)
     (radicand,) = form.radicands
     y, z = (form.ring.variable(n) for n in ("y", "z"))
     assert radicand == 1 + y**2 + z**2 - 2 * y - 2 * z - 2 * y * z
+
+
+@pytest.mark.parametrize("name", ["bubble-distinct-masses", "box-two-adjacent-legs"])
+def test_roots_of_the_kallen_function_become_rational(name, tmp_path):
+    assert not any(verified(name, tmp_path).tags)
 
 
 @pytest.mark.slow
