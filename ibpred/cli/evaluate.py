@@ -144,7 +144,7 @@ def _near(
         f"{goal.name} = {goal.place} {'+' if goal.side > 0 else '-'} h",
         terms,
         digits,
-        [(expansion.powers, expansion.epsilon) for expansion in found],
+        [(e.powers, e.epsilon, e.certified, e.route) for e in found],
     )
     emit(shared, data, lambda: expansion_text(data))
 

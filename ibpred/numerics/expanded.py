@@ -9,10 +9,15 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from fractions import Fraction
+
+import flint
 
 from ibpred.diffeq.system import DifferentialSystem, SparseMatrix
 from ibpred.errors import UnfinishedError
 from ibpred.exact.rational import Rational, Ring, ring
+from ibpred.numerics.frobenius.layers import Layers
+from ibpred.numerics.frobenius.system import Univariate, fmpq, rational_system, system_in
 
 
 @dataclass(frozen=True)
@@ -132,3 +137,29 @@ def _columns(value: Rational, polynomial: object, target: Ring) -> dict[int, Rat
         layers.setdefault(powers[place] - lowest, {})[rest] = int(coefficient)
     one = target.context.constant(1)
     return {order: Rational(target, target.polynomial(terms), one) for order, terms in layers.items()}
+
+
+def layers_on_line(
+    expanded: ExpandedSystem, start: Mapping[str, Fraction], end: Mapping[str, Fraction]
+) -> Layers:
+    """The system on the line ``start + x (end - start)``, order by order.
+
+    Raises
+    ------
+    PointError
+        If the whole line is singular.
+    """
+    size, depth = len(expanded.shifts), len(next(iter(expanded.matrices.values())))
+    images = {
+        name: flint.fmpq_poly([fmpq(start[name]), fmpq(end[name] - start[name])])
+        for name in expanded.variables
+    }
+    parts: list[list[tuple[int, int, Univariate, Univariate]]] = [[] for _ in range(depth)]
+    for name in expanded.variables:
+        speed = fmpq(end[name] - start[name])
+        if not speed:
+            continue
+        for order, layer in enumerate(expanded.matrices[name]):
+            for (i, j), (p, q) in system_in(size, layer, images).entries.items():
+                parts[order].append((i, j, p * speed, q))
+    return Layers(size, tuple(rational_system(size, entries) for entries in parts))

@@ -8,7 +8,7 @@ on the line. The continuation is rigorous; the errors of the values at the start
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from fractions import Fraction
 from itertools import pairwise
 
@@ -19,15 +19,12 @@ from ibpred.diffeq.system import DifferentialSystem
 from ibpred.errors import InputError, PrecisionError
 from ibpred.exact.rational import Rational
 from ibpred.numerics.crossings import around, crossings
-from ibpred.numerics.expanded import ExpandedSystem
+from ibpred.numerics.expanded import ExpandedSystem, layers_on_line
 from ibpred.numerics.frobenius.continuation import carried
+from ibpred.numerics.frobenius.layers import by_functions, whole_system
 from ibpred.numerics.frobenius.path import Path, Point, approximate
-from ibpred.numerics.frobenius.poles import PartialFractions, Pole, partial_fractions
-from ibpred.numerics.frobenius.system import RationalSystem, fmpq, rational_system, system_in
+from ibpred.numerics.frobenius.poles import PartialFractions, partial_fractions
 from ibpred.numerics.frobenius.tracks import BallMatrix, all_positions
-
-_GUARD_BITS = 64
-_MOST_FOLD = 12  # working bits over wanted bits
 
 _GUARD_BITS = 64
 _MOST_FOLD = 12  # working bits over wanted bits
@@ -87,51 +84,9 @@ def laurent_line(
     if depth == 0:
         raise InputError("a system in at least one invariant and one order is needed")
     passed = crossings(locus, start, end, turns)
-    fractions = _by_coordinates(partial_fractions(_whole_system(expanded, start, end, depth)))
+    fractions = by_functions(partial_fractions(whole_system(layers_on_line(expanded, start, end))))
     path = around(approximate(all_positions(fractions, 64)), passed)
     return LaurentLine(fractions, path, expanded.shifts, depth)
-
-
-def _by_coordinates(fractions: PartialFractions) -> PartialFractions:
-    """The same poles, each acting on single functions instead of combinations that span its row space.
-
-    In the system of several orders those combinations cancel against each other: measured, 20 digits an order
-    and step are lost with them, none in this form.
-    """
-    return replace(fractions, poles=tuple(_on_functions(pole) for pole in fractions.poles))
-
-
-def _on_functions(pole: Pole) -> Pole:
-    whole = [[part * pole.rows for part in parts] for parts in pole.columns]
-    tables = [matrix.table() for parts in whole for matrix in parts]
-    size = pole.rows.ncols()
-    used = [j for j in range(size) if any(row[j] != 0 for table in tables for row in table)]
-    rows = flint.fmpq_mat([[1 if j == c else 0 for j in range(size)] for c in used])
-    columns = tuple(
-        tuple(flint.fmpq_mat([[row[j] for j in used] for row in matrix.table()]) for matrix in parts)
-        for parts in whole
-    )
-    return Pole(pole.factor, rows, columns)
-
-
-def _whole_system(
-    expanded: ExpandedSystem, start: Mapping[str, Fraction], end: Mapping[str, Fraction], depth: int
-) -> RationalSystem:
-    size = len(expanded.shifts)
-    images = {
-        name: flint.fmpq_poly([fmpq(start[name]), fmpq(end[name] - start[name])])
-        for name in expanded.variables
-    }
-    parts = []
-    for name in expanded.variables:
-        speed = fmpq(end[name] - start[name])
-        if not speed:
-            continue
-        for order, layer in enumerate(expanded.matrices[name]):
-            for (i, j), (p, q) in system_in(size, layer, images).entries.items():
-                for k in range(order, depth):
-                    parts.append((k * size + i, (k - order) * size + j, p * speed, q))
-    return rational_system(size * depth, parts)
 
 
 def spread(expanded: ExpandedSystem) -> int:

@@ -8,10 +8,11 @@ from typing import Any
 
 from ibpred.balls.decimal import DecimalBall
 from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.report.text import integral_text
+from ibpred.numerics.value import Route
+from ibpred.report.text import accuracy_text, integral_text
 
 Data = dict[str, Any]
-Terms = Mapping[tuple[int, int], DecimalBall]
+Terms = Mapping[tuple[Fraction, int], DecimalBall]
 
 
 def expansion_data(
@@ -20,7 +21,7 @@ def expansion_data(
     distance: str,
     highest: int,
     digits: int,
-    expansions: Sequence[tuple[Powers, Mapping[int, Terms]]],
+    expansions: Sequence[tuple[Powers, Mapping[int, Terms], bool, Route]],
 ) -> Data:
     """What `evaluate --approach` prints.
 
@@ -33,7 +34,8 @@ def expansion_data(
     highest
         The highest power of h kept.
     expansions
-        Powers of the integral, and power of eps -> (power of h, power of log h) -> coefficient.
+        Powers of the integral, power of eps -> (power of h, power of log h) -> coefficient, whether the radii
+        are rigorous, and how the values were obtained. Powers of h that are no integers are written as text.
     """
     return {
         "family": family.name,
@@ -46,17 +48,21 @@ def expansion_data(
                 "powers": list(powers),
                 "epsilon": {
                     str(order): [
-                        {"power": a, "log": b, "re": ball.re, "im": ball.im, "radius": ball.radius}
+                        {"power": _power(a), "log": b, "re": ball.re, "im": ball.im, "radius": ball.radius}
                         for (a, b), ball in sorted(terms.items())
                     ]
                     for order, terms in sorted(epsilon.items())
                 },
-                "certified": True,
-                "route": "epsilon-form",
+                "certified": certified,
+                "route": route.value,
             }
-            for powers, epsilon in expansions
+            for powers, epsilon, certified, route in expansions
         ],
     }
+
+
+def _power(power: Fraction) -> int | str:
+    return int(power) if power.denominator == 1 else str(power)
 
 
 def expansion_text(data: Data) -> str:
@@ -64,10 +70,12 @@ def expansion_text(data: Data) -> str:
     fixed = ", ".join(f"{name} = {value}" for name, value in data["point"].items())
     lines = [f"{data['distance']}, h -> 0+" + (f", at {fixed}" if fixed else "")]
     for value in data["integrals"]:
-        lines += ["", f"{integral_text(data['family'], value['powers'])}   (rigorous balls)"]
+        label = integral_text(data["family"], value["powers"])
+        lines += ["", f"{label}   ({accuracy_text(value)})"]
         for order, terms in value["epsilon"].items():
             parts = [_term(term) for term in terms]
-            lines.append(f"  eps^{order}  " + (" + ".join(parts) or "0") + f" + O(h^{data['terms'] + 1})")
+            total = " + ".join(parts).replace("+ -", "- ") or "0"
+            lines.append(f"  eps^{order}  {total} + O(h^{data['terms'] + 1})")
     return "\n".join(lines)
 
 
@@ -75,7 +83,8 @@ def _term(term: Data) -> str:
     number = term["re"] if term["im"] == "0" else f"({term['re']} + {term['im']} i)"
     factors = [number]
     if term["power"]:
-        factors.append("h" if term["power"] == 1 else f"h^{term['power']}")
+        power = term["power"] if isinstance(term["power"], int) else f"({term['power']})"
+        factors.append("h" if power == 1 else f"h^{power}")
     if term["log"]:
         factors.append("log(h)" if term["log"] == 1 else f"log(h)^{term['log']}")
     return " ".join(factors)

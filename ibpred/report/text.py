@@ -220,13 +220,7 @@ def values_text(data: Data) -> str:
     point = ", ".join(f"{name} = {value}" for name, value in data["point"].items())
     lines = [f"at {point}" if point else "no invariants"]
     for value in data["integrals"]:
-        kind = "rigorous balls" if value["certified"] else "estimated errors"
-        if value.get("route"):
-            kind += (
-                f", from the {value['route']}"
-                if value["route"] == "epsilon-form"
-                else f", by {value['route']}"
-            )
+        kind = accuracy_text(value)
         reached = value.get("digits_reached")
         if reached is not None:
             kind += f", {reached} digits" + (
@@ -240,6 +234,14 @@ def values_text(data: Data) -> str:
         ]
         lines += columns(rows)
     return "\n".join(lines)
+
+
+def accuracy_text(value: Data) -> str:
+    """What the radii of a value mean, and how it was obtained."""
+    kind = "rigorous balls" if value["certified"] else "estimated errors"
+    if not value.get("route"):
+        return kind
+    return f"{kind}, {'from the' if value['route'] == 'epsilon-form' else 'by'} {value['route']}"
 
 
 def run_text(data: Data) -> str:

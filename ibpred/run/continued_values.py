@@ -42,11 +42,12 @@ Masters = tuple[Mapping[int, Ball], ...]
 
 
 @dataclass(frozen=True)
-class _Found:
-    """The masters at a point, and how they were obtained."""
+class Found:
+    """The masters at a point, how they were obtained, and whether their radii are rigorous."""
 
     masters: Masters
     route: Route
+    certified: bool = False
 
 
 def continued_values(
@@ -86,7 +87,7 @@ def _at_point(
     results: list[dict[int, Ball]] = []
     for round_ in range(_ROUNDS):
         bits = 2 * bits_for(asked) + _SPARE_BITS
-        found = _masters_at(chain, point, needed, asked, bits)
+        found = masters_at(chain, point, needed, asked, bits)
         results = [_combined(total, found.masters, order, bits) for total in sums]
         missing = [ball for result in results for ball in result.values() if not is_accurate(ball, digits)]
         if not missing or round_ == _ROUNDS - 1:
@@ -97,7 +98,7 @@ def _at_point(
         Value(
             tuple(powers),
             {k: decimal_ball(ball, digits + 2) for k, ball in result.items()},
-            certified=found.route is Route.EPSILON_FORM,
+            certified=found.certified,
             route=found.route,
         )
         for powers, result in zip(names, results, strict=True)
@@ -161,15 +162,15 @@ def _combined(total: Mapping[int, Rational], masters: Masters, order: int, bits:
     return kept
 
 
-def _masters_at(chain: Chain, point: Point, highest: int, digits: int, bits: int) -> _Found:
+def masters_at(chain: Chain, point: Point, highest: int, digits: int, bits: int) -> Found:
     """The masters through ``eps^highest``, by continuation where a way leads from a known point."""
     for known in known_points(chain):
         if dict(known.point) == dict(point) and known.order >= highest and known.digits >= digits:
-            return _Found(_balls(known, highest, bits), Route.AUXILIARY_MASS)
+            return Found(_balls(known, highest, bits), Route.AUXILIARY_MASS)
     signs = euclidean_signs(chain.definition)
     system = chain.derivation().system
     if not system.variables:
-        return _Found(_balls(new_point(chain, point, highest, digits), highest, bits), Route.AUXILIARY_MASS)
+        return Found(_balls(new_point(chain, point, highest, digits), highest, bits), Route.AUXILIARY_MASS)
     reduced = expanded_system(system, 0)
     top = highest + spread(reduced)
     lifted = _lifted(chain, point, highest, top, digits, signs, bits)
@@ -177,16 +178,16 @@ def _masters_at(chain: Chain, point: Point, highest: int, digits: int, bits: int
         return lifted
     usable = [k for k in known_points(chain) if k.order >= top and k.digits >= digits + _SPARE_DIGITS]
     for known in _by_way(chain, usable, point, signs):
-        return _Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
+        return Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
     if signs is None:
         found = new_point(chain, point, top, digits + _SPARE_DIGITS)
-        return _Found(_balls(found, highest, bits), Route.AUXILIARY_MASS)
+        return Found(_balls(found, highest, bits), Route.AUXILIARY_MASS)
     base = euclidean_point(chain.definition, signs)
     if dict(base) == dict(point) or not list(_by_way(chain, [_empty(base)], point, signs)):
         found = new_point(chain, point, top, digits + _SPARE_DIGITS)
-        return _Found(_balls(found, highest, bits), Route.AUXILIARY_MASS)
+        return Found(_balls(found, highest, bits), Route.AUXILIARY_MASS)
     known = new_point(chain, base, top, digits + _SPARE_DIGITS)
-    return _Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
+    return Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
 
 
 def _lifted(
@@ -197,7 +198,7 @@ def _lifted(
     digits: int,
     signs: Mapping[str, int] | None,
     bits: int,
-) -> _Found | None:
+) -> Found | None:
     """The masters from a solved epsilon-form in variables other than the ratios: rigorous."""
     if chain.in_ratios():
         return None
@@ -208,10 +209,10 @@ def _lifted(
     except UnfinishedError:
         return None
     if dict(known.point) == dict(point):
-        return _Found(_balls(known, highest, bits), Route.EPSILON_FORM)
+        return Found(_balls(known, highest, bits), Route.EPSILON_FORM, True)
     if not list(_by_way(chain, [known], point, signs)):
         return None
-    return _Found(_carried(chain, known, point, highest, signs, bits), Route.EPSILON_FORM)
+    return Found(_carried(chain, known, point, highest, signs, bits), Route.EPSILON_FORM, True)
 
 
 def _empty(point: Point) -> KnownPoint:

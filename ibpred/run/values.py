@@ -12,6 +12,7 @@ from ibpred.numerics.value import Value
 from ibpred.reduction.wanted import check_powers
 from ibpred.run.continued_values import continued_values
 from ibpred.run.form_values import form_values
+from ibpred.run.limits import is_singular, limit_values
 
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
@@ -35,7 +36,8 @@ def evaluate_points(
 
     The first of these routes that is open is taken, and every value says which one it was: the epsilon-form
     solved with exact constants (rigorous balls); continuation by the differential system from a point where
-    the masters are known; the auxiliary mass at the point itself (both with estimated errors).
+    the masters are known; the auxiliary mass at the point itself (both with estimated errors). At points on
+    singularities the values are the limits of the expansions there.
 
     Parameters
     ----------
@@ -57,12 +59,24 @@ def evaluate_points(
     Raises
     ------
     PointError
-        If a point is incomplete or singular.
+        If a point is incomplete, or an integral has no limit at a singular one.
     UnfinishedError
         If no route is open, or the digits cannot be reached.
     """
     for powers in wanted:
         check_powers(chain.definition, powers)
+    singular = [is_singular(chain, point) for point in points]
+    regular = [point for point, on in zip(points, singular, strict=True) if not on]
+    found = iter(_regular_values(chain, regular, wanted, order, digits) if regular else ())
+    return tuple(
+        limit_values(chain, point, wanted, order, digits) if on else next(found)
+        for point, on in zip(points, singular, strict=True)
+    )
+
+
+def _regular_values(
+    chain: Chain, points: Sequence[Mapping[str, Fraction]], wanted: Sequence[Powers], order: int, digits: int
+) -> tuple[tuple[Value, ...], ...]:
     try:
         return form_values(chain, points, wanted, order, digits)
     except PrecisionError:

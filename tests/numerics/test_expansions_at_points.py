@@ -13,7 +13,7 @@ from mpmath import mp, mpc, mpf
 from ibpred.errors import PointError
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.rational import ring
-from ibpred.numerics.approach import entry_terms
+from ibpred.numerics.distance import entry_terms
 from ibpred.progress import SILENT
 from ibpred.run.chain import Chain
 from ibpred.run.expansions import Approach, expand
@@ -44,8 +44,8 @@ def test_leading_logarithms_of_the_massless_box(folder):
         -1: {(-1, 1)},
         0: {(-1, 0)},
     }
-    assert box.epsilon[-2][-1, 0].re == "4"
-    assert box.epsilon[-1][-1, 1].re == "-2"
+    assert float(box.epsilon[-2][-1, 0].re) == pytest.approx(4, rel=1e-15)
+    assert float(box.epsilon[-1][-1, 1].re) == pytest.approx(-2, rel=1e-15)
     assert float(box.epsilon[0][-1, 0].re) == pytest.approx(-4 * math.pi**2 / 3, rel=1e-15)
 
 
@@ -56,6 +56,9 @@ def test_leading_logarithms_of_the_massless_box(folder):
         ("massless-box", {"s": 2}, ("t", -2, 1)),
         ("massless-box", {"s": 2}, ("t", -2, -1)),
         ("massless-box", {"s": -3}, ("t", F(5, 7), 1)),
+        ("massless-box", {"t": F(-2, 3)}, ("s", 0, 1)),
+        ("bubble-one-mass", {"m2": 2}, ("s", 2, 1)),
+        ("bubble-one-mass", {"s": -1}, ("m2", 0, 1)),
         ("box-one-leg", {"s": 2, "p4sq": F(1, 3)}, ("t", 0, 1)),
         ("box-one-leg", {"s": 2, "t": F(-1, 3)}, ("p4sq", 0, 1)),
         ("box-one-leg", {"s": 2, "t": F(-1, 3)}, ("p4sq", 2, -1)),
@@ -78,11 +81,32 @@ def test_expansions_sum_to_values(name, fixed, approach, folder):
                 assert abs(total - mpc(ball.re, ball.im)) < 1e-19
 
 
+@pytest.mark.parametrize("side", [1, -1])
+def test_square_roots_of_the_distance(side, folder):
+    name, highest, h = "bubble-two-masses", 7, F(1, 1000)
+    with Store(folder / name) as store, mp.workdps(40):
+        chain = chain_of(name, store)
+        expansion = expand(chain, {"m2": F(1)}, Approach("s", F(4), side), ((1, 1),), 1, highest, 30)[0]
+        value = chain.evaluate({"s": 4 + side * h, "m2": F(1)}, ((1, 1),), 1, 30)[0]
+        x = mpf(h.numerator) / h.denominator
+        for order, ball in value.epsilon.items():
+            total = sum(
+                mpc(c.re, c.im) * x ** (mpf(a.numerator) / a.denominator) * mplog(x) ** b
+                for (a, b), c in expansion.epsilon[order].items()
+            )
+            assert abs(total - mpc(ball.re, ball.im)) < 1e-21
+        # eps^0 at s = 4 - h: 2 - 2 sqrt((4-s)/s) atan(sqrt(s/(4-s))) = 2 - pi/2 sqrt(h) + ...
+        # and above sqrt(-h - i0)
+        root = expansion.epsilon[0][F(1, 2), 0]
+        expected = -mp.pi / 2 * (1 if side < 0 else mpc(0, -1))
+        assert abs(mpc(root.re, root.im) - expected) < 1e-25
+
+
 def test_what_cannot_be_approached(folder):
     with Store(folder / "massless-box") as store:
         chain = chain_of("massless-box", store)
         with pytest.raises(PointError, match="cannot be approached"):
-            expand(chain, {"t": F(1)}, Approach("s", F(0), 1), (), 0, 2, 10)
+            expand(chain, {"t": F(1)}, Approach("u", F(0), 1), (), 0, 2, 10)
         with pytest.raises(PointError, match="given twice"):
             expand(chain, {"s": F(1), "t": F(1)}, Approach("t", F(0), 1), (), 0, 2, 10)
         with pytest.raises(PointError, match="lacks a value for s"):

@@ -9,6 +9,7 @@ as the multiplicity. So resonances and Jordan blocks need no case distinctions.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
@@ -37,6 +38,9 @@ class SingularPoint:
         The system after the gauge (in the old basis).
     fractions
         Its partial fractions.
+    layers
+        Number of equal blocks: more than one for a system of several orders together
+        (`ibpred.numerics.frobenius.layers`).
     """
 
     size: int
@@ -45,6 +49,7 @@ class SingularPoint:
     spectrum: Spectrum
     system: RationalSystem
     fractions: PartialFractions
+    layers: int = 1
 
 
 @dataclass(frozen=True)
@@ -149,18 +154,35 @@ def formal_class(point: SingularPoint, residue_class: Fraction, count: int) -> F
         Number of terms wanted; at least those up to the last resonance are computed.
     """
     exponents = point.spectrum.exponents
+    own = [i for i, e in enumerate(exponents) if fractional_part(e) == residue_class]
+    return formal_solutions(point, residue_class, own, count)
+
+
+def formal_solutions(
+    point: SingularPoint, residue_class: Fraction, starts: Sequence[int], count: int
+) -> FormalClass:
+    """Those solutions of one class that start from given vectors of the spectral basis.
+
+    Parameters
+    ----------
+    point, residue_class, count
+        As in `formal_class`.
+    starts
+        Numbers of basis vectors whose exponents are in the class: one solution each.
+    """
+    exponents = point.spectrum.exponents
     base, last = resonance(point, residue_class)
     count = max(count, last + 1)
     steps = [e - base for e in exponents]
-    own = [i for i, e in enumerate(exponents) if fractional_part(e) == residue_class]
+    own = {i for i, e in enumerate(exponents) if fractional_part(e) == residue_class}
     matrices = taylor_matrices(point, count - 1)
     nilpotent = point.spectrum.nilpotent
     terms: list[list[ExactMatrix]] = []
     for n in range(count):
         sources = _sources(matrices, terms, n)
         resonant = {i for i in own if steps[i] == n}
-        start = {column: i for column, i in enumerate(own) if i in resonant}
-        terms.append(_solved(point.size, len(own), n, steps, nilpotent, sources, resonant, start))
+        start = {column: i for column, i in enumerate(starts) if i in resonant}
+        terms.append(_solved(point.size, len(starts), n, steps, nilpotent, sources, resonant, start))
     return FormalClass(base, tuple(tuple(levels) for levels in terms))
 
 

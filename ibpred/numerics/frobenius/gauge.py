@@ -6,6 +6,8 @@ With ``f_i = x^m_i g_i`` the entry A_ij becomes ``x^(m_j - m_i) A_ij``; simple p
 
 from __future__ import annotations
 
+from collections.abc import Mapping
+
 import flint
 
 from ibpred.errors import UnfinishedError
@@ -30,10 +32,15 @@ def simple_pole_gauge(system: RationalSystem, place: str) -> Gauge:
     UnfinishedError
         If no diagonal gauge does it: the point may be irregular.
     """
-    bounds = [(i, j, entry_valuation(e) + 1) for (i, j), e in system.entries.items() if i != j]
-    stubborn = [i for (i, j), e in system.entries.items() if i == j and entry_valuation(e) < -1]
-    powers = [0] * system.size
-    for _ in range(system.size + 1):
+    return pole_gauge(system.size, {at: entry_valuation(e) for at, e in system.entries.items()}, place)
+
+
+def pole_gauge(size: int, valuations: Mapping[tuple[int, int], int], place: str) -> Gauge:
+    """As `simple_pole_gauge`, from the orders of vanishing of the entries at zero."""
+    bounds = [(i, j, value + 1) for (i, j), value in valuations.items() if i != j]
+    stubborn = [i for (i, j), value in valuations.items() if i == j and value < -1]
+    powers = [0] * size
+    for _ in range(size + 1):
         changed = False
         for i, j, bound in bounds:
             if powers[i] > powers[j] + bound:
@@ -54,14 +61,7 @@ def simple_pole_gauge(system: RationalSystem, place: str) -> Gauge:
 
 def gauged(system: RationalSystem, gauge: Gauge) -> RationalSystem:
     """The system of g with ``f_i = x^gauge[i] g_i``."""
-    found: dict[tuple[int, int], Entry] = {}
-    for (i, j), (p, q) in system.entries.items():
-        shift = gauge[j] - gauge[i]
-        if shift > 0:
-            p = p.left_shift(shift)
-        elif shift < 0:
-            q = q.left_shift(-shift)
-        found[i, j] = reduced_entry(p, q)
+    found = dict(conjugated(system, gauge).entries)
     x = flint.fmpq_poly([0, 1])
     for i, power in enumerate(gauge):
         if not power:
@@ -70,4 +70,17 @@ def gauged(system: RationalSystem, gauge: Gauge) -> RationalSystem:
         top = p * x - q * fmpq(power)
         if not top.is_zero():
             found[i, i] = reduced_entry(top, q * x)
+    return RationalSystem(system.size, found)
+
+
+def conjugated(system: RationalSystem, gauge: Gauge) -> RationalSystem:
+    """The entries ``x^(gauge[j] - gauge[i]) A_ij`` alone, without what the derivative of the gauge adds."""
+    found: dict[tuple[int, int], Entry] = {}
+    for (i, j), (p, q) in system.entries.items():
+        shift = gauge[j] - gauge[i]
+        if shift > 0:
+            p = p.left_shift(shift)
+        elif shift < 0:
+            q = q.left_shift(-shift)
+        found[i, j] = reduced_entry(p, q)
     return RationalSystem(system.size, found)

@@ -25,6 +25,7 @@ from ibpred.numerics.frobenius.spectrum import ExactMatrix
 from ibpred.numerics.frobenius.system import fmpq
 from ibpred.numerics.frobenius.tracks import (
     BallMatrix,
+    Tracks,
     all_positions,
     recurrence,
     tracks_around,
@@ -179,54 +180,134 @@ def frobenius_values(
     PrecisionError
         If the series cannot be bounded: point too far, or precision too low.
     """
-    point, formal = local.point, local.formal
-    base = formal.exponent
-    basis = point.spectrum.basis
-    depth = max(len(levels) for levels in formal.terms)
+    point = local.point
     with precision(bits):
         scale = _scale_at_zero(point, x, bits)
         tracks = tracks_around(point.fractions, flint.acb(0), scale, bits)
         t = x / scale
         size = flint.arb(t.abs_upper())
-        residue = flint.acb_mat(_lowered(point.residue, base))
-        start = [
-            _as_balls([basis * level for level in levels], depth, scale**n, combination)
-            for n, levels in enumerate(formal.terms)
-        ]
-    width = start[0].ncols() // depth
-    terms = max(_expected_terms(size, bits), len(start))
-    bounds = majorant(tracks, terms, residue)
-    tail = Tail(bounds, operator_norm(residue, bounds) + 1)
+        run = _Coefficients(local, tracks, combination, bits)
+    terms = max(_expected_terms(size, bits), len(run.start))
+    bounds = majorant(tracks, terms, run.residue)
+    tail = Tail(bounds, operator_norm(run.residue, bounds) + 1)
     with precision(bits):
-        rec = recurrence(tracks, bits)
-        identity = flint.acb_mat(flint.fmpq_mat(_identity(point.size)))
-        current = start[0]
-        total, power = current, flint.acb(1)
-        history = [current]
-        sums = rec.start(current.ncols())
-        tail.add(_level_norm(bounds, current, width))
-        n = 0
+        total, power = run.current, flint.acb(1)
+        tail.add(_level_norm(bounds, run.current, run.width))
         while True:
-            sums = rec.advanced(sums, current)
-            n += 1
-            if n < len(start):
-                current = start[n]
-            else:
-                right = rec.drained(sums, point.size, current.ncols())
-                for matrix, before in zip(tracks.polynomial, reversed(history), strict=False):
-                    right = right + matrix * before
-                resolvent = (identity * n - residue).inv()
-                current = _by_levels(resolvent, right, depth, width)
+            run.advance()
             power = power * t
-            total = total + current * power
-            if tracks.polynomial:
-                history = [*history, current][-len(tracks.polynomial) :]
-            tail.add(_level_norm(bounds, current, width))
+            total = total + run.current * power
+            tail.add(_level_norm(bounds, run.current, run.width))
+            n = run.number
             if n >= terms and n % _CHECK == 0:
                 rest = tail.remainder(n, size)
                 if rest is not None and _is_negligible(rest, total, bounds, bits):
-                    return _assembled(local, total, rest, bounds, x, log, depth, width, bits)
+                    return _assembled(local, total, rest, bounds, x, log, run.depth, run.width, bits)
                 _give_up(n, terms, size, bits)
+
+
+def frobenius_coefficients(
+    local: Local, count: int, combination: BallMatrix | None, bits: int
+) -> list[list[BallMatrix]]:
+    """Coefficients of Frobenius solutions.
+
+    Parameters
+    ----------
+    local, combination, bits
+        As in `frobenius_values`.
+    count
+        How many powers of the local variable.
+
+    Returns
+    -------
+    list
+        ``found[n][k]`` is in front of ``x^(exponent + n + gauge[i]) log(x)^k/k!`` in function i, one solution
+        or combination a column.
+    """
+    with precision(bits):
+        scale = _scale_at_zero(local.point, flint.acb(1), bits)
+        tracks = tracks_around(local.point.fractions, flint.acb(0), scale, bits)
+        run = _Coefficients(local, tracks, combination, bits)
+        found = []
+        for n in range(count):
+            if n:
+                run.advance()
+            unscaled = run.current / scale**n
+            found.append([_columns(unscaled, k * run.width, run.width) for k in range(run.depth)])
+        return found
+
+
+class _Coefficients:
+    """The coefficients one after the other, the levels of the logarithm side by side.
+
+    Attributes
+    ----------
+    start
+        Those known exactly, past the last resonance.
+    current, number
+        The latest one, and its number.
+    residue
+        The residue less the exponent.
+    depth, width
+        Number of levels, and of columns in each.
+    """
+
+    def __init__(self, local: Local, tracks: Tracks, combination: BallMatrix | None, bits: int) -> None:
+        self._point, formal = local.point, local.formal
+        basis = self._point.spectrum.basis
+        self.depth = max(len(levels) for levels in formal.terms)
+        self.residue = flint.acb_mat(_lowered(self._point.residue, formal.exponent))
+        self.start = [
+            _as_balls([basis * level for level in levels], self.depth, tracks.scale**n, combination)
+            for n, levels in enumerate(formal.terms)
+        ]
+        self.current, self.number = self.start[0], 0
+        self.width = self.current.ncols() // self.depth
+        self._polynomial = tracks.polynomial
+        self._history = [self.current]
+        self._recurrence = recurrence(tracks, bits)
+        self._sums = self._recurrence.start(self.current.ncols())
+
+    def advance(self) -> None:
+        """Go to the next coefficient, at the precision that is set."""
+        self._sums = self._recurrence.advanced(self._sums, self.current)
+        self.number += 1
+        if self.number < len(self.start):
+            self.current = self.start[self.number]
+        else:
+            right = self._recurrence.drained(self._sums, self._point.size, self.current.ncols())
+            for matrix, before in zip(self._polynomial, reversed(self._history), strict=False):
+                right = right + matrix * before
+            resolvent = _resolvent(self.residue, self.number, self._point.layers)
+            self.current = _by_levels(resolvent, right, self.depth, self.width)
+        if self._polynomial:
+            self._history = [*self._history, self.current][-len(self._polynomial) :]
+
+
+def _resolvent(residue: BallMatrix, n: int, layers: int) -> BallMatrix:
+    """``(n - residue)^-1``; of equal blocks below the diagonal the first column says all."""
+    size = residue.nrows() // layers
+    table = residue.table()
+    identity = flint.acb_mat(flint.fmpq_mat(_identity(size)))
+    parts = [flint.acb_mat([row[:size] for row in table[k * size : (k + 1) * size]]) for k in range(layers)]
+    first = (identity * n - parts[0]).inv()
+    found = [first]
+    for k in range(1, layers):
+        total = parts[1] * found[k - 1]
+        for j in range(2, k + 1):
+            total = total + parts[j] * found[k - j]
+        found.append(first * total)
+    if layers == 1:
+        return first
+    tables = [part.table() for part in found]
+    zero = [flint.acb(0)] * size
+    return flint.acb_mat(
+        [
+            [value for j in range(k + 1) for value in tables[k - j][i]] + zero * (layers - k - 1)
+            for k in range(layers)
+            for i in range(size)
+        ]
+    )
 
 
 def _lowered(residue: ExactMatrix, base: Fraction) -> ExactMatrix:

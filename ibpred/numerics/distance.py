@@ -1,79 +1,20 @@
-"""Expansions at a singular point: powers and logarithms of the distance, order by order in eps.
-
-At distance h > 0 from the point along one invariant, ``f^(k) = sum_mj u_mj h^m log(h)^j/j!`` for the
-canonical functions, and the transformation to the integrals is a Laurent series in h and eps.
-"""
+"""Coefficients of reductions near a point: Laurent series in eps, then in the distance h."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
 from fractions import Fraction
-from math import factorial
 
 import flint
 
 from ibpred.balls.context import Ball, complex_ball, precision
 from ibpred.errors import UnfinishedError
 from ibpred.exact.rational import Polynomial, Rational, ring
-from ibpred.numerics.canonical import CanonicalSystem, Orders
-from ibpred.numerics.centre import Place, centre_at
-from ibpred.numerics.series import Level, constants_at, local_levels
+from ibpred.iterated.series import eps_valuation
+from ibpred.numerics.local_laurent import Terms
 
 DISTANCE = ring(("eps", "h"))
 """Q(eps, h)."""
-
-Terms = Mapping[tuple[int, int], Ball]
-"""(power of h, power of log h) -> coefficient."""
-
-
-@dataclass(frozen=True)
-class LocalFunctions:
-    """Canonical functions near the point: for each order in eps the coefficients of ``log(h)^j/j!``.
-
-    Attributes
-    ----------
-    levels
-        ``levels[k][j][i]``: coefficients of h^0, h^1, ... of function i; None for zero.
-    terms
-        How many coefficients are kept.
-    """
-
-    levels: tuple[Level, ...]
-    terms: int
-
-
-def nearest_other(system: CanonicalSystem) -> Fraction:
-    """A rational lower bound of the distance from h = 0 to the nearest other singular point (1 if none)."""
-    found = [root.abs_lower() for letter in system.letters if letter.root() != 0 for root in letter.roots(64)]
-    if not found:
-        return Fraction(1)
-    return Fraction(min(float(size) for size in found)).limit_denominator(2**20)
-
-
-def local_functions(
-    system: CanonicalSystem, values: Orders, h: Fraction, terms: int, bits: int
-) -> LocalFunctions:
-    """The functions near h = 0 from their values at a distance.
-
-    Parameters
-    ----------
-    system
-        The system in h.
-    values
-        Its functions at the distance h > 0, well inside the disc of convergence.
-    terms
-        How many powers of h are kept.
-    bits
-        Working precision.
-    """
-    vanishing = next((i for i, letter in enumerate(system.letters) if letter.root() == 0), None)
-    centre = centre_at(system, flint.acb(0), vanishing, bits)
-    with precision(bits):
-        ball = complex_ball(h, 0, bits)
-        place = Place(ball, ball.log())
-    constants = constants_at(centre, place, values, bits)
-    return LocalFunctions(local_levels(centre, constants, terms, bits), terms)
 
 
 def entry_terms(entry: Rational, eps_order: int, h_order: int) -> dict[tuple[int, int], Fraction]:
@@ -159,21 +100,20 @@ def check_separated(entries: Sequence[Rational]) -> None:
 
 
 def integral_terms(
-    entries: Sequence[Rational],
-    functions: LocalFunctions,
-    start: int,
+    entries: Mapping[int, Rational],
+    masters: Sequence[Mapping[int, Terms]],
     order: int,
     highest: int,
     bits: int,
-) -> dict[int, dict[tuple[int, int], Ball]]:
-    """Expansion of ``sum_j entries[j] f_j``.
+) -> dict[int, dict[tuple[Fraction, int], Ball]]:
+    """Expansion of a combination of the masters.
 
     Parameters
     ----------
     entries
-        In Q(eps, h).
-    functions, start
-        The functions, from eps^start on.
+        Number of the master -> coefficient in Q(eps, h).
+    masters
+        Their expansions (see `ibpred.numerics.local_laurent.master_terms`), far enough.
     order, highest
         Highest powers of eps and of h.
     bits
@@ -183,27 +123,29 @@ def integral_terms(
     -------
     Power of eps -> (power of h, power of log h) -> coefficient.
     """
-    found: dict[int, dict[tuple[int, int], Ball]] = {}
+    found: dict[int, dict[tuple[Fraction, int], Ball]] = {}
     with precision(bits):
-        for column, entry in enumerate(entries):
-            if not entry:
+        for index, entry in entries.items():
+            expansion = masters[index]
+            if not entry or not expansion:
                 continue
-            for (a, b), factor in entry_terms(entry, order - start, highest).items():
+            least = min((power for terms in expansion.values() for power, _ in terms), default=Fraction(0))
+            reach = int(highest - least // 1)
+            for (a, b), factor in entry_terms(entry, order - min(expansion), reach).items():
                 ball = complex_ball(factor, 0, bits)
-                for k, level in enumerate(functions.levels):
-                    power = a + start + k
-                    if power > order:
-                        break
-                    for j, part in enumerate(level):
-                        series = part[column]
-                        if series is None:
-                            continue
-                        weight = ball / factorial(j)
-                        for m, value in enumerate(series):
-                            if b + m > highest:
-                                break
-                            if value.is_zero():
-                                continue
-                            terms = found.setdefault(power, {})
-                            terms[b + m, j] = terms.get((b + m, j), flint.acb(0)) + weight * value
+                for k, terms in expansion.items():
+                    if a + k > order:
+                        continue
+                    target = found.setdefault(a + k, {})
+                    for (power, log), value in terms.items():
+                        if power + b <= highest:
+                            key = (power + b, log)
+                            target[key] = target.get(key, flint.acb(0)) + ball * value
     return found
+
+
+def needed_orders(entries: Sequence[Mapping[int, Rational]], order: int) -> int:
+    """The highest power of eps of the masters that combinations need through ``eps^order``."""
+    return max(
+        (order - eps_valuation(entry) for row in entries for entry in row.values() if entry), default=order
+    )
