@@ -104,7 +104,6 @@ def test_nothing_to_reduce(ibpred: Run) -> None:
         ("s=-1,t=-1,t=-2", "twice"),
         ("s=-1,t=x", "unknown symbol 'x'"),
         ("s=-1,t=0", "singular"),
-        ("s=1,t=-1", "singularity"),
     ],
 )
 def test_point(ibpred: Run, at: str, part: str) -> None:
