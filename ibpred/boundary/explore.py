@@ -19,7 +19,7 @@ from ibpred.boundary.regions import ParametricFamily
 from ibpred.boundary.sources import Master
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import NAMES
+from ibpred.iterated.generators import NAMES
 from ibpred.iterated.matrices import MatrixSeries, identity
 from ibpred.iterated.transport import INFINITY, Infinity, Point, connection
 from ibpred.iterated.zeta import LONGEST_ALTERNATING, LONGEST_PLAIN

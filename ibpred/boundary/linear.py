@@ -16,10 +16,10 @@ import flint
 
 from ibpred.boundary.conditions import Condition
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import (
+from ibpred.iterated.constants import Constant
+from ibpred.iterated.generators import (
     GENERATORS,
     NAMES,
-    Constant,
     Monomial,
     monomial_weight,
     monomials_of_weight,

@@ -16,7 +16,8 @@ import flint
 
 from ibpred.balls.context import Ball, RealBall, precision
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import NAMES, ZERO, Constant, Monomial, monomials_of_weight
+from ibpred.iterated.constants import ZERO, Constant
+from ibpred.iterated.generators import Monomial, is_odd, monomials_of_weight
 from ibpred.iterated.series import Series
 
 _BITS_PER_DIGIT = 3.3219280948873626
@@ -26,6 +27,9 @@ SINGLE_SCALE = ("pi", "zeta3", "zeta5", "zeta7", "zeta53", "zeta9")
 
 ALTERNATING = ("log2", "li4half", "li5half", *SINGLE_SCALE)
 """Those of alternating sums as well, complete to weight 5."""
+
+SIXTH_ROOTS = ("sqrt3", "log3", "clausen2", "logsine3", "clausen4", "logsine4", *SINGLE_SCALE)
+"""Those of sixth roots of unity that equal masses bring (Broadhurst, hep-th/9803091), to weight 4."""
 
 
 @dataclass(frozen=True)
@@ -48,22 +52,22 @@ class Fit:
     odds: int
 
 
-def basis_of_weights(
-    weights: Sequence[int], generators: Sequence[str], step_of_pi: int
-) -> tuple[Monomial, ...]:
-    """All monomials of some weights in some generators.
+def basis_of_weights(weights: Sequence[int], generators: Sequence[str], odd: bool) -> tuple[Monomial, ...]:
+    """All real monomials of some weights in some generators.
 
     Parameters
     ----------
     weights
         The weights.
     generators
-        Names of generators.
-    step_of_pi
-        2 if only even powers of pi are wanted, as in real multiple zeta values, else 1.
+        Names of generators besides I.
+    odd
+        False for those of real parts of iterated integrals (pi in even powers, ``sqrt3*pi``, ...), True for
+        those of imaginary parts.
     """
-    steps = {name: step_of_pi if name == "pi" else 1 for name in generators}
-    return tuple(dict.fromkeys(m for weight in weights for m in monomials_of_weight(weight, steps)))
+    steps = dict.fromkeys(generators, 1)
+    monomials = (m for weight in weights for m in monomials_of_weight(weight, steps))
+    return tuple(dict.fromkeys(m for m in monomials if is_odd(m) == odd))
 
 
 def recognise(value: Ball, weights: Sequence[int], generators: Sequence[str], odds: int) -> Fit | None:
@@ -72,9 +76,8 @@ def recognise(value: Ball, weights: Sequence[int], generators: Sequence[str], od
     Parameters
     ----------
     value
-        A complex ball. Its real part is fitted with even powers of pi, its imaginary part with odd ones,
-        as iterated integrals on a half turn give them; an imaginary part that is exactly zero is left
-        alone.
+        A complex ball. Its real part is fitted with even powers of pi and their like, its imaginary part
+        with odd ones; an imaginary part that is exactly zero is left alone.
     weights
         Weights allowed; a single one for a pure function.
     generators
@@ -91,7 +94,7 @@ def recognise(value: Ball, weights: Sequence[int], generators: Sequence[str], od
     for part, imaginary in ((value.real, False), (value.imag, True)):
         if imaginary and part.is_zero():
             continue
-        basis = _basis(weights, generators, imaginary)
+        basis = basis_of_weights(weights, generators, imaginary)
         fitted = _fit(part, basis, odds)
         if fitted is None:
             return None
@@ -100,15 +103,6 @@ def recognise(value: Ball, weights: Sequence[int], generators: Sequence[str], od
         digits.append(known)
         worst.append(chance)
     return Fit(total, min(digits), max(worst))
-
-
-def _basis(weights: Sequence[int], generators: Sequence[str], imaginary: bool) -> tuple[Monomial, ...]:
-    even = tuple(weights)
-    if not imaginary:
-        return basis_of_weights(even, generators, 2)
-    place = NAMES.index("pi")
-    lower = basis_of_weights([w - 1 for w in even if w >= 1], generators, 2)
-    return tuple((*m[:place], m[place] + 1, *m[place + 1 :]) for m in lower)
 
 
 def _fit(number: RealBall, basis: Sequence[Monomial], odds: int) -> tuple[Constant, int, int] | None:
@@ -167,7 +161,7 @@ def _odds(relation: Sequence[int], values: Sequence[float], digits: int) -> int:
 
 
 def recognise_series(
-    values: Mapping[int, Ball], loops: int, generators: Sequence[str], odds: int
+    values: Mapping[int, Ball], loops: int, alphabets: Sequence[Sequence[str]], odds: int
 ) -> tuple[Series, tuple[Fit, ...]]:
     """Fit the Laurent coefficients of one integral without a scale that varies.
 
@@ -177,7 +171,9 @@ def recognise_series(
         Power of eps -> value, all powers between the lowest and the highest; powers below vanish.
     loops
         L: the weight at eps^k is at most 2 L + k (in four dimensions).
-    generators, odds
+    alphabets
+        Sets of generators, tried in turn.
+    odds
         As for `recognise`.
 
     Returns
@@ -193,15 +189,15 @@ def recognise_series(
     fits = []
     for order in range(min(values), max(values) + 1):
         highest = 2 * loops + order
-        weights = tuple(range(highest, -1, -1))
-        # uniform weight first: fewer constants need fewer digits
-        fit = recognise(values[order], weights[:1], generators, odds)
+        # few constants first: they need fewer digits
+        choices = [(highest,), *(tuple(range(top, -1, -1)) for top in range(highest + 1))]
+        trials = ((chosen, names) for chosen in choices for names in alphabets)
+        fit = next((f for w, g in trials if (f := recognise(values[order], w, g, odds)) is not None), None)
         if fit is None:
-            fit = recognise(values[order], weights, generators, odds)
-        if fit is None:
+            listed = ", ".join(dict.fromkeys(name for names in alphabets for name in names))
             raise BoundaryError(
                 f"the value {values[order].str(12)} at eps^{order} is no combination of the constants "
-                f"{', '.join(generators)} up to weight {highest} that chance would not give as well; "
+                f"{listed} up to weight {highest} that chance would not give as well; "
                 "more digits may help"
             )
         fits.append(fit)

@@ -1,14 +1,13 @@
-"""Exact constants: polynomials over Q in I, pi, logarithms of small primes and (multiple) zeta values.
+"""Exact constants: polynomials over Q in square roots, pi, logarithms, zeta values and their like.
 
-The generators other than I are conjectured to be algebraically independent over Q (apart from nothing
-they share); equality here is equality of polynomials, which is equality of numbers in every case that can
-be proved and, under that standard conjecture, in all.
+The square roots I and sqrt3 are algebraic. The other generators are conjectured to be algebraically
+independent over Q; equality here is equality of polynomials, which is equality of numbers in every case that
+can be proved and, under that standard conjecture, in all.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Iterator, Mapping
-from dataclasses import dataclass
+from collections.abc import Iterable, Iterator, Mapping
 from fractions import Fraction
 from typing import Any, Union
 
@@ -16,77 +15,23 @@ import flint
 
 from ibpred.balls.context import Ball, precision
 from ibpred.exact.grammar import parse
-from ibpred.iterated.halves import multiple_zeta_ball, nested_sum_at_half
-
-Monomial = tuple[int, ...]
-"""Exponents of the generators, in the order of `GENERATORS`."""
+from ibpred.iterated.generators import (
+    GENERATORS,
+    NAMES,
+    SQUARES,
+    UNIT_MONOMIAL,
+    Monomial,
+    monomial_weight,
+    multiply_monomials,
+)
 
 Number = Union["Constant", int, Fraction]
 
-
-@dataclass(frozen=True)
-class Generator:
-    """One transcendental constant (or I): its name, weight, LaTeX and a ball at given bits."""
-
-    name: str
-    weight: int
-    latex: str
-    ball: Callable[[int], Any]
-
-
-def _zeta(n: int) -> Callable[[int], Any]:
-    return lambda bits: flint.arb(n).zeta()
-
-
-def _log(n: int) -> Callable[[int], Any]:
-    return lambda bits: flint.arb(n).log()
-
-
-GENERATORS: tuple[Generator, ...] = (
-    Generator("I", 0, r"\mathrm{i}", lambda bits: flint.acb(0, 1)),
-    Generator("pi", 1, r"\pi", lambda bits: flint.arb.pi()),
-    Generator("log2", 1, r"\log 2", _log(2)),
-    Generator("log3", 1, r"\log 3", _log(3)),
-    Generator("zeta3", 3, r"\zeta_3", _zeta(3)),
-    Generator("li4half", 4, r"\mathrm{Li}_4(\tfrac12)", lambda bits: nested_sum_at_half((4,), bits)),
-    Generator("zeta5", 5, r"\zeta_5", _zeta(5)),
-    Generator("li5half", 5, r"\mathrm{Li}_5(\tfrac12)", lambda bits: nested_sum_at_half((5,), bits)),
-    Generator("zeta7", 7, r"\zeta_7", _zeta(7)),
-    Generator("zeta53", 8, r"\zeta_{5,3}", lambda bits: multiple_zeta_ball((5, 3), bits)),
-    Generator("zeta9", 9, r"\zeta_9", _zeta(9)),
-    Generator("zeta11", 11, r"\zeta_{11}", _zeta(11)),
-)
-"""I first (weight 0), then by weight; ``zeta53`` is zeta(5,3) = sum_{n>m} n^-5 m^-3."""
-
-NAMES = tuple(g.name for g in GENERATORS)
-_WEIGHTS = tuple(g.weight for g in GENERATORS)
 _CONTEXT = flint.fmpq_mpoly_ctx.get(NAMES, "lex")
-_ZERO_MONOMIAL: Monomial = (0,) * len(NAMES)
-
-
-def monomial_weight(monomial: Monomial) -> int:
-    """Transcendental weight of a monomial."""
-    return sum(w * e for w, e in zip(_WEIGHTS, monomial, strict=True))
-
-
-def multiply_monomials(left: Monomial, right: Monomial) -> tuple[int, Monomial]:
-    """Product of two monomials as (sign, monomial), with I^2 = -1."""
-    total = [a + b for a, b in zip(left, right, strict=True)]
-    sign = -1 if total[0] & 2 else 1
-    total[0] &= 1
-    return sign, tuple(total)
-
-
-def generator_monomial(**powers: int) -> Monomial:
-    """The monomial with the given powers of generators, e.g. ``generator_monomial(pi=2, zeta3=1)``."""
-    exponents = [0] * len(NAMES)
-    for name, power in powers.items():
-        exponents[NAMES.index(name)] = power
-    return tuple(exponents)
 
 
 class Constant:
-    """A polynomial over Q in the generators, I^2 = -1 used. Immutable and hashable.
+    """A polynomial over Q in the generators, linear in square roots. Immutable and hashable.
 
     Mixed arithmetic with `int` and `fractions.Fraction` is allowed.
     """
@@ -94,7 +39,7 @@ class Constant:
     __slots__ = ("polynomial",)
 
     def __init__(self, polynomial: Any) -> None:
-        """Wrap a `flint.fmpq_mpoly` that is linear in I; use the named constructors otherwise."""
+        """Wrap a `flint.fmpq_mpoly` linear in the square roots; use the named constructors otherwise."""
         self.polynomial = polynomial
 
     # -- constructors ---------------------------------------------------------------------------
@@ -118,7 +63,7 @@ class Constant:
 
     @staticmethod
     def from_terms(terms: Mapping[Monomial, Fraction | Any]) -> Constant:
-        """From monomials (I at most to the first power) and their rational coefficients."""
+        """From monomials (square roots at most to the first power) and their rational coefficients."""
         return Constant(_CONTEXT.from_dict({m: _fmpq(c) for m, c in terms.items() if c}))
 
     @staticmethod
@@ -148,7 +93,7 @@ class Constant:
         return Constant(-self.polynomial)
 
     def __mul__(self, other: Number) -> Constant:
-        return Constant(_linear_in_i(self.polynomial * _polynomial(other)))
+        return Constant(_linear_in_roots(self.polynomial * _polynomial(other)))
 
     __rmul__ = __mul__
 
@@ -264,31 +209,6 @@ class Constant:
         return f"Constant({self})"
 
 
-def monomials_of_weight(weight: int, steps: Mapping[str, int]) -> tuple[Monomial, ...]:
-    """All monomials of one weight in the named generators.
-
-    Parameters
-    ----------
-    weight
-        The weight.
-    steps
-        For each generator allowed, the step of its exponents: ``{"pi": 2}`` allows even powers of pi.
-    """
-    found: list[Monomial] = [_ZERO_MONOMIAL] if weight >= 0 else []
-    for name, step in steps.items():
-        index = NAMES.index(name)
-        unit = _WEIGHTS[index] * step
-        grown: list[Monomial] = []
-        for monomial in found:
-            left = weight - monomial_weight(monomial)
-            for count in range(left // unit + 1):
-                exponents = list(monomial)
-                exponents[index] = count * step
-                grown.append(tuple(exponents))
-        found = grown
-    return tuple(sorted((m for m in found if monomial_weight(m) == weight), reverse=True))
-
-
 def zeta(n: int) -> Constant:
     """zeta(n) for n >= 2: a rational multiple of pi^n for even n (Euler), a generator for odd n.
 
@@ -351,13 +271,16 @@ def _polynomial(value: Number) -> Any:
     return value.polynomial if isinstance(value, Constant) else _CONTEXT.constant(_fmpq(value))
 
 
-def _linear_in_i(polynomial: Any) -> Any:
-    if polynomial.is_zero() or polynomial.degrees()[0] < 2:
+def _linear_in_roots(polynomial: Any) -> Any:
+    if polynomial.is_zero():
+        return polynomial
+    degrees = polynomial.degrees()
+    if all(degrees[place] < 2 for place, _ in SQUARES):
         return polynomial
     terms: dict[Monomial, Any] = {}
     for monomial, coefficient in polynomial.to_dict().items():
-        sign, reduced = multiply_monomials(tuple(int(e) for e in monomial), _ZERO_MONOMIAL)
-        terms[reduced] = terms.get(reduced, flint.fmpq(0)) + sign * coefficient
+        factor, reduced = multiply_monomials(tuple(int(e) for e in monomial), UNIT_MONOMIAL)
+        terms[reduced] = terms.get(reduced, flint.fmpq(0)) + factor * coefficient
     return _CONTEXT.from_dict({m: c for m, c in terms.items() if c != 0})
 
 

@@ -13,7 +13,8 @@ from typing import Any
 
 import flint
 
-from ibpred.iterated.constants import Constant, Monomial, generator_monomial, multiply_monomials
+from ibpred.iterated.constants import Constant
+from ibpred.iterated.generators import Monomial, generator_monomial, multiply_monomials
 
 RationalMatrix = Any  # flint.fmpq_mat
 Coefficient = Mapping[Monomial, RationalMatrix]

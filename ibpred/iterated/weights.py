@@ -7,7 +7,7 @@ from fractions import Fraction
 
 from ibpred.epsform.form import Matrix
 from ibpred.exact.rational import Rational
-from ibpred.iterated.constants import Monomial, monomial_weight
+from ibpred.iterated.generators import Monomial, monomial_weight
 from ibpred.iterated.series import eps_valuation
 from ibpred.iterated.solution import Function, Product, Solution, length
 

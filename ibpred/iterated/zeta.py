@@ -22,13 +22,8 @@ from typing import Any
 import flint
 
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import (
-    NAMES,
-    ZERO,
-    Constant,
-    Monomial,
-    zeta,
-)
+from ibpred.iterated.constants import ZERO, Constant, zeta
+from ibpred.iterated.generators import NAMES, Monomial
 from ibpred.iterated.sums import quasi_shuffle
 from ibpred.iterated.words import Word, add_scaled, regularised, shuffle
 

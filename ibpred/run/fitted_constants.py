@@ -16,7 +16,7 @@ from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.fix import Boundary, Fitted, OpenConstantsError, fix_constants, lowest_orders
 from ibpred.boundary.from_values import fitted_constants
 from ibpred.boundary.problem import one_scale_values, without_closed_form
-from ibpred.boundary.recognise import ALTERNATING, SINGLE_SCALE, Fit, recognise_series
+from ibpred.boundary.recognise import ALTERNATING, SINGLE_SCALE, SIXTH_ROOTS, Fit, recognise_series
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, UnfinishedError
 from ibpred.family.definition import Powers
@@ -30,6 +30,9 @@ if TYPE_CHECKING:
 _DIGITS = (40, 90)
 """Of the values; the next where a constant is not recognised."""
 
+_ONE_SCALE_DIGITS = (*_DIGITS, 180)
+"""Likewise where no condition helps: masters of mixed weight need many constants."""
+
 _ODDS = -12
 """A fit is believed if chance would give one as good once in 10^12."""
 
@@ -39,6 +42,11 @@ _RATIOS = (Fraction(1, 3), Fraction(1, 5), Fraction(1, 7), Fraction(1, 11), Frac
 def _generators(chain: Chain) -> tuple[str, ...]:
     """Massless integrals of one scale give multiple zeta values, massive ones alternating sums as well."""
     return ALTERNATING if masses(chain.definition) else SINGLE_SCALE
+
+
+def _alphabets(chain: Chain) -> tuple[tuple[str, ...], ...]:
+    """Where masses meet at one point, sixth roots of unity may turn up instead of alternating sums."""
+    return (ALTERNATING, SIXTH_ROOTS) if masses(chain.definition) else (SINGLE_SCALE,)
 
 
 def one_scale_boundary(chain: Chain, order: int) -> Boundary:
@@ -56,13 +64,13 @@ def one_scale_boundary(chain: Chain, order: int) -> Boundary:
     if missing:
         chain.progress.stage(f"values of {len(missing)} masters without a closed form")
         point = {name: Fraction(sign) for name, sign in signs.items()}
-        for digits in _DIGITS:
+        for digits in _ONE_SCALE_DIGITS:
             known = _values_at(chain, point, order, digits)
             try:
-                series, fitted = _recognised(chain, known, missing, digits)
+                series, fitted = _recognised(chain, known, missing, order, digits)
                 break
             except BoundaryError as error:
-                if digits == _DIGITS[-1]:
+                if digits == _ONE_SCALE_DIGITS[-1]:
                     raise error
     exact = one_scale_values(family, masters, signs, order, series)
     return replace(boundary_of_series(exact), fitted=tuple(fitted))
@@ -77,9 +85,9 @@ def _values_at(chain: Chain, point: Mapping[str, Fraction], order: int, digits: 
 
 
 def _recognised(
-    chain: Chain, known: KnownPoint, missing: Sequence[Powers], digits: int
+    chain: Chain, known: KnownPoint, missing: Sequence[Powers], order: int, digits: int
 ) -> tuple[dict[Powers, Series], list[Fitted]]:
-    """Masters without a closed form, from their values."""
+    """Masters without a closed form through ``eps^order``, from their values."""
     series: dict[Powers, Series] = {}
     fitted: list[Fitted] = []
     for row, powers in enumerate(chain.masters().masters):
@@ -87,9 +95,10 @@ def _recognised(
             values = {
                 k: flint.acb(ball_of_decimal(v, 2 * bits_for(digits)).real)
                 for k, v in known.values[row].items()
+                if k <= order
             }
             loops = len(chain.definition.loops)
-            series[powers], fits = recognise_series(values, loops, _generators(chain), _ODDS)
+            series[powers], fits = recognise_series(values, loops, _alphabets(chain), _ODDS)
             fitted += _marked(row, series[powers].start, fits)
     return series, fitted
 

@@ -2,6 +2,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 from fractions import Fraction
+from pathlib import Path
 
 import flint
 import pytest
@@ -16,6 +17,7 @@ from ibpred.boundary.problem import boundary_problem, one_scale_values, without_
 from ibpred.boundary.recognise import (
     ALTERNATING,
     SINGLE_SCALE,
+    SIXTH_ROOTS,
     Fit,
     basis_of_weights,
     recognise,
@@ -28,6 +30,9 @@ from ibpred.iterated.polylog_values import Place, polylog
 from ibpred.iterated.series import Series
 from ibpred.iterated.solution import solve_orders
 from ibpred.iterated.solution_values import solution_values
+from ibpred.progress import Silent
+from ibpred.run.chain import Chain
+from ibpred.run.store import Store
 
 rationals = st.fractions(min_value=-30, max_value=30, max_denominator=120)
 
@@ -40,7 +45,7 @@ def blurred(constant: Constant, digits: int) -> flint.acb:
 @settings(max_examples=25, deadline=None)
 @given(st.lists(rationals, min_size=4, max_size=4), st.integers(0, 4))
 def test_what_is_put_in_comes_out(coefficients: list[Fraction], weight: int) -> None:
-    basis = basis_of_weights((weight,), SINGLE_SCALE, 2)
+    basis = basis_of_weights((weight,), SINGLE_SCALE, False)
     exact = Constant.from_terms(dict(zip(basis, coefficients, strict=False)))
     value = blurred(exact, 60)
     if exact:
@@ -67,6 +72,29 @@ def test_an_alternating_sum_from_its_value() -> None:
     assert fit is not None
     assert fit.constant.ball(300).overlaps(value)
     assert fit.constant.weights() == {4}
+
+
+def test_three_equal_masses_in_the_vacuum(tmp_path: Path) -> None:
+    """Davydychev, Tausk, Nucl. Phys. B 397 (1993) 123, with the Clausen function at pi/3.
+
+    ``-3/2 Gamma(1+e)^2 (1/e^2 + 3/e + 7 - 4/sqrt3 Cl2(pi/3)) + O(e)`` (from memory).
+    """
+    with Store(tmp_path) as store:
+        boundary = Chain(family("vacuum-one-mass"), store, Silent(), 1).completed_boundary(0)
+    assert boundary.start == -2
+    assert [str(vector[1]) for vector in boundary.constants] == [
+        "-3/2",
+        "-9/2",
+        "2*sqrt3*clausen2 - pi^2/4 - 21/2",
+    ]
+    assert all(item.fit.odds < -20 for item in boundary.fitted)
+
+
+def test_mixed_weights_and_square_roots() -> None:
+    exact = Constant.read("sqrt3*pi^3/6 - 2*sqrt3*log3*clausen2 + 3*sqrt3*logsine3 + zeta3 - 45/2")
+    fit = recognise(flint.acb(blurred(exact, 90).real), (3, 2, 1, 0), SIXTH_ROOTS, -15)
+    assert fit is not None
+    assert fit.constant == exact
 
 
 def test_numbers_that_are_no_such_constants_are_left_alone() -> None:
@@ -106,12 +134,12 @@ def test_laurent_coefficients_with_mixed_weights() -> None:
     powers, definition = (1, 1, 1, 0, 0), family("sunrise")
     (exact,) = one_scale_values(definition, (powers,), {"s": -1}, 3)
     values = {k: flint.acb(blurred(exact.coefficient(k), 120).real) for k in range(exact.start, 4)}
-    series, fits = recognise_series(values, 2, SINGLE_SCALE, -15)
+    series, fits = recognise_series(values, 2, [SINGLE_SCALE], -15)
     assert series == exact
     assert all(fit.odds <= -15 for fit in fits)
     values[2] = flint.acb(flint.arb(values[2].real.str(12, radius=False)) + flint.arb(0, flint.arb("1e-12")))
     with pytest.raises(BoundaryError, match=r"eps\^2"):
-        recognise_series(values, 2, SINGLE_SCALE, -15)
+        recognise_series(values, 2, [SINGLE_SCALE], -15)
 
 
 def test_fitted_masters_take_the_place_of_closed_forms() -> None:

@@ -11,17 +11,11 @@ from mpmath import mp
 from ibpred.balls.context import precision
 from ibpred.errors import ExpressionError
 from ibpred.exact.codec import from_data, to_data
-from ibpred.iterated.constants import (
-    GENERATORS,
-    NAMES,
-    Constant,
-    log_of,
-    monomial_weight,
-    monomials_of_weight,
-    zeta,
-)
+from ibpred.iterated.constants import Constant, log_of, zeta
+from ibpred.iterated.generators import GENERATORS, NAMES, monomial_weight, monomials_of_weight
+from ibpred.iterated.sixth_roots import log_sine_at_two_thirds
 
-MONOMIALS = st.tuples(*(st.integers(0, 1 if name == "I" else 2) for name in NAMES))
+MONOMIALS = st.tuples(*(st.integers(0, 1 if name in ("I", "sqrt3") else 2) for name in NAMES))
 CONSTANTS = st.dictionaries(MONOMIALS, st.fractions(-5, 5, max_denominator=7), max_size=3).map(
     Constant.from_terms
 )
@@ -32,7 +26,7 @@ def test_arithmetic_agrees_with_balls(a: Constant, b: Constant) -> None:
     with precision(120):
         assert (a * b).ball(100).overlaps(a.ball(100) * b.ball(100))
         assert (a - b).ball(100).overlaps(a.ball(100) - b.ball(100))
-    assert (a * b).polynomial.is_zero() or (a * b).polynomial.degrees()[0] <= 1
+    assert (a * b).polynomial.is_zero() or max((a * b).polynomial.degrees()[:2]) <= 1
 
 
 @given(CONSTANTS)
@@ -50,6 +44,10 @@ def test_division_only_by_rationals(n: int) -> None:
         Constant.rational(n) / pi
 
 
+def log_sine(power: int) -> mp.mpf:
+    return mp.quad(lambda t: mp.log(2 * mp.sin(t / 2)) ** power, [0, mp.pi / 3, 2 * mp.pi / 3])
+
+
 def test_balls_of_the_generators_against_mpmath() -> None:
     with mp.workdps(40):
         expected = {
@@ -57,6 +55,11 @@ def test_balls_of_the_generators_against_mpmath() -> None:
             "pi": mp.pi,
             "log2": mp.log(2),
             "log3": mp.log(3),
+            "sqrt3": mp.sqrt(3),
+            "clausen2": mp.clsin(2, mp.pi / 3),
+            "clausen4": mp.clsin(4, mp.pi / 3),
+            "logsine3": -log_sine(2),
+            "logsine4": -log_sine(3),
             "li4half": mp.polylog(4, 0.5),
             "li5half": mp.polylog(5, 0.5),
             "zeta53": mp.nsum(lambda n: n**-5 * (mp.zeta(3) - mp.zeta(3, n)), [1, mp.inf]),
@@ -101,3 +104,18 @@ def test_monomials_of_a_weight() -> None:
     assert [len(monomials_of_weight(w, steps)) for w in range(9)] == [1, 0, 1, 1, 1, 2, 2, 3, 4]
     assert all(monomial_weight(m) == 8 for m in monomials_of_weight(8, steps))
     assert GENERATORS[0].weight == 0
+    # a square root to the first power at most
+    assert len(monomials_of_weight(1, {"sqrt3": 1, "pi": 1})) == 2
+
+
+def test_square_roots() -> None:
+    value = Constant.read("2*sqrt3*clausen2 - I*sqrt3*pi")
+    assert str(value * Constant.generator("sqrt3")) == "-3*I*pi + 6*clausen2"
+    assert str(Constant.generator("sqrt3") ** 5) == "9*sqrt3"
+    assert value.weights() == {1, 2}
+    assert value.latex() == (r"-\mathrm{i} \sqrt{3} \pi + 2 \sqrt{3} \mathrm{Cl}_2(\tfrac{\pi}{3})")
+
+
+def test_log_sines_beyond_four_are_refused() -> None:
+    with pytest.raises(ValueError, match="not 5"):
+        log_sine_at_two_thirds(5, 100)

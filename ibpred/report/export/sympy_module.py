@@ -22,6 +22,8 @@ _TAKEN = {
     "zeta",
     "log",
     "polylog",
+    "exp",
+    "im",
     "word",
 }
 _CONSTANTS = {
@@ -29,6 +31,11 @@ _CONSTANTS = {
     "pi": "pi",
     "log2": "log(2)",
     "log3": "log(3)",
+    "sqrt3": "sqrt(3)",
+    "clausen2": "im(polylog(2, exp(I*pi/3)))",
+    "clausen4": "im(polylog(4, exp(I*pi/3)))",
+    "logsine3": 'Symbol("logsine3")',
+    "logsine4": 'Symbol("logsine4")',
     "li4half": "polylog(4, Rational(1, 2))",
     "li5half": "polylog(5, Rational(1, 2))",
     "zeta53": 'Symbol("zeta53")',
@@ -41,7 +48,8 @@ def sympy_module(material: Material) -> str:
     count = len(material.masters)
     lines = [*(f"# {line}" for line in conventions(material)), ""]
     lines.append(
-        "from sympy import Eq, Function, I, Rational, SparseMatrix, Symbol, log, pi, polylog, sqrt, zeta"
+        "from sympy import (Eq, Function, I, Rational, SparseMatrix, Symbol, exp, im, log, pi, polylog, "
+        "sqrt, zeta)"
     )
     lines.append("")
     names = checked_names(["d", "eps", *material.variables])
