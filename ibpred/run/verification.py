@@ -18,6 +18,7 @@ from ibpred.numerics.direct import direct_value
 from ibpred.progress import Progress
 from ibpred.reduction.masters import find_masters
 from ibpred.report.export.material import Material, system_of
+from ibpred.run.carried_check import carried_check
 from ibpred.run.exports import folder_material
 from ibpred.sectors.analysis import analyse
 
@@ -68,6 +69,13 @@ def _checks(material: Material, samples: int, progress: Progress) -> Iterator[Ch
     progress.stage("differential equation")
     yield from check_system(system, family, primes, _SEED)
     yield check_samples(system, family, analysis, primes, _SEED, progress)
+    if material.tables and material.signs is not None and system.variables:
+        first, *others = material.tables
+        progress.stage("continuation")
+        for table in others:
+            found = carried_check(system, material.signs, first, table)
+            if found is not None:
+                yield found
     for table in material.tables:
         point = {name: parse_number(text) for name, text in table["point"].items()}
         signs = material.signs

@@ -54,7 +54,16 @@ def test_a_changed_value(tmp_path: Path, results: dict[str, str]) -> None:
     data = json.loads(results["values.json"])
     data["tables"][0]["integrals"][2]["epsilon"]["0"]["re"] = "-39.47"
     names = failed(tmp_path, {**results, "values.json": json.dumps(data)})
-    assert names == {"direct integration of massless-box(1,1,1,1)"}
+    assert names == {"direct integration of massless-box(1,1,1,1)", "continuation"}
+
+
+def test_the_wrong_side_of_a_threshold(tmp_path: Path, results: dict[str, str]) -> None:
+    data = json.loads(results["values.json"])
+    for value in data["tables"][1]["integrals"]:
+        for part in value["epsilon"].values():
+            part["im"] = part["im"].removeprefix("-") if part["im"].startswith("-") else f"-{part['im']}"
+    names = failed(tmp_path, {**results, "values.json": json.dumps(data)})
+    assert names == {"continuation"}
 
 
 def test_a_folder_of_something_else(tmp_path: Path) -> None:
