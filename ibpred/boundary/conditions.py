@@ -62,6 +62,8 @@ class EdgeView:
         The edge.
     inverse
         T^-1 in terms of scales and variable.
+    tags
+        For each function the radicands whose product's root multiplies its row.
     masters
         With closed forms in terms of scales and variable.
     family
@@ -70,6 +72,7 @@ class EdgeView:
 
     edge: Edge
     inverse: tuple[tuple[Rational, ...], ...]
+    tags: tuple[tuple[Rational, ...], ...]
     masters: tuple[Master, ...]
     family: ParametricFamily | None
 
@@ -84,13 +87,14 @@ def view_from(
 ) -> EdgeView:
     """Restrict a problem to an edge."""
     moved = {name: v for name, v in edge.values.items() if v != form.ring.variable(name)}
+    tags = tuple(tuple(edge.radicands[k] for k in tag) for tag in form.tags)
     if not moved:
-        return EdgeView(edge, form.inverse, tuple(masters), family)
+        return EdgeView(edge, form.inverse, tags, tuple(masters), family)
     inverse = tuple(tuple(entry.substitute(moved) for entry in row) for row in form.inverse)
     seen = tuple(
         Master(m.label, None if m.closed is None else m.closed.substituted(moved), m.powers) for m in masters
     )
-    return EdgeView(edge, inverse, seen, None if family is None else family.substituted(moved))
+    return EdgeView(edge, inverse, tags, seen, None if family is None else family.substituted(moved))
 
 
 def conditions_at(view: EdgeView, point: Point, order: int) -> tuple[Condition, ...]:
@@ -119,7 +123,7 @@ def conditions_at(view: EdgeView, point: Point, order: int) -> tuple[Condition, 
     known = [known_at(master, view.family, approach) for master in view.masters]
     gathered: dict[str, list[_Row]] = {}
     for i in range(size):
-        made_of = sources(known, view.inverse[i], approach)
+        made_of = sources(known, view.inverse[i], view.tags[i], approach)
         if made_of is None:
             continue
         if not made_of.parts:
@@ -130,8 +134,8 @@ def conditions_at(view: EdgeView, point: Point, order: int) -> tuple[Condition, 
             for name, row in _row_conditions(made_of, space, unit, view, point, order):
                 gathered.setdefault(name, []).append(row)
     if not edge.scales:
-        for vector in vanishing_combinations(view.inverse, edge.variable, point):
-            made_of = sources(known, _combined(vector, view.inverse), approach)
+        for tag, vector in _vanishing(view, point):
+            made_of = sources(known, _combined(vector, view.inverse), tag, approach)
             if made_of is None:
                 continue
             for space in spaces:
@@ -159,6 +163,16 @@ def are_regular(conditions: Sequence[Condition], residue: Any) -> bool:
     known = flint.fmpq_mat(len(rows), size, [v for row in rows for v in row])
     both = flint.fmpq_mat(len(rows) + len(wanted), size, [v for row in (*rows, *wanted) for v in row])
     return int(known.rref()[1]) == int(both.rref()[1])
+
+
+def _vanishing(view: EdgeView, point: Point) -> Iterator[tuple[tuple[Rational, ...], Combination]]:
+    """Combinations of functions with the same root in which the coefficients of the masters vanish."""
+    size = len(view.inverse)
+    for tag in dict.fromkeys(view.tags):
+        rows = [i for i in range(size) if view.tags[i] == tag]
+        for vector in vanishing_combinations([view.inverse[i] for i in rows], view.edge.variable, point):
+            factors = dict(zip(rows, vector, strict=True))
+            yield tag, tuple(factors.get(i, Fraction(0)) for i in range(size))
 
 
 _Row = tuple[Sequence[Any], Series | None]

@@ -19,7 +19,7 @@ import flint
 from ibpred.boundary.approach import Approach, leading
 from ibpred.epsform.form import EpsilonForm
 from ibpred.exact.rational import Rational
-from ibpred.iterated.matrices import rational_matrix
+from ibpred.iterated.alphabet import Alphabet, alphabet_of, limit
 from ibpred.iterated.transport import Point, Residues, point_text
 
 Corner = tuple[str, ...]
@@ -48,7 +48,9 @@ class Edge:
     scale_residues
         For each scale its residue, which commutes with all others.
     nonlinear
-        Letters that are not linear in the variable, as text.
+        Letters that are not linear in the variable (or not rational in it), as text.
+    radicands
+        Those of the form in terms of scales and variable.
     """
 
     start: Corner
@@ -60,6 +62,7 @@ class Edge:
     residues: Residues
     scale_residues: tuple[Any, ...]
     nonlinear: tuple[str, ...]
+    radicands: tuple[Rational, ...]
 
     def approach(self, point: Point) -> Approach:
         """The way to a point of the edge."""
@@ -77,24 +80,26 @@ def edges_at(form: EpsilonForm, corner: Corner) -> tuple[Edge, ...]:
     Parameters
     ----------
     form
-        The epsilon-form, without square roots.
+        The epsilon-form.
     corner
-        All of its ratios.
+        All of its ratios; roots are real there.
     """
     field = form.ring
+    alphabet = alphabet_of(form, corner)
     plain = {name: field.variable(name) for name in corner}
-    found = [_edge(form, corner, None, corner[:-1], corner[-1], corner[-1], plain)]
+    found = [_edge(form, alphabet, corner, None, corner[:-1], corner[-1], corner[-1], plain)]
     for k in range(len(corner) - 1):
         small, large = corner[k], corner[k + 1]
         values = {**plain, small: field.variable(small) * field.variable(large)}
         scales = (*corner[:k], *corner[k + 1 :])
         swapped = (*corner[:k], large, small, *corner[k + 2 :])
-        found.append(_edge(form, corner, swapped, scales, small, f"{small}/{large}", values))
+        found.append(_edge(form, alphabet, corner, swapped, scales, small, f"{small}/{large}", values))
     return tuple(found)
 
 
 def _edge(
     form: EpsilonForm,
+    alphabet: Alphabet,
     start: Corner,
     end: Corner | None,
     scales: Sequence[str],
@@ -103,31 +108,44 @@ def _edge(
     values: Mapping[str, Rational],
 ) -> Edge:
     size = len(form.inverse)
-    totals = [flint.fmpq_mat(size, size) for _ in scales]
-    by_root: dict[Fraction, Any] = {Fraction(0): flint.fmpq_mat(size, size)}
-    others: dict[str, Any] = {}
+    zero = flint.fmpq_mat(size, size)
+    order = (*scales, variable)
+    along = alphabet.substituted(values, order)
+    totals = []
+    for number, scale in enumerate(scales, start=1):
+        residue, along = limit(along, scale, order[number:])
+        totals.append(zero if residue is None else residue)
+    at_zero = limit(along, variable, ())[0]
+    by_root: dict[Fraction, Any] = {Fraction(0): zero if at_zero is None else at_zero}
+    others: dict[str, Any] = {str(letter): matrix for letter, matrix in along.odd.items()}
     place = form.ring.index(variable)
-    for letter, rows in zip(form.letters, form.matrices, strict=True):
-        matrix = rational_matrix(rows)
-        powers, last = leading(letter.substitute(values), scales)
-        for i, power in enumerate(powers):
-            totals[i] = totals[i] + matrix * power
-        for polynomial, multiplicity in last.factors()[1]:
-            terms = {int(e[place]): int(c) for e, c in polynomial.to_dict().items()}
-            if max(terms) == 1:
-                root = Fraction(-terms.get(0, 0), terms[1])
-                zero = flint.fmpq_mat(size, size)
-                by_root[root] = by_root.get(root, zero) + matrix * multiplicity
-            else:
-                text = str(form.ring.fraction(polynomial, form.ring.context.constant(1)))
-                others[text] = others.get(text, flint.fmpq_mat(size, size)) + matrix * multiplicity
+    for letter, matrix in along.even.items():
+        terms = {int(e[place]): int(c) for e, c in letter.numerator.to_dict().items()}
+        if max(terms) > 1:
+            others[str(letter)] = matrix
+        elif terms.get(0, 0):
+            by_root[Fraction(-terms[0], terms[1])] = matrix
     residues = {root: matrix for root, matrix in by_root.items() if matrix or root == 0}
     for row in form.inverse:
         for entry in row:
             for root in _linear_roots(entry, values, scales, place):
-                residues.setdefault(root, flint.fmpq_mat(size, size))
-    nonlinear = tuple(text for text, matrix in others.items() if matrix)
-    return Edge(start, end, tuple(scales), variable, label, dict(values), residues, tuple(totals), nonlinear)
+                residues.setdefault(root, zero)
+    radicands = tuple(radicand.substitute(values) for radicand in form.radicands)
+    for radicand in radicands:
+        for root in _linear_roots(radicand, {}, scales, place):
+            residues.setdefault(root, zero)
+    return Edge(
+        start,
+        end,
+        tuple(scales),
+        variable,
+        label,
+        dict(values),
+        residues,
+        tuple(totals),
+        tuple(others),
+        radicands,
+    )
 
 
 def _linear_roots(

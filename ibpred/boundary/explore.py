@@ -16,7 +16,7 @@ from ibpred.boundary.conditions import (
 from ibpred.boundary.edges import Corner, Edge, edges_at
 from ibpred.boundary.linear import Transported, transported
 from ibpred.boundary.regions import ParametricFamily
-from ibpred.boundary.sources import Master
+from ibpred.boundary.sources import Master, keeps_root
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError
 from ibpred.iterated.generators import NAMES
@@ -133,6 +133,9 @@ def _walk(
             "are not linear lie in between"
         )
         return None
+    # beyond a zero of a radicand the roots of the other corner are not those of this one
+    keeps = all(keeps_root(radicand, edge.approach(INFINITY)) for radicand in edge.radicands)
+    leads_on = edge.end is not None and keeps
     positive: list[Point] = [*sorted(a for a in edge.residues if a > 0), INFINITY]
     negative: list[Point] = [*sorted((a for a in edge.residues if a < 0), reverse=True)]
     end: MatrixSeries | None = None
@@ -141,7 +144,7 @@ def _walk(
         for point in direction:
             progress.advance(len(conditions), None)
             found = conditions_at(view, point, last)
-            needed = bool(found) or (isinstance(point, Infinity) and edge.end is not None)
+            needed = bool(found) or (isinstance(point, Infinity) and leads_on)
             if needed:
                 try:
                     transport = _connection(edge, point, order, passed) @ here
@@ -150,7 +153,7 @@ def _walk(
                     transport = None
                 if transport is not None:
                     conditions += [transported(condition, transport) for condition in found]
-                    if isinstance(point, Infinity):
+                    if isinstance(point, Infinity) and leads_on:
                         end = transport
             if isinstance(point, Infinity):
                 continue

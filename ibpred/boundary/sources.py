@@ -18,6 +18,7 @@ from ibpred.boundary.regions import (
 )
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
+from ibpred.iterated.alphabet import fraction_root, is_positive_at
 from ibpred.iterated.transport import Infinity
 
 Slopes = tuple[Fraction | None, ...]
@@ -64,8 +65,8 @@ class _Part:
     """One master in a function, without a value of its own."""
 
     regions: tuple[Region, ...]
-    orders: tuple[int, ...]  # of the factor in front of it
-    factor: Rational  # and its leading coefficient, a function of eps
+    orders: tuple[Fraction, ...]  # of the factor in front of it
+    factor: Rational | None  # and its leading coefficient, a function of eps; None where not rational
 
 
 @dataclass(frozen=True)
@@ -101,14 +102,15 @@ class Sources:
             for region in _reaching(part, slopes):
                 exponent = region.exponent
                 total = [p + n for p, n in zip(exponent.power, part.orders, strict=True)]
-                if any(total) or any(exponent.logs) or region.leading is None:
+                if any(total) or any(exponent.logs) or region.leading is None or part.factor is None:
                     return None
                 pieces = region.leading.closed
                 if pieces is None:
                     return None
                 for number, closed in pieces:
                     coefficient = part.factor * closed.rational * number
-                    found.append(Contribution((0,) * len(total), exponent.slope, coefficient, closed))
+                    zero = (Fraction(0),) * len(total)
+                    found.append(Contribution(zero, exponent.slope, coefficient, closed))
         return tuple(found)
 
 
@@ -120,13 +122,13 @@ def _reaching(part: _Part, slopes: Slopes) -> list[Region]:
     ]
 
 
-def _reaches_zero(powers: Sequence[Fraction], shift: Sequence[int]) -> bool:
+def _reaches_zero(powers: Sequence[Fraction], shift: Sequence[Fraction]) -> bool:
     """Whether powers in integer steps above ``powers + shift`` (lexicographically) can all be zero."""
-    for power, more in zip(powers, shift, strict=True):
-        if power + more != 0:
-            # below a leading term the next powers are not known: anything may happen there
-            return power + more < 0
-    return True
+    total = [power + more for power, more in zip(powers, shift, strict=True)]
+    if any(value.denominator != 1 for value in total):
+        return False
+    # below a leading term the next powers are not known: any integer may occur there
+    return next((value < 0 for value in total if value), True)
 
 
 def known_at(master: Master, family: ParametricFamily | None, approach: Approach) -> Known | None:
@@ -147,21 +149,72 @@ def known_at(master: Master, family: ParametricFamily | None, approach: Approach
     return None if found is None else Known(None, found)
 
 
-def sources(known: Sequence[Known | None], entries: Sequence[Rational], approach: Approach) -> Sources | None:
-    """What ``sum_j entries[j] I_j`` is made of; None where nothing is known of one of its masters."""
+def sources(
+    known: Sequence[Known | None],
+    entries: Sequence[Rational],
+    radicands: Sequence[Rational],
+    approach: Approach,
+) -> Sources | None:
+    """What ``sqrt(product of the radicands) sum_j entries[j] I_j`` is made of.
+
+    None where nothing is known of one of the masters. The root is positive where the approach begins.
+    """
     values: list[Contribution] = []
     parts: list[_Part] = []
     names = (*approach.scales, approach.variable)
+    shift, number = _root_at(radicands, approach)
+    moved = tuple(near(q, approach.variable, approach.point) for q in radicands)
     for item, entry in zip(known, entries, strict=True):
         if not entry:
             continue
         if item is None:
             return None
-        if item.closed is not None:
-            values += contributions(near(entry, approach.variable, approach.point), item.closed, names)
-        else:
-            parts.append(_Part(item.regions, *approach.leading(entry)))
+        if item.closed is not None and number is not None:
+            factor = near(entry, approach.variable, approach.point)
+            values += contributions(factor, item.closed, names, moved)
+            continue
+        orders, leading_factor = approach.leading(entry)
+        total = tuple(a + b for a, b in zip(orders, shift, strict=True))
+        regions_ = item.regions if item.closed is None else _exponents_only(item.closed, approach)
+        parts.append(_Part(regions_, total, None if number is None else leading_factor * number))
     return Sources(tuple(values), tuple(parts))
+
+
+def _exponents_only(closed: ClosedForm, approach: Approach) -> tuple[Region, ...]:
+    """The behaviour of a closed form in which the variable is the distance to the point."""
+    start = Approach(approach.scales, approach.variable, Fraction(0))
+    return tuple(Region(exponent, None) for exponent in behaviour_of_closed_form(closed, start))
+
+
+def _root_at(
+    radicands: Sequence[Rational], approach: Approach
+) -> tuple[tuple[Fraction, ...], Fraction | None]:
+    """Orders and leading coefficient of a product's root; None where that is not known to be rational."""
+    orders = [Fraction(0)] * (len(approach.scales) + 1)
+    square, real = Fraction(1), True
+    for radicand in radicands:
+        powers, coefficient = approach.leading(radicand)
+        orders = [a + Fraction(b, 2) for a, b in zip(orders, powers, strict=True)]
+        square *= coefficient.to_fraction()
+        real = real and keeps_root(radicand, approach)
+    return tuple(orders), fraction_root(square) if real else None
+
+
+def keeps_root(radicand: Rational, approach: Approach) -> bool:
+    """Whether a root that is positive where an approach begins is so up to the point."""
+    last = leading(radicand, approach.scales)[1]
+    if approach.variable not in last.variables():
+        return last.to_fraction() > 0
+    if not isinstance(approach.point, Infinity) and approach.point < 0:
+        return False
+    one = last.ring.context.constant(1)
+    factors = [last.ring.fraction(polynomial, one) for polynomial, _ in last.factors()[1]]
+    return is_positive_at(last, (approach.variable,)) and all(
+        is_positive_before(
+            u if is_positive_at(u, (approach.variable,)) else -u, approach.variable, approach.point
+        )
+        for u in factors
+    )
 
 
 def _is_constant(form: ClosedForm, variable: str) -> bool:

@@ -2,9 +2,10 @@
 
 At a corner ``x1 << x2 << ... << xn`` the solution is a product of path-ordered exponentials: the last ratio
 moves first, all others still at zero; then the one before it, the later ones held fixed; at last x1. On each
-level the letters are the leading terms in the smaller ratios. Where they are linear in the moving ratio the
-words are polylogarithms ``G(a1, ..., am; x_j)`` with a's rational in the larger ratios (a fibration basis:
-Brown, arXiv:0804.1660; Anastasiou, Duhr, Dulat, Mistlberger, arXiv:1302.4379).
+level the letters are the leading terms in the smaller ratios (`ibpred.iterated.alphabet`). Where they are
+linear in the moving ratio the words are polylogarithms ``G(a1, ..., am; x_j)`` with a's rational in the
+larger ratios (a fibration basis: Brown, arXiv:0804.1660; Anastasiou, Duhr, Dulat, Mistlberger,
+arXiv:1302.4379).
 """
 
 from __future__ import annotations
@@ -18,8 +19,8 @@ from typing import Any
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import Rational
+from ibpred.iterated.alphabet import Letter, RootLetter, alphabet_of, limit
 from ibpred.iterated.constants import ZERO, Constant
-from ibpred.iterated.matrices import rational_matrix
 from ibpred.iterated.words import Word
 
 Product = tuple[Word, ...]
@@ -38,15 +39,18 @@ class Level:
     variable
         The ratio.
     letters
-        Polynomials in it, with coefficients in the larger ratios.
+        Polynomials in it, with coefficients in the larger ratios, and letters with roots of such polynomials.
     """
 
     variable: str
-    letters: tuple[Rational, ...]
+    letters: tuple[Letter, ...]
 
     def roots(self) -> tuple[Rational | None, ...]:
         """The root of each letter that is linear in the ratio; None for the others."""
-        return tuple(_root(letter, self.variable) for letter in self.letters)
+        return tuple(
+            None if isinstance(letter, RootLetter) else _root(letter, self.variable)
+            for letter in self.letters
+        )
 
 
 @dataclass(frozen=True)
@@ -113,37 +117,26 @@ def fibration(form: EpsilonForm, corner: Sequence[str]) -> tuple[tuple[Level, tu
     Parameters
     ----------
     form
-        The epsilon-form, without square roots.
+        The epsilon-form.
     corner
         Its ratios, the smallest first.
 
     Raises
     ------
     InputError
-        If the form has square roots, or the corner does not name its ratios.
+        If the corner does not name its ratios.
+    BoundaryError
+        If a root is not real at the corner.
     """
-    if any(form.tags):
-        raise InputError("a form with square roots has no words in its ratios: change variables")
     if sorted(corner) != sorted(form.variables):
         listed = ", ".join(form.variables)
         raise InputError(f"the corner {' << '.join(corner)} does not name the ratios {listed}")
-    letters = list(form.letters)
+    alphabet = alphabet_of(form, corner)
     found = []
-    for name in corner:
-        held: dict[Rational, Any] = {}
-        for letter, rows in zip(letters, form.matrices, strict=True):
-            matrix = rational_matrix(rows)
-            for polynomial, multiplicity in letter.factors()[1]:
-                factor = form.ring.fraction(polynomial, form.ring.context.constant(1))
-                if name not in factor.variables():
-                    continue
-                # letters up to a constant factor: x - y and y - x are the same
-                factor = -factor if -factor in held or -factor == letter else factor
-                more = matrix * multiplicity
-                held[factor] = held[factor] + more if factor in held else more
-        kept = {factor: matrix for factor, matrix in held.items() if matrix}
-        found.append((Level(name, tuple(kept)), tuple(kept.values())))
-        letters = [_lowest(letter, name) for letter in letters]
+    for number, name in enumerate(corner, start=1):
+        letters = alphabet.depending_on(name)
+        found.append((Level(name, tuple(letters)), tuple(letters.values())))
+        alphabet = limit(alphabet, name, corner[number:])[1]
     return tuple(found)
 
 
@@ -158,13 +151,6 @@ def linear_corner(form: EpsilonForm) -> tuple[str, ...] | None:
     return None
 
 
-def _lowest(letter: Rational, name: str) -> Rational:
-    """Leading coefficient of a polynomial at ``name -> 0``."""
-    place = letter.ring.index(name)
-    least = min(int(e[place]) for e in letter.numerator.monoms())
-    return (letter / letter.ring.variable(name) ** least).substitute({name: 0})
-
-
 def solve_orders(
     form: EpsilonForm,
     corner: Sequence[str],
@@ -177,7 +163,7 @@ def solve_orders(
     Parameters
     ----------
     form
-        The epsilon-form, without square roots.
+        The epsilon-form.
     corner
         Its ratios, the smallest first; there ``f ~ prod_i x_i^(eps A_i) c(eps)``.
     constants
@@ -192,7 +178,7 @@ def solve_orders(
     InputError
         As `fibration`.
     BoundaryError
-        If the constants stop before ``eps^weight``.
+        As `fibration`, or if the constants stop before ``eps^weight``.
     """
     count = weight - start + 1
     if len(constants) < count:
@@ -252,31 +238,33 @@ def _function(layer: Mapping[Product, tuple[Constant, ...]], row: int) -> Functi
     return tuple((key, layer[key][row]) for key in keys)
 
 
+def named_letters(levels: Sequence[Level]) -> dict[Letter, str]:
+    """Names w1, w2, ... for the letters that are not linear in the ratio of their level."""
+    named = (
+        letter
+        for level in levels
+        for letter, root in zip(level.letters, level.roots(), strict=True)
+        if root is None
+    )
+    return {letter: f"w{k}" for k, letter in enumerate(dict.fromkeys(named), start=1)}
+
+
 def product_text(product: Product, levels: Sequence[Level]) -> str:
-    """A product of words in multiple polylogarithms, e.g. ``G(0,x+1;y)*G(-1;x)``; 1 for the empty one.
+    """A product of words, e.g. ``G(0,x+1;y)*I(w1,-1;x)``; 1 for the empty one.
 
-    ``G(0,...,0;x) = log(x)^n/n!`` and ``G(a,w;x) = int_0^x dt/(t-a) G(w;t)`` otherwise.
-
-    Raises
-    ------
-    InputError
-        If a letter is not linear in its ratio.
+    ``G(a,w;x) = int_0^x dt/(t-a) G(w;t)``, and I is the same with ``dlog w_k(t)`` in the place of
+    ``dt/(t-a)`` where a letter is named (see `named_letters`). At zero the integral of ``dt/t`` is
+    regularised to ``log x``, so that ``G(0,...,0;x) = log(x)^n/n!``.
     """
+    names = named_letters(levels)
     pieces = []
     for word, level in zip(product, levels, strict=True):
         if not word:
             continue
         roots = level.roots()
-        arguments = []
-        for letter in word:
-            root = roots[letter]
-            if root is None:
-                raise InputError(
-                    f"the letter {level.letters[letter]} is not linear in {level.variable}: no polylogarithm "
-                    "of it"
-                )
-            arguments.append(str(root))
-        pieces.append(f"G({','.join(arguments)};{level.variable})")
+        arguments = [names.get(level.letters[letter], str(roots[letter])) for letter in word]
+        linear = all(roots[letter] is not None for letter in word)
+        pieces.append(f"{'G' if linear else 'I'}({','.join(arguments)};{level.variable})")
     return "*".join(pieces) or "1"
 
 

@@ -18,6 +18,9 @@ from ibpred.balls.context import (
 from ibpred.errors import PrecisionError
 from ibpred.numerics.canonical import CanonicalSystem, SparseRows, sparse_rows
 from ibpred.numerics.majorant import Majorant
+from ibpred.numerics.root_kernels import Kernel
+
+_SHRUNK = 0.9
 
 BallRows = tuple[tuple[int, tuple[tuple[int, Ball], ...]], ...]
 
@@ -38,6 +41,8 @@ class Centre:
         Lower bound of min |d_l|; None where there is no other letter.
     majorant
         Bounds of the matrices.
+    kernels
+        What letters with roots add: the series of ``h dlog`` but for its constant term, and the matrix.
     """
 
     size: int
@@ -45,6 +50,7 @@ class Centre:
     others: tuple[tuple[Ball, BallRows], ...]
     radius: RealBall | None
     majorant: Majorant
+    kernels: tuple[tuple[Kernel, BallRows], ...] = ()
 
 
 @dataclass(frozen=True)
@@ -95,7 +101,7 @@ def centre_at(system: CanonicalSystem, centre: Ball, vanishing: int | None, bits
                 residue = letter.rows
                 continue
             places += [(root - centre, letter.rows) for root in letter.roots(bits)]
-    return _centre(system.size, [residue] if residue else [], places, bits)
+    return centre_with_kernels(system.size, [residue] if residue else [], places, (), bits)
 
 
 def centre_at_infinity(system: CanonicalSystem, bits: int) -> Centre:
@@ -109,7 +115,7 @@ def centre_at_infinity(system: CanonicalSystem, bits: int) -> Centre:
             if letter.root() != 0:
                 places += [(1 / root, letter.rows) for root in roots]
     negative = [_scaled_rows(rows, -1) for rows in residues]
-    return _centre(system.size, negative, places, bits)
+    return centre_with_kernels(system.size, negative, places, (), bits)
 
 
 def _scaled_rows(rows: SparseRows, factor: int) -> SparseRows:
@@ -129,18 +135,46 @@ def _ball_rows(rows: SparseRows, bits: int) -> BallRows:
     return tuple((i, tuple((j, complex_ball(v, 0, bits)) for j, v in entries)) for i, entries in rows)
 
 
-def _centre(
+def centre_with_kernels(
     size: int,
     residues: Sequence[SparseRows],
     places: Sequence[tuple[Ball, SparseRows]],
+    kernels: Sequence[tuple[Kernel, SparseRows]],
     bits: int,
 ) -> Centre:
+    """A centre from what is near it.
+
+    Parameters
+    ----------
+    size
+        Number of functions.
+    residues
+        Matrices whose sum is the residue.
+    places
+        (d, matrix) of every other zero of a letter.
+    kernels
+        Letters with roots and their matrices.
+    bits
+        Working precision.
+    """
     residue = _summed(size, residues)
     with precision(64):
-        radius = _smallest([distance for distance, _ in places], bits)
+        distances = [distance for distance, _ in places]
+        distances += [1 / inverse for kernel, _ in kernels for inverse, _ in kernel.factors]
+        radius = _smallest(distances, bits)
+        kernels = [item for item in kernels if not item[0].is_constant()]
+        if kernels:
+            # their coefficients fall like radius^-m only on a smaller disc
+            radius = flint.arb(1) if radius is None else flint.arb((radius * _SHRUNK).lower())
         bounds: dict[int, dict[int, RealBall]] = {}
         for distance, rows in places:
             weight = (radius / distance.abs_lower()).upper()
+            for i, entries in rows:
+                line = bounds.setdefault(i, {})
+                for j, value in entries:
+                    line[j] = line.get(j, flint.arb(0)) + weight * real_ball(abs(value), 64)
+        for kernel, rows in kernels:
+            weight = kernel.bound(radius)
             for i, entries in rows:
                 line = bounds.setdefault(i, {})
                 for j, value in entries:
@@ -152,7 +186,8 @@ def _centre(
         tuple((i, tuple((j, real_ball(abs(v), 64)) for j, v in entries)) for i, entries in residue),
         tuple((i, tuple(sorted(line.items()))) for i, line in sorted(bounds.items())),
     )
-    return Centre(size, _ball_rows(residue, bits), others, radius, majorant)
+    with_roots = tuple((kernel, _ball_rows(rows, bits)) for kernel, rows in kernels)
+    return Centre(size, _ball_rows(residue, bits), others, radius, majorant, with_roots)
 
 
 def _smallest(distances: Sequence[Ball], bits: int) -> RealBall | None:

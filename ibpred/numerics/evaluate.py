@@ -14,8 +14,9 @@ from ibpred.errors import BoundaryError
 from ibpred.iterated.constants import Constant
 from ibpred.numerics.canonical import CanonicalSystem, Orders, SparseRows, sparse_rows
 from ibpred.numerics.continuation import evaluate_many
-from ibpred.numerics.masters import Row, assemble, needed_order
+from ibpred.numerics.masters import Row, assemble, by_root, needed_order
 from ibpred.numerics.path import Target
+from ibpred.numerics.rooted_paths import evaluate_rooted
 from ibpred.numerics.several import evaluate_several
 from ibpred.numerics.value import Route, Value
 from ibpred.numerics.vanishing import vanishes
@@ -31,8 +32,12 @@ class Functions(Protocol):
     def matrices(self) -> Sequence[SparseRows]:
         """One constant matrix for each letter."""
 
+    @property
+    def tags(self) -> Sequence[tuple[int, ...]]:
+        """For each function its roots, as in the epsilon-form; empty where there are none."""
+
     def at(self, constants: Orders, targets: Sequence[Mapping[str, Target]], bits: int) -> Sequence[Orders]:
-        """The functions at several points, given by the ratios on their sheets."""
+        """The functions, divided by their roots, at several points given by the ratios on their sheets."""
 
 
 @dataclass(frozen=True)
@@ -44,6 +49,10 @@ class InOneRatio:
     @property
     def matrices(self) -> Sequence[SparseRows]:
         return [letter.rows for letter in self.system.letters]
+
+    @property
+    def tags(self) -> Sequence[tuple[int, ...]]:
+        return ()
 
     def at(self, constants: Orders, targets: Sequence[Mapping[str, Target]], bits: int) -> Sequence[Orders]:
         if not self.system.letters:
@@ -62,8 +71,31 @@ class InSeveralRatios:
     def matrices(self) -> Sequence[SparseRows]:
         return [sparse_rows(matrix) for matrix in self.form.matrices]
 
+    @property
+    def tags(self) -> Sequence[tuple[int, ...]]:
+        return ()
+
     def at(self, constants: Orders, targets: Sequence[Mapping[str, Target]], bits: int) -> Sequence[Orders]:
         return [evaluate_several(self.form, self.corner, constants, target, bits) for target in targets]
+
+
+@dataclass(frozen=True)
+class WithRoots:
+    """Functions of a form with square roots from their constants at a corner (the smallest ratio first)."""
+
+    form: EpsilonForm
+    corner: tuple[str, ...]
+
+    @property
+    def matrices(self) -> Sequence[SparseRows]:
+        return [sparse_rows(matrix) for matrix in (*self.form.matrices, *self.form.odd_matrices)]
+
+    @property
+    def tags(self) -> Sequence[tuple[int, ...]]:
+        return self.form.tags
+
+    def at(self, constants: Orders, targets: Sequence[Mapping[str, Target]], bits: int) -> Sequence[Orders]:
+        return [evaluate_rooted(self.form, self.corner, constants, target, bits) for target in targets]
 
 
 @dataclass(frozen=True)
@@ -157,7 +189,8 @@ def evaluate_places(
             of_place = []
             for row in place.rows:
                 coefficients = assemble(row, orders, start, place.unit, order, bits)
-                of_place.append(_without_zeros(row, coefficients, matrices, used, start, place.unit))
+                parts = by_root(row, functions.tags)
+                of_place.append(_without_zeros(parts, coefficients, matrices, used, start, place.unit))
             found.append(of_place)
         return found
 
@@ -183,7 +216,7 @@ def evaluate_places(
 
 
 def _without_zeros(
-    row: Row,
+    parts: Sequence[Row],
     coefficients: dict[int, Ball],
     matrices: Sequence[SparseRows],
     constants: Sequence[Sequence[Constant]],
@@ -198,7 +231,7 @@ def _without_zeros(
         if ball.is_zero():
             continue
         doubtful = (leading or at_one) and ball.contains(0)
-        if doubtful and vanishes(row, matrices, constants, start, power):
+        if doubtful and all(vanishes(part, matrices, constants, start, power) for part in parts):
             continue
         leading = False
         kept[power] = ball

@@ -8,14 +8,14 @@ combination of rows for any other integral.
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 
 import flint
 
 from ibpred.balls.context import Ball, complex_ball, precision
 from ibpred.epsform.form import EpsilonForm
-from ibpred.errors import BoundaryError, InputError, ObstructionError, PointError
+from ibpred.errors import BoundaryError, InputError, PointError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
 from ibpred.iterated.series import eps_valuation, laurent
@@ -26,7 +26,7 @@ from ibpred.numerics.power_series import EPSILON, exponential_series, truncated_
 
 @dataclass(frozen=True)
 class Row:
-    """An integral as ``y_u^(A + B eps) sum_j entries[j] f_j``.
+    """An integral as ``y_u^(A + B eps) sum_j entries[j] f_j``, f_j divided by its root where it has one.
 
     Attributes
     ----------
@@ -54,7 +54,7 @@ def master_rows(
     Parameters
     ----------
     form
-        Without square roots.
+        The epsilon-form.
     ratios
         Values, negative on the negative axis whatever the side.
     masters, exponents
@@ -64,13 +64,7 @@ def master_rows(
     ------
     PointError
         If the transformation has a pole there.
-    ObstructionError
-        If canonical functions carry square roots.
     """
-    if any(form.tags):
-        raise ObstructionError(
-            "the canonical functions carry square roots of letters; their values are not supported yet"
-        )
     rows = []
     for powers, exponent, line in zip(masters, exponents, form.transformation, strict=True):
         entries = tuple(_at(entry, ratios) for entry in line)
@@ -144,6 +138,19 @@ def integral_row(
         if factor:
             entries = [a + factor * b if b else a for a, b in zip(entries, master.entries, strict=True)]
     return Row(powers, exponent, tuple(entries))
+
+
+def by_root(row: Row, tags: Sequence[tuple[int, ...]]) -> tuple[Row, ...]:
+    """The parts of an integral with different roots; the whole where no tags are given."""
+    if not any(tags):
+        return (row,)
+    parts = []
+    for tag in dict.fromkeys(tags):
+        entries = tuple(
+            entry if tag == own else EPSILON.zero for entry, own in zip(row.entries, tags, strict=True)
+        )
+        parts.append(replace(row, entries=entries))
+    return tuple(parts)
 
 
 def needed_order(rows: Sequence[Row], order: int) -> int | None:

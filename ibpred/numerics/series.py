@@ -22,8 +22,9 @@ import flint
 from ibpred.balls.context import Ball, RealBall, modulus_bound, precision, widened
 from ibpred.errors import PrecisionError
 from ibpred.numerics.canonical import Orders
-from ibpred.numerics.centre import Centre, Place
+from ibpred.numerics.centre import BallRows, Centre, Place
 from ibpred.numerics.majorant import Bounds, remainder, tail_factors
+from ibpred.numerics.root_kernels import convolved
 
 Series = list[Ball] | None
 """Coefficients of t^0, t^1, ...; None is the zero series."""
@@ -37,11 +38,12 @@ _WIDEST_RATIO = 0.95
 
 @dataclass(frozen=True)
 class _Grid:
-    """How far the series go: scale of t, number of terms, and 1/m."""
+    """How far the series go: scale of t, number of terms, 1/m, and the series of letters with roots."""
 
     scale: RealBall
     terms: int
     reciprocals: list[RealBall]
+    kernels: list[tuple[list[Ball], BallRows]]
 
 
 def from_base(centre: Centre, constants: Orders, place: Place, bits: int) -> Orders:
@@ -129,7 +131,7 @@ def local_levels(centre: Centre, constants: Orders, terms: int, bits: int) -> tu
     found: list[Level] = []
     with precision(bits):
         count = max(terms, 2)
-        grid = _Grid(flint.arb(1), count, [flint.arb(0)] + [1 / flint.arb(m) for m in range(1, count)])
+        grid = _grid_of(centre, flint.arb(1), count)
         level: Level = []
         for vector in constants:
             level = _next_level(centre, level, grid)
@@ -201,7 +203,7 @@ def _grid(centre: Centre, places: Sequence[Place], bits: int) -> _Grid:
     for place in places:
         scale = scale.max(place.h.abs_upper())
     if centre.radius is None:
-        return _Grid(flint.arb(1), 1, [flint.arb(0)])
+        return _Grid(flint.arb(1), 1, [flint.arb(0)], [])
     ratio = (scale / centre.radius).upper()
     if not ratio < _WIDEST_RATIO:
         raise PrecisionError(
@@ -210,7 +212,12 @@ def _grid(centre: Centre, places: Sequence[Place], bits: int) -> _Grid:
         )
     fall = -float(ratio.log()) / 0.6931471805599453
     terms = max(2, ceil((bits + _GUARD_BITS) / fall)) + 1
-    return _Grid(scale, terms, [flint.arb(0)] + [1 / flint.arb(m) for m in range(1, terms)])
+    return _grid_of(centre, scale, terms)
+
+
+def _grid_of(centre: Centre, scale: RealBall, terms: int) -> _Grid:
+    kernels = [(kernel.coefficients(scale, terms), rows) for kernel, rows in centre.kernels]
+    return _Grid(scale, terms, [flint.arb(0)] + [1 / flint.arb(m) for m in range(1, terms)], kernels)
 
 
 def _next_level(centre: Centre, previous: Level, grid: _Grid) -> Level:
@@ -262,12 +269,18 @@ def _source(centre: Centre, part: Sequence[Series], grid: _Grid) -> list[Series]
             if vector is None:
                 continue
             divided = _divided(vector, factor)
-            before = found[row]
-            if before is None:
-                found[row] = divided
-            else:
-                found[row] = [a + b for a, b in zip(before, divided, strict=True)]
+            _add(found, row, divided)
+    for kernel, rows in grid.kernels:
+        for row, entries in rows:
+            vector = _combined(entries, part)
+            if vector is not None:
+                _add(found, row, convolved(vector, kernel))
     return found
+
+
+def _add(found: list[Series], row: int, series: list[Ball]) -> None:
+    before = found[row]
+    found[row] = series if before is None else [a + b for a, b in zip(before, series, strict=True)]
 
 
 def _combined(entries: Sequence[tuple[int, Ball]], part: Sequence[Series]) -> Series:

@@ -15,7 +15,8 @@ from ibpred.exact.polynomial import polynomial_text
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.polynomials import symanzik
-from ibpred.iterated.solution import Product, Solution, function_text
+from ibpred.iterated.alphabet import Letter, RootLetter
+from ibpred.iterated.solution import Product, Solution, function_text, named_letters
 from ibpred.numerics.value import Value
 from ibpred.reduction.independent import SectorCount
 from ibpred.reduction.masters import Masters
@@ -106,11 +107,29 @@ def root_text(roots: Sequence[int], form: EpsilonForm) -> str:
 
 def odd_letter_text(letter: OddLetter, form: EpsilonForm) -> str:
     """A letter with a square root: ``(x-sqrt(x*(4+x)))/(x+sqrt(x*(4+x)))``."""
-    above = letter.polynomial.factored_text()
+    return _odd_text(letter.polynomial, root_text(letter.roots, form))
+
+
+def _odd_text(polynomial: Rational, square: str) -> str:
+    above = polynomial.factored_text()
     if "+" in above or "-" in above:
-        above = letter_text(letter.polynomial) if letter.polynomial.denominator.is_one() else f"({above})"
-    root = f"sqrt({root_text(letter.roots, form)})"
-    return f"({above}-{root})/({above}+{root})"
+        above = letter_text(polynomial) if polynomial.denominator.is_one() else f"({above})"
+    return f"({above}-sqrt({square}))/({above}+sqrt({square}))"
+
+
+def _level_letter_text(letter: Letter) -> str:
+    """A letter of one level of a solution."""
+    if not isinstance(letter, RootLetter):
+        return letter_text(letter)
+    content, factors = letter.square.factors()
+    context = letter.square.ring.context
+    texts = [letter_text(letter.square.ring.fraction(f, context.constant(1))) for f, _ in factors]
+    powers = [f"^{m}" if m > 1 else "" for _, m in factors]
+    if content == 1 and len(texts) == 1 and not powers[0]:
+        return _odd_text(letter.polynomial, texts[0])
+    number = [] if content == 1 else [str(content)]
+    product = [(t if t.isidentifier() else f"({t})") + power for t, power in zip(texts, powers, strict=True)]
+    return _odd_text(letter.polynomial, "*".join([*number, *product]))
 
 
 def sparse(matrix: Sequence[Sequence[Fraction | Rational]]) -> list[list[Any]]:
@@ -214,9 +233,10 @@ def period_data(form: PeriodForm) -> Data:
 def solution_data(family: FamilyDefinition, boundary: Boundary, solution: Solution) -> Data:
     """What `solve` prints: canonical functions by order, and the boundary constants at the corner.
 
-    A term holds one word for each level; with one ratio at most this is its ``word``.
+    A term holds one word for each level; with one ratio at most this is its ``word``. Letters that are not
+    linear in the ratio of their level have names in the texts, which ``named`` explains.
     """
-    names = [[letter_text(letter) for letter in level.letters] for level in solution.levels]
+    names = [[_level_letter_text(letter) for letter in level.letters] for level in solution.levels]
     functions = []
     for row in range(len(boundary.constants[0])):
         orders = []
@@ -240,9 +260,11 @@ def solution_data(family: FamilyDefinition, boundary: Boundary, solution: Soluti
                 if fit is not None:
                     constant["fitted"] = {"digits": fit.digits, "odds": f"1e{fit.odds}"}
                 constants.append(constant)
+    short = {name: _level_letter_text(letter) for letter, name in named_letters(solution.levels).items()}
     return {
         "family": family.name,
         "letters": list(dict.fromkeys(name for level in names for name in level)),
+        **({"named": short} if short else {}),
         "corner": list(boundary.corner),
         "levels": [
             {"variable": level.variable, "letters": listed}

@@ -130,6 +130,16 @@ def _solution(data: Data) -> str:
         if data["letters"]
         else "The masters depend on no ratio; at the unit's Euclidean value of modulus one:",
     ]
+    if data.get("named"):
+        corner = " \\ll ".join((*data["corner"], "1"))
+        lines += [
+            "",
+            "$I$ is the same with $d\\log w_k(t)$ in the place of $dt/(t-a)$ where a letter is named; at "
+            f"zero the integral of $dt/t$ is regularised to $\\log x$. Roots are positive where ${corner}$.",
+            "",
+        ]
+        for name, letter in data["named"].items():
+            lines.append(f"- ${expression_latex(name)} = {expression_latex(letter)}$")
     symbol = "f" if data["letters"] else "I"
     for function in data["functions"]:
         lines.append("")

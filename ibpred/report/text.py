@@ -208,6 +208,7 @@ def _period_lines(form: Data) -> list[str]:
 def solution_text(data: Data) -> str:
     """The canonical functions order by order."""
     lines = [f"letters: {', '.join(data['letters']) or 'none'}"]
+    lines += [f"{name} = {letter}" for name, letter in data.get("named", {}).items()]
     for function in data["functions"]:
         lines.append("")
         for entry in function["orders"]:

@@ -13,7 +13,7 @@ from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import masses
 from ibpred.family.units import integral_dimension
 from ibpred.numerics.canonical import CanonicalSystem, canonical_system
-from ibpred.numerics.evaluate import Functions, InOneRatio, InSeveralRatios, Place, evaluate_places
+from ibpred.numerics.evaluate import Functions, InOneRatio, InSeveralRatios, Place, WithRoots, evaluate_places
 from ibpred.numerics.masters import Row, integral_row, master_rows, needed_order
 from ibpred.numerics.path import Target
 from ibpred.numerics.point import KinematicPoint, kinematic_point
@@ -80,6 +80,8 @@ def form_functions(form: EpsilonForm, boundary: Boundary) -> Functions:
     """The canonical functions of a solved form."""
     if not form.variables:
         return InOneRatio(CanonicalSystem(len(form.transformation), ()))
+    if any(form.tags):
+        return WithRoots(form, boundary.corner)
     if len(form.variables) == 1:
         return InOneRatio(canonical_system(form))
     return InSeveralRatios(form, boundary.corner)

@@ -28,16 +28,17 @@ def normalised(
     Parameters
     ----------
     found
-        The epsilon-form as factorised; an obstruction and a form with square roots stay as they are.
+        The epsilon-form as factorised; an obstruction stays as it is. Where square roots are left, no parity
+        is looked for.
     values
         The invariants in the variables of the form.
     problem
         What the boundary constants of a form follow from.
     """
-    if isinstance(found, Obstructed) or any(found.tags):
+    if isinstance(found, Obstructed):
         return found
     images = tuple(values)
-    for name in found.variables:
+    for name in found.variables if not any(found.tags) else ():
         symmetry = involution(images, name)
         if symmetry is not None:
             found = with_parity(found, name, symmetry)
@@ -61,10 +62,10 @@ def _first_factor(form: EpsilonForm, problem: BoundaryProblem) -> Rational:
 
     Without it that function is as pure as its Gamma functions, and so are those that couple to it.
     """
-    for row in form.inverse:
+    for row, tag in zip(form.inverse, form.tags, strict=True):
         used = [j for j, entry in enumerate(row) if entry]
         closed = problem.masters[used[0]].closed
-        if len(used) != 1 or closed is None:
+        if len(used) != 1 or closed is None or tag:
             continue
         factor = row[used[0]] * closed.rational
         if set(factor.variables()) <= {"eps"}:
