@@ -25,8 +25,8 @@ _BITS_PER_DIGIT = 3.3219280948873626
 SINGLE_SCALE = ("pi", "zeta3", "zeta5", "zeta7", "zeta53", "zeta9")
 """Generators of multiple zeta values."""
 
-ALTERNATING = ("log2", "li4half", "li5half", *SINGLE_SCALE)
-"""Those of alternating sums as well, complete to weight 5."""
+ALTERNATING = ("log2", "li4half", "li5half", "li6half", "li51half", *SINGLE_SCALE)
+"""Those of alternating sums as well, complete to weight 6."""
 
 SIXTH_ROOTS = ("sqrt3", "log3", "clausen2", "logsine3", "clausen4", "logsine4", *SINGLE_SCALE)
 """Those of sixth roots of unity that equal masses bring (Broadhurst, hep-th/9803091), to weight 4."""

@@ -21,6 +21,7 @@ from ibpred.iterated.generators import (
     SQUARES,
     UNIT_MONOMIAL,
     Monomial,
+    generator_ball,
     monomial_weight,
     multiply_monomials,
 )
@@ -166,14 +167,11 @@ class Constant:
         """A complex ball (`flint.acb`) that contains the value, at `bits` of working precision."""
         with precision(bits + 16):
             total = flint.acb(0)
-            cache: dict[int, Any] = {}
             for monomial, coefficient in self.terms():
                 term = flint.acb(flint.arb(_fmpq(coefficient)))
                 for index, exponent in enumerate(monomial):
                     if exponent:
-                        if index not in cache:
-                            cache[index] = flint.acb(GENERATORS[index].ball(bits + 16))
-                        term = term * cache[index] ** exponent
+                        term = term * generator_ball(index, bits + 16) ** exponent
                 total += term
             return total
 

@@ -7,10 +7,12 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import Any
 
 import flint
 
+from ibpred.balls.context import Ball, precision
 from ibpred.iterated.halves import multiple_zeta_ball, nested_sum_at_half
 from ibpred.iterated.sixth_roots import clausen_at_third, log_sine_at_two_thirds
 
@@ -42,6 +44,14 @@ class Generator:
     square: int | None = None
 
 
+AT_HALF = {"li4half": (4,), "li5half": (5,), "li6half": (6,), "li51half": (5, 1)}
+"""Generators that are nested sums ``sum_(n > m) 2^-n / (n^s m^r)`` at 1/2, with their indices."""
+
+
+def _half(name: str) -> Callable[[int], Any]:
+    return lambda bits: nested_sum_at_half(AT_HALF[name], bits)
+
+
 def _zeta(n: int) -> Callable[[int], Any]:
     return lambda bits: flint.arb(n).zeta()
 
@@ -71,7 +81,7 @@ GENERATORS: tuple[Generator, ...] = (
         lambda bits: log_sine_at_two_thirds(3, bits),
         odd=True,
     ),
-    Generator("li4half", 4, r"\mathrm{Li}_4(\tfrac12)", lambda bits: nested_sum_at_half((4,), bits)),
+    Generator("li4half", 4, r"\mathrm{Li}_4(\tfrac12)", _half("li4half")),
     Generator(
         "clausen4",
         4,
@@ -87,7 +97,9 @@ GENERATORS: tuple[Generator, ...] = (
         odd=True,
     ),
     Generator("zeta5", 5, r"\zeta_5", _zeta(5)),
-    Generator("li5half", 5, r"\mathrm{Li}_5(\tfrac12)", lambda bits: nested_sum_at_half((5,), bits)),
+    Generator("li5half", 5, r"\mathrm{Li}_5(\tfrac12)", _half("li5half")),
+    Generator("li6half", 6, r"\mathrm{Li}_6(\tfrac12)", _half("li6half")),
+    Generator("li51half", 6, r"\mathrm{Li}_{5,1}(\tfrac12)", _half("li51half")),
     Generator("zeta7", 7, r"\zeta_7", _zeta(7)),
     Generator("zeta53", 8, r"\zeta_{5,3}", lambda bits: multiple_zeta_ball((5, 3), bits)),
     Generator("zeta9", 9, r"\zeta_9", _zeta(9)),
@@ -101,6 +113,13 @@ SQUARES = tuple((i, g.square) for i, g in enumerate(GENERATORS) if g.square is n
 """Place and square of each square root."""
 UNIT_MONOMIAL: Monomial = (0,) * len(NAMES)
 """One."""
+
+
+@lru_cache(maxsize=512)
+def generator_ball(index: int, bits: int) -> Ball:
+    """The value of a generator as a complex ball."""
+    with precision(bits):
+        return flint.acb(GENERATORS[index].ball(bits))
 
 
 def monomial_weight(monomial: Monomial) -> int:

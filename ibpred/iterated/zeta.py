@@ -17,13 +17,14 @@ from collections.abc import Iterator, Mapping, Sequence
 from fractions import Fraction
 from functools import cache
 from itertools import product
+from math import prod
 from typing import Any
 
 import flint
 
 from ibpred.errors import BoundaryError
 from ibpred.iterated.constants import ZERO, Constant, zeta
-from ibpred.iterated.generators import NAMES, Monomial
+from ibpred.iterated.generators import AT_HALF, NAMES, Monomial
 from ibpred.iterated.sums import quasi_shuffle
 from ibpred.iterated.words import Word, add_scaled, regularised, shuffle
 
@@ -31,7 +32,7 @@ Index = tuple[int, int]
 """(s, sigma): one summation with sigma^n / n^s, sigma = +1 or -1."""
 
 LONGEST_PLAIN = 8
-LONGEST_ALTERNATING = 5
+LONGEST_ALTERNATING = 6
 """Weights up to which the generators of `constants` complete a basis."""
 
 
@@ -41,7 +42,7 @@ def regularised_value(word: Sequence[int]) -> Constant:
     Raises
     ------
     BoundaryError
-        If the weight is beyond the tables: 8 for the letters 0 and 1, 5 where -1 occurs.
+        If the weight is beyond the tables: 8 for the letters 0 and 1, 6 where -1 occurs.
     """
     if not word:
         return Constant.rational(1)
@@ -63,7 +64,10 @@ def _table(weight: int, alternating: bool) -> Mapping[Word, Constant]:
         )
     unknowns = tuple(convergent_words(weight, alternating))
     place = {word: i for i, word in enumerate(unknowns)}
-    rows: list[tuple[dict[Word, Fraction], Constant]] = list(_relations(weight, alternating))
+    rows: list[tuple[dict[Word, Fraction], Constant]] = [
+        *_basis(weight, alternating),
+        *relations(weight, alternating),
+    ]
     monomials = sorted({m for _, value in rows for m, _ in value.terms()}, reverse=True)
     columns = {m: len(unknowns) + i for i, m in enumerate(monomials)}
     matrix = flint.fmpq_mat(len(rows), len(unknowns) + len(monomials))
@@ -125,9 +129,14 @@ def _as_words(sums: Mapping[tuple[Index, ...], int | Fraction]) -> dict[Word, Fr
     return total
 
 
-def _relations(weight: int, alternating: bool) -> Iterator[tuple[dict[Word, Fraction], Constant]]:
-    """Pairs: sum of convergent words = known constant."""
-    yield from _basis(weight, alternating)
+def relations(weight: int, alternating: bool) -> Iterator[tuple[dict[Word, Fraction], Constant]]:
+    """Relations between convergent words of one weight, with known values of lower weights.
+
+    Yields
+    ------
+    tuple
+        A combination of words and the constant to which it is equal.
+    """
     for small in range(1, weight // 2 + 1):
         for left in convergent_words(small, alternating):
             value = regularised_value(left)
@@ -162,12 +171,23 @@ def _basis(weight: int, alternating: bool) -> Iterator[tuple[dict[Word, Fraction
         yield {(0,) * (weight - 1) + (1,): Fraction(-1)}, zeta(weight)
     elif weight == 8:
         yield {(0, 0, 0, 0, 1, 0, 0, 1): Fraction(1)}, Constant.generator("zeta53")
-    if alternating and f"li{weight}half" in NAMES:
-        # x = t/(1 + t) maps [0, 1/2] to [0, 1]: dx/x = dt/t - dt/(1+t), dx/(1-x) = dt/(1+t)
-        words: dict[Word, Fraction] = {}
-        for head in product((0, -1), repeat=weight - 1):
-            add_scaled(words, {(*head, -1): Fraction(1)}, (-1) ** head.count(-1))
-        yield words, Constant.generator(f"li{weight}half")
+    if alternating:
+        for name, indices in AT_HALF.items():
+            if sum(indices) == weight:
+                yield _at_half(indices), Constant.generator(name)
+
+
+def _at_half(indices: Sequence[int]) -> dict[Word, Fraction]:
+    """The nested sum at 1/2 in words from 0 to 1.
+
+    ``x = t/(1 + t)`` maps [0, 1] to [0, 1/2]: dlog x = dlog t - dlog(1+t), dlog(x-1) = - dlog(1+t).
+    """
+    choices = [choice for s in indices for choice in [((0, 1), (-1, -1))] * (s - 1) + [((-1, -1),)]]
+    words: dict[Word, Fraction] = {}
+    for picked in product(*choices):
+        sign = prod(factor for _, factor in picked) * (-1) ** len(indices)
+        add_scaled(words, {tuple(letter for letter, _ in picked): Fraction(1)}, sign)
+    return words
 
 
 def _distribution(weight: int) -> Iterator[tuple[dict[Word, Fraction], Constant]]:

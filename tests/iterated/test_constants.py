@@ -62,6 +62,8 @@ def test_balls_of_the_generators_against_mpmath() -> None:
             "logsine4": -log_sine(3),
             "li4half": mp.polylog(4, 0.5),
             "li5half": mp.polylog(5, 0.5),
+            "li6half": mp.polylog(6, 0.5),
+            "li51half": mp.nsum(lambda n: mp.mpf(2) ** -n / n**5 * mp.harmonic(n - 1), [2, mp.inf]),
             "zeta53": mp.nsum(lambda n: n**-5 * (mp.zeta(3) - mp.zeta(3, n)), [1, mp.inf]),
         } | {f"zeta{n}": mp.zeta(n) for n in (3, 5, 7, 9, 11)}
         assert set(expected) == set(NAMES)

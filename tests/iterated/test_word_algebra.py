@@ -148,6 +148,26 @@ def test_all_words_at_one() -> None:
             assert polylog([Place(a) for a in arguments], Place(Fraction(1)), 30).overlaps(exact.ball(150))
 
 
+@pytest.mark.parametrize("side", [1, -1])
+@pytest.mark.parametrize(
+    ("arguments", "x"),
+    [
+        ((1,), "3"),
+        ((1, 2), "3"),
+        ((2, 1, 2, 1), "3"),
+        ((1, 0, 1), "2"),
+        ((0, 1, 1, 0), "2"),
+        (("1/2", 0, "1/2", 0), "1"),
+        ((1, 1, 1), "3"),
+    ],
+)
+def test_arguments_on_the_path(arguments: tuple[int | str, ...], x: str, side: int) -> None:
+    exact_arguments = [Fraction(a) for a in arguments]
+    exact = exact_polylog(exact_arguments, Fraction(x), side)
+    places = [Place(a, Fraction(0), side) for a in exact_arguments]
+    assert polylog(places, Place(Fraction(x)), 40).overlaps(exact.ball(200))
+
+
 def test_the_dilogarithm_at_one_half() -> None:
     """Li2(1/2) = pi^2/12 - log(2)^2/2 (Euler)."""
     assert str(exact_polylog([Fraction(0), Fraction(1)], Fraction(1, 2))) == "-pi^2/12 + log2^2/2"

@@ -19,6 +19,8 @@ _CONSTANTS = {
     "logsine4": "(-intnum(t = 0, 2*Pi/3, log(2*sin(t/2))^3))",
     "li4half": "polylog(4, 1/2)",
     "li5half": "polylog(5, 1/2)",
+    "li6half": "polylog(6, 1/2)",
+    "li51half": "suminf(n = 2, 2.^-n/n^5*sum(m = 1, n - 1, 1/m))",
     "zeta53": "zetamult([5, 3])",
     **{f"zeta{n}": f"zeta({n})" for n in (3, 5, 7, 9, 11)},
 }

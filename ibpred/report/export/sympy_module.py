@@ -38,6 +38,8 @@ _CONSTANTS = {
     "logsine4": 'Symbol("logsine4")',
     "li4half": "polylog(4, Rational(1, 2))",
     "li5half": "polylog(5, Rational(1, 2))",
+    "li6half": "polylog(6, Rational(1, 2))",
+    "li51half": 'Symbol("li51half")',
     "zeta53": 'Symbol("zeta53")',
     **{f"zeta{n}": f"zeta({n})" for n in (3, 5, 7, 9, 11)},
 }

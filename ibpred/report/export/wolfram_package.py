@@ -20,6 +20,8 @@ _CONSTANTS = {
     "logsine4": "logsine4",
     "li4half": "PolyLog[4, 1/2]",
     "li5half": "PolyLog[5, 1/2]",
+    "li6half": "PolyLog[6, 1/2]",
+    "li51half": "li51half",
     "zeta53": "zeta53",
     **{f"zeta{n}": f"Zeta[{n}]" for n in (3, 5, 7, 9, 11)},
 }
