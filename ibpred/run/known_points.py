@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 from fractions import Fraction
+from time import monotonic
 from typing import TYPE_CHECKING
 
 from ibpred.balls.decimal import DecimalBall
@@ -68,8 +69,13 @@ def auxiliary_at(chain: Chain, point: Mapping[str, Fraction], order: int, digits
     UnfinishedError
         If the method does not apply to the family, or the digits are not reached.
     """
+    begin = monotonic()
     plan = _plan(chain, point)
-    return auxiliary_values(plan, order, digits, process_sampler(chain.workers.width), chain.progress)
+    middle = monotonic()
+    values = auxiliary_values(plan, order, digits, process_sampler(chain.workers.width), chain.progress)
+    reductions, series = middle - begin, monotonic() - middle
+    chain.progress.stage(f"auxiliary mass: {reductions:.0f} s of reductions, {series:.0f} s of series")
+    return values
 
 
 def _plan(chain: Chain, point: Mapping[str, Fraction]) -> AuxiliaryPlan:

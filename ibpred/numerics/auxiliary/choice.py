@@ -11,21 +11,34 @@ from ibpred.numerics.auxiliary.families import MASS, with_mass
 from ibpred.numerics.auxiliary.plan import Flow
 from ibpred.numerics.auxiliary.reducer import Derived, Enlarged, Reducer
 from ibpred.sectors.analysis import SectorAnalysis, analyse
+from ibpred.sectors.critical import critical_points
 from ibpred.sectors.order import lines_of
 
 
 def places_for_mass(
     reducer: Reducer, family: FamilyDefinition, analysis: SectorAnalysis
 ) -> Iterator[tuple[int, Enlarged]]:
-    """Lines for the mass, one of those that a symmetry takes to each other, few masters first."""
-    found = []
+    """Lines for the mass, one of those that a symmetry takes to each other, few masters first.
+
+    Critical points tell about how many masters there will be (R.N. Lee, A.A. Pomeransky,
+    arXiv:1308.6676), for less than it takes to find them; that is done only for the lines that are asked for.
+    """
+    candidates = []
     for heavy in _inequivalent_lines(family, analysis):
         enlarged = with_mass(family, heavy)
         with_eta = analyse(enlarged)
-        masters = reducer.masters(enlarged, with_eta)
-        found.append((len(masters), heavy, Enlarged(enlarged, with_eta, masters)))
-    for _, heavy, place in sorted(found, key=lambda item: item[:2]):
-        yield heavy, place
+        candidates.append((_points(reducer, enlarged, with_eta), heavy, enlarged, with_eta))
+    for _, heavy, enlarged, with_eta in sorted(candidates, key=lambda item: item[:2]):
+        yield heavy, Enlarged(enlarged, with_eta, reducer.masters(enlarged, with_eta))
+
+
+def _points(reducer: Reducer, family: FamilyDefinition, analysis: SectorAnalysis) -> int:
+    """Critical points of the inequivalent sectors; one each where they are not isolated or too many."""
+    counts = (
+        critical_points(family, sector, reducer.primes[0], reducer.seed).count
+        for sector in analysis.representatives
+    )
+    return sum(1 if count is None else count for count in counts)
 
 
 def _inequivalent_lines(family: FamilyDefinition, analysis: SectorAnalysis) -> list[int]:
