@@ -69,9 +69,10 @@ def vertex_sunrise(eps: mpc) -> mpc:
 
 
 def finite_three_loop_propagators() -> dict[int, mpf]:
-    """Planar ladder, benz and non-planar graph with eight lines, at eps = 0: all are 20 zeta(5).
+    """Planar ladder and non-planar graph with eight lines, at eps = 0: both are 20 zeta(5).
 
     Chetyrkin, Kataev, Tkachov, Nucl. Phys. B174 (1980) 345; Chetyrkin, Tkachov, Nucl. Phys. B192 (1981) 159.
+    (The benz graph with eight lines is not finite: its soft region gives ``-2 zeta(3)/eps``.)
     The ladders are ``binomial(2L, L) zeta(2L-1)`` at L loops (Belokurov, Usyukina, J. Phys. A16 (1983) 2811).
     """
     return {0: 20 * zeta(5)}

@@ -28,6 +28,10 @@ from ibpred.progress import SILENT, Progress
 _SPARE_DIGITS = 6
 _PATIENCE = 6  # how far the working precision is raised, as a factor
 _ROUNDS = 3
+_TOLD = 8  # bits known of a value that tell how many were lost
+_SPARE_BITS = 24
+_SPARE_SHARE = 16  # and one of so many bits
+_EXACT = 1 << 30  # bits known of an exact value
 
 
 @dataclass(frozen=True)
@@ -107,23 +111,41 @@ def accurate_sample(plan: AuxiliaryPlan, task: Task) -> tuple[Ball, ...]:
 
 
 def _accurate(plan: AuxiliaryPlan, task: Task) -> tuple[tuple[Ball, ...], int]:
-    """The values, and the working precision that they took."""
+    """The values, and a working precision that suffices for them with little to spare."""
     bits, most = task.start_bits, _PATIENCE * task.start_bits
+    wanted = bits_for(task.digits)
     while True:
+        known = 0
         try:
             values = sampled(plan, task.eps, bits)
         except PrecisionError:
             if bits >= most:
                 raise
         else:
+            # the bits lost on the way are about the same at any precision
+            known = min((_known_bits(value) for value in values), default=wanted)
+            enough = bits + wanted - known + bits // _SPARE_SHARE + _SPARE_BITS
             if all(is_accurate(value, task.digits) for value in values):
-                return values, bits
+                return values, min(bits, enough)
             if bits >= most:
                 raise PrecisionError(
                     f"{plan.family}: the integrals at eps = {task.eps} are not known to {task.digits} digits "
                     f"at {bits} bits; ask for fewer digits"
                 )
-        bits = min(most, bits + bits // 2)
+        bits = min(most, enough if known > _TOLD else bits + bits // 2)
+
+
+def _known_bits(ball: Ball) -> int:
+    """Bits of a ball that are known, relative to its modulus, or absolutely where it holds zero."""
+    if not ball.is_finite():
+        return 0
+    with precision(64):
+        radius = flint.arb(ball.real.rad().max(ball.imag.rad()))
+        if not radius > 0:
+            return _EXACT
+        lower = ball.abs_lower()
+        size = flint.arb(lower) if lower > 0 else flint.arb(1)
+        return int(float(((size / radius).log() / flint.arb.const_log2()).lower()))
 
 
 def auxiliary_values(
