@@ -34,6 +34,8 @@ class ClosedForm:
         L.
     near_one, near_half
         Gamma(1 + b eps)^n and Gamma(1/2 + b eps)^n as b -> n.
+    half_turns
+        h: a further factor ``exp(i pi h eps)``, from scales that are negative in the region.
     """
 
     rational: Rational
@@ -42,6 +44,7 @@ class ClosedForm:
     loops: int
     near_one: Mapping[Fraction, int]
     near_half: Mapping[Fraction, int]
+    half_turns: Fraction = Fraction(0)
 
     @property
     def heaviness(self) -> int:
@@ -84,6 +87,8 @@ class ClosedForm:
                     total = total + log_of(number) * slope
                 for b, n in self.near_half.items():
                     total = total - log_of(Fraction(2)) * (2 * n * b)
+                if self.half_turns:
+                    total = total + Constant.generator("I") * Constant.generator("pi") * self.half_turns
             else:
                 factor = sum((n * (-b) ** k for b, n in self.near_one.items()), Fraction(0))
                 for b, n in self.near_half.items():
@@ -109,7 +114,8 @@ def on_line(form: GammaForm, values: Mapping[str, Rational], field: Ring) -> Clo
     values
         Each invariant as an element of `field`: the unit as +1 or -1, the others as their Euclidean
         sign times a ratio, or a function of the ratios, so that every scale of the form is positive for
-        positive ratios (in one ratio: for small ones).
+        positive ratios (in one ratio: for small ones). Outside the Euclidean region a scale z that is
+        linear in the invariants may be negative: a coefficient of F, it has -i0.
     field
         Q(eps, ratios).
 
@@ -129,6 +135,7 @@ def on_line(form: GammaForm, values: Mapping[str, Rational], field: Ring) -> Clo
             target = near_one if argument[0].denominator == 1 else near_half
             if argument[1] or target is near_half:
                 target[argument[1]] = target.get(argument[1], 0) + sign
+    half_turns = Fraction(0)
     letters: dict[Rational, Fraction] = {}
     numbers: dict[Fraction, Fraction] = {}
     for scale, (p, q) in form.scales:
@@ -146,8 +153,14 @@ def on_line(form: GammaForm, values: Mapping[str, Rational], field: Ring) -> Clo
             if not _positive_near_zero(letter):
                 letter, content = -letter, content * (-1) ** multiplicity
             letters[letter] = letters.get(letter, Fraction(0)) + q * multiplicity
-        if content <= 0:
-            raise BoundaryError(f"the scale {scale} is not positive in the Euclidean region")
+        if content < 0:
+            if not scale.is_polynomial() or scale.numerator.total_degree() != 1:
+                raise BoundaryError(
+                    f"the scale {scale} is negative in the region of the solution, and on which side of its "
+                    "branch point it lies is not known"
+                )
+            half_turns -= q
+            content = -content
         if content != 1:
             numbers[content] = numbers.get(content, Fraction(0)) + q
     return ClosedForm(
@@ -157,6 +170,7 @@ def on_line(form: GammaForm, values: Mapping[str, Rational], field: Ring) -> Clo
         form.loops,
         {b: n for b, n in near_one.items() if n},
         {b: n for b, n in near_half.items() if n},
+        half_turns,
     )
 
 

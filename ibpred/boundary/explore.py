@@ -46,6 +46,8 @@ class BoundaryProblem:
         Constants are wanted through ``eps^weight`` of the canonical functions.
     start
         All canonical functions are known to vanish before this power of eps; None where nothing is known.
+    real
+        Whether the functions are real for small positive ratios, as in the Euclidean region.
     """
 
     form: EpsilonForm
@@ -55,6 +57,7 @@ class BoundaryProblem:
     loops: int
     weight: int
     start: int | None = None
+    real: bool = True
 
     @property
     def heaviness(self) -> int:

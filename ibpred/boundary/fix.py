@@ -1,9 +1,10 @@
 """Boundary constants from all conditions at once: one linear system over Q, solved exactly.
 
 The vector at a corner is ``c = sum_k eps^k c^(k)``, each c^(k) an unknown rational combination of monomials
-in the real constants of weight at most k (counted from the row's first order). Conditions at other points are
-transported to the corner and compared monomial by monomial, real and imaginary parts apart. Conditions that
-follow from the others are kept as evidence: they could have failed.
+in the constants of weight at most k (counted from the row's first order), real in a Euclidean region, with
+``i pi`` among them outside it. Conditions at other points are transported to the corner and compared monomial
+by monomial, real and imaginary parts apart. Conditions that follow from the others are kept as evidence: they
+could have failed.
 """
 
 from __future__ import annotations
@@ -213,7 +214,7 @@ def _solve(
     extra = _as_conditions(fitted, len(problem.masters), last - min(starts))
     for count, gathered in enumerate(explore(problem, last, last - min(starts), progress), start=1):
         gathered = Gathered((*gathered.conditions, *extra), gathered.unused)
-        outcome = solve_all(gathered.conditions, starts, weight, last, progress)
+        outcome = solve_all(gathered.conditions, starts, weight, last, problem.real, progress)
         if not outcome.open and count >= _LEAST_CORNERS:
             break
     return outcome, gathered

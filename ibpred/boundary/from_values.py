@@ -39,11 +39,12 @@ def fitted_constants(
     complaint
         What is open and what is known.
     values
-        ``values[k][i]``: canonical function i at ``eps^(first + k)``, real, at the point.
+        ``values[k][i]``: canonical function i at ``eps^(first + k)``, at the point; of a real problem only
+        the real part is used.
     first
         An order before which all functions vanish.
     point
-        Positive ratios.
+        Positive ratios; no letter vanishes on the way to them, unless the functions are regular there.
     digits
         To which the words are computed, at least those of the values.
     generators, odds
@@ -74,7 +75,8 @@ def fitted_constants(
                 row.append(complaint.known.get((order, i), ZERO))
                 continue
             with precision(bits_for(digits) + 64):
-                rest = type(value)((value - part).real)
+                rest = value - part
+                rest = type(rest)(rest.real) if problem.real else rest
             fit = recognise(rest, weights, generators, odds)
             if fit is None:
                 raise BoundaryError(

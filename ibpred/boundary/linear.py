@@ -21,6 +21,7 @@ from ibpred.iterated.generators import (
     GENERATORS,
     NAMES,
     Monomial,
+    is_odd,
     monomial_weight,
     monomials_of_weight,
     multiply_monomials,
@@ -98,6 +99,7 @@ def solve_all(
     starts: Sequence[int],
     weight: int,
     last: int,
+    real: bool,
     progress: Progress = SILENT,
 ) -> Outcome:
     """Solve for all components through ``eps^weight``, with equations through ``eps^last``.
@@ -110,6 +112,8 @@ def solve_all(
         First order of each component; its weight at order k is at most k minus it.
     weight, last
         See above.
+    real
+        Whether the boundary vector is real; else ``i pi`` is among its constants.
     progress
         Told about the conditions used.
 
@@ -118,17 +122,17 @@ def solve_all(
     BoundaryError
         If conditions contradict each other.
     """
-    steps = _steps(system)
+    ansatz = _ansatz(system, real)
     _check_weights(system, min(starts), last)
     values: dict[Unknown, Fraction] = {}
     counts = [(0, 0)] * len(system)
     open_pairs: set[tuple[int, int]] = set()
     for deficit in range(min(starts), weight + 1):
-        columns = _columns(starts, deficit, last, steps)
+        columns = _columns(starts, deficit, last, ansatz)
         echelon = flint.fmpq_mat(0, len(columns) + 1)
         for index, item in enumerate(system):
             progress.advance(index, len(system))
-            rows = _equations(item, columns, deficit, last, steps)
+            rows = _equations(item, columns, deficit, last, ansatz)
             before = echelon.nrows()
             echelon = _extended(echelon, rows, len(columns))
             if _contradicts(echelon):
@@ -158,8 +162,36 @@ def _check_weights(system: Sequence[Transported], first: int, last: int) -> None
                     )
 
 
-def _steps(system: Sequence[Transported]) -> dict[str, int]:
-    """Generators of the ansatz, with the step of their exponents."""
+@dataclass(frozen=True)
+class _Ansatz:
+    """Generators that boundary constants may hold, with the step of their exponents.
+
+    Attributes
+    ----------
+    steps
+        For the real ones.
+    phases
+        Whether odd monomials, the imaginary parts of iterated integrals, come with I.
+    factors
+        Powers of I that may multiply each monomial.
+    """
+
+    steps: Mapping[str, int]
+    phases: bool
+    factors: tuple[int, ...]
+
+    def monomials(self, weight: int) -> tuple[Monomial, ...]:
+        """All monomials of one weight."""
+        found = monomials_of_weight(weight, self.steps)
+        if self.phases:
+            return tuple((int(is_odd(m)), *m[1:]) for m in found)
+        return tuple((power, *m[1:]) for m in found for power in self.factors)
+
+
+_PI = NAMES.index("pi")
+
+
+def _ansatz(system: Sequence[Transported], real: bool) -> _Ansatz:
     used = {"pi", "zeta3", "zeta5", "zeta7", "zeta9", "zeta53"}
     odd = False
     for item in system:
@@ -170,24 +202,25 @@ def _steps(system: Sequence[Transported]) -> dict[str, int]:
             for constant in value.coefficients if value is not None else ():
                 for monomial, _ in constant.terms():
                     used |= {NAMES[i] for i, e in enumerate(monomial) if e}
-                    odd = odd or bool(monomial[NAMES.index("pi")] % 2)
-    # real boundary vectors hold pi in even powers, unless a closed form says otherwise
+                    odd = odd or (bool(monomial[_PI] % 2) if real else is_odd(monomial))
+    # real boundary vectors hold pi in even powers, others i pi, unless a closed form says otherwise
     names = [g.name for g in GENERATORS if g.name in used and g.name != "I"]
-    return {name: 2 if name == "pi" and not odd else 1 for name in names}
+    steps = {name: 2 if name == "pi" and real and not odd else 1 for name in names}
+    return _Ansatz(steps, not real and not odd, (0,) if real else (0, 1))
 
 
-def _columns(starts: Sequence[int], deficit: int, last: int, steps: Mapping[str, int]) -> dict[Unknown, int]:
+def _columns(starts: Sequence[int], deficit: int, last: int, ansatz: _Ansatz) -> dict[Unknown, int]:
     columns: dict[Unknown, int] = {}
     for k in range(deficit, last + 1):
         for i, start in enumerate(starts):
             if start <= deficit:
-                for monomial in monomials_of_weight(k - deficit, steps):
+                for monomial in ansatz.monomials(k - deficit):
                     columns[k, i, monomial] = len(columns)
     return columns
 
 
 def _equations(
-    item: Transported, columns: Mapping[Unknown, int], deficit: int, last: int, steps: Mapping[str, int]
+    item: Transported, columns: Mapping[Unknown, int], deficit: int, last: int, ansatz: _Ansatz
 ) -> list[dict[int, Any]]:
     """Nonzero equations of one condition: column -> coefficient, the right-hand side in column -1."""
     result: list[dict[int, Any]] = []
@@ -196,7 +229,7 @@ def _equations(
             continue
         rows: dict[tuple[int, Monomial], dict[int, Any]] = {}
         for j in range(order - deficit + 1):
-            for right in monomials_of_weight(order - j - deficit, steps):
+            for right in ansatz.monomials(order - j - deficit):
                 for left, entries in item.orders[j]:
                     sign, product = multiply_monomials(left, right)
                     for r, i, value in entries:

@@ -48,11 +48,25 @@ def region_values(
 
 
 def closed_form_on_line(
-    family: FamilyDefinition, powers: Powers, values: Mapping[str, Rational], field: Ring
+    family: FamilyDefinition, powers: Powers, values: Mapping[str, Rational], field: Ring, real: bool
 ) -> ClosedForm | None:
-    """The closed form of an integral in terms of the ratios, where there is one."""
+    """The closed form of an integral in terms of the ratios, where there is one.
+
+    Raises
+    ------
+    BoundaryError
+        If it has a phase where all should be `real`; also as `ibpred.boundary.expansion.on_line`.
+    """
     form = gamma_form(family, powers)
-    return None if form is None else on_line(form, values, field)
+    if form is None:
+        return None
+    found = on_line(form, values, field)
+    if real and found.half_turns:
+        raise BoundaryError(
+            f"{master_label(family, powers)} is not real for small positive ratios: its scales are not "
+            "positive in the Euclidean region"
+        )
+    return found
 
 
 def one_scale_values(
@@ -90,7 +104,7 @@ def one_scale_values(
     values = region_values(family, signs, field, ())
     found = []
     for powers in masters:
-        closed = closed_form_on_line(family, powers, values, field)
+        closed = closed_form_on_line(family, powers, values, field, True)
         if closed is not None:
             found.append(expand(closed, order))
         elif powers in fitted and fitted[powers].end >= order:
@@ -109,7 +123,7 @@ def without_closed_form(
     """The masters of a family without a ratio that are no products of Gamma functions: to be fitted."""
     field = ring(("eps",))
     values = region_values(family, signs, field, ())
-    return tuple(p for p in masters if closed_form_on_line(family, p, values, field) is None)
+    return tuple(p for p in masters if closed_form_on_line(family, p, values, field, True) is None)
 
 
 def master_label(family: FamilyDefinition, powers: Powers) -> str:
@@ -145,7 +159,7 @@ def boundary_problem(
         If the number of ratios does not fit.
     """
     values = region_values(family, signs, form.ring, form.variables)
-    return problem_in_variables(family, masters, form, values, weight)
+    return problem_in_variables(family, masters, form, values, weight, True)
 
 
 def problem_in_variables(
@@ -154,26 +168,31 @@ def problem_in_variables(
     form: EpsilonForm,
     values: Mapping[str, Rational],
     weight: int,
+    real: bool,
 ) -> BoundaryProblem:
-    """As `boundary_problem`, for a form in other variables than the ratios.
+    """As `boundary_problem`, for a form in other variables than the ratios, or another region.
 
     Parameters
     ----------
     family, masters, form, weight
         As there.
     values
-        The invariants in terms of the form's variables, over its field, the unit +1 or -1. The Euclidean
-        region must touch the corner where all variables are small and positive.
+        The invariants in terms of the form's variables, over its field, the unit +1 or -1. The region must
+        touch the corner where all variables are small and positive.
+    real
+        Whether the region is Euclidean. Else only closed forms are used, with their phases: how the other
+        masters behave is read off F where it is positive.
     """
     known = []
     for powers in masters:
-        closed = closed_form_on_line(family, powers, values, form.ring)
+        closed = closed_form_on_line(family, powers, values, form.ring, real)
         known.append(Master(master_label(family, powers), closed, powers))
     return BoundaryProblem(
         form,
         tuple(known),
-        parametric_family(family, values),
+        parametric_family(family, values) if real else None,
         tuple(reversed(form.variables)),
         len(family.loops),
         weight,
+        real=real,
     )

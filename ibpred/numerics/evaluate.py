@@ -139,6 +139,7 @@ def evaluate_places(
     order: int,
     digits: int,
     max_bits: int,
+    certified: bool = True,
 ) -> tuple[tuple[Value, ...], ...]:
     """Values of integrals, rigorous given the canonical system and its boundary constants.
 
@@ -156,6 +157,8 @@ def evaluate_places(
         Wanted digits of every coefficient, relative to its modulus.
     max_bits
         Highest working precision.
+    certified
+        Whether the values count as certified: whether the constants are derived, not fitted.
 
     Returns
     -------
@@ -206,7 +209,7 @@ def evaluate_places(
             Value(
                 row.powers,
                 {power: decimal_ball(ball, digits + _SPARE_DIGITS) for power, ball in coefficients.items()},
-                certified=True,
+                certified=certified,
                 route=Route.EPSILON_FORM,
             )
             for row, coefficients in zip(place.rows, of_place, strict=True)

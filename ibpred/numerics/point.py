@@ -65,24 +65,10 @@ def kinematic_point(
     InputError
         If an invariant's dimension is no multiple of the unit's.
     """
-    for name in values:
-        if name not in signs:
-            near = get_close_matches(name, signs, n=1)
-            hint = f"did you mean {near[0]!r}?" if near else f"known are {', '.join(signs) or 'none'}"
-            raise PointError(f"the point gives a value for an unknown invariant {name!r}; {hint}")
-    missing = [name for name in signs if name not in values]
-    if missing:
-        raise PointError(f"the point lacks a value for {', '.join(missing)}; give every invariant")
-    phases: dict[str, int] = {}
-    for name, sign in signs.items():
-        value = values[name]
-        if value == 0:
-            raise PointError(f"the point is singular: {name} = 0; choose another value")
-        if name in masses and value < 0:
-            raise PointError(f"the squared mass {name} = {value} is negative; give a positive value")
-        phases[name] = 0 if sign * value > 0 else -1
+    kept = checked_values(values, signs, masses)
+    phases = {name: 0 if sign * kept[name] > 0 else -1 for name, sign in signs.items()}
     if unit is None:
-        return KinematicPoint(dict(values), Target(Fraction(1), 0), {})
+        return KinematicPoint(kept, Target(Fraction(1), 0), {})
     size = abs(values[unit])
     ratios = {}
     for name in signs:
@@ -101,4 +87,31 @@ def kinematic_point(
                 "the principal sheet; choose another unit"
             )
         ratios[name] = Target(abs(values[name]) / size**power, turns)
-    return KinematicPoint({name: values[name] for name in signs}, Target(size, phases[unit]), ratios)
+    return KinematicPoint(kept, Target(size, phases[unit]), ratios)
+
+
+def checked_values(
+    values: Mapping[str, Fraction], known: Collection[str], masses: Collection[str]
+) -> dict[str, Fraction]:
+    """The values of all invariants, in the order of those known.
+
+    Raises
+    ------
+    PointError
+        If invariants are missing, unknown or zero, or a squared mass is negative.
+    """
+    for name in values:
+        if name not in known:
+            near = get_close_matches(name, known, n=1)
+            hint = f"did you mean {near[0]!r}?" if near else f"known are {', '.join(known) or 'none'}"
+            raise PointError(f"the point gives a value for an unknown invariant {name!r}; {hint}")
+    missing = [name for name in known if name not in values]
+    if missing:
+        raise PointError(f"the point lacks a value for {', '.join(missing)}; give every invariant")
+    for name in known:
+        value = values[name]
+        if value == 0:
+            raise PointError(f"the point is singular: {name} = 0; choose another value")
+        if name in masses and value < 0:
+            raise PointError(f"the squared mass {name} = {value} is negative; give a positive value")
+    return {name: values[name] for name in known}

@@ -15,6 +15,7 @@ from ibpred.exact.polynomial import polynomial_text
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.polynomials import symanzik
+from ibpred.family.signs import euclidean_signs, region_signs
 from ibpred.iterated.alphabet import Letter, RootLetter
 from ibpred.iterated.solution import Product, Solution, function_text, named_letters
 from ibpred.numerics.value import Value
@@ -234,7 +235,8 @@ def solution_data(family: FamilyDefinition, boundary: Boundary, solution: Soluti
     """What `solve` prints: canonical functions by order, and the boundary constants at the corner.
 
     A term holds one word for each level; with one ratio at most this is its ``word``. Letters that are not
-    linear in the ratio of their level have names in the texts, which ``named`` explains.
+    linear in the ratio of their level have names in the texts, which ``named`` explains. The functions hold
+    in the Euclidean region and wherever i0 leads from there; a family without one names its ``region``.
     """
     names = [[_level_letter_text(letter) for letter in level.letters] for level in solution.levels]
     functions = []
@@ -261,8 +263,10 @@ def solution_data(family: FamilyDefinition, boundary: Boundary, solution: Soluti
                     constant["fitted"] = {"digits": fit.digits, "odds": f"1e{fit.odds}"}
                 constants.append(constant)
     short = {name: _level_letter_text(letter) for letter, name in named_letters(solution.levels).items()}
+    region = _region(family, solution)
     return {
         "family": family.name,
+        **({"region": region} if region else {}),
         "letters": list(dict.fromkeys(name for level in names for name in level)),
         **({"named": short} if short else {}),
         "corner": list(boundary.corner),
@@ -273,6 +277,18 @@ def solution_data(family: FamilyDefinition, boundary: Boundary, solution: Soluti
         "functions": functions,
         "constants": constants,
     }
+
+
+def _region(family: FamilyDefinition, solution: Solution) -> list[str]:
+    """Where the constants hold, for a family without a Euclidean region; empty for any other."""
+    if euclidean_signs(family) is not None:
+        return []
+    found = [f"{name} {'>' if sign > 0 else '<'} 0" for name, sign in region_signs(family).items()]
+    for level in solution.levels:
+        roots = [root.to_fraction() for root in level.roots() if root is not None and not root.variables()]
+        nearest = min((root for root in roots if root > 0), default=None)
+        found.append(f"{level.variable} > 0" if nearest is None else f"0 < {level.variable} < {nearest}")
+    return found
 
 
 def _term(product: Product, coefficient: str, names: Sequence[Sequence[str]]) -> Data:

@@ -140,6 +140,13 @@ def _solution(data: Data) -> str:
         ]
         for name, letter in data["named"].items():
             lines.append(f"- ${expression_latex(name)} = {expression_latex(letter)}$")
+    if "region" in data:
+        lines += [
+            "",
+            "No signs of the invariants make $F$ positive; these functions hold for "
+            + ", ".join(f"${text}$" for text in data["region"])
+            + ".",
+        ]
     symbol = "f" if data["letters"] else "I"
     for function in data["functions"]:
         lines.append("")

@@ -209,6 +209,8 @@ def solution_text(data: Data) -> str:
     """The canonical functions order by order."""
     lines = [f"letters: {', '.join(data['letters']) or 'none'}"]
     lines += [f"{name} = {letter}" for name, letter in data.get("named", {}).items()]
+    if "region" in data:
+        lines.append(f"region: {', '.join(data['region'])}")
     for function in data["functions"]:
         lines.append("")
         for entry in function["orders"]:
@@ -239,10 +241,13 @@ def values_text(data: Data) -> str:
 
 def accuracy_text(value: Data) -> str:
     """What the radii of a value mean, and how it was obtained."""
+    route = value.get("route")
+    if route == "epsilon-form":
+        return (
+            f"{'rigorous balls' if value['certified'] else 'balls given fitted constants'}, from the {route}"
+        )
     kind = "rigorous balls" if value["certified"] else "estimated errors"
-    if not value.get("route"):
-        return kind
-    return f"{kind}, {'from the' if value['route'] == 'epsilon-form' else 'by'} {value['route']}"
+    return f"{kind}, by {route}" if route else kind
 
 
 def run_text(data: Data) -> str:

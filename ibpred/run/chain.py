@@ -26,9 +26,10 @@ from ibpred.epsform.variables import RootVariables, Variables, root_variables
 from ibpred.errors import BoundaryError, ObstructionError, UnfinishedError
 from ibpred.exact.codec import to_data
 from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.family.signs import euclidean_signs
+from ibpred.family.signs import euclidean_signs, region_signs
 from ibpred.identities.rows import family_identities
 from ibpred.iterated.solution import Solution, constant_solution, solve_orders
+from ibpred.numerics.channels import Channel
 from ibpred.numerics.value import Value
 from ibpred.progress import Expired, Progress, never
 from ibpred.reduction.choice import choose_masters
@@ -38,6 +39,7 @@ from ibpred.reduction.several import reduce_together
 from ibpred.reduction.table import ReductionTable
 from ibpred.reduction.wanted import check_powers
 from ibpred.report.text import integral_text
+from ibpred.run.channel_constants import channel_boundary
 from ibpred.run.fitted_constants import boundary_of_series, completed_by_fits, one_scale_boundary
 from ibpred.run.normalisation import normalised, trivial_form
 from ibpred.run.rows import table_rows
@@ -189,11 +191,12 @@ class Chain(Stages):
         )
 
     def signs(self) -> dict[str, int]:
-        """Signs of the invariants where the ratios are positive: the Euclidean region's, if there is one."""
-        found = euclidean_signs(self.definition)
-        if found is None:
-            return {invariant.name: 1 for invariant in self.definition.invariants}
-        return found
+        """Signs of the invariants in the region of the solution, where the ratios are positive."""
+        return region_signs(self.definition)
+
+    def is_euclidean(self) -> bool:
+        """Whether that region is the Euclidean one."""
+        return euclidean_signs(self.definition) is not None
 
     def coordinates(self) -> Coordinates:
         """Dimensionless variables: the ratios, the user's, or those in which square roots are rational."""
@@ -281,8 +284,8 @@ class Chain(Stages):
         if found is None:
             raise UnfinishedError(
                 f"{self.definition.name} has no Euclidean region (no signs of its invariants make F "
-                "positive), and boundary constants are determined from one; its differential equations and "
-                "epsilon-form stand without it, and `evaluate --at` gives values in a physical region"
+                "positive), and without a ratio, or in other variables than ratios, its boundary constants "
+                "are determined from one; `evaluate --at` gives values in a physical region"
             )
         return found
 
@@ -332,10 +335,21 @@ class Chain(Stages):
             caught = error
         return self._kept("boundary with fits", Boundary, weight, compute)
 
+    def boundary_in(self, channel: Channel, weight: int) -> Boundary:
+        """Boundary constants of a region of a family without a Euclidean region."""
+        if channel.is_base():
+            return self.completed_boundary(weight)
+        problem = self._boundary_problem(self.solved_form(), weight)
+        return self._kept(
+            "boundary of a region",
+            Boundary,
+            [weight, to_data(channel)],
+            lambda: channel_boundary(self, problem, channel),
+        )
+
     def _boundary_problem(self, form: EpsilonForm, weight: int) -> BoundaryProblem:
-        self.euclidean_signs()
         values, masters = self.coordinates().values, self.masters().masters
-        problem = problem_in_variables(self.definition, masters, form, values, weight)
+        problem = problem_in_variables(self.definition, masters, form, values, weight, self.is_euclidean())
         if weight <= 0:
             return problem
         # where the functions begin is seen at the first orders, and saves transports of high order

@@ -15,7 +15,7 @@ from ibpred.report.export.material import Material
 from ibpred.report.json_tables import differential_data, epsilon_data, solution_data, values_data
 from ibpred.run.chain import Chain
 from ibpred.run.files import read_family_file
-from ibpred.run.points import euclidean_point, physical_point
+from ibpred.run.points import sample_points
 
 Data = dict[str, Any]
 
@@ -98,11 +98,9 @@ def chain_material(chain: Chain, order: int, digits: int) -> Material:
         singular = [root for root in letter_roots(letters, variables[0]) if root is not None]
     tables = []
     try:
-        usual = signs if signs is not None else chain.signs()
-        for point in (euclidean_point(family, usual), physical_point(family, usual, singular)):
-            if point is not None:
-                values = chain.evaluate(point, (), order, digits)
-                tables.append(values_data(family, point, digits, values))
+        for point in sample_points(family, chain.signs(), signs is not None, singular):
+            values = chain.evaluate(point, (), order, digits)
+            tables.append(values_data(family, point, digits, values))
     except UnfinishedError as error:
         notes.append(f"no boundary values: {error}")
     return Material(family, differential, epsilon, solution, tuple(tables), signs, tuple(notes))

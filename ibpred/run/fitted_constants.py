@@ -22,25 +22,26 @@ from ibpred.errors import BoundaryError, UnfinishedError
 from ibpred.family.definition import Powers
 from ibpred.family.signs import masses
 from ibpred.iterated.series import Series, eps_valuation, laurent
+from ibpred.iterated.solution import letter_roots
 from ibpred.run.known_points import KnownPoint, known_points, new_point
 
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
 
-_DIGITS = (40, 90)
+DIGITS = (40, 90)
 """Of the values; the next where a constant is not recognised."""
 
-_ONE_SCALE_DIGITS = (*_DIGITS, 180)
+_ONE_SCALE_DIGITS = (*DIGITS, 180)
 """Likewise where no condition helps: masters of mixed weight need many constants."""
 
-_ODDS = -12
+ODDS = -12
 """A fit is believed if chance would give one as good once in 10^12."""
 
 _RATIOS = (Fraction(1, 3), Fraction(1, 5), Fraction(1, 7), Fraction(1, 11), Fraction(1, 13))
 
 
-def _generators(chain: Chain) -> tuple[str, ...]:
-    """Massless integrals of one scale give multiple zeta values, massive ones alternating sums as well."""
+def generators_of(chain: Chain) -> tuple[str, ...]:
+    """What constants are made of: multiple zeta values, where lines have masses alternating sums as well."""
     return ALTERNATING if masses(chain.definition) else SINGLE_SCALE
 
 
@@ -65,7 +66,7 @@ def one_scale_boundary(chain: Chain, order: int) -> Boundary:
         chain.progress.stage(f"values of {len(missing)} masters without a closed form")
         point = {name: Fraction(sign) for name, sign in signs.items()}
         for digits in _ONE_SCALE_DIGITS:
-            known = _values_at(chain, point, order, digits)
+            known = values_at(chain, point, order, digits)
             try:
                 series, fitted = _recognised(chain, known, missing, order, digits)
                 break
@@ -76,7 +77,7 @@ def one_scale_boundary(chain: Chain, order: int) -> Boundary:
     return replace(boundary_of_series(exact), fitted=tuple(fitted))
 
 
-def _values_at(chain: Chain, point: Mapping[str, Fraction], order: int, digits: int) -> KnownPoint:
+def values_at(chain: Chain, point: Mapping[str, Fraction], order: int, digits: int) -> KnownPoint:
     """The masters at a point, kept from before or computed now."""
     for known in known_points(chain):
         if dict(known.point) == dict(point) and known.order >= order and known.digits >= digits:
@@ -98,7 +99,7 @@ def _recognised(
                 if k <= order
             }
             loops = len(chain.definition.loops)
-            series[powers], fits = recognise_series(values, loops, _alphabets(chain), _ODDS)
+            series[powers], fits = recognise_series(values, loops, _alphabets(chain), ODDS)
             fitted += _marked(row, series[powers].start, fits)
     return series, fitted
 
@@ -136,19 +137,21 @@ def completed_by_fits(chain: Chain, problem: BoundaryProblem, complaint: Boundar
         raise complaint
     chain.progress.stage("values for the constants that no condition fixes")
     form = problem.form
-    ratios = dict(zip(form.variables, _RATIOS, strict=False))
+    ratios = near_corner(problem)
     values = chain.coordinates().values
     point = {name: value.substitute(dict(ratios)).to_fraction() for name, value in values.items()}
     start = min(lowest_orders(problem))
-    needed = problem.weight - min(eps_valuation(e) for row in form.inverse for e in row if e)
-    for digits in _DIGITS:
+    needed = max(
+        order - eps_valuation(entry) for order, row in complaint.open for entry in form.inverse[row] if entry
+    )
+    for digits in DIGITS:
         try:
-            known = _values_at(chain, point, needed, digits)
+            known = values_at(chain, point, needed, digits)
             bits = 2 * bits_for(digits)
             numbers = [{k: ball_of_decimal(v, bits) for k, v in master.items()} for master in known.values]
-            functions = _canonical(form, ratios, numbers, start, problem.weight, bits)
+            functions = canonical_values(form, ratios, numbers, start, problem.weight, bits)
             fits = fitted_constants(
-                problem, complaint, functions, start, ratios, digits, _generators(chain), _ODDS
+                problem, complaint, functions, start, ratios, digits, generators_of(chain), ODDS
             )
             return fix_constants(problem, fits, chain.progress)
         except UnfinishedError as error:
@@ -158,7 +161,34 @@ def completed_by_fits(chain: Chain, problem: BoundaryProblem, complaint: Boundar
     raise BoundaryError(f"{complaint}. A fit from values failed: {failure}") from failure
 
 
-def _canonical(
+def near_corner(problem: BoundaryProblem) -> dict[str, Fraction]:
+    """Small positive ratios at which the functions are taken.
+
+    Raises
+    ------
+    UnfinishedError
+        If the functions are not known to be regular between the corner and such a point.
+    """
+    form = problem.form
+    ratios = dict(zip(form.variables, _RATIOS, strict=False))
+    if problem.real:
+        return ratios
+    if len(form.variables) > 1:
+        raise UnfinishedError(
+            "outside a Euclidean region constants are fitted in one ratio; this form has "
+            f"{', '.join(form.variables)}"
+        )
+    roots = [root for root in letter_roots(form.letters, form.variables[0]) if root is None or root > 0]
+    if None in roots:
+        raise UnfinishedError(
+            "outside a Euclidean region constants are fitted where all letters are linear; the letters are "
+            f"{', '.join(str(letter) for letter in form.letters)}"
+        )
+    nearest = min((root for root in roots if root is not None), default=Fraction(1))
+    return {name: value * nearest for name, value in ratios.items()}
+
+
+def canonical_values(
     form: EpsilonForm,
     ratios: Mapping[str, Fraction],
     masters: Sequence[Mapping[int, Ball]],

@@ -12,7 +12,9 @@ from ibpred.errors import UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import masses
 from ibpred.family.units import integral_dimension
+from ibpred.iterated.solution import letter_roots
 from ibpred.numerics.canonical import CanonicalSystem, canonical_system
+from ibpred.numerics.channels import Channel, channel_of, scattering_point
 from ibpred.numerics.evaluate import Functions, InOneRatio, InSeveralRatios, Place, WithRoots, evaluate_places
 from ibpred.numerics.masters import Row, integral_row, master_rows, needed_order
 from ibpred.numerics.path import Target
@@ -49,8 +51,8 @@ def form_values(
             f"it is in the variables {', '.join(chain.coordinates().names)}, in which values are taken at "
             "one point and carried from there"
         )
-    chosen = [place_of(chain, point) for point in points]
     form = chain.solved_form()
+    chosen = [place_of(chain, point) for point in points]
     named = [dict(zip(form.variables, place.ratios.values(), strict=False)) for place in chosen]
     for ratios in named:
         refuse_singular_point(form, ratios)
@@ -64,11 +66,49 @@ def form_values(
         places.append(Place(rows, ratios, place.unit))
     rows_of_all = [row for place in places for row in place.rows]
     weight = max(needed_order(rows_of_all, order) or 0, 2 * len(family.loops))
-    boundary = chain.boundary(weight)
-    chain.progress.stage("values")
-    ceiling = bits_ceiling(digits)
-    functions = form_functions(form, boundary)
-    return evaluate_places(functions, boundary.constants, boundary.start, places, order, digits, ceiling)
+    found: dict[int, tuple[Value, ...]] = {}
+    groups: dict[Channel | None, list[int]] = {}
+    for number, place in enumerate(chosen):
+        groups.setdefault(channel_at(chain, form, place), []).append(number)
+    for channel, group in groups.items():
+        boundary = boundary_in(chain, channel, weight)
+        chain.progress.stage("values")
+        values = evaluate_places(
+            form_functions(form, boundary),
+            boundary.constants,
+            boundary.start,
+            [places[number] for number in group],
+            order,
+            digits,
+            bits_ceiling(digits),
+            certified=not boundary.fitted,
+        )
+        found |= dict(zip(group, values, strict=True))
+    return tuple(found[number] for number in range(len(places)))
+
+
+def channel_at(chain: Chain, form: EpsilonForm, place: KinematicPoint) -> Channel | None:
+    """The region of a point that has constants of its own; None where one set serves all regions.
+
+    Raises
+    ------
+    UnfinishedError
+        If the regions are not known.
+    """
+    if chain.is_euclidean():
+        return None
+    if len(form.variables) != 1:
+        raise UnfinishedError(
+            "the regions of a family without a Euclidean region are known in one ratio only; this form has "
+            f"{', '.join(form.variables)}"
+        )
+    (ratio,) = place.ratios.values()
+    return channel_of(ratio.value, place.unit.half_turns, letter_roots(form.letters, form.variables[0]))
+
+
+def boundary_in(chain: Chain, channel: Channel | None, weight: int) -> Boundary:
+    """The constants of a region; None for all that i0 connects with the Euclidean one: derived ones only."""
+    return chain.boundary(weight) if channel is None else chain.boundary_in(channel, weight)
 
 
 def bits_ceiling(digits: int) -> int:
@@ -90,9 +130,12 @@ def form_functions(form: EpsilonForm, boundary: Boundary) -> Functions:
 def place_of(chain: Chain, point: Mapping[str, Fraction]) -> KinematicPoint:
     """A point of the family with the prescriptions of its invariants."""
     family = chain.definition
-    signs = chain.euclidean_signs()
+    signs = chain.signs()
     dimensions = {invariant.name: invariant.dimension for invariant in family.invariants}
-    return kinematic_point(point, signs, family.unit, dimensions, masses(family))
+    if chain.is_euclidean():
+        return kinematic_point(point, signs, family.unit, dimensions, masses(family))
+    assert family.unit is not None
+    return scattering_point(point, signs, family.unit, dimensions, masses(family))
 
 
 def unit_exponent(family: FamilyDefinition, powers: Powers) -> tuple[Fraction, Fraction]:
@@ -121,7 +164,7 @@ def _integral_rows(
     family = chain.definition
     unit = Fraction(1)
     if family.unit is not None:
-        unit = chain.euclidean_signs()[family.unit] * place.values[family.unit]
+        unit = chain.signs()[family.unit] * place.values[family.unit]
     rows = []
     for powers in wanted:
         combination = dict(table.reductions[powers])

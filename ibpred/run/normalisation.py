@@ -6,7 +6,7 @@ from collections.abc import Callable, Iterable
 from dataclasses import replace
 
 from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import fix_constants
+from ibpred.boundary.fix import OpenConstantsError, fix_constants
 from ibpred.epsform.form import EpsilonForm, Obstructed
 from ibpred.epsform.matrices import identity, scaled
 from ibpred.epsform.parity import involution, with_parity
@@ -23,7 +23,7 @@ def normalised(
     """Choose functions of definite parity where a variable has a symmetry, beginning at ``eps^0``.
 
     The differential equation is blind to a power of eps that multiplies all of them; the boundary
-    constants tell it. Where they stay open no power is taken out.
+    constants tell it: where some stay open, those that are known.
 
     Parameters
     ----------
@@ -44,10 +44,19 @@ def normalised(
             found = with_parity(found, name, symmetry)
     try:
         found = _scaled(found, 1 / _first_factor(found, problem(found)))
-        start = fix_constants(problem(found)).start
+        start = _first_order(problem(found))
     except UnfinishedError:
         return found
     return _scaled(found, found.ring.variable("eps") ** -start)
+
+
+def _first_order(problem: BoundaryProblem) -> int:
+    """The power of eps at which the first function that is known begins."""
+    try:
+        return fix_constants(problem).start
+    except OpenConstantsError as error:
+        orders = [order for (order, _), constant in error.known.items() if constant]
+        return min(orders, default=0)
 
 
 def trivial_form(count: int) -> EpsilonForm:

@@ -1,4 +1,4 @@
-"""The points at which a whole run evaluates: one Euclidean, one physical where there is one."""
+"""The points at which a whole run evaluates: one Euclidean, one physical, or two of the same region."""
 
 from __future__ import annotations
 
@@ -15,6 +15,27 @@ from ibpred.family.signs import masses
 _SIZES = (Fraction(1, 3), Fraction(2, 7), Fraction(3, 11), Fraction(5, 13))
 
 
+def sample_points(
+    family: FamilyDefinition, signs: Mapping[str, int], euclidean: bool, singular: Collection[Fraction]
+) -> tuple[dict[str, Fraction], ...]:
+    """One Euclidean point, and a physical one where there is one; or two points of the solution's region.
+
+    Parameters
+    ----------
+    family, signs
+        The family, and the signs of the region in which it is solved.
+    euclidean
+        Whether that region is Euclidean.
+    singular
+        Finite singular points of the ratio.
+    """
+    if not euclidean:
+        return points_in_region(family, signs, singular)
+    further = physical_point(family, signs, singular)
+    first = euclidean_point(family, signs)
+    return (first,) if further is None else (first, further)
+
+
 def euclidean_point(family: FamilyDefinition, signs: Mapping[str, int]) -> dict[str, Fraction]:
     """The unit at modulus one, the others at different sizes below one, all of Euclidean sign."""
     sizes = iter(_SIZES)
@@ -23,6 +44,24 @@ def euclidean_point(family: FamilyDefinition, signs: Mapping[str, int]) -> dict[
         size = Fraction(1) if invariant.name == family.unit else next(sizes, Fraction(1, 2 * number + 3))
         point[invariant.name] = signs[invariant.name] * size
     return point
+
+
+def points_in_region(
+    family: FamilyDefinition, signs: Mapping[str, int], singular: Collection[Fraction]
+) -> tuple[dict[str, Fraction], dict[str, Fraction]]:
+    """Two points in the region of the solution of a family without a Euclidean region.
+
+    Parameters
+    ----------
+    family, signs
+        The family, and the signs of that region.
+    singular
+        Finite singular points of the ratio.
+    """
+    nearest = min((root for root in singular if root > 0), default=Fraction(1))
+    first = euclidean_point(family, signs)
+    scaled = {name: v if name == family.unit else v * nearest for name, v in first.items()}
+    return scaled, {name: v if name == family.unit else 2 * v for name, v in scaled.items()}
 
 
 def physical_point(

@@ -33,7 +33,7 @@ from ibpred.report.json_tables import (
 from ibpred.report.summary import Effort, Stage, summary
 from ibpred.run.chain import Chain
 from ibpred.run.files import check_writable, write_folder
-from ibpred.run.points import euclidean_point, physical_point, singular_ratios
+from ibpred.run.points import sample_points, singular_ratios
 from ibpred.run.stages import SEED
 from ibpred.sectors.order import sector_of
 
@@ -268,16 +268,13 @@ def _values(chain: Chain, journal: _Journal, form: EpsilonForm | Obstructed | No
     """The masters at a Euclidean and a physical point, by the route that is open."""
     family = chain.definition
     signs = chain.signs()
-    point = euclidean_point(family, signs)
     singular: list[Fraction] = []
     if not isinstance(form, EpsilonForm):
         singular = singular_ratios(family, signs, regular_locus(chain.derivation().system))
     elif form.variables:
         singular = [root for root in letter_roots(form.letters, form.variables[0]) if root is not None]
     tables, total, routes = [], 0.0, set()
-    for where in (point, physical_point(family, signs, singular)):
-        if where is None:
-            continue
+    for where in sample_points(family, signs, chain.is_euclidean(), singular):
         try:
             values, seconds = journal.timed(partial(chain.evaluate, where, (), 0, digits))
         except (UnfinishedError, PointError) as error:

@@ -9,10 +9,10 @@ from mpmath import euler, exp, expjpi, gamma, mp, mpc, mpf
 from ibpred.boundary.expansion import ClosedForm, expand, on_line
 from ibpred.boundary.gamma import EpsLinear, GammaForm, gamma_form
 from ibpred.boundary.local import class_sum, contributions
-from ibpred.boundary.problem import one_scale_values
+from ibpred.boundary.problem import closed_form_on_line, one_scale_values
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import ring
-from ibpred.iterated.constants import Constant
+from ibpred.iterated.constants import Constant, sum_of
 
 NUMBERS = ring(("eps",))
 
@@ -92,11 +92,30 @@ def test_the_ratio_is_kept_as_a_power() -> None:
         expand(on_the_box_line((0, 1, 0, 1)), 2)
 
 
-def test_negative_scales_are_refused() -> None:
-    form = gamma_form(family("bubble"), (1, 1))
-    assert form is not None
-    with pytest.raises(BoundaryError, match="not positive"):
-        on_line(form, {"s": NUMBERS.one}, NUMBERS)
+def test_negative_scales_are_refused_where_all_should_be_real() -> None:
+    with pytest.raises(BoundaryError, match="not real"):
+        closed_form_on_line(family("bubble"), (1, 1), {"s": NUMBERS.one}, NUMBERS, True)
+
+
+def test_a_negative_scale_has_its_i0() -> None:
+    """The bubble at s = 1 is ``(-1 - i0)^-eps = exp(i pi eps)`` times that at s = -1."""
+    above = closed_form_on_line(family("bubble"), (1, 1), {"s": NUMBERS.one}, NUMBERS, False)
+    below = closed_form_on_line(family("bubble"), (1, 1), {"s": -NUMBERS.one}, NUMBERS, False)
+    assert above is not None
+    assert below is not None
+    assert (above.half_turns, below.half_turns) == (1, 0)
+    pi, real = Constant.generator("I") * Constant.generator("pi"), expand(below, 2)
+    phase = [Constant.rational(1), pi, pi**2 / 2, pi**3 / 6]
+    for k in range(-1, 3):
+        product = sum_of(real.coefficient(j) * phase[k - j] for j in range(-1, k + 1))
+        assert expand(above, 2).coefficient(k) == product
+
+
+def test_the_side_of_a_product_of_scales_is_not_guessed() -> None:
+    s, t = ring(("s", "t")).variable("s"), ring(("s", "t")).variable("t")
+    form = GammaForm(1, Fraction(1), (linear("1", "1"),), (), ((s * t, linear("0", "-1")),))
+    with pytest.raises(BoundaryError, match="side of its branch point"):
+        on_line(form, {"s": FIELD.one, "t": -X}, FIELD)
 
 
 def test_wrong_euler_constant_is_noticed() -> None:

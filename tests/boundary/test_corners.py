@@ -136,7 +136,7 @@ def test_a_change_of_variables() -> None:
     )
     values = region_values(family("box-one-leg"), SIGNS, TWO, ("x", "y"))
     values = {name: v.substitute(moved) for name, v in values.items()}
-    other = problem_in_variables(family("box-one-leg"), LEG_BOX_MASTERS, changed, values, 2)
+    other = problem_in_variables(family("box-one-leg"), LEG_BOX_MASTERS, changed, values, 2, True)
     assert fix_constants(other).constants == fix_constants(problem(2)).constants
 
 

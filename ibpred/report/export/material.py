@@ -113,6 +113,8 @@ def conventions(material: Material) -> tuple[str, ...]:
         for i, row in enumerate(family.gram):
             for j in range(i + 1):
                 lines.append(f"  {family.external[j]}.{family.external[i]} = {row[j]}")
+    if material.solution is not None and "region" in material.solution:
+        lines.append(f"The solution holds for {', '.join(material.solution['region'])}.")
     lines += [f"Note: {note}" for note in material.notes]
     return tuple(_harmless(line) for line in lines)
 
