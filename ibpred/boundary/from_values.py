@@ -9,7 +9,7 @@ from ibpred.balls.accuracy import bits_for
 from ibpred.balls.context import Ball, precision
 from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.fix import Fitted, OpenConstantsError
-from ibpred.boundary.recognise import recognise
+from ibpred.boundary.recognise import blurred, recognise
 from ibpred.errors import BoundaryError
 from ibpred.iterated.constants import ZERO, Constant
 from ibpred.iterated.solution import Solution, solve_orders
@@ -75,7 +75,7 @@ def fitted_constants(
                 row.append(complaint.known.get((order, i), ZERO))
                 continue
             with precision(bits_for(digits) + 64):
-                rest = value - part
+                rest = blurred(value - part, digits)
                 rest = type(rest)(rest.real) if problem.real else rest
             fit = recognise(rest, weights, generators, odds)
             if fit is None:

@@ -105,6 +105,20 @@ def recognise(value: Ball, weights: Sequence[int], generators: Sequence[str], od
     return Fit(total, min(digits), max(worst))
 
 
+def blurred(value: Ball, digits: int) -> Ball:
+    """A value whose exact parts are known to so many digits only.
+
+    What vanishes within the errors of a numerical method is given as an exact zero; it supports a fit with
+    the digits of the method, no more.
+    """
+    parts = []
+    for part in (value.real, value.imag):
+        if part.rad().is_zero():
+            part = part + flint.arb(0, flint.arb(10) ** -digits)
+        parts.append(part)
+    return flint.acb(*parts)
+
+
 def _fit(number: RealBall, basis: Sequence[Monomial], odds: int) -> tuple[Constant, int, int] | None:
     """Constant, digits and odds for a real number."""
     if not number.is_finite():

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 import flint
 
 from ibpred.balls.context import Ball, precision
-from ibpred.boundary.recognise import Fit, recognise
+from ibpred.boundary.recognise import Fit, blurred, recognise
 from ibpred.errors import BoundaryError
 from ibpred.iterated.constants import Constant
 from ibpred.numerics.canonical import CanonicalSystem
@@ -21,6 +21,7 @@ def constants_at_base(
     target: Target,
     generators: Sequence[str],
     odds: int,
+    digits: int,
     bits: int,
 ) -> tuple[tuple[tuple[Constant, ...], ...], tuple[tuple[Fit, ...], ...]]:
     """Recognise the boundary constants at x -> 0+ of functions that are known at one point, order by order.
@@ -38,6 +39,8 @@ def constants_at_base(
         The point, reached from x -> 0+ as in `ibpred.numerics.path`.
     generators, odds
         As for `ibpred.boundary.recognise.recognise`.
+    digits
+        To which the values are known at least.
     bits
         Working precision of the continuation.
 
@@ -60,7 +63,7 @@ def constants_at_base(
         found = []
         for i, (value, part) in enumerate(zip(vector, lower, strict=True)):
             with precision(bits):
-                rest = value - part
+                rest = blurred(value - part, digits)
             fit = recognise(rest, (weight,), generators, odds)
             if fit is None:
                 raise BoundaryError(

@@ -243,9 +243,8 @@ def accuracy_text(value: Data) -> str:
     """What the radii of a value mean, and how it was obtained."""
     route = value.get("route")
     if route == "epsilon-form":
-        return (
-            f"{'rigorous balls' if value['certified'] else 'balls given fitted constants'}, from the {route}"
-        )
+        kind = "rigorous balls" if value["certified"] else "balls given fitted constants"
+        return f"{kind}, from the {route}"
     kind = "rigorous balls" if value["certified"] else "estimated errors"
     return f"{kind}, by {route}" if route else kind
 

@@ -61,6 +61,7 @@ def channel_boundary(chain: Chain, problem: BoundaryProblem, channel: Channel) -
                 channel.target(ratio),
                 generators_of(chain),
                 ODDS,
+                digits,
                 bits,
             )
         except BoundaryError as error:

@@ -126,7 +126,7 @@ REGIONS = (Target(Fraction(3), 0), Target(Fraction(1, 2), 1), Target(Fraction(2,
 @pytest.mark.parametrize("target", REGIONS)
 def test_constants_are_recognised_from_any_region(target: Target) -> None:
     system = canonical_system(box_at_positive_s())
-    constants, fits = constants_at_base(system, values(target, 300), target, SINGLE_SCALE, -12, 300)
+    constants, fits = constants_at_base(system, values(target, 300), target, SINGLE_SCALE, -12, 40, 300)
     assert list(constants) == continued()
     assert max(fit.odds for line in fits for fit in line) <= -12
 
@@ -137,4 +137,4 @@ def test_what_is_no_such_constant_is_told() -> None:
     here[2][2] += Constant.read("log2^2").ball(300) / 7
     system = canonical_system(box_at_positive_s())
     with pytest.raises(BoundaryError, match="canonical function 3 at relative order 2"):
-        constants_at_base(system, here, target, SINGLE_SCALE, -12, 300)
+        constants_at_base(system, here, target, SINGLE_SCALE, -12, 40, 300)
