@@ -15,6 +15,7 @@ from ibpred.diffeq.derive import singular_locus
 from ibpred.diffeq.system import DifferentialSystem
 from ibpred.errors import PointError
 from ibpred.exact.grammar import parse_number
+from ibpred.numerics.crossings import crossings
 from ibpred.numerics.expanded import expanded_system
 from ibpred.numerics.laurent_line import carry_laurent, laurent_line, line_depth, regular_locus, spread
 
@@ -26,7 +27,7 @@ Data = Mapping[str, Any]
 
 
 def carried_check(
-    system: DifferentialSystem, signs: Mapping[str, int], start: Data, end: Data
+    system: DifferentialSystem, signs: Mapping[str, int] | None, start: Data, end: Data
 ) -> CheckResult | None:
     """Carry the masters from one table to the point of another and compare.
 
@@ -38,9 +39,10 @@ def carried_check(
     system
         The differential equations.
     signs
-        Euclidean signs of the invariants.
+        Euclidean signs of the invariants; None where there are none, so that no threshold may be passed.
     start, end
-        Tables of values as `evaluate` prints them, of all masters in order; the first at a Euclidean point.
+        Tables of values as `evaluate` prints them, of all masters in order; the first at a Euclidean point if
+        there is one.
 
     Returns
     -------
@@ -60,8 +62,13 @@ def carried_check(
         return None
     full = expanded_system(system, depth)
     locus = regular_locus(_with_locus(system))
-    turns = {name: -sign for name, sign in signs.items()}
+    if signs is None:
+        turns = dict.fromkeys(system.variables, 0)
+    else:
+        turns = {name: -sign for name, sign in signs.items()}
     try:
+        if signs is None and crossings(locus, _point(start), _point(end), turns):
+            return None
         line = laurent_line(full, locus, _point(start), _point(end), turns)
     except PointError:
         return None
@@ -74,12 +81,13 @@ def carried_check(
             if not all(_agree(got.get(k), told.get(k)) for k in orders):
                 wrong.append(str(number))
     place = ", ".join(f"{name} = {value}" for name, value in end["point"].items())
+    origin = "the Euclidean point" if signs is not None else "another point of the region"
     detail = (
-        f"the masters at {place} through eps^{highest} follow from those at the Euclidean point to "
+        f"the masters at {place} through eps^{highest} follow from those at {origin} to "
         f"{min(_DIGITS, int(start['digits']))} digits"
     )
     if wrong:
-        detail = f"masters {', '.join(wrong)} at {place} do not follow from the Euclidean point"
+        detail = f"masters {', '.join(wrong)} at {place} do not follow from {origin}"
     return CheckResult("continuation", not wrong, detail)
 
 

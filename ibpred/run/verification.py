@@ -69,7 +69,7 @@ def _checks(material: Material, samples: int, progress: Progress) -> Iterator[Ch
     progress.stage("differential equation")
     yield from check_system(system, family, primes, _SEED)
     yield check_samples(system, family, analysis, primes, _SEED, progress)
-    if material.tables and material.signs is not None and system.variables:
+    if material.tables and system.variables:
         first, *others = material.tables
         progress.stage("continuation")
         for table in others:
