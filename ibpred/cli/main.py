@@ -15,6 +15,7 @@ from ibpred.cli.export import export
 from ibpred.cli.inspect import inspect
 from ibpred.cli.masters import masters
 from ibpred.cli.reduce import reduce
+from ibpred.cli.report import report
 from ibpred.cli.run import run
 from ibpred.cli.solve import solve
 from ibpred.cli.verify import verify
@@ -30,7 +31,7 @@ def group() -> None:
     """
 
 
-for command in (inspect, masters, reduce, diffeq, epsform, solve, evaluate, export, run, verify):
+for command in (inspect, masters, reduce, diffeq, epsform, solve, evaluate, export, run, report, verify):
     group.add_command(command)
 
 

@@ -12,6 +12,8 @@ from ibpred.report.text import values_text
 
 Data = Mapping[str, Any]
 
+_WORK = "## Work"
+
 
 @dataclass(frozen=True)
 class Stage:
@@ -181,9 +183,20 @@ def _evidence(data: Data) -> str:
     return "\n".join(lines)
 
 
+def read_stages(text: str) -> tuple[Stage, ...]:
+    """The stages of a run from its summary; none where the summary has no such table."""
+    found = []
+    for line in text.partition(_WORK)[2].splitlines():
+        cells = [cell.strip() for cell in line.strip("| ").split("|")]
+        if line.startswith("|") and len(cells) == 3:
+            found.append(Stage(*cells))
+    return tuple(found[2:])  # after the head of the table and the line below it
+
+
 def _stages(stages: Sequence[Stage], effort: Effort | None) -> str:
-    lines = ["## Work", "", "| stage | outcome | seconds |", "| --- | --- | --- |"]
-    lines += [f"| {s.name} | {s.outcome} | {s.seconds} |" for s in stages]
+    lines = [_WORK, "", "| stage | outcome | seconds |", "| --- | --- | --- |"]
+    # a cell of the table holds no line breaks and no bars
+    lines += [f"| {s.name} | {' '.join(s.outcome.split()).replace('|', '/')} | {s.seconds} |" for s in stages]
     if effort is not None:
         lines += [
             "",

@@ -35,24 +35,31 @@ def folder_material(folder: Path) -> Material:
             "give a folder that `ibpred run` wrote, or a family file"
         )
     family = read_family_file(families[0])
-    differential = _document(folder / "diffeq.json")
+    differential = document(folder / "diffeq.json")
     if differential is None:
         raise InputError(f"{folder} holds no diffeq.json; run `ibpred run {families[0]}` first")
-    values = _document(folder / "values.json")
+    values = document(folder / "values.json")
     tables = tuple(values["tables"]) if values is not None else ()
     notes = () if tables else ("the folder holds no values, so there are no boundary values.",)
     return Material(
         family,
         differential,
-        _document(folder / "epsform.json"),
-        _document(folder / "solution.json"),
+        document(folder / "epsform.json"),
+        document(folder / "solution.json"),
         tables,
         euclidean_signs(family),
         notes,
     )
 
 
-def _document(path: Path) -> Data | None:
+def document(path: Path) -> Data | None:
+    """The JSON object of a file; None where there is no file.
+
+    Raises
+    ------
+    InputError
+        If it cannot be read.
+    """
     if not path.exists():
         return None
     try:

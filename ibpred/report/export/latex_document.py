@@ -7,6 +7,22 @@ from collections.abc import Sequence
 from ibpred.report.export.material import Data, Material, ratio_equation
 from ibpred.report.latex import expression_latex, integral_latex
 
+_SPECIAL = {
+    "\\": r"\textbackslash{}",
+    "~": r"\textasciitilde{}",
+    "^": r"\textasciicircum{}",
+    "<": "$<$",
+    ">": "$>$",
+    "|": "$|$",
+    "ε": r"$\epsilon$",
+    "γ": r"$\gamma$",
+    "π": r"$\pi$",
+    "−": "$-$",
+    "×": r"$\times$",
+    "²": "${}^2$",
+    **{c: f"\\{c}" for c in "&%$#_{}"},
+}
+
 _HEAD = r"""\documentclass{article}
 \usepackage{amsmath}
 \allowdisplaybreaks
@@ -14,10 +30,18 @@ _HEAD = r"""\documentclass{article}
 """
 
 
-def latex_document(material: Material) -> str:
-    """A document that compiles by itself; every section can be pasted into a paper."""
+def latex_document(material: Material, closing: Sequence[str] = ()) -> str:
+    """A document that compiles by itself; every section can be pasted into a paper.
+
+    Parameters
+    ----------
+    material
+        The results.
+    closing
+        More sections, in LaTeX, for the end.
+    """
     family = material.family
-    parts = [_HEAD + rf"\section*{{{_plain(family.title)}}}"]
+    parts = [_HEAD + rf"\section*{{{plain_latex(family.title)}}}"]
     loops = len(family.loops)
     factor = r"e^{\epsilon\gamma_E}" if loops == 1 else rf"e^{{{loops}\epsilon\gamma_E}}"
     parts.append(
@@ -33,17 +57,13 @@ def latex_document(material: Material) -> str:
         parts.append(_solution(material.solution))
     for table in material.tables:
         parts.append(_values(family.name, table))
+    parts += closing
     return "\n\n".join(parts) + "\n\\end{document}\n"
 
 
-def _plain(text: str) -> str:
-    special = {
-        "\\": r"\textbackslash{}",
-        "~": r"\textasciitilde{}",
-        "^": r"\textasciicircum{}",
-        **{c: f"\\{c}" for c in "&%$#_{}"},
-    }
-    return "".join(special.get(c, c) for c in text)
+def plain_latex(text: str) -> str:
+    """Prose in LaTeX: what is special there is written out, Greek letters become formulas."""
+    return "".join(_SPECIAL.get(c, c) for c in text)
 
 
 def _masters(material: Material) -> str:
