@@ -104,17 +104,18 @@ def carry_laurent(
     line
         The line; its depth must be ``highest + max r - lowest + 1``.
     values
-        Laurent coefficients of every master at the start, through ``highest`` plus the spread.
+        Laurent coefficients of every master at the start, that of number i through
+        ``highest + max r - r_i``.
     lowest
         The lowest power of any ``eps^(r_i) I_i``.
     highest
-        Highest power wanted at the end.
+        Highest power of all masters at the end.
     bits
         Working precision.
 
     Returns
     -------
-    For each master its coefficients from the lowest power it can have on.
+    For each master its coefficients from the lowest power it can have on, as far as at the start.
     """
     top = highest + max(line.shifts)
     if line.depth != top - lowest + 1:
@@ -130,7 +131,7 @@ def carry_laurent(
         with precision(bits):
             orders = [_applied(blocks, orders, k) for k in range(line.depth)]
     return tuple(
-        {lowest + k - shift: orders[k][i, 0] for k in range(line.depth) if lowest + k - shift <= highest}
+        {lowest + k - shift: orders[k][i, 0] for k in range(line.depth)}
         for i, shift in enumerate(line.shifts)
     )
 

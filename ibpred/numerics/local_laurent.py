@@ -218,3 +218,30 @@ def _add(
 def order_depth(shifts: Sequence[int], lowest: int, highest: int) -> int:
     """How many orders lead from ``eps^lowest`` of the rescaled masters to ``eps^highest`` of all of them."""
     return max(highest + max(shifts) - lowest + 1, 1)
+
+
+def values_at(
+    system: LocalSystem, constants: LocalConstants, h: Fraction, bits: int
+) -> tuple[dict[int, Ball], ...]:
+    """The masters at a distance from their local constants; the other way round than `matched`.
+
+    Returns
+    -------
+    For every master power of eps -> coefficient; number i ends r_i orders below the system's last one.
+    """
+    size, depth = len(system.shifts), system.depth
+    with precision(bits):
+        x = complex_ball(h, 0, bits)
+        log = x.log()
+    orders = [flint.acb_mat(size, 1) for _ in range(depth)]
+    for number, part in enumerate(system.classes):
+        table = frobenius_values(Local(system.point, part), x, log, None, bits).table()
+        with precision(bits):
+            blocks = [flint.acb_mat(table[k * size : (k + 1) * size]) for k in range(depth)]
+            for k in range(depth):
+                for j in range(k + 1):
+                    orders[k] = orders[k] + blocks[j] * constants.orders[k - j][number]
+    return tuple(
+        {constants.lowest + k - shift: orders[k][i, 0] for k in range(depth)}
+        for i, shift in enumerate(system.shifts)
+    )

@@ -15,6 +15,7 @@ class Route(Enum):
     """How a value was obtained."""
 
     EPSILON_FORM = "epsilon-form"
+    REGIONS = "regions at a corner"
     CONTINUATION = "continuation"
     AUXILIARY_MASS = "auxiliary mass"
 

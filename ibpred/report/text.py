@@ -239,6 +239,9 @@ def values_text(data: Data) -> str:
     return "\n".join(lines)
 
 
+_STARTS = ("regions at a corner", "limit of the expansion there")
+
+
 def accuracy_text(value: Data) -> str:
     """What the radii of a value mean, and how it was obtained."""
     route = value.get("route")
@@ -246,7 +249,9 @@ def accuracy_text(value: Data) -> str:
         kind = "rigorous balls" if value["certified"] else "balls given fitted constants"
         return f"{kind}, from the {route}"
     kind = "rigorous balls" if value["certified"] else "estimated errors"
-    return f"{kind}, by {route}" if route else kind
+    if not route:
+        return kind
+    return f"{kind}, {'from the' if route in _STARTS else 'by'} {route}"
 
 
 def run_text(data: Data) -> str:

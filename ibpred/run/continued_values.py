@@ -1,7 +1,8 @@
-"""Routes two and three to numbers: continuation from a known point, or the auxiliary mass at the point.
+"""Routes to numbers that need no epsilon-form in the ratios: continuation from a point where the masters are
+known, or the auxiliary mass at the point itself.
 
-Neither needs an epsilon-form. The known points come from the auxiliary-mass method; their errors are
-estimates, and so are those of the values.
+Points with rigorous radii come from an epsilon-form in other variables or from the regions at a corner of the
+kinematics, others from the auxiliary-mass method; their errors are estimates, and so are those of the values.
 """
 
 from __future__ import annotations
@@ -26,6 +27,7 @@ from ibpred.numerics.expanded import ExpandedSystem, expanded_system
 from ibpred.numerics.laurent_line import carry_laurent, laurent_line, line_depth, regular_locus, spread
 from ibpred.numerics.power_series import EPSILON
 from ibpred.numerics.value import Route, Value
+from ibpred.run.corner_start import corner_values
 from ibpred.run.known_points import KnownPoint, known_points, new_point
 from ibpred.run.lifted_point import lifted_point
 from ibpred.run.points import euclidean_point
@@ -36,6 +38,8 @@ if TYPE_CHECKING:
 _SPARE_DIGITS = 12  # of a known point, lost on the way to others
 _SPARE_BITS = 120
 _ROUNDS = 2
+_STATION_DIGITS = 4  # of a point reached before, lost on the way to its neighbours
+_NEIGHBOURS = 3
 
 Point = Mapping[str, Fraction]
 Masters = tuple[Mapping[int, Ball], ...]
@@ -48,6 +52,14 @@ class Found:
     masters: Masters
     route: Route
     certified: bool = False
+
+
+@dataclass(frozen=True)
+class Station:
+    """A point at which the masters are at hand through some power of eps."""
+
+    point: Point
+    found: Found
 
 
 def continued_values(
@@ -64,16 +76,24 @@ def continued_values(
     UnfinishedError
         If the auxiliary-mass method does not apply to the family.
     """
-    found = []
+    values = []
+    stations: list[Station] = []
     for done, point in enumerate(points):
         chain.progress.advance(done, len(points))
-        found.append(_at_point(chain, point, wanted, order, digits))
-    return tuple(found)
+        found, station = _at_point(chain, point, wanted, order, digits, stations)
+        values.append(found)
+        stations.append(station)
+    return tuple(values)
 
 
 def _at_point(
-    chain: Chain, point: Point, wanted: Sequence[Powers], order: int, digits: int
-) -> tuple[Value, ...]:
+    chain: Chain,
+    point: Point,
+    wanted: Sequence[Powers],
+    order: int,
+    digits: int,
+    stations: Sequence[Station],
+) -> tuple[tuple[Value, ...], Station]:
     _check_point(chain, point)
     count = len(chain.masters().masters)
     names = list(wanted) if wanted else list(chain.masters().masters)
@@ -87,14 +107,14 @@ def _at_point(
     results: list[dict[int, Ball]] = []
     for round_ in range(_ROUNDS):
         bits = 2 * bits_for(asked) + _SPARE_BITS
-        found = masters_at(chain, point, needed, asked, bits)
+        found = masters_at(chain, point, needed, asked, bits, () if round_ else stations)
         results = [_combined(total, found.masters, order, bits) for total in sums]
         missing = [ball for result in results for ball in result.values() if not is_accurate(ball, digits)]
         if not missing or round_ == _ROUNDS - 1:
             break
         chain.progress.stage(f"{len(missing)} coefficients lack digits; once more with more")
         asked += digits // 2 + _SPARE_DIGITS
-    return tuple(
+    values = tuple(
         Value(
             tuple(powers),
             {k: decimal_ball(ball, digits + 2) for k, ball in result.items()},
@@ -103,6 +123,7 @@ def _at_point(
         )
         for powers, result in zip(names, results, strict=True)
     )
+    return values, Station(point, found)
 
 
 def _check_point(chain: Chain, point: Point) -> None:
@@ -162,61 +183,134 @@ def _combined(total: Mapping[int, Rational], masters: Masters, order: int, bits:
     return kept
 
 
-def masters_at(chain: Chain, point: Point, highest: int, digits: int, bits: int) -> Found:
-    """The masters through ``eps^highest``, by continuation where a way leads from a known point."""
-    for known in known_points(chain):
-        if dict(known.point) == dict(point) and known.order >= highest and known.digits >= digits:
-            return Found(_balls(known, highest, bits), Route.AUXILIARY_MASS)
+def masters_at(
+    chain: Chain, point: Point, highest: int, digits: int, bits: int, stations: Sequence[Station] = ()
+) -> Found:
+    """The masters through ``eps^highest``, by continuation where a way leads from a known point.
+
+    Parameters
+    ----------
+    chain
+        The family's chain.
+    point
+        A regular point.
+    highest
+        Highest power of eps.
+    digits
+        Digits wanted, where they have to be chosen beforehand.
+    bits
+        Working precision.
+    stations
+        Points that were reached before, to as high a power of eps.
+
+    Raises
+    ------
+    UnfinishedError
+        If no way is open.
+    """
     signs = euclidean_signs(chain.definition)
     system = chain.derivation().system
     if not system.variables:
-        return Found(_balls(new_point(chain, point, highest, digits), highest, bits), Route.AUXILIARY_MASS)
-    reduced = expanded_system(system, 0)
-    top = highest + spread(reduced)
-    lifted = _lifted(chain, point, highest, top, digits, signs, bits)
-    if lifted is not None:
-        return lifted
-    usable = [k for k in known_points(chain) if k.order >= top and k.digits >= digits + _SPARE_DIGITS]
-    for known in _by_way(chain, usable, point, signs):
-        return Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
-    if signs is None:
-        found = new_point(chain, point, top, digits + _SPARE_DIGITS)
-        return Found(_balls(found, highest, bits), Route.AUXILIARY_MASS)
-    base = euclidean_point(chain.definition, signs)
-    if dict(base) == dict(point) or not list(_by_way(chain, [_empty(base)], point, signs)):
-        found = new_point(chain, point, top, digits + _SPARE_DIGITS)
-        return Found(_balls(found, highest, bits), Route.AUXILIARY_MASS)
-    known = new_point(chain, base, top, digits + _SPARE_DIGITS)
-    return Found(_carried(chain, known, point, highest, signs, bits), Route.CONTINUATION)
+        return _by_auxiliary_mass(chain, point, highest, digits, highest, bits)
+    near = _nearest(chain, stations, point, signs, digits)
+    if near is not None:
+        return _from_station(chain, near, point, highest, signs, bits)
+    top = highest + spread(expanded_system(system, 0))
+    for start in _certain_starts(chain, highest, top, digits + _SPARE_DIGITS, bits):
+        if start.point == dict(point):
+            return start.found
+        if list(_by_way(chain, [start], point, signs)):
+            return _from_station(chain, start, point, highest, signs, bits)
+    for known in known_points(chain):
+        if dict(known.point) == dict(point) and known.order >= highest and known.digits >= digits:
+            return Found(_balls(known, highest, bits), Route.AUXILIARY_MASS)
+    usable = [
+        _station(known, bits)
+        for known in known_points(chain)
+        if known.order >= top and known.digits >= digits + _SPARE_DIGITS
+    ]
+    for start in _by_way(chain, usable, point, signs):
+        return _from_station(chain, start, point, highest, signs, bits)
+    if signs is not None:
+        base = euclidean_point(chain.definition, signs)
+        empty = Station(base, Found((), Route.AUXILIARY_MASS))
+        if base != dict(point) and list(_by_way(chain, [empty], point, signs)):
+            start = _station(new_point(chain, base, top, digits + _SPARE_DIGITS), bits)
+            return _from_station(chain, start, point, highest, signs, bits)
+    return _by_auxiliary_mass(chain, point, top, digits + _SPARE_DIGITS, highest, bits)
 
 
-def _lifted(
-    chain: Chain,
-    point: Point,
-    highest: int,
-    top: int,
-    digits: int,
-    signs: Mapping[str, int] | None,
-    bits: int,
-) -> Found | None:
-    """The masters from a solved epsilon-form in variables other than the ratios: rigorous."""
-    if chain.in_ratios():
-        return None
+def _by_auxiliary_mass(chain: Chain, point: Point, top: int, digits: int, highest: int, bits: int) -> Found:
+    return Found(_balls(new_point(chain, point, top, digits), highest, bits), Route.AUXILIARY_MASS)
+
+
+def _station(known: KnownPoint, bits: int) -> Station:
+    return Station(dict(known.point), Found(_balls(known, known.order, bits), Route.CONTINUATION))
+
+
+def _certain_starts(chain: Chain, highest: int, top: int, digits: int, bits: int) -> Iterator[Station]:
+    """Points where the masters are known with rigorous radii."""
+    if not chain.in_ratios():
+        try:
+            known = lifted_point(chain, top, digits)
+        except PrecisionError:
+            raise
+        except UnfinishedError as error:
+            chain.progress.stage(f"no values from an epsilon-form ({error})")
+        else:
+            masters = _balls(known, known.order, bits)
+            yield Station(dict(known.point), Found(masters, Route.EPSILON_FORM, True))
     try:
-        known = lifted_point(chain, top, digits + _SPARE_DIGITS)
+        place, values = corner_values(chain, highest, bits)
     except PrecisionError:
         raise
-    except UnfinishedError:
-        return None
-    if dict(known.point) == dict(point):
-        return Found(_balls(known, highest, bits), Route.EPSILON_FORM, True)
-    if not list(_by_way(chain, [known], point, signs)):
-        return None
-    return Found(_carried(chain, known, point, highest, signs, bits), Route.EPSILON_FORM, True)
+    except UnfinishedError as error:
+        chain.progress.stage(f"no values from regions ({error})")
+    else:
+        yield Station(dict(place), Found(values, Route.REGIONS, True))
 
 
-def _empty(point: Point) -> KnownPoint:
-    return KnownPoint(point, 0, 0, ())
+def _nearest(
+    chain: Chain,
+    stations: Sequence[Station],
+    point: Point,
+    signs: Mapping[str, int] | None,
+    digits: int,
+) -> Station | None:
+    """The nearest point reached before, if no singularity lies between and it has digits to spare."""
+    sharp = [
+        station
+        for station in stations
+        if all(
+            is_accurate(ball, digits + _STATION_DIGITS)
+            for master in station.found.masters
+            for ball in master.values()
+        )
+    ]
+    sharp.sort(key=lambda station: _distance(station.point, point))
+    locus = regular_locus(chain.derivation().system)
+    for station in sharp[:_NEIGHBOURS]:
+        if station.point == point or not crossings(locus, station.point, point, _turns(chain, signs)):
+            return station
+    return None
+
+
+def _distance(one: Point, other: Point) -> float:
+    return sum(float(abs(one[name] - other[name]) / (abs(one[name]) + abs(other[name]) or 1)) for name in one)
+
+
+def _from_station(
+    chain: Chain,
+    start: Station,
+    point: Point,
+    highest: int,
+    signs: Mapping[str, int] | None,
+    bits: int,
+) -> Found:
+    if start.point == point:
+        return start.found
+    masters = _carried(chain, start, point, highest, signs, bits)
+    return Found(masters, start.found.route, start.found.certified)
 
 
 def _turns(chain: Chain, signs: Mapping[str, int] | None) -> dict[str, int]:
@@ -226,8 +320,8 @@ def _turns(chain: Chain, signs: Mapping[str, int] | None) -> dict[str, int]:
 
 
 def _by_way(
-    chain: Chain, known: Sequence[KnownPoint], point: Point, signs: Mapping[str, int] | None
-) -> Iterator[KnownPoint]:
+    chain: Chain, known: Sequence[Station], point: Point, signs: Mapping[str, int] | None
+) -> Iterator[Station]:
     """Known points from which a line leads to the point, those with the fewest crossings first.
 
     Without a Euclidean region the sides are not known, so only lines without crossings count.
@@ -255,7 +349,7 @@ def _balls(known: KnownPoint, highest: int, bits: int) -> Masters:
 
 def _carried(
     chain: Chain,
-    known: KnownPoint,
+    start: Station,
     point: Point,
     highest: int,
     signs: Mapping[str, int] | None,
@@ -263,11 +357,11 @@ def _carried(
 ) -> Masters:
     chain.progress.stage("continuation")
     system = chain.derivation().system
-    values = _balls(known, known.order, bits)
+    values = start.found.masters
     shifts = expanded_system(system, 0).shifts
     lowest = min((k + shift for value, shift in zip(values, shifts, strict=True) for k in value), default=0)
     expanded: ExpandedSystem = expanded_system(system, line_depth(shifts, lowest, highest))
-    line = laurent_line(expanded, regular_locus(system), known.point, point, _turns(chain, signs))
+    line = laurent_line(expanded, regular_locus(system), start.point, point, _turns(chain, signs))
     carried = carry_laurent(line, values, lowest, highest, bits)
     for value in carried:
         for ball in value.values():

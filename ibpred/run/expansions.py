@@ -15,7 +15,8 @@ from ibpred.family.signs import masses
 from ibpred.numerics.local_laurent import Terms
 from ibpred.numerics.value import Route
 from ibpred.reduction.wanted import check_powers
-from ibpred.run.local_expansions import LocalTerms, Point, Ray, entries_on, local_terms
+from ibpred.run.local_expansions import LocalTerms, entries_on, local_terms
+from ibpred.run.rays import Ray
 
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
@@ -56,7 +57,7 @@ class Expansion:
 
 def expand(
     chain: Chain,
-    fixed: Point,
+    fixed: Mapping[str, Fraction],
     approach: Approach,
     wanted: Sequence[Powers],
     order: int,

@@ -26,8 +26,9 @@ from ibpred.numerics.distance import DISTANCE
 from ibpred.numerics.laurent_line import regular_locus
 from ibpred.numerics.local_laurent import Terms
 from ibpred.numerics.value import Value
-from ibpred.run.local_expansions import Point, Ray, entries_on, local_terms
+from ibpred.run.local_expansions import entries_on, local_terms
 from ibpred.run.points import euclidean_point
+from ibpred.run.rays import Ray
 
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
@@ -36,7 +37,7 @@ _ROUNDS = 3
 _REGULAR = (Exponent((Fraction(0),), (Fraction(0),), (False,)),)
 
 
-def is_singular(chain: Chain, point: Point) -> bool:
+def is_singular(chain: Chain, point: Mapping[str, Fraction]) -> bool:
     """Whether a complete point lies on the singular locus, or an invariant vanishes there."""
     names = [invariant.name for invariant in chain.definition.invariants]
     if not names or set(point) != set(names):
@@ -44,7 +45,7 @@ def is_singular(chain: Chain, point: Point) -> bool:
     return any(not value for value in point.values()) or bool(_vanishing(chain, point))
 
 
-def _vanishing(chain: Chain, point: Point) -> list[Rational]:
+def _vanishing(chain: Chain, point: Mapping[str, Fraction]) -> list[Rational]:
     return [
         letter
         for letter in regular_locus(chain.derivation().system)
@@ -53,7 +54,7 @@ def _vanishing(chain: Chain, point: Point) -> list[Rational]:
 
 
 def limit_values(
-    chain: Chain, point: Point, wanted: Sequence[Powers], order: int, digits: int
+    chain: Chain, point: Mapping[str, Fraction], wanted: Sequence[Powers], order: int, digits: int
 ) -> tuple[Value, ...]:
     """Values at a singular point; see `ibpred.run.values.evaluate_points`.
 
@@ -97,7 +98,7 @@ def limit_values(
     )
 
 
-def _ray(chain: Chain, point: Point) -> Ray:
+def _ray(chain: Chain, point: Mapping[str, Fraction]) -> Ray:
     """Where the point is approached from: the Euclidean region, else along one invariant."""
     family = chain.definition
     names = [invariant.name for invariant in family.invariants]
@@ -129,7 +130,7 @@ def _is_regular(chain: Chain, ray: Ray) -> bool:
     return all(behaviour(representation, powers, approach) == _REGULAR for powers in chain.masters().masters)
 
 
-def _check_directions(chain: Chain, point: Point) -> None:
+def _check_directions(chain: Chain, point: Mapping[str, Fraction]) -> None:
     """One smooth singularity has one limit; where several meet it may depend on the direction."""
     letters = _vanishing(chain, point)
     text = Ray(point, {}).text()
@@ -164,7 +165,7 @@ def _vanishes(ball: Ball, digits: int) -> bool:
     return bool(ball.contains(0)) and is_accurate(ball, digits)
 
 
-def _no_limit(chain: Chain, point: Point, powers: Powers, problem: _Problem) -> Exception:
+def _no_limit(chain: Chain, point: Mapping[str, Fraction], powers: Powers, problem: _Problem) -> Exception:
     order, power, log, certain = problem
     factors = [f"h^({power})"] if power else []
     factors += [f"log(h)^{log}" if log > 1 else "log(h)"] if log else []

@@ -38,6 +38,7 @@ from ibpred.numerics.local_laurent import (
 from ibpred.numerics.value import Route
 from ibpred.run.continued_values import Found, masters_at
 from ibpred.run.form_values import form_values
+from ibpred.run.rays import Ray
 
 if TYPE_CHECKING:
     from ibpred.run.chain import Chain
@@ -45,30 +46,8 @@ if TYPE_CHECKING:
 _SPARE_DIGITS = 8  # lost between the distance and the point
 _SPARE_BITS = 160
 
-Point = Mapping[str, Fraction]
 Entries = Mapping[int, Rational]
 """Number of a master -> its coefficient in Q(eps, h)."""
-
-
-@dataclass(frozen=True)
-class Ray:
-    """``v = place + h direction`` with h -> 0+; directions that are missing are zero."""
-
-    place: Point
-    direction: Point
-
-    def at(self, h: Fraction) -> dict[str, Fraction]:
-        """The point at a distance."""
-        return {name: value + h * self.direction.get(name, Fraction(0)) for name, value in self.place.items()}
-
-    def images(self) -> dict[str, Rational]:
-        """The invariants as functions of h."""
-        h = DISTANCE.variable("h")
-        return {name: h * self.direction.get(name, Fraction(0)) + value for name, value in self.place.items()}
-
-    def text(self) -> str:
-        """The point, for messages."""
-        return ", ".join(f"{name} = {value}" for name, value in self.place.items())
 
 
 @dataclass(frozen=True)
@@ -173,7 +152,7 @@ def _lowest(expanded: ExpandedSystem, masters: Sequence[Mapping[int, Ball]]) -> 
     )
 
 
-def masters_near(chain: Chain, point: Point, highest: int, digits: int, bits: int) -> Found:
+def masters_near(chain: Chain, point: Mapping[str, Fraction], highest: int, digits: int, bits: int) -> Found:
     """The masters at a regular point through ``eps^highest``, by whatever route there is.
 
     Raises
