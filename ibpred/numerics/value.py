@@ -16,6 +16,7 @@ class Route(Enum):
 
     EPSILON_FORM = "epsilon-form"
     REGIONS = "regions at a corner"
+    LIMIT = "limit of the expansion there"
     CONTINUATION = "continuation"
     AUXILIARY_MASS = "auxiliary mass"
 

@@ -25,7 +25,7 @@ from ibpred.family.signs import euclidean_signs, masses
 from ibpred.numerics.distance import DISTANCE
 from ibpred.numerics.laurent_line import regular_locus
 from ibpred.numerics.local_laurent import Terms
-from ibpred.numerics.value import Value
+from ibpred.numerics.value import Route, Value
 from ibpred.run.local_expansions import entries_on, local_terms
 from ibpred.run.points import euclidean_point
 from ibpred.run.rays import Ray
@@ -92,7 +92,7 @@ def limit_values(
             powers,
             {k: decimal_ball(ball, digits + 2) for k, ball in limit.items()},
             certified=found.certified and regular,
-            route=found.route,
+            route=Route.LIMIT,
         )
         for powers, limit in zip(labels, limits, strict=True)
     )

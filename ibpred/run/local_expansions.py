@@ -168,4 +168,4 @@ def masters_near(chain: Chain, point: Mapping[str, Fraction], highest: int, digi
         chain.progress.stage(f"no values from an epsilon-form ({error})")
         return masters_at(chain, point, highest, digits, bits)
     masters = tuple({k: ball_of_decimal(b, bits) for k, b in value.epsilon.items()} for value in values)
-    return Found(masters, Route.EPSILON_FORM, True)
+    return Found(masters, Route.EPSILON_FORM, all(value.certified for value in values))
