@@ -7,6 +7,7 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass, replace
 
+from ibpred.boundary.edges import Corner
 from ibpred.boundary.fix import Boundary
 from ibpred.errors import OutOfTimeError, UnfinishedError
 from ibpred.iterated.solution import Solution
@@ -63,10 +64,19 @@ class Solved:
     stopped: OutOfTimeError | None
 
 
-def solved_in_time(chain: Chain, highest: int) -> Solved:
+def solved_in_time(chain: Chain, highest: int, corner: Corner = ()) -> Solved:
     """The solution through ``eps^highest``, or through the last order that was reached in time.
 
     With a deadline the orders are taken one after the other, so that there is something to return.
+
+    Parameters
+    ----------
+    chain
+        The family's chain.
+    highest
+        Order wanted.
+    corner
+        The ratios, the smallest first; empty for the usual corner.
 
     Raises
     ------
@@ -76,11 +86,11 @@ def solved_in_time(chain: Chain, highest: int) -> Solved:
         As `ibpred.run.chain.Chain.solution`.
     """
     if chain.expired is never:
-        return Solved(chain.completed_boundary(highest), chain.solution(highest), None)
+        return Solved(chain.completed_boundary(highest, corner), chain.solution(highest, corner), None)
     reached: Solved | None = None
     for order in range(min(highest, chain.order_of_weight(0)), highest + 1):
         try:
-            reached = Solved(chain.completed_boundary(order), chain.solution(order), None)
+            reached = Solved(chain.completed_boundary(order, corner), chain.solution(order, corner), None)
         except OutOfTimeError as over:
             if reached is None:
                 raise

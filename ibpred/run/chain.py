@@ -5,9 +5,9 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
-from itertools import product
 
 import ibpred
+from ibpred.boundary.edges import Corner
 from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.fix import Boundary, fix_constants
 from ibpred.boundary.problem import one_scale_values, problem_in_variables
@@ -23,7 +23,7 @@ from ibpred.digest import digest
 from ibpred.epsform.factorise import factorise
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
 from ibpred.epsform.variables import RootVariables, Variables, root_variables
-from ibpred.errors import BoundaryError, ObstructionError, UnfinishedError
+from ibpred.errors import BoundaryError, InputError, ObstructionError, UnfinishedError
 from ibpred.exact.codec import to_data
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import euclidean_signs, region_signs
@@ -119,27 +119,6 @@ class Chain(Stages):
                 compare_counts(self.definition, self.analysis(), masters, self.primes[0], SEED, self.progress)
             ),
         ).sectors
-
-    def integrals_within(self, dots: int, rank: int) -> list[Powers]:
-        """All integrals of nonzero sectors with at most so many dots and so high a rank."""
-        count = len(self.definition.lines)
-        found: list[Powers] = []
-        for sector in self.analysis().nonzero:
-            lines = [i for i in range(count) if sector >> i & 1]
-            others = [i for i in range(count) if not sector >> i & 1]
-            for above in product(range(dots + 1), repeat=len(lines)):
-                if sum(above) > dots:
-                    continue
-                for below in product(range(rank + 1), repeat=len(others)):
-                    if sum(below) > rank:
-                        continue
-                    powers = [0] * count
-                    for line, extra in zip(lines, above, strict=True):
-                        powers[line] = 1 + extra
-                    for line, power in zip(others, below, strict=True):
-                        powers[line] = -power
-                    found.append(tuple(powers))
-        return found
 
     def reduction(self, wanted: tuple[Powers, ...]) -> ReductionTable:
         """Integrals in terms of the masters."""
@@ -307,33 +286,43 @@ class Chain(Stages):
             raise ObstructionError(f"{self.definition.name} has no epsilon-form: {reasons}")
         return found
 
-    def boundary(self, weight: int) -> Boundary:
-        """Boundary constants through ``eps^weight`` of the canonical functions, all of them derived."""
+    def boundary(self, weight: int, corner: Corner = ()) -> Boundary:
+        """Boundary constants through ``eps^weight`` of the canonical functions, all of them derived.
+
+        `corner` names the ratios, the smallest first; empty for the usual one.
+        """
 
         def compute() -> Boundary:
             form = self.solved_form()
             self.progress.stage("boundary constants")
             if form.variables:
-                return fix_constants(self._boundary_problem(form, weight), progress=self.progress)
+                problem = self._boundary_problem(form, weight, corner)
+                return fix_constants(problem, progress=self.progress)
+            if corner:
+                listed = ", ".join(corner)
+                raise InputError(
+                    f"{self.definition.name} has no ratio, so no order {listed} of its variables"
+                )
             masters, signs = self.masters().masters, self.euclidean_signs()
             return boundary_of_series(one_scale_values(self.definition, masters, signs, weight))
 
-        return self._kept("boundary", Boundary, weight, compute)
+        return self._kept("boundary", Boundary, [weight, *corner] if corner else weight, compute)
 
-    def completed_boundary(self, weight: int) -> Boundary:
+    def completed_boundary(self, weight: int, corner: Corner = ()) -> Boundary:
         """As `boundary`; what stays open is recognised from values and marked as fitted."""
 
         def compute() -> Boundary:
             form = self.solved_form()
             if form.variables:
-                return completed_by_fits(self, self._boundary_problem(form, weight), caught)
+                return completed_by_fits(self, self._boundary_problem(form, weight, corner), caught)
             return one_scale_boundary(self, weight)
 
         try:
-            return self.boundary(weight)
+            return self.boundary(weight, corner)
         except BoundaryError as error:
             caught = error
-        return self._kept("boundary with fits", Boundary, weight, compute)
+        kept_as = [weight, *corner] if corner else weight
+        return self._kept("boundary with fits", Boundary, kept_as, compute)
 
     def boundary_in(self, channel: Channel, weight: int) -> Boundary:
         """Boundary constants of a region of a family without a Euclidean region."""
@@ -347,9 +336,10 @@ class Chain(Stages):
             lambda: channel_boundary(self, problem, channel),
         )
 
-    def _boundary_problem(self, form: EpsilonForm, weight: int) -> BoundaryProblem:
+    def _boundary_problem(self, form: EpsilonForm, weight: int, corner: Corner = ()) -> BoundaryProblem:
         values, masters = self.coordinates().values, self.masters().masters
         problem = problem_in_variables(self.definition, masters, form, values, weight, self.is_euclidean())
+        problem = replace(problem, corner=corner or problem.corner)
         if weight <= 0:
             return problem
         # where the functions begin is seen at the first orders, and saves transports of high order
@@ -370,9 +360,9 @@ class Chain(Stages):
         """Weight by which what is solved for may exceed the order in eps: that of factors ``Gamma(1/2)``."""
         return self._boundary_problem(self.solved_form(), 0).heaviness
 
-    def solution(self, weight: int) -> Solution:
-        """The canonical functions in iterated integrals through ``eps^weight``."""
-        form, boundary = self.solved_form(), self.completed_boundary(weight)
+    def solution(self, weight: int, corner: Corner = ()) -> Solution:
+        """The canonical functions in iterated integrals through ``eps^weight``; see `boundary`."""
+        form, boundary = self.solved_form(), self.completed_boundary(weight, corner)
         self.progress.stage("iterated integrals")
         if form.variables:
             return solve_orders(form, boundary.corner, boundary.constants, weight, boundary.start)

@@ -12,6 +12,7 @@ import sys
 from pathlib import Path
 
 import ibpred.run.deck
+from ibpred.identities.seeding import Depth, seeds_of_sector
 from ibpred.progress import SILENT
 from ibpred.run.chain import Chain
 from ibpred.run.files import read_family_file
@@ -40,7 +41,9 @@ def main() -> None:
     with Store(folder) as store:
         chain = Chain(read_family_file(file), store, SILENT, workers)
         chain.derivation()
-        chain.reduction(tuple(chain.integrals_within(0, 2)))
+        count = len(chain.definition.lines)
+        seeds = [seeds_of_sector(sector, count, Depth(0, 2)) for sector in chain.analysis().nonzero]
+        chain.reduction(tuple(tuple(row) for rows in seeds for row in rows.tolist()))
         print(chain.meter.samples)
 
 
