@@ -273,7 +273,7 @@ def _values(chain: Chain, journal: _Journal, form: EpsilonForm | Obstructed | No
         singular = singular_ratios(family, signs, regular_locus(chain.derivation().system))
     elif form.variables:
         singular = [root for root in letter_roots(form.letters, form.variables[0]) if root is not None]
-    tables, total, routes = [], 0.0, set()
+    tables, total, estimated = [], 0.0, set()
     for where in sample_points(family, signs, chain.is_euclidean(), singular):
         try:
             values, seconds = journal.timed(partial(chain.evaluate, where, (), 0, digits))
@@ -281,11 +281,11 @@ def _values(chain: Chain, journal: _Journal, form: EpsilonForm | Obstructed | No
             journal.not_done("values", error)
             continue
         total += seconds
-        routes |= {value.route.value for value in values if value.route is not None}
+        estimated |= {v.route.value for v in values if v.route is not None and not v.certified}
         tables.append(values_data(family, where, digits, values))
     if tables:
         journal.files["values.json"] = {"family": family.name, "tables": tables}
         told = f"{digits} digits at {len(tables)} points"
-        if routes - {Route.EPSILON_FORM.value}:
-            told += f", estimated errors: by {' and '.join(sorted(routes))}"
+        if estimated - {Route.EPSILON_FORM.value}:
+            told += f", estimated errors: by {' and '.join(sorted(estimated))}"
         journal.note("values", told, total)
