@@ -10,7 +10,7 @@ terms, and the equation is one in a single variable.
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Any
 
@@ -19,8 +19,8 @@ import flint
 from ibpred.boundary.approach import Approach, leading
 from ibpred.epsform.form import EpsilonForm
 from ibpred.exact.rational import Rational
-from ibpred.iterated.alphabet import Alphabet, alphabet_of, limit
-from ibpred.iterated.transport import Point, Residues, point_text
+from ibpred.iterated.alphabet import Alphabet, alphabet_of, is_positive_at, limit
+from ibpred.iterated.transport import INFINITY, Point, Residues, point_text, residue_at
 
 Corner = tuple[str, ...]
 """The ratios in the order in which they vanish, the smallest first."""
@@ -77,6 +77,10 @@ class Edge:
 def edges_at(form: EpsilonForm, corner: Corner) -> tuple[Edge, ...]:
     """The edges that leave a corner, that of the largest ratio first.
 
+    The quotient of two ratios serves as a variable only if the corner looks the same from there: the letters
+    must have the same exponents whether the quotient or the scales vanish first. Edges for which they do not
+    are left out, and so are ends.
+
     Parameters
     ----------
     form
@@ -86,6 +90,7 @@ def edges_at(form: EpsilonForm, corner: Corner) -> tuple[Edge, ...]:
     """
     field = form.ring
     alphabet = alphabet_of(form, corner)
+    here = _residues(form, corner)
     plain = {name: field.variable(name) for name in corner}
     found = [_edge(form, alphabet, corner, None, corner[:-1], corner[-1], corner[-1], plain)]
     for k in range(len(corner) - 1):
@@ -93,8 +98,38 @@ def edges_at(form: EpsilonForm, corner: Corner) -> tuple[Edge, ...]:
         values = {**plain, small: field.variable(small) * field.variable(large)}
         scales = (*corner[:k], *corner[k + 1 :])
         swapped = (*corner[:k], large, small, *corner[k + 2 :])
-        found.append(_edge(form, alphabet, corner, swapped, scales, small, f"{small}/{large}", values))
+        edge = _edge(form, alphabet, corner, swapped, scales, small, f"{small}/{large}", values)
+        at_scale = dict(zip(edge.scales, edge.scale_residues, strict=True))
+        if not _fits(here, edge.residues[Fraction(0)], at_scale, small, large):
+            continue
+        there = _residues(form, swapped) if _is_real(form, swapped) else None
+        if there is None or not _fits(there, -residue_at(edge.residues, INFINITY), at_scale, small, large):
+            edge = replace(edge, end=None)
+        found.append(edge)
     return tuple(found)
+
+
+def _is_real(form: EpsilonForm, corner: Corner) -> bool:
+    return all(is_positive_at(radicand, corner) for radicand in form.radicands)
+
+
+def _residues(form: EpsilonForm, corner: Corner) -> dict[str, Any]:
+    """The matrices A_i of ``prod_i x_i^(eps A_i)`` at a corner."""
+    size = len(form.inverse)
+    alphabet, found = alphabet_of(form, corner), {}
+    for number, name in enumerate(corner, start=1):
+        residue, alphabet = limit(alphabet, name, corner[number:])
+        found[name] = flint.fmpq_mat(size, size) if residue is None else residue
+    return found
+
+
+def _fits(
+    corner: Mapping[str, Any], of_quotient: Any, at_scale: Mapping[str, Any], small: str, large: str
+) -> bool:
+    """Whether exponents in a quotient ``v = small/large`` and the scales are those of a corner."""
+    expected = {name: m for name, m in corner.items() if name != small}
+    expected[large] = corner[large] + corner[small]
+    return bool(of_quotient == corner[small]) and all(at_scale[n] == m for n, m in expected.items())
 
 
 def _edge(

@@ -14,6 +14,7 @@ from math import isqrt
 from ibpred.boundary.gamma import EpsLinear, GammaForm
 from ibpred.errors import BoundaryError
 from ibpred.exact.rational import Rational, Ring
+from ibpred.iterated.alphabet import is_positive_at
 from ibpred.iterated.constants import ZERO, Constant, log_of, zeta
 from ibpred.iterated.series import Series, eps_valuation, exponential, laurent
 
@@ -27,7 +28,7 @@ class ClosedForm:
     rational
         In Q(eps, ratio).
     letters
-        (polynomial in the ratio, coprime integer coefficients, positive for small positive ratio; slope).
+        (polynomial in the ratios, coprime integer coefficients, positive at the corner; slope).
     numbers
         (positive rational number, slope): further factors ``number^(slope eps)``.
     loops
@@ -113,9 +114,9 @@ def on_line(form: GammaForm, values: Mapping[str, Rational], field: Ring) -> Clo
         The closed form.
     values
         Each invariant as an element of `field`: the unit as +1 or -1, the others as their Euclidean
-        sign times a ratio, or a function of the ratios, so that every scale of the form is positive for
-        positive ratios (in one ratio: for small ones). Outside the Euclidean region a scale z that is
-        linear in the invariants may be negative: a coefficient of F, it has -i0.
+        sign times a ratio, or a function of the ratios, so that every scale of the form is positive at
+        the corner where each ratio is much smaller than the one before it. Outside the Euclidean region a
+        scale z that is linear in the invariants may be negative: a coefficient of F, it has -i0.
     field
         Q(eps, ratios).
 
@@ -150,7 +151,7 @@ def on_line(form: GammaForm, values: Mapping[str, Rational], field: Ring) -> Clo
         content, factors = value.factors()
         for polynomial, multiplicity in factors:
             letter = field.fraction(polynomial, field.context.constant(1))
-            if not _positive_near_zero(letter):
+            if not _positive_at_corner(letter):
                 letter, content = -letter, content * (-1) ** multiplicity
             letters[letter] = letters.get(letter, Fraction(0)) + q * multiplicity
         if content < 0:
@@ -207,31 +208,14 @@ def _root(value: Rational, scale: Rational) -> Rational:
                 f"a closed form has the square root of {scale} = {value}, which is not rational"
             )
         letter = value.ring.fraction(polynomial, value.ring.context.constant(1))
-        root = root * (letter if _positive_near_zero(letter) else -letter) ** (multiplicity // 2)
+        root = root * (letter if _positive_at_corner(letter) else -letter) ** (multiplicity // 2)
     return root
 
 
-def _positive_near_zero(letter: Rational) -> bool:
-    """Sign of a polynomial at small positive arguments, whatever their order.
-
-    Every term of the other sign must be a multiple of a term of this one, and so be smaller.
-
-    Raises
-    ------
-    BoundaryError
-        If there is no such sign.
-    """
-    terms = {tuple(map(int, e)): c > 0 for e, c in letter.numerator.to_dict().items()}
-    for sign in (True, False):
-        leading = [e for e, positive in terms.items() if positive == sign]
-        if all(
-            positive == sign or any(all(a >= b for a, b in zip(e, low, strict=True)) for low in leading)
-            for e, positive in terms.items()
-        ):
-            return sign
-    raise BoundaryError(
-        f"the sign of the scale {letter} is not the same everywhere for small positive ratios"
-    )
+def _positive_at_corner(letter: Rational) -> bool:
+    """Sign of a polynomial where the last ratio of its field is much smaller than the one before it, ..."""
+    names = (name for name in letter.ring.names if name != "eps")
+    return is_positive_at(letter, tuple(reversed(tuple(names))))
 
 
 def _reduced_gamma(argument: EpsLinear, field: Ring) -> Rational:

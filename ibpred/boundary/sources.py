@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 
 from ibpred.boundary.approach import Approach, is_positive_before, leading, near
@@ -135,11 +135,11 @@ def known_at(master: Master, family: ParametricFamily | None, approach: Approach
     """What is known of a master at a point; None where nothing is."""
     point = approach.point
     if master.closed is not None:
-        if _is_constant(master.closed, approach.variable):
-            return Known(master.closed, ())
-        if isinstance(point, Infinity) or point >= 0:
-            closed = master.closed.substituted({approach.variable: _distance(master.closed, approach)})
-            if all(_is_positive(letter, approach) for letter, _ in master.closed.letters):
+        constant = _is_constant(master.closed, approach.variable)
+        if constant or isinstance(point, Infinity) or point >= 0:
+            seen = replace(approach, point=Fraction(0)) if constant else approach
+            closed = master.closed.substituted({approach.variable: _distance(master.closed, seen)})
+            if all(_is_positive(letter, seen) for letter, _ in master.closed.letters):
                 return Known(closed, ())
         exponents = behaviour_of_closed_form(master.closed, approach)
         return Known(None, tuple(Region(exponent, None) for exponent in exponents))

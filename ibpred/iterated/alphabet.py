@@ -258,7 +258,8 @@ class _Collected:
         for polynomial, power in function.factors()[1]:
             letter = function.ring.fraction(polynomial, function.ring.context.constant(1))
             # letters up to a constant factor: x - y and y - x are the same
-            letter = -letter if -letter in self.even or -letter == function else letter
+            if -letter in self.even or (letter not in self.even and -letter == function):
+                letter = -letter
             self.even[letter] = _plus(self.even.get(letter), matrix * int(power))
 
     def add_odd(
