@@ -73,8 +73,8 @@ def assembled(
     }
     unipotent = identity(field, len(order))
     local = [block.residues for block in solved]
-    tags = [block.tag for block in solved]
-    by_row = [tag for tag, rows in zip(tags, blocks, strict=True) for _ in rows]
+    tags = [block.tags for block in solved]
+    by_row = [tag for own in tags for tag in own]
     for name in connection.variables:
         letters = _letters(connection, blocks, name)
         grids[name], change = eliminate(grids[name], local, letters, tags, field, name, progress)

@@ -36,22 +36,30 @@ class Exponent:
 
 @dataclass(frozen=True)
 class Block:
-    """A diagonal block in epsilon-form: ``sqrt(tag) I = T f``, ``f' = eps sum_l R_l dlog(letter_l)/dx f``.
+    """A diagonal block in epsilon-form: ``I = T D f``, ``f' = eps (sum_l R_l dlog(letter_l)/dx + odd) f``.
+
+    D is diagonal with the entries ``1/sqrt(tag)``; the odd part connects functions with different tags.
 
     Attributes
     ----------
     transformation, inverse
         T and its inverse.
     residues
-        R_l by the text of the letter; letters with a zero matrix are left out.
-    tag
-        Polynomials whose product's square root multiplies all functions of the block.
+        R_l by the text of the letter; letters with a zero matrix are left out. They connect functions with
+        equal tags.
+    tags
+        For each function the polynomials whose product is under its square root.
     """
 
     transformation: Matrix
     inverse: Matrix
     residues: Mapping[str, Constants]
-    tag: Tag = ()
+    tags: tuple[Tag, ...]
+
+    @property
+    def rooted(self) -> bool:
+        """Whether some function carries a square root."""
+        return any(self.tags)
 
 
 @dataclass(frozen=True)

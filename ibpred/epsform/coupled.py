@@ -93,7 +93,7 @@ def solve_coupled(
         raise ReconstructionError(
             f"{subject}: the epsilon-form rebuilt from samples fails the exact check; give larger primes"
         )
-    return Block(transformation, inverse(transformation, ring), residues)
+    return Block(transformation, inverse(transformation, ring), residues, ((),) * size)
 
 
 def _zero(size: int) -> Constants:

@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from typing import Protocol
 
 import flint
 import numpy as np
@@ -39,6 +40,17 @@ Solver = Callable[[Connection], EpsilonForm | Obstructed]
 Shape = tuple[tuple[int, int], ...]
 LANES = 8
 """Samples that settle the degrees in x."""
+
+
+class HasCoefficients(Protocol):
+    """A matrix as a black box in the parameters."""
+
+    @property
+    def variables(self) -> tuple[str, ...]:
+        """The parameters."""
+
+    def coefficients(self, values: Sequence[int], prime: int) -> tuple[Shape, list[int]] | None:
+        """Degrees and coefficients in x of the entries; None where the point is useless."""
 
 
 @dataclass(frozen=True)
@@ -135,21 +147,25 @@ def solve_coupled_many(
         return Finding(reason, outcome.obstructions[0].exponents)
     if len(set(outcome.tags)) > 1:
         roots = ", ".join(f"sqrt({root})" for root in outcome.radicands)
+        letters = tuple(root.to_ring(field) for root in outcome.radicands)
         return Finding(
             f"on the line {name} = {probed.base} functions of one block carry different square roots, made "
             f"of {roots}: variables in which they are rational are needed",
             (),
+            roots=letters,
         )
     tag = tuple(outcome.radicands[k].to_ring(field) for k in outcome.tags[0])
     columns = _Columns(pattern, probed, outcome.transformation, None)
-    columns = _Columns(pattern, probed, outcome.transformation, _shape(columns, usable[0], seed, subject))
+    columns = _Columns(
+        pattern, probed, outcome.transformation, usual_shape(columns, usable[0], seed, subject)
+    )
     rebuilt = reconstruct(columns, usable, seed, rest).entries
     coefficients = iter([entry.to_ring(field) for entry in rebuilt])
     transformation = matrix_of(columns.shape or (), coefficients, field, name)
-    return _finished(block, transformation, tag, primes, seed)
+    return finished(block, transformation, (tag,) * len(transformation), primes, seed)
 
 
-def _shape(columns: _Columns, prime: int, seed: int, subject: str) -> Shape:
+def usual_shape(columns: HasCoefficients, prime: int, seed: int, subject: str) -> Shape:
     """Degrees in x of the entries at generic parameters."""
     random = np.random.default_rng(seed)
     found: list[Shape] = []
@@ -163,15 +179,10 @@ def _shape(columns: _Columns, prime: int, seed: int, subject: str) -> Shape:
     raise ReconstructionError(f"{subject}: too few points at which its poles have roots modulo the prime")
 
 
-def _finished(
-    block: Connection, transformation: Matrix, tag: Tag, primes: Sequence[int], seed: int
-) -> Block | Finding:
-    """Factor eps out of the Fuchsian form that a change of basis leads to, a common root split off."""
-    field: Ring = block.ring
-    size = len(transformation)
-    rows = [range(size)]
-    back = inverse(transformation, field)
-    matrices = {
+def transformed(block: Connection, transformation: Matrix) -> dict[str, Matrix]:
+    """The matrices of the block in another basis: ``T^-1 (A T - dT/dx)``."""
+    field, back = block.ring, inverse(transformation, block.ring)
+    return {
         name: product(
             back,
             subtracted(product(matrix, transformation, field), derivative(transformation, name)),
@@ -179,15 +190,39 @@ def _finished(
         )
         for name, matrix in block.matrices.items()
     }
-    tags = (tag,) * size
-    matrices = {name: between_functions(m, tags, name, field) for name, m in matrices.items()}
+
+
+def finished(
+    block: Connection, transformation: Matrix, tags: Sequence[Tag], primes: Sequence[int], seed: int
+) -> Block | Finding:
+    """Factor eps out of the Fuchsian form that a change of basis leads to.
+
+    Parameters
+    ----------
+    block
+        The block.
+    transformation
+        The change of basis to functions without their roots.
+    tags
+        The root of each function; functions with equal roots follow each other.
+    primes, seed
+        For the modular samples.
+    """
+    field: Ring = block.ring
+    size = len(transformation)
+    rows = [range(size)]
+    matrices = {
+        name: between_functions(m, tags, name, field)
+        for name, m in transformed(block, transformation).items()
+    }
     system = fuchsian(matrices, rows, tags, field, primes[0], seed)
     if isinstance(system, Stuck):
         return system.finding
     factored = factor_eps(system, rows, [identity(field, size)], tags, primes, seed)
     if isinstance(factored, Stuck):
         return factored.finding
-    whole, change = simplified(product(transformation, factored.matrix, field), rows, field)
+    parts = [range(tags.index(tag), tags.index(tag) + tags.count(tag)) for tag in dict.fromkeys(tags)]
+    whole, change = simplified(product(transformation, factored.matrix, field), parts, field)
     residues = {text: conjugated(a, change) for text, a in factored.residues.items()}
     nonzero = {text: a for text, a in residues.items() if any(v for row in a for v in row)}
-    return Block(whole, inverse(whole, field), nonzero, tag)
+    return Block(whole, inverse(whole, field), nonzero, tuple(tags))

@@ -2,20 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 
 from ibpred.epsform.assemble import assembled
 from ibpred.epsform.blocks import Block, Finding
+from ibpred.epsform.characters import times_root
 from ibpred.epsform.coupled import solve_coupled
 from ibpred.epsform.coupled_many import solve_coupled_many
 from ibpred.epsform.cover import Cover, branch_points, describe, double_cover
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed, Obstruction
 from ibpred.epsform.geometry import obstruction
-from ibpred.epsform.matrices import added, identity, scaled
+from ibpred.epsform.rooted import solve_rooted
 from ibpred.epsform.single import solve_single
 from ibpred.epsform.structure import coupled_blocks, couplings, reachable, restricted
-from ibpred.epsform.tags import Tag, canonical
+from ibpred.epsform.tags import canonical
 from ibpred.errors import UnfinishedError
 from ibpred.progress import SILENT, Expired, Limited, Progress, never
 from ibpred.reconstruct.notes import FORGETFUL, Notes
@@ -77,7 +78,11 @@ def factorise(
             complete = False
             obstructions.append(Obstruction(rows, _OVER, None, ()))
         elif isinstance(outcome, Finding):
-            outcome = on_cover(outcome, restricted(connection, rows), primes, seed)
+            rooted = _rooted(outcome, rows, connection, primes, seed, notes)
+            if isinstance(rooted, Block):
+                solved[rows] = rooted
+                continue
+            outcome = on_cover(rooted, restricted(connection, rows), primes, seed)
             obstructions.append(obstruction(connection, rows, outcome, primes, seed))
         else:
             solved[rows] = outcome
@@ -129,7 +134,7 @@ def diagonal_blocks(
         if len(rows) > 1 and expired():
             found.append((rows, None))
         else:
-            found.append((rows, _noted(rows, connection, primes, seed, notes)))
+            found.append((rows, _solved(rows, connection, primes, seed, notes)))
         progress.advance(len(found), len(blocks))
     return tuple(found)
 
@@ -140,22 +145,52 @@ class _Outcome:
     finding: Finding | None
 
 
-def _noted(
+def _solved(
     rows: tuple[int, ...], connection: Connection, primes: Sequence[int], seed: int, notes: Notes
 ) -> Block | Finding:
-    """A block, from the notes where it is noted; one function alone is solved sooner than read."""
+    """A block; one function alone is solved sooner than read from the notes."""
+    block = restricted(connection, rows)
+    if len(rows) == 1:
+        return solve_block(block, primes, seed)
+    name = f"block of rows {', '.join(map(str, rows))}"
+    return _noted(name, lambda: solve_block(block, primes, seed), notes)
 
-    def compute() -> _Outcome:
-        found = solve_block(restricted(connection, rows), primes, seed)
+
+def _noted(name: str, compute: Callable[[], Block | Finding], notes: Notes) -> Block | Finding:
+    """A block from the notes where it is noted."""
+
+    def outcome() -> _Outcome:
+        found = compute()
         return _Outcome(found, None) if isinstance(found, Block) else _Outcome(None, found)
 
-    if len(rows) == 1:
-        outcome = compute()
-    else:
-        outcome = notes.kept(f"block of rows {', '.join(map(str, rows))}", _Outcome, compute)
-    found = outcome.block if outcome.block is not None else outcome.finding
+    kept = notes.kept(name, _Outcome, outcome)
+    found = kept.block if kept.block is not None else kept.finding
     assert found is not None
     return found
+
+
+def _rooted(
+    found: Finding,
+    rows: tuple[int, ...],
+    connection: Connection,
+    primes: Sequence[int],
+    seed: int,
+    notes: Notes,
+) -> Block | Finding:
+    """A block that lacks roots, its functions with roots of their own; the finding where that fails too."""
+    if not found.roots:
+        return found
+    block = restricted(connection, rows)
+    subject = f"block {', '.join(block.labels)}"
+
+    def solve(smaller: Connection) -> EpsilonForm | Obstructed:
+        return factorise(smaller, primes, seed)
+
+    return _noted(
+        f"roots in the block of rows {', '.join(map(str, rows))}",
+        lambda: solve_rooted(block, found, solve, primes, seed, subject),
+        notes,
+    )
 
 
 def solve_block(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
@@ -165,19 +200,10 @@ def solve_block(block: Connection, primes: Sequence[int], seed: int) -> Block | 
     outcome = _solve_coupled(block, primes, seed)
     if not isinstance(outcome, Finding) or not outcome.common:
         return outcome
-    rooted = _solve_coupled(_times_root(block, outcome.common), primes, seed)
+    rooted = _solve_coupled(times_root(block, outcome.common), primes, seed)
     if isinstance(rooted, Finding):
         return outcome
-    return replace(rooted, tag=canonical((*outcome.common, *rooted.tag)))
-
-
-def _times_root(block: Connection, tag: Tag) -> Connection:
-    """The system of ``sqrt(tag) I``."""
-    matrices = {}
-    for name, matrix in block.matrices.items():
-        log = sum((factor.derivative(name) / factor for factor in tag), block.ring.zero) / 2
-        matrices[name] = added(matrix, scaled(identity(block.ring, len(matrix)), log))
-    return replace(block, matrices=matrices)
+    return replace(rooted, tags=tuple(canonical((*outcome.common, *tag)) for tag in rooted.tags))
 
 
 def _solve_coupled(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
@@ -232,8 +258,8 @@ def cover_for(connection: Connection, outcomes: Outcomes, primes: Sequence[int],
                 restricted(connection, rows), outcome, primes, seed, _COVERS
             ):
                 return double_cover(connection, outcome.variable, outcome.branch_points, needed=True)
-        elif outcome is not None and outcome.tag:
-            found = branch_points(outcome.tag)
+        elif outcome is not None and outcome.rooted:
+            found = branch_points(outcome.tags[0])
             if found is not None and len(found[1]) == 2:
                 return double_cover(connection, *found)
     return None

@@ -8,6 +8,7 @@ generic eps the resulting lattice is unique, so the order of the steps is immate
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from enum import Enum
 from fractions import Fraction
@@ -121,7 +122,12 @@ def _moved(residue: ModularMatrix, factor: ModularPolynomial) -> tuple[ModularMa
 
 
 def normalised(
-    pencil: Pencil, frame: Frame, point: int, eps: int, slopes: Slopes | None
+    pencil: Pencil,
+    frame: Frame,
+    point: int,
+    eps: int,
+    slopes: Slopes | None,
+    rounded: Callable[[Fraction], int] = floor,
 ) -> tuple[Pencil, Frame, tuple[Exponent, ...]]:
     """Bring one point to a simple pole with exponents ``a + b eps``, 0 <= a < 1.
 
@@ -129,6 +135,8 @@ def normalised(
     ----------
     slopes
         The slopes to expect where eps is a given number, None where it is random (see `spectrum`).
+    rounded
+        `math.floor`, or `math.ceil` for -1 < a <= 0.
 
     Returns
     -------
@@ -152,7 +160,7 @@ def normalised(
         if step == 0:
             first = tuple(sorted(e.exponent for e in eigenvalues for _ in range(e.multiplicity)))
         for power in (1, -1):
-            moving = [e.factor for e in eigenvalues if floor(e.exponent.shift) * power > 0]
+            moving = [e.factor for e in eigenvalues if rounded(e.exponent.shift) * power > 0]
             if moving:
                 basis, moved = _moved(residue, prod(moving))
                 pencil = sheared(pencil, basis, moved, power, point)

@@ -17,6 +17,7 @@ from random import Random
 from typing import Any
 
 import flint
+from flint.utils.flint_exceptions import DomainError
 
 from ibpred.epsform.decompose import constants
 from ibpred.epsform.tags import Tag, product_of
@@ -222,7 +223,7 @@ def _square_root(value: Rational) -> Rational | None:
     field = value.ring
     try:
         top = (value.numerator * value.denominator).sqrt()
-    except (ValueError, ArithmeticError, flint.DomainError):
+    except DomainError:
         return None
     return field.fraction(top, value.denominator)
 

@@ -98,7 +98,7 @@ def glue(
         kind = tuple(map(Fraction, splitting_type(frame_inf)))
         return Obstacle(Trouble.BUNDLE, -1, kind, tuple(exponents))
     gluing = tuple(zip(*sections, strict=True))
-    numerators = _product(frame.numerators, gluing)
+    numerators = polynomial_product(frame.numerators, gluing)
     scale = int(frame.denominator(base))
     whole = flint.nmod_mat(size, size, [int(e(base)) for row in numerators for e in row], prime)
     if scale == 0 or whole.rank() < size:
@@ -185,7 +185,8 @@ def _valuation(polynomial: ModularPolynomial) -> int:
     return next(i for i, c in enumerate(polynomial.coeffs()) if int(c))
 
 
-def _product(left: PolynomialMatrix, right: PolynomialMatrix) -> PolynomialMatrix:
+def polynomial_product(left: PolynomialMatrix, right: PolynomialMatrix) -> PolynomialMatrix:
+    """Product of two matrices."""
     columns = tuple(zip(*right, strict=True))
     found = []
     for row in left:

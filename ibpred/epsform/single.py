@@ -72,4 +72,4 @@ def solve_single(values: Mapping[str, Rational]) -> Block | Finding:
             a += Fraction(1, 2)
         factor = factor * place.element ** int(a)
     residues: dict[str, Constants] = {text: ((b,),) for text, (_, _, b) in found.items() if b}
-    return Block(((factor,),), ((1 / factor,),), residues, tag_of(tagged, field, tuple(values)))
+    return Block(((factor,),), ((1 / factor,),), residues, (tag_of(tagged, field, tuple(values)),))

@@ -20,6 +20,7 @@ from fractions import Fraction
 
 from ibpred.epsform.form import Matrix
 from ibpred.epsform.matrices import Constants, added, identity, product, scaled, solve, subtracted
+from ibpred.epsform.mixed import reduced_mixed
 from ibpred.epsform.places import Place, Residue, degree, growth, leading, places_of, positive
 from ibpred.epsform.places import place as finite_place
 from ibpred.epsform.tags import Tag, difference, only_in, product_of
@@ -46,7 +47,7 @@ def eliminate(
     grid: Grid,
     residues: Sequence[Residues],
     letters: Mapping[str, Place],
-    tags: Sequence[Tag],
+    tags: Sequence[Sequence[Tag]],
     ring: Ring,
     name: str,
     progress: Progress = SILENT,
@@ -63,7 +64,7 @@ def eliminate(
     letters
         The places of these residues by their text.
     tags
-        The tag of each block.
+        The tags of the functions of each block.
     progress
         Told about the rows of blocks done.
 
@@ -81,10 +82,14 @@ def eliminate(
     for i in range(count):
         progress.advance(i, count)
         for j in range(i - 1, -1, -1):
-            relation = _relation(tags[i], tags[j], ring, name)
-            change, rest = _reduced(
-                grid[i][j], (grid[i][i], grid[j][j]), (residues[i], residues[j]), letters, relation, name
-            )
+            diagonal = (grid[i][i], grid[j][j])
+            if len(set(tags[i])) == len(set(tags[j])) == 1:
+                relation = _relation(tags[i][0], tags[j][0], ring, name)
+                change, rest = _reduced(
+                    grid[i][j], diagonal, (residues[i], residues[j]), letters, relation, name
+                )
+            else:
+                change, rest = reduced_mixed(grid[i][j], diagonal, (tags[i], tags[j]), name)
             changes[i][j] = change
             grid[i][j] = rest
             if not any(e for row in change for e in row):

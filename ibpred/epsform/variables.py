@@ -113,7 +113,7 @@ def root_variables(
             return RootVariables(found, None)
         offered = found if offered is None else offered
     # functions of size one carry their roots as tags, so covers serve only where they remove all of these
-    tagged = any(isinstance(outcome, Block) and outcome.tag for _, outcome in outcomes)
+    tagged = any(isinstance(outcome, Block) and outcome.rooted for _, outcome in outcomes)
     return RootVariables(covered if not tagged or any(c.needed for c in covers) else None, offered)
 
 
@@ -121,10 +121,11 @@ def open_radicands(connection: Connection, outcomes: Outcomes) -> tuple[Rational
     """The radicands of the roots that the diagonal blocks carry or lack."""
     found: dict[str, Rational] = {}
     for _, outcome in outcomes:
-        tag = () if outcome is None else outcome.roots if isinstance(outcome, Finding) else outcome.tag
-        if tag:
-            radicand = product_of(tag, connection.ring)
-            found[str(radicand)] = radicand
+        tags = () if outcome is None else (outcome.roots,) if isinstance(outcome, Finding) else outcome.tags
+        for tag in tags:
+            if tag:
+                radicand = product_of(tag, connection.ring)
+                found[str(radicand)] = radicand
     return tuple(found.values())
 
 
