@@ -17,6 +17,7 @@ from random import Random
 
 import flint
 
+from ibpred.epsform.blocks import Exponent
 from ibpred.epsform.form import Connection
 from ibpred.epsform.image import Pattern, block_pattern, pencil_at, splits
 from ibpred.epsform.local import ObstacleError, normalised
@@ -32,6 +33,7 @@ from ibpred.epsform.pencil import (
 from ibpred.epsform.places import degree
 from ibpred.epsform.probe import ATTEMPTS, BASE_POINTS
 from ibpred.epsform.sections import global_sections, polynomial_product
+from ibpred.epsform.spectrum import Slopes
 from ibpred.epsform.tags import Tag
 
 _MOST_ROOTS = 8
@@ -60,10 +62,43 @@ class Character:
 
 @dataclass(frozen=True)
 class Characters:
-    """All roots of a block, and the base point x = O."""
+    """All roots of a block.
+
+    Attributes
+    ----------
+    base
+        The base point x = O.
+    slopes
+        Of the exponents at all points.
+    found
+        The roots.
+    """
 
     base: int
+    slopes: Slopes
     found: tuple[Character, ...]
+
+
+@dataclass(frozen=True)
+class Sections:
+    """Functions without a root at numeric parameters.
+
+    Attributes
+    ----------
+    numerators, denominator
+        A column of coefficients for each function.
+    slopes
+        Of the exponents at all points.
+    """
+
+    numerators: PolynomialMatrix
+    denominator: ModularPolynomial
+    slopes: Slopes
+
+    @property
+    def count(self) -> int:
+        """Number of functions."""
+        return len(self.numerators[0])
 
 
 def times_root(block: Connection, tag: Tag) -> Connection:
@@ -76,48 +111,51 @@ def times_root(block: Connection, tag: Tag) -> Connection:
 
 
 def rational_sections(
-    pattern: Pattern, values: Sequence[int], prime: int
-) -> tuple[PolynomialMatrix, ModularPolynomial] | None:
-    """The functions without a root at numeric parameters, eps first: columns of coefficients.
+    pattern: Pattern, values: Sequence[int], prime: int, slopes: Slopes | None
+) -> Sections | None:
+    """The functions without a root at numeric parameters, eps first; None where the sample is useless.
 
-    Returns
-    -------
-    columns or None
-        Numerators, one column for each function, and denominator; None where the sample is useless.
+    Parameters
+    ----------
+    slopes
+        Those of the exponents, where they are known already.
     """
     image = pencil_at(pattern, values, prime)
     if image is None:
         return None
     pencil, points = image
     frame = unit_frame(pencil.size, prime)
+    exponents: list[Exponent] = []
     try:
         for _, point in points:
-            pencil, frame, _ = normalised(pencil, frame, point, values[0], None, ceil)
+            pencil, frame, found = normalised(pencil, frame, point, values[0], slopes, ceil)
+            exponents += found
         start = unit_frame(pencil.size, prime)
-        _, infinity, _ = normalised(at_infinity(pencil), start, 0, values[0], None, ceil)
+        _, infinity, found = normalised(at_infinity(pencil), start, 0, values[0], slopes, ceil)
     except ObstacleError:
         return None
+    seen = frozenset(e.slopes for e in (*exponents, *found))
     sections = global_sections(infinity, 0)
     if not sections:
-        return tuple(() for _ in frame.numerators), frame.denominator
-    return polynomial_product(frame.numerators, tuple(zip(*sections, strict=True))), frame.denominator
+        return Sections(tuple(() for _ in frame.numerators), frame.denominator, seen)
+    columns = polynomial_product(frame.numerators, tuple(zip(*sections, strict=True)))
+    return Sections(columns, frame.denominator, seen)
 
 
 def normal_columns(
-    character: Character, values: Sequence[int], prime: int, base: int
+    character: Character, values: Sequence[int], prime: int, block: Characters
 ) -> tuple[PolynomialMatrix, ModularPolynomial] | None:
     """The columns of one root, in the basis fixed at the base point; None where the sample is useless."""
-    found = rational_sections(character.pattern, values, prime)
-    if found is None or len(found[0][0]) != len(character.rows):
+    found = rational_sections(character.pattern, values, prime, block.slopes)
+    if found is None or found.count != len(character.rows):
         return None
-    numerators, denominator = found
-    size = len(character.rows)
-    scale = int(denominator(base % prime))
-    at_base = [int(e(base % prime)) for i in character.rows for e in numerators[i]]
+    size, base = len(character.rows), block.base % prime
+    scale = int(found.denominator(base))
+    at_base = [int(e(base)) for i in character.rows for e in found.numerators[i]]
     matrix = flint.nmod_mat(size, size, at_base, prime)
     if scale == 0 or matrix.rank() < size:
         return None
-    return times_constant(numerators, matrix.inv() * scale), denominator
+    return times_constant(found.numerators, matrix.inv() * scale), found.denominator
 
 
 def characters(
@@ -158,20 +196,21 @@ def characters(
         if base is None:
             return None
         found, left = [], size
+        slopes: Slopes | None = None
         for tag in _products(here):
             pattern = block_pattern(times_root(block, tag).matrices[name], block.ring, name)
-            sections = rational_sections(pattern, values, prime)
+            sections = rational_sections(pattern, values, prime, slopes)
             if sections is None:
                 break
-            count = len(sections[0][0])
-            if count:
-                rows = _pivots(sections[0], base % prime, prime)
-                if len(rows) < count:
+            slopes = sections.slopes if slopes is None else slopes | sections.slopes
+            if sections.count:
+                rows = _pivots(sections.numerators, base % prime, prime)
+                if len(rows) < sections.count:
                     break
                 found.append(Character(tag, pattern, rows))
-                left -= count
+                left -= sections.count
             if left <= 0:
-                return Characters(base, tuple(found)) if left == 0 else None
+                return Characters(base, slopes, tuple(found)) if left == 0 else None
         else:
             return None
     return None

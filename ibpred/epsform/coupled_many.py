@@ -32,12 +32,15 @@ from ibpred.epsform.probe import Probe, glued_at, letter_residues, probe
 from ibpred.epsform.sections import Glued
 from ibpred.epsform.tags import Tag, between_functions
 from ibpred.errors import ReconstructionError
-from ibpred.exact.rational import Ring, ring
+from ibpred.exact.rational import Rational, Ring, ring
 from ibpred.reconstruct.functions import reconstruct
 from ibpred.reconstruct.modular import LARGEST_BITS
+from ibpred.reconstruct.sampling import Sampler, UnluckyPrimeError
 
 Solver = Callable[[Connection], EpsilonForm | Obstructed]
 Shape = tuple[tuple[int, int], ...]
+_LINES = 24
+"""Seeds that are tried for the lines of a reconstruction."""
 LANES = 8
 """Samples that settle the degrees in x."""
 
@@ -159,7 +162,7 @@ def solve_coupled_many(
     columns = _Columns(
         pattern, probed, outcome.transformation, usual_shape(columns, usable[0], seed, subject)
     )
-    rebuilt = reconstruct(columns, usable, seed, rest).entries
+    rebuilt = rebuilt_entries(columns, usable, seed, rest)
     coefficients = iter([entry.to_ring(field) for entry in rebuilt])
     transformation = matrix_of(columns.shape or (), coefficients, field, name)
     return finished(block, transformation, (tag,) * len(transformation), primes, seed)
@@ -177,6 +180,25 @@ def usual_shape(columns: HasCoefficients, prime: int, seed: int, subject: str) -
         if len(found) == LANES:
             return max(found, key=found.count)
     raise ReconstructionError(f"{subject}: too few points at which its poles have roots modulo the prime")
+
+
+def rebuilt_entries(columns: Sampler, primes: Sequence[int], seed: int, field: Ring) -> tuple[Rational, ...]:
+    """The coefficients as functions of the parameters.
+
+    Where letters of degree two and more have no roots modulo the prime at some value of a parameter, no
+    sample on a line with that value is of use; other lines are then taken.
+
+    Raises
+    ------
+    ReconstructionError
+        If primes or samples do not suffice.
+    """
+    for attempt in range(_LINES - 1):
+        try:
+            return reconstruct(columns, primes, seed + attempt, field).entries
+        except UnluckyPrimeError:
+            continue
+    return reconstruct(columns, primes, seed + _LINES - 1, field).entries
 
 
 def transformed(block: Connection, transformation: Matrix) -> dict[str, Matrix]:

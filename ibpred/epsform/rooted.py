@@ -18,13 +18,12 @@ from ibpred.epsform.blocks import Block, Finding
 from ibpred.epsform.characters import Characters, characters, normal_columns
 from ibpred.epsform.conics import as_element, without_squares
 from ibpred.epsform.coupled import matrix_of, reduced_entries
-from ibpred.epsform.coupled_many import Shape, Solver, finished, transformed, usual_shape
+from ibpred.epsform.coupled_many import Shape, Solver, finished, rebuilt_entries, transformed, usual_shape
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix, Obstructed
 from ibpred.epsform.image import splits
 from ibpred.epsform.matrices import identity, product
 from ibpred.epsform.tags import Tag, canonical, product_of
 from ibpred.exact.rational import Rational, ring
-from ibpred.reconstruct.functions import reconstruct
 from ibpred.reconstruct.modular import LARGEST_BITS
 
 
@@ -47,7 +46,7 @@ class _Columns:
         """Degrees and coefficients at one point; None where the point is useless."""
         parts = []
         for character in self.block.found:
-            columns = normal_columns(character, values, prime, self.block.base)
+            columns = normal_columns(character, values, prime, self.block)
             if columns is None:
                 return None
             flat = reduced_entries(*columns)
@@ -108,7 +107,7 @@ def solve_rooted(
     columns = _Columns(roots, None)
     columns = _Columns(roots, usual_shape(columns, usable[0], seed, subject))
     rest = ring(n for n in field.names if n != name)
-    rebuilt = reconstruct(columns, usable, seed, rest).entries
+    rebuilt = rebuilt_entries(columns, usable, seed, rest)
     coefficients = iter([entry.to_ring(field) for entry in rebuilt])
     transformation = matrix_of(columns.shape or (), coefficients, field, name)
     tags = [character.tag for character in roots.found for _ in character.rows]

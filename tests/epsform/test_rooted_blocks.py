@@ -9,8 +9,8 @@ import pytest
 from synthetic_systems import RING, connection, gauged, random_entry, unit
 
 from ibpred.epsform.factorise import factorise
-from ibpred.epsform.form import EpsilonForm, OddLetter
-from ibpred.epsform.matrices import product
+from ibpred.epsform.form import Connection, EpsilonForm, OddLetter
+from ibpred.epsform.matrices import added, derivative, inverse, product
 from ibpred.epsform.verify import is_integrable, rational_system, verify
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes
@@ -65,8 +65,18 @@ def numbers_of(random: Random, size: int, owner: list[int]):
     return draw
 
 
-@pytest.mark.parametrize("kind", ROOTS)
-@pytest.mark.parametrize(("sizes", "odd"), [([2], [1]), ([3], [2]), ([1, 2, 1], [1, 3]), ([2, 2], [1, 2])])
+CASES = [
+    *((kind, [1, 2, 1], [1, 3], ()) for kind in ("an irreducible quadratic", "a branch point at infinity")),
+    ("a curve of genus one", [2], [1], ()),
+    *((kind, [3], [2], pytest.mark.slow) for kind in ROOTS),
+    *((kind, [2, 2], [1, 2], pytest.mark.slow) for kind in ROOTS),
+]
+
+
+@pytest.mark.parametrize(
+    ("kind", "sizes", "odd"),
+    [pytest.param(kind, sizes, odd, marks=marks) for kind, sizes, odd, marks in CASES],
+)
 def test_roots_in_one_ratio(kind: str, sizes: list[int], odd: list[int]) -> None:
     names, polynomials = ROOTS[kind]
     random = Random(f"{kind}{sizes}")
@@ -75,7 +85,9 @@ def test_roots_in_one_ratio(kind: str, sizes: list[int], odd: list[int]) -> None
     radicands = [parse_rational(text, RING) for text in names]
     everything = tuple(range(len(radicands)))
     tags = tuple(everything if i in odd else () for i in range(size))
-    letters = [parse_rational(text, RING) for text in ("x", "x-2", *(t for t in names if t not in ("x", "1-x")))]
+    letters = [
+        parse_rational(text, RING) for text in ("x", "x-2", *(t for t in names if t not in ("x", "1-x")))
+    ]
     odd_letters = [(parse_rational(text, RING), everything) for text in polynomials]
     form = made(radicands, odd_letters, tags, letters, numbers_of(random, size, owner), RING, ("x",))
     system = rational_system(form, "x")
@@ -91,3 +103,45 @@ def test_roots_in_one_ratio(kind: str, sizes: list[int], odd: list[int]) -> None
     assert verify(whole, found)
     assert is_integrable(found)
     assert sorted(map(len, found.tags)) == sorted(map(len, tags))
+
+
+def test_a_root_of_two_ratios_in_a_coupled_block() -> None:
+    """The bubble with two masses and its tadpoles, in a basis that couples all three."""
+    field = ring(("eps", "x", "y"))
+
+    def element(text: str):
+        return parse_rational(text, field)
+
+    def numbers(entries: dict[tuple[int, int], Fraction]):
+        return tuple(tuple(entries.get((i, j), Fraction(0)) for j in range(3)) for i in range(3))
+
+    one = tuple(tuple(field.one if i == j else field.zero for j in range(3)) for i in range(3))
+    minus, half = Fraction(-1), Fraction(1, 2)
+    form = EpsilonForm(
+        ("x", "y"),
+        field,
+        (element("x"), element("y"), element("x^2-2*x*y+y^2+2*x+2*y+1")),
+        (numbers({(0, 0): minus}), numbers({(1, 1): minus}), numbers({(2, 2): minus})),
+        one,
+        one,
+        ((), (), (0,)),
+        (element("x^2-2*x*y+y^2+2*x+2*y+1"),),
+        (OddLetter(element("1+x+y"), (0,)), OddLetter(element("1+x-y"), (0,))),
+        (numbers({(2, 0): -half}), numbers({(2, 0): half, (2, 1): -half})),
+    )
+    change = tuple(
+        tuple(map(element, row)) for row in (["1", "y", "eps"], ["0", "1", "1/x"], ["x", "0", "1"])
+    )
+    matrices = {}
+    for name in ("x", "y"):
+        system = rational_system(form, name)
+        assert system is not None
+        whole = added(product(change, system, field), derivative(change, name))
+        matrices[name] = product(whole, inverse(change, field), field)
+    coupled = Connection(("x", "y"), field, matrices, (3,), ("a", "b", "c"))
+    found = factorise(coupled, PRIMES, 1)
+    assert isinstance(found, EpsilonForm), found.obstructions
+    assert verify(coupled, found)
+    assert is_integrable(found)
+    assert found.radicands == form.radicands
+    assert sorted(found.tags) == [(), (), (0,)]

@@ -123,6 +123,24 @@ def test_roots_of_the_kallen_function_become_rational(name, tmp_path):
 
 
 @pytest.mark.slow
+def test_double_box_of_bhabha_scattering(tmp_path):
+    """23 functions; the root Q is one that no change of variables makes rational (Henn, Smirnov, 1307.4083).
+
+    There: x, 1 +- x, y, 1 +- y, x + y, 1 + xy, x + y - 4xy + x^2 y + x y^2 and three letters with
+    Q^2 = (x + y)(1 + xy)/(x + y - 4xy + x^2 y + x y^2). That Q stays irrational: Festi, van Straten,
+    arXiv:1809.04970.
+    """
+    form = verified("planar-double-box-massive-fermion", tmp_path)
+    x, y = form.variables
+    last = f"{x}^2*{y}+{x}*{y}^2-4*{x}*{y}+{x}+{y}"
+    expected = {x, f"{x}+1", f"{x}-1", y, f"{y}+1", f"{y}-1", f"{x}+{y}", f"{x}*{y}+1", last}
+    assert {str(letter) for letter in form.letters} == expected
+    assert {str(radicand) for radicand in form.radicands} == {f"{x}+{y}", f"{x}*{y}+1", last}
+    assert [tag for tag in form.tags if tag] == [(0, 1, 2)]
+    assert len(form.odd_letters) == 3
+
+
+@pytest.mark.slow
 def test_pentagon_with_one_leg(tmp_path):
     """Five scales, the root of the Gram determinant and that of the Källén function."""
     form = verified("pentagon-one-leg", tmp_path)
