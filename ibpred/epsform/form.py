@@ -118,7 +118,7 @@ class OddLetter:
     Attributes
     ----------
     polynomial
-        P, a polynomial in the ratios.
+        P, a polynomial in the ratios, or one over a product of letters.
     roots
         Q is the product of these radicands (indices) of the epsilon-form.
     """

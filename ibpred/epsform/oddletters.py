@@ -1,9 +1,10 @@
 """Letters with a square root, found by linear algebra.
 
-A letter ``(P - sqrt Q)/(P + sqrt Q)`` is singular only where ``P^2 - Q`` vanishes, so ``P^2 = Q + c W`` with
-W a product of known letters and c a number (a zero of Q may occur in W, once). For each W of bounded degree
-the c that make ``Q + c W`` a square are found on a random line modulo a prime (zeros of the discriminant),
-confirmed on a second line, and P is then an exact polynomial square root. Its logarithmic derivative is
+A letter ``(P - sqrt Q)/(P + sqrt Q)``, P = A/B, is singular only where ``A^2 - B^2 Q`` or B vanishes, so B is a
+product of known letters, and ``A^2 = B^2 Q + c W`` with W another one and c a number (a zero of Q may occur in
+W, once). For each B and W of bounded degree the c that make ``B^2 Q + c W`` a square are found on a random line
+modulo a prime (zeros of the discriminant), confirmed on a second line, and A is then an exact polynomial
+square root. The logarithmic derivative is
 
     dlog = sqrt(Q) (2 Q dP - P dQ) / (Q (P^2 - Q)).
 """
@@ -70,13 +71,21 @@ def fit_odd(
     size = int(square.numerator.total_degree())
     variables = tuple(next(iter(entries.values())))
     even = size + size % 2
-    for bound in (even, even + 2):
-        search = _Search(ring, variables, primes[0], seed)
-        found = search.polynomials(square, roots, letters, bound)
+    search = _Search(square, roots, letters, variables, primes[0], seed)
+    found: list[Rational] = []
+    for below, spare in _EFFORTS:
+        for denominator in search.denominators(below):
+            new = search.polynomials(denominator, even + 2 * below + spare)
+            found += [p for p in new if p not in found]
+        found.sort(key=_simplicity)
         fit = _fitted(entries, square, found, ring, seed)
         if fit is not None:
             return fit
     return None
+
+
+_EFFORTS = ((0, 0), (0, 2), (1, 0), (2, 0))
+"""Degree of B, and by how much the degree of W may exceed that of B^2 Q: tried until the letters suffice."""
 
 
 def logarithmic(polynomial: Rational, square: Rational, name: str) -> Rational:
@@ -88,24 +97,46 @@ def logarithmic(polynomial: Rational, square: Rational, name: str) -> Rational:
 class _Search:
     """The search for P modulo one prime."""
 
-    def __init__(self, ring: Ring, variables: Sequence[str], prime: int, seed: int) -> None:
-        self.ring = ring
-        self.places = [ring.index(name) for name in variables]
+    def __init__(
+        self,
+        square: Rational,
+        roots: Tag,
+        letters: Sequence[Rational],
+        variables: Sequence[str],
+        prime: int,
+        seed: int,
+    ) -> None:
+        self.square, self.roots, self.ring = square, roots, square.ring
+        self.places = [self.ring.index(name) for name in variables]
         self.prime = prime
         self.random = Random(seed)
+        self.lines = [self._line(), self._line()]
+        plain = [w for w in letters if not any(w == r or w == -r for r in roots)]
+        self.others = [w for w in plain if self._splits(square, w)]
+        self.letters = plain
 
-    def polynomials(
-        self, square: Rational, roots: Tag, letters: Sequence[Rational], bound: int
-    ) -> list[Rational]:
-        """All P with ``P^2 = Q + c W``, W of at most the given degree, simple ones first."""
-        lines = [self._line(), self._line()]
-        q = [self._on_line(square.numerator, line) for line in lines]
-        others = [w for w in letters if not any(w == r or w == -r for r in roots) and self._splits(square, w)]
-        factors = [*roots, *others]
-        images = [[self._on_line(w.numerator, line) for w in factors] for line in lines]
+    def denominators(self, size: int) -> Iterator[Rational]:
+        """Products of letters of a given degree."""
+        degrees = [int(w.numerator.total_degree()) for w in self.letters]
+        for powers in _monomials(degrees, 0, size):
+            if sum(p * d for p, d in zip(powers, degrees, strict=True)) == size:
+                total = self.ring.one
+                for letter, power in zip(self.letters, powers, strict=True):
+                    total = total * letter**power
+                yield total
+
+    def polynomials(self, denominator: Rational, bound: int) -> list[Rational]:
+        """All P with a given B, W of at most the given degree."""
+        square = self.square * denominator * denominator
+        q = [self._on_line(square.numerator, line) for line in self.lines]
+        # a common factor of B and W would be one of A as well
+        used = {str(factor) for factor, _ in denominator.factors()[1]}
+        others = [w for w in self.others if str(w.numerator) not in used and str(-w.numerator) not in used]
+        factors = [*self.roots, *others]
+        images = [[self._on_line(w.numerator, line) for w in factors] for line in self.lines]
         degrees = [int(w.numerator.total_degree()) for w in factors]
         found: dict[str, Rational] = {}
-        for powers in _monomials(degrees, len(roots), bound):
+        for powers in _monomials(degrees, len(self.roots), bound):
             w = [_power_product(image, powers, self.prime) for image in images]
             for c in self._factors(q[0], w[0]):
                 number = rational_number(c, self.prime)
@@ -118,8 +149,8 @@ class _Search:
                     product = product * factor**power
                 root = _square_root(square + product * Fraction(*number))
                 if root is not None:
-                    found.setdefault(str(root), root)
-        return sorted(found.values(), key=_simplicity)
+                    found.setdefault(str(root), root / denominator)
+        return list(found.values())
 
     def _line(self) -> list[tuple[int, int]]:
         """A random line: (constant, slope) for every variable of the ring."""
@@ -231,7 +262,8 @@ def _square_root(value: Rational) -> Rational | None:
 def _simplicity(polynomial: Rational) -> tuple[int, int, int, str]:
     terms = polynomial.numerator.to_dict()
     height = max(abs(int(c)) for c in terms.values())
-    return int(polynomial.numerator.total_degree()), len(terms), height, str(polynomial)
+    size = int(polynomial.numerator.total_degree()) + 2 * int(polynomial.denominator.total_degree())
+    return size, len(terms), height, str(polynomial)
 
 
 def _fitted(

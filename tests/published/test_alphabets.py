@@ -117,6 +117,13 @@ def test_box_with_two_adjacent_legs(tmp_path):
     assert radicand == 1 + y**2 + z**2 - 2 * y - 2 * z - 2 * y * z
 
 
+def test_box_with_three_legs(tmp_path):
+    """Two roots of Källén functions; some letters are (A - B root)/(A + B root) with B a letter too."""
+    form = in_the_ratios("box-three-legs", tmp_path)
+    assert len(form.radicands) == 2
+    assert sum(not letter.polynomial.is_polynomial() for letter in form.odd_letters) == 2
+
+
 @pytest.mark.parametrize("name", ["bubble-distinct-masses", "box-two-adjacent-legs"])
 def test_roots_of_the_kallen_function_become_rational(name, tmp_path):
     assert not any(verified(name, tmp_path).tags)
