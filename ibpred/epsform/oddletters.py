@@ -1,10 +1,10 @@
 """Letters with a square root, found by linear algebra.
 
-A letter ``(P - sqrt Q)/(P + sqrt Q)``, P = A/B, is singular only where ``A^2 - B^2 Q`` or B vanishes, so B is a
-product of known letters, and ``A^2 = B^2 Q + c W`` with W another one and c a number (a zero of Q may occur in
-W, once). For each B and W of bounded degree the c that make ``B^2 Q + c W`` a square are found on a random line
-modulo a prime (zeros of the discriminant), confirmed on a second line, and A is then an exact polynomial
-square root. The logarithmic derivative is
+A letter ``(P - sqrt Q)/(P + sqrt Q)``, P = A/B, is singular only where ``A^2 - B^2 Q`` or B vanishes, so B
+is a product of known letters, and ``A^2 = B^2 Q + c W`` with W another one and c a number (a zero of Q may
+occur in W, once). For each B and W of bounded degree the c that make ``B^2 Q + c W`` a square are found on a
+random line modulo a prime (zeros of the discriminant), confirmed on a second line, and A is then an exact
+polynomial square root. The logarithmic derivative is
 
     dlog = sqrt(Q) (2 Q dP - P dQ) / (Q (P^2 - Q)).
 """
