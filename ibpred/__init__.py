@@ -11,10 +11,11 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from ibpred.run.api import Family, load
+    from ibpred.run.together import Families, load_all
 
 __version__ = "0.1.0"
 
-__all__ = ["Family", "__version__", "load"]
+__all__ = ["Families", "Family", "__version__", "load", "load_all"]
 
 
 def __getattr__(name: str) -> Any:
@@ -23,4 +24,8 @@ def __getattr__(name: str) -> Any:
         from ibpred.run import api
 
         return getattr(api, name)
+    if name in ("Families", "load_all"):
+        from ibpred.run import together
+
+        return getattr(together, name)
     raise AttributeError(f"module 'ibpred' has no attribute {name!r}")

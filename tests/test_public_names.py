@@ -14,7 +14,7 @@ SHARED = {"family", "work", "workers", "as_json", "quiet"}
 
 
 def test_names() -> None:
-    assert set(ibpred.__all__) == {"Family", "__version__", "load"}
+    assert set(ibpred.__all__) == {"Families", "Family", "__version__", "load", "load_all"}
     for name in ibpred.__all__:
         assert getattr(ibpred, name)
 

@@ -184,22 +184,10 @@ def emit(shared: Shared, data: Any, text: Callable[[], str]) -> None:
 
 
 def parse_integral(text: str, source: str) -> NamedPowers:
-    """An integral, ``1,1,1,-1`` or with its family ``box(1,1,1,-1)``; crossed ``box.u(1,1,1,-1)``.
+    """An integral with the name of its family, if it has one; see `ibpred.family.members.read_integral`."""
+    from ibpred.family.members import read_integral
 
-    Raises
-    ------
-    InputError
-        If the powers are no comma-separated list of integers.
-    """
-    name, inner = None, text.strip()
-    if inner.endswith(")") and "(" in inner:
-        name, inner = inner[: inner.index("(")].strip() or None, inner[inner.index("(") + 1 : -1]
-    try:
-        return name, tuple(int(part) for part in inner.split(","))
-    except ValueError:
-        raise InputError(
-            f"{source}: {text!r} is no integral; give the powers separated by commas, e.g. 1,1,1,-1"
-        ) from None
+    return read_integral(text, source)
 
 
 def parse_powers(text: str, source: str) -> tuple[int, ...]:

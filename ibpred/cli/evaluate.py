@@ -141,7 +141,7 @@ def _near(
     data = expansion_data(
         chain.definition,
         point,
-        f"{goal.name} = {goal.place} {'+' if goal.side > 0 else '-'} h",
+        str(goal),
         terms,
         digits,
         [(e.powers, e.epsilon, e.certified, e.route) for e in found],

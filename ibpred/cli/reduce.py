@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from ibpred.cli.common import Shared, emit, open_joint, parse_integral, parse_list_file, several_families
-from ibpred.errors import ExpressionError, InputError, OutOfTimeError
+from ibpred.errors import InputError, OutOfTimeError
 
 if TYPE_CHECKING:
     from ibpred.identities.quantities import Integral
@@ -177,10 +177,9 @@ def _check(joint: Joint, rows: TableRows, wanted: Sequence[Integral], count: int
 
 def _read_sums(paths: Sequence[Path], joint: Joint) -> Mapping[str, Sum]:
     """Sums from files, each under its file's name."""
-    from ibpred.identities.amplitude import Setting, parse_terms
+    from ibpred.run.amplitudes import sum_of_text
 
-    setting = Setting([member.definition for member in joint.members])
-    sums: dict[str, dict[Integral, Any]] = {}
+    sums: dict[str, Sum] = {}
     for path in paths:
         if path.stem in sums:
             raise InputError(f"two sums are called {path.stem}; rename one of the files")
@@ -188,17 +187,5 @@ def _read_sums(paths: Sequence[Path], joint: Joint) -> Mapping[str, Sum]:
             text = path.read_text(encoding="utf-8")
         except (OSError, UnicodeDecodeError) as error:
             raise InputError(f"the sum {path} cannot be read: {error}") from error
-        total = sums.setdefault(path.stem, {})
-        for number, line in enumerate(text.splitlines(), start=1):
-            content = line.split("#", 1)[0].rstrip()
-            if not content.strip():
-                continue
-            try:
-                terms = parse_terms(content, setting)
-            except ExpressionError as error:
-                raise InputError(f"{path}:{number}: {error}") from error
-            for integral, value in terms.items():
-                total[integral] = total[integral] + value if integral in total else value
-        if not total:
-            raise InputError(f"the sum {path} holds no term, or its terms cancel")
+        sums[path.stem] = sum_of_text(text, str(path), joint.members)
     return sums

@@ -11,6 +11,7 @@ from __future__ import annotations
 import dataclasses
 import types
 from collections.abc import Mapping, Sequence
+from enum import Enum
 from fractions import Fraction
 from functools import cache
 from typing import Any, TypeVar, Union, get_args, get_origin, get_type_hints
@@ -39,6 +40,8 @@ def to_data(value: Any) -> JsonData:
         return [",".join(value.ring.names), str(value)]
     if isinstance(value, Ring):
         return ",".join(value.names)
+    if isinstance(value, Enum):
+        return to_data(value.value)
     if hasattr(value, "read"):
         return str(value)
     if dataclasses.is_dataclass(value) and not isinstance(value, type):
@@ -90,6 +93,8 @@ def _read(kind: Any, data: Any) -> Any:
         if type(data) is not kind:
             raise TypeError(f"{data!r} is not of type {kind.__name__}")
         return data
+    if isinstance(kind, type) and issubclass(kind, Enum):
+        return kind(data)
     if hasattr(kind, "read"):
         return kind.read(data)
     if dataclasses.is_dataclass(kind):
@@ -115,6 +120,9 @@ def _read_union(kinds: tuple[Any, ...], data: Any) -> Any:
     if data is None and type(None) in kinds:
         return None
     real = [kind for kind in kinds if kind is not type(None)]
+    if len(real) == 2 and Rational in real:
+        # a rational function is a list, a record an object
+        real = [kind for kind in real if (kind is Rational) == isinstance(data, list)]
     if len(real) != 1:
         raise TypeError("a union of several record types is not read")
     return _read(real[0], data)

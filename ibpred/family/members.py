@@ -55,6 +55,32 @@ def integral_text(name: str, powers: Powers) -> str:
     return f"{name}({','.join(map(str, powers))})"
 
 
+def read_integral(text: str, source: str) -> tuple[str | None, Powers]:
+    """An integral, ``1,1,1,-1`` or with its family ``box(1,1,1,-1)``; crossed ``box.u(1,1,1,-1)``.
+
+    Parameters
+    ----------
+    text
+        The integral.
+    source
+        Where it stands, for the message.
+
+    Raises
+    ------
+    InputError
+        If the powers are no comma-separated list of integers.
+    """
+    name, inner = None, text.strip()
+    if inner.endswith(")") and "(" in inner:
+        name, inner = inner[: inner.index("(")].strip() or None, inner[inner.index("(") + 1 : -1]
+    try:
+        return name, tuple(int(part) for part in inner.split(","))
+    except ValueError:
+        raise InputError(
+            f"{source}: {text!r} is no integral; give the powers separated by commas, e.g. 1,1,1,-1"
+        ) from None
+
+
 def _check_same(first: FamilyDefinition, other: FamilyDefinition) -> None:
     def differ(what: str, ours: object, theirs: object) -> InputError:
         return InputError(

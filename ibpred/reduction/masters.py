@@ -20,6 +20,7 @@ from ibpred.reduction.seeds import LARGEST_SYSTEM, depths, expected_entries, ful
 from ibpred.reduction.system import sparse_system
 from ibpred.reduction.wanted import check_powers
 from ibpred.sectors.analysis import SectorAnalysis
+from ibpred.sectors.mapping import SectorMap
 from ibpred.sectors.order import key_columns, sector_of
 
 _NAMED = 5  # how many integrals an error message lists
@@ -217,6 +218,16 @@ def _irreducible(
     return masters, set(solution.masters) <= set(inside.tolist())
 
 
+def _elsewhere(members: Sequence[FamilyIdentities], found: SectorMap) -> str:
+    """Where the integrals of a sector go that equals another one, and that masters are preferred there."""
+    family = next(m.family for m in members if m.family.name == found.target_family)
+    corner = tuple(found.target >> i & 1 for i in range(len(family.lines)))
+    return (
+        f"its sector equals that of {integral_text(family.name, corner)}, to which its integrals are mapped: "
+        "prefer integrals of that sector"
+    )
+
+
 def _check_preferred(
     members: Sequence[FamilyIdentities], preferred: Sequence[Integral], found: tuple[Integral, ...]
 ) -> None:
@@ -225,6 +236,9 @@ def _check_preferred(
             sector = sector_of(powers)
             others = [m for n, m in found if n == number and sector_of(m) == sector]
             there = f"the masters of its sector are {others}" if others else "its sector has no masters"
+            maps = [m for m in members[number].analysis.maps_from(sector) if not m.is_symmetry]
+            if not others and maps:
+                there = _elsewhere(members, maps[0])
             raise InputError(
                 f"{members[number].family.name}: the preferred master {tuple(powers)} reduces to other "
                 f"masters; {there}"

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from ibpred.numerics.value import Route
 from ibpred.report.export.material import Material
 
 
@@ -55,6 +56,10 @@ _AUXILIARY = (
     Citation("auxiliary mass", "X. Liu, Y.-Q. Ma, C.-Y. Wang", "arXiv:1711.09572"),
     Citation("auxiliary mass", "Liu, Ma", "arXiv:2201.11637"),
 )
+_REGIONS = (
+    Citation("expansion by regions", "M. Beneke, V.A. Smirnov", "hep-ph/9711391"),
+    Citation("expansion by regions", "B. Jantzen", "arXiv:1111.2589"),
+)
 _SERIES = (Citation("tail bounds of series solutions", "M. Mezzarobba, B. Salvy", "arXiv:0904.2452"),)
 _DIRECT = (
     Citation("sector decomposition", "T. Binoth, G. Heinrich", "hep-ph/0004013"),
@@ -77,8 +82,10 @@ def citations(material: Material) -> tuple[Citation, ...]:
     if material.solution is not None and material.solution["letters"]:
         found += _WORDS
     routes = {value.get("route") for table in material.tables for value in table["integrals"]}
+    if material.solution is not None or Route.REGIONS.value in routes:
+        found += _REGIONS
     fitted = material.solution is not None and any("fitted" in c for c in material.solution["constants"])
-    if fitted or routes & {"auxiliary mass", "continuation"}:
+    if fitted or routes & {Route.AUXILIARY_MASS.value, Route.CONTINUATION.value}:
         found += _AUXILIARY
     if material.tables:
         found += _SERIES

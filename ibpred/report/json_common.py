@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
 from typing import Any
 
 from ibpred.family.members import Member
 from ibpred.identities.quantities import Integral
 from ibpred.reduction.masters import CommonMasters
 from ibpred.reduction.sums import ReducedSums
+from ibpred.report.text import integral_text, named_integral
 
 Data = dict[str, Any]
 
@@ -98,3 +100,37 @@ def without_families(data: Data) -> Data:
         key: [plain_entry(e) for e in data[key]] for key in ("reductions", "sums") if key in data
     }
     return {"family": name, "masters": [master["powers"] for master in data["masters"]], **entries}
+
+
+@dataclass(frozen=True)
+class Labelled:
+    """Reductions or sums, of one family or several, by names alone.
+
+    Attributes
+    ----------
+    masters
+        Names of the masters, in order.
+    rows
+        Name of the integral or sum, and its terms (index of a master, coefficient).
+    """
+
+    masters: tuple[str, ...]
+    rows: tuple[tuple[str, TextTerms], ...]
+
+
+def labelled(data: Mapping[str, Any]) -> Labelled:
+    """What `reduce` prints, in any of its shapes, by names."""
+    one = str(data["family"]) if "family" in data else None
+
+    def name(integral: Any) -> str:
+        if one is not None:
+            return integral_text(one, integral["powers"] if isinstance(integral, dict) else integral)
+        return named_integral(integral)
+
+    masters = tuple(name(master) for master in data["masters"])
+    place = {master: index for index, master in enumerate(masters)}
+    rows = []
+    for entry in data["reductions"] if "reductions" in data else data["sums"]:
+        terms = tuple((place[name(term["master"])], str(term["coefficient"])) for term in entry["terms"])
+        rows.append((str(entry["name"]) if "name" in entry else name(entry), terms))
+    return Labelled(masters, tuple(rows))

@@ -79,8 +79,8 @@ def common_masters_text(data: Data) -> str:
     return "\n".join(lines + columns(rows))
 
 
-def _sum(terms: Sequence[tuple[str, str]]) -> str:
-    """Text of a sum of coefficient times object."""
+def combination_text(terms: Sequence[tuple[str, str]]) -> str:
+    """A sum of (coefficient, object)."""
     if not terms:
         return "0"
     parts = []
@@ -111,7 +111,7 @@ def _is_sum(text: str) -> bool:
 def reduction_line(entry: Data) -> str:
     """One integral or named sum in terms of the masters."""
     terms = [(t["coefficient"], named_integral(t["master"])) for t in entry["terms"]]
-    return f"{entry['name'] if 'name' in entry else named_integral(entry)} = {_sum(terms)}"
+    return f"{entry['name'] if 'name' in entry else named_integral(entry)} = {combination_text(terms)}"
 
 
 def differential_text(data: Data) -> str:
@@ -125,7 +125,7 @@ def differential_text(data: Data) -> str:
         for row, column, value in data["matrices"][variable]:
             by_row.setdefault(row, []).append((value, f"I{column + 1}"))
         lines.append("")
-        lines += [f"d I{row + 1} / d {variable} = {_sum(by_row[row])}" for row in sorted(by_row)]
+        lines += [f"d I{row + 1} / d {variable} = {combination_text(by_row[row])}" for row in sorted(by_row)]
     return "\n".join(lines)
 
 
@@ -161,13 +161,13 @@ def epsilon_text(data: Data) -> str:
             by_row.setdefault(row, []).append((value, f"f{column + 1}"))
         lines.append("")
         lines.append(f"eps dlog({letter}):")
-        lines += [f"  d f{row + 1}: {_sum(by_row[row])}" for row in sorted(by_row)]
+        lines += [f"  d f{row + 1}: {combination_text(by_row[row])}" for row in sorted(by_row)]
     lines.append("")
     lines.append("I = T f with")
     by_row = {}
     for row, column, value in data["transformation"]:
         by_row.setdefault(row, []).append((value, f"f{column + 1}"))
-    lines += [f"  I{row + 1} = {_sum(by_row[row])}" for row in sorted(by_row)]
+    lines += [f"  I{row + 1} = {combination_text(by_row[row])}" for row in sorted(by_row)]
     return "\n".join(lines + _offer_lines(data))
 
 

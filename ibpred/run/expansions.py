@@ -32,6 +32,9 @@ class Approach:
     place: Fraction
     side: int
 
+    def __str__(self) -> str:
+        return f"{self.name} = {self.place} {'+' if self.side > 0 else '-'} h"
+
 
 @dataclass(frozen=True)
 class Expansion:

@@ -53,6 +53,8 @@ def test_all_commands_use_the_preferred_masters(call) -> None:
         ("1,1,1", "5 powers are needed"),
         ("box(2,1,1,0,0)", "does not belong to the family"),
         ("4,x", "is no integral"),
+        # lines 1 and 3 alone are two tadpoles, as lines 1 and 2 are
+        ("2,0,1,0,0", "equals that of sunrise-equal-masses(1,1,0,0,0)"),
     ],
 )
 def test_wrong_preferences_are_bad_input(call, powers: str, words: str) -> None:

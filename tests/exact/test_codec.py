@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 from collections.abc import Mapping
 from dataclasses import dataclass
+from enum import Enum
 from fractions import Fraction
 
 import pytest
@@ -54,6 +55,25 @@ def test_data_of_another_shape_are_refused(damage: dict[str, object]) -> None:
     data = dict(to_data(RECORD))  # type: ignore[call-overload]
     with pytest.raises(StoreError):
         from_data(Outer, {**data, **damage})
+
+
+class Colour(Enum):
+    RED = "red"
+    BLUE = "blue"
+
+
+@dataclass(frozen=True)
+class Choice:
+    colour: Colour
+    either: Rational | Inner
+
+
+@pytest.mark.parametrize("either", [R.one, Inner(R.one, None)])
+def test_members_of_enumerations_and_of_unions(either: Rational | Inner) -> None:
+    record = Choice(Colour.BLUE, either)
+    assert from_data(Choice, json.loads(canonical_bytes(to_data(record)))) == record
+    with pytest.raises(StoreError):
+        from_data(Choice, {"colour": "green", "either": ["d", "1"]})
 
 
 def test_floats_have_no_canonical_form() -> None:

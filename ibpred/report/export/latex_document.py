@@ -6,6 +6,14 @@ from collections.abc import Sequence
 
 from ibpred.report.export.material import Data, Material, ratio_equation
 from ibpred.report.latex import expression_latex, integral_latex
+from ibpred.report.latex_lines import (
+    aligned,
+    derivative_lines,
+    function_lines,
+    letter_lines,
+    master_lines,
+    transformation_lines,
+)
 
 _SPECIAL = {
     "\\": r"\textbackslash{}",
@@ -48,7 +56,8 @@ def latex_document(material: Material, closing: Sequence[str] = ()) -> str:
         rf"Conventions: $d={family.dimension}-2\epsilon$, lines $D=m^2-q^2-\mathrm{{i}}0$, measure "
         rf"${factor}\prod_l \mathrm{{d}}^dk_l/(\mathrm{{i}}\pi^{{d/2}})$."
     )
-    parts.append(_masters(material))
+    masters = aligned(master_lines(family.name, material.masters))
+    parts.append(f"\\subsection*{{Master integrals}}\n{masters}")
     for name in material.variables:
         parts.append(_derivatives(name, material.differential["matrices"][name]))
     if material.epsilon is not None and material.epsilon["transformation"]:
@@ -66,51 +75,10 @@ def plain_latex(text: str) -> str:
     return "".join(_SPECIAL.get(c, c) for c in text)
 
 
-def _masters(material: Material) -> str:
-    lines = [
-        rf"I_{{{number}}} &= {integral_latex(material.family.name, powers)}"
-        for number, powers in enumerate(material.masters, start=1)
-    ]
-    return "\\subsection*{Master integrals}\n" + _aligned(lines)
-
-
-def _aligned(lines: Sequence[str]) -> str:
-    return "\\begin{align*}\n" + " \\\\\n".join(lines) + "\n\\end{align*}"
-
-
-def _rows(entries: Sequence[Sequence[object]], symbol: str) -> dict[int, str]:
-    """For each row of a sparse matrix the sum of its entries times symbols."""
-    found: dict[int, str] = {}
-    for row, column, text in entries:
-        written = str(text)
-        sign = "-" if written.startswith("-") and not _has_sum(written[1:]) else "+"
-        factor = written[1:] if sign == "-" else written
-        if _has_sum(factor):
-            factor = f"({factor})"
-        product = rf"{expression_latex(factor)}\,{symbol}_{{{int(str(column)) + 1}}}"
-        key = int(str(row))
-        before = found.get(key, "")
-        found[key] = f"{before} {sign} {product}" if before or sign == "-" else product
-    return found
-
-
-def _has_sum(text: str) -> bool:
-    depth = 0
-    for i, character in enumerate(text):
-        depth += (character == "(") - (character == ")")
-        if i and depth == 0 and character in "+-":
-            return True
-    return False
-
-
 def _derivatives(variable: str, entries: Sequence[Sequence[object]]) -> str:
-    name = expression_latex(variable)
-    lines = [
-        rf"\frac{{\partial I_{{{row + 1}}}}}{{\partial {name}}} &= {total}"
-        for row, total in sorted(_rows(entries, "I").items())
-    ]
-    body = _aligned(lines) if lines else "All derivatives vanish."
-    return f"\\subsection*{{Derivatives with respect to ${name}$}}\n{body}"
+    lines = derivative_lines(variable, entries)
+    body = aligned(lines) if lines else "All derivatives vanish."
+    return f"\\subsection*{{Derivatives with respect to ${expression_latex(variable)}$}}\n{body}"
 
 
 def _epsilon(data: Data) -> str:
@@ -121,32 +89,17 @@ def _epsilon(data: Data) -> str:
         rf"With {ratios}, $I=T f$ and "
         r"$\mathrm{d}f=\epsilon\sum_l A_l\,\mathrm{d}\log l\,f$:",
     ]
-    for letter in data["letters"]:
-        lines = [
-            rf"A_{{{expression_latex(letter)}}}:\quad f_{{{row + 1}}} &\to {total}"
-            for row, total in sorted(_rows(data["matrices"][letter], "f").items())
-        ]
-        parts.append(_aligned(lines))
-    lines = [
-        f"I_{{{row + 1}}} &= {total}" for row, total in sorted(_rows(data["transformation"], "f").items())
-    ]
-    parts.append(_aligned(lines))
+    parts += [aligned(letter_lines(data, letter)) for letter in data["letters"]]
+    parts.append(aligned(transformation_lines(data)))
     return "\n".join(parts)
 
 
 def _solution(data: Data) -> str:
-    lines = []
-    for function in data["functions"]:
-        for entry in function["orders"]:
-            if entry["text"] != "0":
-                lines.append(
-                    rf"\bigl[f_{{{function['master'] + 1}}}\bigr]_{{\epsilon^{{{entry['order']}}}}} &= "
-                    + expression_latex(entry["text"])
-                )
+    lines = function_lines(data)
     return (
         "\\subsection*{Solution}\n"
         r"$G(a_1,\dots,a_n;x)=\int_0^x\frac{\mathrm{d}t}{t-a_1}G(a_2,\dots,a_n;t)$, "
-        r"$G(0,\dots,0;x)=\log^n(x)/n!$." + "\n" + (_aligned(lines) if lines else "")
+        r"$G(0,\dots,0;x)=\log^n(x)/n!$." + "\n" + (aligned(lines) if lines else "")
     )
 
 

@@ -7,11 +7,12 @@ from dataclasses import dataclass
 from functools import partial
 from typing import Any
 
-from markupsafe import Markup
+from markupsafe import Markup, escape
 
 from ibpred.family.definition import FamilyDefinition
 from ibpred.report.drawing import family_svg, sector_svg
-from ibpred.report.export.material import Material, ratio_equation
+from ibpred.report.export.material import ratio_equation
+from ibpred.report.json_common import Labelled
 from ibpred.report.page.formula import Name, read_formula, total
 from ibpred.report.page.mathml import Typesetter, derivative, displayed, indexed, integral
 from ibpred.report.text import integral_text
@@ -91,26 +92,23 @@ def picture(family: FamilyDefinition) -> Markup:
     return Markup(family_svg(family)) if family.graph is not None else Markup("")
 
 
-def master_rows(material: Material) -> tuple[MasterRow, ...]:
+def master_rows(family: FamilyDefinition, masters: Sequence[Sequence[int]]) -> tuple[MasterRow, ...]:
     """The masters."""
-    family = material.family
     rows = []
-    for number, powers in enumerate(material.masters, start=1):
+    for number, powers in enumerate(masters, start=1):
         svg = ""
         if family.graph is not None:
-            svg = sector_svg(family, sector_of(powers), "")
+            svg = sector_svg(family, sector_of(tuple(powers)), "")
         rows.append(MasterRow(_math(indexed("I", number)), integral_text(family.name, powers), Markup(svg)))
     return tuple(rows)
 
 
-def derivatives(material: Material, setter: Typesetter) -> tuple[Titled, ...]:
+def derivatives(data: Data, setter: Typesetter) -> tuple[Titled, ...]:
     """The differential equations, one group for each invariant."""
     groups = []
-    for name in material.variables:
+    for name in data["variables"]:
         variable = setter.name(name)
-        formulas, left_out = _equations(
-            material.differential["matrices"][name], "I", setter, partial(_derivative, variable)
-        )
+        formulas, left_out = _equations(data["matrices"][name], "I", setter, partial(_derivative, variable))
         note = f"{left_out} long rows are left out here; they are in diffeq.json." if left_out else ""
         title = Markup(f"Derivatives in <math>{variable}</math>")
         groups.append(Titled(title, formulas, note))
@@ -140,6 +138,18 @@ def _equations(
 _LONGEST_ROW = 4000
 
 
+def reductions(data: Labelled, setter: Typesetter) -> tuple[tuple[Markup, ...], int]:
+    """Integrals or sums in terms of the masters, and how many are left out for their length."""
+    formulas, left_out = [], 0
+    for name, terms in data.rows:
+        if sum(len(text) for _, text in terms) > _LONGEST_ROW:
+            left_out += 1
+            continue
+        right = total([(text, Name(f"I{index + 1}")) for index, text in terms])
+        formulas.append(Markup(setter.display(f"<mtext>{escape(name)}</mtext>", right)))
+    return tuple(formulas), left_out
+
+
 def ratios(data: Data, setter: Typesetter) -> tuple[Markup, ...]:
     """The variables of the epsilon-form."""
     found = []
@@ -151,7 +161,7 @@ def ratios(data: Data, setter: Typesetter) -> tuple[Markup, ...]:
 
 def _drawn(text: str, setter: Typesetter) -> str:
     body = setter.expression(text)
-    return body if body is not None else f"<mtext>{Markup.escape(text)}</mtext>"
+    return body if body is not None else f"<mtext>{escape(text)}</mtext>"
 
 
 def letters(data: Data, setter: Typesetter) -> tuple[Markup, ...]:
@@ -248,10 +258,10 @@ def constants(data: Data, setter: Typesetter) -> tuple[ConstantRow, ...]:
     return tuple(rows)
 
 
-def value_tables(material: Material) -> tuple[ValueTable, ...]:
+def value_tables(family: str, data: Sequence[Data]) -> tuple[ValueTable, ...]:
     """Values at points, with how they were obtained."""
     tables = []
-    for table in material.tables:
+    for table in data:
         point = ", ".join(f"{name} = {value}" for name, value in table["point"].items())
         rows = []
         for value in table["integrals"]:
@@ -263,7 +273,7 @@ def value_tables(material: Material) -> tuple[ValueTable, ...]:
             )
             rows.append(
                 ValueRow(
-                    _math(integral(material.family.name, value["powers"])),
+                    _math(integral(family, value["powers"])),
                     f"{kind}, {route}" if route else kind,
                     bool(value["certified"]),
                     coefficients,
@@ -279,7 +289,7 @@ def polynomials(inspection: Data, setter: Typesetter) -> tuple[Markup, ...]:
     for name in ("U", "F"):
         body = setter.expression(inspection[name])
         if body is None:
-            found.append(Markup(f"<code>{name} = {Markup.escape(inspection[name])}</code>"))
+            found.append(Markup(f"<code>{name} = {escape(inspection[name])}</code>"))
         else:
             found.append(_math(f"<mi>{name}</mi><mo>=</mo>{body}"))
     return tuple(found)
