@@ -3,18 +3,22 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from fractions import Fraction
 from types import MappingProxyType
 
 from ibpred.boundary.expansion import ClosedForm, expand, on_line
 from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.gamma import gamma_form
-from ibpred.boundary.regions import parametric_family
+from ibpred.boundary.regions import Region, parametric_family
+from ibpred.boundary.sheets import behaviours
 from ibpred.boundary.sources import Master
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import Rational, Ring, ring
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.iterated.series import Series
+from ibpred.iterated.solution import letter_roots
+from ibpred.iterated.transport import Point
 
 
 def region_values(
@@ -180,13 +184,14 @@ def problem_in_variables(
         The invariants in terms of the form's variables, over its field, the unit +1 or -1. The region must
         touch the corner where all variables are small and positive.
     real
-        Whether the region is Euclidean. Else only closed forms are used, with their phases: how the other
-        masters behave is read off F where it is positive.
+        Whether the region is Euclidean. Else closed forms are used with their phases, and how the other
+        masters behave is read off where their own F is positive.
     """
     known = []
     for powers in masters:
         closed = closed_form_on_line(family, powers, values, form.ring, real)
-        known.append(Master(master_label(family, powers), closed, powers))
+        found = {} if real or closed is not None else _behaviours(family, powers, form, values)
+        known.append(Master(master_label(family, powers), closed, powers, found))
     return BoundaryProblem(
         form,
         tuple(known),
@@ -196,3 +201,17 @@ def problem_in_variables(
         weight,
         real=real,
     )
+
+
+def _behaviours(
+    family: FamilyDefinition, powers: Powers, form: EpsilonForm, values: Mapping[str, Rational]
+) -> dict[Point, tuple[Region, ...]]:
+    """How a master may behave at both ends of a region of scattering, where this is known."""
+    if len(form.variables) != 1:
+        return {}
+    roots = letter_roots(form.letters, form.variables[0])
+    if None in roots:
+        return {}
+    letters = {Fraction(0), *(root for root in roots if root is not None)}
+    ends = sorted(root for root in letters if root >= 0)[:2]
+    return behaviours(family, powers, values, form.variables[0], letters, ends)

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field, replace
 from fractions import Fraction
 
 from ibpred.boundary.approach import Approach, is_positive_before, leading, near
@@ -19,7 +19,7 @@ from ibpred.boundary.regions import (
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
 from ibpred.iterated.alphabet import fraction_root, is_positive_at
-from ibpred.iterated.transport import Infinity
+from ibpred.iterated.transport import Infinity, Point
 
 Slopes = tuple[Fraction | None, ...]
 
@@ -36,11 +36,14 @@ class Master:
         Its closed form, where there is one.
     powers
         Its powers, from which its behaviour is read off; None where nothing shall be claimed.
+    behaviours
+        How it may behave at points of an edge without scales, where this is known beforehand.
     """
 
     label: str
     closed: ClosedForm | None
     powers: Powers | None
+    behaviours: Mapping[Point, tuple[Region, ...]] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -143,6 +146,8 @@ def known_at(master: Master, family: ParametricFamily | None, approach: Approach
                 return Known(closed, ())
         exponents = behaviour_of_closed_form(master.closed, approach)
         return Known(None, tuple(Region(exponent, None) for exponent in exponents))
+    if not approach.scales and point in master.behaviours:
+        return Known(None, master.behaviours[point])
     if master.powers is None or family is None:
         return None
     found = regions(family, master.powers, approach)

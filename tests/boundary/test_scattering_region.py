@@ -85,10 +85,27 @@ def problem(weight: int = WEIGHT):  # type: ignore[no-untyped-def]
     )
 
 
+def bare_problem():  # type: ignore[no-untyped-def]
+    """Without what is known of the box itself."""
+    whole = problem()
+    return replace(whole, masters=tuple(replace(m, behaviours={}) for m in whole.masters))
+
+
+def test_behaviour_on_its_own_sheet_fixes_the_box() -> None:
+    """F of the box is positive at s, t < 0: x = 0 borders on that, x = 1 lies beyond, at t/s = -1."""
+    box = problem().masters[2]
+    assert {region.exponent.slope for region in box.behaviours[Fraction(0)]} == {
+        (Fraction(0),),
+        (Fraction(-1),),
+    }
+    assert [region.exponent.slope for region in box.behaviours[Fraction(1)]] == [(Fraction(0),)]
+    assert list(fix_constants(problem()).constants) == continued()
+
+
 def test_closed_forms_fix_their_functions_with_phases() -> None:
     expected = continued()
     with pytest.raises(OpenConstantsError) as caught:
-        fix_constants(problem())
+        fix_constants(bare_problem())
     for k in range(WEIGHT + 2):
         for row in (0, 1):
             assert caught.value.known[k - 1, row] == expected[k][row]
@@ -98,12 +115,12 @@ def test_closed_forms_fix_their_functions_with_phases() -> None:
 def test_complex_fits_are_taken() -> None:
     expected = continued()
     fits = [Fitted(2, k - 1, Fit(vector[2], 40, -30)) for k, vector in enumerate(expected)]
-    boundary = fix_constants(problem(), fits)
+    boundary = fix_constants(bare_problem(), fits)
     assert boundary.start == -1
     assert list(boundary.constants) == expected
     wrong = Fitted(0, 1, Fit(expected[2][0] + HALF_TURN**2, 40, -30))
     with pytest.raises(BoundaryError, match="contradicts"):
-        fix_constants(problem(), [*fits, wrong])
+        fix_constants(bare_problem(), [*fits, wrong])
 
 
 def values(target: Target, bits: int):  # type: ignore[no-untyped-def]
@@ -114,10 +131,10 @@ def values(target: Target, bits: int):  # type: ignore[no-untyped-def]
 def test_constants_are_recognised_from_complex_values() -> None:
     x = Fraction(1, 3)
     with pytest.raises(OpenConstantsError) as caught:
-        fix_constants(problem())
+        fix_constants(bare_problem())
     here = values(Target(x, 0), 300)
-    fits = fitted_constants(problem(), caught.value, here, -1, {"x": x}, 40, SINGLE_SCALE, -12)
-    assert list(fix_constants(problem(), fits).constants) == continued()
+    fits = fitted_constants(bare_problem(), caught.value, here, -1, {"x": x}, 40, SINGLE_SCALE, -12)
+    assert list(fix_constants(bare_problem(), fits).constants) == continued()
 
 
 REGIONS = (Target(Fraction(3), 0), Target(Fraction(1, 2), 1), Target(Fraction(2, 3), 0))
