@@ -15,6 +15,7 @@ from ibpred.boundary.sources import Master
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import Rational, Ring, ring
+from ibpred.family.cuts import refuse_cuts
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.iterated.series import Series
 from ibpred.iterated.solution import letter_roots
@@ -100,10 +101,13 @@ def one_scale_values(
     ------
     InputError
         If the family has a ratio.
+    UnfinishedError
+        If a line is cut.
     BoundaryError
         If a master is no product of Gamma functions and not fitted through that order (names it), or needs
         a constant that is not known exactly.
     """
+    refuse_cuts(family)
     field = ring(("eps",))
     values = region_values(family, signs, field, ())
     found = []
@@ -186,7 +190,13 @@ def problem_in_variables(
     real
         Whether the region is Euclidean. Else closed forms are used with their phases, and how the other
         masters behave is read off where their own F is positive.
+
+    Raises
+    ------
+    UnfinishedError
+        If a line is cut.
     """
+    refuse_cuts(family)
     known = []
     for powers in masters:
         closed = closed_form_on_line(family, powers, values, form.ring, real)

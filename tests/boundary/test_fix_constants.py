@@ -19,9 +19,9 @@ from numeric_words import series_value
 
 from ibpred.boundary.eigen import eigenspaces
 from ibpred.boundary.fix import fix_constants
-from ibpred.boundary.problem import boundary_problem
+from ibpred.boundary.problem import boundary_problem, one_scale_values
 from ibpred.epsform.form import EpsilonForm
-from ibpred.errors import BoundaryError, InputError
+from ibpred.errors import BoundaryError, InputError, UnfinishedError
 from ibpred.exact.codec import from_data, to_data
 from ibpred.iterated.matrices import identity, rational_matrix
 from ibpred.iterated.solution import Solution, solve_orders
@@ -142,3 +142,13 @@ def test_eigenspaces_split_the_space() -> None:
     for space in spaces:
         assert space.chain[0] * space.chain[0] == space.chain[0]
         assert space.chain[0] * matrix == matrix * space.chain[0]
+
+
+def test_integrals_with_cut_lines_have_no_values() -> None:
+    """The box with three cut lines is fixed by nothing: not by the behaviour of the box without cuts."""
+    box = family("massless-box")
+    cut = replace(box, lines=tuple(replace(line, cut=k < 3) for k, line in enumerate(box.lines)))
+    with pytest.raises(UnfinishedError, match=r"line 1 \(k\) is cut"):
+        boundary_problem(cut, BOX_MASTERS, box_form(), SIGNS, 4)
+    with pytest.raises(UnfinishedError, match="is cut"):
+        one_scale_values(cut, BOX_MASTERS, SIGNS, 0)

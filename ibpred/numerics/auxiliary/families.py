@@ -9,6 +9,7 @@ from fractions import Fraction
 
 from ibpred.errors import PointError, UnfinishedError
 from ibpred.exact.rational import Rational, Ring, ring
+from ibpred.family.cuts import refuse_cuts
 from ibpred.family.definition import FamilyDefinition, Invariant, Line
 from ibpred.family.lines import Space, completed, square_line
 from ibpred.family.momenta import Momenta, momentum_text
@@ -58,13 +59,8 @@ def check_lines(family: FamilyDefinition) -> None:
     UnfinishedError
         Otherwise, or if lines are cut.
     """
+    refuse_cuts(family)
     for number, line in enumerate(family.lines, start=1):
-        if line.cut:
-            raise UnfinishedError(
-                f"{family.name}: line {number} ({line.text}) is cut; a cut fixes which identities hold, not "
-                "the factor of the delta function that stands for the line, so that integrals have no values;"
-                " take the cuts out of the family to evaluate the integrals with propagators"
-            )
         if not line.numerator and line.momentum is None and any(map(any, line.quadratic)):
             raise UnfinishedError(
                 f"{family.name}: line {number} ({line.text}) is given by an expression with products of loop "
