@@ -14,6 +14,7 @@ from ibpred.boundary.conditions import (
     view_from,
 )
 from ibpred.boundary.edges import Corner, Edge, edges_at
+from ibpred.boundary.far_side import half_turn, reflected_view
 from ibpred.boundary.linear import Transported, transported
 from ibpred.boundary.regions import ParametricFamily
 from ibpred.boundary.sources import Master, keeps_root
@@ -116,7 +117,24 @@ def explore(
             if edge.end is not None and end is not None:
                 reached[edge.end] = end
                 queue.append(edge.end)
+        if not problem.real and len(corner) == 1:
+            conditions += _far_side(problem, last, order, unused)
         yield Gathered(tuple(conditions), tuple(unused))
+
+
+def _far_side(problem: BoundaryProblem, last: int, order: int, unused: list[str]) -> list[Transported]:
+    """Conditions at minus infinity, where nothing lies in between."""
+    view = reflected_view(problem.form, problem.masters)
+    residues = view.edge.residues
+    found = conditions_at(view, INFINITY, last)
+    if not found or view.edge.nonlinear or any(a > 0 and residues[a] for a in residues):
+        return []
+    try:
+        transport = _connection(view.edge, INFINITY, order, ()) @ half_turn(view, order)
+    except BoundaryError as error:
+        unused.append(str(error))
+        return []
+    return [transported(condition, transport) for condition in found]
 
 
 def _walk(

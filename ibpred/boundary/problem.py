@@ -9,8 +9,8 @@ from types import MappingProxyType
 from ibpred.boundary.expansion import ClosedForm, expand, on_line
 from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.gamma import gamma_form
-from ibpred.boundary.regions import Region, parametric_family
-from ibpred.boundary.sheets import behaviours
+from ibpred.boundary.regions import parametric_family
+from ibpred.boundary.sheets import Behaviours, behaviours
 from ibpred.boundary.sources import Master
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
@@ -19,7 +19,6 @@ from ibpred.family.cuts import refuse_cuts
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.iterated.series import Series
 from ibpred.iterated.solution import letter_roots
-from ibpred.iterated.transport import Point
 
 
 def region_values(
@@ -200,8 +199,12 @@ def problem_in_variables(
     known = []
     for powers in masters:
         closed = closed_form_on_line(family, powers, values, form.ring, real)
-        found = {} if real or closed is not None else _behaviours(family, powers, form, values)
-        known.append(Master(master_label(family, powers), closed, powers, found))
+        label = master_label(family, powers)
+        found = None if real or closed is not None else _behaviours(family, powers, form, values)
+        if found is None:
+            known.append(Master(label, closed, powers))
+        else:
+            known.append(Master(label, closed, powers, found.at_ends, found.at_infinity))
     return BoundaryProblem(
         form,
         tuple(known),
@@ -215,13 +218,12 @@ def problem_in_variables(
 
 def _behaviours(
     family: FamilyDefinition, powers: Powers, form: EpsilonForm, values: Mapping[str, Rational]
-) -> dict[Point, tuple[Region, ...]]:
-    """How a master may behave at both ends of a region of scattering, where this is known."""
+) -> Behaviours | None:
+    """How a master may behave at letters near a region of scattering, where these are known."""
     if len(form.variables) != 1:
-        return {}
+        return None
     roots = letter_roots(form.letters, form.variables[0])
     if None in roots:
-        return {}
+        return None
     letters = {Fraction(0), *(root for root in roots if root is not None)}
-    ends = sorted(root for root in letters if root >= 0)[:2]
-    return behaviours(family, powers, values, form.variables[0], letters, ends)
+    return behaviours(family, powers, values, form.variables[0], letters)

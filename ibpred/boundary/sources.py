@@ -38,12 +38,16 @@ class Master:
         Its powers, from which its behaviour is read off; None where nothing shall be claimed.
     behaviours
         How it may behave at points of an edge without scales, where this is known beforehand.
+    at_infinity
+        Likewise where the ratio tends to minus infinity, reached through the upper half plane; None where
+        this is not known.
     """
 
     label: str
     closed: ClosedForm | None
     powers: Powers | None
     behaviours: Mapping[Point, tuple[Region, ...]] = field(default_factory=dict)
+    at_infinity: tuple[Region, ...] | None = None
 
 
 @dataclass(frozen=True)

@@ -9,9 +9,11 @@ from __future__ import annotations
 from dataclasses import replace
 from fractions import Fraction
 
+import flint
 import pytest
-from canonical_forms import BOX_MASTERS, X, box_form, family
+from canonical_forms import BOX_MASTERS, X, box_form, diagonal_form, family
 
+from ibpred.balls.context import precision
 from ibpred.boundary.fix import Fitted, OpenConstantsError, fix_constants
 from ibpred.boundary.from_values import fitted_constants
 from ibpred.boundary.problem import boundary_problem, problem_in_variables
@@ -23,6 +25,7 @@ from ibpred.iterated.matrices import exponential, rational_matrix
 from ibpred.numerics.back_to_base import constants_at_base
 from ibpred.numerics.canonical import canonical_system
 from ibpred.numerics.continuation import evaluate_canonical
+from ibpred.numerics.masters import unit_factors
 from ibpred.numerics.path import Target
 
 HALF_TURN = Constant.generator("I") * Constant.generator("pi")
@@ -155,3 +158,49 @@ def test_what_is_no_such_constant_is_told() -> None:
     system = canonical_system(box_at_positive_s())
     with pytest.raises(BoundaryError, match="canonical function 3 at relative order 2"):
         constants_at_base(system, here, target, SINGLE_SCALE, -12, 40, 300)
+
+
+def crossed_box():  # type: ignore[no-untyped-def]
+    """The box with legs t and u at s = 1, t = -x, u = x - 1: real, the letters x and 1 - x."""
+    first, second = (rational_matrix(m) for m in box_form().matrices)
+    unit = rational_matrix([[Fraction(int(i == j)) for j in range(3)] for i in range(3)])
+    # t^-eps times a function of u/t
+    residues = (-unit - first - second, first)
+    matrices = tuple(
+        tuple(tuple(Fraction(int(m[i, j].p), int(m[i, j].q)) for j in range(3)) for i in range(3))
+        for m in residues
+    )
+    eps = X.ring.variable("eps")
+    factors = (1 - 2 * eps, 1 - 2 * eps, eps * X * (1 - X))
+    form = diagonal_form(factors, (X, 1 - X), matrices)
+    values = {"s": -X, "t": X - 1}
+    return problem_in_variables(family("massless-box"), BOX_MASTERS, form, values, WEIGHT, False)
+
+
+def test_the_far_side_fixes_a_crossed_box() -> None:
+    """Nothing happens where s = 0, beyond both letters: minus infinity of the ratio -t/s."""
+    boundary = fix_constants(crossed_box())
+    assert boundary.start == -1
+    x, bits = Fraction(1, 3), 200
+    here = evaluate_canonical(
+        canonical_system(crossed_box().form),
+        tuple(tuple(c.ball(bits) for c in vector) for vector in boundary.constants),
+        Target(x, 0),
+        bits,
+    )
+    usual = fix_constants(
+        boundary_problem(family("massless-box"), BOX_MASTERS, box_form(), {"s": -1, "t": -1}, WEIGHT)
+    )
+    there = evaluate_canonical(
+        canonical_system(box_form()),
+        tuple(tuple(c.ball(bits) for c in vector) for vector in usual.constants),
+        Target((1 - x) / x, 0),
+        bits,
+    )
+    with precision(bits):
+        factors = unit_factors(Target(x, 0), (Fraction(0), Fraction(-1)), len(there), bits)
+        for k, vector in enumerate(here):
+            for row, value in enumerate(vector):
+                expected = sum((factors[n] * there[k - n][row] for n in range(k + 1)), flint.acb(0))
+                assert value.overlaps(expected)
+                assert expected.rad() < 1e-40
