@@ -6,7 +6,7 @@ an imaginary part that lowers one term of F raises another (Tausk, hep-ph/990950
 sign of the unit and an interval between two letters; inside it the integrals, stripped of a power of the
 unit, are analytic in the ratio and solve its differential equation. So each region has boundary constants of
 its own. They are all given at x -> 0+, from where a fixed path leads to the region: turn about zero through
-the upper half plane, then pass letters above.
+the upper half plane, then pass letters above. In several ratios only the region at the corner is known.
 """
 
 from __future__ import annotations
@@ -16,13 +16,14 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 from ibpred.errors import PointError, UnfinishedError
+from ibpred.iterated.solution import Level
 from ibpred.numerics.path import Target
 from ibpred.numerics.point import KinematicPoint, checked_values
 
 
 @dataclass(frozen=True)
 class Channel:
-    """A region of real kinematics in one ratio.
+    """A region of real kinematics in one ratio; see `BASE` for several.
 
     Attributes
     ----------
@@ -55,6 +56,10 @@ class Channel:
         return Target(abs(ratio), 0 if ratio > 0 else 1)
 
 
+BASE = Channel(0, Fraction(0), None)
+"""The region at the corner of several ratios, whose letters are not recorded."""
+
+
 def channel_of(ratio: Fraction, unit: int, roots: Sequence[Fraction | None]) -> Channel:
     """The region of a point.
 
@@ -83,6 +88,34 @@ def channel_of(ratio: Fraction, unit: int, roots: Sequence[Fraction | None]) -> 
         max((root for root in known if root < ratio), default=None),
         min((root for root in known if root > ratio), default=None),
     )
+
+
+def is_next_to_corner(levels: Sequence[Level], point: Mapping[str, Fraction]) -> bool:
+    """Whether no letter vanishes where the ratios grow from their corner to a point, the largest first.
+
+    Parameters
+    ----------
+    levels
+        Of the epsilon-form at the corner, see `ibpred.iterated.solution.fibration`.
+    point
+        Positive ratios.
+
+    Raises
+    ------
+    UnfinishedError
+        If a letter is not linear at its level.
+    """
+    for level in levels:
+        for letter, root in zip(level.letters, level.roots(), strict=True):
+            if root is None:
+                raise UnfinishedError(
+                    f"the letter {letter} is not linear in {level.variable}, so the region of the solution "
+                    "is not known"
+                )
+            place = root.substitute({name: point[name] for name in root.variables()}).to_fraction()
+            if 0 < place <= point[level.variable]:
+                return False
+    return True
 
 
 def scattering_point(

@@ -284,6 +284,9 @@ def _region(family: FamilyDefinition, solution: Solution) -> list[str]:
     if euclidean_signs(family) is not None:
         return []
     found = [f"{name} {'>' if sign > 0 else '<'} 0" for name, sign in region_signs(family).items()]
+    if len(solution.levels) > 1:
+        corner = " << ".join((*(level.variable for level in solution.levels), "1"))
+        return [*found, f"{corner} and on to the nearest letters"]
     for level in solution.levels:
         roots = [root.to_fraction() for root in level.roots() if root is not None and not root.variables()]
         nearest = min((root for root in roots if root > 0), default=None)

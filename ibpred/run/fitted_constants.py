@@ -22,7 +22,8 @@ from ibpred.errors import BoundaryError, UnfinishedError
 from ibpred.family.definition import Powers
 from ibpred.family.signs import masses
 from ibpred.iterated.series import Series, eps_valuation, laurent
-from ibpred.iterated.solution import letter_roots
+from ibpred.iterated.solution import fibration
+from ibpred.numerics.channels import is_next_to_corner
 from ibpred.run.known_points import KnownPoint, known_points, new_point
 
 if TYPE_CHECKING:
@@ -38,6 +39,7 @@ ODDS = -12
 """A fit is believed if chance would give one as good once in 10^12."""
 
 _RATIOS = (Fraction(1, 3), Fraction(1, 5), Fraction(1, 7), Fraction(1, 11), Fraction(1, 13))
+_SHRINKINGS = 6
 
 
 def generators_of(chain: Chain) -> tuple[str, ...]:
@@ -167,25 +169,23 @@ def near_corner(problem: BoundaryProblem) -> dict[str, Fraction]:
     Raises
     ------
     UnfinishedError
-        If the functions are not known to be regular between the corner and such a point.
+        If outside a Euclidean region a letter is not linear, or lies between the corner and all points tried.
     """
-    form = problem.form
+    form, corner = problem.form, problem.corner
     ratios = dict(zip(form.variables, _RATIOS, strict=False))
     if problem.real:
         return ratios
-    if len(form.variables) > 1:
-        raise UnfinishedError(
-            "outside a Euclidean region constants are fitted in one ratio; this form has "
-            f"{', '.join(form.variables)}"
-        )
-    roots = [root for root in letter_roots(form.letters, form.variables[0]) if root is None or root > 0]
-    if None in roots:
-        raise UnfinishedError(
-            "outside a Euclidean region constants are fitted where all letters are linear; the letters are "
-            f"{', '.join(str(letter) for letter in form.letters)}"
-        )
-    nearest = min((root for root in roots if root is not None), default=Fraction(1))
-    return {name: value * nearest for name, value in ratios.items()}
+    levels = [level for level, _ in fibration(form, corner)]
+    for shrunk in range(_SHRINKINGS):
+        # the first of the corner is to be the smallest
+        factors = {name: Fraction(1, 3) ** (shrunk * (len(corner) - k)) for k, name in enumerate(corner)}
+        chosen = {name: value * factors[name] for name, value in ratios.items()}
+        if is_next_to_corner(levels, chosen):
+            return chosen
+    raise UnfinishedError(
+        f"no point was found between the corner {' << '.join((*corner, '1'))} and the letters "
+        f"{', '.join(str(letter) for letter in form.letters)}"
+    )
 
 
 def canonical_values(

@@ -12,9 +12,9 @@ from ibpred.errors import UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import masses
 from ibpred.family.units import integral_dimension
-from ibpred.iterated.solution import letter_roots
+from ibpred.iterated.solution import fibration, letter_roots
 from ibpred.numerics.canonical import CanonicalSystem, canonical_system
-from ibpred.numerics.channels import Channel, channel_of, scattering_point
+from ibpred.numerics.channels import BASE, Channel, channel_of, is_next_to_corner, scattering_point
 from ibpred.numerics.evaluate import Functions, InOneRatio, InSeveralRatios, Place, WithRoots, evaluate_places
 from ibpred.numerics.masters import Row, integral_row, master_rows, needed_order
 from ibpred.numerics.path import Target
@@ -98,9 +98,14 @@ def channel_at(chain: Chain, form: EpsilonForm, place: KinematicPoint) -> Channe
     if chain.is_euclidean():
         return None
     if len(form.variables) != 1:
+        levels = [level for level, _ in fibration(form, tuple(reversed(form.variables)))]
+        ratios = dict(zip(form.variables, (target.value for target in place.ratios.values()), strict=True))
+        positive = place.unit.half_turns == 0 and all(value > 0 for value in ratios.values())
+        if positive and is_next_to_corner(levels, ratios):
+            return BASE
         raise UnfinishedError(
-            "the regions of a family without a Euclidean region are known in one ratio only; this form has "
-            f"{', '.join(form.variables)}"
+            "without a Euclidean region and in several ratios constants are known in one region only: at "
+            f"the corner {' << '.join((*reversed(form.variables), '1'))}"
         )
     (ratio,) = place.ratios.values()
     return channel_of(ratio.value, place.unit.half_turns, letter_roots(form.letters, form.variables[0]))
