@@ -11,6 +11,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from ibpred.balls.context import precision, widened
+from ibpred.balls.decimal import ball_of_decimal
 from ibpred.boundary.fix import Fitted, OpenConstantsError, fix_constants
 from ibpred.boundary.from_values import fitted_constants
 from ibpred.boundary.problem import boundary_problem, one_scale_values, without_closed_form
@@ -88,6 +89,19 @@ def test_three_equal_masses_in_the_vacuum(tmp_path: Path) -> None:
         "2*sqrt3*clausen2 - pi^2/4 - 21/2",
     ]
     assert all(item.fit.odds < -20 for item in boundary.fitted)
+
+
+@pytest.mark.slow
+def test_the_vacuum_graph_with_distinct_masses_at_equal_ones(tmp_path: Path) -> None:
+    """Its solution is derived, and continued to the point where the Kallen root is imaginary."""
+    with Store(tmp_path) as store:
+        chain = Chain(family("vacuum-distinct-masses"), store, Silent(), 1)
+        assert not chain.boundary(4).fitted
+        point = {name: Fraction(1) for name in ("m1sq", "m2sq", "m3sq")}
+        value = chain.evaluate(point, ((1, 1, 1),), 0, 30)[0]
+    assert value.certified
+    exact = Constant.read("2*sqrt3*clausen2 - pi^2/4 - 21/2").ball(200)
+    assert ball_of_decimal(value.epsilon[0], 200).overlaps(exact)
 
 
 def test_mixed_weights_and_square_roots() -> None:
