@@ -26,7 +26,8 @@ Pair = tuple[Fraction, Fraction]
 
 _NOTHING = (Fraction(0), Fraction(0))
 _MOST_CUTS = 6  # one inside the other
-_CHOICES = 2  # pairs tried at each cut, those that leave the fewest negative terms
+_CHOICES = 3  # pairs tried at each cut, those that leave the fewest negative terms
+_MOST_TRIALS = 400  # cuts in all
 
 
 @dataclass(frozen=True)
@@ -134,7 +135,8 @@ def _local(g: Rational, variable: str, point: Fraction) -> tuple[Fraction, int] 
 def _positive_parts(terms: Mapping[Exponents, Pair], cuts: int) -> list[_Part] | None:
     """Cut the range of the parameters until all terms are positive; None where that does not succeed."""
     size = len(next(iter(terms)))
-    return _cut(_Part(dict(terms), tuple((i,) for i in range(size))), cuts)
+    whole = _Part(dict(terms), tuple((i,) for i in range(size)))
+    return _cut(whole, cuts, iter(range(_MOST_TRIALS)))
 
 
 @dataclass(frozen=True)
@@ -153,21 +155,21 @@ class _Part:
     sums: tuple[tuple[int, ...], ...]
 
 
-def _cut(part: _Part, cuts: int) -> list[_Part] | None:
+def _cut(part: _Part, cuts: int, trials: Iterator[int]) -> list[_Part] | None:
     negative = [e for e, pair in part.terms.items() if _sign(pair) < 0]
     if not negative:
         return [part]
-    if not cuts:
+    if not cuts or next(trials, None) is None:
         return None
     candidates = []
-    for i, j, ratio in _squares(part.terms, negative):
+    for place, (i, j, ratio) in enumerate(_squares(part.terms, negative)):
         halves = [_shifted(part, i, j, ratio), _shifted(part, j, i, 1 / ratio)]
         left = sorted((sum(_sign(pair) < 0 for pair in half.terms.values()) for half in halves), reverse=True)
-        candidates.append((left, i, j, halves))
-    for _, _, _, halves in sorted(candidates, key=lambda item: item[:3])[:_CHOICES]:
+        candidates.append((left, place, halves))
+    for _, _, halves in sorted(candidates, key=lambda item: item[:2])[:_CHOICES]:
         found: list[_Part] = []
         for half in halves:
-            inner = _cut(half, cuts - 1)
+            inner = _cut(half, cuts - 1, trials)
             if inner is None:
                 break
             found += inner
@@ -184,18 +186,43 @@ def _sign(pair: Pair) -> int:
 def _squares(
     terms: Mapping[Exponents, Pair], negative: Sequence[Exponents]
 ) -> Iterator[tuple[int, int, Fraction]]:
-    """Pairs i, j and r such that a negative term is among ``M (x_i - r x_j)^2`` at eta = 0."""
+    """Pairs i, j and r to cut at ``x_i = r x_j``, where ``M (a x_i^2 - 2 c x_i x_j + b x_j^2)`` occurs."""
     seen = set()
+    others = []
     for exponents in negative:
         inside = [i for i, n in enumerate(exponents) if n]
         for k, i in enumerate(inside):
             for j in inside[k + 1 :]:
-                left = terms.get(_moved(exponents, i, j), _NOTHING)[0]
-                right = terms.get(_moved(exponents, j, i), _NOTHING)[0]
-                root = _root(right / left) if left > 0 and right > 0 else None
-                if root is not None and (i, j, root) not in seen:
-                    seen.add((i, j, root))
-                    yield i, j, root
+                a = terms.get(_moved(exponents, i, j), _NOTHING)[0]
+                b = terms.get(_moved(exponents, j, i), _NOTHING)[0]
+                c = -terms[exponents][0] / 2
+                if a > 0 and b > 0 and c > 0:
+                    ratio = _ratio(a, b, c)
+                    found = (i, j, ratio)
+                    if found not in seen:
+                        seen.add(found)
+                        if ratio * ratio == b / a:
+                            yield found
+                        else:
+                            others.append(found)
+    yield from others
+
+
+def _ratio(a: Fraction, b: Fraction, c: Fraction) -> Fraction:
+    """The zero of a square, else between c/a and b/c: a positive form has positive terms on both sides."""
+    root = Fraction(isqrt((b / a).numerator), isqrt((b / a).denominator))
+    if root * root == b / a:
+        return root
+    return _simplest(*sorted((c / a, b / c)))
+
+
+def _simplest(low: Fraction, high: Fraction) -> Fraction:
+    """The fraction of least denominator in a closed interval of positive numbers."""
+    whole = -(-low.numerator // low.denominator)
+    if whole <= high:
+        return Fraction(whole)
+    floor = whole - 1
+    return floor + 1 / _simplest(1 / (high - floor), 1 / (low - floor))
 
 
 def _moved(exponents: Exponents, up: int, down: int) -> Exponents:
@@ -203,12 +230,6 @@ def _moved(exponents: Exponents, up: int, down: int) -> Exponents:
     changed[up] += 1
     changed[down] -= 1
     return tuple(changed)
-
-
-def _root(value: Fraction) -> Fraction | None:
-    above, below = isqrt(value.numerator), isqrt(value.denominator)
-    root = Fraction(above, below)
-    return root if root * root == value else None
 
 
 def _shifted(part: _Part, i: int, j: int, ratio: Fraction) -> _Part:

@@ -37,7 +37,20 @@ def banana(masses: list[int]) -> dict[tuple[int, ...], Rational]:
     return terms
 
 
-@pytest.mark.parametrize("masses", [[1, 1], [1, 2], [3, 2], [1, 1, 1], [2, 2, 2], [1, 1, 1, 1]])
+@pytest.mark.parametrize(
+    "masses",
+    [
+        [1, 1],
+        [1, 2],
+        [3, 2],
+        [1, 1, 1],
+        [2, 2, 2],
+        [1, 2, 3],
+        [5, 3, 2],
+        pytest.param([1, 1, 1, 1], marks=pytest.mark.slow),
+        pytest.param([1, 2, 3, 4], marks=pytest.mark.slow),
+    ],
+)
 def test_thresholds_of_bananas_have_the_exponent_of_phase_space(masses: list[int]) -> None:
     """n particles at rest: phase space ~ (s - M^2)^((n-1)(d-1)/2 - 1)."""
     count = len(masses)
