@@ -42,6 +42,7 @@ from ibpred.report.text import integral_text
 from ibpred.run.channel_constants import channel_boundary
 from ibpred.run.fitted_constants import boundary_of_series, completed_by_fits, one_scale_boundary
 from ibpred.run.normalisation import normalised, trivial_form
+from ibpred.run.ratio_form import boundary_in_ratios, form_in_ratios
 from ibpred.run.rows import table_rows
 from ibpred.run.stages import SEED, Stages
 from ibpred.run.store import Store
@@ -285,6 +286,19 @@ class Chain(Stages):
             )
             raise ObstructionError(f"{self.definition.name} has no epsilon-form: {reasons}")
         return found
+
+    def ratio_form(self) -> EpsilonForm:
+        """The epsilon-form in the ratios, where the usual one is in other variables; see `solved_form`."""
+        stage = "epsilon-form in the ratios"
+        found = self._kept(stage, _Outcome, None, lambda: _outcome(form_in_ratios(self))).form
+        if found is None:
+            raise ObstructionError(f"{self.definition.name} has no epsilon-form in its ratios")
+        return found
+
+    def ratio_boundary(self, weight: int) -> Boundary:
+        """Boundary constants of that form."""
+        stage = "boundary in the ratios"
+        return self._kept(stage, Boundary, weight, lambda: boundary_in_ratios(self, weight))
 
     def boundary(self, weight: int, corner: Corner = ()) -> Boundary:
         """Boundary constants through ``eps^weight`` of the canonical functions, all of them derived.

@@ -46,12 +46,7 @@ def form_values(
         If the family is not solved, or the digits cannot be reached.
     """
     family = chain.definition
-    if not chain.in_ratios():
-        raise UnfinishedError(
-            f"it is in the variables {', '.join(chain.coordinates().names)}, in which values are taken at "
-            "one point and carried from there"
-        )
-    form = chain.solved_form()
+    form = chain.solved_form() if chain.in_ratios() else chain.ratio_form()
     chosen = [place_of(chain, point) for point in points]
     named = [dict(zip(form.variables, place.ratios.values(), strict=False)) for place in chosen]
     for ratios in named:
@@ -113,7 +108,9 @@ def channel_at(chain: Chain, form: EpsilonForm, place: KinematicPoint) -> Channe
 
 def boundary_in(chain: Chain, channel: Channel | None, weight: int) -> Boundary:
     """The constants of a region; None for all that i0 connects with the Euclidean one: derived ones only."""
-    return chain.boundary(weight) if channel is None else chain.boundary_in(channel, weight)
+    if channel is not None:
+        return chain.boundary_in(channel, weight)
+    return chain.boundary(weight) if chain.in_ratios() else chain.ratio_boundary(weight)
 
 
 def bits_ceiling(digits: int) -> int:

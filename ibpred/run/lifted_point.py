@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from fractions import Fraction
+from itertools import product
 from typing import TYPE_CHECKING
 
 from ibpred.epsform.form import EpsilonForm
@@ -58,8 +59,9 @@ def lifted_point(chain: Chain, order: int, digits: int) -> KnownPoint:
 def _base(chain: Chain, form: EpsilonForm) -> tuple[Mapping[str, Fraction], dict[str, Fraction]]:
     """Values of the variables and of the invariants at a regular point of the Euclidean region."""
     signs, coordinates = chain.euclidean_signs(), chain.coordinates()
-    for size in _SIZES:
-        variables = {name: size ** (k + 1) for k, name in enumerate(coordinates.names)}
+    for size, doubled in product(_SIZES, (False, True)):
+        powers = [2**k if doubled else k + 1 for k in range(len(coordinates.names))]
+        variables = {name: size**n for name, n in zip(coordinates.names, powers, strict=True)}
         try:
             refuse_singular_point(form, {name: Target(value, 0) for name, value in variables.items()})
             point = {name: v.substitute(variables).to_fraction() for name, v in coordinates.values.items()}
