@@ -1,7 +1,8 @@
 """The epsilon-form in the plain ratios of a family whose usual form is in other variables.
 
 In the usual variables square roots are rational, as polylogarithms want it, but most points of the invariants
-have irrational images. In the ratios the form keeps its roots, and every point is rational: values are taken there.
+have irrational images. In the ratios the form keeps its roots, and every point is rational: values are taken
+there.
 """
 
 from __future__ import annotations

@@ -1,0 +1,46 @@
+"""Two forms of one system: rational variables with polylogarithms, ratios with square roots."""
+
+from pathlib import Path
+
+import flint
+import pytest
+
+from ibpred.balls.decimal import ball_of_decimal
+from ibpred.progress import SILENT
+from ibpred.run.chain import Chain
+from ibpred.run.files import read_family_file
+from ibpred.run.form_values import form_values
+from ibpred.run.lifted_point import lifted_point
+from ibpred.run.store import Store
+
+FAMILIES = Path(__file__).parents[2] / "families"
+
+
+@pytest.mark.parametrize(
+    "name",
+    [
+        "bubble-distinct-masses",
+        "box-massive-loop",
+        "triangle-massive-loop",
+        pytest.param("box-two-adjacent-legs", marks=pytest.mark.slow),
+        pytest.param("pentagon", marks=pytest.mark.slow),
+    ],
+)
+def test_both_forms_give_the_same_values(name, tmp_path):
+    # they share the differential equation; factorisation, constants, letters and path are different
+    with Store(tmp_path) as store:
+        chain = Chain(read_family_file(FAMILIES / f"{name}.toml"), store, SILENT, 1)
+        assert not chain.in_ratios()
+        assert not any(chain.solved_form().tags)
+        assert any(chain.ratio_form().tags)
+        known = lifted_point(chain, 1, 25)
+        (found,) = form_values(chain, [known.point], (), 1, 25)
+    assert sum(len(value.epsilon) for value in found) >= len(found)
+    for value, other in zip(found, known.values, strict=True):
+        assert value.certified
+        for order in {*value.epsilon, *other}:
+            left, right = (
+                ball_of_decimal(v[order], 200) if order in v else flint.acb(0) for v in (value.epsilon, other)
+            )
+            assert left.overlaps(right)
+            assert float(left.real.rad()) <= 1e-24 * max(1, abs(float(left.real.mid())))
