@@ -11,7 +11,6 @@ from ibpred.epsform.image import block_pattern
 from ibpred.epsform.matrices import part, vanishes
 from ibpred.epsform.operators import (
     Operator,
-    factors,
     is_self_adjoint,
     maximal_points,
     singular_points,
@@ -19,6 +18,7 @@ from ibpred.epsform.operators import (
 )
 from ibpred.epsform.period_form import period_form
 from ibpred.epsform.picardfuchs import picard_fuchs
+from ibpred.epsform.right_factors import factors, is_irreducible
 from ibpred.errors import UnfinishedError
 
 SERIES_TERMS = 48
@@ -77,25 +77,25 @@ def _irreducible(equation: Operator) -> str:
     order = equation.order
     if order == 1:
         return "an operator of order one, with an algebraic or exponential solution"
+    kind = "irreducible" if is_irreducible(equation) else "no factor found,"
+    kind = f"{kind} of order {_WORDS.get(order, order)}"
     points = ", ".join(p.text(equation.name) for p in maximal_points(equation))
     if not points:
-        return (
-            f"no factor of order one, order {order}, and no point of maximal unipotent monodromy: the "
-            "geometry is not read off"
-        )
+        return f"{kind}, and no point of maximal unipotent monodromy: the geometry is not read off"
     where = f"with maximal unipotent monodromy at {points}"
     if order == 2:
-        return f"irreducible of order two {where}: an elliptic curve"
+        return f"{kind} {where}: an elliptic curve"
     if order == 3:
         root = symmetric_root(equation)
         if root is None:
-            return f"irreducible of order three {where}, but no symmetric square: no K3 surface"
+            return f"{kind} {where}, but no symmetric square: no K3 surface"
         return (
-            f"irreducible of order three {where}, the symmetric square of {root.text()}: a K3 surface, of "
-            "Picard number 19 as a rule"
+            f"{kind} {where}, the symmetric square of {root.text()}: a K3 surface, of Picard number 19 as a "
+            "rule"
         )
     if is_self_adjoint(equation):
-        kind, what = "self-adjoint", f"a Calabi-Yau variety of dimension {order - 1}"
-    else:
-        kind, what = "not self-adjoint", "not of Calabi-Yau type"
-    return f"no factor of order one, order {order}, {kind}, {where}: {what}"
+        return f"{kind}, self-adjoint, {where}: a Calabi-Yau variety of dimension {order - 1}"
+    return f"{kind}, not self-adjoint, {where}: not of Calabi-Yau type"
+
+
+_WORDS = {2: "two", 3: "three", 4: "four", 5: "five", 6: "six"}

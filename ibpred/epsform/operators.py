@@ -292,28 +292,6 @@ def adjoint(equation: Operator) -> Operator:
     return operator(total, equation.name)
 
 
-def factors(equation: Operator) -> tuple[Operator, ...]:
-    """Factors, the leftmost first, as far as factors of order one on the right or left go.
-
-    For a Fuchsian operator with rational exponents of order three at most, each factor is irreducible.
-    """
-    if equation.order <= 1:
-        return (equation,)
-    log = exponential_solution(equation)
-    if log is not None:
-        first = operator([-log, log.ring.one], equation.name)
-        return (*factors(right_quotient(equation, first)), first)
-    if equation.order <= 2:
-        return (equation,)
-    other = adjoint(equation)
-    log = exponential_solution(other)
-    if log is None:
-        return (equation,)
-    # L* = M (D - log), so M* is a right factor of L
-    rest = adjoint(right_quotient(other, operator([-log, log.ring.one], equation.name)))
-    return (right_quotient(equation, rest), *factors(rest))
-
-
 def symmetric_root(equation: Operator) -> Operator | None:
     """The operator of order two whose symmetric square one of order three is; None where it is none.
 
