@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from fractions import Fraction
+from pathlib import Path
 
 import flint
 import pytest
@@ -11,9 +12,10 @@ from hypothesis import strategies as st
 from synthetic_systems import RING, connection, matrix
 
 from ibpred.epsform.factorise import factorise
-from ibpred.epsform.form import Obstructed, PeriodForm
+from ibpred.epsform.form import Matrix, Obstructed, PeriodForm
 from ibpred.epsform.geometry import geometry
-from ibpred.epsform.matrices import solve
+from ibpred.epsform.matrices import inverse as inverse_matrix
+from ibpred.epsform.matrices import part, product, solve
 from ibpred.epsform.operators import (
     Operator,
     adjoint,
@@ -28,6 +30,11 @@ from ibpred.epsform.power_series import expansion, inverse, series, theta, times
 from ibpred.epsform.right_factors import factors, is_irreducible, right_factor
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes
+from ibpred.exact.rational import Rational
+from ibpred.progress import SILENT
+from ibpred.run.chain import Chain
+from ibpred.run.files import read_family_file
+from ibpred.run.store import Store
 
 PRIMES = first_primes(20)
 
@@ -78,8 +85,7 @@ def test_factors_of_order_one_are_found_on_both_sides(a: int, b: int, c: int) ->
     for whole in (composed(SUNRISE, first), composed(first, SUNRISE)):
         parts = factors(whole)
         assert sorted(p.order for p in parts) == [1, 2]
-        product = composed(parts[0], parts[1])
-        assert product == whole
+        assert composed(parts[0], parts[1]) == whole
     assert right_quotient(composed(SUNRISE, first), first) == SUNRISE
 
 
@@ -102,10 +108,10 @@ def test_products_of_two_fuchsian_operators_fall_apart(
     whole = composed(left, right)
     parts = factors(whole)
     assert all(part.order <= 2 for part in parts)
-    product = parts[0]
-    for part in parts[1:]:
-        product = composed(product, part)
-    assert product == whole
+    total = parts[0]
+    for factor in parts[1:]:
+        total = composed(total, factor)
+    assert total == whole
     assert not is_irreducible(whole)
     assert right_factor(whole, 2).found is not None
 
@@ -130,8 +136,8 @@ def common_multiple(first: Operator, second: Operator) -> Operator:
     """The operator of order four that two of order two divide on the right."""
     # solutions y + z: the column of derivatives of y and of z in terms of (y, y') and (z, z')
     rows = []
-    for part in (first, second):
-        c, b, _ = part.monic()
+    for equation in (first, second):
+        c, b, _ = equation.monic()
         columns = [(RING.one, RING.zero)]
         for _ in range(4):
             u, v = columns[-1]
@@ -203,15 +209,17 @@ def found_form(rows: list[list[str]]) -> PeriodForm:
     return form
 
 
-def rows_of(form: PeriodForm, rows: list[list[str]], eps: Fraction, length: int):
-    """The transformation ``M = V I`` as power series at a numeric eps, and the block likewise, t = x."""
+def holds(form: PeriodForm, block: Matrix, row: tuple[Rational, ...], eps: Fraction, length: int) -> bool:
+    """Whether M = V I with power series V turns the block at numeric eps into eps B.
+
+    The block is that of ``theta I = block I`` in t, which has the name x here; the row is that of the form.
+    """
     point = {"eps": eps}
-    block = [[parse_rational(e, RING) * RING.variable("x") for e in row] for row in rows]
-    local = [[expansion(e.substitute(point), "x", length) for e in row] for row in block]
+    local = [[expansion(e.substitute(point), "x", length) for e in line] for line in block]
     kernels = [series(k) for k in form.kernels]
     period = inverse(series(form.period), length)
-    size = len(rows)
-    chain = [[times(expansion(e.substitute(point), "x", length), period, length) for e in form.row]]
+    size, scale = len(block), flint.fmpq(eps.numerator, eps.denominator)
+    chain = [[times(expansion(e.substitute(point), "x", length), period, length) for e in row]]
     for k in range(size - 1):
         last, factor = chain[-1], inverse(kernels[k], length)
         new = []
@@ -219,34 +227,61 @@ def rows_of(form: PeriodForm, rows: list[list[str]], eps: Fraction, length: int)
             total = theta(last[j])
             for i in range(size):
                 total = total + times(last[i], local[i][j], length)
-            new.append(times(total, factor, length) * (1 / flint.fmpq(eps.numerator, eps.denominator)))
+            new.append(times(total, factor, length) * (1 / scale))
         chain.append(new)
     whole = [[flint.fmpq_poly([0])] * size for _ in range(size)]
     for power, table in form.gauge:
-        scale = flint.fmpq(eps.numerator, eps.denominator) ** power
         for i in range(size):
             for k in range(size):
                 for j in range(size):
-                    whole[i][j] = whole[i][j] + times(series(table[i][k]), chain[k][j], length) * scale
-    return whole, local
+                    whole[i][j] = whole[i][j] + times(series(table[i][k]), chain[k][j], length) * scale**power
+    for i in range(size):
+        for j in range(size):
+            left = theta(whole[i][j])
+            right = flint.fmpq_poly([0])
+            for k in range(size):
+                left = left + times(whole[i][k], local[k][j], length)
+                right = right + times(series(form.matrix[i][k]), whole[k][j], length) * scale
+            if (left - right).truncate(length - 1) != 0:
+                return False
+    return True
 
 
 @pytest.mark.parametrize("rows", [two_dimensional_sunrise(), two_dimensional_banana()], ids=["two", "three"])
 @pytest.mark.parametrize("eps", [Fraction(1, 7), Fraction(-3, 5)])
 def test_period_forms_by_substitution(eps: Fraction, rows: list[list[str]]) -> None:
-    """M = V I with power series V turns the block at numeric eps into eps B."""
-    form, length = found_form(rows), 24
-    transformation, local = rows_of(form, rows, eps, length)
-    scale = flint.fmpq(eps.numerator, eps.denominator)
-    size = len(rows)
-    for i in range(size):
-        for j in range(size):
-            left = theta(transformation[i][j])
-            right = flint.fmpq_poly([0])
-            for k in range(size):
-                left = left + times(transformation[i][k], local[k][j], length)
-                right = right + times(series(form.matrix[i][k]), transformation[k][j], length) * scale
-            assert (left - right).truncate(length - 1) == 0
+    form, x = found_form(rows), RING.variable("x")
+    block = tuple(tuple(e * x for e in line) for line in matrix(rows))
+    assert holds(form, block, form.row, eps, 24)
+
+
+@pytest.mark.slow
+def test_period_form_of_the_four_loop_banana(tmp_path: Path) -> None:
+    """The family's own block, at infinity (Pögel, Wang, Weinzierl, arXiv:2212.08908)."""
+    path = Path(__file__).parents[2] / "families" / "banana-four-loop.toml"
+    with Store(tmp_path) as store:
+        family = Chain(read_family_file(path), store, SILENT, 1)
+        outcome, system = family.epsilon_form(), family.connection()
+    assert isinstance(outcome, Obstructed)
+    (only,) = outcome.obstructions
+    form = only.period_form
+    assert form is not None
+    assert form.point == "x = infinity"
+    # t = 1/x takes the name x, and theta = t d/dt is -x d/dx
+    eps, t = Fraction(1, 7), RING.variable("x")
+    point = {"eps": eps, "x": 1 / t}
+    whole = part(system.matrices["x"], only.rows, only.rows)
+    block = tuple(tuple(e.substitute(point) * -1 / t for e in line) for line in whole)
+    assert form.exponent.denominator == 1
+    # psi and its derivatives are a basis without poles
+    basis = [tuple(e.substitute(point) / t ** int(form.exponent) for e in form.row)]
+    for _ in block:
+        last = basis[-1]
+        moved = product((last,), block, RING)[0]
+        basis.append(tuple(e.derivative("x") * t + m for e, m in zip(last, moved, strict=True)))
+    regular = product(tuple(basis[1:]), inverse_matrix(tuple(basis[:-1]), RING), RING)
+    first = (RING.one, *(RING.zero,) * (len(block) - 1))
+    assert holds(form, regular, first, eps, 12)
 
 
 def test_kernels_of_the_sunrise_are_the_published_ones() -> None:
