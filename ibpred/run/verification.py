@@ -95,7 +95,7 @@ def _direct(
         try:
             direct = direct_value(family, powers, point, highest, _SEED, samples)
         except InputError:
-            # no such representation, as for a line that is linear in the loop momenta: nothing is claimed
+            # no such representation: nothing is claimed
             continue
         parts = {int(order): float(ball["re"]) for order, ball in value["epsilon"].items()}
         size = max([abs(part) for part in parts.values()], default=1.0)
