@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from contextlib import nullcontext
 from pathlib import Path
 
 import click
@@ -20,21 +21,32 @@ import click
     metavar="N",
     help="Sample points of the direct integration.",
 )
-def verify(folder: str, as_json: bool, quiet: bool, samples: int) -> None:
+@click.option(
+    "--seconds",
+    type=click.FloatRange(min=0),
+    metavar="S",
+    help="Stop after about so many seconds, with the checks done.",
+)
+def verify(folder: str, as_json: bool, quiet: bool, samples: int, seconds: float | None) -> None:
     """Re-run the evidence for a FOLDER that `run` wrote; exit code 1 if a check fails."""
     from ibpred.cli.progress import terminal_progress
-    from ibpred.errors import UnfinishedError
-    from ibpred.progress import SILENT
+    from ibpred.errors import OutOfTimeError, UnfinishedError
+    from ibpred.progress import SILENT, Limited
     from ibpred.report.text import checks_text
-    from ibpred.run.verification import verify_folder
+    from ibpred.run.budget import deadline
+    from ibpred.run.verification import checks_of
 
-    if quiet:
-        checks = verify_folder(Path(folder), samples, SILENT)
-    else:
-        with terminal_progress() as progress:
-            checks = verify_folder(Path(folder), samples, progress)
+    checks, over = [], None
+    with nullcontext(SILENT) if quiet else terminal_progress() as progress:
+        try:
+            for check in checks_of(Path(folder), samples, Limited(progress, deadline(seconds))):
+                checks.append(check)
+        except OutOfTimeError as error:
+            over = error
     data = {"checks": [{"name": c.name, "passed": c.passed, "detail": c.detail} for c in checks]}
     click.echo(json.dumps(data, ensure_ascii=False) if as_json else checks_text(data))
     failed = [c.name for c in checks if not c.passed]
     if failed:
         raise UnfinishedError(f"{folder}: {len(failed)} check(s) failed: {', '.join(failed)}")
+    if over is not None:
+        raise OutOfTimeError(over.during, f"{len(checks)} checks are done; the others were not made.")

@@ -30,7 +30,12 @@ Data = Mapping[str, Any]
 
 
 def verify_folder(folder: Path, samples: int, progress: Progress) -> tuple[CheckResult, ...]:
-    """All checks of a folder.
+    """All checks of a folder; see `checks_of`."""
+    return tuple(checks_of(folder, samples, progress))
+
+
+def checks_of(folder: Path, samples: int, progress: Progress) -> Iterator[CheckResult]:
+    """The checks of a folder, one after the other.
 
     Parameters
     ----------
@@ -47,8 +52,10 @@ def verify_folder(folder: Path, samples: int, progress: Progress) -> tuple[Check
         If it is no such folder.
     UnfinishedError
         If a check cannot be carried out.
+    OutOfTimeError
+        If the progress has a deadline and it is over.
     """
-    return tuple(_checks(folder_material(folder), samples, progress))
+    yield from _checks(folder_material(folder), samples, progress)
 
 
 def _checks(material: Material, samples: int, progress: Progress) -> Iterator[CheckResult]:
@@ -87,13 +94,13 @@ def _direct(
     family: FamilyDefinition, point: dict[str, Fraction], table: Data, samples: int, progress: Progress
 ) -> Iterator[CheckResult]:
     """Values in the Euclidean region against sector decomposition and quasi-Monte Carlo."""
-    progress.stage("direct integration")
     for done, value in enumerate(table["integrals"]):
         powers = tuple(int(a) for a in value["powers"])
         name = f"direct integration of {family.name}({','.join(map(str, powers))})"
         highest = max((int(order) for order in value["epsilon"]), default=0)
         try:
-            direct = direct_value(family, powers, point, highest, _SEED, samples)
+            progress.stage(f"integral {done + 1} of {len(table['integrals'])}")
+            direct = direct_value(family, powers, point, highest, _SEED, samples, progress)
         except InputError:
             # no such representation: nothing is claimed
             continue
@@ -108,4 +115,3 @@ def _direct(
             f"agrees within {told:.0e} of its size" if worst <= 1 else f"off by {worst:.1f} times its error"
         )
         yield CheckResult(name, worst <= 1, detail)
-        progress.advance(done + 1, len(table["integrals"]))

@@ -173,3 +173,11 @@ def test_reduce_gives_the_rows_that_are_known(tmp_path: Path, capsys: pytest.Cap
     out, err = capsys.readouterr()
     assert json.loads(out) == known
     assert "1 of 2 integrals" in err
+
+
+def test_verify_prints_the_checks_done(capsys: pytest.CaptureFixture[str]) -> None:
+    folder = str(ROOT / "solutions" / "planar-double-box")
+    assert command("verify", folder, "--json", "--seconds", "1") == 1
+    out, err = capsys.readouterr()
+    assert all(check["passed"] for check in json.loads(out)["checks"])
+    assert "the time allowed is over" in err
