@@ -11,6 +11,7 @@ from ibpred.kernels.arithmetic import invert, multiply
 from ibpred.kernels.columns import empty_columns, insert, largest, remove
 from ibpred.kernels.memory import pointer
 from ibpred.kernels.numbering import INPUT, INVERSE, UNIT, Bounds, Recorded, canonical, close_sum, find
+from ibpred.kernels.rowsum import accumulate_product
 
 GOOD, UNLUCKY = 0, 1
 
@@ -133,35 +134,12 @@ def _record_rows(  # type: ignore[no-untyped-def]
                     first, second, -1, head[c], item_left, item_right, item_next,
                     table, mask, value, kind, scale, node_start, left, right, count, p,
                 )  # fmt: skip
-                x0, x1 = value[2 * node], value[2 * node + 1]
-                x_is_one = x0 == 1.0 and x1 == 1.0
                 place = pivot_row[c]
                 for e in range(row_start[place], row_start[place + 1]):
-                    target = row_column[e]
-                    other = row_node[e]
-                    y0, y1 = value[2 * other], value[2 * other + 1]
-                    if x_is_one:
-                        item_left[items] = UNIT
-                        item_right[items] = other
-                    elif y0 == 1.0 and y1 == 1.0:
-                        item_left[items] = UNIT
-                        item_right[items] = node
-                    else:
-                        item_left[items] = node
-                        item_right[items] = other
-                    r0 = multiply(x0, y0, p, inverse_p)
-                    r1 = multiply(x1, y1, p, inverse_p)
-                    if present[target]:
-                        r0 += work[2 * target]
-                        r1 += work[2 * target + 1]
-                        item_next[items] = head[target]
-                    else:
-                        present[target] = 1
-                        insert(bottom, middle, top, target)
-                        item_next[items] = -1
-                    work[2 * target] = canonical(r0, p)
-                    work[2 * target + 1] = canonical(r1, p)
-                    head[target] = items
+                    accumulate_product(
+                        work, present, head, bottom, middle, top, item_left, item_right, item_next, value,
+                        items, row_column[e], node, row_node[e], p, inverse_p,
+                    )  # fmt: skip
                     items += 1
             elif leader < 0:
                 leader = c
@@ -210,38 +188,18 @@ def _record_rows(  # type: ignore[no-untyped-def]
         for e in range(row_start[row], row_start[row + 1]):
             c = row_column[e]
             node = row_node[e]
-            x0, x1 = value[2 * node], value[2 * node + 1]
             inner = solved_place[c]
             begin, end = e, e + 1
             if inner >= 0:
                 begin, end = solved_start[inner], solved_start[inner + 1]
             for f in range(begin, end):
-                target = c
-                item_left[items] = UNIT
-                item_right[items] = node
-                r0, r1 = x0, x1
+                target, other = c, UNIT
                 if inner >= 0:
-                    target = solved_column[f]
-                    other = solved_node[f]
-                    y0, y1 = value[2 * other], value[2 * other + 1]
-                    r0 = multiply(x0, y0, p, inverse_p)
-                    r1 = multiply(x1, y1, p, inverse_p)
-                    if x0 == 1.0 and x1 == 1.0:
-                        item_right[items] = other
-                    elif y0 != 1.0 or y1 != 1.0:
-                        item_left[items] = node
-                        item_right[items] = other
-                if present[target]:
-                    r0 += work[2 * target]
-                    r1 += work[2 * target + 1]
-                    item_next[items] = head[target]
-                else:
-                    present[target] = 1
-                    insert(bottom, middle, top, target)
-                    item_next[items] = -1
-                work[2 * target] = canonical(r0, p)
-                work[2 * target + 1] = canonical(r1, p)
-                head[target] = items
+                    target, other = solved_column[f], solved_node[f]
+                accumulate_product(
+                    work, present, head, bottom, middle, top, item_left, item_right, item_next, value,
+                    items, target, node, other, p, inverse_p,
+                )  # fmt: skip
                 items += 1
         c = largest(bottom, middle, top, leader)
         while c >= 0:

@@ -11,6 +11,7 @@ from numba import njit
 from ibpred.kernels.arithmetic import invert, multiply
 from ibpred.kernels.columns import empty_columns, insert, largest, remove
 from ibpred.kernels.memory import grown, pointer
+from ibpred.kernels.rowsum import accumulate
 
 FULL = 0
 """Reduce every column of a row by the pivot rows known so far."""
@@ -102,17 +103,7 @@ def _eliminate_rows(  # type: ignore[no-untyped-def]
                     for e in range(begin, end):
                         target = row_column[e]
                         r = multiply(value, row_value[e], p, inverse_p)
-                        if present[target]:
-                            r += work[target]
-                            if r > half:
-                                r -= p
-                            elif r < -half:
-                                r += p
-                            work[target] = r
-                        else:
-                            work[target] = r
-                            present[target] = 1
-                            insert(bottom, middle, top, target)
+                        accumulate(work, present, bottom, middle, top, target, r, p, half)
                 elif leader < 0:
                     leader = c
                 else:

@@ -8,8 +8,9 @@ import numpy as np
 from numba import njit
 
 from ibpred.kernels.arithmetic import multiply
-from ibpred.kernels.columns import empty_columns, insert, largest, remove
+from ibpred.kernels.columns import empty_columns, largest, remove
 from ibpred.kernels.memory import grown, pointer
+from ibpred.kernels.rowsum import accumulate
 
 
 @njit(cache=True)
@@ -121,18 +122,7 @@ def _substitute_rows(  # type: ignore[no-untyped-def]
                 if inner >= 0:
                     target = solved_column[f]
                     r = multiply(value, solved_value[f], p, inverse_p)
-                if present[target]:
-                    r += work[target]
-                    if r > half:
-                        r -= p
-                    elif r < -half:
-                        r += p
-                    work[target] = r
-                else:
-                    work[target] = r
-                    present[target] = 1
-                    insert(bottom, middle, top, target)
-                    size += 1
+                size += accumulate(work, present, bottom, middle, top, target, r, p, half)
         wanted = stored + size
         column = largest(bottom, middle, top, leader)
         while column >= 0:
