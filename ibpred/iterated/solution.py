@@ -239,20 +239,20 @@ def _function(layer: Mapping[Product, tuple[Constant, ...]], row: int) -> Functi
 
 
 def named_letters(levels: Sequence[Level]) -> dict[Letter, str]:
-    """Names w1, w2, ... for the letters that are not linear in the ratio of their level."""
+    """Names l1, l2, ... for the letters that are not linear in the ratio of their level."""
     named = (
         letter
         for level in levels
         for letter, root in zip(level.letters, level.roots(), strict=True)
         if root is None
     )
-    return {letter: f"w{k}" for k, letter in enumerate(dict.fromkeys(named), start=1)}
+    return {letter: f"l{k}" for k, letter in enumerate(dict.fromkeys(named), start=1)}
 
 
 def product_text(product: Product, levels: Sequence[Level]) -> str:
-    """A product of words, e.g. ``G(0,x+1;y)*I(w1,-1;x)``; 1 for the empty one.
+    """A product of words, e.g. ``G(0,x+1;y)*I(l1,-1;x)``; 1 for the empty one.
 
-    ``G(a,w;x) = int_0^x dt/(t-a) G(w;t)``, and I is the same with ``dlog w_k(t)`` in the place of
+    ``G(a,w;x) = int_0^x dt/(t-a) G(w;t)``, and I is the same with ``dlog l_k(t)`` in the place of
     ``dt/(t-a)`` where a letter is named (see `named_letters`). At zero the integral of ``dt/t`` is
     regularised to ``log x``, so that ``G(0,...,0;x) = log(x)^n/n!``.
     """

@@ -136,7 +136,7 @@ def _solution(data: Data) -> str:
         corner = " \\ll ".join((*data["corner"], "1"))
         lines += [
             "",
-            "$I$ is the same with $d\\log w_k(t)$ in the place of $dt/(t-a)$ where a letter is named; at "
+            "$I$ is the same with $d\\log l_k(t)$ in the place of $dt/(t-a)$ where a letter is named; at "
             f"zero the integral of $dt/t$ is regularised to $\\log x$. Roots are positive where ${corner}$.",
             "",
         ]

@@ -114,5 +114,5 @@ def test_words_name_what_is_not_linear():
     form = form_with((KALLEN,), [(1 - X - Y, (0,)), (1 - X + Y, (0,))])
     levels = [level for level, _ in fibration(form, ("y", "x"))]
     names = named_letters(levels)
-    assert list(names.values()) == ["w1", "w2"]
-    assert product_text(((0, 1), ()), levels) == "I(w1,w2;y)"
+    assert list(names.values()) == ["l1", "l2"]
+    assert product_text(((0, 1), ()), levels) == "I(l1,l2;y)"
