@@ -237,7 +237,7 @@ def _tables(parts: SolverParts) -> list[str]:
     lines = [
         f"#define POINTS {len(parts.tables)}",
         f"#define VALUES {count}",
-        "/* direction of the imaginary part of each invariant that keeps the -i0 of the lines */",
+        "/* direction of the imaginary part of each invariant that keeps the -i0 of the lines (0: none) */",
         f"static const int turns[VARIABLES] = {{{', '.join(map(str, parts.turns))}}};",
         "/* order by order: eps^shifts[i] times master i */",
         f"static const int shifts[MASTERS] = {{{', '.join(map(str, parts.shifts))}}};",

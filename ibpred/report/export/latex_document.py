@@ -99,8 +99,14 @@ def _solution(data: Data) -> str:
     return (
         "\\subsection*{Solution}\n"
         r"$G(a_1,\dots,a_n;x)=\int_0^x\frac{\mathrm{d}t}{t-a_1}G(a_2,\dots,a_n;t)$, "
-        r"$G(0,\dots,0;x)=\log^n(x)/n!$." + "\n" + (aligned(lines) if lines else "")
+        r"$G(0,\dots,0;x)=\log^n(x)/n!$." + _region(data) + "\n" + (aligned(lines) if lines else "")
     )
+
+
+def _region(data: Data) -> str:
+    if "region" not in data:
+        return ""
+    return f" These functions hold for {', '.join(f'${text}$' for text in data['region'])}."
 
 
 def _values(family: str, data: Data) -> str:

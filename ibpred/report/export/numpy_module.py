@@ -117,7 +117,7 @@ def numpy_module(material: Material) -> str:
     lines += [
         f"MASTERS = {parts.masters!r}",
         f"INVARIANTS = {names!r}",
-        "# direction of the imaginary part of each invariant that keeps the -i0 of the lines",
+        "# direction of the imaginary part of each invariant that keeps the -i0 of the lines (0: none)",
         f"TURNS = {parts.turns!r}",
         "# order by order: eps^SHIFTS[i] * master i, powers eps^START ... eps^(START + ORDERS - 1)",
         f"SHIFTS = {parts.shifts!r}",

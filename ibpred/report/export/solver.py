@@ -8,7 +8,6 @@ from fractions import Fraction
 
 from ibpred.errors import InputError
 from ibpred.exact.grammar import parse_number
-from ibpred.family.signs import masses
 from ibpred.numerics.expanded import ExpandedSystem, expanded_system, in_epsilon
 from ibpred.report.export.material import Data, Material, system_of
 
@@ -118,10 +117,10 @@ def _layers(expanded: ExpandedSystem) -> tuple[tuple[Entry, ...], ...]:
 
 
 def _turns(material: Material) -> tuple[int, ...]:
-    if material.signs is not None:
-        return tuple(-material.signs[name] for name in material.variables)
-    fixed = masses(material.family)
-    return tuple(0 if name in fixed else 1 for name in material.variables)
+    if material.signs is None:
+        # no direction is right for all lines: paths stay real, in the region of the points
+        return (0,) * len(material.variables)
+    return tuple(-material.signs[name] for name in material.variables)
 
 
 def _highest(tables: tuple[BoundaryTable, ...]) -> int:

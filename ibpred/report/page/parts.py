@@ -55,10 +55,11 @@ class FormPart:
 
 @dataclass(frozen=True)
 class SolutionPart:
-    """The functions by order, and the boundary constants with their provenance."""
+    """The functions by order, where they hold if that is told, and the boundary constants with provenance."""
 
     functions: tuple[sections.Titled, ...]
     constants: tuple[sections.ConstantRow, ...]
+    region: str
     letters_in_solution: bool
     few: bool
 
@@ -103,11 +104,12 @@ def form_part(family: FamilyDefinition, data: Data | None) -> FormPart:
 def solution_part(family: FamilyDefinition, data: Data | None) -> SolutionPart:
     """What `solve` prints; nothing where there is no solution."""
     if data is None:
-        return SolutionPart((), (), False, False)
+        return SolutionPart((), (), "", False, False)
     setter = typesetter(family)
     return SolutionPart(
         sections.functions(data, setter),
         sections.constants(data, setter),
+        ", ".join(data.get("region", ())),
         bool(data["letters"]),
         len(data["functions"]) <= _FEW,
     )
