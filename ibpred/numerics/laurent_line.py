@@ -20,10 +20,12 @@ from ibpred.errors import InputError, PrecisionError
 from ibpred.exact.rational import Rational
 from ibpred.numerics.crossings import around, crossings
 from ibpred.numerics.expanded import ExpandedSystem, layers_on_line
+from ibpred.numerics.frobenius.basis import in_basis, small_basis
 from ibpred.numerics.frobenius.continuation import carried
 from ibpred.numerics.frobenius.layers import by_functions, whole_system
 from ibpred.numerics.frobenius.path import Path, Point, approximate
 from ibpred.numerics.frobenius.poles import PartialFractions, partial_fractions
+from ibpred.numerics.frobenius.spectrum import ExactMatrix
 from ibpred.numerics.frobenius.tracks import BallMatrix, all_positions
 
 _GUARD_BITS = 64
@@ -40,7 +42,9 @@ class LaurentLine:
     Attributes
     ----------
     fractions
-        The system of all orders together, order k of master i in row ``k n + i``.
+        The system of all orders together, order k of function i in row ``k n + i``.
+    basis, inverse
+        ``eps^(r_i) I_i = (basis y)_i`` for the functions y of that system, and the inverse matrix.
     path
         From 0 to 1 around the singular points.
     shifts
@@ -50,6 +54,8 @@ class LaurentLine:
     """
 
     fractions: PartialFractions
+    basis: ExactMatrix
+    inverse: ExactMatrix
     path: Path
     shifts: tuple[int, ...]
     depth: int
@@ -84,9 +90,12 @@ def laurent_line(
     if depth == 0:
         raise InputError("a system in at least one invariant and one order is needed")
     passed = crossings(locus, start, end, turns)
-    fractions = by_functions(partial_fractions(whole_system(layers_on_line(expanded, start, end))))
+    layers = layers_on_line(expanded, start, end)
+    basis = small_basis(partial_fractions(layers.matrices[0]))
+    inverse = basis.inv()
+    fractions = by_functions(partial_fractions(whole_system(in_basis(layers, basis, inverse))))
     path = around(approximate(all_positions(fractions, 64)), passed)
-    return LaurentLine(fractions, path, expanded.shifts, depth)
+    return LaurentLine(fractions, basis, inverse, path, expanded.shifts, depth)
 
 
 def spread(expanded: ExpandedSystem) -> int:
@@ -126,10 +135,15 @@ def carry_laurent(
         )
         for k in range(line.depth)
     ]
+    with precision(bits):
+        orders = [flint.acb_mat(line.inverse) * column for column in orders]
+    guard = _GUARD_BITS
     for step in pairwise(line.path):
-        blocks = _transfer(line, step, bits)
+        blocks, guard = _transfer(line, step, bits, guard)
         with precision(bits):
             orders = [_applied(blocks, orders, k) for k in range(line.depth)]
+    with precision(bits):
+        orders = [flint.acb_mat(line.basis) * column for column in orders]
     return tuple(
         {lowest + k - shift: orders[k][i, 0] for k in range(line.depth)}
         for i, shift in enumerate(line.shifts)
@@ -143,16 +157,19 @@ def _applied(blocks: Sequence[BallMatrix], orders: Sequence[BallMatrix], k: int)
     return total
 
 
-def _transfer(line: LaurentLine, step: tuple[Point, Point], bits: int) -> list[BallMatrix]:
+def _transfer(
+    line: LaurentLine, step: tuple[Point, Point], bits: int, guard: int
+) -> tuple[list[BallMatrix], int]:
     """The matrices U_j of ``J^(k)(end) = sum_j U_j J^(k-j)(start)`` for one step.
 
     They start from exact unit vectors: balls that start wide would grow far beyond the true errors in the
-    recurrences of the series, whose rounding errors only ask for more bits.
+    recurrences of the series, whose rounding errors only ask for more bits. The first try has as many as the
+    step before took.
     """
     size = len(line.shifts)
     rows = size * line.depth
     unit = flint.acb_mat([[flint.acb(1 if i == j else 0) for j in range(size)] for i in range(rows)])
-    working = bits + _GUARD_BITS
+    working = bits + guard
     while True:
         last = working > _MOST_FOLD * (bits + _GUARD_BITS)
         try:
@@ -165,9 +182,10 @@ def _transfer(line: LaurentLine, step: tuple[Point, Point], bits: int) -> list[B
                 break
             if last:
                 raise PrecisionError("the series on the way to the point lose their digits; move the point")
-        working += working // 2
+        working += working // 4
     table = found.table()
-    return [flint.acb_mat(table[j * size : (j + 1) * size]) for j in range(line.depth)]
+    blocks = [flint.acb_mat(table[j * size : (j + 1) * size]) for j in range(line.depth)]
+    return blocks, max(working - bits, _GUARD_BITS)
 
 
 def _is_sharp(matrix: BallMatrix, bits: int) -> bool:

@@ -106,7 +106,7 @@ def _at_point(
     asked = digits
     results: list[dict[int, Ball]] = []
     for round_ in range(_ROUNDS):
-        bits = 2 * bits_for(asked) + _SPARE_BITS
+        bits = bits_for(asked) + _SPARE_BITS
         found = masters_at(chain, point, needed, asked, bits, () if round_ else stations)
         results = [_combined(total, found.masters, order, bits) for total in sums]
         missing = [ball for result in results for ball in result.values() if not is_accurate(ball, digits)]

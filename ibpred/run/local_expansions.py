@@ -125,7 +125,7 @@ def local_terms(
     system = chain.derivation().system
     top = needed_orders(entries, order)
     reach = highest - lowest_power([value for row in entries for value in row.values()])
-    bits = 2 * bits_for(digits) + _SPARE_BITS
+    bits = bits_for(digits) + _SPARE_BITS
     first = expanded_system(system, 1)
     start = local_system(first, ray.place, ray.direction, ray.text())
     h = matching_distance(start)

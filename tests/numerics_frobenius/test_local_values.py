@@ -13,8 +13,10 @@ from hypothesis import strategies as st
 
 from ibpred.balls.context import complex_ball, precision
 from ibpred.errors import PointError, PrecisionError
+from ibpred.numerics.frobenius.basis import in_basis, small_basis
 from ibpred.numerics.frobenius.continuation import carried
 from ibpred.numerics.frobenius.formal import formal_class, singular_point
+from ibpred.numerics.frobenius.layers import Layers
 from ibpred.numerics.frobenius.majorant import Tail, majorant
 from ibpred.numerics.frobenius.path import planned, straight
 from ibpred.numerics.frobenius.poles import partial_fractions
@@ -208,3 +210,21 @@ def test_both_sides_of_a_branch_point_are_conjugate() -> None:
         assert (above[0, 0] - below[0, 0].conjugate()).contains(0)
         assert (truth - above[0, 0]).contains(0) or (truth - below[0, 0]).contains(0)
         assert above[0, 0].imag.abs_lower() > 0.1
+
+
+def test_small_basis_undoes_a_bad_one():
+    # two small residues, hidden by a change of basis: their sum of moduli falls back to a few units
+    residues = [flint.fmpq_mat([[0, 1], [0, 1]]), flint.fmpq_mat([[1, 0], [1, 0]])]
+    change = flint.fmpq_mat([[1, 50], [0, 1]])
+    x = flint.fmpq_poly([0, 1])
+    entries = []
+    for residue, factor in zip(residues, (x, x - 1), strict=True):
+        hidden = change * residue * change.inv()
+        entries += [(i, j, hidden[i, j] * flint.fmpq_poly([1]), factor) for i in range(2) for j in range(2)]
+    system = rational_system(2, entries)
+    basis = small_basis(partial_fractions(system))
+    (found,) = in_basis(Layers(2, (system,)), basis, basis.inv()).matrices
+    before = sum(abs(float(p(2) / q(2))) for p, q in system.entries.values())
+    after = sum(abs(float(p(2) / q(2))) for p, q in found.entries.values())
+    assert before > 1000
+    assert after < 10

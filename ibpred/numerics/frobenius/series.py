@@ -17,7 +17,6 @@ from ibpred.numerics.frobenius.majorant import (
     Tail,
     majorant,
     operator_norm,
-    upper_bounds,
     widened_matrix,
 )
 from ibpred.numerics.frobenius.poles import PartialFractions
@@ -25,9 +24,9 @@ from ibpred.numerics.frobenius.spectrum import ExactMatrix
 from ibpred.numerics.frobenius.system import fmpq
 from ibpred.numerics.frobenius.tracks import (
     BallMatrix,
+    RunningSums,
     Tracks,
     all_positions,
-    recurrence,
     tracks_around,
 )
 
@@ -71,15 +70,14 @@ def taylor_step(
     bounds = majorant(tracks, terms)
     tail = Tail(bounds, 0.0)
     with precision(bits):
-        rec = recurrence(tracks, bits)
         current, total, power = values, values, flint.acb(1)
         history = [current]
-        sums = rec.start(values.ncols())
+        sums = RunningSums(tracks, values.ncols())
         tail.add(bounds.norm(current))
         n = 0
         while True:
-            sums = rec.advanced(sums, current)
-            right = rec.drained(sums, fractions.size, values.ncols())
+            sums.feed(current)
+            right = sums.drained()
             for matrix, before in zip(tracks.polynomial, reversed(history), strict=False):
                 right = right + matrix * before
             n += 1
@@ -186,18 +184,18 @@ def frobenius_values(
         tracks = tracks_around(point.fractions, flint.acb(0), scale, bits)
         t = x / scale
         size = flint.arb(t.abs_upper())
-        run = _Coefficients(local, tracks, combination, bits)
+        run = _Coefficients(local, tracks, combination)
     terms = max(_expected_terms(size, bits), len(run.start))
     bounds = majorant(tracks, terms, run.residue)
     tail = Tail(bounds, operator_norm(run.residue, bounds) + 1)
     with precision(bits):
         total, power = run.current, flint.acb(1)
-        tail.add(_level_norm(bounds, run.current, run.width))
+        tail.add(bounds.norm(run.current) * run.depth**0.5)
         while True:
             run.advance()
             power = power * t
             total = total + run.current * power
-            tail.add(_level_norm(bounds, run.current, run.width))
+            tail.add(bounds.norm(run.current) * run.depth**0.5)
             n = run.number
             if n >= terms and n % _CHECK == 0:
                 rest = tail.remainder(n, size)
@@ -227,7 +225,7 @@ def frobenius_coefficients(
     with precision(bits):
         scale = _scale_at_zero(local.point, flint.acb(1), bits)
         tracks = tracks_around(local.point.fractions, flint.acb(0), scale, bits)
-        run = _Coefficients(local, tracks, combination, bits)
+        run = _Coefficients(local, tracks, combination)
         found = []
         for n in range(count):
             if n:
@@ -252,7 +250,7 @@ class _Coefficients:
         Number of levels, and of columns in each.
     """
 
-    def __init__(self, local: Local, tracks: Tracks, combination: BallMatrix | None, bits: int) -> None:
+    def __init__(self, local: Local, tracks: Tracks, combination: BallMatrix | None) -> None:
         self._point, formal = local.point, local.formal
         basis = self._point.spectrum.basis
         self.depth = max(len(levels) for levels in formal.terms)
@@ -265,17 +263,16 @@ class _Coefficients:
         self.width = self.current.ncols() // self.depth
         self._polynomial = tracks.polynomial
         self._history = [self.current]
-        self._recurrence = recurrence(tracks, bits)
-        self._sums = self._recurrence.start(self.current.ncols())
+        self._sums = RunningSums(tracks, self.current.ncols())
 
     def advance(self) -> None:
         """Go to the next coefficient, at the precision that is set."""
-        self._sums = self._recurrence.advanced(self._sums, self.current)
+        self._sums.feed(self.current)
         self.number += 1
         if self.number < len(self.start):
             self.current = self.start[self.number]
         else:
-            right = self._recurrence.drained(self._sums, self._point.size, self.current.ncols())
+            right = self._sums.drained()
             for matrix, before in zip(self._polynomial, reversed(self._history), strict=False):
                 right = right + matrix * before
             resolvent = _resolvent(self.residue, self.number, self._point.layers)
@@ -347,12 +344,6 @@ def _as_balls(levels: Any, depth: int, factor: RealBall, combination: BallMatrix
 
 def _columns(matrix: BallMatrix, first: int, count: int) -> BallMatrix:
     return flint.acb_mat([row[first : first + count] for row in matrix.table()])
-
-
-def _level_norm(bounds: Majorant, matrix: BallMatrix, width: int) -> float:
-    """Bound of the sum over the powers of the logarithm of the largest column."""
-    values = (upper_bounds(matrix) / bounds.weights[:, None]).max(axis=0)
-    return float(values.reshape(-1, width).max(axis=1).sum()) * (1 + 1e-9)
 
 
 def _by_levels(resolvent: BallMatrix, right: BallMatrix, depth: int, width: int) -> BallMatrix:

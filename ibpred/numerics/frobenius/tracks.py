@@ -194,74 +194,61 @@ def _moved(polynomial: Sequence[ExactMatrix], centre: Ball, scale: RealBall) -> 
 
 
 @dataclass(frozen=True)
-class Recurrence:
-    """The running sums of all poles: ``(sum_tracks f)[n] = drain g[n]``.
+class Chain:
+    """The running sums of one pole.
 
     Attributes
     ----------
-    feed
-        ``-F/delta`` of all poles, one under the other: what f adds to the sums of order one.
-    drain
-        The C_k of all poles side by side, pole by pole, orders ascending.
-    chains
-        For each pole (1/delta, rank, order).
+    inverse
+        1/delta.
+    rows
+        F; None where it is better absorbed into the columns.
+    columns
+        C_1, C_2, ...
     """
 
-    feed: BallMatrix
-    drain: BallMatrix
-    chains: tuple[tuple[Ball, int, int], ...]
+    inverse: Ball
+    rows: BallMatrix | None
+    columns: tuple[BallMatrix, ...]
 
-    def start(self, width: int) -> list[list[Ball]]:
-        """The sums before the first term, for so many columns."""
-        count = sum(rank * order for _, rank, order in self.chains)
-        return [[flint.acb(0)] * width for _ in range(count)]
 
-    def advanced(self, sums: Sequence[Sequence[Ball]], coefficient: BallMatrix) -> list[list[Ball]]:
-        """The sums after one more coefficient f[n].
+class RunningSums:
+    """The sums of all poles while a series goes on: after `feed` of f[n], `drained` is ``(sum_tracks f)[n]``.
 
-        Entry by entry: as a matrix the recursion is nearly all zeros.
-        """
-        fed = (self.feed * coefficient).table() if self.chains else []
-        found: list[list[Ball]] = []
-        at = entry = 0
-        for inverse, rank, order in self.chains:
-            lower = fed[entry : entry + rank]
-            entry += rank
-            layer = [
-                [a * inverse + b for a, b in zip(row, new, strict=True)]
-                for row, new in zip(sums[at : at + rank], lower, strict=True)
-            ]
-            found += layer
-            at += rank
-            for _ in range(order - 1):
-                layer = [
-                    [(a - b) * inverse for a, b in zip(row, below, strict=True)]
-                    for row, below in zip(sums[at : at + rank], layer, strict=True)
-                ]
-                found += layer
-                at += rank
-        return found
+    Parameters
+    ----------
+    tracks
+        The system around the centre.
+    width
+        Number of columns of the coefficients.
+    """
 
-    def drained(self, sums: Sequence[Sequence[Ball]], size: int, width: int) -> BallMatrix:
+    def __init__(self, tracks: Tracks, width: int) -> None:
+        self._size, self._width = tracks.size, width
+        self._chains = tuple(_chain(track, tracks.size) for track in tracks.tracks)
+        self._sums = [
+            [flint.acb_mat(columns.ncols(), width) for columns in chain.columns] for chain in self._chains
+        ]
+
+    def feed(self, coefficient: BallMatrix) -> None:
+        """Take one more coefficient, at the precision that is set."""
+        for chain, sums in zip(self._chains, self._sums, strict=True):
+            below = coefficient if chain.rows is None else chain.rows * coefficient
+            for k, total in enumerate(sums):
+                below = (total - below) * chain.inverse
+                sums[k] = below
+
+    def drained(self) -> BallMatrix:
         """What the poles contribute to the next coefficient."""
-        if not self.chains:
-            return flint.acb_mat(size, width)
-        return self.drain * flint.acb_mat(sums)
+        total = flint.acb_mat(self._size, self._width)
+        for chain, sums in zip(self._chains, self._sums, strict=True):
+            for columns, part in zip(chain.columns, sums, strict=True):
+                total = total + columns * part
+        return total
 
 
-def recurrence(tracks: Tracks, bits: int) -> Recurrence:
-    """Stack the running sums of all poles."""
-    feed: list[list[Ball]] = []
-    drain: list[list[Ball]] = [[] for _ in range(tracks.size)]
-    chains = []
-    with precision(bits):
-        for track in tracks.tracks:
-            inverse = 1 / track.position
-            feed += (track.rows * -inverse).table()
-            for matrix in track.columns:
-                for line, values in zip(drain, matrix.table(), strict=True):
-                    line += values
-            chains.append((inverse, track.rows.nrows(), len(track.columns)))
-        if not chains:
-            return Recurrence(flint.acb_mat(0, tracks.size), flint.acb_mat(tracks.size, 0), ())
-        return Recurrence(flint.acb_mat(feed), flint.acb_mat(drain), tuple(chains))
+def _chain(track: Track, size: int) -> Chain:
+    inverse = 1 / track.position
+    if 2 * track.rows.nrows() < size:
+        return Chain(inverse, track.rows, track.columns)
+    return Chain(inverse, None, tuple(columns * track.rows for columns in track.columns))
