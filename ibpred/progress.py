@@ -65,7 +65,7 @@ class Limited:
     def __init__(self, watcher: Progress, expired: Expired) -> None:
         self._watcher = watcher
         self._expired = expired
-        self._name = "the first stage"
+        self._name = "the start"
 
     def _check(self) -> None:
         if self._expired():

@@ -5,9 +5,9 @@ from __future__ import annotations
 import json
 import os
 import sys
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TypeVar
@@ -126,6 +126,33 @@ def open_chain(shared: Shared) -> Iterator[Chain]:
         chain = Chain(definition, store, progress, workers, preferred, deadline(shared.seconds))
         with told(chain):
             yield chain
+
+
+def each_family(shared: Shared) -> Iterator[Shared]:
+    """The same command for one family after the other, each with its own masters.
+
+    Of several families ``--master`` names the one that an integral belongs to.
+    """
+    if not shared.others:
+        yield shared
+        return
+    files = (shared.file, *shared.others)
+    owned: dict[str, list[str]] = {file.stem: [] for file in files}
+    if len(owned) < len(files):
+        raise InputError("two families have the same name; rename one of the files")
+    for text in shared.masters:
+        name, _ = parse_integral(text, "--master")
+        if name not in owned:
+            raise InputError(f"--master: {text!r} names none of the families {', '.join(owned)}")
+        owned[name].append(text)
+    for file in files:
+        yield replace(shared, file=file, others=(), masters=tuple(owned[file.stem]))
+
+
+def emit_each(shared: Shared, found: Sequence[Any], text: Callable[[Any], str]) -> None:
+    """Print the results of `each_family`: of one family as ever, of several as a list."""
+    data = {"families": list(found)} if shared.others else found[0]
+    emit(shared, data, lambda: "\n\n".join(text(each) for each in found))
 
 
 def _own_powers(text: str, family: str) -> tuple[int, ...]:

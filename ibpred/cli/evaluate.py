@@ -8,7 +8,16 @@ from typing import TYPE_CHECKING
 
 import click
 
-from ibpred.cli.common import Shared, emit, open_chain, parse_point, parse_powers, shared_options
+from ibpred.cli.common import (
+    Shared,
+    each_family,
+    emit,
+    emit_each,
+    open_chain,
+    parse_point,
+    parse_powers,
+    several_families,
+)
 from ibpred.errors import InputError, PointError
 from ibpred.exact.grammar import parse_number
 
@@ -20,7 +29,7 @@ if TYPE_CHECKING:
 
 
 @click.command()
-@shared_options
+@several_families
 @click.option("--at", "at", metavar="POINT", help='The point, "s=-1,t=-1/3".')
 @click.option(
     "--grid",
@@ -58,7 +67,10 @@ def evaluate(
     order: int,
     integrals: tuple[str, ...],
 ) -> None:
-    """Values of the masters, or of given integrals, at a point, on a grid, or near a singular point."""
+    """Values of the masters, or of given integrals, at a point, on a grid, or near a singular point.
+
+    Of several families the masters of one after the other, at the same point.
+    """
     from ibpred.report.json_tables import values_data
     from ibpred.report.text import values_text
 
@@ -71,16 +83,22 @@ def evaluate(
     point = parse_point(at) if at is not None else {}
     axes = tuple(parse_axis(text) for text in grids)
     wanted = tuple(parse_powers(text, "--integral") for text in integrals)
-    with open_chain(shared) as chain:
-        if approach is not None:
-            _near(shared, chain, point, approach, wanted, order, terms, digits)
-            return
-        if axes:
-            _on_grid(shared, chain, point, axes, wanted, order, digits, csv_file, plot_file)
-            return
-        values = chain.evaluate(point, wanted, order, digits)
-        data = values_data(chain.definition, point, digits, values)
-    emit(shared, data, lambda: values_text(data))
+    if shared.others:
+        if wanted or axes or approach is not None:
+            raise InputError("of several families the masters are evaluated, at one point (--at)")
+    elif approach is not None or axes:
+        with open_chain(shared) as chain:
+            if approach is not None:
+                _near(shared, chain, point, approach, wanted, order, terms, digits)
+            else:
+                _on_grid(shared, chain, point, axes, wanted, order, digits, csv_file, plot_file)
+        return
+    found = []
+    for family in each_family(shared):
+        with open_chain(family) as chain:
+            values = chain.evaluate(point, wanted, order, digits)
+            found.append(values_data(chain.definition, point, digits, values))
+    emit_each(shared, found, values_text)
 
 
 def parse_axis(text: str) -> Axis:

@@ -107,3 +107,35 @@ def test_integral_texts() -> None:
     assert parse_integral("(1,0)", "x") == (None, (1, 0))
     with pytest.raises(InputError, match="is no integral"):
         parse_integral("box(1", "x")
+
+
+def test_commands_for_one_family_after_the_other(call) -> None:
+    names = ("triangle-one-leg", "bubble")
+    code, out, err = call("diffeq", *names, options=("--json",))
+    assert code == 0, err
+    data = json.loads(out)["families"]
+    assert [each["family"] for each in data] == list(names)
+    code, single, _ = call("diffeq", "bubble", options=("--json",))
+    assert (code, json.loads(single)) == (0, data[1])
+    code, out, err = call("evaluate", *names, options=("--json", "--at", "s=-1", "--digits", "10"))
+    assert code == 0, err
+    first, second = json.loads(out)["families"]
+    # the one master of the triangle is the bubble
+    assert first["integrals"][0]["epsilon"] == second["integrals"][0]["epsilon"]
+
+
+def test_masters_of_several_families_name_theirs(call) -> None:
+    code, _, err = call("diffeq", "bubble", "triangle-one-leg", options=("--master", "1,1"))
+    assert code == 2
+    assert "names none of the families bubble, triangle-one-leg" in err
+    words = ("--json", "--master", "bubble(2,1)")
+    code, out, err = call("diffeq", "bubble", "triangle-one-leg", options=words)
+    assert code == 0, err
+    assert json.loads(out)["families"][0]["masters"] == [[2, 1]]
+
+
+def test_integrals_of_several_families_are_evaluated_one_by_one(call) -> None:
+    words = ("--at", "s=-1", "--integral", "1,1")
+    code, _, err = call("evaluate", "bubble", "triangle-one-leg", options=words)
+    assert code == 2
+    assert "of several families the masters are evaluated" in err
