@@ -32,6 +32,7 @@ from ibpred.numerics.series import carried, from_base
 _CURVE = ring(("eps", "x"))
 _FIRST_STEP = 0.5  # in radii of convergence
 _LAST_STEP = 0.7
+_SHIFTS = (Fraction(0), Fraction(1, 16), Fraction(-1, 19), Fraction(1, 7), Fraction(-1, 23))
 _ZERO: Point = (Fraction(0), Fraction(0))
 
 
@@ -71,47 +72,71 @@ def evaluate_rooted(
     """
     letters = singular_polynomials(form)
     refuse_zero(letters, {name: target.value for name, target in targets.items()})
-    moduli = {name: target.modulus for name, target in targets.items()}
-    alphabets, radicands = _levels(form, corner)
-    with precision(bits):
-        start = tuple(flint.acb(_number(q, bits)).sqrt() for q in radicands[-1])
-    here = Carried(constants, start)
-    size = len(form.inverse)
-    for k in reversed(range(len(corner))):
-        images = {name: _CURVE.constant(moduli[name]) for name in corner[k + 1 :]}
-        images[corner[k]] = _CURVE.variable("x")
-        leg = rooted_system(alphabets[k], radicands[k], size, "x", _complete(form, images))
-        here = _along_axis(leg, here, moduli[corner[k]], bits)
     turns = {name: target.half_turns for name, target in targets.items()}
     if {1, -1} <= set(turns.values()):
         raise PointError("the ratios turn in both directions on the way to this point; choose another unit")
-    if any(turns.values()):
+    levels = _levels(form, corner)
+    moduli = {name: target.modulus for name, target in targets.items()}
+    start, here = _in_positive_region(form, corner, levels, constants, moduli, bits)
+    end = {name: target.value for name, target in targets.items()}
+    if start != end:
         x = _CURVE.variable("x")
-        end = {name: target.value for name, target in targets.items()}
-        images = {name: x * (end[name] - moduli[name]) + moduli[name] for name in targets}
-        line = rooted_system(alphabets[0], radicands[0], size, "x", _complete(form, images))
-        path = around(approximate_roots(line.singular()), crossings(letters, moduli, end, turns))
+        images = {name: x * (end[name] - start[name]) + start[name] for name in end}
+        line = _system(form, levels, 0, images)
+        path = around(approximate_roots(line.singular()), crossings(letters, start, end, turns))
         here = _along_path(line, here, path, bits)
     return _divided(form, here, bits)
 
 
-def _levels(form: EpsilonForm, corner: Sequence[str]) -> tuple[list[Alphabet], list[tuple[Rational, ...]]]:
-    """Alphabet and radicands with the first 0, 1, ... ratios of the corner at zero; radicands with all."""
+Levels = tuple[Sequence[Alphabet], Sequence[tuple[Rational, ...]]]
+"""Alphabets with the first 0, 1, ... ratios of a corner at zero, and radicands with the first 0, ..., all."""
+
+
+def _in_positive_region(
+    form: EpsilonForm,
+    corner: Sequence[str],
+    levels: Levels,
+    constants: Orders,
+    wanted: Mapping[str, Fraction],
+    bits: int,
+) -> tuple[Mapping[str, Fraction], Carried]:
+    """From the corner to a positive point: the one wanted, or one near it.
+
+    Where smaller ratios are still zero letters may vanish at the wanted value of a ratio though the point
+    itself is regular.
+    """
+    with precision(bits):
+        roots = tuple(complex_ball(q.to_fraction(), 0, bits).sqrt() for q in levels[1][-1])
+    failure: PointError | None = None
+    for shift in _SHIFTS:
+        point = {name: value * (1 + shift * (k + 1)) for k, (name, value) in enumerate(wanted.items())}
+        here = Carried(constants, roots)
+        try:
+            for k in reversed(range(len(corner))):
+                images = {name: _CURVE.constant(point[name]) for name in corner[k + 1 :]}
+                images[corner[k]] = _CURVE.variable("x")
+                here = _along_axis(_system(form, levels, k, images), here, point[corner[k]], bits)
+        except PointError as error:
+            failure = failure or error
+        else:
+            return point, here
+    assert failure is not None
+    raise failure
+
+
+def _system(form: EpsilonForm, levels: Levels, level: int, images: Mapping[str, Rational]) -> RootedSystem:
+    """The system on a curve, some ratios at zero."""
+    complete = {name: images.get(name, _CURVE.zero) for name in form.ring.names}
+    return rooted_system(levels[0][level], levels[1][level], len(form.inverse), "x", complete)
+
+
+def _levels(form: EpsilonForm, corner: Sequence[str]) -> Levels:
     alphabets = [alphabet_of(form, corner)]
     radicands = [form.radicands]
     for number, name in enumerate(corner, start=1):
         alphabets.append(limit(alphabets[-1], name, corner[number:])[1])
         radicands.append(tuple(lowest(q, name)[1] for q in radicands[-1]))
     return alphabets, radicands
-
-
-def _number(value: Rational, bits: int) -> Ball:
-    return complex_ball(value.to_fraction(), 0, bits)
-
-
-def _complete(form: EpsilonForm, images: Mapping[str, Rational]) -> dict[str, Rational]:
-    """Images of all variables of the form's field; what is not on the curve does not occur."""
-    return {name: images.get(name, _CURVE.zero) for name in form.ring.names}
 
 
 def singular_polynomials(form: EpsilonForm) -> tuple[Rational, ...]:
@@ -195,7 +220,12 @@ def _along_axis(system: RootedSystem, here: Carried, end: Fraction, bits: int) -
     low, high = sorted((float(start), float(end)))
     between = any(abs(p.imag) < 1e-9 * abs(p) and low < p.real < high for p in poles)
     poles += [0j]
-    path = planned(poles, (start, Fraction(0)), (end, Fraction(0)), 1 if between else 0)
+    ends = (start, Fraction(0)), (end, Fraction(0))
+    try:
+        path = planned(poles, *ends, 1 if between else 0)
+    except PointError:
+        # the functions are regular on the axis: any side will do
+        path = planned(poles, *ends, -1)
     return _along_path(system, here, path, bits)
 
 
