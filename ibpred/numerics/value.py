@@ -44,14 +44,21 @@ class Value:
     route: Route | None = None
 
     def digits(self) -> int | None:
-        """Digits to which every coefficient is known, relative to its modulus; None where all are exact."""
-        reached = [found for ball in self.epsilon.values() if (found := _digits(ball)) is not None]
+        """Digits to which every coefficient is known; None where all are exact.
+
+        They count relative to the modulus of the coefficient. One whose ball holds zero (it vanishes, as a
+        rule, but that is not proven) counts relative to the largest coefficient of the integral, or to one
+        where that is smaller.
+        """
+        sizes = [_size(ball) for ball in self.epsilon.values()]
+        largest = max([Decimal(1), *sizes])
+        reached = []
+        for ball, size in zip(self.epsilon.values(), sizes, strict=True):
+            radius = Decimal(ball.radius)
+            if radius:
+                reached.append(max(0, ((size if size > radius else largest) / radius).adjusted()))
         return min(reached, default=None)
 
 
-def _digits(ball: DecimalBall) -> int | None:
-    radius = Decimal(ball.radius)
-    if not radius:
-        return None
-    size = max(abs(Decimal(ball.re)), abs(Decimal(ball.im)))
-    return (size / radius).adjusted() if size > radius else 0
+def _size(ball: DecimalBall) -> Decimal:
+    return max(abs(Decimal(ball.re)), abs(Decimal(ball.im)))

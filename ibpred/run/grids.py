@@ -45,7 +45,7 @@ class Grid:
     values
         (point, values of the integrals) in the order of the grid, the last axis fastest.
     left_out
-        (point, reason) where there are no values: points on singularities.
+        (point, reason) where there are no values: points on singularities where integrals have no limit.
     thresholds
         For a curve: (letter, place) of the singular points within its range, sorted.
     stopped
@@ -111,20 +111,43 @@ def evaluate_grid(
         for place in product(*(axis.values for axis in axes))
     ]
     locus = chain.derivation().system.singular_locus
-    regular, left_out = [], []
+    regular = [point for point in points if _singular(locus, point) is None]
+    values, stopped = _in_time(chain, regular, wanted, order, digits) if regular else ((), None)
+    reached = dict(zip(map(_key, regular), values, strict=False))
+    left_out: list[tuple[Point, str]] = []
     for point in points:
         reason = _singular(locus, point)
+        if reason is None and _key(point) not in reached:
+            left_out.append((point, "the time allowed was over"))
         if reason is None:
-            regular.append(point)
-        else:
-            left_out.append((point, reason))
-    if not regular:
+            continue
+        try:
+            reached[_key(point)] = _limit(chain, point, wanted, order, digits, stopped)
+        except (PointError, OutOfTimeError) as error:
+            left_out.append((point, f"{reason}; {error}"))
+    if not reached:
         raise PointError(f"every point of the grid is singular: {left_out[0][1]}")
-    values, stopped = _in_time(chain, regular, wanted, order, digits)
-    left_out += [(point, "the time allowed was over") for point in regular[len(values) :]]
     thresholds = _thresholds(locus, fixed, axes[0]) if len(axes) == 1 else ()
-    reached = tuple(zip(regular, values, strict=False))
-    return Grid(tuple(axes), reached, tuple(left_out), thresholds, stopped)
+    with_values = tuple((point, reached[_key(point)]) for point in points if _key(point) in reached)
+    return Grid(tuple(axes), with_values, tuple(left_out), thresholds, stopped)
+
+
+def _key(point: Point) -> tuple[Fraction, ...]:
+    return tuple(point.values())
+
+
+def _limit(
+    chain: Chain,
+    point: Point,
+    wanted: Sequence[Powers],
+    order: int,
+    digits: int,
+    stopped: OutOfTimeError | None,
+) -> tuple[Value, ...]:
+    """Values on a singularity, where there are any and time is left."""
+    if stopped is not None:
+        raise stopped
+    return evaluate_points(chain, (point,), wanted, order, digits)[0]
 
 
 def _in_time(

@@ -8,7 +8,9 @@ from pathlib import Path
 import pytest
 from mpmath import mp, mpc, mpf
 
+from ibpred.balls.decimal import DecimalBall
 from ibpred.errors import PointError
+from ibpred.numerics.value import Value
 from ibpred.progress import SILENT
 from ibpred.run.chain import Chain
 from ibpred.run.files import read_family_file
@@ -82,3 +84,10 @@ def test_no_limit(folder):
     near = value_at("massless-box", folder, {"s": 1, "t": -1 + F(1, 10**12)}, (1, 1, 1, 1))
     for order in (-2, -1, 0):
         assert abs(number(value, order) - number(near, order)) < 1e-10
+
+
+def test_digits_of_a_vanishing_coefficient():
+    known, zero = DecimalBall("-20.5", "0", "1e-30"), DecimalBall("1e-42", "0", "1e-31")
+    assert Value((1,), {-1: known, 0: zero}, False).digits() == 31
+    assert Value((1,), {0: zero}, False).digits() == 31
+    assert Value((1,), {0: DecimalBall("3", "0", "0")}, True).digits() is None
