@@ -220,10 +220,15 @@ def _behaviours(
     family: FamilyDefinition, powers: Powers, form: EpsilonForm, values: Mapping[str, Rational]
 ) -> Behaviours | None:
     """How a master may behave at letters near a region of scattering, where these are known."""
-    if len(form.variables) != 1:
+    if len(form.variables) != 1 or not all(_is_ratio(value, form.variables[0]) for value in values.values()):
         return None
     roots = letter_roots(form.letters, form.variables[0])
     if None in roots:
         return None
     letters = {Fraction(0), *(root for root in roots if root is not None)}
     return behaviours(family, powers, values, form.variables[0], letters)
+
+
+def _is_ratio(value: Rational, variable: str) -> bool:
+    """Whether an invariant is of first degree in the variable of the form."""
+    return value.is_polynomial() and variable not in value.derivative(variable).variables()

@@ -151,6 +151,9 @@ class FamilyDefinition:
         Crossings under which the family's integrals are wanted too.
     variables
         Variables in which the user wants the epsilon-form and all that follows.
+    region
+        Signs of invariants, +1 or -1, where the user wants the family solved; see
+        `ibpred.family.signs.region_signs`.
     """
 
     name: str
@@ -165,6 +168,7 @@ class FamilyDefinition:
     graph: Graph | None
     crossings: tuple[Crossing, ...] = ()
     variables: tuple[VariableChange, ...] = ()
+    region: tuple[tuple[str, int], ...] = ()
 
     @property
     def kinematic_ring(self) -> Ring:

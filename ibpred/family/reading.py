@@ -22,6 +22,7 @@ from ibpred.family.polynomials import symanzik
 from ibpred.family.reading_graph import read_edges, read_joins, read_loop_names
 from ibpred.family.reading_lines import check_independent, read_lines
 from ibpred.family.recognition import recognise
+from ibpred.family.region import read_region
 from ibpred.family.source import Path, Source, parse_source
 from ibpred.family.variables import read_variables
 
@@ -99,6 +100,7 @@ def read_family(text: str, file: str, name: str) -> FamilyDefinition:
         graph=graph,
         crossings=read_crossings(source, external, gram, momenta.ring),
         variables=read_variables(source, invariants, unit),
+        region=read_region(source, invariants, {v for line in records for v in line.mass2.variables()}),
     )
     if not symanzik(family)[0]:
         raise source.error(
@@ -131,7 +133,7 @@ def _read_invariants(source: Source) -> dict[str, int]:
         raise source.error(
             "the section [kinematics] is missing; it says invariants = { s = 2 } and the equations", ()
         )
-    source.table(("kinematics",), ("invariants", "equations", "unit", "dimensions"))
+    source.table(("kinematics",), ("invariants", "equations", "unit", "dimensions", "region"))
     return source.integers(("kinematics", "invariants"))
 
 

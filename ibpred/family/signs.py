@@ -1,4 +1,4 @@
-"""Signs of the invariants: those of the Euclidean region, or of a scattering region where there is none."""
+"""Signs of the invariants: those of the Euclidean region, or of another in which the family is solved."""
 
 from __future__ import annotations
 
@@ -34,23 +34,21 @@ def euclidean_signs(family: FamilyDefinition) -> dict[str, int] | None:
 def region_signs(family: FamilyDefinition) -> dict[str, int]:
     """Signs of the invariants in the region in which the family is solved.
 
-    The Euclidean region where there is one. Else a region of scattering: the unit, squared masses and
-    invariants without a dimension (products of velocities) positive, all others (momentum transfers)
-    negative.
+    What the family file asks for. For what it leaves open, the Euclidean region where there is one. Else a
+    region of scattering: the unit, squared masses and invariants without a dimension (products of velocities)
+    positive, all others (momentum transfers) negative.
 
     Returns
     -------
     dict
         For every invariant +1 or -1.
     """
-    found = euclidean_signs(family)
-    if found is not None:
-        return found
     of_masses = masses(family)
-    return {
+    scattering = {
         i.name: 1 if i.name == family.unit or i.name in of_masses or not i.dimension else -1
         for i in family.invariants
     }
+    return {**(euclidean_signs(family) or scattering), **dict(family.region)}
 
 
 def positive_signs(family: FamilyDefinition, coefficients: Collection[Rational]) -> dict[str, int] | None:

@@ -236,7 +236,7 @@ def solution_data(family: FamilyDefinition, boundary: Boundary, solution: Soluti
 
     A term holds one word for each level; with one ratio at most this is its ``word``. Letters that are not
     linear in the ratio of their level have names in the texts, which ``named`` explains. The functions hold
-    in the Euclidean region and wherever i0 leads from there; a family without one names its ``region``.
+    in the Euclidean region and wherever i0 leads from there, or else in the ``region`` that is named.
     """
     names = [[_level_letter_text(letter) for letter in level.letters] for level in solution.levels]
     functions = []
@@ -280,10 +280,11 @@ def solution_data(family: FamilyDefinition, boundary: Boundary, solution: Soluti
 
 
 def _region(family: FamilyDefinition, solution: Solution) -> list[str]:
-    """Where the constants hold, for a family without a Euclidean region; empty for any other."""
-    if euclidean_signs(family) is not None:
+    """Where the constants hold, if not in a Euclidean region; empty for that."""
+    signs = region_signs(family)
+    if euclidean_signs(family) == signs:
         return []
-    found = [f"{name} {'>' if sign > 0 else '<'} 0" for name, sign in region_signs(family).items()]
+    found = [f"{name} {'>' if sign > 0 else '<'} 0" for name, sign in signs.items()]
     if len(solution.levels) > 1:
         corner = " << ".join((*(level.variable for level in solution.levels), "1"))
         return [*found, f"{corner} and on to the nearest letters"]

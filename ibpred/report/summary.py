@@ -145,9 +145,7 @@ def _solution(data: Data) -> str:
     if "region" in data:
         lines += [
             "",
-            "No signs of the invariants make $F$ positive; these functions hold for "
-            + ", ".join(f"${text}$" for text in data["region"])
-            + ".",
+            "These functions hold for " + ", ".join(f"${text}$" for text in data["region"]) + ".",
         ]
     symbol = "f" if data["letters"] else "I"
     for function in data["functions"]:

@@ -81,7 +81,8 @@ def carried_check(
             if not all(_agree(got.get(k), told.get(k)) for k in orders):
                 wrong.append(str(number))
     place = ", ".join(f"{name} = {value}" for name, value in end["point"].items())
-    origin = "the Euclidean point" if signs is not None else "another point of the region"
+    euclidean = signs is not None and all(v * signs[name] > 0 for name, v in _point(start).items())
+    origin = "the Euclidean point" if euclidean else "another point of the region"
     detail = (
         f"the masters at {place} through eps^{highest} follow from those at {origin} to "
         f"{min(_DIGITS, int(start['digits']))} digits"

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
+from functools import cached_property
 
 import ibpred
 from ibpred.boundary.edges import Corner
@@ -172,11 +173,16 @@ class Chain(Stages):
 
     def signs(self) -> dict[str, int]:
         """Signs of the invariants in the region of the solution, where the ratios are positive."""
-        return region_signs(self.definition)
+        return dict(self._region[0])
 
     def is_euclidean(self) -> bool:
         """Whether that region is the Euclidean one."""
-        return euclidean_signs(self.definition) is not None
+        return self._region[1]
+
+    @cached_property
+    def _region(self) -> tuple[dict[str, int], bool]:
+        signs = region_signs(self.definition)
+        return signs, euclidean_signs(self.definition) == signs
 
     def coordinates(self) -> Coordinates:
         """Dimensionless variables: the ratios, the user's, or those in which square roots are rational."""
@@ -260,14 +266,12 @@ class Chain(Stages):
         UnfinishedError
             If the family has no Euclidean region.
         """
-        found = euclidean_signs(self.definition)
-        if found is None:
+        if not self.is_euclidean():
             raise UnfinishedError(
-                f"{self.definition.name} has no Euclidean region (no signs of its invariants make F "
-                "positive), and without a ratio, or in other variables than ratios, its boundary constants "
-                "are determined from one; `evaluate --at` gives values in a physical region"
+                f"{self.definition.name} has no Euclidean region: no signs of its invariants make F "
+                "positive; `evaluate --at` gives values in a physical region"
             )
-        return found
+        return self.signs()
 
     def solved_form(self) -> EpsilonForm:
         """The epsilon-form of the whole system; the masters themselves where there is no ratio.
@@ -343,12 +347,8 @@ class Chain(Stages):
         if channel.is_base():
             return self.completed_boundary(weight)
         problem = self._boundary_problem(self.solved_form(), weight)
-        return self._kept(
-            "boundary of a region",
-            Boundary,
-            [weight, to_data(channel)],
-            lambda: channel_boundary(self, problem, channel),
-        )
+        key = [weight, to_data(channel)]
+        return self._kept("region", Boundary, key, lambda: channel_boundary(self, problem, channel))
 
     def _boundary_problem(self, form: EpsilonForm, weight: int, corner: Corner = ()) -> BoundaryProblem:
         values, masters = self.coordinates().values, self.masters().masters

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from fractions import Fraction
 from typing import TYPE_CHECKING
 
@@ -10,7 +11,7 @@ from ibpred.boundary.fix import Boundary
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.family.signs import masses
+from ibpred.family.signs import euclidean_signs, masses
 from ibpred.family.units import integral_dimension
 from ibpred.iterated.solution import fibration, letter_roots
 from ibpred.numerics.canonical import CanonicalSystem, canonical_system
@@ -46,6 +47,11 @@ def form_values(
         If the family is not solved, or the digits cannot be reached.
     """
     family = chain.definition
+    if not (chain.is_euclidean() or chain.in_ratios()):
+        raise UnfinishedError(
+            "outside a Euclidean region values are taken in the ratios, but the epsilon-form is in "
+            f"{', '.join(chain.coordinates().names)}"
+        )
     form = chain.solved_form() if chain.in_ratios() else chain.ratio_form()
     chosen = [place_of(chain, point) for point in points]
     named = [dict(zip(form.variables, place.ratios.values(), strict=False)) for place in chosen]
@@ -66,6 +72,11 @@ def form_values(
     for number, place in enumerate(chosen):
         groups.setdefault(channel_at(chain, form, place), []).append(number)
     for channel, group in groups.items():
+        if channel is not None and not channel.is_base() and _has_euclidean_region(chain):
+            others = [points[number] for number in group]
+            values = form_values(_in_euclidean_region(chain), others, wanted, order, digits)
+            found |= dict(zip(group, values, strict=True))
+            continue
         boundary = boundary_in(chain, channel, weight)
         chain.progress.stage("values")
         values = evaluate_places(
@@ -80,6 +91,17 @@ def form_values(
         )
         found |= dict(zip(group, values, strict=True))
     return tuple(found[number] for number in range(len(places)))
+
+
+def _has_euclidean_region(chain: Chain) -> bool:
+    """Whether the family asks for another region than the Euclidean one that it has."""
+    return bool(chain.definition.region) and euclidean_signs(chain.definition) is not None
+
+
+def _in_euclidean_region(chain: Chain) -> Chain:
+    """The same family solved in its Euclidean region, from where i0 leads everywhere."""
+    plain = replace(chain.definition, region=())
+    return type(chain)(plain, chain.store, chain.progress, chain.workers, chain.preferred)
 
 
 def channel_at(chain: Chain, form: EpsilonForm, place: KinematicPoint) -> Channel | None:
@@ -99,7 +121,7 @@ def channel_at(chain: Chain, form: EpsilonForm, place: KinematicPoint) -> Channe
         if positive and is_next_to_corner(levels, ratios):
             return BASE
         raise UnfinishedError(
-            "without a Euclidean region and in several ratios constants are known in one region only: at "
+            "outside a Euclidean region and in several ratios constants are known in one region only: at "
             f"the corner {' << '.join((*reversed(form.variables), '1'))}"
         )
     (ratio,) = place.ratios.values()

@@ -14,6 +14,8 @@ from typing import TYPE_CHECKING
 
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import PointError, UnfinishedError
+from ibpred.iterated.solution import fibration
+from ibpred.numerics.channels import is_next_to_corner
 from ibpred.numerics.evaluate import Place, evaluate_places
 from ibpred.numerics.masters import master_rows, needed_order
 from ibpred.numerics.path import Target
@@ -57,8 +59,11 @@ def lifted_point(chain: Chain, order: int, digits: int) -> KnownPoint:
 
 
 def _base(chain: Chain, form: EpsilonForm) -> tuple[Mapping[str, Fraction], dict[str, Fraction]]:
-    """Values of the variables and of the invariants at a regular point of the Euclidean region."""
-    signs, coordinates = chain.euclidean_signs(), chain.coordinates()
+    """Values of the variables and of the invariants at a regular point of the region of the solution."""
+    signs, coordinates = chain.signs(), chain.coordinates()
+    levels = []
+    if not chain.is_euclidean():
+        levels = [level for level, _ in fibration(form, tuple(reversed(form.variables)))]
     for size, doubled in product(_SIZES, (False, True)):
         powers = [2**k if doubled else k + 1 for k in range(len(coordinates.names))]
         variables = {name: size**n for name, n in zip(coordinates.names, powers, strict=True)}
@@ -67,9 +72,11 @@ def _base(chain: Chain, form: EpsilonForm) -> tuple[Mapping[str, Fraction], dict
             point = {name: v.substitute(variables).to_fraction() for name, v in coordinates.values.items()}
         except (PointError, ZeroDivisionError):
             continue
+        if not is_next_to_corner(levels, variables):
+            continue
         if all(value * signs[name] > 0 for name, value in point.items()):
             return variables, {i.name: point[i.name] for i in chain.definition.invariants}
     raise UnfinishedError(
-        f"no point of the Euclidean region was found where {', '.join(coordinates.names)} are small and "
-        "positive"
+        f"no point of the region of the solution was found where {', '.join(coordinates.names)} are small "
+        "and positive"
     )

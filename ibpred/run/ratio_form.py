@@ -15,6 +15,7 @@ from ibpred.boundary.problem import boundary_problem
 from ibpred.diffeq.ratios import ratio_coordinates
 from ibpred.epsform.factorise import factorise
 from ibpred.epsform.form import EpsilonForm, Obstructed
+from ibpred.errors import UnfinishedError
 from ibpred.run.stages import SEED
 
 if TYPE_CHECKING:
@@ -33,8 +34,12 @@ def boundary_in_ratios(chain: Chain, weight: int) -> Boundary:
     Raises
     ------
     UnfinishedError
-        If there is no Euclidean region or no form, or constants stay open.
+        If the region is not Euclidean, there is no form, or constants stay open.
     """
+    if not chain.is_euclidean():
+        raise UnfinishedError(
+            "boundary constants of a form in ratios that keeps roots need a Euclidean region"
+        )
     masters, form, signs = chain.masters().masters, chain.ratio_form(), chain.euclidean_signs()
     problem = boundary_problem(chain.definition, masters, form, signs, weight)
     if weight > 0:

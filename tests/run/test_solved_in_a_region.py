@@ -1,0 +1,44 @@
+"""Families solved in a region of scattering that the family file asks for."""
+
+from __future__ import annotations
+
+from fractions import Fraction
+from pathlib import Path
+
+import pytest
+
+from ibpred.balls.decimal import ball_of_decimal
+from ibpred.family.reading import read_family
+from ibpred.numerics.value import Route
+from ibpred.progress import SILENT
+from ibpred.run.chain import Chain
+from ibpred.run.store import Store
+
+FAMILIES = Path(__file__).parents[2] / "families"
+
+
+def definition(name, region):
+    text = (FAMILIES / f"{name}.toml").read_text(encoding="utf-8")
+    return read_family(text.replace("[kinematics]\n", f"[kinematics]\nregion = {region}\n"), "f.toml", name)
+
+
+@pytest.mark.parametrize("name", ["massless-box", pytest.param("planar-double-box", marks=pytest.mark.slow)])
+def test_all_constants_are_derived_and_agree_with_the_euclidean_ones(name, tmp_path):
+    """The region s > 0, t < 0, -t < s; the others are reached by i0 from the Euclidean one."""
+    inside, outside = ("1", "-2/5"), [("-1", "-1/3"), ("1", "-3"), ("-2", "1/2")]
+    with Store(tmp_path / "store") as store:
+        here = Chain(definition(name, '["s > 0"]'), store, SILENT, 1)
+        usual = Chain(definition(name, "[]"), store, SILENT, 1)
+        solution = here.solution(2 * len(here.definition.loops))
+        assert solution.is_pure()
+        assert not here.is_euclidean()
+        assert not here.boundary(2).fitted
+        for s, t in [inside, *outside]:
+            point = {"s": Fraction(s), "t": Fraction(t)}
+            pairs = zip(here.evaluate(point, (), 0, 20), usual.evaluate(point, (), 0, 20), strict=True)
+            for value, expected in pairs:
+                assert value.certified
+                assert value.route is Route.EPSILON_FORM
+                assert set(value.epsilon) == set(expected.epsilon)
+                for k, ball in value.epsilon.items():
+                    assert ball_of_decimal(ball, 200).overlaps(ball_of_decimal(expected.epsilon[k], 200))
