@@ -25,6 +25,7 @@ from ibpred.epsform.spectrum import Slopes
 from ibpred.epsform.verify import canonical_matrix, satisfies
 from ibpred.errors import ReconstructionError, UnfinishedError
 from ibpred.exact.rational import Rational, Ring
+from ibpred.progress import SILENT, Progress
 
 
 @dataclass
@@ -38,7 +39,12 @@ class _Reference:
 
 
 def solve_coupled(
-    matrix: Matrix, name: str, primes: Sequence[int], seed: int, subject: str
+    matrix: Matrix,
+    name: str,
+    primes: Sequence[int],
+    seed: int,
+    subject: str,
+    progress: Progress = SILENT,
 ) -> Block | Finding:
     """Epsilon-form of a coupled diagonal block, or the reason why there is none.
 
@@ -54,6 +60,8 @@ def solve_coupled(
         Of the sample points.
     subject
         For messages.
+    progress
+        Told about each sample.
 
     Raises
     ------
@@ -74,6 +82,7 @@ def solve_coupled(
     size = len(matrix)
 
     def sampler(eps: int, prime: int) -> Sample | None:
+        progress.advance(0, None)
         right = _reference_residues(pattern, reference, prime)
         here = glued_at(pattern, (eps,), reference.slopes, prime, reference.base)
         if right is None or not isinstance(here, Glued):

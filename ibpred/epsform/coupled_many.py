@@ -33,6 +33,7 @@ from ibpred.epsform.sections import Glued
 from ibpred.epsform.tags import Tag, between_functions
 from ibpred.errors import ReconstructionError
 from ibpred.exact.rational import Rational, Ring, ring
+from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.functions import reconstruct
 from ibpred.reconstruct.modular import LARGEST_BITS
 from ibpred.reconstruct.sampling import Sampler, UnluckyPrimeError
@@ -64,6 +65,7 @@ class _Columns:
     probed: Probe
     restricted: Matrix
     shape: Shape | None
+    progress: Progress
 
     @property
     def variables(self) -> tuple[str, ...]:
@@ -75,6 +77,7 @@ class _Columns:
 
     def coefficients(self, values: Sequence[int], prime: int) -> tuple[Shape, list[int]] | None:
         """Degrees and coefficients at one point; None where the point is useless."""
+        self.progress.advance(0, None)
         here = glued_at(self.pattern, values, self.probed.slopes, prime, self.probed.base)
         if not isinstance(here, Glued):
             return None
@@ -105,7 +108,12 @@ class _Columns:
 
 
 def solve_coupled_many(
-    block: Connection, solve: Solver, primes: Sequence[int], seed: int, subject: str
+    block: Connection,
+    solve: Solver,
+    primes: Sequence[int],
+    seed: int,
+    subject: str,
+    progress: Progress = SILENT,
 ) -> Block | Finding:
     """Epsilon-form of a coupled block in several ratios, or the reason why there is none.
 
@@ -121,6 +129,8 @@ def solve_coupled_many(
         Of the sample points.
     subject
         For messages.
+    progress
+        Told about each sample.
 
     Raises
     ------
@@ -158,9 +168,9 @@ def solve_coupled_many(
             roots=letters,
         )
     tag = tuple(outcome.radicands[k].to_ring(field) for k in outcome.tags[0])
-    columns = _Columns(pattern, probed, outcome.transformation, None)
+    columns = _Columns(pattern, probed, outcome.transformation, None, progress)
     columns = _Columns(
-        pattern, probed, outcome.transformation, usual_shape(columns, usable[0], seed, subject)
+        pattern, probed, outcome.transformation, usual_shape(columns, usable[0], seed, subject), progress
     )
     rebuilt = rebuilt_entries(columns, usable, seed, rest)
     coefficients = iter([entry.to_ring(field) for entry in rebuilt])

@@ -17,7 +17,7 @@ from ibpred.epsform.rooted import solve_rooted
 from ibpred.epsform.single import solve_single
 from ibpred.epsform.structure import coupled_blocks, couplings, reachable, restricted
 from ibpred.epsform.tags import canonical
-from ibpred.errors import UnfinishedError
+from ibpred.errors import OutOfTimeError, UnfinishedError
 from ibpred.progress import SILENT, Expired, Limited, Progress, never
 from ibpred.reconstruct.notes import FORGETFUL, Notes
 
@@ -48,8 +48,8 @@ def factorise(
     progress
         Told about the blocks done.
     expired
-        Asked before each coupled block whether the time is over. The blocks that are left then count as
-        obstructed, with a sentence that says so, and the outcome is marked as incomplete.
+        Asked before and during the work on each coupled block whether the time is over. The blocks that are
+        left then count as obstructed, with a sentence that says so, and the outcome is marked as incomplete.
     notes
         Where the forms of coupled blocks are noted, so that an interrupted factorisation goes on.
 
@@ -78,7 +78,12 @@ def factorise(
             complete = False
             obstructions.append(Obstruction(rows, _OVER, None, ()))
         elif isinstance(outcome, Finding):
-            rooted = _rooted(outcome, rows, connection, primes, seed, notes)
+            try:
+                rooted = _rooted(outcome, rows, connection, primes, seed, expired, notes)
+            except OutOfTimeError:
+                complete = False
+                obstructions.append(Obstruction(rows, _OVER, None, outcome.exponents))
+                continue
             if isinstance(rooted, Block):
                 solved[rows] = rooted
                 continue
@@ -108,7 +113,7 @@ def factorise(
     return Obstructed(tuple(obstructions), rows_solved, outcome_, complete)
 
 
-_OVER = "not looked at: the time allowed was over before this block's turn"
+_OVER = "not finished: the time allowed was over before or during this block's turn"
 
 
 Outcomes = tuple[tuple[tuple[int, ...], Block | Finding | None], ...]
@@ -125,16 +130,16 @@ def diagonal_blocks(
 ) -> Outcomes:
     """The sets of rows that depend on each other, each with its epsilon-form or what is in the way.
 
-    None for coupled blocks that were not looked at since the time was over.
+    None for coupled blocks that were not finished since the time was over.
     """
     blocks = coupled_blocks(couplings(connection))
-    progress.stage("epsilon-form of the diagonal blocks")
+    progress.stage(_DURING)
     found: list[tuple[tuple[int, ...], Block | Finding | None]] = []
     for rows in blocks:
-        if len(rows) > 1 and expired():
+        try:
+            found.append((rows, _solved(rows, connection, primes, seed, expired, notes)))
+        except OutOfTimeError:
             found.append((rows, None))
-        else:
-            found.append((rows, _solved(rows, connection, primes, seed, notes)))
         progress.advance(len(found), len(blocks))
     return tuple(found)
 
@@ -146,14 +151,24 @@ class _Outcome:
 
 
 def _solved(
-    rows: tuple[int, ...], connection: Connection, primes: Sequence[int], seed: int, notes: Notes
+    rows: tuple[int, ...],
+    connection: Connection,
+    primes: Sequence[int],
+    seed: int,
+    expired: Expired,
+    notes: Notes,
 ) -> Block | Finding:
     """A block; one function alone is solved sooner than read from the notes."""
     block = restricted(connection, rows)
     if len(rows) == 1:
         return solve_block(block, primes, seed)
+    limited = Limited(SILENT, expired)
+    limited.stage(_DURING)
     name = f"block of rows {', '.join(map(str, rows))}"
-    return _noted(name, lambda: solve_block(block, primes, seed), notes)
+    return _noted(name, lambda: solve_block(block, primes, seed, limited), notes)
+
+
+_DURING = "epsilon-form of the diagonal blocks"
 
 
 def _noted(name: str, compute: Callable[[], Block | Finding], notes: Notes) -> Block | Finding:
@@ -175,6 +190,7 @@ def _rooted(
     connection: Connection,
     primes: Sequence[int],
     seed: int,
+    expired: Expired,
     notes: Notes,
 ) -> Block | Finding:
     """A block that lacks roots, its functions with roots of their own; the finding where that fails too."""
@@ -183,39 +199,56 @@ def _rooted(
     block = restricted(connection, rows)
     subject = f"block {', '.join(block.labels)}"
 
+    limited = Limited(SILENT, expired)
+    limited.stage(_DURING)
+
     def solve(smaller: Connection) -> EpsilonForm | Obstructed:
-        return factorise(smaller, primes, seed)
+        return factorise(smaller, primes, seed, limited)
 
     return _noted(
         f"roots in the block of rows {', '.join(map(str, rows))}",
-        lambda: solve_rooted(block, found, solve, primes, seed, subject),
+        lambda: solve_rooted(block, found, solve, primes, seed, subject, limited),
         notes,
     )
 
 
-def solve_block(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
-    """A block, a square root that multiplies all of it split off as its tag."""
+def solve_block(
+    block: Connection, primes: Sequence[int], seed: int, progress: Progress = SILENT
+) -> Block | Finding:
+    """A block, a square root that multiplies all of it split off as its tag.
+
+    Parameters
+    ----------
+    block
+        The block as a system of its own.
+    primes, seed
+        As for `factorise`.
+    progress
+        Told about each sample.
+    """
     if len(block.labels) == 1:
         return solve_single({name: block.matrices[name][0][0] for name in block.variables})
-    outcome = _solve_coupled(block, primes, seed)
+    outcome = _solve_coupled(block, primes, seed, progress)
     if not isinstance(outcome, Finding) or not outcome.common:
         return outcome
-    rooted = _solve_coupled(times_root(block, outcome.common), primes, seed)
+    rooted = _solve_coupled(times_root(block, outcome.common), primes, seed, progress)
     if isinstance(rooted, Finding):
         return outcome
     return replace(rooted, tags=tuple(canonical((*outcome.common, *tag)) for tag in rooted.tags))
 
 
-def _solve_coupled(block: Connection, primes: Sequence[int], seed: int) -> Block | Finding:
+def _solve_coupled(
+    block: Connection, primes: Sequence[int], seed: int, progress: Progress
+) -> Block | Finding:
     subject = f"block {', '.join(block.labels)}"
     if len(block.variables) > 1:
 
         def solve(smaller: Connection) -> EpsilonForm | Obstructed:
-            return factorise(smaller, primes, seed)
+            return factorise(smaller, primes, seed, progress)
 
-        return solve_coupled_many(block, solve, primes, seed, subject)
+        return solve_coupled_many(block, solve, primes, seed, subject, progress)
     name = block.variables[0]
-    return solve_coupled(block.matrices[name], name, primes, seed, subject)
+    return solve_coupled(block.matrices[name], name, primes, seed, subject, progress)
 
 
 def on_cover(found: Finding, block: Connection, primes: Sequence[int], seed: int) -> Finding:

@@ -24,6 +24,7 @@ from ibpred.epsform.image import splits
 from ibpred.epsform.matrices import identity, product
 from ibpred.epsform.tags import Tag, canonical, product_of
 from ibpred.exact.rational import Rational, ring
+from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.modular import LARGEST_BITS
 
 
@@ -33,6 +34,7 @@ class _Columns:
 
     block: Characters
     shape: Shape | None
+    progress: Progress
 
     @property
     def variables(self) -> tuple[str, ...]:
@@ -44,6 +46,7 @@ class _Columns:
 
     def coefficients(self, values: Sequence[int], prime: int) -> tuple[Shape, list[int]] | None:
         """Degrees and coefficients at one point; None where the point is useless."""
+        self.progress.advance(0, None)
         parts = []
         for character in self.block.found:
             columns = normal_columns(character, values, prime, self.block)
@@ -71,7 +74,13 @@ class _Columns:
 
 
 def solve_rooted(
-    block: Connection, found: Finding, solve: Solver, primes: Sequence[int], seed: int, subject: str
+    block: Connection,
+    found: Finding,
+    solve: Solver,
+    primes: Sequence[int],
+    seed: int,
+    subject: str,
+    progress: Progress = SILENT,
 ) -> Block | Finding:
     """Epsilon-form of a coupled block that lacks square roots, its functions with roots of their own.
 
@@ -83,7 +92,7 @@ def solve_rooted(
         Why it has no form with a common root; it names the letters under the roots.
     solve
         Finds the epsilon-form of a system with fewer variables.
-    primes, seed, subject
+    primes, seed, subject, progress
         As for `ibpred.epsform.coupled_many.solve_coupled_many`.
 
     Returns
@@ -104,8 +113,8 @@ def solve_rooted(
     usable = tuple(p for p in small if all(splits(character.pattern, p) for character in roots.found))
     if not usable:
         return found
-    columns = _Columns(roots, None)
-    columns = _Columns(roots, usual_shape(columns, usable[0], seed, subject))
+    columns = _Columns(roots, None, progress)
+    columns = _Columns(roots, usual_shape(columns, usable[0], seed, subject), progress)
     rest = ring(n for n in field.names if n != name)
     rebuilt = rebuilt_entries(columns, usable, seed, rest)
     coefficients = iter([entry.to_ring(field) for entry in rebuilt])

@@ -18,8 +18,9 @@ from ibpred.epsform.places import places_of
 from ibpred.epsform.rationalise import Change, rationalise
 from ibpred.epsform.structure import restricted
 from ibpred.epsform.tags import product_of
+from ibpred.errors import OutOfTimeError
 from ibpred.exact.rational import Rational, ring
-from ibpred.progress import SILENT, Progress
+from ibpred.progress import SILENT, Expired, Progress, never
 
 
 @dataclass(frozen=True)
@@ -69,6 +70,7 @@ def root_variables(
     primes: Sequence[int],
     seed: int,
     progress: Progress = SILENT,
+    expired: Expired = never,
 ) -> RootVariables:
     """Find variables in which the square roots are rational.
 
@@ -79,16 +81,21 @@ def root_variables(
     ----------
     connection
         The system.
-    primes, seed, progress
+    primes, seed, progress, expired
         As for `factorise`.
+
+    Raises
+    ------
+    OutOfTimeError
+        If the time is over before all blocks are done.
     """
-    first = outcomes = diagonal_blocks(connection, primes, seed, progress)
+    first = outcomes = _all_blocks(connection, primes, seed, progress, expired)
     covers: list[Cover] = []
     here = connection
     while (cover := cover_for(here, outcomes, primes, seed)) is not None:
         covers.append(cover)
         here = cover.connection
-        outcomes = diagonal_blocks(here, primes, seed, progress)
+        outcomes = _all_blocks(here, primes, seed, progress, expired)
     steps = tuple(Step(c.ratio, c.new, c.substitution) for c in covers)
     covered = _variables(connection, steps, here.variables, (), True) if steps else None
     if len(connection.variables) == 1 or not (radicands := open_radicands(here, outcomes)):
@@ -115,6 +122,15 @@ def root_variables(
     # functions of size one carry their roots as tags, so covers serve only where they remove all of these
     tagged = any(isinstance(outcome, Block) and outcome.rooted for _, outcome in outcomes)
     return RootVariables(covered if not tagged or any(c.needed for c in covers) else None, offered)
+
+
+def _all_blocks(
+    connection: Connection, primes: Sequence[int], seed: int, progress: Progress, expired: Expired
+) -> Outcomes:
+    outcomes = diagonal_blocks(connection, primes, seed, progress, expired)
+    if any(outcome is None for _, outcome in outcomes):
+        raise OutOfTimeError("square roots")
+    return outcomes
 
 
 def open_radicands(connection: Connection, outcomes: Outcomes) -> tuple[Rational, ...]:

@@ -199,7 +199,7 @@ class Chain(Stages):
 
         def search() -> RootVariables:
             self.progress.stage("square roots")
-            return root_variables(self.connection_in(ratios), self.primes, SEED, self.progress)
+            return root_variables(self.connection_in(ratios), self.primes, SEED, self.progress, self.expired)
 
         return self._kept("square roots", RootVariables, None, search)
 

@@ -409,3 +409,13 @@ def test_square_root_of_a_block_in_two_ratios() -> None:
     assert [str(r) for r in form.radicands] == ["-x*y+1"]
     assert form.tags == ((0,), (0,))
     assert is_integrable(form)
+
+
+def test_time_that_runs_out_inside_a_block() -> None:
+    """The deadline comes with the third sample: the block is named, not half done."""
+    asked = iter(range(100))
+    system, _ = scrambled(Random(7), [3], [0, 1])
+    found = factorise(system, PRIMES, 1, None, lambda: next(asked) > 3)
+    assert isinstance(found, Obstructed)
+    assert not found.complete
+    assert "time" in found.obstructions[0].reason
