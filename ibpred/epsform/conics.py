@@ -83,6 +83,12 @@ def without_squares(value: Rational) -> Rational:
     return total
 
 
+def odd_factors(value: Rational) -> tuple[Rational, ...]:
+    """The irreducible polynomials that occur to an odd power, in canonical order."""
+    found = [as_element(factor, value.ring) for factor, power in value.factors()[1] if power % 2]
+    return tuple(found)
+
+
 def swapped(field: Ring, old: str, new: str) -> Ring:
     """The ring with another variable in the place of one."""
     return ring(new if name == old else name for name in field.names)

@@ -210,3 +210,48 @@ def _rank(item: Place) -> tuple[bool, int, bool, Fraction, str]:
     root = item.root
     size = Fraction(0) if root is None else abs(root)
     return item.moves, item.degree, root is None, size, item.text()
+
+
+_SPECIAL = 40
+"""Points at which the other ratios are tried."""
+
+
+def constant_residue(value: Rational, pole: Place) -> Rational | None:
+    """Residue at a simple pole, if it is the same at all conjugate points and for all other ratios.
+
+    It is read off at one point of the other ratios, where ``numerator = residue * rest * q'`` modulo q needs
+    no division; whether it is the residue everywhere is for the caller to check.
+
+    Returns
+    -------
+    residue or None
+        An element that depends on eps alone; None where conjugate points have different ones.
+    """
+    ring, name = pole.ring, pole.name
+    _, rest = pole.order(value.denominator)
+    others = [n for n in ring.names if n not in ("eps", name)]
+    slope = pole.polynomial.derivative(ring.index(name))
+    for k in range(_SPECIAL):
+        point = {n: 3 + 7 * k + 11 * (i + 1) ** 2 for i, n in enumerate(others)}
+
+        def at(polynomial: Polynomial, point: dict[str, int] = point) -> Rational:
+            return _element(polynomial, ring).substitute(point)
+
+        special = at(pole.polynomial)
+        if degree(special.numerator, ring, name) != pole.degree:
+            continue
+        # it may be reducible, but there is nothing to divide by
+        here = place(special.numerator, ring, name)
+        above = here.reduce(at(value.numerator).numerator)
+        below = here.reduce(at(rest).numerator * at(slope).numerator)
+        first = next((i for i, entry in enumerate(below) if entry), None)
+        if first is None:
+            continue
+        if any(a * below[first] != b * above[first] for a, b in zip(above, below, strict=True)):
+            return None
+        return above[first] / below[first]
+    return None
+
+
+def _element(polynomial: Polynomial, ring: Ring) -> Rational:
+    return Rational(ring, polynomial, ring.context.constant(1))

@@ -21,7 +21,7 @@ from ibpred.epsform.blocks import (
     split_exponent,
 )
 from ibpred.epsform.matrices import Constants
-from ibpred.epsform.places import Place, places_of
+from ibpred.epsform.places import Place, constant_residue, places_of
 from ibpred.epsform.tags import tag_of
 from ibpred.exact.rational import Rational
 
@@ -37,25 +37,25 @@ def solve_single(values: Mapping[str, Rational]) -> Block | Finding:
     found: dict[str, tuple[Place, Fraction, Fraction]] = {}
     exponents: list[tuple[str, tuple[str, ...]]] = []
     for name, value in values.items():
-        ring, rest = value.ring, value
+        ring, total = value.ring, value.ring.zero
         for place in places_of([value], ring, name):
             order, _ = place.order(value.denominator)
             if order > 1:
                 return Finding(irregular(place.text()), tuple(exponents))
-            residue = place.divide(place.principal(value, 1), place.slope())
-            if any(residue[1:]):
+            residue = constant_residue(value, place)
+            if residue is None:
                 return Finding(conjugate(place.text()), tuple(exponents))
-            exponent = split_exponent(residue[0])
+            exponent = split_exponent(residue)
             if exponent is None:
-                return Finding(no_exponent(str(residue[0]), place.text()), tuple(exponents))
-            rest = rest - residue[0] * place.logarithmic()
+                return Finding(no_exponent(str(residue), place.text()), tuple(exponents))
+            total = total + residue * place.logarithmic()
             if place.text() in found:
                 continue
             found[place.text()] = (place, *exponent)
             exponents.append((place.text(), (exponent_text(linear(*exponent)),)))
             if place.moves and exponent[1]:
                 return Finding(moving(place.text()), tuple(exponents))
-        if rest:
+        if value.numerator * total.denominator != total.numerator * value.denominator:
             return Finding(irregular(f"{name} = infinity"), tuple(exponents))
     for place, a, _ in found.values():
         if a.denominator > 2:
