@@ -13,6 +13,7 @@ from ibpred.run.verification import verify_folder
 ROOT = Path(__file__).parents[2]
 FOLDERS = sorted(path for path in (ROOT / "solutions").iterdir() if path.is_dir())
 QUICK = 2_000  # sample points of the direct integration
+LONG = {"box-four-legs", "box-three-legs", "pentagon", "pentagon-one-leg"}
 
 
 def test_there_are_some() -> None:
@@ -28,7 +29,11 @@ def test_made_from_the_shipped_family(folder: Path) -> None:
     assert all(check["passed"] for check in evidence["checks"])
 
 
-@pytest.mark.parametrize("folder", FOLDERS, ids=lambda path: path.name)
+@pytest.mark.parametrize(
+    "folder",
+    [pytest.param(f, marks=pytest.mark.slow) if f.name in LONG else f for f in FOLDERS],
+    ids=lambda path: path.name,
+)
 def test_evidence_holds_again(folder: Path) -> None:
     failed = [check for check in verify_folder(folder, QUICK, SILENT) if not check.passed]
     assert not failed
