@@ -127,7 +127,8 @@ def completed_by_fits(chain: Chain, problem: BoundaryProblem, complaint: Boundar
     problem
         The problem.
     complaint
-        What `fix_constants` said of it; raised again where it is not about open constants.
+        What `fix_constants` said of it; raised again where it is not about open constants, or where functions
+        carry square roots, of whose words no values are at hand.
 
     Raises
     ------
@@ -135,7 +136,7 @@ def completed_by_fits(chain: Chain, problem: BoundaryProblem, complaint: Boundar
         If open constants have no values, or are not recognised; the message says which and why the
         conditions did not fix them.
     """
-    if not isinstance(complaint, OpenConstantsError):
+    if not isinstance(complaint, OpenConstantsError) or any(problem.form.tags):
         raise complaint
     chain.progress.stage("values for the constants that no condition fixes")
     form = problem.form

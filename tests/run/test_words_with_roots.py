@@ -1,0 +1,109 @@
+"""The words of solutions with square roots, integrated as the text says, against the continued functions."""
+
+from fractions import Fraction
+from pathlib import Path
+
+import pytest
+from mpmath import mp, mpf
+
+from ibpred.balls.context import precision
+from ibpred.exact.rational import Rational
+from ibpred.iterated.alphabet import RootLetter
+from ibpred.iterated.solution import solve_orders
+from ibpred.numerics.path import Target
+from ibpred.numerics.rooted_paths import evaluate_rooted
+from ibpred.progress import SILENT
+from ibpred.run.chain import Chain
+from ibpred.run.files import read_family_file
+from ibpred.run.store import Store
+
+FAMILIES = Path(__file__).parents[2] / "families"
+BITS = 160
+
+
+def number(value: Rational, point):
+    at = value.substitute({**point, "eps": Fraction(0)}).to_fraction()
+    return mpf(at.numerator) / at.denominator
+
+
+def polynomial(value: Rational, variable, point):
+    """A polynomial in one variable, the others fixed, as a function of a real number."""
+    fixed = {name: v for name, v in point.items() if name != variable}
+    seen = value.substitute(fixed)
+    place = seen.ring.index(variable)
+    terms = {int(e[place]): int(c) for e, c in seen.numerator.to_dict().items()}
+    below = int(seen.denominator.leading_coefficient())
+    return lambda t: sum(c * t**k for k, c in terms.items()) / mpf(below)
+
+
+def logarithm(letter, variable, point):
+    """``log`` of the letter less that of its leading term at zero, and ``dlog``, for real arguments."""
+    if not isinstance(letter, RootLetter):
+        p = polynomial(letter, variable, point)
+        start = p(mpf(0))
+        slope = polynomial(letter.derivative(variable), variable, point)
+        return lambda t: mp.log(p(t) / start if start else t), lambda t: slope(t) / p(t)
+    p, q = (polynomial(v, variable, point) for v in (letter.polynomial, letter.square))
+    dp, dq = (polynomial(v.derivative(variable), variable, point) for v in (letter.polynomial, letter.square))
+
+    norm = polynomial(letter.norm(), variable, point)
+
+    def value(t):
+        # without cancellations
+        r = mp.sqrt(q(t))
+        return norm(t) / (p(t) + r) ** 2 if p(t) > 0 else (p(t) - r) ** 2 / norm(t)
+
+    def kernel(t):
+        r = mp.sqrt(q(t))
+        return (2 * q(t) * dp(t) - p(t) * dq(t)) / (r * norm(t))
+
+    # the leading term c t^n at zero
+    tiny = mpf(10) ** -40
+    with mp.workdps(120):
+        n = mp.nint(mp.log(abs(value(10 * tiny) / value(tiny))) / mp.log(10))
+        leading = value(tiny) / tiny**n
+    return lambda t: mp.log(value(t) / leading), kernel
+
+
+def integral(word, level, point):
+    """A word of length at most two, by quadrature."""
+    if not word:
+        return mpf(1)
+    end = mpf(point[level.variable].numerator) / point[level.variable].denominator
+    last = logarithm(level.letters[word[-1]], level.variable, point)[0]
+    if len(word) == 1:
+        return last(end)
+    kernel = logarithm(level.letters[word[0]], level.variable, point)[1]
+    if word[0] == word[1]:
+        return last(end) ** 2 / 2
+    return mp.quad(lambda v: 2 * v * kernel(v * v) * last(v * v), [0, mp.sqrt(end) / 4, mp.sqrt(end)])
+
+
+@pytest.mark.parametrize("name", ["bubble-distinct-masses", "box-massive-loop"])
+def test_words_are_the_functions(name, tmp_path):
+    with Store(tmp_path) as store:
+        chain = Chain(read_family_file(FAMILIES / f"{name}.toml"), store, SILENT, 1)
+        form, boundary = chain.ratio_form(), chain.ratio_boundary(2)
+    solution = solve_orders(form, boundary.corner, boundary.constants, boundary.start + 2, boundary.start)
+    point = dict(zip(form.variables, (Fraction(1, 3), Fraction(1, 7)), strict=True))
+    with precision(BITS):
+        constants = tuple(tuple(c.ball(BITS) for c in vector) for vector in boundary.constants[:3])
+    targets = {ratio: Target(value, 0) for ratio, value in point.items()}
+    found = evaluate_rooted(form, boundary.corner, constants, targets, BITS)
+    with mp.workdps(40):
+        known = {}
+        for k, functions in enumerate(solution.orders):
+            for i, function in enumerate(functions):
+                total = mpf(0)
+                for product, constant in function:
+                    term = mpf(constant.ball(BITS).real.mid().str(40, radius=False))
+                    for word, level in zip(product, solution.levels, strict=True):
+                        key = word, level.variable
+                        if key not in known:
+                            known[key] = integral(word, level, point)
+                        term *= known[key]
+                    total += term
+                for index in form.tags[i]:
+                    total /= mp.sqrt(number(form.radicands[index], point))
+                value = mpf(found[k][i].real.mid().str(40, radius=False))
+                assert abs(total - value) < mpf(10) ** -15, (i, k, total, value)
