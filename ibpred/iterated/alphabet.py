@@ -115,12 +115,20 @@ def alphabet_of(form: EpsilonForm, corner: Sequence[str]) -> Alphabet:
     for letter, rows in zip(form.letters, form.matrices, strict=True):
         collected.add_even(letter, rational_matrix(rows))
     refuse_negative(form, corner)
-    for odd, rows in zip(form.odd_letters, form.odd_matrices, strict=True):
+    for odd, rows in zip(letters_with_roots(form), form.odd_matrices, strict=True):
+        collected.add_odd(odd.polynomial, odd.square, odd.roots, odd.factor, rational_matrix(rows), corner)
+    return collected.alphabet()
+
+
+def letters_with_roots(form: EpsilonForm) -> tuple[RootLetter, ...]:
+    """The odd letters of a form."""
+    found = []
+    for odd in form.odd_letters:
         square = form.ring.one
         for index in odd.roots:
             square = square * form.radicands[index]
-        collected.add_odd(odd.polynomial, square, odd.roots, form.ring.one, rational_matrix(rows), corner)
-    return collected.alphabet()
+        found.append(RootLetter(odd.polynomial, square, odd.roots, form.ring.one))
+    return tuple(found)
 
 
 def refuse_negative(form: EpsilonForm, corner: Sequence[str]) -> None:

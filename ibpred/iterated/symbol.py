@@ -14,11 +14,12 @@ from fractions import Fraction
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import InputError
 from ibpred.exact.rational import Rational
+from ibpred.iterated.alphabet import Letter, RootLetter, letters_with_roots
 from ibpred.iterated.constants import Constant
 from ibpred.iterated.solution import Function, Level
 from ibpred.iterated.words import shuffle
 
-Entries = tuple[Rational, ...]
+Entries = tuple[Letter, ...]
 Terms = dict[Entries, Fraction]
 
 
@@ -29,7 +30,8 @@ class Symbol:
     Attributes
     ----------
     terms
-        Letters (irreducible polynomials, up to constant factors) -> rational coefficient, without zeros.
+        Letters (irreducible polynomials, up to constant factors, and letters with roots) -> rational
+        coefficient, without zeros.
     """
 
     terms: Mapping[Entries, Fraction]
@@ -53,16 +55,16 @@ class Symbol:
                     _add(total, entries, a * b * count)
         return Symbol(total)
 
-    def letters(self) -> tuple[Rational, ...]:
+    def letters(self) -> tuple[Letter, ...]:
         """All letters that occur, in a fixed order."""
         return tuple(sorted({letter for entries in self.terms for letter in entries}, key=_size))
 
-    def first_entries(self) -> tuple[Rational, ...]:
+    def first_entries(self) -> tuple[Letter, ...]:
         """Letters at whose zeros the function has discontinuities on its first sheet."""
         return tuple(sorted({entries[0] for entries in self.terms if entries}, key=_size))
 
 
-def _size(letter: Rational) -> tuple[int, str]:
+def _size(letter: Letter) -> tuple[int, str]:
     text = str(letter)
     return len(text), text
 
@@ -99,7 +101,9 @@ def symbol_of_polylog(arguments: Sequence[Rational], x: Rational) -> Symbol:
     return Symbol(_polylog_terms(tuple(arguments), x, {}))
 
 
-def _polylog_terms(arguments: Entries, x: Rational, known: dict[Entries, Terms]) -> Terms:
+def _polylog_terms(
+    arguments: tuple[Rational, ...], x: Rational, known: dict[tuple[Rational, ...], Terms]
+) -> Terms:
     if not arguments:
         return {(): Fraction(1)}
     if arguments in known:
@@ -160,25 +164,20 @@ def symbols_of_form(form: EpsilonForm, leading: Sequence[Fraction], length: int)
         The rational constants with which the functions begin.
     length
         The order counted from there: the number of entries.
-
-    Raises
-    ------
-    InputError
-        If the form has square roots.
     """
-    if any(form.tags):
-        raise InputError("the odd letters of a form with square roots are no polynomials: no symbol here")
-    alphabet = [letters_of(letter) for letter in form.letters]
+    alphabet: list[tuple[tuple[Letter, int], ...]] = [tuple(letters_of(u).items()) for u in form.letters]
+    alphabet += [((letter, 1),) for letter in letters_with_roots(form)]
+    matrices = (*form.matrices, *form.odd_matrices)
     size = range(len(form.inverse))
     layer: list[Terms] = [{(): value} if value else {} for value in leading]
     for _ in range(length):
         grown: list[Terms] = [{} for _ in size]
-        for matrix, factors in zip(form.matrices, alphabet, strict=True):
+        for matrix, factors in zip(matrices, alphabet, strict=True):
             for i in size:
                 for j in size:
                     if matrix[i][j]:
                         for entries, value in layer[j].items():
-                            for letter, power in factors.items():
+                            for letter, power in factors:
                                 _add(grown[i], (*entries, letter), value * matrix[i][j] * power)
         layer = grown
     return tuple(Symbol(terms) for terms in layer)
@@ -194,27 +193,41 @@ def is_integrable(symbol: Symbol, variables: Sequence[str]) -> bool:
     variables
         The ratios on which its letters depend.
     """
-    forms: dict[tuple[Rational, Rational], tuple[Rational, ...]] = {}
-    sums: dict[tuple[int, Entries, Entries], list[Rational]] = {}
+    forms: dict[tuple[Letter, Letter], tuple[str, tuple[Rational, ...]]] = {}
+    sums: dict[tuple[int, Entries, Entries, str], list[Rational]] = {}
     for entries, value in symbol.terms.items():
         for i in range(len(entries) - 1):
             pair = entries[i], entries[i + 1]
             if pair not in forms:
                 forms[pair] = _wedge(*pair, variables)
-            key = i, entries[:i], entries[i + 2 :]
-            terms = [component * value for component in forms[pair]]
+            root, components = forms[pair]
+            key = i, entries[:i], entries[i + 2 :], root
+            terms = [component * value for component in components]
             held = sums.get(key)
             sums[key] = terms if held is None else [a + b for a, b in zip(held, terms, strict=True)]
     return not any(component for total in sums.values() for component in total)
 
 
-def _wedge(left: Rational, right: Rational, variables: Sequence[str]) -> tuple[Rational, ...]:
-    """Components of ``dlog left ^ dlog right``."""
-    a = [left.derivative(name) / left for name in variables]
-    b = [right.derivative(name) / right for name in variables]
-    return tuple(
-        a[i] * b[j] - a[j] * b[i] for i in range(len(variables)) for j in range(i + 1, len(variables))
+def _wedge(left: Letter, right: Letter, variables: Sequence[str]) -> tuple[str, tuple[Rational, ...]]:
+    """Components of ``dlog left ^ dlog right``, a root in front of them left out, and that root's square."""
+    a, first = _logarithmic(left, variables)
+    b, second = _logarithmic(right, variables)
+    one = first.ring.context.constant(1)
+    # the root of a product: what both hold comes out of it
+    common = first.ring.fraction(first.numerator.gcd(second.numerator), one)
+    components = tuple(
+        (a[i] * b[j] - a[j] * b[i]) * common
+        for i in range(len(variables))
+        for j in range(i + 1, len(variables))
     )
+    return str(first * second / common**2), components
+
+
+def _logarithmic(letter: Letter, variables: Sequence[str]) -> tuple[list[Rational], Rational]:
+    """dlog without its root, and the root's square."""
+    if isinstance(letter, RootLetter):
+        return [letter.kernel(name) for name in variables], letter.square
+    return [letter.derivative(name) / letter for name in variables], letter.ring.one
 
 
 def _rational_part(constant: Constant) -> Fraction:

@@ -20,7 +20,7 @@ from ibpred.balls.context import Ball, complex_ball, precision
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import PointError, PrecisionError
 from ibpred.exact.rational import Rational, ring
-from ibpred.iterated.alphabet import Alphabet, alphabet_of, limit, lowest
+from ibpred.iterated.alphabet import Alphabet, alphabet_of, letters_with_roots, limit, lowest
 from ibpred.numerics.canonical import Orders
 from ibpred.numerics.centre import Place
 from ibpred.numerics.crossings import approximate_roots, around, crossings
@@ -143,8 +143,8 @@ def singular_polynomials(form: EpsilonForm) -> tuple[Rational, ...]:
     """Irreducible polynomials at whose zeros a letter or a root is singular."""
     found: list[Rational] = list(form.letters)
     values = list(form.radicands)
-    for odd in alphabet_of_odd(form):
-        values += [1 / kernel for kernel in odd if kernel]
+    for odd in letters_with_roots(form):
+        values += [1 / kernel for name in form.variables if (kernel := odd.kernel(name))]
     one = form.ring.context.constant(1)
     for value in values:
         for polynomial, power in value.factors()[1]:
@@ -152,24 +152,6 @@ def singular_polynomials(form: EpsilonForm) -> tuple[Rational, ...]:
             if power > 0 and factor not in found and -factor not in found:
                 found.append(factor)
     return tuple(found)
-
-
-def alphabet_of_odd(form: EpsilonForm) -> list[list[Rational]]:
-    """For each odd letter its dlog in every ratio, without the root."""
-    found = []
-    for odd in form.odd_letters:
-        square = form.ring.one
-        for index in odd.roots:
-            square = square * form.radicands[index]
-        letter = odd.polynomial
-        below = square * (letter * letter - square)
-        found.append(
-            [
-                (square * letter.derivative(name) * 2 - letter * square.derivative(name)) / below
-                for name in form.variables
-            ]
-        )
-    return found
 
 
 def refuse_zero(letters: Sequence[Rational], values: Mapping[str, Fraction]) -> None:

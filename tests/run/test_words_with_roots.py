@@ -10,6 +10,7 @@ from ibpred.balls.context import precision
 from ibpred.exact.rational import Rational
 from ibpred.iterated.alphabet import RootLetter
 from ibpred.iterated.solution import solve_orders
+from ibpred.iterated.symbol import Symbol, is_integrable, symbols_of_form
 from ibpred.numerics.path import Target
 from ibpred.numerics.rooted_paths import evaluate_rooted
 from ibpred.progress import SILENT
@@ -37,12 +38,16 @@ def polynomial(value: Rational, variable, point):
 
 
 def logarithm(letter, variable, point):
-    """``log`` of the letter less that of its leading term at zero, and ``dlog``, for real arguments."""
+    """``log`` of the letter less that of its leading coefficient at zero, ``dlog``, the order at zero."""
     if not isinstance(letter, RootLetter):
         p = polynomial(letter, variable, point)
         start = p(mpf(0))
         slope = polynomial(letter.derivative(variable), variable, point)
-        return lambda t: mp.log(p(t) / start if start else t), lambda t: slope(t) / p(t)
+        return (
+            lambda t: mp.log(p(t) / start if start else t),
+            lambda t: slope(t) / p(t),
+            0 if start else 1,
+        )
     p, q = (polynomial(v, variable, point) for v in (letter.polynomial, letter.square))
     dp, dq = (polynomial(v.derivative(variable), variable, point) for v in (letter.polynomial, letter.square))
 
@@ -62,7 +67,7 @@ def logarithm(letter, variable, point):
     with mp.workdps(120):
         n = mp.nint(mp.log(abs(value(10 * tiny) / value(tiny))) / mp.log(10))
         leading = value(tiny) / tiny**n
-    return lambda t: mp.log(value(t) / leading), kernel
+    return lambda t: mp.log(value(t) / leading), kernel, int(n)
 
 
 def integral(word, level, point):
@@ -70,13 +75,36 @@ def integral(word, level, point):
     if not word:
         return mpf(1)
     end = mpf(point[level.variable].numerator) / point[level.variable].denominator
-    last = logarithm(level.letters[word[-1]], level.variable, point)[0]
+    last, _, m = logarithm(level.letters[word[-1]], level.variable, point)
     if len(word) == 1:
         return last(end)
-    kernel = logarithm(level.letters[word[0]], level.variable, point)[1]
     if word[0] == word[1]:
         return last(end) ** 2 / 2
-    return mp.quad(lambda v: 2 * v * kernel(v * v) * last(v * v), [0, mp.sqrt(end) / 4, mp.sqrt(end)])
+    _, kernel, n = logarithm(level.letters[word[0]], level.variable, point)
+
+    def integrand(v):
+        # t = v^2; the integral of log(t)/t is log(t)^2/2
+        return 2 * v * (kernel(v * v) * last(v * v) - n * m * mp.log(v * v) / (v * v))
+
+    return mp.quad(integrand, [0, mp.sqrt(end) / 4, mp.sqrt(end)]) + n * m * mp.log(end) ** 2 / 2
+
+
+def test_symbols_with_roots_are_integrable(tmp_path):
+    with Store(tmp_path) as store:
+        chain = Chain(read_family_file(FAMILIES / "box-massive-loop.toml"), store, SILENT, 1)
+        form, boundary = chain.ratio_form(), chain.ratio_boundary(0)
+    leading = [c.to_fraction() for c in boundary.constants[0]]
+    symbols = symbols_of_form(form, leading, 3)
+    for symbol in symbols[1:]:
+        assert symbol.terms
+        assert is_integrable(symbol, form.variables)
+    # discontinuities begin at the thresholds in s and t only
+    firsts = {entry.square for symbol in symbols[1:] for entry in symbol.first_entries()}
+    x, y = (form.ring.variable(name) for name in form.variables)
+    assert firsts == {x * (x + 4), y * (y + 4)}
+    broken = dict(symbols[-1].terms)
+    del broken[next(iter(broken))]
+    assert not is_integrable(Symbol(broken), form.variables)
 
 
 @pytest.mark.parametrize("name", ["bubble-distinct-masses", "box-massive-loop"])
