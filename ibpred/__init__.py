@@ -10,8 +10,8 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from ibpred.run.api import Family, load
-    from ibpred.run.together import Families, load_all
+    from ibpred.run.python.families import Families, load_all
+    from ibpred.run.python.family import Family, load
 
 __version__ = "0.1.0"
 
@@ -21,11 +21,11 @@ __all__ = ["Families", "Family", "__version__", "load", "load_all"]
 def __getattr__(name: str) -> Any:
     # the stages are imported when first used, so that `import ibpred` stays light
     if name in ("Family", "load"):
-        from ibpred.run import api
+        from ibpred.run.python import family
 
-        return getattr(api, name)
+        return getattr(family, name)
     if name in ("Families", "load_all"):
-        from ibpred.run import together
+        from ibpred.run.python import families
 
-        return getattr(together, name)
+        return getattr(families, name)
     raise AttributeError(f"module 'ibpred' has no attribute {name!r}")

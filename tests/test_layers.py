@@ -5,6 +5,7 @@ from __future__ import annotations
 import ast
 import subprocess
 import sys
+from graphlib import TopologicalSorter
 from pathlib import Path
 
 import pytest
@@ -32,6 +33,7 @@ ORDER = [
 ]
 RANK = {room: i for i, rooms in enumerate(ORDER) for room in rooms}
 FILES = sorted(PACKAGE.rglob("*.py"))
+FACE = PACKAGE / "__init__.py"
 
 
 def room_of(module: str) -> str:
@@ -63,6 +65,13 @@ def test_imports_go_one_way(path: Path) -> None:
         same = other == room
         ground = RANK[other] == RANK[room] == 0
         assert same or ground or RANK[other] < RANK[room], f"{room} must not import {name}"
+
+
+def test_no_files_import_each_other_in_a_circle() -> None:
+    names = {".".join(("ibpred", *p.relative_to(PACKAGE).with_suffix("").parts)): p for p in FILES}
+    # the package's face hands names on lazily
+    graph = {name: imported(path) & names.keys() for name, path in names.items() if path != FACE}
+    TopologicalSorter(graph).prepare()  # raises CycleError, which names the circle
 
 
 @pytest.mark.parametrize("path", FILES, ids=lambda p: str(p.relative_to(PACKAGE)))

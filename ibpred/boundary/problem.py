@@ -8,6 +8,7 @@ from types import MappingProxyType
 
 from ibpred.boundary.expansion import ClosedForm, expand, on_line
 from ibpred.boundary.explore import BoundaryProblem
+from ibpred.boundary.fix import Boundary
 from ibpred.boundary.gamma import gamma_form
 from ibpred.boundary.regions import parametric_family
 from ibpred.boundary.sheets import Behaviours, behaviours
@@ -232,3 +233,10 @@ def _behaviours(
 def _is_ratio(value: Rational, variable: str) -> bool:
     """Whether an invariant is of first degree in the variable of the form."""
     return value.is_polynomial() and variable not in value.derivative(variable).variables()
+
+
+def boundary_of_series(exact: Sequence[Series]) -> Boundary:
+    """The boundary constants of a family without a ratio: the coefficients of its masters."""
+    start, end = min(s.start for s in exact), min(s.end for s in exact)
+    constants = tuple(tuple(s.coefficient(k) for s in exact) for k in range(start, end + 1))
+    return Boundary(start, constants, (), ())

@@ -19,10 +19,10 @@ from ibpred.exact.grammar import parse_number
 
 if TYPE_CHECKING:
     from ibpred.progress import Progress
-    from ibpred.run.chain import Chain
-    from ibpred.run.joint import Joint, NamedPowers
-    from ibpred.run.store import Store
-    from ibpred.run.workers import Workers
+    from ibpred.run.chain.chain import Chain
+    from ibpred.run.chain.joint import Joint, NamedPowers
+    from ibpred.run.storage.store import Store
+    from ibpred.run.workers.local import Workers
 
 C = TypeVar("C", bound=Callable[..., Any])
 
@@ -116,9 +116,9 @@ def _with_options(command: C, argument: Callable[[C], C]) -> C:
 @contextmanager
 def open_chain(shared: Shared) -> Iterator[Chain]:
     """The chain of the family file, its store open and progress shown on standard error."""
-    from ibpred.run.budget import deadline, told
-    from ibpred.run.chain import Chain
-    from ibpred.run.files import read_family_file
+    from ibpred.run.chain.chain import Chain
+    from ibpred.run.chain.deadline import deadline, told
+    from ibpred.run.storage.files import read_family_file
 
     definition = read_family_file(shared.file)
     preferred = tuple(_own_powers(text, definition.name) for text in shared.masters)
@@ -165,9 +165,9 @@ def _own_powers(text: str, family: str) -> tuple[int, ...]:
 @contextmanager
 def open_joint(shared: Shared) -> Iterator[Joint]:
     """The families of all files together, likewise."""
-    from ibpred.run.budget import deadline, told
-    from ibpred.run.files import read_family_file
-    from ibpred.run.joint import Joint
+    from ibpred.run.chain.deadline import deadline, told
+    from ibpred.run.chain.joint import Joint
+    from ibpred.run.storage.files import read_family_file
 
     definitions = [read_family_file(file) for file in (shared.file, *shared.others)]
     with _opened(shared, definitions[0].name) as (store, progress, workers):
@@ -181,8 +181,8 @@ def open_joint(shared: Shared) -> Iterator[Joint]:
 def _opened(shared: Shared, name: str) -> Iterator[tuple[Store, Progress, Workers]]:
     from ibpred.cli.progress import terminal_progress
     from ibpred.progress import SILENT
-    from ibpred.run.store import Store
-    from ibpred.run.workers import Threads
+    from ibpred.run.storage.store import Store
+    from ibpred.run.workers.local import Threads
 
     with Store(shared.work or shared.file.parent / ".ibpred" / name) as store:
         workers: Workers = _cluster(shared.cluster) if shared.cluster else Threads(shared.workers)
@@ -197,7 +197,7 @@ def _opened(shared: Shared, name: str) -> Iterator[tuple[Store, Progress, Worker
 
 
 def _cluster(address: str) -> Workers:
-    from ibpred.run.cluster import Cluster
+    from ibpred.run.workers.cluster import Cluster
 
     return Cluster(address)
 

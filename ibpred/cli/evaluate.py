@@ -23,9 +23,9 @@ from ibpred.exact.grammar import parse_number
 
 if TYPE_CHECKING:
     from ibpred.family.definition import Powers
-    from ibpred.run.chain import Chain
-    from ibpred.run.expansions import Approach
-    from ibpred.run.grids import Axis
+    from ibpred.run.chain.chain import Chain
+    from ibpred.run.values.expansions import Approach
+    from ibpred.run.values.grids import Axis
 
 
 @click.command()
@@ -96,7 +96,7 @@ def evaluate(
     found = []
     for family in each_family(shared):
         with open_chain(family) as chain:
-            values = chain.evaluate(point, wanted, order, digits)
+            values = evaluate(chain, point, wanted, order, digits)
             found.append(values_data(chain.definition, point, digits, values))
     emit_each(shared, found, values_text)
 
@@ -109,7 +109,7 @@ def parse_axis(text: str) -> Axis:
     PointError
         If it is none.
     """
-    from ibpred.run.grids import Axis
+    from ibpred.run.values.grids import Axis
 
     name, equals, rest = text.partition("=")
     parts = rest.split(":")
@@ -130,7 +130,7 @@ def parse_approach(text: str) -> Approach:
     PointError
         If it is none.
     """
-    from ibpred.run.expansions import Approach
+    from ibpred.run.values.expansions import Approach
 
     name, equals, rest = text.partition("=")
     rest = rest.strip()
@@ -152,7 +152,7 @@ def _near(
     digits: int,
 ) -> None:
     from ibpred.report.expansions import expansion_data, expansion_text
-    from ibpred.run.expansions import expand
+    from ibpred.run.values.expansions import expand
 
     goal = parse_approach(approach)
     found = expand(chain, point, goal, wanted, order, terms, digits)
@@ -180,8 +180,8 @@ def _on_grid(
 ) -> None:
     from ibpred.report.grids import grid_csv, grid_data, grid_text
     from ibpred.report.plots import check_plot, curve_figure
-    from ibpred.run.files import write_file
-    from ibpred.run.grids import evaluate_grid
+    from ibpred.run.storage.files import write_file
+    from ibpred.run.values.grids import evaluate_grid
 
     kind = Path(plot_file).suffix.lstrip(".").lower() if plot_file else ""
     if plot_file:

@@ -30,8 +30,8 @@ def export(shared: Shared, target: str, output: str | None, digits: int, order: 
     Takes a family file, or a folder that `run` wrote (then nothing is computed).
     """
     from ibpred.report.export.formats import Format, exported
-    from ibpred.run.exports import chain_material, folder_material
-    from ibpred.run.files import write_file
+    from ibpred.run.folder.exports import chain_material, folder_material
+    from ibpred.run.storage.files import write_file
 
     if shared.file.is_dir():
         material = folder_material(shared.file)

@@ -21,7 +21,7 @@ def inspect(shared: Shared, picture: str | None) -> None:
     from ibpred.report.drawing import sheet_svg
     from ibpred.report.json_tables import inspect_data
     from ibpred.report.text import inspect_text
-    from ibpred.run.files import write_file
+    from ibpred.run.storage.files import write_file
 
     with open_chain(shared) as chain:
         analysis = chain.analysis()

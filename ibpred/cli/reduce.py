@@ -14,8 +14,8 @@ from ibpred.errors import InputError, OutOfTimeError
 if TYPE_CHECKING:
     from ibpred.identities.quantities import Integral
     from ibpred.reduction.sums import Sum
-    from ibpred.run.joint import Joint
-    from ibpred.run.rows import TableRows
+    from ibpred.run.chain.joint import Joint
+    from ibpred.run.storage.rows import TableRows
 
 _FORMATS = (".jsonl", ".csv")
 
@@ -138,7 +138,7 @@ def _target(output: str | None) -> Path | None:
     path = Path(output)
     if path.suffix not in _FORMATS:
         raise InputError(f"--output {output}: a table is written as {' or '.join(_FORMATS)}")
-    from ibpred.run.files import check_writable
+    from ibpred.run.storage.files import check_writable
 
     check_writable(path.parent)
     return path
@@ -148,7 +148,7 @@ def _write(shared: Shared, path: Path, entries: Iterator[dict[str, Any]], severa
     """Write a table row by row."""
     from ibpred.report.json_common import plain_entry
     from ibpred.report.tables import csv_lines, json_lines
-    from ibpred.run.files import write_pieces
+    from ibpred.run.storage.files import write_pieces
 
     count = 0
 
@@ -177,7 +177,7 @@ def _check(joint: Joint, rows: TableRows, wanted: Sequence[Integral], count: int
 
 def _read_sums(paths: Sequence[Path], joint: Joint) -> Mapping[str, Sum]:
     """Sums from files, each under its file's name."""
-    from ibpred.run.amplitudes import sum_of_text
+    from ibpred.run.python.amplitudes import sum_of_text
 
     sums: dict[str, Sum] = {}
     for path in paths:

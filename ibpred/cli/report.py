@@ -26,8 +26,8 @@ def report(shared: Shared, output: str | None, digits: int) -> None:
     Takes a folder that `run` wrote (then nothing is computed), or a family file, whose chain is run.
     """
     from ibpred.errors import OutOfTimeError
-    from ibpred.run.dossier import read_dossier
-    from ibpred.run.whole import run_whole
+    from ibpred.run.folder.dossier import read_dossier
+    from ibpred.run.folder.whole import run_whole
 
     if shared.file.is_dir():
         _write(shared, read_dossier(shared.file), Path(output) if output else shared.file)
@@ -43,7 +43,7 @@ def report(shared: Shared, output: str | None, digits: int) -> None:
 def _write(shared: Shared, dossier: Dossier, target: Path) -> None:
     from ibpred.report.article import latex_article
     from ibpred.report.page.build import html_page
-    from ibpred.run.files import check_writable, write_file
+    from ibpred.run.storage.files import check_writable, write_file
 
     check_writable(target)
     name = dossier.material.family.name

@@ -16,7 +16,7 @@ from ibpred.cli.common import Shared, emit, open_chain, shared_options
 def run(shared: Shared, output: str | None, digits: int) -> None:
     """Everything, from the family file to digits, into one folder."""
     from ibpred.report.text import run_text
-    from ibpred.run.whole import run_whole
+    from ibpred.run.folder.whole import run_whole
 
     with open_chain(shared) as chain:
         folder = Path(output) if output else Path("solutions") / chain.definition.name

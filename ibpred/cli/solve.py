@@ -22,7 +22,7 @@ def solve(shared: Shared, weight: int | None, variables: str | None) -> None:
     """
     from ibpred.report.json_tables import solution_data
     from ibpred.report.text import solution_text
-    from ibpred.run.budget import solved_in_time
+    from ibpred.run.constants.solved import solved_in_time
 
     with open_chain(shared) as chain:
         highest = chain.order_of_weight(2 * len(chain.definition.loops) if weight is None else weight)

@@ -33,8 +33,8 @@ def verify(folder: str, as_json: bool, quiet: bool, samples: int, seconds: float
     from ibpred.errors import OutOfTimeError, UnfinishedError
     from ibpred.progress import SILENT, Limited
     from ibpred.report.text import checks_text
-    from ibpred.run.budget import deadline
-    from ibpred.run.verification import checks_of
+    from ibpred.run.chain.deadline import deadline
+    from ibpred.run.folder.verification import checks_of
 
     checks, over = [], None
     with nullcontext(SILENT) if quiet else terminal_progress() as progress:

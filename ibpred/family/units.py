@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from fractions import Fraction
 
 from ibpred.errors import InputError
 from ibpred.exact.rational import Polynomial, Rational
-from ibpred.family.definition import FamilyDefinition
+from ibpred.family.definition import FamilyDefinition, Powers
 
 
 def integral_dimension(family: FamilyDefinition, powers: Sequence[int]) -> tuple[int, int]:
@@ -121,3 +122,12 @@ def set_unit(value: Rational, family: FamilyDefinition) -> Rational:
     images = {family.unit: target.one}
     images |= {name: target.variable(name) for name in value.ring.names if name != family.unit}
     return value.substitute(images)
+
+
+def unit_exponent(family: FamilyDefinition, powers: Powers) -> tuple[Fraction, Fraction]:
+    """The mass dimension of an integral over that of the unit, as (A, B) of A + B eps."""
+    constant, slope = integral_dimension(family, powers)
+    if family.unit is None:
+        return Fraction(0), Fraction(0)
+    size = next(i.dimension for i in family.invariants if i.name == family.unit)
+    return Fraction(constant, size), Fraction(slope, size)

@@ -10,8 +10,10 @@ from mpmath import euler, exp, gamma, hyp2f1, mp, mpf, quad, taylor
 
 from ibpred.iterated.solution_values import solution_values
 from ibpred.progress import Silent
-from ibpred.run.chain import Chain
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.constants.solved import completed_boundary, solution
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
 
 
 def chain_of(name: str, store: Store) -> Chain:
@@ -23,12 +25,12 @@ def test_the_planar_double_box_with_one_leg(tmp_path: Path) -> None:
     """Eighteen masters of three scales: all constants derived, real on both sides of every wall."""
     with Store(tmp_path) as store:
         chain = chain_of("planar-double-box-one-leg", store)
-        boundary, solution = chain.boundary(4), chain.solution(4)
+        boundary, solved = chain.boundary(4), solution(chain, 4)
     assert not boundary.fitted
     assert sum(item.confirming for item in boundary.evidence) > 1000
     values = []
     for x, y in (("1/3", "1/5"), ("1/3", "1/2"), ("2", "7/2")):
-        values.append(solution_values(solution, {"x": Fraction(x), "y": Fraction(y)}, 12))
+        values.append(solution_values(solved, {"x": Fraction(x), "y": Fraction(y)}, 12))
         for row in values[-1]:
             for value in row:
                 assert value.imag.contains(0)
@@ -40,7 +42,7 @@ def test_the_planar_double_box_with_one_leg(tmp_path: Path) -> None:
 def test_the_crossed_vertex_is_fitted(tmp_path: Path) -> None:
     """Gonsalves, Phys. Rev. D 28 (1983) 1542: 1, 0, -pi^2, -83 zeta3/3, -59 pi^4/120 (from memory)."""
     with Store(tmp_path) as store:
-        boundary = chain_of("crossed-vertex", store).completed_boundary(0)
+        boundary = completed_boundary(chain_of("crossed-vertex", store), 0)
     row = len(boundary.constants[0]) - 1
     shown = [str(vector[row]) for vector in boundary.constants]
     assert boundary.start == -4
@@ -58,7 +60,7 @@ def test_the_sunrise_with_one_mass(tmp_path: Path) -> None:
         chain = chain_of("sunrise-one-mass", store)
         boundary, value = (
             chain.boundary(4),
-            chain.evaluate({"s": Fraction(-1, 3), "m2": Fraction(1)}, (), 1, 15),
+            evaluate(chain, {"s": Fraction(-1, 3), "m2": Fraction(1)}, (), 1, 15),
         )
     assert not boundary.fitted
     assert sum(item.confirming for item in boundary.evidence) > 30
@@ -83,7 +85,7 @@ def test_the_cusp_of_two_static_lines(tmp_path: Path) -> None:
     with Store(tmp_path) as store:
         chain = chain_of("static-quark-cusp", store)
         boundary = chain.boundary(2)
-        value = chain.evaluate({"w": Fraction(-1, 2), "c": Fraction(2)}, (), 1, 15)
+        value = evaluate(chain, {"w": Fraction(-1, 2), "c": Fraction(2)}, (), 1, 15)
     assert not boundary.fitted
     masters = {v.powers: v.epsilon for v in value}
     with mp.workdps(30):

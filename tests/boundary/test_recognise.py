@@ -32,8 +32,10 @@ from ibpred.iterated.series import Series
 from ibpred.iterated.solution import solve_orders
 from ibpred.iterated.solution_values import solution_values
 from ibpred.progress import Silent
-from ibpred.run.chain import Chain
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.constants.solved import completed_boundary
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
 
 rationals = st.fractions(min_value=-30, max_value=30, max_denominator=120)
 
@@ -81,7 +83,7 @@ def test_three_equal_masses_in_the_vacuum(tmp_path: Path) -> None:
     ``-3/2 Gamma(1+e)^2 (1/e^2 + 3/e + 7 - 4/sqrt3 Cl2(pi/3)) + O(e)`` (from memory).
     """
     with Store(tmp_path) as store:
-        boundary = Chain(family("vacuum-one-mass"), store, Silent(), 1).completed_boundary(0)
+        boundary = completed_boundary(Chain(family("vacuum-one-mass"), store, Silent(), 1), 0)
     assert boundary.start == -2
     assert [str(vector[1]) for vector in boundary.constants] == [
         "-3/2",
@@ -98,7 +100,7 @@ def test_the_vacuum_graph_with_distinct_masses_at_equal_ones(tmp_path: Path) -> 
         chain = Chain(family("vacuum-distinct-masses"), store, Silent(), 1)
         assert not chain.boundary(4).fitted
         point = {name: Fraction(1) for name in ("m1sq", "m2sq", "m3sq")}
-        value = chain.evaluate(point, ((1, 1, 1),), 0, 30)[0]
+        value = evaluate(chain, point, ((1, 1, 1),), 0, 30)[0]
     assert value.certified
     exact = Constant.read("2*sqrt3*clausen2 - pi^2/4 - 21/2").ball(200)
     assert ball_of_decimal(value.epsilon[0], 200).overlaps(exact)

@@ -16,9 +16,11 @@ from ibpred.boundary.regions import behaviour, parametric_family
 from ibpred.boundary.thresholds import Monomials, threshold_exponents
 from ibpred.exact.rational import Rational
 from ibpred.progress import Silent
-from ibpred.run.chain import Chain
-from ibpred.run.known_points import auxiliary_at
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.constants.known_points import auxiliary_at
+from ibpred.run.constants.solved import solution
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
 
 HARD = (Fraction(0), Fraction(0))
 
@@ -109,10 +111,10 @@ def test_the_vertex_on_a_massive_line_needs_its_threshold(tmp_path: Path) -> Non
     """Two-loop vertex, letters x, 1+x, 1-x (Bonciani, Mastrolia, Remiddi, hep-ph/0301170): no fit."""
     with Store(tmp_path) as store:
         chain = Chain(family("planar-vertex-massive-fermion"), store, Silent(), 1)
-        boundary, solution = chain.boundary(4), chain.solution(4)
+        boundary, solved = chain.boundary(4), solution(chain, 4)
     assert not boundary.fitted
     assert boundary.start == 0
-    assert solution.is_pure()
+    assert solved.is_pure()
     threshold = [e for e in boundary.evidence if e.condition == "no exponent 2*eps at w = -1"]
     assert sum(e.independent for e in threshold) > 0
     assert sum(e.confirming for e in boundary.evidence) > 1000
@@ -124,7 +126,7 @@ def test_the_vertex_on_a_massive_line_against_the_auxiliary_mass(tmp_path: Path)
     point = {"s": Fraction(-1, 3), "m2": Fraction(1)}
     with Store(tmp_path) as store:
         chain = Chain(family("planar-vertex-massive-fermion"), store, Silent(), 1)
-        solved = chain.evaluate(point, (), 0, 20)
+        solved = evaluate(chain, point, (), 0, 20)
         others = auxiliary_at(chain, point, 0, 20)
     for ours, theirs in zip(solved, others, strict=True):
         assert ours.certified

@@ -41,8 +41,8 @@ def test_a_finished_store_answers_without_identities(call, monkeypatch: pytest.M
         raise AssertionError("nothing is to be computed")
 
     for name in ("analyse_together", "reduce_together", "family_identities"):
-        monkeypatch.setattr(f"ibpred.run.joint.{name}", refuse)
-    monkeypatch.setattr("ibpred.run.chain.analyse", refuse)
+        monkeypatch.setattr(f"ibpred.run.chain.joint.{name}", refuse)
+    monkeypatch.setattr("ibpred.run.chain.chain.analyse", refuse)
     for powers in [(2, 1, 1, 1), (1, 2, 1, -1)]:
         code, out, _ = call("--integral", ",".join(map(str, powers)), "--json", "--quiet")
         assert code == 0
@@ -50,7 +50,7 @@ def test_a_finished_store_answers_without_identities(call, monkeypatch: pytest.M
 
 
 def test_only_what_is_missing_is_reduced(call, monkeypatch: pytest.MonkeyPatch) -> None:
-    import ibpred.run.joint as joint
+    import ibpred.run.chain.joint as joint
 
     asked = []
     real = joint.reduce_together
@@ -171,7 +171,7 @@ def test_wrong_sums(call, tmp_path: Path, content: str, message: str) -> None:
 def test_wrong_options(call, monkeypatch: pytest.MonkeyPatch, options, message: str) -> None:
     if "--cluster" in options:
         pytest.importorskip("distributed")
-        monkeypatch.setattr("ibpred.run.cluster._SECONDS_TO_ANSWER", 1)
+        monkeypatch.setattr("ibpred.run.workers.cluster._SECONDS_TO_ANSWER", 1)
     code, _, err = call(*options, "--quiet")
     assert code == 2
     assert message in err

@@ -32,9 +32,9 @@ from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes
 from ibpred.exact.rational import Rational
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
 
 PRIMES = first_primes(20)
 

@@ -13,9 +13,10 @@ from ibpred.iterated.fibration import fibration_basis
 from ibpred.iterated.solution import Function, Solution
 from ibpred.iterated.words import shuffle
 from ibpred.progress import Silent
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.constants.solved import solution
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
 
 FAMILIES = Path(__file__).parents[2] / "families"
 
@@ -56,10 +57,10 @@ def test_two_corners_agree(name: str, side: int, tmp_path: Path) -> None:
     """Exactly, constants included; what the words pick up at letters on their paths cancels."""
     with Store(tmp_path) as store:
         chain = Chain(read_family_file(FAMILIES / f"{name}.toml"), store, Silent(), 1)
-        first = chain.solution(4)
+        first = solution(chain, 4)
         before = tuple(level.variable for level in first.levels)
         after = before[::-1]
-        second = chain.solution(4, after)
+        second = solution(chain, 4, after)
     assert tuple(level.variable for level in second.levels) == after
     field = first.levels[0].letters[0].ring
     known: dict[object, Words] = {}
@@ -83,8 +84,8 @@ def test_orders_that_do_not_fit(tmp_path: Path) -> None:
     with Store(tmp_path / "a") as store:
         chain = Chain(read_family_file(FAMILIES / "box-one-leg.toml"), store, Silent(), 1)
         with pytest.raises(InputError, match="does not name the ratios x, y"):
-            chain.solution(0, ("x",))
+            solution(chain, 0, ("x",))
     with Store(tmp_path / "b") as store:
         chain = Chain(read_family_file(FAMILIES / "bubble.toml"), store, Silent(), 1)
         with pytest.raises(InputError, match="no ratio"):
-            chain.solution(0, ("x",))
+            solution(chain, 0, ("x",))

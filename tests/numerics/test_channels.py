@@ -13,9 +13,10 @@ from ibpred.numerics.channels import Channel, channel_of, scattering_point
 from ibpred.numerics.path import Target
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
 
 FAMILY = Path(__file__).parents[2] / "families" / "massless-box.toml"
 F = Fraction
@@ -81,7 +82,7 @@ def test_every_region_as_by_i0_from_the_euclidean_one(chains, s, t, derived):
     usual, blind = chains
     point = {"s": F(s), "t": F(t)}
     for expected, value in zip(
-        usual.evaluate(point, (), 1, 20), blind.evaluate(point, (), 1, 20), strict=True
+        evaluate(usual, point, (), 1, 20), evaluate(blind, point, (), 1, 20), strict=True
     ):
         assert expected.certified
         assert value.certified == derived
@@ -105,7 +106,7 @@ def test_the_region_at_the_corner_of_two_ratios(tmp_path):
     inside = {"s": F(2), "t": F(-1, 3), "p4sq": F(-1, 7)}
     with Store(tmp_path / "one") as one, Store(tmp_path / "other") as other:
         usual, blind = Chain(family, one, SILENT, 1), OffShellScattering(family, other, SILENT, 1)
-        expected, found = (chain.evaluate(inside, (), 0, 20) for chain in (usual, blind))
+        expected, found = (evaluate(chain, inside, (), 0, 20) for chain in (usual, blind))
     for left, right in zip(expected, found, strict=True):
         assert right.route is Route.EPSILON_FORM
         for power in set(left.epsilon) | set(right.epsilon):

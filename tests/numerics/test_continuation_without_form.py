@@ -20,11 +20,12 @@ from ibpred.numerics.crossings import around, crossings
 from ibpred.numerics.expanded import expanded_system, in_epsilon, regular_shifts
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.continued_values import continued_values
-from ibpred.run.files import read_family_file
-from ibpred.run.known_points import KnownPoint, keep_point, known_points
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.constants.known_points import KnownPoint, keep_point, known_points
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.continued_values import continued_values
+from ibpred.run.values.evaluate import evaluate
 
 FAMILIES = Path(__file__).parents[2] / "families"
 F = Fraction
@@ -97,7 +98,7 @@ def chain_of(name, store):
 
 
 def known(chain, point, order, digits):
-    values = chain.evaluate(point, (), order, digits)
+    values = evaluate(chain, point, (), order, digits)
     keep_point(chain, KnownPoint(point, order, digits, tuple(value.epsilon for value in values)))
 
 
@@ -120,7 +121,7 @@ def test_all_regions_from_one_euclidean_point(name, start, points, tmp_path):
         for point in points:
             place = dict(zip(names, map(F, point), strict=True))
             (found,) = continued_values(chain, [place], (), 1, 30)
-            for value, other in zip(found, chain.evaluate(place, (), 1, 35), strict=True):
+            for value, other in zip(found, evaluate(chain, place, (), 1, 35), strict=True):
                 assert value.route is Route.CONTINUATION
                 assert not value.certified
                 assert value.digits() is None or value.digits() >= 30
@@ -137,7 +138,7 @@ def test_integrals_are_reduced_and_expanded(tmp_path):
         chain = chain_of("massless-box", store)
         known(chain, {"s": F(-1), "t": F(-1, 3)}, 4, 50)
         (found,) = continued_values(chain, [place], wanted, 1, 20)
-        for value, other in zip(found, chain.evaluate(place, wanted, 1, 25), strict=True):
+        for value, other in zip(found, evaluate(chain, place, wanted, 1, 25), strict=True):
             assert value.powers == other.powers
             assert value.epsilon.keys() == other.epsilon.keys()
             for order, ball in value.epsilon.items():

@@ -19,12 +19,12 @@ from ibpred.numerics.corner.system import RaySystem
 from ibpred.numerics.expanded import expanded_system
 from ibpred.numerics.local_laurent import local_system
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.corner_start import corner_start, corner_values
-from ibpred.run.files import read_family_file
-from ibpred.run.form_values import form_values
-from ibpred.run.rays import Ray
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.corner_start import corner_start, corner_values
+from ibpred.run.values.form_values import form_values
+from ibpred.run.values.rays import Ray
 
 FAMILIES = Path(__file__).parents[2] / "families"
 F = Fraction

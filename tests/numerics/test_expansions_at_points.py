@@ -15,10 +15,11 @@ from ibpred.exact.grammar import parse_rational
 from ibpred.exact.rational import ring
 from ibpred.numerics.distance import entry_terms
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.expansions import Approach, expand
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
+from ibpred.run.values.expansions import Approach, expand
 
 FAMILIES = Path(__file__).parents[2] / "families"
 F = Fraction
@@ -73,7 +74,7 @@ def test_expansions_sum_to_values(name, fixed, approach, folder):
         expansions = expand(chain, exact, Approach(variable, F(place), side), (), 1, highest, 30)
         point = {**exact, variable: F(place) + side * h}
         x = mpf(h.numerator) / h.denominator
-        for expansion, value in zip(expansions, chain.evaluate(point, (), 1, 30), strict=True):
+        for expansion, value in zip(expansions, evaluate(chain, point, (), 1, 30), strict=True):
             assert expansion.powers == value.powers
             for order, ball in value.epsilon.items():
                 terms = expansion.epsilon.get(order, {})
@@ -87,7 +88,7 @@ def test_square_roots_of_the_distance(side, folder):
     with Store(folder / name) as store, mp.workdps(40):
         chain = chain_of(name, store)
         expansion = expand(chain, {"m2": F(1)}, Approach("s", F(4), side), ((1, 1),), 1, highest, 30)[0]
-        value = chain.evaluate({"s": 4 + side * h, "m2": F(1)}, ((1, 1),), 1, 30)[0]
+        value = evaluate(chain, {"s": 4 + side * h, "m2": F(1)}, ((1, 1),), 1, 30)[0]
         x = mpf(h.numerator) / h.denominator
         for order, ball in value.epsilon.items():
             total = sum(

@@ -12,9 +12,10 @@ from ibpred.balls.decimal import DecimalBall
 from ibpred.errors import PointError
 from ibpred.numerics.value import Value
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
 
 FAMILIES = Path(__file__).parents[2] / "families"
 F = Fraction
@@ -29,7 +30,7 @@ def value_at(name, folder, point, powers, order=0, digits=25):
     exact = {key: F(value) for key, value in point.items()}
     with Store(folder / name) as store:
         chain = Chain(read_family_file(FAMILIES / f"{name}.toml"), store, SILENT, 1)
-        (value,) = chain.evaluate(exact, (powers,), order, digits)
+        (value,) = evaluate(chain, exact, (powers,), order, digits)
     return value
 
 

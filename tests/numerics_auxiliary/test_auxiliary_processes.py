@@ -13,8 +13,8 @@ from ibpred.errors import PointError
 from ibpred.exact.primes import first_primes
 from ibpred.numerics.auxiliary.build import auxiliary_plan
 from ibpred.numerics.auxiliary.laurent import Task, one_by_one
-from ibpred.run.auxiliary_processes import _ball_of, _data_of, process_sampler
-from ibpred.run.files import read_family_file
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.workers.auxiliary_processes import _ball_of, _data_of, process_sampler
 
 FAMILIES = Path(__file__).parents[2] / "families"
 

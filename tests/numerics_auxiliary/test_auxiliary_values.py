@@ -17,7 +17,7 @@ from ibpred.exact.primes import first_primes
 from ibpred.numerics.auxiliary.build import auxiliary_plan
 from ibpred.numerics.auxiliary.laurent import auxiliary_values, choose_sampling, fitted
 from ibpred.numerics.value import Route, Value
-from ibpred.run.files import read_family_file
+from ibpred.run.storage.files import read_family_file
 
 FAMILIES = Path(__file__).parents[2] / "families"
 PRIMES = first_primes(40)

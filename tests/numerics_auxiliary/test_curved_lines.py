@@ -20,7 +20,7 @@ from ibpred.numerics.auxiliary.curved import FLATNESS, curved, linear_lines
 from ibpred.numerics.auxiliary.families import at_point
 from ibpred.numerics.auxiliary.laurent import auxiliary_values
 from ibpred.numerics.value import Value
-from ibpred.run.files import read_family_file
+from ibpred.run.storage.files import read_family_file
 
 FAMILIES = Path(__file__).parents[2] / "families"
 PRIMES = first_primes(40)

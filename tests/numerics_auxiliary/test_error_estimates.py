@@ -21,7 +21,7 @@ from ibpred.exact.primes import first_primes
 from ibpred.family.definition import Powers
 from ibpred.numerics.auxiliary.build import auxiliary_plan
 from ibpred.numerics.auxiliary.laurent import Task, choose_sampling, fitted, one_by_one
-from ibpred.run.files import read_family_file
+from ibpred.run.storage.files import read_family_file
 
 FAMILIES = Path(__file__).parents[2] / "families"
 PRIMES = first_primes(40)

@@ -19,7 +19,7 @@ from ibpred.numerics.auxiliary.families import at_point, with_mass
 from ibpred.numerics.auxiliary.plan import AuxiliaryPlan
 from ibpred.numerics.auxiliary.regions import regions, vacuum
 from ibpred.numerics.auxiliary.solve import gamma_value, sampled
-from ibpred.run.files import read_family_file
+from ibpred.run.storage.files import read_family_file
 
 FAMILIES = Path(__file__).parents[2] / "families"
 PRIMES = first_primes(20)

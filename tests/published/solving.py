@@ -6,9 +6,10 @@ from pathlib import Path
 from mpmath import mpf
 
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
 
 FAMILIES = Path(__file__).parents[2] / "families"
 
@@ -21,7 +22,7 @@ def values(name, folder, point, order, digits, wanted=()):
     family = read_family_file(FAMILIES / f"{name}.toml")
     exact = {invariant: Fraction(value) for invariant, value in point.items()}
     with Store(folder) as store:
-        found = Chain(family, store, SILENT, 1).evaluate(exact, tuple(wanted), order, digits)
+        found = evaluate(Chain(family, store, SILENT, 1), exact, tuple(wanted), order, digits)
     return {value.powers: value for value in found}
 
 

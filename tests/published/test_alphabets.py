@@ -12,9 +12,9 @@ from ibpred.epsform.places import degree
 from ibpred.epsform.verify import is_integrable, verify
 from ibpred.progress import SILENT
 from ibpred.report.json_tables import letter_text, odd_letter_text
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
 
 
 def outcome(name, folder):

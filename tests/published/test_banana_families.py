@@ -14,10 +14,11 @@ from ibpred.errors import PointError
 from ibpred.family.reading import read_family
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.expansions import Approach, expand
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
+from ibpred.run.values.expansions import Approach, expand
 
 DIGITS = 30
 
@@ -39,7 +40,7 @@ def values_in_two_dimensions(name, folder, s, order, wanted):
     family = read_family("dimension = 2\n" + path.read_text(), path.name, name)
     point = {"s": Fraction(s), "m2": Fraction(1)}
     with Store(folder / f"{name}-two-dimensions") as store:
-        found = Chain(family, store, SILENT, 1).evaluate(point, wanted, order, DIGITS)
+        found = evaluate(Chain(family, store, SILENT, 1), point, wanted, order, DIGITS)
     return {value.powers: value for value in found}
 
 

@@ -21,10 +21,10 @@ from ibpred.iterated.constants import Constant, sum_of
 from ibpred.iterated.polylog_values import Place, polylogs
 from ibpred.iterated.series import laurent
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.known_points import auxiliary_at
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.constants.known_points import auxiliary_at
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
 
 ROOT = Path(__file__).parents[2]
 FOLDER = ROOT / "solutions" / "crossed-double-box"

@@ -20,8 +20,8 @@ from ibpred.family.signs import euclidean_signs
 from ibpred.numerics.auxiliary.build import auxiliary_plan
 from ibpred.numerics.auxiliary.laurent import auxiliary_values
 from ibpred.numerics.direct import direct_value
-from ibpred.run.files import read_family_file
-from ibpred.run.points import euclidean_point
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.values.points import euclidean_point
 
 SOLUTIONS = FAMILIES.parent / "solutions"
 PRIMES = first_primes(40)

@@ -13,7 +13,7 @@ import pytest
 from solving import FAMILIES, values
 
 from ibpred.numerics.direct import direct_value
-from ibpred.run.files import read_family_file
+from ibpred.run.storage.files import read_family_file
 
 POINT = {"s": Fraction(-1), "t": Fraction(-1, 3)}
 

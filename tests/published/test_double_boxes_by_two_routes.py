@@ -18,7 +18,7 @@ from ibpred.exact.primes import first_primes
 from ibpred.numerics.auxiliary.build import auxiliary_plan
 from ibpred.numerics.auxiliary.laurent import auxiliary_values
 from ibpred.numerics.value import Value
-from ibpred.run.files import read_family_file
+from ibpred.run.storage.files import read_family_file
 
 PRIMES = first_primes(40)
 DIGITS = 20

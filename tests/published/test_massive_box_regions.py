@@ -13,11 +13,11 @@ from mpmath import log, mp, mpf, sqrt
 from ibpred.balls.decimal import ball_of_decimal
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.continued_values import continued_values
-from ibpred.run.files import read_family_file
-from ibpred.run.known_points import auxiliary_at
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.constants.known_points import auxiliary_at
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.continued_values import continued_values
 
 FAMILIES = Path(__file__).parents[2] / "families"
 F = Fraction

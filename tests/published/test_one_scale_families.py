@@ -11,7 +11,7 @@ from mpmath import mp, mpc, mpf, zeta
 from solving import FAMILIES, compare, values
 
 from ibpred.numerics.direct import direct_value
-from ibpred.run.files import read_family_file
+from ibpred.run.storage.files import read_family_file
 
 DIGITS = 30
 EUCLIDEAN = {"s": "-1"}

@@ -22,11 +22,12 @@ from ibpred.report.export.expressions import Dialect, translated
 from ibpred.report.export.formats import Format, exported
 from ibpred.report.export.material import Material
 from ibpred.report.latex import expression_latex
-from ibpred.run.chain import Chain
-from ibpred.run.exports import chain_material, folder_material
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
-from ibpred.run.whole import run_whole
+from ibpred.run.chain.chain import Chain
+from ibpred.run.folder.exports import chain_material, folder_material
+from ibpred.run.folder.whole import run_whole
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
 
 FAMILIES = Path(__file__).parents[2] / "families"
 
@@ -79,7 +80,7 @@ def test_numpy_order_by_order_with_scipy(box: ModuleType, chain: Chain) -> None:
         atol=1e-11,
     )
     found = box.laurent(solved.y[:, -1])
-    values = chain.evaluate({"s": Fraction(2), "t": Fraction(-7, 10)}, (), 1, 15)
+    values = evaluate(chain, {"s": Fraction(2), "t": Fraction(-7, 10)}, (), 1, 15)
     for got, value in zip(found, values, strict=True):
         for order, ball in value.epsilon.items():
             assert got[order] == pytest.approx(complex(float(ball.re), float(ball.im)), abs=1e-8)

@@ -17,11 +17,11 @@ from ibpred.errors import InputError, PointError
 from ibpred.progress import SILENT
 from ibpred.report.grids import grid_csv, grid_data, grid_text
 from ibpred.report.plots import curve_figure
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.grids import Axis, Grid, evaluate_grid
-from ibpred.run.store import Store
-from ibpred.run.values import evaluate_points
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate, evaluate_points
+from ibpred.run.values.grids import Axis, Grid, evaluate_grid
 
 FAMILIES = Path(__file__).parents[2] / "families"
 
@@ -51,7 +51,7 @@ def curve(chain: Chain) -> Grid:
 def test_a_grid_agrees_with_single_points(chain: Chain, curve: Grid) -> None:
     # the curve runs through all regions of the box, over s + t = 0 and t = 0
     for point, values in curve.values[::5]:
-        for value, alone in zip(values, chain.evaluate(point, (), 0, 25), strict=True):
+        for value, alone in zip(values, evaluate(chain, point, (), 0, 25), strict=True):
             assert value.powers == alone.powers
             assert value.epsilon.keys() == alone.epsilon.keys()
             for order, ball in value.epsilon.items():

@@ -11,7 +11,7 @@ from ibpred.report.export.material import conventions
 from ibpred.report.export.solver import solver_parts
 from ibpred.report.page.parts import solution_part
 from ibpred.report.text import solution_text
-from ibpred.run.exports import folder_material
+from ibpred.run.folder.exports import folder_material
 
 SOLUTIONS = Path(__file__).parents[2] / "solutions"
 

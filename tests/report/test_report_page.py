@@ -23,7 +23,7 @@ from ibpred.report.citations import citations
 from ibpred.report.page.build import html_page
 from ibpred.report.page.formula import Call, Number, Power, Quotient, read_formula
 from ibpred.report.page.mathml import Typesetter
-from ibpred.run.dossier import read_dossier
+from ibpred.run.folder.dossier import read_dossier
 
 ROOT = Path(__file__).parents[2]
 SOLUTIONS = ROOT / "solutions"

@@ -11,13 +11,13 @@ import signal
 import sys
 from pathlib import Path
 
-import ibpred.run.deck
+import ibpred.run.storage.deck
 from ibpred.identities.seeding import Depth, seeds_of_sector
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
-from ibpred.run.workers import Threads
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.workers.local import Threads
 
 
 class Mortal(Threads):
@@ -34,8 +34,8 @@ class Mortal(Threads):
 
 def main() -> None:
     file, folder, calls = Path(sys.argv[1]), Path(sys.argv[2]), int(sys.argv[3])
-    ibpred.run.deck._UNSAVED_SECONDS = 0.0
-    ibpred.run.deck._SECONDS_A_BYTE = 0.0
+    ibpred.run.storage.deck._UNSAVED_SECONDS = 0.0
+    ibpred.run.storage.deck._SECONDS_A_BYTE = 0.0
     workers = Mortal(1)
     workers.left = calls
     with Store(folder) as store:

@@ -22,8 +22,8 @@ from ibpred.identities.derivatives import derivative_templates
 from ibpred.identities.quantities import template_at
 from ibpred.reduction.masters import find_masters
 from ibpred.reduction.recording import record_quantities
-from ibpred.run.cluster import Cluster
-from ibpred.run.workers import Threads
+from ibpred.run.workers.cluster import Cluster
+from ibpred.run.workers.local import Threads
 from ibpred.sectors.analysis import analyse
 
 PRIMES = first_primes(3)
@@ -59,7 +59,7 @@ def test_any_number_of_threads_gives_the_same() -> None:
 
 def test_nobody_at_the_address(monkeypatch: pytest.MonkeyPatch) -> None:
     pytest.importorskip("distributed")
-    monkeypatch.setattr("ibpred.run.cluster._SECONDS_TO_ANSWER", 1)
+    monkeypatch.setattr("ibpred.run.workers.cluster._SECONDS_TO_ANSWER", 1)
     with pytest.raises(InputError, match=r"no Dask scheduler answers at tcp://127\.0\.0\.1:9"):
         Cluster("tcp://127.0.0.1:9")
 

@@ -12,10 +12,10 @@ import pytest
 
 import ibpred
 from ibpred.errors import InputError, OutOfTimeError, PointError
-from ibpred.run import results
-from ibpred.run.api import Family
-from ibpred.run.results import Result
-from ibpred.run.together import Families
+from ibpred.run.python import results
+from ibpred.run.python.families import Families
+from ibpred.run.python.family import Family
+from ibpred.run.python.results import Result
 
 FAMILIES = Path(__file__).parents[2] / "families"
 

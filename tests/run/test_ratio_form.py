@@ -7,11 +7,11 @@ import pytest
 
 from ibpred.balls.decimal import ball_of_decimal
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.form_values import form_values
-from ibpred.run.lifted_point import lifted_point
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.form_values import form_values
+from ibpred.run.values.lifted_point import lifted_point
 
 FAMILIES = Path(__file__).parents[2] / "families"
 

@@ -76,7 +76,7 @@ _FULL = """
 import os, sys
 from pathlib import Path
 from ibpred.errors import StoreError
-from ibpred.run.store import Store
+from ibpred.run.storage.store import Store
 with Store(Path(sys.argv[1])) as store:
     store.put("first", "masters", [1, 2, 3])
     try:
@@ -88,7 +88,7 @@ with Store(Path(sys.argv[1])) as store:
 
 
 def test_a_full_disk_is_named_and_nothing_is_lost(tmp_path: Path) -> None:
-    from ibpred.run.store import Store
+    from ibpred.run.storage.store import Store
 
     def limit() -> None:
         resource.setrlimit(resource.RLIMIT_FSIZE, (400_000, 400_000))
@@ -117,10 +117,10 @@ def test_a_full_disk_is_named_and_nothing_is_lost(tmp_path: Path) -> None:
 
 def test_a_kill_while_writing_leaves_old_or_new(tmp_path: Path) -> None:
     """A process that only writes, killed at some moments: every entry is whole or absent."""
-    from ibpred.run.store import Store
+    from ibpred.run.storage.store import Store
 
     script = (
-        "import os, sys\nfrom pathlib import Path\nfrom ibpred.run.store import Store\n"
+        "import os, sys\nfrom pathlib import Path\nfrom ibpred.run.storage.store import Store\n"
         "with Store(Path(sys.argv[1])) as store:\n"
         "    for i in range(10**6):\n"
         "        with store.transaction():\n"

@@ -8,7 +8,7 @@ from pathlib import Path
 import pytest
 
 from ibpred.progress import SILENT
-from ibpred.run.verification import verify_folder
+from ibpred.run.folder.verification import verify_folder
 
 ROOT = Path(__file__).parents[2]
 FOLDERS = sorted(path for path in (ROOT / "solutions").iterdir() if path.is_dir())

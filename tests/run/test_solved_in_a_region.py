@@ -11,8 +11,8 @@ from ibpred.balls.decimal import ball_of_decimal
 from ibpred.family.reading import read_family
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.store import Store
 
 FAMILIES = Path(__file__).parents[2] / "families"
 

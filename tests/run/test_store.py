@@ -8,7 +8,7 @@ from pathlib import Path
 import pytest
 
 from ibpred.errors import StoreError, UnwritableError
-from ibpred.run.store import Store
+from ibpred.run.storage.store import Store
 
 
 def test_round_trip_and_persistence(tmp_path: Path) -> None:
@@ -74,7 +74,7 @@ def test_work_goes_with_its_owner(tmp_path: Path) -> None:
 
 
 def test_entries_in_parts(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr("ibpred.run.store._PART", 10)
+    monkeypatch.setattr("ibpred.run.storage.store._PART", 10)
     body = bytes(range(95))
     with Store(tmp_path) as store:
         for packed in (True, False):

@@ -14,12 +14,14 @@ from ibpred.epsform.form import EpsilonForm, Obstructed
 from ibpred.errors import OutOfTimeError, UnfinishedError
 from ibpred.exact.codec import to_data
 from ibpred.progress import SILENT, Expired, Limited
-from ibpred.run.budget import solved_in_time, told
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.grids import Axis, evaluate_grid
-from ibpred.run.store import Store
-from ibpred.run.whole import run_whole
+from ibpred.run.chain.chain import Chain
+from ibpred.run.chain.deadline import told
+from ibpred.run.constants.solved import solution, solved_in_time
+from ibpred.run.folder.whole import run_whole
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
+from ibpred.run.values.grids import Axis, evaluate_grid
 
 ROOT = Path(__file__).parents[2]
 FAMILIES = ROOT / "families"
@@ -48,7 +50,7 @@ def test_limited_progress_stops_at_the_first_report_after_the_deadline() -> None
 def test_any_moment_of_stopping_leads_to_the_same_result(tmp_path: Path) -> None:
     """The deadline comes later and later; what is kept serves the next attempt."""
     with Store(tmp_path / "whole") as store:
-        expected = to_data(chain_of("massless-box", store, lambda: False).solution(2))
+        expected = to_data(solution(chain_of("massless-box", store, lambda: False), 2))
     stops = 0
     found = None
     with Store(tmp_path / "parts") as store:
@@ -56,7 +58,7 @@ def test_any_moment_of_stopping_leads_to_the_same_result(tmp_path: Path) -> None
             chain = chain_of("massless-box", store, after(reports))
             try:
                 with told(chain):
-                    found = to_data(chain.solution(2))
+                    found = to_data(solution(chain, 2))
                 break
             except OutOfTimeError:
                 stops += 1
@@ -90,7 +92,7 @@ def test_blocks_not_looked_at_are_named(tmp_path: Path) -> None:
 def test_solution_is_given_as_far_as_it_was_reached(tmp_path: Path) -> None:
     with Store(tmp_path) as store:
         full = chain_of("massless-box", store, lambda: False)
-        low = full.solution(1)
+        low = solution(full, 1)
         chain = chain_of("massless-box", store, after(60))
         with told(chain):
             found = solved_in_time(chain, 4)
@@ -155,7 +157,7 @@ def test_grid_is_given_as_far_as_it_was_reached(tmp_path: Path) -> None:
     places = tuple(Fraction(-1, n) for n in range(2, 42))
     with Store(tmp_path) as store:
         first: dict[str, Fraction] = {"s": Fraction(-1), "t": places[0]}
-        chain_of("massless-box", store, lambda: False).evaluate(first, ((1, 1, 1, 1),), 0, 10)
+        evaluate(chain_of("massless-box", store, lambda: False), first, ((1, 1, 1, 1),), 0, 10)
         chain = chain_of("massless-box", store, after(2))
         grid = evaluate_grid(chain, {"s": Fraction(-1)}, [Axis("t", places)], [(1, 1, 1, 1)], 0, 10)
     assert grid.stopped is not None

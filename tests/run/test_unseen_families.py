@@ -11,9 +11,10 @@ from mpmath import mpf
 from ibpred.family.reading import read_family
 from ibpred.numerics.value import Value
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
 
 FAMILIES = Path(__file__).parents[2] / "families"
 
@@ -84,11 +85,11 @@ momentum = "l+p+r"
 """
 
 
-def evaluate(text: str, folder: Path, point: dict[str, str], powers: tuple[int, ...], order: int) -> Value:
+def value_of(text: str, folder: Path, point: dict[str, str], powers: tuple[int, ...], order: int) -> Value:
     definition = read_family(text, "given.toml", "given")
     exact = {name: Fraction(value) for name, value in point.items()}
     with Store(folder) as store:
-        (value,) = Chain(definition, store, SILENT, 1).evaluate(exact, (powers,), order, 30)
+        (value,) = evaluate(Chain(definition, store, SILENT, 1), exact, (powers,), order, 30)
     return value
 
 
@@ -96,7 +97,7 @@ def shipped(name: str, folder: Path, point: dict[str, str], powers: tuple[int, .
     definition = read_family_file(FAMILIES / f"{name}.toml")
     exact = {symbol: Fraction(value) for symbol, value in point.items()}
     with Store(folder) as store:
-        (value,) = Chain(definition, store, SILENT, 1).evaluate(exact, (powers,), order, 30)
+        (value,) = evaluate(Chain(definition, store, SILENT, 1), exact, (powers,), order, 30)
     return value
 
 
@@ -113,7 +114,7 @@ def agree(left: Value, right: Value) -> None:
 
 @pytest.mark.parametrize(("s", "t"), [("-1", "-1/3"), ("1", "-1/3"), ("-2", "5")])
 def test_box(tmp_path: Path, s: str, t: str) -> None:
-    mine = evaluate(BOX, tmp_path / "a", {"S": s, "T": t}, (1, 1, 1, 1), 2)
+    mine = value_of(BOX, tmp_path / "a", {"S": s, "T": t}, (1, 1, 1, 1), 2)
     theirs = shipped("massless-box", tmp_path / "b", {"s": s, "t": t}, (1, 1, 1, 1), 2)
     agree(mine, theirs)
 
@@ -121,7 +122,7 @@ def test_box(tmp_path: Path, s: str, t: str) -> None:
 @pytest.mark.parametrize(("s", "t"), [("-1", "-1/3"), ("1", "-1/3")])
 def test_double_box(tmp_path: Path, s: str, t: str) -> None:
     powers = (1, 1, 1, 1, 1, 1, 1, 0, 0)
-    mine = evaluate(DOUBLE_BOX, tmp_path / "a", {"ss": s, "tt": t}, powers, 0)
+    mine = value_of(DOUBLE_BOX, tmp_path / "a", {"ss": s, "tt": t}, powers, 0)
     agree(mine, shipped("planar-double-box", tmp_path / "b", {"s": s, "t": t}, powers, 0))
 
 
@@ -131,7 +132,7 @@ def test_vertex_with_two_legs(tmp_path: Path) -> None:
     The value is checked by direct integration of the parametric representation in
     `test_against_direct_integration`.
     """
-    value = evaluate(VERTEX, tmp_path, {"M": "-1/3", "Q": "-1"}, (1, 1, 1, 1, 1, 1, 0), 0)
+    value = value_of(VERTEX, tmp_path, {"M": "-1/3", "Q": "-1"}, (1, 1, 1, 1, 1, 1, 0), 0)
     assert value.certified
 
 
@@ -141,7 +142,7 @@ def test_against_direct_integration(tmp_path: Path) -> None:
 
     definition = read_family(VERTEX, "given.toml", "given")
     powers = (1, 1, 1, 1, 1, 1, 0)
-    value = evaluate(VERTEX, tmp_path, {"M": "-1/3", "Q": "-1"}, powers, 0)
+    value = value_of(VERTEX, tmp_path, {"M": "-1/3", "Q": "-1"}, powers, 0)
     point = {"M": Fraction(-1, 3), "Q": Fraction(-1)}
     direct = direct_value(definition, powers, point, order=0, seed=1, samples=50_000)
     for order, (number, error) in direct.items():

@@ -9,11 +9,11 @@ import pytest
 
 from ibpred.errors import InputError
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
-from ibpred.run.verification import verify_folder
-from ibpred.run.whole import run_whole
+from ibpred.run.chain.chain import Chain
+from ibpred.run.folder.verification import verify_folder
+from ibpred.run.folder.whole import run_whole
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
 
 FAMILIES = Path(__file__).parents[2] / "families"
 

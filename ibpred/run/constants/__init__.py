@@ -1,0 +1,1 @@
+"""Boundary constants that no condition fixes, from values; the solution with all constants."""

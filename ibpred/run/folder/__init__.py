@@ -1,0 +1,1 @@
+"""The folder of results: written, exported, shown, verified."""

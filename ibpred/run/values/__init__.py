@@ -1,0 +1,1 @@
+"""Numbers at points: the routes to them, expansions and limits on singularities, grids."""

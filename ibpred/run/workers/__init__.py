@@ -1,0 +1,1 @@
+"""Who does the work: threads, processes, a cluster."""
