@@ -73,6 +73,7 @@ def evaluate(
     """
     from ibpred.report.json_tables import values_data
     from ibpred.report.text import values_text
+    from ibpred.run.values.evaluate import evaluate_points
 
     if at is None and not grids and approach is None:
         raise InputError('no point: give --at "s=-1,t=-1/3" or --grid "t=-0.9:-0.1:50"')
@@ -96,7 +97,7 @@ def evaluate(
     found = []
     for family in each_family(shared):
         with open_chain(family) as chain:
-            values = evaluate(chain, point, wanted, order, digits)
+            (values,) = evaluate_points(chain, (point,), wanted, order, digits)
             found.append(values_data(chain.definition, point, digits, values))
     emit_each(shared, found, values_text)
 
