@@ -12,7 +12,9 @@ from ibpred.family.reading import read_family
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT
 from ibpred.run.chain.chain import Chain
+from ibpred.run.constants.solved import solution
 from ibpred.run.storage.store import Store
+from ibpred.run.values.evaluate import evaluate
 
 FAMILIES = Path(__file__).parents[2] / "families"
 
@@ -29,13 +31,13 @@ def test_all_constants_are_derived_and_agree_with_the_euclidean_ones(name, tmp_p
     with Store(tmp_path / "store") as store:
         here = Chain(definition(name, '["s > 0"]'), store, SILENT, 1)
         usual = Chain(definition(name, "[]"), store, SILENT, 1)
-        solution = here.solution(2 * len(here.definition.loops))
-        assert solution.is_pure()
+        solved = solution(here, 2 * len(here.definition.loops))
+        assert solved.is_pure()
         assert not here.is_euclidean()
         assert not here.boundary(2).fitted
         for s, t in [inside, *outside]:
             point = {"s": Fraction(s), "t": Fraction(t)}
-            pairs = zip(here.evaluate(point, (), 0, 20), usual.evaluate(point, (), 0, 20), strict=True)
+            pairs = zip(evaluate(here, point, (), 0, 20), evaluate(usual, point, (), 0, 20), strict=True)
             for value, expected in pairs:
                 assert value.certified
                 assert value.route is Route.EPSILON_FORM
