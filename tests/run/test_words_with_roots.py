@@ -14,9 +14,9 @@ from ibpred.iterated.symbol import Symbol, is_integrable, symbols_of_form
 from ibpred.numerics.path import Target
 from ibpred.numerics.rooted_paths import evaluate_rooted
 from ibpred.progress import SILENT
-from ibpred.run.chain import Chain
-from ibpred.run.files import read_family_file
-from ibpred.run.store import Store
+from ibpred.run.chain.chain import Chain
+from ibpred.run.storage.files import read_family_file
+from ibpred.run.storage.store import Store
 
 FAMILIES = Path(__file__).parents[2] / "families"
 BITS = 160
