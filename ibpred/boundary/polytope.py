@@ -9,7 +9,9 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from math import factorial
+from functools import lru_cache
+from math import factorial, lcm
+from typing import Any
 
 import flint
 import numpy as np
@@ -54,7 +56,11 @@ def lower_facets(points: Sequence[tuple[Exponents, int]]) -> tuple[LowerFacet, .
         If the r do not span (the integral is scaleless), or the facets that pass the exact check do not
         cover the projection.
     """
-    rows = sorted({(*r, p) for r, p in points})
+    return _facets_of(tuple(sorted({(*r, p) for r, p in points})))
+
+
+@lru_cache(maxsize=4096)
+def _facets_of(rows: tuple[tuple[int, ...], ...]) -> tuple[LowerFacet, ...]:
     width = len(rows[0])
     base = rows[0]
     differences = [[a - b for a, b in zip(row, base, strict=True)] for row in rows[1:]]
@@ -67,25 +73,40 @@ def lower_facets(points: Sequence[tuple[Exponents, int]]) -> tuple[LowerFacet, .
         return (facet,)
     if width == 2:
         return _planar(rows)
-    corners_of_all = np.array(rows, dtype=float)
-    hull = ConvexHull(corners_of_all, qhull_options="Qt")
+    everything = np.array(rows)
+    hull = ConvexHull(everything.astype(float), qhull_options="Qt")
+    # qhull's normals point outwards; a slight tilt is left to the exact check
+    simplices = hull.simplices[hull.equations[:, width - 1] <= 1e-9]
+    corners = everything[simplices][:, :, :-1]
+    sizes = np.rint(np.abs(np.linalg.det((corners[:, 1:] - corners[:, :1]).astype(float))))
     found: dict[LowerFacet, None] = {}
-    covered = 0
-    for simplex, equation in zip(hull.simplices, hull.equations, strict=True):
-        # qhull's normals point outwards; a slight tilt is left to the exact check
-        if equation[width - 1] > 1e-9:
+    covered = 0.0
+    pending = np.flatnonzero(sizes)
+    while len(pending):
+        facet = _hyperplane([rows[i] for i in simplices[pending[0]]], rows)
+        if facet is None:
+            pending = pending[1:]
             continue
-        corners = [rows[i] for i in simplex]
-        facet = _hyperplane(corners, rows)
-        if facet is not None:
-            found[facet] = None
-            edges = [[a - b for a, b in zip(row[:-1], corners[0], strict=False)] for row in corners[1:]]
-            covered += abs(int(flint.fmpz_mat(edges).det()))
+        found[facet] = None
+        # all simplices on this facet at once
+        inside = (_above(facet, rows) == 0)[simplices[pending]].all(axis=1)
+        covered += float(sizes[pending[inside]].sum())
+        pending = pending[~inside]
     # the simplices of the lower facets project onto all of the projection: no facet is missing
-    volume = ConvexHull(corners_of_all[:, :-1]).volume * factorial(width - 1)
+    volume = ConvexHull(everything[:, :-1].astype(float)).volume * factorial(width - 1)
     if covered < volume * (1 - 1e-9):
         raise BoundaryError("the lower facets of a Newton polytope do not cover it: a region is missing")
     return tuple(sorted(found, key=lambda f: (f.normal, f.offset)))
+
+
+def _above(facet: LowerFacet, rows: Sequence[Sequence[int]]) -> Any:
+    """Height of points above a facet's hyperplane, in integers up to a common positive factor."""
+    scale = lcm(facet.offset.denominator, *(v.denominator for v in facet.normal))
+    normal = [int(v * scale) for v in facet.normal] + [scale]
+    offset = int(facet.offset * scale)
+    most = max(abs(v) for row in rows for v in row) * sum(map(abs, normal)) + abs(offset)
+    exact = np.int64 if most < 2**62 else object
+    return np.array(rows, dtype=exact) @ np.array(normal, dtype=exact) - offset
 
 
 def _planar(rows: Sequence[tuple[int, ...]]) -> tuple[LowerFacet, ...]:
@@ -113,10 +134,8 @@ def _hyperplane(corners: Sequence[Sequence[int]], rows: Sequence[Sequence[int]])
     last = [reduced[c, width - 1] for c in range(width - 1)]
     normal = tuple(Fraction(-int(q.p), int(q.q)) for q in last)
     offset = base[-1] + sum((v * e for v, e in zip(normal, base, strict=False)), Fraction(0))
-    for row in rows:
-        if row[-1] + sum((v * e for v, e in zip(normal, row, strict=False)), Fraction(0)) < offset:
-            return None
-    return LowerFacet(normal, offset)
+    facet = LowerFacet(normal, offset)
+    return facet if (_above(facet, rows) >= 0).all() else None
 
 
 def _rank(rows: Sequence[Sequence[int]]) -> int:
