@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from itertools import pairwise
 
-from ibpred.epsform.blocks import Block, Finding
+from ibpred.epsform.blocks import Block
 from ibpred.epsform.constant import factor_eps
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix
 from ibpred.epsform.fuchsian import Stuck, fuchsian
@@ -19,7 +19,7 @@ from ibpred.epsform.matrices import (
     product,
     subtracted,
 )
-from ibpred.epsform.oddpart import odd_part, with_roots
+from ibpred.epsform.oddpart import OddTerms, odd_part, with_roots
 from ibpred.epsform.places import Place, places_of
 from ibpred.epsform.structure import restricted
 from ibpred.epsform.tags import between_functions
@@ -95,8 +95,9 @@ def assembled(
         return factored
     progress.advance(2, None)
     odd = odd_part(coupled, factored.matrix, by_row, system.places, field, primes, seed)
-    if isinstance(odd, Finding):
-        return Stuck(len(blocks) - 1, odd)
+    if not isinstance(odd, OddTerms):
+        row, finding = odd
+        return Stuck(next(k for k, rows in enumerate(ranges) if row in rows), finding)
     progress.stage("epsilon-form: substitution")
     left = _diagonal([block.transformation for block in solved], field)
     right = _diagonal([block.inverse for block in solved], field)
@@ -115,8 +116,8 @@ def assembled(
             part(back, sort, sort),
             ((),) * len(order),
         ),
-        [by_row[k] for k in sort],
-        [(roots, letter, _permuted(matrix, sort)) for roots, letter, matrix in odd],
+        [odd.tags[k] for k in sort],
+        [(roots, letter, _permuted(matrix, sort)) for roots, letter, matrix in odd.terms],
     )
     if not verify(restricted(connection, sorted(order)), form):
         raise ReconstructionError(

@@ -148,7 +148,7 @@ class EpsilonForm:
         that ``f_i = sqrt(tag) (T^-1 I)_i``; empty tuples where no square root occurs.
     radicands
         Irreducible polynomials with coprime integer coefficients, positive where all ratios are small and
-        each is much smaller than the next one.
+        each is much smaller than the next one, unless letters with real coefficients need the other sign.
     odd_letters, odd_matrices
         The letters with square roots, and a matrix of rationals for each. A matrix of an odd letter
         connects functions whose tags differ by just the roots of the letter.

@@ -24,6 +24,7 @@ ROOTS = {
     "an irreducible quadratic": (["x^2+x+1"], ["x+1", "x-1"]),
     "a curve of genus one": (["x", "x+1", "x+2", "x+3"], ["x^2+3*x+1"]),
     "a branch point at infinity": (["1-x"], ["1", "x-1"]),
+    "negative at the corner": (["x-1"], ["1"]),
 }
 
 
@@ -65,8 +66,9 @@ def numbers_of(random: Random, size: int, owner: list[int]):
     return draw
 
 
+SOME = ("an irreducible quadratic", "a branch point at infinity", "negative at the corner")
 CASES = [
-    *((kind, [1, 2, 1], [1, 3], ()) for kind in ("an irreducible quadratic", "a branch point at infinity")),
+    *((kind, [1, 2, 1], [1, 3], ()) for kind in SOME),
     ("a curve of genus one", [2], [1], ()),
     *((kind, [3], [2], pytest.mark.slow) for kind in ROOTS),
     *((kind, [2, 2], [1, 2], pytest.mark.slow) for kind in ROOTS),

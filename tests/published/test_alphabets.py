@@ -154,6 +154,21 @@ def test_pentagon_with_one_leg(tmp_path):
     assert len({tag for tag in form.tags if tag}) == 2
 
 
+@pytest.mark.slow
+def test_pentagon_with_a_massive_loop(tmp_path):
+    """22 functions of five ratios: bubbles, triangles, boxes and the pentagon have a root each, in all 11.
+
+    The radicands are those of s(s+4) for five channels, of five boxes, and the Gram determinant. Those of the
+    boxes are positive for equal ratios, though not for hierarchical ones.
+    """
+    form = in_the_ratios("pentagon-massive-loop", tmp_path)
+    assert len(form.tags) == 22
+    assert len({tag for tag in form.tags if tag}) == 11
+    assert len(form.radicands) == 16
+    equal = dict.fromkeys(form.variables, 1)
+    assert all(radicand.substitute(equal).to_fraction() > 0 for radicand in form.radicands)
+
+
 def test_sunrise_and_banana_are_told(tmp_path):
     """An elliptic curve; a K3 surface with the operator of Vanhove, arXiv:1401.6438."""
     _, found = outcome("sunrise-equal-masses", tmp_path / "two")
