@@ -86,7 +86,7 @@ def edges_at(form: EpsilonForm, corner: Corner) -> tuple[Edge, ...]:
     form
         The epsilon-form.
     corner
-        All of its ratios; roots are real there.
+        All of its ratios.
     """
     field = form.ring
     alphabet = alphabet_of(form, corner)

@@ -19,7 +19,6 @@ from ibpred.boundary.explore import BoundaryProblem, Gathered, explore, unit_tra
 from ibpred.boundary.linear import Outcome, Transported, solve_all, transported
 from ibpred.boundary.recognise import Fit
 from ibpred.errors import BoundaryError, InputError
-from ibpred.iterated.alphabet import refuse_negative
 from ibpred.iterated.constants import Constant
 from ibpred.iterated.series import Series, eps_valuation
 from ibpred.progress import SILENT, Progress
@@ -138,7 +137,7 @@ def fix_constants(
     OpenConstantsError
         If constants stay undetermined (names rows and orders).
     BoundaryError
-        If a root is not real at the corner, or conditions contradict each other (names the first that does).
+        If conditions contradict each other (names the first that does).
     """
     outcome, gathered, weight = _determine(problem, fitted, progress)
     starts = lowest_orders(problem)
@@ -172,7 +171,6 @@ def _determine(
         raise InputError(
             f"the corner {' << '.join(problem.corner)} does not name the ratios {', '.join(form.variables)}"
         )
-    refuse_negative(form, problem.corner)
     if len(problem.masters) != len(form.inverse):
         raise InputError(f"{len(problem.masters)} masters are given for {len(form.inverse)} functions")
     starts = lowest_orders(problem)

@@ -18,6 +18,7 @@ from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import Rational, Ring, ring
 from ibpred.family.cuts import refuse_cuts
 from ibpred.family.definition import FamilyDefinition, Powers
+from ibpred.iterated.alphabet import usual_corner
 from ibpred.iterated.series import Series
 from ibpred.iterated.solution import letter_roots
 
@@ -210,7 +211,7 @@ def problem_in_variables(
         form,
         tuple(known),
         parametric_family(family, values) if real else None,
-        tuple(reversed(form.variables)),
+        usual_corner(form),
         len(family.loops),
         weight,
         real=real,

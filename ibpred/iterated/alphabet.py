@@ -1,10 +1,11 @@
 """Alphabets, even and odd letters alike, and what is left of them where ratios vanish.
 
 An odd letter is ``(P - r)/(P + r)`` with ``r^2 = Q`` a polynomial; r is the root that is positive at the
-corner ``x1 << x2 << ... -> 0+``. Where a ratio vanishes, P and r have leading powers of it. If these differ,
-the letter tends to +1 or -1; if the leading coefficients agree up to sign, it is a power of the ratio times
-an even function; else the leading coefficients make an odd letter again. In each case dlog of the letter is
-dlog of this limit plus a multiple of dlog of the ratio (plus what vanishes, perhaps as the ratio's root).
+corner ``x1 << x2 << ... -> 0+``, or i times a positive number where Q is negative there. Where a ratio
+vanishes, P and r have leading powers of it. If these differ, the letter tends to +1 or -1; if the leading
+coefficients agree up to sign, it is a power of the ratio times an even function; else the leading coefficients
+make an odd letter again. In each case dlog of the letter is dlog of this limit plus a multiple of dlog of the
+ratio (plus what vanishes, perhaps as the ratio's root).
 """
 
 from __future__ import annotations
@@ -12,13 +13,13 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
+from itertools import permutations
 from math import isqrt
 from typing import Any
 
 import flint
 
 from ibpred.epsform.form import EpsilonForm
-from ibpred.errors import BoundaryError
 from ibpred.exact.rational import Rational
 from ibpred.iterated.matrices import rational_matrix
 
@@ -104,17 +105,10 @@ class Alphabet:
 
 
 def alphabet_of(form: EpsilonForm, corner: Sequence[str]) -> Alphabet:
-    """The alphabet of a form at a corner, the smallest ratio first.
-
-    Raises
-    ------
-    BoundaryError
-        If a radicand is negative at the corner.
-    """
+    """The alphabet of a form at a corner, the smallest ratio first."""
     collected = _Collected()
     for letter, rows in zip(form.letters, form.matrices, strict=True):
         collected.add_even(letter, rational_matrix(rows))
-    refuse_negative(form, corner)
     for odd, rows in zip(letters_with_roots(form), form.odd_matrices, strict=True):
         collected.add_odd(odd.polynomial, odd.square, odd.roots, odd.factor, rational_matrix(rows), corner)
     return collected.alphabet()
@@ -131,28 +125,17 @@ def letters_with_roots(form: EpsilonForm) -> tuple[RootLetter, ...]:
     return tuple(found)
 
 
-def refuse_negative(form: EpsilonForm, corner: Sequence[str]) -> None:
-    """Refuse a corner at which a root of the form is not real.
+def usual_corner(form: EpsilonForm) -> tuple[str, ...]:
+    """The corner at which a form is solved, the smallest ratio first.
 
-    Raises
-    ------
-    BoundaryError
-        Naming the radicand.
+    The last ratio is the smallest, the one before it the next, unless a root is not real there: then the
+    first order in which all roots are real, if there is one.
     """
-    for radicand in form.radicands:
-        if not is_positive_at(radicand, corner):
-            raise BoundaryError(
-                f"the radicand {radicand} is negative where {' << '.join((*corner, '1'))}; choose another "
-                "corner"
-            )
-
-
-def positive_corner(form: EpsilonForm, corners: Sequence[Sequence[str]]) -> tuple[str, ...] | None:
-    """The first of some corners at which all roots of a form are real."""
-    for corner in corners:
+    usual = tuple(reversed(form.variables))
+    for corner in permutations(usual):
         if all(is_positive_at(radicand, corner) for radicand in form.radicands):
-            return tuple(corner)
-    return None
+            return corner
+    return usual
 
 
 def limit(alphabet: Alphabet, name: str, order: Sequence[str]) -> tuple[Any, Alphabet]:

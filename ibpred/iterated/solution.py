@@ -125,8 +125,6 @@ def fibration(form: EpsilonForm, corner: Sequence[str]) -> tuple[tuple[Level, tu
     ------
     InputError
         If the corner does not name its ratios.
-    BoundaryError
-        If a root is not real at the corner.
     """
     if sorted(corner) != sorted(form.variables):
         listed = ", ".join(form.variables)
@@ -178,7 +176,7 @@ def solve_orders(
     InputError
         As `fibration`.
     BoundaryError
-        As `fibration`, or if the constants stop before ``eps^weight``.
+        If the constants stop before ``eps^weight``.
     """
     count = weight - start + 1
     if len(constants) < count:

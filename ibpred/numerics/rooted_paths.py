@@ -54,7 +54,7 @@ def evaluate_rooted(
     form
         In any number of ratios.
     corner
-        The ratios, the smallest first; all radicands are positive there.
+        The ratios, the smallest first.
     constants
         Boundary constants at the corner, ``constants[k][i]`` the coefficient of eps^k of c_i.
     targets

@@ -6,9 +6,8 @@ import pytest
 from mpmath import mp, mpf
 
 from ibpred.epsform.form import EpsilonForm, OddLetter
-from ibpred.errors import BoundaryError
 from ibpred.exact.rational import ring
-from ibpred.iterated.alphabet import RootLetter, alphabet_of, exact_root, limit, positive_corner
+from ibpred.iterated.alphabet import RootLetter, alphabet_of, exact_root, limit, usual_corner
 from ibpred.iterated.solution import fibration, named_letters, product_text
 
 FIELD = ring(("eps", "x", "y"))
@@ -103,11 +102,11 @@ def test_exact_roots():
     assert exact_root(X) is None
 
 
-def test_roots_must_be_real_at_the_corner():
+def test_corners_at_which_roots_are_real_come_first():
     form = form_with((X - Y,), [(X + Y, (0,))])
-    with pytest.raises(BoundaryError, match="negative where x << y"):
-        alphabet_of(form, ("x", "y"))
-    assert positive_corner(form, [("x", "y"), ("y", "x")]) == ("y", "x")
+    assert usual_corner(form) == ("y", "x")
+    assert usual_corner(form_with((Y - X,), [(X + Y, (0,))])) == ("x", "y")
+    assert usual_corner(form_with((-X - Y,), [(X + Y, (0,))])) == ("y", "x")
 
 
 def test_words_name_what_is_not_linear():

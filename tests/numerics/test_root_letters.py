@@ -112,6 +112,16 @@ def test_logarithm_through_zeros_of_the_radicand(y):
         close(found[1][1], mp.log((p - root) / (p + root)) / root)
 
 
+def test_imaginary_roots():
+    # r = i sqrt(y (4+y)): log (r-y)/(r+y) = 2 i atan(y/|r|)
+    form = chain_form((-Y, Y + 4), ((), (0, 1)), [(Y, (0, 1))])
+    found = evaluate_rooted(form, ("x", "y"), first_of(2, 1), at("1/3", "5/2"), BITS)
+    with mp.workdps(45):
+        y = mpf(5) / 2
+        root = mp.sqrt(y * (4 + y))
+        close(found[1][1], 2 * mp.atan(y / root) / root)
+
+
 def test_nested_integral_against_quadrature():
     # d f3 = dlog w(y) f2 with w = (y - s)/(y + s), s = sqrt(y (4+y)), twice: f3 = log(w/-1)^2/2
     form = chain_form((Y, Y + 4), ((), (0, 1), ()), [(Y, (0, 1)), (Y, (0, 1))])
