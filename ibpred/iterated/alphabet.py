@@ -2,8 +2,8 @@
 
 An odd letter is ``(P - r)/(P + r)`` with ``r^2 = Q`` a polynomial; r is the root that is positive at the
 corner ``x1 << x2 << ... -> 0+``, or i times a positive number where Q is negative there. Where a ratio
-vanishes, P and r have leading powers of it. If these differ, the letter tends to +1 or -1; if the leading
-coefficients agree up to sign, it is a power of the ratio times an even function; else the leading coefficients
+vanishes, P and r have leading powers of it. If these differ, the letter tends to +1 or -1; if the
+leading coefficients agree up to sign, it is a power of the ratio times an even function; else they
 make an odd letter again. In each case dlog of the letter is dlog of this limit plus a multiple of dlog of the
 ratio (plus what vanishes, perhaps as the ratio's root).
 """
