@@ -1,8 +1,8 @@
 """All solutions ``h^(a + b eps) sum_n v_n h^n`` of one class of exponents, exactly in eps.
 
 Where ``a + n + b eps`` is no exponent, v_n follows from those before; where it is one, it may be changed by
-eigenvectors, and those before must fit. If there are as many solutions without logarithms as the exponents of
-the class have multiplicity, then there are no others.
+eigenvectors, and those before must fit. These are the solutions without logarithms; where there are as many
+as the exponents of the class have multiplicity, there are no others.
 """
 
 from __future__ import annotations
@@ -12,7 +12,6 @@ from fractions import Fraction
 
 import flint
 
-from ibpred.errors import UnfinishedError
 from ibpred.numerics.corner.field import EPS, FIELD, Matrix, echelon, null_space, product, zeros
 from ibpred.numerics.corner.system import RaySystem, at_number
 from ibpred.numerics.frobenius.system import fmpq
@@ -22,7 +21,7 @@ _GENERIC = Fraction(1, 10_007)
 
 @dataclass(frozen=True)
 class ClassSolutions:
-    """The solutions of one class.
+    """The solutions of one class without logarithms.
 
     Attributes
     ----------
@@ -30,11 +29,14 @@ class ClassSolutions:
         a, the least exponent at eps = 0, and b.
     terms
         ``terms[n]`` has v_n of every solution as a column.
+    complete
+        Whether they are all solutions of the class.
     """
 
     power: Fraction
     slope: Fraction
     terms: tuple[Matrix, ...]
+    complete: bool
 
     @property
     def count(self) -> int:
@@ -44,7 +46,7 @@ class ClassSolutions:
 def class_solutions(
     system: RaySystem, power: Fraction, slope: Fraction, resonances: int
 ) -> ClassSolutions | None:
-    """The solutions of one class; None where its exponents are none of the system.
+    """The solutions of one class without logarithms; None where there are none.
 
     Parameters
     ----------
@@ -54,11 +56,6 @@ def class_solutions(
         a and b; a is the least exponent modulo the integers at eps = 0.
     resonances
         The largest difference of exponents to a at eps = 0.
-
-    Raises
-    ------
-    UnfinishedError
-        If there are logarithms at generic eps.
     """
     size = system.size
     terms: list[Matrix] = []
@@ -91,11 +88,8 @@ def class_solutions(
         width += len(free)
     if not width:
         return None
-    if width != _multiplicity(system, power, slope, resonances):
-        raise UnfinishedError(
-            f"exponents {power} + {slope}*eps modulo the integers come with logarithms at generic eps"
-        )
-    return ClassSolutions(power, slope, tuple(terms))
+    complete = width == _multiplicity(system, power, slope, resonances)
+    return ClassSolutions(power, slope, tuple(terms), complete)
 
 
 def _multiplicity(system: RaySystem, power: Fraction, slope: Fraction, resonances: int) -> int:

@@ -152,6 +152,15 @@ def corner_solution(
 def _fixed(
     solutions: ClassSolutions, gauge: Sequence[int], masters: Sequence[Sequence[Region]], part: Fraction
 ) -> tuple[FixedClass, int]:
+    if not solutions.complete and any(
+        any(r.exponent.logs)
+        for found in masters
+        for r in found
+        if r.exponent.slope[0] == solutions.slope and fractional_part(r.exponent.power[0]) == part
+    ):
+        raise UnfinishedError(
+            f"exponents {part} + {solutions.slope}*eps modulo the integers may have logarithms at generic eps"
+        )
     rows: list[list[Rational]] = []
     values: list[Value] = []
     leading: list[tuple[int, list[Rational], list[Region]]] = []

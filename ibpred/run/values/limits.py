@@ -35,9 +35,12 @@ _REGULAR = (Exponent((Fraction(0),), (Fraction(0),), (False,)),)
 
 
 def is_singular(chain: Chain, point: Mapping[str, Fraction]) -> bool:
-    """Whether a complete point lies on the singular locus, or an invariant vanishes there."""
+    """Whether a complete point lies on the singular locus, or an invariant vanishes there.
+
+    With a single invariant there is nothing to expand in: its powers are all there is.
+    """
     names = [invariant.name for invariant in chain.definition.invariants]
-    if not names or set(point) != set(names):
+    if len(names) < 2 or set(point) != set(names):
         return False
     return any(not value for value in point.values()) or bool(_vanishing(chain, point))
 
