@@ -27,6 +27,7 @@ from ibpred.numerics.frobenius.path import Path, Point, approximate
 from ibpred.numerics.frobenius.poles import PartialFractions, partial_fractions
 from ibpred.numerics.frobenius.spectrum import ExactMatrix
 from ibpred.numerics.frobenius.tracks import BallMatrix, all_positions
+from ibpred.progress import SILENT, Progress
 
 _GUARD_BITS = 64
 _MOST_FOLD = 12  # working bits over wanted bits
@@ -104,7 +105,12 @@ def spread(expanded: ExpandedSystem) -> int:
 
 
 def carry_laurent(
-    line: LaurentLine, values: Sequence[Laurent], lowest: int, highest: int, bits: int
+    line: LaurentLine,
+    values: Sequence[Laurent],
+    lowest: int,
+    highest: int,
+    bits: int,
+    progress: Progress = SILENT,
 ) -> tuple[dict[int, Ball], ...]:
     """The masters at the end of a line.
 
@@ -121,6 +127,8 @@ def carry_laurent(
         Highest power of all masters at the end.
     bits
         Working precision.
+    progress
+        Told about the steps done.
 
     Returns
     -------
@@ -138,7 +146,8 @@ def carry_laurent(
     with precision(bits):
         orders = [flint.acb_mat(line.inverse) * column for column in orders]
     guard = _GUARD_BITS
-    for step in pairwise(line.path):
+    for done, step in enumerate(pairwise(line.path)):
+        progress.advance(done, len(line.path) - 1)
         blocks, guard = _transfer(line, step, bits, guard)
         with precision(bits):
             orders = [_applied(blocks, orders, k) for k in range(line.depth)]

@@ -50,6 +50,7 @@ class FormPart:
     letters: tuple[Markup, ...]
     canonical: tuple[sections.Titled, ...]
     obstacles: tuple[sections.Obstacle, ...]
+    offered: sections.Offered | None
     few: bool
 
 
@@ -90,13 +91,14 @@ def equations_part(family: FamilyDefinition, data: Data) -> EquationsPart:
 def form_part(family: FamilyDefinition, data: Data | None) -> FormPart:
     """What `epsform` prints; nothing for a family without ratios."""
     if data is None:
-        return FormPart((), (), (), (), False)
+        return FormPart((), (), (), (), None, False)
     setter = typesetter(family)
     return FormPart(
         sections.ratios(data, setter),
         sections.letters(data, setter),
         sections.canonical(data, setter),
         sections.obstacles(data),
+        sections.offered(data, setter),
         len({entry[0] for entry in data["transformation"]}) <= _FEW,
     )
 

@@ -21,6 +21,7 @@ from ibpred.sectors.order import sector_of
 Data = Mapping[str, Any]
 
 _LARGEST_MATRIX = 14
+_SHORT_LETTER = 40  # characters of a letter that fits into a title
 
 
 @dataclass(frozen=True)
@@ -48,6 +49,15 @@ class Obstacle:
     rows: str
     reason: str
     facts: tuple[tuple[str, str], ...]
+
+
+@dataclass(frozen=True)
+class Offered:
+    """Variables in which some square roots are rational; whether all letters are linear in them."""
+
+    roots: tuple[Markup, ...]
+    variables: tuple[Markup, ...]
+    linear: bool
 
 
 @dataclass(frozen=True)
@@ -165,8 +175,20 @@ def _drawn(text: str, setter: Typesetter) -> str:
 
 
 def letters(data: Data, setter: Typesetter) -> tuple[Markup, ...]:
-    """The alphabet."""
-    return tuple(Markup(setter.inline(letter)) for letter in data["letters"])
+    """The alphabet, numbered."""
+    return tuple(
+        _math(f"{indexed('l', number)}<mo>=</mo>{_drawn(letter, setter)}")
+        for number, letter in enumerate(data["letters"], start=1)
+    )
+
+
+def offered(data: Data, setter: Typesetter) -> Offered | None:
+    """Variables in which square roots are rational, where they are not used."""
+    offer = data.get("offered_variables")
+    if offer is None:
+        return None
+    roots = tuple(Markup(setter.inline(f"sqrt({radicand})")) for radicand in offer["radicands"])
+    return Offered(roots, ratios({"ratios": offer["variables"]}, setter), bool(offer["letters_linear"]))
 
 
 def canonical(data: Data, setter: Typesetter) -> tuple[Titled, ...]:
@@ -175,9 +197,12 @@ def canonical(data: Data, setter: Typesetter) -> tuple[Titled, ...]:
         return ()
     size = len(data.get("rows", ())) or 1 + max(entry[0] for entry in data["transformation"])
     groups = []
-    for letter in data["letters"]:
+    for number, letter in enumerate(data["letters"], start=1):
         entries = data["matrices"][letter]
-        title = Markup(f"Residues at {setter.inline(letter)}")
+        title = f"<math>{indexed('l', number)}</math>"
+        if len(letter) <= _SHORT_LETTER:
+            title += f" = {setter.inline(letter)}"
+        title = Markup(f"Residues at {title}")
         if size <= _LARGEST_MATRIX:
             matrix = setter.matrix(entries, size)
             groups.append(Titled(title, (Markup(displayed(matrix)),)))

@@ -18,6 +18,7 @@ from ibpred.exact.grammar import parse_number
 from ibpred.numerics.crossings import crossings
 from ibpred.numerics.expanded import expanded_system
 from ibpred.numerics.laurent_line import carry_laurent, laurent_line, line_depth, regular_locus, spread
+from ibpred.progress import SILENT, Progress
 
 _DIGITS = 15  # a wrong side of a threshold or a wrong constant shows in the first
 _SPARE_BITS = 64
@@ -27,7 +28,11 @@ Data = Mapping[str, Any]
 
 
 def carried_check(
-    system: DifferentialSystem, signs: Mapping[str, int] | None, start: Data, end: Data
+    system: DifferentialSystem,
+    signs: Mapping[str, int] | None,
+    start: Data,
+    end: Data,
+    progress: Progress = SILENT,
 ) -> CheckResult | None:
     """Carry the masters from one table to the point of another and compare.
 
@@ -43,6 +48,8 @@ def carried_check(
     start, end
         Tables of values as `evaluate` prints them, of all masters in order; the first at a Euclidean point if
         there is one.
+    progress
+        Told about the steps of the way.
 
     Returns
     -------
@@ -73,7 +80,7 @@ def carried_check(
     except PointError:
         return None
     bits = bits_for(_DIGITS) + _SPARE_BITS
-    carried = carry_laurent(line, known, lowest, highest, bits)
+    carried = carry_laurent(line, known, lowest, highest, bits, progress)
     wrong = []
     with precision(bits):
         for number, (got, told) in enumerate(zip(carried, others, strict=True), start=1):

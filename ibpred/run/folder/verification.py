@@ -80,7 +80,7 @@ def _checks(material: Material, samples: int, progress: Progress) -> Iterator[Ch
         first, *others = material.tables
         progress.stage("continuation")
         for table in others:
-            found = carried_check(system, material.signs, first, table)
+            found = carried_check(system, material.signs, first, table, progress)
             if found is not None:
                 yield found
     for table in material.tables:

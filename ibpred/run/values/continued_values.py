@@ -359,7 +359,7 @@ def _carried(
     lowest = min((k + shift for value, shift in zip(values, shifts, strict=True) for k in value), default=0)
     expanded: ExpandedSystem = expanded_system(system, line_depth(shifts, lowest, highest))
     line = laurent_line(expanded, regular_locus(system), start.point, point, _turns(chain, signs))
-    carried = carry_laurent(line, values, lowest, highest, bits)
+    carried = carry_laurent(line, values, lowest, highest, bits, chain.progress)
     for value in carried:
         for ball in value.values():
             if not ball.is_finite():
