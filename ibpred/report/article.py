@@ -25,7 +25,7 @@ def _obstructions(dossier: Dossier) -> str:
         if found["operator"]:
             text += rf" Picard--Fuchs operator at $\epsilon=0$: \texttt{{{plain_latex(found['operator'])}}}."
         if found["geometry"]:
-            text += f" {plain_latex(found['geometry'])}."
+            text += f" Geometry: {plain_latex(found['geometry'])}."
         items.append(text)
     return _list("Blocks without canonical form", items)
 

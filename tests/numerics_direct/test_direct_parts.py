@@ -136,7 +136,7 @@ def test_integration_by_parts_continues_the_integral() -> None:
     """At large eps the original converges, too: both must agree there."""
     eps = 1.2
     whole = mpmath.quad(lambda t: density(EXAMPLE, (float(t),), eps), [0, 0.01, 1])
-    parts = logarithmic(EXAMPLE)
+    parts = logarithmic([EXAMPLE])
     assert all(a > -1 - 1e-9 for part in parts for a, _ in part.exponents)
     small = 0.05
     total = sum(_integral(part, small) for part in parts)
@@ -188,14 +188,14 @@ def test_negative_powers_are_derivatives() -> None:
 
     for order in range(4):
         expected = (-1) ** order * mpmath.diff(function, 0, order)
-        found = sum(density(part, (x,), eps) / x for part in differentiated(g, 1, order))
+        found = sum(density(part, (x,), eps) / x for part in differentiated([g], 1, order))
         assert found == pytest.approx(float(expected), rel=1e-7)
 
 
 def test_unregulated_divergences_are_refused() -> None:
     item = Integrand((1.0,), ((-1.0, 0.0),), {(0,): 1.0}, {(0,): 1.0}, {(0,): 1.0}, (0.0, 0.0), (0.0, 0.0))
     with pytest.raises(InputError, match="not regulate"):
-        logarithmic(item)
+        logarithmic([item])
 
 
 def test_compiled_sum_against_the_subtraction_formula() -> None:

@@ -118,7 +118,7 @@ def _without_lines(
     parts = [Integrand(series, exponents, one, u, f, u_power, f_power)]
     for i in reversed(range(n)):
         if powers[i] <= 0:
-            parts = [new for part in parts for new in differentiated(part, i, -powers[i])]
+            parts = differentiated(parts, i, -powers[i]) if parts else []
     for part in parts:
         for name, terms in (("U", part.u), ("F", part.f)):
             if not terms:
@@ -147,7 +147,8 @@ def _integrands(parts: list[Integrand], lines: int) -> list[Integrand]:
     f_points = np.array(list(flat[0].f), dtype=np.int64).reshape(len(flat[0].f), last)
     points = (u_points[:, None, :] + f_points[None, :, :]).reshape(len(u_points) * len(f_points), last)
     cones = simplicial_fan(points)
-    return [item for part in flat if part.q for cone in cones for item in logarithmic(on_cone(part, cone))]
+    used = [part for part in flat if part.q]
+    return [item for cone in cones for item in logarithmic([on_cone(part, cone) for part in used])]
 
 
 def _singular(item: Integrand) -> NDArray[np.int64]:

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -100,34 +101,71 @@ def _without_roots(g: Integrand) -> Integrand:
     return Integrand(series, exponents, image(g.q), image(g.u), image(g.f), g.u_power, g.f_power)
 
 
-def logarithmic(integrand: Integrand) -> list[Integrand]:
-    """Raise all exponents below -1 by integration by parts in t.
+def logarithmic(integrands: Sequence[Integrand]) -> list[Integrand]:
+    """Raise all exponents below -1 of a sum of integrands by integration by parts in t.
 
-    ``int_0^1 t^(e-1) g dt = g(1)/e - 1/e int_0^1 t^e g' dt`` for e = a + 1 + b eps with a + 1 < 0.
+    ``int_0^1 t^(e-1) g dt = g(1)/e - 1/e int_0^1 t^e g' dt`` for e = a + 1 + b eps with a + 1 < 0. The same
+    derivatives of Q, U and F taken in another order give the same powers, so parts are joined step by step:
+    their number stays polynomial in the number of steps.
 
     Raises
     ------
     InputError
         If an exponent is -1 at eps and stays there: the integral is not regulated.
     """
+    done: list[Integrand] = []
+    left = _collected(_sharing(integrands))
+    edges: dict[tuple[int, int], Terms] = {}
+    while left:
+        raised: list[Integrand] = []
+        for part in left:
+            j = _too_low(part)
+            if j is None:
+                done.append(part)
+            else:
+                raised += _raised(part, j, edges)
+        left = _collected(raised)
+    return _collected(done)
+
+
+def _sharing(integrands: Sequence[Integrand]) -> list[Integrand]:
+    """The same with one object for equal polynomials U and F."""
+    known: dict[frozenset[tuple[tuple[int, ...], float]], Terms] = {}
+
+    def one(terms: Terms) -> Terms:
+        return known.setdefault(frozenset(terms.items()), terms)
+
+    return [replace(item, u=one(item.u), f=one(item.f)) for item in integrands]
+
+
+def _too_low(integrand: Integrand) -> int | None:
+    """The first variable whose exponent must be raised."""
     for j, (a, b) in enumerate(integrand.exponents):
         if abs(a + 1) < 1e-9 and b == 0.0:
             raise InputError(
                 "the integral has a divergence that dimensional regularisation does not regulate"
             )
         if a < -1 - 1e-9:
-            return [part for raised in _raised(integrand, j) for part in logarithmic(raised)]
-    return [integrand]
+            return j
+    return None
 
 
-def _raised(g: Integrand, j: int) -> list[Integrand]:
+def _at_edge(terms: Terms, j: int, edges: dict[tuple[int, int], Terms]) -> Terms:
+    """U or F at t_j = 1: one object for all parts that share it, so that these can be joined."""
+    key = (id(terms), j)
+    if key not in edges:
+        edges[key] = without(terms, j, value=1)
+    return edges[key]
+
+
+def _raised(g: Integrand, j: int, edges: dict[tuple[int, int], Terms]) -> list[Integrand]:
     a, b = g.exponents[j]
     inverse = _divided(g.series, (a + 1, b))
     rest = (*g.exponents[:j], *g.exponents[j + 1 :])
     parts = []
     boundary = without(g.q, j, value=1)
     if boundary:
-        u, f = without(g.u, j, value=1), without(g.f, j, value=1)
+        u, f = _at_edge(g.u, j, edges), _at_edge(g.f, j, edges)
         parts.append(Integrand(inverse, rest, boundary, u, f, g.u_power, g.f_power))
     higher = (*g.exponents[:j], (a + 1, b), *g.exponents[j + 1 :])
     minus = tuple(-c for c in inverse)
@@ -157,12 +195,15 @@ def _factored(g: Integrand) -> Integrand:
     return Integrand(g.series, exponents, q, g.u, g.f, g.u_power, g.f_power)
 
 
-def differentiated(g: Integrand, i: int, order: int) -> list[Integrand]:
+def differentiated(integrands: Sequence[Integrand], i: int, order: int) -> list[Integrand]:
     """``(-d/dx_i)^order`` at x_i = 0: a line with power -order, its parameter dropped.
 
-    Follows from ``x^(a-1)/Gamma(a)`` tending to the derivative of order -a of the delta function.
+    The integrands are the terms of a sum, with the same objects U and F. It follows from
+    ``x^(a-1)/Gamma(a)`` tending to the derivative of order -a of the delta function.
     """
-    parts = [g]
+    parts = list(integrands)
+    u, f = parts[0].u, parts[0].f
+    slopes = derivative(u, i), derivative(f, i)
     for _ in range(order):
         new = []
         for part in parts:
@@ -171,36 +212,37 @@ def differentiated(g: Integrand, i: int, order: int) -> list[Integrand]:
                 (minus, derivative(part.q, i), part.u_power, part.f_power),
                 (
                     _times(minus, part.u_power),
-                    multiply(part.q, derivative(part.u, i)),
+                    multiply(part.q, slopes[0]),
                     (part.u_power[0] - 1, part.u_power[1]),
                     part.f_power,
                 ),
                 (
                     _times(minus, part.f_power),
-                    multiply(part.q, derivative(part.f, i)),
+                    multiply(part.q, slopes[1]),
                     part.u_power,
                     (part.f_power[0] - 1, part.f_power[1]),
                 ),
             ):
                 if q and any(series):
-                    new.append(Integrand(series, part.exponents, q, part.u, part.f, u_power, f_power))
-        parts = new
-    rest = (*g.exponents[:i], *g.exponents[i + 1 :])
+                    new.append(Integrand(series, part.exponents, q, u, f, u_power, f_power))
+        parts = _collected(new)
+    edges = without(u, i, value=0), without(f, i, value=0)
     result = []
     for part in parts:
-        q, u, f = (without(terms, i, value=0) for terms in (part.q, part.u, part.f))
+        rest = (*part.exponents[:i], *part.exponents[i + 1 :])
+        q = without(part.q, i, value=0)
         if q:
-            result.append(Integrand(part.series, rest, q, u, f, part.u_power, part.f_power))
+            result.append(Integrand(part.series, rest, q, *edges, part.u_power, part.f_power))
     return _collected(result)
 
 
 def _collected(parts: list[Integrand]) -> list[Integrand]:
-    """Join parts that differ in Q by a common number only."""
+    """Join parts that differ in Q and by a common number only; U and F are compared as objects."""
     found: dict[object, Integrand] = {}
     for part in parts:
         lead = next(k for k, c in enumerate(part.series) if c)
         unit = tuple(round(c / part.series[lead], 12) for c in part.series)
-        key = (unit, part.exponents, part.u_power, part.f_power)
+        key = (unit, part.exponents, part.u_power, part.f_power, id(part.u), id(part.f))
         if key in found:
             old = found[key]
             ratio = part.series[lead] / old.series[lead]

@@ -6,11 +6,9 @@ import json
 from pathlib import Path
 from typing import Any
 
-from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import InputError, UnfinishedError
-from ibpred.exact.rational import Rational
 from ibpred.family.signs import euclidean_signs
-from ibpred.iterated.solution import letter_roots
+from ibpred.numerics.laurent_line import regular_locus
 from ibpred.report.export.material import Material
 from ibpred.report.json_tables import differential_data, epsilon_data, solution_data, values_data
 from ibpred.run.chain.chain import Chain
@@ -90,25 +88,19 @@ def chain_material(chain: Chain, order: int, digits: int) -> Material:
     notes = []
     epsilon: Data | None = None
     solution: Data | None = None
-    letters: tuple[Rational, ...] = ()
-    variables: tuple[str, ...] = ()
     if len(family.invariants) > 1:
         found = chain.epsilon_form()
         epsilon = epsilon_data(family, chain.dimensionless(), found, chain.offered())
-        if isinstance(found, EpsilonForm):
-            letters, variables = found.letters, found.variables
     highest = chain.order_of_weight(2 * len(family.loops))
     try:
         solved = solution_of(chain, highest)
         solution = solution_data(family, completed_boundary(chain, highest), solved)
     except UnfinishedError as error:
         notes.append(f"no solution in iterated integrals: {error}")
-    singular = []
-    if len(variables) == 1:
-        singular = [root for root in letter_roots(letters, variables[0]) if root is not None]
+    locus = regular_locus(chain.derivation().system)
     tables = []
     try:
-        for point in sample_points(family, chain.signs(), signs is not None, singular):
+        for point in sample_points(family, chain.signs(), signs is not None, locus):
             values = evaluate(chain, point, (), order, digits)
             tables.append(values_data(family, point, digits, values))
     except UnfinishedError as error:

@@ -6,7 +6,6 @@ import json
 import time
 from collections.abc import Callable
 from dataclasses import dataclass
-from fractions import Fraction
 from functools import partial
 from pathlib import Path
 from typing import Any, TypeVar
@@ -17,7 +16,6 @@ from ibpred.diffeq.checks import CheckResult, check_system
 from ibpred.epsform.form import EpsilonForm, Obstructed
 from ibpred.epsform.verify import verify
 from ibpred.errors import IbpredError, OutOfTimeError, PointError, UnfinishedError
-from ibpred.iterated.solution import letter_roots
 from ibpred.iterated.weights import weight_excesses
 from ibpred.numerics.laurent_line import regular_locus
 from ibpred.numerics.value import Route
@@ -37,7 +35,7 @@ from ibpred.run.constants.solved import completed_boundary
 from ibpred.run.constants.solved import solution as solution_of
 from ibpred.run.storage.files import check_writable, write_folder
 from ibpred.run.values.evaluate import evaluate
-from ibpred.run.values.points import sample_points, singular_ratios
+from ibpred.run.values.points import sample_points
 from ibpred.sectors.order import sector_of
 
 _PICTURES_A_ROW = 5
@@ -119,7 +117,7 @@ def run_whole(chain: Chain, source: Path, folder: Path, digits: int) -> WholeRun
         _derive(chain, journal)
         form = _form(chain, journal)
         _solve(chain, journal, form)
-        _values(chain, journal, form, digits)
+        _values(chain, journal, digits)
     except OutOfTimeError as over:
         if "diffeq.json" not in journal.files or _is_finished(folder):
             raise
@@ -267,17 +265,13 @@ def _judge_boundary(journal: _Journal, boundary: Boundary, seconds: float) -> No
         journal.checks.append(CheckResult("boundary", True, told))
 
 
-def _values(chain: Chain, journal: _Journal, form: EpsilonForm | Obstructed | None, digits: int) -> None:
+def _values(chain: Chain, journal: _Journal, digits: int) -> None:
     """The masters at a Euclidean and a physical point, by the route that is open."""
     family = chain.definition
     signs = chain.signs()
-    singular: list[Fraction] = []
-    if not isinstance(form, EpsilonForm):
-        singular = singular_ratios(family, signs, regular_locus(chain.derivation().system))
-    elif form.variables:
-        singular = [root for root in letter_roots(form.letters, form.variables[0]) if root is not None]
+    locus = regular_locus(chain.derivation().system)
     tables, total, estimated = [], 0.0, set()
-    for where in sample_points(family, signs, chain.is_euclidean(), singular):
+    for where in sample_points(family, signs, chain.is_euclidean(), locus):
         try:
             values, seconds = journal.timed(partial(evaluate, chain, where, (), 0, digits))
         except (UnfinishedError, PointError) as error:

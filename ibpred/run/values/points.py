@@ -16,7 +16,7 @@ _SIZES = (Fraction(1, 3), Fraction(2, 7), Fraction(3, 11), Fraction(5, 13))
 
 
 def sample_points(
-    family: FamilyDefinition, signs: Mapping[str, int], euclidean: bool, singular: Collection[Fraction]
+    family: FamilyDefinition, signs: Mapping[str, int], euclidean: bool, locus: Collection[Rational]
 ) -> tuple[dict[str, Fraction], ...]:
     """One Euclidean point, and a physical one where there is one; or two points of the solution's region.
 
@@ -26,12 +26,12 @@ def sample_points(
         The family, and the signs of the region in which it is solved.
     euclidean
         Whether that region is Euclidean.
-    singular
-        Finite singular points of the ratio.
+    locus
+        Irreducible polynomials in the invariants: where the differential equations are singular.
     """
     if not euclidean:
-        return points_in_region(family, signs, singular)
-    further = physical_point(family, signs, singular)
+        return points_in_region(family, signs, locus)
+    further = physical_point(family, signs, singular_ratios(family, signs, locus))
     first = euclidean_point(family, signs)
     return (first,) if further is None else (first, further)
 
@@ -47,7 +47,7 @@ def euclidean_point(family: FamilyDefinition, signs: Mapping[str, int]) -> dict[
 
 
 def points_in_region(
-    family: FamilyDefinition, signs: Mapping[str, int], singular: Collection[Fraction]
+    family: FamilyDefinition, signs: Mapping[str, int], locus: Collection[Rational]
 ) -> tuple[dict[str, Fraction], dict[str, Fraction]]:
     """Two points in the region of the solution of a family without a Euclidean region.
 
@@ -55,11 +55,16 @@ def points_in_region(
     ----------
     family, signs
         The family, and the signs of that region.
-    singular
-        Finite singular points of the ratio.
+    locus
+        As for `sample_points`.
     """
-    nearest = min((root for root in singular if root > 0), default=Fraction(1))
     first = euclidean_point(family, signs)
+    other = next((name for name in first if name != family.unit), None)
+    nearest = Fraction(1)
+    if other is not None:
+        zeros = [z for letter in locus for z in zeros_along(letter, first, other)]
+        sizes = [signs[other] * z for z in zeros if isinstance(z, Fraction)]
+        nearest = min([z for z in sizes if z > 0], default=Fraction(1))
     scaled = {name: v if name == family.unit else v * nearest for name, v in first.items()}
     return scaled, {name: v if name == family.unit else 2 * v for name, v in scaled.items()}
 
