@@ -6,13 +6,13 @@ from fractions import Fraction
 from pathlib import Path
 
 import pytest
-from ibpred.run.folder.exports import folder_material
-from ibpred.run.values.points import free_invariant, sample_points, zeros_along
 
 from ibpred.diffeq.derive import singular_locus
 from ibpred.exact.grammar import parse_number, parse_rational
 from ibpred.exact.rational import ring
 from ibpred.report.export.material import system_of
+from ibpred.run.folder.exports import folder_material
+from ibpred.run.values.points import free_invariant, sample_points, zeros_along
 
 ROOT = Path(__file__).parents[2]
 FOLDERS = sorted(path for path in (ROOT / "solutions").iterdir() if path.is_dir())
