@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from functools import cached_property
 
 import ibpred
+from ibpred.boundary.continued import continued
 from ibpred.boundary.edges import Corner
 from ibpred.boundary.explore import BoundaryProblem
 from ibpred.boundary.fix import Boundary, fix_constants
@@ -37,6 +38,7 @@ from ibpred.reduction.table import ReductionTable
 from ibpred.reduction.wanted import check_powers
 from ibpred.report.text import integral_text
 from ibpred.run.chain.normalisation import normalised, trivial_form
+from ibpred.run.chain.records import Counts, Outcome, StoppedError, outcome_of
 from ibpred.run.chain.stages import SEED, Stages
 from ibpred.run.storage.rows import table_rows
 from ibpred.run.storage.store import Store
@@ -107,9 +109,9 @@ class Chain(Stages):
         masters = self.masters().masters
         return self.kept(
             "counts",
-            _Counts,
+            Counts,
             None,
-            lambda: _Counts(
+            lambda: Counts(
                 compare_counts(self.definition, self.analysis(), masters, self.primes[0], SEED, self.progress)
             ),
         ).sectors
@@ -176,6 +178,15 @@ class Chain(Stages):
         signs = region_signs(self.definition)
         return signs, euclidean_signs(self.definition) == signs
 
+    def has_euclidean_region(self) -> bool:
+        """Whether the family asks for another region than the Euclidean one that it has."""
+        return bool(self.definition.region) and euclidean_signs(self.definition) is not None
+
+    def in_euclidean_region(self) -> Chain:
+        """The same family solved in its Euclidean region, from where i0 leads everywhere."""
+        plain = replace(self.definition, region=())
+        return Chain(plain, self.store, self.progress, self.workers, self.preferred)
+
     def coordinates(self) -> Coordinates:
         """Dimensionless variables: the ratios, the user's, or those in which square roots are rational."""
         system = self.derivation().system
@@ -234,17 +245,17 @@ class Chain(Stages):
         """
         connection = self.connection()
 
-        def compute() -> _Outcome:
+        def compute() -> Outcome:
             notes = self._notes("blocks")
             found = factorise(connection, self.primes, SEED, self.watcher, self.expired, notes)
             if isinstance(found, Obstructed) and not found.complete:
-                raise _StoppedError(found)
+                raise StoppedError(found)
             values = self.coordinates().values.values()
-            return _outcome(normalised(found, values, lambda form: self.boundary_problem(form, 0)))
+            return outcome_of(normalised(found, values, lambda form: self.boundary_problem(form, 0)))
 
         try:
-            stored = self.kept("epsilon-form", _Outcome, None, compute)
-        except _StoppedError as stopped:
+            stored = self.kept("epsilon-form", Outcome, None, compute)
+        except StoppedError as stopped:
             return stopped.reached
         found = stored.form if stored.form is not None else stored.obstructed
         assert found is not None
@@ -296,11 +307,11 @@ class Chain(Stages):
             If some block has none.
         """
 
-        def compute() -> _Outcome:
+        def compute() -> Outcome:
             plain = ratio_coordinates(self.derivation().system, self.signs())
-            return _outcome(factorise(self.connection_in(plain), self.primes, SEED, self.progress))
+            return outcome_of(factorise(self.connection_in(plain), self.primes, SEED, self.progress))
 
-        found = self.kept("epsilon-form in the ratios", _Outcome, None, compute).form
+        found = self.kept("epsilon-form in the ratios", Outcome, None, compute).form
         if found is None:
             raise ObstructionError(f"{self.definition.name} has no epsilon-form in its ratios")
         return found
@@ -337,6 +348,11 @@ class Chain(Stages):
             form = self.solved_form()
             self.progress.stage("boundary constants")
             if form.variables:
+                if self.has_euclidean_region():
+                    try:
+                        return self._continued(form, weight, corner)
+                    except UnfinishedError as error:
+                        self.progress.stage(f"conditions in the region itself ({error})")
                 problem = self.boundary_problem(form, weight, corner)
                 return fix_constants(problem, progress=self.progress)
             if corner:
@@ -348,6 +364,15 @@ class Chain(Stages):
             return boundary_of_series(one_scale_values(self.definition, masters, signs, weight))
 
         return self.kept("boundary", Boundary, [weight, *corner] if corner else weight, compute)
+
+    def _continued(self, form: EpsilonForm, weight: int, corner: Corner) -> Boundary:
+        """The boundary constants of the Euclidean region, its invariants turned to those of this one."""
+        plain = self.in_euclidean_region()
+        if not (self.in_ratios() and plain.in_ratios()):
+            raise UnfinishedError("constants are continued to a region in its ratios only")
+        known, masters = plain.boundary(weight, corner), self.masters().masters
+        signs = plain.signs(), self.signs()
+        return continued(known, plain.solved_form(), form, self.definition, masters, *signs)
 
     def boundary_problem(self, form: EpsilonForm, weight: int, corner: Corner = ()) -> BoundaryProblem:
         """What the boundary constants through ``eps^weight`` follow from; see `boundary`."""
@@ -377,28 +402,3 @@ class Chain(Stages):
     def label(self, row: int) -> str:
         """A master by name."""
         return integral_text(self.definition.name, self.masters().masters[row])
-
-
-@dataclass(frozen=True)
-class _Counts:
-    sectors: tuple[SectorCount, ...]
-
-
-class _StoppedError(Exception):
-    """Carries what was reached when the time was over past the store."""
-
-    def __init__(self, reached: Obstructed) -> None:
-        super().__init__("the time is over")
-        self.reached = reached
-
-
-@dataclass(frozen=True)
-class _Outcome:
-    form: EpsilonForm | None
-    obstructed: Obstructed | None
-
-
-def _outcome(found: EpsilonForm | Obstructed) -> _Outcome:
-    if isinstance(found, EpsilonForm):
-        return _Outcome(found, None)
-    return _Outcome(None, found)

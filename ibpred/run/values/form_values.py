@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import replace
 from fractions import Fraction
 
 from ibpred.boundary.fix import Boundary
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
-from ibpred.family.signs import euclidean_signs, masses
+from ibpred.family.signs import masses
 from ibpred.family.units import unit_exponent
 from ibpred.iterated.solution import fibration, letter_roots
 from ibpred.numerics.canonical import CanonicalSystem, canonical_system
@@ -67,14 +66,17 @@ def form_values(
     weight = max(needed_order(rows_of_all, order) or 0, 2 * len(family.loops))
     found: dict[int, tuple[Value, ...]] = {}
     groups: dict[Channel | None, list[int]] = {}
+    elsewhere: list[int] = []
     for number, place in enumerate(chosen):
-        groups.setdefault(channel_at(chain, form, place), []).append(number)
+        if chain.has_euclidean_region() and not _is_inside(form, place):
+            elsewhere.append(number)
+        else:
+            groups.setdefault(channel_at(chain, form, place), []).append(number)
+    if elsewhere:
+        others = [points[number] for number in elsewhere]
+        values = form_values(chain.in_euclidean_region(), others, wanted, order, digits)
+        found |= dict(zip(elsewhere, values, strict=True))
     for channel, group in groups.items():
-        if channel is not None and not channel.is_base() and _has_euclidean_region(chain):
-            others = [points[number] for number in group]
-            values = form_values(_in_euclidean_region(chain), others, wanted, order, digits)
-            found |= dict(zip(group, values, strict=True))
-            continue
         boundary = boundary_at(chain, channel, weight)
         chain.progress.stage("values")
         values = evaluate_places(
@@ -91,17 +93,6 @@ def form_values(
     return tuple(found[number] for number in range(len(places)))
 
 
-def _has_euclidean_region(chain: Chain) -> bool:
-    """Whether the family asks for another region than the Euclidean one that it has."""
-    return bool(chain.definition.region) and euclidean_signs(chain.definition) is not None
-
-
-def _in_euclidean_region(chain: Chain) -> Chain:
-    """The same family solved in its Euclidean region, from where i0 leads everywhere."""
-    plain = replace(chain.definition, region=())
-    return type(chain)(plain, chain.store, chain.progress, chain.workers, chain.preferred)
-
-
 def channel_at(chain: Chain, form: EpsilonForm, place: KinematicPoint) -> Channel | None:
     """The region of a point that has constants of its own; None where one set serves all regions.
 
@@ -113,10 +104,7 @@ def channel_at(chain: Chain, form: EpsilonForm, place: KinematicPoint) -> Channe
     if chain.is_euclidean():
         return None
     if len(form.variables) != 1:
-        levels = [level for level, _ in fibration(form, tuple(reversed(form.variables)))]
-        ratios = dict(zip(form.variables, (target.value for target in place.ratios.values()), strict=True))
-        positive = place.unit.half_turns == 0 and all(value > 0 for value in ratios.values())
-        if positive and is_next_to_corner(levels, ratios):
+        if _is_inside(form, place):
             return BASE
         raise UnfinishedError(
             "outside a Euclidean region and in several ratios constants are known in one region only: at "
@@ -124,6 +112,14 @@ def channel_at(chain: Chain, form: EpsilonForm, place: KinematicPoint) -> Channe
         )
     (ratio,) = place.ratios.values()
     return channel_of(ratio.value, place.unit.half_turns, letter_roots(form.letters, form.variables[0]))
+
+
+def _is_inside(form: EpsilonForm, place: KinematicPoint) -> bool:
+    """Whether a point lies in the region of the solution, which is not Euclidean."""
+    levels = [level for level, _ in fibration(form, tuple(reversed(form.variables)))]
+    ratios = dict(zip(form.variables, (target.value for target in place.ratios.values()), strict=True))
+    positive = place.unit.half_turns == 0 and all(value > 0 for value in ratios.values())
+    return positive and is_next_to_corner(levels, ratios)
 
 
 def boundary_at(chain: Chain, channel: Channel | None, weight: int) -> Boundary:
