@@ -195,6 +195,14 @@ def test_three_loop_banana() -> None:
 
 
 @pytest.mark.slow
+def test_four_loop_banana() -> None:
+    from bessel_bananas import coefficients
+
+    value = value_of("banana-four-loop", (1,) * 5 + (0,) * 9, digits=10, s="-1/3", m2="1")
+    compare(value, coefficients(4, (1,) * 5, (1,) * 5, mpf(-1) / 3, (-4, 0), 20), 10)
+
+
+@pytest.mark.slow
 def test_double_box_in_the_physical_region_is_the_continued_one() -> None:
     # s = 3, t = -1/3: the poles of the Euclidean closed form continued in log(x), x = t/s, -s -> s exp(-i pi)
     value = value_of("planar-double-box", (1, 1, 1, 1, 1, 1, 1, 0, 0), s="3", t="-1/3")

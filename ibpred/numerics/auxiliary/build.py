@@ -52,7 +52,7 @@ def auxiliary_plan(
     Parameters
     ----------
     family
-        Its lines that are no numerators must be given by momenta.
+        Its lines that are no numerators must be given by momenta, or be linear in the loop momenta.
     point
         Exact values of all invariants, Euclidean or physical.
     wanted
