@@ -209,7 +209,7 @@ def _form(chain: Chain, journal: _Journal) -> EpsilonForm | Obstructed | None:
         )
         journal.note("epsilon-form", f"none exists: {told}", seconds)
         return found
-    journal.note("epsilon-form", f"{len(found.letters)} letters", seconds)
+    journal.note("epsilon-form", f"{len(found.letters) + len(found.odd_letters)} letters", seconds)
     passed = verify(chain.connection(), found)
     told = "exact substitution into the differential equation"
     journal.checks.append(CheckResult("epsilon-form", passed, told))
