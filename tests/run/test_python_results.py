@@ -70,6 +70,13 @@ def check(result: Result) -> None:
         result.definition = None  # type: ignore[misc, assignment]
 
 
+def test_sectors(box: Family) -> None:
+    found = box.sectors()
+    check(found)
+    assert len(found.zero) + sum(map(len, found.classes)) == 16
+    assert "16 sectors, of which 9 vanish" in found._repr_html_()
+
+
 def test_masters(box: Family) -> None:
     found = box.masters()
     check(found)

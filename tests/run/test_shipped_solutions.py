@@ -13,7 +13,14 @@ from ibpred.run.folder.verification import verify_folder
 ROOT = Path(__file__).parents[2]
 FOLDERS = sorted(path for path in (ROOT / "solutions").iterdir() if path.is_dir())
 QUICK = 2_000  # sample points of the direct integration
-LONG = {"box-four-legs", "box-three-legs", "pentagon", "pentagon-massive-loop", "pentagon-one-leg"}
+LONG = {
+    "banana-three-loop",
+    "box-four-legs",
+    "box-three-legs",
+    "pentagon",
+    "pentagon-massive-loop",
+    "pentagon-one-leg",
+}
 
 
 def test_there_are_some() -> None:

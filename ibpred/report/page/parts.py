@@ -26,6 +26,17 @@ class MastersPart:
 
 
 @dataclass(frozen=True)
+class SectorsPart:
+    """The graph, U and F, and the classes of equivalent sectors by their corner integrals."""
+
+    picture: Markup
+    polynomials: tuple[Markup, ...]
+    sectors: int
+    zero_sectors: int
+    classes: tuple[tuple[str, ...], ...]
+
+
+@dataclass(frozen=True)
 class ReductionsPart:
     """Integrals or sums in terms of masters, these by name; how many are left out for their length."""
 
@@ -75,6 +86,17 @@ class ValuesPart:
 def masters_part(family: FamilyDefinition, masters: Sequence[Sequence[int]]) -> MastersPart:
     """The masters of a family."""
     return MastersPart(sections.master_rows(family, masters))
+
+
+def sectors_part(family: FamilyDefinition, data: Data) -> SectorsPart:
+    """What `inspect` prints."""
+    return SectorsPart(
+        sections.picture(family),
+        sections.polynomials(data, typesetter(family)),
+        int(data["sectors"]),
+        len(data["zero_sectors"]),
+        tuple(tuple("".join(map(str, sector)) for sector in members) for members in data["sector_classes"]),
+    )
 
 
 def reductions_part(family: FamilyDefinition, data: Data) -> ReductionsPart:

@@ -21,6 +21,7 @@ from ibpred.report.json_common import common_reduction_data, reduction_entry, su
 from ibpred.report.json_tables import (
     differential_data,
     epsilon_data,
+    inspect_data,
     masters_data,
     solution_data,
     values_data,
@@ -42,6 +43,7 @@ from ibpred.run.python.results import (
     ObstructedResult,
     PointValues,
     ReductionResult,
+    SectorsResult,
     SolutionResult,
     SumsResult,
     ValuesResult,
@@ -51,7 +53,6 @@ from ibpred.run.storage.store import Store
 from ibpred.run.values.evaluate import evaluate
 from ibpred.run.values.expansions import Approach, expand
 from ibpred.run.values.grids import Axis, evaluate_grid
-from ibpred.sectors.analysis import SectorAnalysis
 
 R = TypeVar("R")
 
@@ -108,9 +109,10 @@ class Family:
             with told(chain):
                 return compute(chain)
 
-    def sectors(self) -> SectorAnalysis:
+    def sectors(self) -> SectorsResult:
         """Zero sectors, classes of equivalent sectors, maps between them."""
-        return self._with_chain(lambda chain: chain.analysis())
+        found = self._with_chain(lambda chain: chain.analysis())
+        return SectorsResult.of(found, self.definition, inspect_data(self.definition, found))
 
     def masters(self) -> MastersResult:
         """The master integrals."""

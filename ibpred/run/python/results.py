@@ -34,6 +34,7 @@ from ibpred.report.page import parts
 from ibpred.report.page.build import fragment
 from ibpred.report.plots import curve_figure
 from ibpred.run.values.expansions import Approach, Expansion
+from ibpred.sectors.analysis import SectorAnalysis
 
 Data = dict[str, Any]
 
@@ -117,6 +118,22 @@ class _Combined(Result):
 
     def _repr_latex_(self) -> str:
         return latex_lines.display(latex_lines.reduction_lines(labelled(self.shown)))
+
+
+@dataclass(frozen=True)
+class SectorsResult(SectorAnalysis, Result):
+    """The sectors of a family."""
+
+    record = SectorAnalysis
+
+    def __str__(self) -> str:
+        return text.inspect_text(self.shown)
+
+    def _repr_html_(self) -> str:
+        return fragment("sectors", parts.sectors_part(self.definition, self.shown))
+
+    def _repr_latex_(self) -> str:
+        return latex_lines.display([f"{n} &= {expression_latex(self.shown[n])}" for n in ("U", "F")])
 
 
 @dataclass(frozen=True)
