@@ -28,11 +28,11 @@ from ibpred.numerics.frobenius.path import planned
 from ibpred.numerics.path import Target
 from ibpred.numerics.rooted import Point, RootedSystem, centre_of, rooted_system, roots_after
 from ibpred.numerics.series import carried, from_base
+from ibpred.numerics.stations import Ratios, by_a_station
 
 _CURVE = ring(("eps", "x"))
 _FIRST_STEP = 0.5  # in radii of convergence
 _LAST_STEP = 0.7
-_SHIFTS = (Fraction(0), Fraction(1, 16), Fraction(-1, 19), Fraction(1, 7), Fraction(-1, 23))
 _ZERO: Point = (Fraction(0), Fraction(0))
 
 
@@ -77,7 +77,11 @@ def evaluate_rooted(
         raise PointError("the ratios turn in both directions on the way to this point; choose another unit")
     levels = _levels(form, corner)
     moduli = {name: target.modulus for name, target in targets.items()}
-    start, here = _in_positive_region(form, corner, levels, constants, moduli, bits)
+    start, here = by_a_station(
+        letters,
+        moduli,
+        lambda point: _through_positive_ratios(form, corner, levels, constants, point, bits),
+    )
     end = {name: target.value for name, target in targets.items()}
     if start != end:
         x = _CURVE.variable("x")
@@ -92,36 +96,18 @@ Levels = tuple[Sequence[Alphabet], Sequence[tuple[Rational, ...]]]
 """Alphabets with the first 0, 1, ... ratios of a corner at zero, and radicands with the first 0, ..., all."""
 
 
-def _in_positive_region(
-    form: EpsilonForm,
-    corner: Sequence[str],
-    levels: Levels,
-    constants: Orders,
-    wanted: Mapping[str, Fraction],
-    bits: int,
-) -> tuple[Mapping[str, Fraction], Carried]:
-    """From the corner to a positive point: the one wanted, or one near it.
-
-    Where smaller ratios are still zero letters may vanish at the wanted value of a ratio though the point
-    itself is regular.
-    """
+def _through_positive_ratios(
+    form: EpsilonForm, corner: Sequence[str], levels: Levels, constants: Orders, point: Ratios, bits: int
+) -> Carried:
+    """From the corner to a positive point."""
     with precision(bits):
         roots = tuple(complex_ball(q.to_fraction(), 0, bits).sqrt() for q in levels[1][-1])
-    failure: PointError | None = None
-    for shift in _SHIFTS:
-        point = {name: value * (1 + shift * (k + 1)) for k, (name, value) in enumerate(wanted.items())}
-        here = Carried(constants, roots)
-        try:
-            for k in reversed(range(len(corner))):
-                images = {name: _CURVE.constant(point[name]) for name in corner[k + 1 :]}
-                images[corner[k]] = _CURVE.variable("x")
-                here = _along_axis(_system(form, levels, k, images), here, point[corner[k]], bits)
-        except PointError as error:
-            failure = failure or error
-        else:
-            return point, here
-    assert failure is not None
-    raise failure
+    here = Carried(constants, roots)
+    for k in reversed(range(len(corner))):
+        images = {name: _CURVE.constant(point[name]) for name in corner[k + 1 :]}
+        images[corner[k]] = _CURVE.variable("x")
+        here = _along_axis(_system(form, levels, k, images), here, point[corner[k]], bits)
+    return here
 
 
 def _system(form: EpsilonForm, levels: Levels, level: int, images: Mapping[str, Rational]) -> RootedSystem:

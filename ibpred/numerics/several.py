@@ -27,6 +27,7 @@ from ibpred.numerics.continuation import evaluate_canonical
 from ibpred.numerics.crossings import along_line, approximate_roots, around, coefficients, crossings
 from ibpred.numerics.path import Target
 from ibpred.numerics.series import carried
+from ibpred.numerics.stations import Ratios, by_a_station
 
 
 def evaluate_several(
@@ -53,19 +54,22 @@ def evaluate_several(
         If a letter vanishes at the point, or half turns in both directions meet.
     """
     refuse_singular_point(form, targets)
-    moduli = {name: target.modulus for name, target in targets.items()}
-    values = constants
-    for k in reversed(range(len(corner))):
-        fixed = {name: moduli[name] for name in corner[k + 1 :]}
-        system = leg_system(form, corner[:k], corner[k], fixed)
-        values = evaluate_canonical(system, values, Target(moduli[corner[k]], 0), bits)
     turns = {name: target.half_turns for name, target in targets.items()}
-    if not any(turns.values()):
-        return values
     if {1, -1} <= set(turns.values()):
         raise PointError("the ratios turn in both directions on the way to this point; choose another unit")
+
+    def way(point: Ratios) -> Orders:
+        values = constants
+        for k in reversed(range(len(corner))):
+            fixed = {name: point[name] for name in corner[k + 1 :]}
+            system = leg_system(form, corner[:k], corner[k], fixed)
+            values = evaluate_canonical(system, values, Target(point[corner[k]], 0), bits)
+        return values
+
+    moduli = {name: target.modulus for name, target in targets.items()}
+    start, values = by_a_station(form.letters, moduli, way)
     end = {name: target.value for name, target in targets.items()}
-    return along(form, moduli, end, turns, values, bits)
+    return values if start == end else along(form, start, end, turns, values, bits)
 
 
 def refuse_singular_point(form: EpsilonForm, targets: Mapping[str, Target]) -> None:
