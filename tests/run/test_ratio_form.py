@@ -48,8 +48,8 @@ def test_both_forms_give_the_same_values(name, tmp_path):
 
 
 def test_letters_that_vanish_on_the_way_only(tmp_path):
-    # p2sq/s = 1 + t/s: the letter 1 + x - y - z vanishes while z = p4sq/s is still zero, not at the point; the
-    # box does not change when p2 and p4 are exchanged, but the way does
+    # p2sq/s = 1 + t/s: the letter 1 + x - y - z vanishes while z = p4sq/s is still zero, not at the point;
+    # the box does not change when p2 and p4 are exchanged, but the way does
     name = "box-two-opposite-legs"
     numbers = [("s", "-1"), ("t", "-1/3"), ("p2sq", "-4/3"), ("p4sq", "-1/5")]
     point = {invariant: Fraction(value) for invariant, value in numbers}
