@@ -131,7 +131,8 @@ def _successors(state: _State) -> Iterator[_State]:
             if step is None:
                 continue
             letters = _irreducible([step.pulled(letter) for letter in state.letters])
-            choices = {str(s.value): s for s in normalisations(step, letters)}
+            # the step as it is serves where letters have fewer than three zeros
+            choices = {str(s.value): s for s in (step, *normalisations(step, letters))}
             for choice in sorted(choices.values(), key=lambda s: _size(s.value))[:_TRIED]:
                 yield _applied(state, choice)
 

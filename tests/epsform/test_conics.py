@@ -5,10 +5,14 @@ from __future__ import annotations
 import pytest
 
 from ibpred.epsform.conics import normalisations, parametrised, square_root, without_squares
+from ibpred.epsform.form import Connection
 from ibpred.epsform.rationalise import positive_at_corner, rationalise
+from ibpred.epsform.variables import root_variables
 from ibpred.exact.grammar import parse_rational
+from ibpred.exact.primes import first_primes
 from ibpred.exact.rational import ring
 
+PRIMES = first_primes(20)
 KALLEN = "x^2-2*x*y+y^2+2*x+2*y+1"
 
 
@@ -80,3 +84,49 @@ def test_a_cubic_in_every_variable_is_left() -> None:
     _, element = in_ring("xy")
     given = [element("x^3+y^3+x+y+1")]
     assert rationalise(("x", "y"), [element("x")], given, [element("x"), element("y")]) is None
+
+
+def diagonal_system(field, *letters: tuple[str, str]) -> Connection:
+    """Functions of size one: ``f = letter^exponent`` each."""
+    size = len(letters)
+    matrices = {}
+    for name in field.names[1:]:
+        rows = [[field.zero] * size for _ in range(size)]
+        for k, (letter, exponent) in enumerate(letters):
+            value = parse_rational(letter, field)
+            rows[k][k] = parse_rational(exponent, field) * value.derivative(name) / value
+        matrices[name] = tuple(map(tuple, rows))
+    labels = tuple(f"I{k + 1}" for k in range(size))
+    return Connection(field.names[1:], field, matrices, (1,) * size, labels)
+
+
+def test_variables_with_linear_letters_are_used() -> None:
+    field, element = in_ring("xy")
+    system = diagonal_system(field, ("x", "eps"), ("y", "-eps"), (KALLEN, "-1/2-eps"))
+    found = root_variables(system, PRIMES, 1)
+    assert found.offered is None
+    assert found.used is not None
+    assert found.used.linear
+    assert found.used.radicands == (element(KALLEN),)
+    images = dict(zip("xy", found.used.images, strict=True))
+    assert square_root(element(KALLEN).substitute(images)) is not None
+
+
+def test_variables_with_other_letters_are_offered_only() -> None:
+    field, element = in_ring("xy")
+    system = diagonal_system(field, ("x^5+y^5+x*y+1", "eps"), (KALLEN, "-1/2-eps"))
+    found = root_variables(system, PRIMES, 1)
+    assert found.used is None
+    assert found.offered is not None
+    assert not found.offered.linear
+    images = dict(zip("xy", found.offered.images, strict=True))
+    assert square_root(element(KALLEN).substitute(images)) is not None
+
+
+def test_a_root_that_nothing_removes() -> None:
+    """The root of Bhabha scattering's double box (Festi, van Straten, arXiv:1809.04970)."""
+    field, _ = in_ring("xy")
+    root = "(x+y)*(x*y+1)*(x^2*y+x*y^2-4*x*y+x+y)"
+    found = root_variables(diagonal_system(field, ("x", "eps"), (root, "-1/2")), PRIMES, 1)
+    assert found.used is None
+    assert found.offered is None
