@@ -104,12 +104,15 @@ def picture(family: FamilyDefinition) -> Markup:
 
 def master_rows(family: FamilyDefinition, masters: Sequence[Sequence[int]]) -> tuple[MasterRow, ...]:
     """The masters."""
+    pictures: dict[int, Markup] = {}
     rows = []
     for number, powers in enumerate(masters, start=1):
-        svg = ""
-        if family.graph is not None:
-            svg = sector_svg(family, sector_of(tuple(powers)), "")
-        rows.append(MasterRow(_math(indexed("I", number)), integral_text(family.name, powers), Markup(svg)))
+        sector = sector_of(tuple(powers))
+        if sector not in pictures:
+            drawn = sector_svg(family, sector, "") if family.graph is not None else ""
+            pictures[sector] = Markup(drawn)
+        symbol = _math(indexed("I", number))
+        rows.append(MasterRow(symbol, integral_text(family.name, powers), pictures[sector]))
     return tuple(rows)
 
 
