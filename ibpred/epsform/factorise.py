@@ -32,8 +32,9 @@ def factorise(
 ) -> EpsilonForm | Obstructed:
     """Bring a system to epsilon-factorised form, or say what is in the way.
 
-    Coupled diagonal blocks by lattices and global sections (see `sections`), the couplings between blocks
-    by exact elimination (see `triangular`), then the constant matrix that factors eps out (see `constant`,
+    Coupled diagonal blocks by lattices and global sections (see `sections`; `characters` where functions of
+    one block carry different square roots), the couplings between blocks by exact elimination (see
+    `triangular`), then the constant matrix that factors eps out (see `constant`,
     which also says how the functions are normalised). The result is checked by exact substitution.
 
     Parameters
@@ -57,7 +58,7 @@ def factorise(
     -------
     outcome
         `Obstructed` is a mathematical finding, not an error: no form exists over functions rational in
-        the ratios, times a square root for each uncoupled function.
+        the ratios, times square roots of such functions.
 
     Raises
     ------
