@@ -135,3 +135,20 @@ def test_words_are_the_functions(name, tmp_path):
                     total /= mp.sqrt(number(form.radicands[index], point))
                 value = mpf(found[k][i].real.mid().str(40, radius=False))
                 assert abs(total - value) < mpf(10) ** -15, (i, k, total, value)
+
+
+@pytest.mark.slow
+def test_constants_at_different_corners_are_those_of_one_function(tmp_path):
+    with Store(tmp_path) as store:
+        chain = Chain(read_family_file(FAMILIES / "box-four-legs.toml"), store, SILENT, 1)
+        form = chain.solved_form()
+        boundaries = [chain.boundary(2, corner) for corner in ((), ("x", "y", "z", "x4", "x5"))]
+    assert any(form.tags)
+    sizes = (Fraction(1, 3), Fraction(2, 7), Fraction(3, 11), Fraction(5, 13), Fraction(1, 5))
+    targets = {name: Target(size, 0) for name, size in zip(form.variables, sizes, strict=True)}
+    found = []
+    for boundary in boundaries:
+        constants = tuple(tuple(c.ball(BITS) for c in vector) for vector in boundary.constants[:3])
+        found.append(evaluate_rooted(form, boundary.corner, constants, targets, BITS))
+    for left, right in zip(*found, strict=True):
+        assert all(a.overlaps(b) for a, b in zip(left, right, strict=True))
