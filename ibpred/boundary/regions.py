@@ -19,8 +19,8 @@ from math import factorial, prod
 from ibpred.boundary.approach import Approach, is_positive_before, leading, leading_at, valuation
 from ibpred.boundary.expansion import ClosedForm, on_line
 from ibpred.boundary.gamma import Piece, parametric_form
-from ibpred.boundary.polytope import LowerFacet, lower_facets, separating_functional
-from ibpred.boundary.thresholds import Monomials, threshold_exponents
+from ibpred.boundary.polytope import LowerFacet, lower_facets
+from ibpred.boundary.thresholds import Monomials, is_separated, threshold_exponents
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.polynomials import symanzik
@@ -250,7 +250,7 @@ def _nested(state: _Expansion, approach: Approach, scales: Sequence[str]) -> tup
 def _at_negative(state: _Expansion, variable: str, point: Fraction) -> tuple[Region, ...] | None:
     """Behaviour at a negative point: that of a regular one, or that at a threshold."""
     second = {t.exponents: t.coefficient for t in state.terms if t.massive}
-    if _separated(second, variable, point):
+    if is_separated(second, variable, point):
         return (Region(Exponent((Fraction(0),), (Fraction(0),), (False,)), None),)
     pieces = []
     for piece in state.pieces:
@@ -316,31 +316,6 @@ def _restricted(terms: Coefficients, sector: Sequence[int]) -> dict[tuple[int, .
         for e, c in terms.items()
         if not any(n for i, n in enumerate(e) if i not in inside)
     }
-
-
-def _separated(terms: Coefficients, variable: str, point: Fraction) -> bool:
-    """Whether no Landau singularity lies at a negative point on the principal sheet.
-
-    Each coefficient must be alpha + beta x with alpha, beta >= 0 (then F does not vanish for x off the
-    negative axis) and must not vanish at the point. If a linear functional of the exponents separates
-    positive from negative terms strictly, F and its scaling derivative along it have no common zero
-    at positive parameters, nor on any face; rotating the parameters along it keeps F away from zero.
-    """
-    above: list[tuple[int, ...]] = []
-    below: list[tuple[int, ...]] = []
-    for exponents, coefficient in terms.items():
-        if not coefficient.is_polynomial():
-            return False
-        slope = coefficient.derivative(variable)
-        if not slope.is_constant():
-            return False
-        alpha = coefficient.substitute({variable: 0}).to_fraction()
-        beta = slope.to_fraction()
-        value = alpha + beta * point
-        if alpha < 0 or beta < 0 or value == 0:
-            return False
-        (above if value > 0 else below).append(exponents)
-    return separating_functional(above, below) is not None
 
 
 def _pieces(

@@ -17,7 +17,7 @@ from fractions import Fraction
 from math import comb, isqrt
 
 from ibpred.boundary.approach import has_root_before, valuation
-from ibpred.boundary.polytope import lower_facets
+from ibpred.boundary.polytope import lower_facets, separating_functional
 from ibpred.exact.rational import Rational
 
 Exponents = tuple[int, ...]
@@ -90,6 +90,32 @@ def threshold_exponents(
         if parts is not None:
             return tuple(found for part in parts for found in _exponents(part, pieces, dimension, order))
     return None
+
+
+def is_separated(terms: Mapping[Exponents, Rational], variable: str, point: Fraction) -> bool:
+    """Whether no Landau singularity lies at a negative point on the sheet of the Euclidean region.
+
+    If no term of F vanishes there and a linear functional of the exponents separates positive from negative
+    terms strictly, F and its scaling derivative along it have no common zero at positive parameters, nor on
+    any face; rotating the parameters along it keeps F away from zero.
+
+    Parameters
+    ----------
+    terms
+        F, its coefficients in one variable.
+    variable, point
+        As for `threshold_exponents`.
+    """
+    if not any(c.derivative(variable) for c in terms.values()):
+        return all(c.to_fraction() > 0 for c in terms.values())
+    pencil = _pencil(list(terms.values()), variable)
+    local = None if pencil is None else _local(pencil[0], variable, point)
+    if pencil is None or local is None:
+        return False
+    values = {e: a + b * local[0] for e, (a, b) in zip(terms, pencil[1], strict=True)}
+    above = [e for e, value in values.items() if value > 0]
+    below = [e for e, value in values.items() if value < 0]
+    return len(above) + len(below) == len(values) and separating_functional(above, below) is not None
 
 
 def _pencil(coefficients: Sequence[Rational], variable: str) -> tuple[Rational, list[Pair]] | None:

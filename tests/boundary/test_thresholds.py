@@ -13,7 +13,7 @@ from canonical_forms import FIELD, X, family
 from ibpred.boundary.approach import Approach
 from ibpred.boundary.problem import region_values
 from ibpred.boundary.regions import behaviour, parametric_family
-from ibpred.boundary.thresholds import Monomials, threshold_exponents
+from ibpred.boundary.thresholds import Monomials, is_separated, threshold_exponents
 from ibpred.exact.rational import Rational
 from ibpred.progress import Silent
 from ibpred.run.chain.chain import Chain
@@ -94,6 +94,15 @@ def test_ramified_variable() -> None:
     found = behaviour(parametric_family(bubble, values), (1, 1), Approach((), "x", Fraction(-1)))
     assert found is not None
     assert {(e.power[0], e.slope[0]) for e in found} == {HARD, (Fraction(1), Fraction(-2))}
+
+
+def test_beyond_a_massless_threshold() -> None:
+    """Triangle of two massless lines and a massive one: t = 4 m^2 is no singularity of its first sheet."""
+    for value, point in ((X, -4), ((X - 1) ** 2 / X, -1)):
+        terms = {(0, 0, 2): FIELD.one, (1, 1, 0): value}
+        assert is_separated(terms, "x", Fraction(point))
+    # where a term vanishes nothing is claimed
+    assert not is_separated({(0, 0, 2): FIELD.one, (1, 1, 0): X + 4}, "x", Fraction(-4))
 
 
 def test_massless_and_massive_particle() -> None:
