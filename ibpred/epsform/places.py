@@ -11,6 +11,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 from ibpred.epsform.matrices import solve
+from ibpred.exact.polynomial import irreducible_factors
 from ibpred.exact.rational import Polynomial, Rational, Ring, polynomial_text
 
 Residue = tuple[Rational, ...]
@@ -196,7 +197,7 @@ def places_of(values: Iterable[Rational], ring: Ring, name: str) -> tuple[Place,
         if denominator.degrees()[index] == 0 or (key := str(denominator)) in seen:
             continue
         seen.add(key)
-        _, factors = denominator.factor()
+        _, factors = irreducible_factors(denominator)
         for factor, _ in factors:
             if factor.degrees()[index] > 0:
                 normal = positive(factor)

@@ -5,6 +5,10 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
+import flint
+
+from ibpred.errors import UnfinishedError
+
 Polynomial = Any  # flint.fmpz_mpoly; python-flint ships no usable type for it
 
 
@@ -35,3 +39,36 @@ def residue(polynomial: Polynomial, values: Sequence[int], prime: int) -> int:
                 term = term * pow(value, int(exponent), prime) % prime
         total += term
     return total % prime
+
+
+def irreducible_factors(polynomial: Polynomial) -> tuple[int, list[tuple[Polynomial, int]]]:
+    """Content and irreducible factors over the integers with their multiplicities.
+
+    Raises
+    ------
+    UnfinishedError
+        If factors in several variables have coefficients that FLINT's Python interface cannot sort.
+    """
+    try:
+        content, found = polynomial.factor()
+    except OverflowError:
+        # sorting the factors compares coefficients as machine integers; one variable has another way
+        context = polynomial.context()
+        used = [k for k, degree in enumerate(polynomial.degrees()) if degree]
+        if len(used) != 1:
+            raise UnfinishedError(
+                "a polynomial has factors with coefficients too large to be sorted"
+            ) from None
+        (place,) = used
+        terms = {int(e[place]): int(c) for e, c in polynomial.to_dict().items()}
+        content, plain = flint.fmpz_poly([terms.get(k, 0) for k in range(max(terms) + 1)]).factor()
+        width = len(polynomial.degrees())
+        found = []
+        for factor, power in plain:
+            moved = {
+                tuple(k if i == place else 0 for i in range(width)): int(c)
+                for k, c in enumerate(factor.coeffs())
+                if c
+            }
+            found.append((context.from_dict(moved), power))
+    return int(content), [(factor, int(power)) for factor, power in found]

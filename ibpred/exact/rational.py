@@ -14,7 +14,14 @@ from typing import Any, Union
 import flint
 
 from ibpred.errors import InputError
-from ibpred.exact.polynomial import Polynomial, constant_value, plain_terms, polynomial_text, residue
+from ibpred.exact.polynomial import (
+    Polynomial,
+    constant_value,
+    irreducible_factors,
+    plain_terms,
+    polynomial_text,
+    residue,
+)
 
 __all__ = ["Polynomial", "Rational", "Ring", "Scalar", "polynomial_text", "ring"]
 
@@ -305,11 +312,11 @@ class Rational:
         """
         if self.is_zero():
             return Fraction(0), ()
-        top, above = self.numerator.factor()
-        bottom, below = self.denominator.factor()
-        found = [(f, int(m)) for f, m in above] + [(f, -int(m)) for f, m in below]
+        top, above = irreducible_factors(self.numerator)
+        bottom, below = irreducible_factors(self.denominator)
+        found = above + [(f, -m) for f, m in below]
         found.sort(key=lambda item: (item[1] < 0, item[0].total_degree(), len(item[0]), str(item[0])))
-        return Fraction(int(top), int(bottom)), tuple(found)
+        return Fraction(top, bottom), tuple(found)
 
     def __str__(self) -> str:
         num = polynomial_text(self.numerator)

@@ -123,6 +123,17 @@ def test_factors_of_order_two_and_three() -> None:
         assert all(is_irreducible(part) for part in pair)
 
 
+def test_factors_with_large_coefficients() -> None:
+    """Apparent singularities of the adjoint have coefficients beyond machine integers."""
+    pair = made("-12", "-(13*x+30)", "3*x*(x-2)"), made("15", "48*(x-6)", "16*x*(x-3)")
+    parts = factors(composed(*pair))
+    total = parts[0]
+    for factor in parts[1:]:
+        total = composed(total, factor)
+    assert total == composed(*pair)
+    assert all(part_.order <= 2 for part_ in parts)
+
+
 def test_two_right_factors_of_one_class() -> None:
     """The least common left multiple of two operators with equal exponents: both are right factors."""
     first, second = SUNRISE, made("x+5", "3*x^2+24*x+15", "x*(x+3)*(x+5)")
