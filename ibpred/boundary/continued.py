@@ -11,15 +11,15 @@ from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from fractions import Fraction
 
-from ibpred.boundary.edges import edges_at
-from ibpred.boundary.fix import Boundary
+from ibpred.boundary.conditions.edges import edges_at
+from ibpred.boundary.conditions.fix import Boundary
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.units import unit_exponent
-from ibpred.iterated.constants import ZERO, Constant
-from ibpred.iterated.matrices import (
+from ibpred.iterated.constants.constants import ZERO, Constant
+from ibpred.iterated.constants.matrices import (
     UNIT,
     MatrixSeries,
     RationalMatrix,

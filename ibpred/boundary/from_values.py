@@ -7,11 +7,11 @@ from fractions import Fraction
 
 from ibpred.balls.accuracy import bits_for
 from ibpred.balls.context import Ball, precision
-from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import Fitted, OpenConstantsError
+from ibpred.boundary.conditions.explore import BoundaryProblem
+from ibpred.boundary.conditions.fix import Fitted, OpenConstantsError
 from ibpred.boundary.recognise import blurred, recognise
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import ZERO, Constant
+from ibpred.iterated.constants.constants import ZERO, Constant
 from ibpred.iterated.solution import Solution, solve_orders
 from ibpred.iterated.solution_values import solution_values
 
@@ -26,7 +26,7 @@ def fitted_constants(
     generators: Sequence[str],
     odds: int,
 ) -> tuple[Fitted, ...]:
-    """Recognise what is open, for `ibpred.boundary.fix.fix_constants`.
+    """Recognise what is open, for `ibpred.boundary.conditions.fix.fix_constants`.
 
     At each order the open constants are what is left of the value when all words with the constants of lower
     orders are taken off; they must be of uniform weight, counted from the order at which the first function

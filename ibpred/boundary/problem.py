@@ -6,20 +6,20 @@ from collections.abc import Mapping, Sequence
 from fractions import Fraction
 from types import MappingProxyType
 
-from ibpred.boundary.expansion import ClosedForm, expand, on_line
-from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import Boundary
-from ibpred.boundary.gamma import gamma_form
-from ibpred.boundary.regions import parametric_family
-from ibpred.boundary.sheets import Behaviours, behaviours
-from ibpred.boundary.sources import Master
+from ibpred.boundary.behaviour.expansion import ClosedForm, expand, on_line
+from ibpred.boundary.behaviour.gamma import gamma_form
+from ibpred.boundary.behaviour.regions import parametric_family
+from ibpred.boundary.behaviour.sheets import Behaviours, behaviours
+from ibpred.boundary.conditions.explore import BoundaryProblem
+from ibpred.boundary.conditions.fix import Boundary
+from ibpred.boundary.conditions.sources import Master
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import Rational, Ring, ring
 from ibpred.family.cuts import refuse_cuts
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.iterated.alphabet import usual_corner
-from ibpred.iterated.series import Series
+from ibpred.iterated.constants.series import Series
 from ibpred.iterated.solution import letter_roots
 
 
@@ -61,7 +61,7 @@ def closed_form_on_line(
     Raises
     ------
     BoundaryError
-        If it has a phase where all should be `real`; also as `ibpred.boundary.expansion.on_line`.
+        If it has a phase where all should be `real`; also as `ibpred.boundary.behaviour.expansion.on_line`.
     """
     form = gamma_form(family, powers)
     if form is None:

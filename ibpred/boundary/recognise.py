@@ -16,9 +16,9 @@ import flint
 
 from ibpred.balls.context import Ball, RealBall, precision
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import ZERO, Constant
-from ibpred.iterated.generators import Monomial, is_odd, monomials_of_weight
-from ibpred.iterated.series import Series
+from ibpred.iterated.constants.constants import ZERO, Constant
+from ibpred.iterated.constants.generators import Monomial, is_odd, monomials_of_weight
+from ibpred.iterated.constants.series import Series
 
 _BITS_PER_DIGIT = 3.3219280948873626
 

@@ -6,9 +6,8 @@ from collections.abc import Sequence
 from itertools import pairwise
 
 from ibpred.epsform.blocks import Block
-from ibpred.epsform.constant import factor_eps
+from ibpred.epsform.couplings.triangular import Grid, eliminate
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix
-from ibpred.epsform.fuchsian import Stuck, fuchsian
 from ibpred.epsform.matrices import (
     Constants,
     added,
@@ -19,11 +18,12 @@ from ibpred.epsform.matrices import (
     product,
     subtracted,
 )
-from ibpred.epsform.oddpart import OddTerms, odd_part, with_roots
 from ibpred.epsform.places import Place, places_of
+from ibpred.epsform.residues.constant import factor_eps
+from ibpred.epsform.residues.fuchsian import Stuck, fuchsian
+from ibpred.epsform.roots.oddpart import OddTerms, odd_part, with_roots
+from ibpred.epsform.roots.tags import between_functions
 from ibpred.epsform.structure import restricted
-from ibpred.epsform.tags import between_functions
-from ibpred.epsform.triangular import Grid, eliminate
 from ibpred.epsform.verify import verify
 from ibpred.errors import ReconstructionError
 from ibpred.exact.rational import Ring

@@ -8,7 +8,7 @@ from fractions import Fraction
 
 from ibpred.epsform.form import Matrix
 from ibpred.epsform.matrices import Constants
-from ibpred.epsform.tags import Tag
+from ibpred.epsform.roots.tags import Tag
 from ibpred.exact.rational import Rational
 
 

@@ -6,9 +6,9 @@ from collections.abc import Sequence
 from fractions import Fraction
 
 from ibpred.epsform.blocks import slope_condition
-from ibpred.epsform.decompose import exact_matrix
 from ibpred.epsform.form import EpsilonForm
 from ibpred.epsform.places import place
+from ibpred.epsform.residues.decompose import exact_matrix
 
 
 def eigenvalue_texts(matrix: Sequence[Sequence[Fraction]]) -> tuple[str, ...]:

@@ -7,16 +7,16 @@ from dataclasses import dataclass, replace
 
 from ibpred.epsform.assemble import assembled
 from ibpred.epsform.blocks import Block, Finding
-from ibpred.epsform.characters import times_root
-from ibpred.epsform.coupled import solve_coupled
-from ibpred.epsform.coupled_many import solve_coupled_many
-from ibpred.epsform.cover import Cover, branch_points, describe, double_cover
+from ibpred.epsform.diagonal.characters import times_root
+from ibpred.epsform.diagonal.coupled import solve_coupled
+from ibpred.epsform.diagonal.coupled_many import solve_coupled_many
+from ibpred.epsform.diagonal.rooted import solve_rooted
+from ibpred.epsform.diagonal.single import solve_single
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed, Obstruction
-from ibpred.epsform.geometry import obstruction
-from ibpred.epsform.rooted import solve_rooted
-from ibpred.epsform.single import solve_single
+from ibpred.epsform.obstructions.geometry import obstruction
+from ibpred.epsform.roots.cover import Cover, branch_points, describe, double_cover
+from ibpred.epsform.roots.tags import canonical
 from ibpred.epsform.structure import coupled_blocks, couplings, reachable, restricted
-from ibpred.epsform.tags import canonical
 from ibpred.errors import OutOfTimeError, UnfinishedError
 from ibpred.progress import SILENT, Expired, Limited, Progress, never
 from ibpred.reconstruct.notes import FORGETFUL, Notes

@@ -10,14 +10,14 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from ibpred.epsform.blocks import Block, Finding
-from ibpred.epsform.conics import Step, odd_factors, swapped
-from ibpred.epsform.cover import Cover, branch_points, new_ratio, parametrisation, pulled_back
 from ibpred.epsform.factorise import Outcomes, cover_for, diagonal_blocks, solve_block
 from ibpred.epsform.form import Connection
 from ibpred.epsform.places import places_of
-from ibpred.epsform.rationalise import rationalise
+from ibpred.epsform.roots.conics import Step, odd_factors, swapped
+from ibpred.epsform.roots.cover import Cover, branch_points, new_ratio, parametrisation, pulled_back
+from ibpred.epsform.roots.rationalise import rationalise
+from ibpred.epsform.roots.tags import Tag, product_of
 from ibpred.epsform.structure import restricted
-from ibpred.epsform.tags import Tag, product_of
 from ibpred.errors import OutOfTimeError
 from ibpred.exact.rational import Rational, Ring, ring
 from ibpred.progress import SILENT, Expired, Progress, never

@@ -20,8 +20,8 @@ from ibpred.epsform.matrices import (
     subtracted,
     vanishes,
 )
-from ibpred.epsform.oddletters import logarithmic
-from ibpred.epsform.tags import Tag, between_rationals, canonical, difference, product_of
+from ibpred.epsform.roots.oddletters import logarithmic
+from ibpred.epsform.roots.tags import Tag, between_rationals, canonical, difference, product_of
 from ibpred.exact.rational import Rational, Ring
 
 

@@ -10,7 +10,7 @@ from collections.abc import Callable, Hashable, Mapping, Sequence
 from fractions import Fraction
 from typing import TypeVar
 
-from ibpred.iterated.constants import ONE, ZERO, Constant
+from ibpred.iterated.constants.constants import ONE, ZERO, Constant
 from ibpred.iterated.words import shuffle
 
 L = TypeVar("L", bound=Hashable)

@@ -21,7 +21,7 @@ import flint
 
 from ibpred.epsform.form import EpsilonForm
 from ibpred.exact.rational import Rational
-from ibpred.iterated.matrices import rational_matrix
+from ibpred.iterated.constants.matrices import rational_matrix
 
 
 @dataclass(frozen=True)

@@ -20,7 +20,7 @@ from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import Rational
 from ibpred.iterated.alphabet import Letter, RootLetter, alphabet_of, limit
-from ibpred.iterated.constants import ZERO, Constant
+from ibpred.iterated.constants.constants import ZERO, Constant
 from ibpred.iterated.words import Word
 
 Product = tuple[Word, ...]

@@ -14,8 +14,8 @@ import flint
 from ibpred.balls.accuracy import bits_for, until_accurate
 from ibpred.balls.context import Ball, precision
 from ibpred.errors import InputError, PointError
-from ibpred.iterated.constants import Constant
-from ibpred.iterated.polylog_values import Place, polylog_balls
+from ibpred.iterated.constants.constants import Constant
+from ibpred.iterated.polylogs.polylog_values import Place, polylog_balls
 from ibpred.iterated.solution import Level, Solution
 from ibpred.iterated.words import Word
 

@@ -15,7 +15,7 @@ from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import InputError
 from ibpred.exact.rational import Rational
 from ibpred.iterated.alphabet import Letter, RootLetter, letters_with_roots
-from ibpred.iterated.constants import Constant
+from ibpred.iterated.constants.constants import Constant
 from ibpred.iterated.solution import Function, Level
 from ibpred.iterated.words import shuffle
 

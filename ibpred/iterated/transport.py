@@ -16,15 +16,15 @@ from typing import Any, Union
 import flint
 
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import Constant, log_of
-from ibpred.iterated.matrices import (
+from ibpred.iterated.constants.constants import Constant, log_of
+from ibpred.iterated.constants.matrices import (
     MatrixSeries,
     accumulate,
     exponential,
     nonzero,
     word_products,
 )
-from ibpred.iterated.zeta import regularised_value
+from ibpred.iterated.constants.zeta import regularised_value
 
 
 class Infinity(Enum):

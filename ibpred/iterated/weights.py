@@ -7,8 +7,8 @@ from fractions import Fraction
 
 from ibpred.epsform.form import Matrix
 from ibpred.exact.rational import Rational
-from ibpred.iterated.generators import Monomial, monomial_weight
-from ibpred.iterated.series import eps_valuation
+from ibpred.iterated.constants.generators import Monomial, monomial_weight
+from ibpred.iterated.constants.series import eps_valuation
 from ibpred.iterated.solution import Function, Product, Solution, length
 
 

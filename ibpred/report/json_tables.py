@@ -6,7 +6,7 @@ from collections.abc import Mapping, Sequence
 from fractions import Fraction
 from typing import Any
 
-from ibpred.boundary.fix import Boundary
+from ibpred.boundary.conditions.fix import Boundary
 from ibpred.diffeq.ratios import Coordinates, DimensionlessSystem
 from ibpred.diffeq.system import DifferentialSystem
 from ibpred.epsform.form import EpsilonForm, Obstructed, OddLetter, PeriodForm

@@ -6,13 +6,13 @@ import pytest
 from canonical_forms import EPS, FIELD, X, family
 from mpmath import euler, exp, expjpi, gamma, mp, mpc, mpf
 
-from ibpred.boundary.expansion import ClosedForm, expand, on_line
-from ibpred.boundary.gamma import EpsLinear, GammaForm, gamma_form
-from ibpred.boundary.local import class_sum, contributions
+from ibpred.boundary.behaviour.expansion import ClosedForm, expand, on_line
+from ibpred.boundary.behaviour.gamma import EpsLinear, GammaForm, gamma_form
+from ibpred.boundary.conditions.local import class_sum, contributions
 from ibpred.boundary.problem import closed_form_on_line, one_scale_values
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import ring
-from ibpred.iterated.constants import Constant, sum_of
+from ibpred.iterated.constants.constants import Constant, sum_of
 
 NUMBERS = ring(("eps",))
 

@@ -8,13 +8,13 @@ import pytest
 from canonical_forms import LEG_BOX_MASTERS, TWO, family, leg_box_form
 from mpmath import euler, exp, gamma, log, mp, mpf, pi, polylog, taylor
 
-from ibpred.boundary.edges import edges_at
-from ibpred.boundary.eigen import joint_spaces
-from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import fix_constants
+from ibpred.boundary.conditions.edges import edges_at
+from ibpred.boundary.conditions.eigen import joint_spaces
+from ibpred.boundary.conditions.explore import BoundaryProblem
+from ibpred.boundary.conditions.fix import fix_constants
 from ibpred.boundary.problem import boundary_problem, problem_in_variables, region_values
 from ibpred.errors import BoundaryError, InputError
-from ibpred.iterated.matrices import identity, rational_matrix
+from ibpred.iterated.constants.matrices import identity, rational_matrix
 from ibpred.iterated.solution import fibration, linear_corner, product_text, solve_orders
 from ibpred.iterated.solution_values import solution_values
 

@@ -17,13 +17,13 @@ from canonical_forms import (
 from mpmath import euler, exp, gamma, hyp2f1, mp, mpf, taylor
 from numeric_words import series_value
 
-from ibpred.boundary.eigen import eigenspaces
-from ibpred.boundary.fix import fix_constants
+from ibpred.boundary.conditions.eigen import eigenspaces
+from ibpred.boundary.conditions.fix import fix_constants
 from ibpred.boundary.problem import boundary_problem, one_scale_values
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError, UnfinishedError
 from ibpred.exact.codec import from_data, to_data
-from ibpred.iterated.matrices import identity, rational_matrix
+from ibpred.iterated.constants.matrices import identity, rational_matrix
 from ibpred.iterated.solution import Solution, solve_orders
 
 SIGNS = {"s": -1, "t": -1}

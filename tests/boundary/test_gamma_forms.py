@@ -7,7 +7,7 @@ from canonical_forms import family
 from mpmath import euler, exp, gamma, mp, mpf, quad
 from scipy.integrate import dblquad
 
-from ibpred.boundary.gamma import GammaForm, closed_forms, gamma_form
+from ibpred.boundary.behaviour.gamma import GammaForm, closed_forms, gamma_form
 from ibpred.family.definition import FamilyDefinition
 from ibpred.family.reading import read_family
 

@@ -9,10 +9,9 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.optimize import linprog
 
-from ibpred.boundary.approach import Approach, is_positive_before, leading, valuation
-from ibpred.boundary.polytope import lower_facets, separating_functional
-from ibpred.boundary.problem import closed_form_on_line
-from ibpred.boundary.regions import (
+from ibpred.boundary.behaviour.approach import Approach, is_positive_before, leading, valuation
+from ibpred.boundary.behaviour.polytope import lower_facets, separating_functional
+from ibpred.boundary.behaviour.regions import (
     Behaviour,
     Exponent,
     ParametricFamily,
@@ -20,6 +19,7 @@ from ibpred.boundary.regions import (
     behaviour_of_closed_form,
     parametric_family,
 )
+from ibpred.boundary.problem import closed_form_on_line
 from ibpred.errors import BoundaryError
 from ibpred.exact.rational import Rational, ring
 from ibpred.iterated.transport import INFINITY, Point

@@ -9,11 +9,11 @@ from hypothesis import assume, example, given
 from hypothesis import strategies as st
 from mpmath import euler, exp, gamma, mp, mpf
 
-from ibpred.boundary.approach import Approach
-from ibpred.boundary.expansion import expand
-from ibpred.boundary.gamma import gamma_form
-from ibpred.boundary.parametric import EpsLinear, GammaProduct, parametric_product
-from ibpred.boundary.regions import Region, parametric_family, regions
+from ibpred.boundary.behaviour.approach import Approach
+from ibpred.boundary.behaviour.expansion import expand
+from ibpred.boundary.behaviour.gamma import gamma_form
+from ibpred.boundary.behaviour.parametric import EpsLinear, GammaProduct, parametric_product
+from ibpred.boundary.behaviour.regions import Region, parametric_family, regions
 from ibpred.exact.rational import Rational, ring
 from ibpred.family.reading import read_family
 from ibpred.iterated.transport import INFINITY, Point

@@ -12,7 +12,7 @@ from hypothesis import strategies as st
 
 from ibpred.balls.context import precision, widened
 from ibpred.balls.decimal import ball_of_decimal
-from ibpred.boundary.fix import Fitted, OpenConstantsError, fix_constants
+from ibpred.boundary.conditions.fix import Fitted, OpenConstantsError, fix_constants
 from ibpred.boundary.from_values import fitted_constants
 from ibpred.boundary.problem import boundary_problem, one_scale_values, without_closed_form
 from ibpred.boundary.recognise import (
@@ -26,9 +26,9 @@ from ibpred.boundary.recognise import (
 )
 from ibpred.errors import BoundaryError
 from ibpred.exact.codec import from_data, to_data
-from ibpred.iterated.constants import Constant
-from ibpred.iterated.polylog_values import Place, polylog
-from ibpred.iterated.series import Series
+from ibpred.iterated.constants.constants import Constant
+from ibpred.iterated.constants.series import Series
+from ibpred.iterated.polylogs.polylog_values import Place, polylog
 from ibpred.iterated.solution import solve_orders
 from ibpred.iterated.solution_values import solution_values
 from ibpred.progress import Silent

@@ -14,19 +14,19 @@ import pytest
 from canonical_forms import BOX_MASTERS, X, box_form, diagonal_form, family
 
 from ibpred.balls.context import precision
-from ibpred.boundary.fix import Fitted, OpenConstantsError, fix_constants
+from ibpred.boundary.conditions.fix import Fitted, OpenConstantsError, fix_constants
 from ibpred.boundary.from_values import fitted_constants
 from ibpred.boundary.problem import boundary_problem, problem_in_variables
 from ibpred.boundary.recognise import SINGLE_SCALE, Fit
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import ZERO, Constant
-from ibpred.iterated.matrices import exponential, rational_matrix
-from ibpred.numerics.back_to_base import constants_at_base
-from ibpred.numerics.canonical import canonical_system
-from ibpred.numerics.continuation import evaluate_canonical
-from ibpred.numerics.masters import unit_factors
-from ibpred.numerics.path import Target
+from ibpred.iterated.constants.constants import ZERO, Constant
+from ibpred.iterated.constants.matrices import exponential, rational_matrix
+from ibpred.numerics.forms.back_to_base import constants_at_base
+from ibpred.numerics.forms.canonical import canonical_system
+from ibpred.numerics.forms.continuation import evaluate_canonical
+from ibpred.numerics.forms.masters import unit_factors
+from ibpred.numerics.forms.path import Target
 
 HALF_TURN = Constant.generator("I") * Constant.generator("pi")
 WEIGHT = 3  # powers of eps; the functions begin at eps^-1

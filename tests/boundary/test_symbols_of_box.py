@@ -2,7 +2,7 @@ from __future__ import annotations
 
 from canonical_forms import LEG_BOX_MASTERS, TWO, family, leg_box_form
 
-from ibpred.boundary.fix import fix_constants
+from ibpred.boundary.conditions.fix import fix_constants
 from ibpred.boundary.problem import boundary_problem
 from ibpred.iterated.solution import solve_orders
 from ibpred.iterated.symbol import is_integrable, symbol_of_function, symbols_of_form

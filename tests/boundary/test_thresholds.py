@@ -10,10 +10,10 @@ from pathlib import Path
 import pytest
 from canonical_forms import FIELD, X, family
 
-from ibpred.boundary.approach import Approach
+from ibpred.boundary.behaviour.approach import Approach
+from ibpred.boundary.behaviour.regions import behaviour, parametric_family
+from ibpred.boundary.behaviour.thresholds import Monomials, is_separated, threshold_exponents
 from ibpred.boundary.problem import region_values
-from ibpred.boundary.regions import behaviour, parametric_family
-from ibpred.boundary.thresholds import Monomials, is_separated, threshold_exponents
 from ibpred.exact.rational import Rational
 from ibpred.progress import Silent
 from ibpred.run.chain.chain import Chain

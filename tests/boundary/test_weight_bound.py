@@ -10,9 +10,9 @@ from canonical_forms import (
     leg_box_form,
 )
 
-from ibpred.boundary.fix import fix_constants
+from ibpred.boundary.conditions.fix import fix_constants
 from ibpred.boundary.problem import boundary_problem
-from ibpred.iterated.constants import Constant
+from ibpred.iterated.constants.constants import Constant
 from ibpred.iterated.solution import Solution, length, solve_orders
 from ibpred.iterated.weights import Excess, weight_excesses
 

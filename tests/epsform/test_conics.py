@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import pytest
 
-from ibpred.epsform.conics import normalisations, parametrised, square_root, without_squares
 from ibpred.epsform.form import Connection
-from ibpred.epsform.rationalise import positive_at_corner, rationalise
+from ibpred.epsform.roots.conics import normalisations, parametrised, square_root, without_squares
+from ibpred.epsform.roots.rationalise import positive_at_corner, rationalise
 from ibpred.epsform.variables import root_variables
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes

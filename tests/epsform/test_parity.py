@@ -6,7 +6,7 @@ from synthetic_systems import connection, matrix
 
 from ibpred.epsform.factorise import factorise, root_cover
 from ibpred.epsform.form import EpsilonForm
-from ibpred.epsform.parity import involution, with_parity
+from ibpred.epsform.roots.parity import involution, with_parity
 from ibpred.epsform.verify import verify
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes

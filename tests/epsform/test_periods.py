@@ -13,10 +13,10 @@ from synthetic_systems import RING, connection, matrix
 
 from ibpred.epsform.factorise import factorise
 from ibpred.epsform.form import Matrix, Obstructed, PeriodForm
-from ibpred.epsform.geometry import geometry
 from ibpred.epsform.matrices import inverse as inverse_matrix
 from ibpred.epsform.matrices import part, product, solve
-from ibpred.epsform.operators import (
+from ibpred.epsform.obstructions.geometry import geometry
+from ibpred.epsform.obstructions.operators import (
     Operator,
     adjoint,
     is_self_adjoint,
@@ -26,8 +26,8 @@ from ibpred.epsform.operators import (
     singular_points,
     symmetric_root,
 )
-from ibpred.epsform.power_series import expansion, inverse, series, theta, times
-from ibpred.epsform.right_factors import factors, is_irreducible, right_factor
+from ibpred.epsform.obstructions.power_series import expansion, inverse, series, theta, times
+from ibpred.epsform.obstructions.right_factors import factors, is_irreducible, right_factor
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes
 from ibpred.exact.rational import Rational

@@ -11,18 +11,18 @@ from hypothesis import strategies as st
 from synthetic_systems import RING, matrix, scrambled
 
 from ibpred.epsform.blocks import Block, exponent_text, linear
-from ibpred.epsform.constant import constant_term
-from ibpred.epsform.content import content
-from ibpred.epsform.decompose import commutant, conjugated, decomposed, exact_matrix
-from ibpred.epsform.intertwine import closure, intertwiners, representative
+from ibpred.epsform.diagonal.single import solve_single
+from ibpred.epsform.lattices.intertwine import closure, intertwiners, representative
+from ibpred.epsform.lattices.pencil import Pencil, at_infinity, pole_order, shift, unit_frame
+from ibpred.epsform.lattices.sampling import Sample, reconstruct_in_eps
+from ibpred.epsform.lattices.sections import global_sections, splitting_type
+from ibpred.epsform.lattices.spectrum import spectrum
 from ibpred.epsform.matrices import identity, inverse, product
-from ibpred.epsform.pencil import Pencil, at_infinity, pole_order, shift, unit_frame
-from ibpred.epsform.picardfuchs import picard_fuchs
+from ibpred.epsform.obstructions.picardfuchs import picard_fuchs
 from ibpred.epsform.places import places_of
-from ibpred.epsform.sampling import Sample, reconstruct_in_eps
-from ibpred.epsform.sections import global_sections, splitting_type
-from ibpred.epsform.single import solve_single
-from ibpred.epsform.spectrum import spectrum
+from ibpred.epsform.residues.constant import constant_term
+from ibpred.epsform.residues.content import content
+from ibpred.epsform.residues.decompose import commutant, conjugated, decomposed, exact_matrix
 from ibpred.epsform.structure import coupled_blocks
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.primes import first_primes

@@ -11,9 +11,9 @@ from mpmath import mp
 from ibpred.balls.context import precision
 from ibpred.errors import ExpressionError
 from ibpred.exact.codec import from_data, to_data
-from ibpred.iterated.constants import Constant, log_of, zeta
-from ibpred.iterated.generators import GENERATORS, NAMES, monomial_weight, monomials_of_weight
-from ibpred.iterated.sixth_roots import log_sine_at_two_thirds
+from ibpred.iterated.constants.constants import Constant, log_of, zeta
+from ibpred.iterated.constants.generators import GENERATORS, NAMES, monomial_weight, monomials_of_weight
+from ibpred.iterated.constants.sixth_roots import log_sine_at_two_thirds
 
 MONOMIALS = st.tuples(*(st.integers(0, 1 if name in ("I", "sqrt3") else 2) for name in NAMES))
 CONSTANTS = st.dictionaries(MONOMIALS, st.fractions(-5, 5, max_denominator=7), max_size=3).map(

@@ -11,10 +11,10 @@ from hypothesis import strategies as st
 
 from ibpred.errors import BoundaryError, InputError, PointError
 from ibpred.exact.rational import Rational, ring
-from ibpred.iterated.constants import Constant
-from ibpred.iterated.fibration import FibrationBasis, fibration_basis, read_polylog
-from ibpred.iterated.limits import limit_of_word
-from ibpred.iterated.polylog_values import Place, polylog
+from ibpred.iterated.constants.constants import Constant
+from ibpred.iterated.polylogs.fibration import FibrationBasis, fibration_basis, read_polylog
+from ibpred.iterated.polylogs.limits import limit_of_word
+from ibpred.iterated.polylogs.polylog_values import Place, polylog
 from ibpred.iterated.symbol import Symbol, symbol_of_polylog
 
 FIELD = ring(("x", "y", "z"))

@@ -8,8 +8,8 @@ import pytest
 
 from ibpred.errors import InputError
 from ibpred.exact.rational import Rational
-from ibpred.iterated.constants import ONE, ZERO, Constant
-from ibpred.iterated.fibration import fibration_basis
+from ibpred.iterated.constants.constants import ONE, ZERO, Constant
+from ibpred.iterated.polylogs.fibration import fibration_basis
 from ibpred.iterated.solution import Function, Solution
 from ibpred.iterated.words import shuffle
 from ibpred.progress import Silent

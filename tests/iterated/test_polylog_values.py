@@ -12,9 +12,9 @@ from mpmath import polylog as classical
 
 from ibpred.balls.context import precision
 from ibpred.errors import InputError, PointError
-from ibpred.iterated.polylog_values import Place, polylog, polylogs, regularised_polylogs
+from ibpred.iterated.constants.zeta import regularised_value
+from ibpred.iterated.polylogs.polylog_values import Place, polylog, polylogs, regularised_polylogs
 from ibpred.iterated.words import shuffle
-from ibpred.iterated.zeta import regularised_value
 
 ZERO, ONE = Place(Fraction(0)), Place(Fraction(1))
 

@@ -9,7 +9,7 @@ from numeric_words import series_value
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, InputError
 from ibpred.exact.rational import ring
-from ibpred.iterated.constants import Constant
+from ibpred.iterated.constants.constants import Constant
 from ibpred.iterated.solution import Solution, function_text, letter_roots, linear_corner, solve_orders
 
 FIELD = ring(("eps", "x"))

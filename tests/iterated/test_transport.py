@@ -12,11 +12,11 @@ from typing import Any
 import flint
 import pytest
 
-from ibpred.boundary.eigen import eigenspaces
+from ibpred.boundary.conditions.eigen import eigenspaces
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import ZERO, Constant, log_of, zeta
-from ibpred.iterated.matrices import MatrixSeries
-from ibpred.iterated.series import exponential
+from ibpred.iterated.constants.constants import ZERO, Constant, log_of, zeta
+from ibpred.iterated.constants.matrices import MatrixSeries
+from ibpred.iterated.constants.series import exponential
 from ibpred.iterated.transport import INFINITY, Point, connection, residue_at
 
 A, B, C = Fraction(2), Fraction(-1, 3), Fraction(1, 2)

@@ -17,10 +17,10 @@ from ibpred.iterated.algebra import (
     shuffle_product,
     with_logarithms,
 )
-from ibpred.iterated.constants import ONE, Constant
-from ibpred.iterated.polylog_values import Place, polylog, polylogs
-from ibpred.iterated.special import exact_polylog
-from ibpred.iterated.sums import polylog_of_sum, quasi_shuffle, sum_of_polylog
+from ibpred.iterated.constants.constants import ONE, Constant
+from ibpred.iterated.constants.sums import polylog_of_sum, quasi_shuffle, sum_of_polylog
+from ibpred.iterated.polylogs.polylog_values import Place, polylog, polylogs
+from ibpred.iterated.polylogs.special import exact_polylog
 
 words = st.lists(st.integers(0, 2), min_size=0, max_size=3).map(tuple)
 functions = st.dictionaries(words, st.integers(-3, 3), max_size=3).map(combination)

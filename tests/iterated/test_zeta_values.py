@@ -11,10 +11,9 @@ from numeric_words import value_at_one
 
 from ibpred.balls.context import precision
 from ibpred.errors import BoundaryError
-from ibpred.iterated.constants import Constant
-from ibpred.iterated.halves import zeta_word_ball
-from ibpred.iterated.words import shuffle
-from ibpred.iterated.zeta import (
+from ibpred.iterated.constants.constants import Constant
+from ibpred.iterated.constants.halves import zeta_word_ball
+from ibpred.iterated.constants.zeta import (
     LONGEST_ALTERNATING,
     convergent_words,
     indices_of,
@@ -22,6 +21,7 @@ from ibpred.iterated.zeta import (
     relations,
     word_of,
 )
+from ibpred.iterated.words import shuffle
 
 
 def nested(*indices: int) -> Constant:

@@ -9,8 +9,8 @@ import pytest
 
 from ibpred.balls.decimal import ball_of_decimal
 from ibpred.errors import PointError, UnfinishedError
-from ibpred.numerics.channels import Channel, channel_of, scattering_point
-from ibpred.numerics.path import Target
+from ibpred.numerics.forms.channels import Channel, channel_of, scattering_point
+from ibpred.numerics.forms.path import Target
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT
 from ibpred.run.chain.chain import Chain

@@ -16,8 +16,8 @@ from ibpred.balls.decimal import DecimalBall, ball_of_decimal
 from ibpred.errors import PointError, UnfinishedError
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.rational import ring
-from ibpred.numerics.crossings import around, crossings
-from ibpred.numerics.expanded import expanded_system, in_epsilon, regular_shifts
+from ibpred.numerics.laurent.crossings import around, crossings
+from ibpred.numerics.laurent.expanded import expanded_system, in_epsilon, regular_shifts
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT
 from ibpred.run.chain.chain import Chain

@@ -9,15 +9,15 @@ from pathlib import Path
 import pytest
 
 from ibpred.balls.decimal import ball_of_decimal
-from ibpred.boundary.regions import parametric_family
+from ibpred.boundary.behaviour.regions import parametric_family
 from ibpred.errors import BoundaryError, UnfinishedError
 from ibpred.exact.grammar import parse_rational
 from ibpred.numerics.corner.classes import class_solutions
 from ibpred.numerics.corner.field import FIELD, echelon, null_space, product
 from ibpred.numerics.corner.start import corner_solution
 from ibpred.numerics.corner.system import RaySystem
-from ibpred.numerics.expanded import expanded_system
-from ibpred.numerics.local_laurent import local_system
+from ibpred.numerics.laurent.expanded import expanded_system
+from ibpred.numerics.laurent.local_laurent import local_system
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT
 from ibpred.run.chain.chain import Chain

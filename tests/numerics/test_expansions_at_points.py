@@ -13,7 +13,7 @@ from mpmath import mp, mpc, mpf
 from ibpred.errors import PointError
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.rational import ring
-from ibpred.numerics.distance import entry_terms
+from ibpred.numerics.laurent.distance import entry_terms
 from ibpred.progress import SILENT
 from ibpred.run.chain.chain import Chain
 from ibpred.run.storage.files import read_family_file

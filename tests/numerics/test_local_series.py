@@ -11,12 +11,12 @@ from hypothesis import strategies as st
 
 from ibpred.balls.context import complex_ball, precision
 from ibpred.errors import PrecisionError
-from ibpred.numerics.canonical import CanonicalSystem, Letter, linear_system
-from ibpred.numerics.centre import Place, centre_at, centre_at_infinity, centre_at_zero
-from ibpred.numerics.continuation import evaluate_canonical, follow
-from ibpred.numerics.majorant import tail_factors
-from ibpred.numerics.path import Regular, Singular, Step, Target, plan
-from ibpred.numerics.series import carried, constants_at, from_base
+from ibpred.numerics.forms.canonical import CanonicalSystem, Letter, linear_system
+from ibpred.numerics.forms.centre import Place, centre_at, centre_at_infinity, centre_at_zero
+from ibpred.numerics.forms.continuation import evaluate_canonical, follow
+from ibpred.numerics.forms.majorant import tail_factors
+from ibpred.numerics.forms.path import Regular, Singular, Step, Target, plan
+from ibpred.numerics.forms.series import carried, constants_at, from_base
 
 F = Fraction
 
@@ -168,7 +168,7 @@ def test_quadratic_letters():
     # df = eps dlog(1+x^2) f: f = (1+x^2)^eps
     from ibpred.epsform.form import EpsilonForm
     from ibpred.exact.rational import ring
-    from ibpred.numerics.canonical import canonical_system
+    from ibpred.numerics.forms.canonical import canonical_system
 
     base = ring(("eps", "x"))
     x = base.variable("x")

@@ -6,13 +6,13 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from ibpred.errors import InputError, PointError
-from ibpred.iterated.constants import Constant
-from ibpred.numerics.canonical import linear_system
-from ibpred.numerics.masters import Row
-from ibpred.numerics.path import Infinity, Regular, Target, plan
-from ibpred.numerics.point import kinematic_point
-from ibpred.numerics.power_series import EPSILON
-from ibpred.numerics.vanishing import vanishes
+from ibpred.iterated.constants.constants import Constant
+from ibpred.numerics.forms.canonical import linear_system
+from ibpred.numerics.forms.masters import Row
+from ibpred.numerics.forms.path import Infinity, Regular, Target, plan
+from ibpred.numerics.forms.point import kinematic_point
+from ibpred.numerics.forms.power_series import EPSILON
+from ibpred.numerics.forms.vanishing import vanishes
 
 F = Fraction
 rationals = st.fractions(-8, 8, max_denominator=30)

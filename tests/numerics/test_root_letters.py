@@ -10,9 +10,9 @@ from ibpred.balls.context import complex_ball, precision
 from ibpred.epsform.form import EpsilonForm, OddLetter
 from ibpred.errors import PointError
 from ibpred.exact.rational import ring
-from ibpred.numerics.path import Target
-from ibpred.numerics.root_kernels import Kernel, shifted
-from ibpred.numerics.rooted_paths import evaluate_rooted, singular_polynomials
+from ibpred.numerics.forms.path import Target
+from ibpred.numerics.forms.root_kernels import Kernel, shifted
+from ibpred.numerics.forms.rooted_paths import evaluate_rooted, singular_polynomials
 
 F = Fraction
 FIELD = ring(("eps", "x", "y"))

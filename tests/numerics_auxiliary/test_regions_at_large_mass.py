@@ -10,7 +10,7 @@ import flint
 import pytest
 
 from ibpred.balls.context import precision
-from ibpred.boundary.gamma import gamma_form
+from ibpred.boundary.behaviour.gamma import gamma_form
 from ibpred.errors import BoundaryError, PointError, UnfinishedError
 from ibpred.exact.codec import from_data, to_data
 from ibpred.exact.primes import first_primes

@@ -17,13 +17,13 @@ from mpmath import mp, mpc, mpf
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, PointError
 from ibpred.exact.rational import ring
-from ibpred.iterated.constants import Constant, zeta
-from ibpred.numerics.canonical import canonical_system, linear_system
-from ibpred.numerics.continuation import evaluate_canonical
-from ibpred.numerics.evaluate import evaluate_rows
-from ibpred.numerics.masters import integral_row, master_rows, needed_order
-from ibpred.numerics.path import Target
-from ibpred.numerics.point import kinematic_point
+from ibpred.iterated.constants.constants import Constant, zeta
+from ibpred.numerics.forms.canonical import canonical_system, linear_system
+from ibpred.numerics.forms.continuation import evaluate_canonical
+from ibpred.numerics.forms.evaluate import evaluate_rows
+from ibpred.numerics.forms.masters import integral_row, master_rows, needed_order
+from ibpred.numerics.forms.path import Target
+from ibpred.numerics.forms.point import kinematic_point
 
 AT_ZERO = ((0, 0, 0), (0, -1, 0), (0, 2, -1))
 AT_MINUS_ONE = ((0, 0, 0), (0, 0, 0), (-2, -2, 1))

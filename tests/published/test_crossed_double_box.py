@@ -17,9 +17,9 @@ from ibpred.balls.context import precision
 from ibpred.balls.decimal import DecimalBall, ball_of_decimal
 from ibpred.exact.grammar import parse_rational
 from ibpred.exact.rational import ring
-from ibpred.iterated.constants import Constant, sum_of
-from ibpred.iterated.polylog_values import Place, polylogs
-from ibpred.iterated.series import laurent
+from ibpred.iterated.constants.constants import Constant, sum_of
+from ibpred.iterated.constants.series import laurent
+from ibpred.iterated.polylogs.polylog_values import Place, polylogs
 from ibpred.progress import SILENT
 from ibpred.run.chain.chain import Chain
 from ibpred.run.constants.known_points import auxiliary_at

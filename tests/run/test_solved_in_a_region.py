@@ -8,7 +8,7 @@ from pathlib import Path
 import pytest
 
 from ibpred.balls.decimal import ball_of_decimal
-from ibpred.boundary.fix import fix_constants
+from ibpred.boundary.conditions.fix import fix_constants
 from ibpred.family.reading import read_family
 from ibpred.numerics.value import Route
 from ibpred.progress import SILENT

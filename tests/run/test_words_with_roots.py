@@ -11,8 +11,8 @@ from ibpred.exact.rational import Rational
 from ibpred.iterated.alphabet import RootLetter
 from ibpred.iterated.solution import solve_orders
 from ibpred.iterated.symbol import Symbol, is_integrable, symbols_of_form
-from ibpred.numerics.path import Target
-from ibpred.numerics.rooted_paths import evaluate_rooted
+from ibpred.numerics.forms.path import Target
+from ibpred.numerics.forms.rooted_paths import evaluate_rooted
 from ibpred.progress import SILENT
 from ibpred.run.chain.chain import Chain
 from ibpred.run.storage.files import read_family_file

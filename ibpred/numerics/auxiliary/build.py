@@ -6,7 +6,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 
-from ibpred.boundary.gamma import GammaForm, gamma_form
+from ibpred.boundary.behaviour.gamma import GammaForm, gamma_form
 from ibpred.errors import BoundaryError, ReconstructionError, UnfinishedError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import FamilyDefinition, Powers

@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from fractions import Fraction
 
-from ibpred.boundary.gamma import GammaForm
+from ibpred.boundary.behaviour.gamma import GammaForm
 from ibpred.diffeq.system import SparseMatrix
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers

@@ -10,7 +10,7 @@ from typing import Any
 import flint
 
 from ibpred.balls.context import Ball, complex_ball, precision, real_ball
-from ibpred.boundary.gamma import GammaForm
+from ibpred.boundary.behaviour.gamma import GammaForm
 from ibpred.errors import BoundaryError, PointError
 from ibpred.exact.rational import Rational
 from ibpred.numerics.auxiliary.infinity import (

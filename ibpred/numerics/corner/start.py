@@ -10,20 +10,20 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 
-from ibpred.boundary.approach import Approach
-from ibpred.boundary.expansion import ClosedForm
-from ibpred.boundary.regions import ParametricFamily, Region, regions
+from ibpred.boundary.behaviour.approach import Approach
+from ibpred.boundary.behaviour.expansion import ClosedForm
+from ibpred.boundary.behaviour.regions import ParametricFamily, Region, regions
 from ibpred.diffeq.system import DifferentialSystem
 from ibpred.errors import BoundaryError, UnfinishedError
 from ibpred.exact.rational import Rational
-from ibpred.iterated.constants import ZERO, Constant
-from ibpred.iterated.series import Series, eps_valuation, laurent
+from ibpred.iterated.constants.constants import ZERO, Constant
+from ibpred.iterated.constants.series import Series, eps_valuation, laurent
 from ibpred.numerics.corner.classes import ClassSolutions, class_solutions
 from ibpred.numerics.corner.field import FIELD, Matrix, echelon
 from ibpred.numerics.corner.system import ray_system
 from ibpred.numerics.frobenius.formal import SingularPoint, resonance
 from ibpred.numerics.frobenius.spectrum import fractional_part
-from ibpred.numerics.local_laurent import LocalSystem
+from ibpred.numerics.laurent.local_laurent import LocalSystem
 
 Value = tuple[tuple[Rational, ClosedForm], ...]
 """A sum of elements of Q(eps) times closed forms without scales."""
@@ -70,7 +70,7 @@ class CornerSolution:
 
 @dataclass(frozen=True)
 class StartConstants:
-    """Exact constants of the local solutions, for `ibpred.numerics.local_laurent`.
+    """Exact constants of the local solutions, for `ibpred.numerics.laurent.local_laurent`.
 
     Attributes
     ----------

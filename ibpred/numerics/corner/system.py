@@ -10,8 +10,8 @@ from ibpred.diffeq.system import DifferentialSystem
 from ibpred.errors import PointError, UnfinishedError
 from ibpred.exact.rational import Polynomial, Rational
 from ibpred.numerics.corner.field import FIELD, Matrix, zeros
-from ibpred.numerics.distance import DISTANCE
-from ibpred.numerics.expanded import in_epsilon
+from ibpred.numerics.laurent.distance import DISTANCE
+from ibpred.numerics.laurent.expanded import in_epsilon
 
 
 @dataclass(frozen=True)

@@ -8,7 +8,7 @@ from fractions import Fraction
 
 from ibpred.errors import InputError
 from ibpred.exact.grammar import parse_number
-from ibpred.numerics.expanded import ExpandedSystem, expanded_system, in_epsilon
+from ibpred.numerics.laurent.expanded import ExpandedSystem, expanded_system, in_epsilon
 from ibpred.report.export.material import Data, Material, system_of
 
 Entry = tuple[int, int, int, str]
@@ -47,7 +47,7 @@ class SolverParts:
     layers
         The same order by order: ``layers[j]`` is the coefficient of eps^j of the rescaled system.
     shifts
-        The rescaling: ``J_i = eps^shifts[i] I_i`` (see `ibpred.numerics.expanded`).
+        The rescaling: ``J_i = eps^shifts[i] I_i`` (see `ibpred.numerics.laurent.expanded`).
     start
         The lowest power of eps of the J_i that is kept.
     tables

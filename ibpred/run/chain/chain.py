@@ -6,10 +6,10 @@ from dataclasses import replace
 from functools import cached_property
 
 import ibpred
+from ibpred.boundary.conditions.edges import Corner
+from ibpred.boundary.conditions.explore import BoundaryProblem
+from ibpred.boundary.conditions.fix import Boundary, fix_constants
 from ibpred.boundary.continued import continued
-from ibpred.boundary.edges import Corner
-from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import Boundary, fix_constants
 from ibpred.boundary.problem import boundary_of_series, one_scale_values, problem_in_variables
 from ibpred.boundary.problem import boundary_problem as problem_in_ratios
 from ibpred.diffeq.derive import Derivation, differential_system

@@ -5,14 +5,14 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable
 from dataclasses import replace
 
-from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import OpenConstantsError, fix_constants
+from ibpred.boundary.conditions.explore import BoundaryProblem
+from ibpred.boundary.conditions.fix import OpenConstantsError, fix_constants
 from ibpred.epsform.form import EpsilonForm, Obstructed
 from ibpred.epsform.matrices import identity, scaled
-from ibpred.epsform.parity import involution, with_parity
+from ibpred.epsform.roots.parity import involution, with_parity
 from ibpred.errors import UnfinishedError
 from ibpred.exact.rational import Rational, ring
-from ibpred.iterated.series import eps_valuation
+from ibpred.iterated.constants.series import eps_valuation
 
 
 def normalised(

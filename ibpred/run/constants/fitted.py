@@ -11,8 +11,8 @@ import flint
 from ibpred.balls.accuracy import bits_for
 from ibpred.balls.context import Ball, precision
 from ibpred.balls.decimal import ball_of_decimal
-from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import Boundary, Fitted, OpenConstantsError, fix_constants, lowest_orders
+from ibpred.boundary.conditions.explore import BoundaryProblem
+from ibpred.boundary.conditions.fix import Boundary, Fitted, OpenConstantsError, fix_constants, lowest_orders
 from ibpred.boundary.from_values import fitted_constants
 from ibpred.boundary.problem import boundary_of_series, one_scale_values, without_closed_form
 from ibpred.boundary.recognise import ALTERNATING, SINGLE_SCALE, SIXTH_ROOTS, Fit, recognise_series
@@ -20,9 +20,9 @@ from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError, UnfinishedError
 from ibpred.family.definition import Powers
 from ibpred.family.signs import masses
-from ibpred.iterated.series import Series, eps_valuation, laurent
+from ibpred.iterated.constants.series import Series, eps_valuation, laurent
 from ibpred.iterated.solution import fibration
-from ibpred.numerics.channels import is_next_to_corner
+from ibpred.numerics.forms.channels import is_next_to_corner
 from ibpred.run.chain.chain import Chain
 from ibpred.run.constants.known_points import KnownPoint, known_points, new_point
 

@@ -1,6 +1,6 @@
 """Boundary constants of regions of real kinematics that no i0 leads to from the region of the solution.
 
-See `ibpred.numerics.channels`. All of them are recognised from values at one point of the region.
+See `ibpred.numerics.forms.channels`. All of them are recognised from values at one point of the region.
 """
 
 from __future__ import annotations
@@ -14,17 +14,17 @@ import flint
 from ibpred.balls.accuracy import bits_for
 from ibpred.balls.context import Ball, precision
 from ibpred.balls.decimal import ball_of_decimal
-from ibpred.boundary.explore import BoundaryProblem
-from ibpred.boundary.fix import Boundary, Fitted, lowest_orders
+from ibpred.boundary.conditions.explore import BoundaryProblem
+from ibpred.boundary.conditions.fix import Boundary, Fitted, lowest_orders
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import BoundaryError
 from ibpred.family.units import unit_exponent
-from ibpred.iterated.series import eps_valuation
-from ibpred.numerics.back_to_base import constants_at_base
-from ibpred.numerics.canonical import canonical_system
-from ibpred.numerics.channels import Channel
-from ibpred.numerics.masters import unit_factors
-from ibpred.numerics.path import Target
+from ibpred.iterated.constants.series import eps_valuation
+from ibpred.numerics.forms.back_to_base import constants_at_base
+from ibpred.numerics.forms.canonical import canonical_system
+from ibpred.numerics.forms.channels import Channel
+from ibpred.numerics.forms.masters import unit_factors
+from ibpred.numerics.forms.path import Target
 from ibpred.run.chain.chain import Chain
 from ibpred.run.constants.fitted import DIGITS, ODDS, canonical_values, generators_of, values_at
 

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 from dataclasses import dataclass, replace
 
-from ibpred.boundary.edges import Corner
-from ibpred.boundary.fix import Boundary
+from ibpred.boundary.conditions.edges import Corner
+from ibpred.boundary.conditions.fix import Boundary
 from ibpred.errors import BoundaryError, OutOfTimeError, UnfinishedError
 from ibpred.exact.codec import to_data
 from ibpred.iterated.solution import Solution, constant_solution, solve_orders
-from ibpred.numerics.channels import Channel
+from ibpred.numerics.forms.channels import Channel
 from ibpred.progress import never
 from ibpred.run.chain.chain import Chain
 from ibpred.run.constants.fitted import completed_by_fits, one_scale_boundary

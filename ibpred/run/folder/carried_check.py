@@ -15,9 +15,15 @@ from ibpred.diffeq.derive import singular_locus
 from ibpred.diffeq.system import DifferentialSystem
 from ibpred.errors import PointError
 from ibpred.exact.grammar import parse_number
-from ibpred.numerics.crossings import crossings
-from ibpred.numerics.expanded import expanded_system
-from ibpred.numerics.laurent_line import carry_laurent, laurent_line, line_depth, regular_locus, spread
+from ibpred.numerics.laurent.crossings import crossings
+from ibpred.numerics.laurent.expanded import expanded_system
+from ibpred.numerics.laurent.laurent_line import (
+    carry_laurent,
+    laurent_line,
+    line_depth,
+    regular_locus,
+    spread,
+)
 from ibpred.progress import SILENT, Progress
 
 _DIGITS = 15  # a wrong side of a threshold or a wrong constant shows in the first

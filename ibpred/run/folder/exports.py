@@ -8,7 +8,7 @@ from typing import Any
 
 from ibpred.errors import InputError, UnfinishedError
 from ibpred.family.signs import euclidean_signs
-from ibpred.numerics.laurent_line import regular_locus
+from ibpred.numerics.laurent.laurent_line import regular_locus
 from ibpred.report.export.material import Material
 from ibpred.report.json_tables import differential_data, epsilon_data, solution_data, values_data
 from ibpred.run.chain.chain import Chain

@@ -11,13 +11,13 @@ from pathlib import Path
 from typing import Any, TypeVar
 
 import ibpred
-from ibpred.boundary.fix import Boundary
+from ibpred.boundary.conditions.fix import Boundary
 from ibpred.diffeq.checks import CheckResult, check_system
 from ibpred.epsform.form import EpsilonForm, Obstructed
 from ibpred.epsform.verify import verify
 from ibpred.errors import IbpredError, OutOfTimeError, PointError, UnfinishedError
 from ibpred.iterated.weights import weight_excesses
-from ibpred.numerics.laurent_line import regular_locus
+from ibpred.numerics.laurent.laurent_line import regular_locus
 from ibpred.numerics.value import Route
 from ibpred.report.drawing import sheet_svg
 from ibpred.report.json_tables import (

@@ -20,11 +20,17 @@ from ibpred.errors import PointError, PrecisionError, UnfinishedError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
 from ibpred.family.signs import euclidean_signs
-from ibpred.iterated.series import eps_valuation, laurent
-from ibpred.numerics.crossings import crossings
-from ibpred.numerics.expanded import ExpandedSystem, expanded_system
-from ibpred.numerics.laurent_line import carry_laurent, laurent_line, line_depth, regular_locus, spread
-from ibpred.numerics.power_series import EPSILON
+from ibpred.iterated.constants.series import eps_valuation, laurent
+from ibpred.numerics.forms.power_series import EPSILON
+from ibpred.numerics.laurent.crossings import crossings
+from ibpred.numerics.laurent.expanded import ExpandedSystem, expanded_system
+from ibpred.numerics.laurent.laurent_line import (
+    carry_laurent,
+    laurent_line,
+    line_depth,
+    regular_locus,
+    spread,
+)
 from ibpred.numerics.value import Route, Value
 from ibpred.run.chain.chain import Chain
 from ibpred.run.constants.known_points import KnownPoint, known_points, new_point

@@ -13,7 +13,7 @@ from fractions import Fraction
 import flint
 
 from ibpred.balls.context import Ball
-from ibpred.boundary.regions import parametric_family
+from ibpred.boundary.behaviour.regions import parametric_family
 from ibpred.diffeq.system import DifferentialSystem
 from ibpred.errors import PointError, UnfinishedError
 from ibpred.family.signs import euclidean_signs, masses
@@ -24,8 +24,8 @@ from ibpred.numerics.corner.start import (
     lowest_order,
     start_constants,
 )
-from ibpred.numerics.expanded import expanded_system
-from ibpred.numerics.local_laurent import (
+from ibpred.numerics.laurent.expanded import expanded_system
+from ibpred.numerics.laurent.local_laurent import (
     LocalConstants,
     LocalSystem,
     local_system,

@@ -11,7 +11,7 @@ from ibpred.balls.decimal import DecimalBall, decimal_ball
 from ibpred.errors import PointError
 from ibpred.family.definition import Powers
 from ibpred.family.signs import masses
-from ibpred.numerics.local_laurent import Terms
+from ibpred.numerics.laurent.local_laurent import Terms
 from ibpred.numerics.value import Route
 from ibpred.reduction.wanted import check_powers
 from ibpred.run.chain.chain import Chain

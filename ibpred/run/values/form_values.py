@@ -5,20 +5,27 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from fractions import Fraction
 
-from ibpred.boundary.fix import Boundary
+from ibpred.boundary.conditions.fix import Boundary
 from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import UnfinishedError
 from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import masses
 from ibpred.family.units import unit_exponent
 from ibpred.iterated.solution import fibration, letter_roots
-from ibpred.numerics.canonical import CanonicalSystem, canonical_system
-from ibpred.numerics.channels import BASE, Channel, channel_of, is_next_to_corner, scattering_point
-from ibpred.numerics.evaluate import Functions, InOneRatio, InSeveralRatios, Place, WithRoots, evaluate_places
-from ibpred.numerics.masters import Row, integral_row, master_rows, needed_order
-from ibpred.numerics.path import Target
-from ibpred.numerics.point import KinematicPoint, kinematic_point
-from ibpred.numerics.several import refuse_singular_point
+from ibpred.numerics.forms.canonical import CanonicalSystem, canonical_system
+from ibpred.numerics.forms.channels import BASE, Channel, channel_of, is_next_to_corner, scattering_point
+from ibpred.numerics.forms.evaluate import (
+    Functions,
+    InOneRatio,
+    InSeveralRatios,
+    Place,
+    WithRoots,
+    evaluate_places,
+)
+from ibpred.numerics.forms.masters import Row, integral_row, master_rows, needed_order
+from ibpred.numerics.forms.path import Target
+from ibpred.numerics.forms.point import KinematicPoint, kinematic_point
+from ibpred.numerics.forms.several import refuse_singular_point
 from ibpred.numerics.value import Value
 from ibpred.reduction.table import ReductionTable
 from ibpred.run.chain.chain import Chain

@@ -15,11 +15,11 @@ from ibpred.epsform.form import EpsilonForm
 from ibpred.errors import PointError, UnfinishedError
 from ibpred.family.units import unit_exponent
 from ibpred.iterated.solution import fibration
-from ibpred.numerics.channels import is_next_to_corner
-from ibpred.numerics.evaluate import Place, evaluate_places
-from ibpred.numerics.masters import master_rows, needed_order
-from ibpred.numerics.path import Target
-from ibpred.numerics.several import refuse_singular_point
+from ibpred.numerics.forms.channels import is_next_to_corner
+from ibpred.numerics.forms.evaluate import Place, evaluate_places
+from ibpred.numerics.forms.masters import master_rows, needed_order
+from ibpred.numerics.forms.path import Target
+from ibpred.numerics.forms.several import refuse_singular_point
 from ibpred.run.chain.chain import Chain
 from ibpred.run.constants.known_points import KnownPoint
 from ibpred.run.values.form_values import bits_ceiling, form_functions

@@ -15,15 +15,15 @@ import flint
 from ibpred.balls.accuracy import is_accurate
 from ibpred.balls.context import Ball
 from ibpred.balls.decimal import decimal_ball
-from ibpred.boundary.approach import Approach
-from ibpred.boundary.regions import Exponent, behaviour, parametric_family
+from ibpred.boundary.behaviour.approach import Approach
+from ibpred.boundary.behaviour.regions import Exponent, behaviour, parametric_family
 from ibpred.errors import PointError, PrecisionError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
 from ibpred.family.signs import euclidean_signs, masses
-from ibpred.numerics.distance import DISTANCE
-from ibpred.numerics.laurent_line import regular_locus
-from ibpred.numerics.local_laurent import Terms
+from ibpred.numerics.laurent.distance import DISTANCE
+from ibpred.numerics.laurent.laurent_line import regular_locus
+from ibpred.numerics.laurent.local_laurent import Terms
 from ibpred.numerics.value import Route, Value
 from ibpred.run.chain.chain import Chain
 from ibpred.run.values.local_expansions import entries_on, local_terms

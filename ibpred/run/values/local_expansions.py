@@ -17,16 +17,16 @@ from ibpred.balls.decimal import ball_of_decimal
 from ibpred.errors import PointError, PrecisionError, UnfinishedError
 from ibpred.exact.rational import Rational
 from ibpred.family.definition import Powers
-from ibpred.numerics.distance import (
+from ibpred.numerics.laurent.distance import (
     DISTANCE,
     check_separated,
     integral_terms,
     lowest_power,
     needed_orders,
 )
-from ibpred.numerics.expanded import ExpandedSystem, expanded_system
-from ibpred.numerics.laurent_line import spread
-from ibpred.numerics.local_laurent import (
+from ibpred.numerics.laurent.expanded import ExpandedSystem, expanded_system
+from ibpred.numerics.laurent.laurent_line import spread
+from ibpred.numerics.laurent.local_laurent import (
     Terms,
     local_system,
     master_terms,

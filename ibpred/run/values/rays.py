@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 from ibpred.exact.rational import Rational
-from ibpred.numerics.distance import DISTANCE
+from ibpred.numerics.laurent.distance import DISTANCE
 
 
 @dataclass(frozen=True)

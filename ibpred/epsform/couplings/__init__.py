@@ -1,0 +1,1 @@
+"""Everything off the diagonal, by exact triangular elimination."""

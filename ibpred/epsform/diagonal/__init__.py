@@ -1,0 +1,1 @@
+"""Diagonal blocks brought to epsilon-form."""

@@ -1,0 +1,1 @@
+"""Blocks without an epsilon-form: their operators, geometry, and forms with periods."""

@@ -1,0 +1,1 @@
+"""Fuchsian systems taken apart, and the constant matrix that factors eps out."""

@@ -1,0 +1,1 @@
+"""Square roots: tags, odd letters, covers and rational parametrisations, parity."""

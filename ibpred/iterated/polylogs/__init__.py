@@ -1,0 +1,1 @@
+"""Multiple polylogarithms: values as balls, special arguments, limits, fibration bases."""

@@ -1,0 +1,1 @@
+"""Differential systems order by order in eps: along lines, and near singular points."""
