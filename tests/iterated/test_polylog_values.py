@@ -153,6 +153,16 @@ def test_letters_very_near_the_path_and_its_ends() -> None:
     assert value.rel_accuracy_bits() > 190
 
 
+def test_letters_far_away() -> None:
+    """Li2 at tiny arguments: the cut between the two ends is not pushed onto an end."""
+    far = place(53 * 53 * 997)
+    with mp.workdps(60):
+        small = mp.mpf(1) / (53 * 53 * 997)
+        assert abs(number(polylog([ZERO, far], ONE, 50)) + classical(2, small)) < mp.mpf(10) ** -50
+        # G(b, 0; 1) = Li2(1/b), and the sum of both is a product that vanishes at one
+        assert abs(number(polylog([far, ZERO], ONE, 50)) - classical(2, small)) < mp.mpf(10) ** -50
+
+
 def test_many_digits() -> None:
     value = polylog([ZERO, ZERO, ONE], place("1/2"), 500)
     with precision(1700):

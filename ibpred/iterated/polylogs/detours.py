@@ -19,6 +19,7 @@ Spot = tuple[Fraction, Fraction]
 """Exact real and imaginary part."""
 
 _WIDEST_END = Fraction(7, 10)
+_FARTHEST = Fraction(64)
 _MOST_PIECES = 20_000
 
 
@@ -80,7 +81,8 @@ def cut_path(letters: Sequence[UnitLetter], bits: int) -> CutPath:
     on_path = sorted(
         (v for v in letters if v.ball != 0 and v.ball != 1 and _meets(v)), key=lambda v: float(v.ball.real)
     )
-    near, far = start or Fraction(4), end or Fraction(4)
+    # without the limit the cut may be rounded to an end of the path
+    near, far = min(start or _FARTHEST, _FARTHEST), min(end or _FARTHEST, _FARTHEST)
     if not on_path and 1 / (near + far) <= _WIDEST_END:
         cut = (_rounded(near / (near + far)), Fraction(0))
         return CutPath(cut, (), cut)
