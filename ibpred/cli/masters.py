@@ -27,5 +27,8 @@ def masters(shared: Shared) -> None:
     else:
         with open_chain(shared) as chain:
             data = masters_data(chain.definition, chain.masters())
+            chosen, by_order = chain.masters().exchanged()
+            if chosen:
+                data["chosen"] = {"masters": chosen, "instead_of": by_order}
             data["independent_count"] = counts_data(chain.definition, chain.counts())
         emit(shared, data, lambda: f"{masters_text(data)}\n{counts_text(data['independent_count'])}")

@@ -73,7 +73,12 @@ def choose_masters(
     wish = [(0, tuple(powers)) for powers in preferred]
     found = choose_common_masters(members, [0], primes, seed, wish, progress, notes)
     return Masters(
-        family.name, tuple(powers for _, powers in found.masters), found.prime, found.point, found.trials
+        family.name,
+        tuple(powers for _, powers in found.masters),
+        found.prime,
+        found.point,
+        found.trials,
+        tuple(powers for _, powers in found.by_order),
     )
 
 
@@ -135,7 +140,8 @@ def choose_common_masters(
         progress.advance(done + 1, len(coupled))
     if len(wish) == len(preferred):
         return found
-    return find_common_masters(members, roots, primes[0], seed, wish, progress)
+    chosen = find_common_masters(members, roots, primes[0], seed, wish, progress)
+    return replace(chosen, by_order=found.masters)
 
 
 @dataclass(frozen=True)

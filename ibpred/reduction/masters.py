@@ -60,6 +60,8 @@ class Masters:
         Where the eliminations were done.
     trials
         The eliminations; the last two agree.
+    by_order
+        The masters that the total order gives, where others were chosen; else empty.
     """
 
     family: str
@@ -67,6 +69,17 @@ class Masters:
     prime: int
     point: tuple[int, ...]
     trials: tuple[MastersTrial, ...]
+    by_order: tuple[Powers, ...] = ()
+
+    def exchanged(self) -> tuple[tuple[Powers, ...], tuple[Powers, ...]]:
+        """The masters that are not those of the total order, and those in whose place they stand."""
+        if not self.by_order:
+            return (), ()
+        mine, theirs = set(self.masters), set(self.by_order)
+        return (
+            tuple(powers for powers in self.masters if powers not in theirs),
+            tuple(powers for powers in self.by_order if powers not in mine),
+        )
 
 
 @dataclass(frozen=True)
@@ -83,6 +96,8 @@ class CommonMasters:
         Where the eliminations were done.
     trials
         The eliminations; the last two agree.
+    by_order
+        The masters that the total order gives, where others were chosen; else empty.
     """
 
     families: tuple[str, ...]
@@ -90,6 +105,7 @@ class CommonMasters:
     prime: int
     point: tuple[int, ...]
     trials: tuple[MastersTrial, ...]
+    by_order: tuple[Integral, ...] = ()
 
 
 def random_point(family: FamilyDefinition, prime: int, seed: int) -> tuple[int, ...]:

@@ -47,7 +47,14 @@ def masters_text(data: Data) -> str:
         [f"  {number}", integral_text(data["family"], master["powers"]), f"{master['lines']} lines"]
         for number, master in enumerate(data["masters"], start=1)
     ]
-    return "\n".join(lines + columns(rows))
+    lines += columns(rows)
+    if "chosen" in data:
+        chosen, others = (
+            ", ".join(integral_text(data["family"], powers) for powers in data["chosen"][key])
+            for key in ("masters", "instead_of")
+        )
+        lines.append(f"chosen so that denominators split: {chosen}; the total order gives {others}")
+    return "\n".join(lines)
 
 
 def named_integral(integral: Data) -> str:

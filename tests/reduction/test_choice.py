@@ -77,3 +77,16 @@ def test_preferred_masters_are_kept_and_their_sector_left_alone() -> None:
     found = choose_masters(FAMILY, ANALYSIS, PRIMES, 1, wish)
     assert set(wish) <= set(found.masters)
     assert len(found.masters) == len(MASTERS.masters)
+
+
+def test_the_choice_is_told() -> None:
+    assert choose_masters(FAMILY, ANALYSIS, PRIMES, 1).exchanged() == ((), ())
+    path = FILE.parent / "static-quark-cusp-two-loop.toml"
+    family = read_family(path.read_text(encoding="utf-8"), path.name, path.stem)
+    analysis = analyse(family)
+    found = choose_masters(family, analysis, PRIMES, 1)
+    chosen, others = found.exchanged()
+    assert chosen
+    assert sorted(map(sector_of, chosen)) == sorted(map(sector_of, others))
+    assert found.by_order == find_masters(family, analysis, PRIMES[0], 1).masters
+    assert {*found.masters} - {*chosen} == {*found.by_order} - {*others}

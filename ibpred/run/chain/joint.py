@@ -123,7 +123,8 @@ class Joint(Stages):
             own = chain.masters()
             self.finished += chain.finished
             integrals = tuple((0, powers) for powers in own.masters)
-            return CommonMasters((own.family,), integrals, own.prime, own.point, own.trials)
+            by_order = tuple((0, powers) for powers in own.by_order)
+            return CommonMasters((own.family,), integrals, own.prime, own.point, own.trials, by_order)
         return self.kept(
             "common masters",
             CommonMasters,

@@ -168,7 +168,9 @@ def _derive(chain: Chain, journal: _Journal) -> None:
     journal.note("sectors", counts, seconds)
     masters, seconds = journal.timed(chain.masters)
     journal.files["masters.json"] = masters_data(family, masters)
-    journal.note("masters", f"{len(masters.masters)}", seconds)
+    chosen, _ = masters.exchanged()
+    choice = f", {len(chosen)} chosen so that denominators split" if chosen else ""
+    journal.note("masters", f"{len(masters.masters)}{choice}", seconds)
     derivation, seconds = journal.timed(chain.derivation)
     outcome = "no invariant"
     if derivation.effort is not None:
