@@ -92,9 +92,10 @@ class Obstruction:
     exponents
         (singular point, local exponents of the block) as text.
     factors
-        Factors of the operator, the leftmost first, as far as factors of order one go.
+        Factors of the operator, the leftmost first, as far as they are found; in several ratios on the line
+        that `geometry` names.
     operator_exponents
-        (singular point, local exponents of the operator) as text.
+        (singular point, local exponents of the operator) as text, on the same line.
     geometry
         What the operator points to, a sentence.
     period_form

@@ -189,6 +189,23 @@ def test_geometries() -> None:
     assert "a Calabi-Yau variety of dimension 3" in text
 
 
+def test_the_sunrise_of_distinct_masses_hides_an_elliptic_curve(tmp_path: Path) -> None:
+    """Order four in all, but D^2 splits off: one curve (Adams, Bogner, Weinzierl, arXiv:1302.7004)."""
+    definition = read_family_file(Path(__file__).parents[2] / "families" / "sunrise-distinct-masses.toml")
+    with Store(tmp_path) as store:
+        found = Chain(definition, store, SILENT, 1).epsilon_form()
+    assert isinstance(found, Obstructed)
+    (told,) = found.obstructions
+    assert len(told.rows) == 4
+    assert told.factors[1:] == ("D", "D")
+    assert told.geometry is not None
+    assert told.geometry.startswith(
+        "at y = 1/7, z = 1/8: the operator has factors of order 2, 1, 1 (left to right)"
+    )
+    assert told.geometry.endswith("an elliptic curve")
+    assert len(set(told.exponents)) == len(told.exponents)
+
+
 @settings(max_examples=20, deadline=None)
 @given(st.lists(st.integers(-9, 9), min_size=1, max_size=8))
 def test_inverse_of_a_power_series(numbers: list[int]) -> None:

@@ -33,8 +33,11 @@ def finding(obstacle: Obstacle, places: Sequence[Place], name: str) -> Finding:
     def text(index: int) -> str:
         return f"{name} = infinity" if index < 0 else places[index].text()
 
+    # the points of one irreducible letter are told once
     exponents = tuple(
-        (text(index), tuple(exponent_text(e) for e in found)) for index, found in obstacle.exponents
+        dict.fromkeys(
+            (text(index), tuple(exponent_text(e) for e in found)) for index, found in obstacle.exponents
+        )
     )
     branch = _branch_points(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
     common = _common_roots(obstacle, places) if obstacle.trouble is Trouble.FRACTION else ()
@@ -117,5 +120,5 @@ def _reason(obstacle: Obstacle, point: str) -> str:
 def _geometry(size: int) -> str:
     """What a block of this size points to as a rule."""
     return {2: "an elliptic curve, as a rule", 3: "a K3 surface, as a rule"}.get(
-        size, "a Calabi-Yau variety or a curve of higher genus, as a rule"
+        size, "an elliptic curve or of something beyond it, in the whole block or in a part, as a rule"
     )

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from fractions import Fraction
 
 from ibpred.epsform.blocks import Finding
 from ibpred.epsform.form import Connection, Obstruction
@@ -13,6 +14,7 @@ from ibpred.epsform.obstructions.operators import (
     Operator,
     is_self_adjoint,
     maximal_points,
+    operator,
     singular_points,
     symmetric_root,
 )
@@ -24,13 +26,16 @@ from ibpred.errors import UnfinishedError
 SERIES_TERMS = 48
 """Terms of the power series of a period form."""
 
+_LINE = 7  # the other ratios are 1/7, 1/8, ... where factors are looked for
+
 
 def obstruction(
     connection: Connection, rows: tuple[int, ...], found: Finding, primes: Sequence[int], seed: int
 ) -> Obstruction:
     """All that is told about a block that has no epsilon-form.
 
-    The operator is taken in the first ratio that the block depends on.
+    The operator is taken in the first ratio that the block depends on. Where it depends on others as well,
+    its factors and their geometry are looked at on a line where these are fixed numbers.
     """
     own = {name: part(connection.matrices[name], rows, rows) for name in connection.variables}
     name = next((n for n in own if not vanishes(own[n])), connection.variables[0])
@@ -45,9 +50,8 @@ def obstruction(
     equation = picard_fuchs(own[name], name) if cyclic is None else cyclic.at_zero
     if equation is None:
         return Obstruction(rows, found.reason, None, found.exponents)
-    if set(connection.variables) - {name} & {v for c in equation.coefficients for v in c.variables()}:
-        return Obstruction(rows, found.reason, equation.text(), found.exponents)
-    parts = factors(equation)
+    line, where = _on_a_line(equation)
+    parts = factors(line)
     form = None
     if cyclic is not None and len(parts) == 1:
         form = period_form(cyclic, SERIES_TERMS)
@@ -57,10 +61,21 @@ def obstruction(
         equation.text(),
         found.exponents,
         tuple(p.text() for p in parts),
-        tuple((p.text(name), tuple(map(str, p.exponents))) for p in singular_points(equation)),
-        geometry(equation, parts),
+        tuple((p.text(name), tuple(map(str, p.exponents))) for p in singular_points(line)),
+        where + geometry(line, parts),
         form,
     )
+
+
+def _on_a_line(equation: Operator) -> tuple[Operator, str]:
+    """The operator where all other ratios are fixed numbers, and words that say so."""
+    used = {variable for c in equation.coefficients for variable in c.variables()}
+    others = [variable for variable in equation.ring.names if variable in used - {equation.name}]
+    if not others:
+        return equation, ""
+    values = {variable: Fraction(1, _LINE + k) for k, variable in enumerate(others)}
+    listed = ", ".join(f"{variable} = {value}" for variable, value in values.items())
+    return operator([c.substitute(values) for c in equation.coefficients], equation.name), f"at {listed}: "
 
 
 def geometry(equation: Operator, parts: Sequence[Operator]) -> str:
