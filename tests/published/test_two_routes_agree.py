@@ -54,7 +54,6 @@ PHYSICAL = (
     "box-two-opposite-legs",
     "bubble-distinct-masses",
     "bubble-two-masses",
-    "crossed-vertex",
     "kite-massive",
     "massless-box",
     "pentagon",
