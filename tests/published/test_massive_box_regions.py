@@ -1,8 +1,8 @@
 """The box with a massive loop in all regions: two routes that share only the reduction.
 
 From one Euclidean point, where the epsilon-form gives them, the masters are carried past the thresholds
-s = 4 m2, t = 4 m2 and the leading singularity s t = 4 m2 (s + t); the auxiliary-mass method gives them at each
-point by itself.
+s = 4 m2, t = 4 m2 and the leading singularity s t = 4 m2 (s + t); the auxiliary-mass method gives them at
+each point by itself.
 """
 
 from fractions import Fraction
