@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from fractions import Fraction
 from typing import Any
 
 import flint
@@ -15,6 +16,34 @@ Polynomial = Any  # flint.fmpz_mpoly; python-flint ships no usable type for it
 def polynomial_text(polynomial: Polynomial) -> str:
     """Infix text of an integer polynomial, ``^`` for powers, no spaces, in the ring's term order."""
     return str(polynomial).replace(" ", "")
+
+
+def factors_text(content: Fraction, factors: Sequence[tuple[Polynomial, int]]) -> str:
+    """Text of a content times factors with (signed) multiplicities, e.g. ``-2*(d-3)/(t*(s+t)^2)``."""
+    if not factors:
+        return str(content)
+
+    def product(sign: int) -> list[str]:
+        texts = []
+        for polynomial, power in factors:
+            if power * sign <= 0:
+                continue
+            text = polynomial_text(polynomial)
+            if len(polynomial) > 1:
+                text = f"({text})"
+            texts.append(text if abs(power) == 1 else f"{text}^{abs(power)}")
+        return texts
+
+    above, below = product(1), product(-1)
+    if content.denominator != 1:
+        below.insert(0, str(content.denominator))
+    sign = "-" if content < 0 else ""
+    if abs(content.numerator) != 1 or not above:
+        above.insert(0, str(abs(content.numerator)))
+    text = sign + "*".join(above)
+    if below:
+        text += f"/{below[0]}" if len(below) == 1 else f"/({'*'.join(below)})"
+    return text
 
 
 def plain_terms(polynomial: Polynomial) -> dict[tuple[int, ...], int]:

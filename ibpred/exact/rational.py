@@ -17,6 +17,7 @@ from ibpred.errors import InputError
 from ibpred.exact.polynomial import (
     Polynomial,
     constant_value,
+    factors_text,
     irreducible_factors,
     plain_terms,
     polynomial_text,
@@ -331,31 +332,7 @@ class Rational:
 
     def factored_text(self) -> str:
         """The element as a product of its irreducible factors, e.g. ``-2*(d-3)/(t*(s+t)^2)``."""
-        content, found = self.factors()
-        if not found:
-            return str(content)
-
-        def product(sign: int) -> list[str]:
-            texts = []
-            for polynomial, power in found:
-                if power * sign <= 0:
-                    continue
-                text = polynomial_text(polynomial)
-                if len(polynomial) > 1:
-                    text = f"({text})"
-                texts.append(text if abs(power) == 1 else f"{text}^{abs(power)}")
-            return texts
-
-        above, below = product(1), product(-1)
-        if content.denominator != 1:
-            below.insert(0, str(content.denominator))
-        sign = "-" if content < 0 else ""
-        if abs(content.numerator) != 1 or not above:
-            above.insert(0, str(abs(content.numerator)))
-        text = sign + "*".join(above)
-        if below:
-            text += f"/{below[0]}" if len(below) == 1 else f"/({'*'.join(below)})"
-        return text
+        return factors_text(*self.factors())
 
     def __repr__(self) -> str:
         return f"Rational({self})"

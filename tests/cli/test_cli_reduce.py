@@ -42,7 +42,7 @@ def test_a_finished_store_answers_without_identities(call, monkeypatch: pytest.M
 
     for name in ("analyse_together", "reduce_together", "family_identities"):
         monkeypatch.setattr(f"ibpred.run.chain.joint.{name}", refuse)
-    monkeypatch.setattr("ibpred.run.chain.chain.analyse", refuse)
+    monkeypatch.setattr("ibpred.run.chain.equations.analyse", refuse)
     for powers in [(2, 1, 1, 1), (1, 2, 1, -1)]:
         code, out, _ = call("--integral", ",".join(map(str, powers)), "--json", "--quiet")
         assert code == 0

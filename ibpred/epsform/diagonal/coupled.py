@@ -2,19 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
-from math import isqrt
 from typing import Any
 
 from ibpred.epsform.blocks import Block, Finding
+from ibpred.epsform.diagonal.entries import matrix_of, packed, reduced_entries
 from ibpred.epsform.form import Matrix
 from ibpred.epsform.lattices.findings import finding
 from ibpred.epsform.lattices.image import Pattern, block_pattern, splits
 from ibpred.epsform.lattices.intertwine import intertwiners, modular_number, reference_numbers, representative
 from ibpred.epsform.lattices.local import Obstacle, Trouble
-from ibpred.epsform.lattices.pencil import ModularMatrix, ModularPolynomial, PolynomialMatrix, times_constant
+from ibpred.epsform.lattices.pencil import ModularMatrix, times_constant
 from ibpred.epsform.lattices.probe import Probe, Residues, glued_at, letter_residues, probe
 from ibpred.epsform.lattices.sampling import Sample, reconstruct_in_eps
 from ibpred.epsform.lattices.sections import Glued
@@ -24,7 +24,7 @@ from ibpred.epsform.residues.content import simplified
 from ibpred.epsform.residues.decompose import conjugated, decomposed
 from ibpred.epsform.verify import canonical_matrix, satisfies
 from ibpred.errors import ReconstructionError, UnfinishedError
-from ibpred.exact.rational import Rational, Ring
+from ibpred.exact.rational import Rational
 from ibpred.progress import SILENT, Progress
 
 
@@ -156,43 +156,9 @@ def _sample(
         first = next(c for above, _ in entries for c in above.coeffs() if int(c))
         scale = pow(int(first), -1, prime)
         entries = [(above * scale, below) for above, below in entries]
-    values = [int(c) for above, below in entries for c in (*above.coeffs(), *below.coeffs())]
+    shape, values = packed(entries)
     values += [int(e) for matrix in right for row in matrix.tolist() for e in row]
-    shape = tuple((above.degree(), below.degree()) for above, below in entries)
     return Sample(shape, tuple(values))
-
-
-def reduced_entries(
-    numerators: PolynomialMatrix, denominator: ModularPolynomial
-) -> list[tuple[ModularPolynomial, ModularPolynomial]]:
-    """The entries row by row as reduced fractions with monic denominators."""
-    entries = []
-    for entry in (e for row in numerators for e in row):
-        common = entry.gcd(denominator)
-        below = denominator // common
-        lead = below.leading_coefficient()
-        entries.append((entry // common / lead, below / lead))
-    return entries
-
-
-def matrix_of(
-    shape: Sequence[tuple[int, int]], coefficients: Iterator[Rational], ring: Ring, name: str
-) -> Matrix:
-    """The inverse of `reduced_entries` for a square matrix: fractions in x from their coefficients."""
-    x = ring.variable(name)
-
-    def polynomial(degree: int) -> Rational:
-        total = ring.zero
-        for power in range(degree + 1):
-            total = total + next(coefficients) * x**power
-        return total
-
-    entries = []
-    for above, below in shape:
-        top = polynomial(above)
-        entries.append(top / polynomial(below))
-    size = isqrt(len(entries))
-    return tuple(tuple(entries[i * size : (i + 1) * size]) for i in range(size))
 
 
 def _unpacked(

@@ -9,15 +9,11 @@ function of y, and the canonical functions restricted to x = O are canonical for
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
-from typing import Protocol
 
 import flint
-import numpy as np
-from numpy.typing import NDArray
 
 from ibpred.epsform.blocks import Block, Finding
-from ibpred.epsform.diagonal.coupled import matrix_of, reduced_entries
+from ibpred.epsform.diagonal.entries import Entry, rebuilt_matrix, reduced_entries
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix, Obstructed
 from ibpred.epsform.lattices.findings import finding
 from ibpred.epsform.lattices.image import Pattern, block_pattern, splits
@@ -32,79 +28,11 @@ from ibpred.epsform.residues.decompose import conjugated
 from ibpred.epsform.residues.fuchsian import Stuck, fuchsian
 from ibpred.epsform.roots.tags import Tag, between_functions
 from ibpred.errors import ReconstructionError
-from ibpred.exact.rational import Rational, Ring, ring
+from ibpred.exact.rational import Ring, ring
 from ibpred.progress import SILENT, Progress
-from ibpred.reconstruct.functions import reconstruct
 from ibpred.reconstruct.modular import LARGEST_BITS
-from ibpred.reconstruct.sampling import Sampler, UnluckyPrimeError
 
 Solver = Callable[[Connection], EpsilonForm | Obstructed]
-Shape = tuple[tuple[int, int], ...]
-_LINES = 24
-"""Seeds that are tried for the lines of a reconstruction."""
-LANES = 8
-"""Samples that settle the degrees in x."""
-
-
-class HasCoefficients(Protocol):
-    """A matrix as a black box in the parameters."""
-
-    @property
-    def variables(self) -> tuple[str, ...]:
-        """The parameters."""
-
-    def coefficients(self, values: Sequence[int], prime: int) -> tuple[Shape, list[int]] | None:
-        """Degrees and coefficients in x of the entries; None where the point is useless."""
-
-
-@dataclass(frozen=True)
-class _Columns:
-    """The entries of T C as a black box in the parameters: their coefficients in x."""
-
-    pattern: Pattern
-    probed: Probe
-    restricted: Matrix
-    shape: Shape | None
-    progress: Progress
-
-    @property
-    def variables(self) -> tuple[str, ...]:
-        return self.pattern.parameters
-
-    @property
-    def entries(self) -> int:
-        return sum(a + b + 2 for a, b in self.shape or ())
-
-    def coefficients(self, values: Sequence[int], prime: int) -> tuple[Shape, list[int]] | None:
-        """Degrees and coefficients at one point; None where the point is useless."""
-        self.progress.advance(0, None)
-        here = glued_at(self.pattern, values, self.probed.slopes, prime, self.probed.base)
-        if not isinstance(here, Glued):
-            return None
-        if isinstance(letter_residues(here, self.pattern, values[0], prime), Obstacle):
-            return None
-        size = len(here.numerators)
-        try:
-            flat = [e.modular(values, prime) if e else 0 for row in self.restricted for e in row]
-        except ZeroDivisionError:
-            return None
-        columns = times_constant(here.numerators, flint.nmod_mat(size, size, flat, prime))
-        entries = reduced_entries(columns, here.denominator)
-        shape = tuple((above.degree(), below.degree()) for above, below in entries)
-        return shape, [int(c) for above, below in entries for c in (*above.coeffs(), *below.coeffs())]
-
-    def __call__(
-        self, points: NDArray[np.uint64], prime: int
-    ) -> tuple[NDArray[np.uint64], NDArray[np.bool_]]:
-        count = points.shape[1]
-        values = np.zeros((self.entries, count), dtype=np.uint64)
-        good = np.zeros(count, dtype=np.bool_)
-        for lane in range(count):
-            found = self.coefficients([int(v) for v in points[:, lane]], prime)
-            if found is not None and found[0] == self.shape:
-                values[:, lane] = found[1]
-                good[lane] = True
-        return values, good
 
 
 def solve_coupled_many(
@@ -168,47 +96,31 @@ def solve_coupled_many(
             roots=letters,
         )
     tag = tuple(outcome.radicands[k].to_ring(field) for k in outcome.tags[0])
-    columns = _Columns(pattern, probed, outcome.transformation, None, progress)
-    columns = _Columns(
-        pattern, probed, outcome.transformation, usual_shape(columns, usable[0], seed, subject), progress
-    )
-    rebuilt = rebuilt_entries(columns, usable, seed, rest)
-    coefficients = iter([entry.to_ring(field) for entry in rebuilt])
-    transformation = matrix_of(columns.shape or (), coefficients, field, name)
+    restricted = outcome.transformation
+
+    def image(values: Sequence[int], prime: int) -> Sequence[Entry] | None:
+        return _columns(pattern, probed, restricted, values, prime)
+
+    transformation = rebuilt_matrix(image, name, field, usable, seed, subject, progress)
     return finished(block, transformation, (tag,) * len(transformation), primes, seed)
 
 
-def usual_shape(columns: HasCoefficients, prime: int, seed: int, subject: str) -> Shape:
-    """Degrees in x of the entries at generic parameters."""
-    random = np.random.default_rng(seed)
-    found: list[Shape] = []
-    for _ in range(20 * LANES):
-        values = [int(v) for v in random.integers(2, prime, size=len(columns.variables))]
-        sample = columns.coefficients(values, prime)
-        if sample is not None:
-            found.append(sample[0])
-        if len(found) == LANES:
-            return max(found, key=found.count)
-    raise ReconstructionError(f"{subject}: too few points at which its poles have roots modulo the prime")
-
-
-def rebuilt_entries(columns: Sampler, primes: Sequence[int], seed: int, field: Ring) -> tuple[Rational, ...]:
-    """The coefficients as functions of the parameters.
-
-    Where letters of degree two and more have no roots modulo the prime at some value of a parameter, no
-    sample on a line with that value is of use; other lines are then taken.
-
-    Raises
-    ------
-    ReconstructionError
-        If primes or samples do not suffice.
-    """
-    for attempt in range(_LINES - 1):
-        try:
-            return reconstruct(columns, primes, seed + attempt, field).entries
-        except UnluckyPrimeError:
-            continue
-    return reconstruct(columns, primes, seed + _LINES - 1, field).entries
+def _columns(
+    pattern: Pattern, probed: Probe, restricted: Matrix, values: Sequence[int], prime: int
+) -> Sequence[Entry] | None:
+    """The entries of T C at one point of the parameters; None where the point is useless."""
+    here = glued_at(pattern, values, probed.slopes, prime, probed.base)
+    if not isinstance(here, Glued):
+        return None
+    if isinstance(letter_residues(here, pattern, values[0], prime), Obstacle):
+        return None
+    size = len(here.numerators)
+    try:
+        flat = [e.modular(values, prime) if e else 0 for row in restricted for e in row]
+    except ZeroDivisionError:
+        return None
+    columns = times_constant(here.numerators, flint.nmod_mat(size, size, flat, prime))
+    return reduced_entries(columns, here.denominator)
 
 
 def transformed(block: Connection, transformation: Matrix) -> dict[str, Matrix]:

@@ -9,22 +9,11 @@ roots still.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
-
-import numpy as np
-from numpy.typing import NDArray
 
 from ibpred.epsform.blocks import Block, Finding
 from ibpred.epsform.diagonal.characters import Characters, characters, normal_columns
-from ibpred.epsform.diagonal.coupled import matrix_of, reduced_entries
-from ibpred.epsform.diagonal.coupled_many import (
-    Shape,
-    Solver,
-    finished,
-    rebuilt_entries,
-    transformed,
-    usual_shape,
-)
+from ibpred.epsform.diagonal.coupled_many import Solver, finished, transformed
+from ibpred.epsform.diagonal.entries import Entry, rebuilt_matrix, reduced_entries
 from ibpred.epsform.form import Connection, EpsilonForm, Matrix, Obstructed
 from ibpred.epsform.lattices.image import splits
 from ibpred.epsform.matrices import identity, product
@@ -33,51 +22,6 @@ from ibpred.epsform.roots.tags import Tag, canonical, product_of
 from ibpred.exact.rational import Rational, ring
 from ibpred.progress import SILENT, Progress
 from ibpred.reconstruct.modular import LARGEST_BITS
-
-
-@dataclass(frozen=True)
-class _Columns:
-    """The entries of T as a black box in the parameters: their coefficients in x."""
-
-    block: Characters
-    shape: Shape | None
-    progress: Progress
-
-    @property
-    def variables(self) -> tuple[str, ...]:
-        return self.block.found[0].pattern.parameters
-
-    @property
-    def entries(self) -> int:
-        return sum(a + b + 2 for a, b in self.shape or ())
-
-    def coefficients(self, values: Sequence[int], prime: int) -> tuple[Shape, list[int]] | None:
-        """Degrees and coefficients at one point; None where the point is useless."""
-        self.progress.advance(0, None)
-        parts = []
-        for character in self.block.found:
-            columns = normal_columns(character, values, prime, self.block)
-            if columns is None:
-                return None
-            flat = reduced_entries(*columns)
-            width = len(character.rows)
-            parts.append([flat[k : k + width] for k in range(0, len(flat), width)])
-        entries = [entry for row in zip(*parts, strict=True) for own in row for entry in own]
-        shape = tuple((above.degree(), below.degree()) for above, below in entries)
-        return shape, [int(c) for above, below in entries for c in (*above.coeffs(), *below.coeffs())]
-
-    def __call__(
-        self, points: NDArray[np.uint64], prime: int
-    ) -> tuple[NDArray[np.uint64], NDArray[np.bool_]]:
-        count = points.shape[1]
-        values = np.zeros((self.entries, count), dtype=np.uint64)
-        good = np.zeros(count, dtype=np.bool_)
-        for lane in range(count):
-            found = self.coefficients([int(v) for v in points[:, lane]], prime)
-            if found is not None and found[0] == self.shape:
-                values[:, lane] = found[1]
-                good[lane] = True
-        return values, good
 
 
 def solve_rooted(
@@ -120,14 +64,15 @@ def solve_rooted(
     usable = tuple(p for p in small if all(splits(character.pattern, p) for character in roots.found))
     if not usable:
         return found
-    columns = _Columns(roots, None, progress)
-    columns = _Columns(roots, usual_shape(columns, usable[0], seed, subject), progress)
-    rest = ring(n for n in field.names if n != name)
-    rebuilt = rebuilt_entries(columns, usable, seed, rest)
-    coefficients = iter([entry.to_ring(field) for entry in rebuilt])
-    transformation = matrix_of(columns.shape or (), coefficients, field, name)
+    known = roots
+
+    def image(values: Sequence[int], prime: int) -> Sequence[Entry] | None:
+        return _columns(known, values, prime)
+
+    transformation = rebuilt_matrix(image, name, field, usable, seed, subject, progress)
     tags = [character.tag for character in roots.found for _ in character.rows]
     if len(block.variables) > 1:
+        rest = ring(n for n in field.names if n != name)
         moved = transformed(block, transformation)
         matrices = {
             other: tuple(tuple(e.substitute({name: roots.base}).to_ring(rest) for e in row) for row in matrix)
@@ -146,6 +91,19 @@ def solve_rooted(
     order = sorted(range(len(tags)), key=lambda k: (tags.index(tags[k]), k))
     sort = tuple(tuple(identity(field, len(tags))[i][k] for k in order) for i in range(len(tags)))
     return finished(block, product(transformation, sort, field), tuple(tags[k] for k in order), primes, seed)
+
+
+def _columns(block: Characters, values: Sequence[int], prime: int) -> Sequence[Entry] | None:
+    """The entries of T at one point of the parameters; None where the point is useless."""
+    parts = []
+    for character in block.found:
+        columns = normal_columns(character, values, prime, block)
+        if columns is None:
+            return None
+        flat = reduced_entries(*columns)
+        width = len(character.rows)
+        parts.append([flat[k : k + width] for k in range(0, len(flat), width)])
+    return [entry for row in zip(*parts, strict=True) for own in row for entry in own]
 
 
 def _completed(

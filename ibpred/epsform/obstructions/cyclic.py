@@ -13,7 +13,7 @@ from dataclasses import dataclass
 
 import flint
 
-from ibpred.epsform.diagonal.coupled import reduced_entries
+from ibpred.epsform.diagonal.entries import reduced_entries
 from ibpred.epsform.form import Matrix
 from ibpred.epsform.lattices.image import Pattern, pencil_at, splits
 from ibpred.epsform.lattices.local import ObstacleError, normalised, residue_at

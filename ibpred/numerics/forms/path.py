@@ -14,7 +14,7 @@ series are summed.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from itertools import pairwise
@@ -22,7 +22,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
-from ibpred.errors import InputError, PrecisionError
+from ibpred.errors import InputError, PointError, PrecisionError
 from ibpred.numerics.forms.canonical import CanonicalSystem, refuse_singular
 
 Point = tuple[Fraction, Fraction]
@@ -53,6 +53,20 @@ class Target:
     def value(self) -> Fraction:
         """The ratio as a real number."""
         return -self.modulus if self.half_turns else self.modulus
+
+
+def turns_one_way(targets: Mapping[str, Target]) -> dict[str, int]:
+    """The half turns of several ratios.
+
+    Raises
+    ------
+    PointError
+        If half turns in both directions meet.
+    """
+    turns = {name: target.half_turns for name, target in targets.items()}
+    if {1, -1} <= set(turns.values()):
+        raise PointError("the ratios turn in both directions on the way to this point; choose another unit")
+    return turns
 
 
 @dataclass(frozen=True)

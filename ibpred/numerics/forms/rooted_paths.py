@@ -23,7 +23,7 @@ from ibpred.exact.rational import Rational, ring
 from ibpred.iterated.alphabet import Alphabet, alphabet_of, letters_with_roots, limit, lowest
 from ibpred.numerics.forms.canonical import Orders
 from ibpred.numerics.forms.centre import Place
-from ibpred.numerics.forms.path import Target
+from ibpred.numerics.forms.path import Target, turns_one_way
 from ibpred.numerics.forms.rooted import Point, RootedSystem, centre_of, rooted_system, roots_after
 from ibpred.numerics.forms.series import carried, from_base
 from ibpred.numerics.forms.stations import Ratios, by_a_station
@@ -72,9 +72,7 @@ def evaluate_rooted(
     """
     letters = singular_polynomials(form)
     refuse_zero(letters, {name: target.value for name, target in targets.items()})
-    turns = {name: target.half_turns for name, target in targets.items()}
-    if {1, -1} <= set(turns.values()):
-        raise PointError("the ratios turn in both directions on the way to this point; choose another unit")
+    turns = turns_one_way(targets)
     levels = _levels(form, corner)
     moduli = {name: target.modulus for name, target in targets.items()}
     start, here = by_a_station(

@@ -24,7 +24,7 @@ from ibpred.exact.rational import Rational
 from ibpred.numerics.forms.canonical import CanonicalSystem, Letter, Orders, sparse_rows
 from ibpred.numerics.forms.centre import Place, centre_at
 from ibpred.numerics.forms.continuation import evaluate_canonical
-from ibpred.numerics.forms.path import Target
+from ibpred.numerics.forms.path import Target, turns_one_way
 from ibpred.numerics.forms.series import carried
 from ibpred.numerics.forms.stations import Ratios, by_a_station
 from ibpred.numerics.laurent.crossings import along_line, approximate_roots, around, coefficients, crossings
@@ -54,9 +54,7 @@ def evaluate_several(
         If a letter vanishes at the point, or half turns in both directions meet.
     """
     refuse_singular_point(form, targets)
-    turns = {name: target.half_turns for name, target in targets.items()}
-    if {1, -1} <= set(turns.values()):
-        raise PointError("the ratios turn in both directions on the way to this point; choose another unit")
+    turns = turns_one_way(targets)
 
     def way(point: Ratios) -> Orders:
         values = constants

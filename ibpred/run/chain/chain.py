@@ -5,14 +5,12 @@ from __future__ import annotations
 from dataclasses import replace
 from functools import cached_property
 
-import ibpred
 from ibpred.boundary.conditions.edges import Corner
 from ibpred.boundary.conditions.explore import BoundaryProblem
 from ibpred.boundary.conditions.fix import Boundary, fix_constants
 from ibpred.boundary.continued import continued
 from ibpred.boundary.problem import boundary_of_series, one_scale_values, problem_in_variables
 from ibpred.boundary.problem import boundary_problem as problem_in_ratios
-from ibpred.diffeq.derive import Derivation, differential_system
 from ibpred.diffeq.ratios import (
     Coordinates,
     DimensionlessSystem,
@@ -20,150 +18,22 @@ from ibpred.diffeq.ratios import (
     dimensionless,
     ratio_coordinates,
 )
-from ibpred.digest import digest
 from ibpred.epsform.factorise import factorise
 from ibpred.epsform.form import Connection, EpsilonForm, Obstructed
 from ibpred.epsform.variables import RootVariables, Variables, root_variables
 from ibpred.errors import InputError, ObstructionError, UnfinishedError
-from ibpred.exact.codec import to_data
-from ibpred.family.definition import FamilyDefinition, Powers
 from ibpred.family.signs import euclidean_signs, region_signs
-from ibpred.identities.rows import family_identities
-from ibpred.progress import Expired, Progress, never
-from ibpred.reduction.choice import choose_masters
-from ibpred.reduction.independent import SectorCount, compare_counts
-from ibpred.reduction.masters import Masters
-from ibpred.reduction.several import reduce_together
-from ibpred.reduction.table import ReductionTable
-from ibpred.reduction.wanted import check_powers
-from ibpred.report.text import integral_text
+from ibpred.run.chain.equations import Equations
 from ibpred.run.chain.normalisation import normalised, trivial_form
-from ibpred.run.chain.records import Counts, Outcome, StoppedError, outcome_of
-from ibpred.run.chain.stages import SEED, Stages
-from ibpred.run.storage.rows import table_rows
-from ibpred.run.storage.store import Store
-from ibpred.run.workers.local import Workers
-from ibpred.sectors.analysis import SectorAnalysis, analyse
+from ibpred.run.chain.records import Outcome, StoppedError, outcome_of
+from ibpred.run.chain.stages import SEED
 
 
-class Chain(Stages):
-    """The stages of one family, each computed when first asked for and kept in the store.
+class Chain(Equations):
+    """The stages of one family from its differential equations to its boundary constants.
 
-    Parameters
-    ----------
-    definition
-        The family.
-    store
-        Where finished stages are kept.
-    progress
-        Told what is being done.
-    workers
-        Who samples the reduction; a number of threads.
-    preferred
-        Integrals that are to be masters; in the other sectors masters are chosen.
-    expired
-        The deadline; see `ibpred.run.chain.stages.Stages`.
+    The parameters are those of `ibpred.run.chain.equations.Equations`.
     """
-
-    def __init__(
-        self,
-        definition: FamilyDefinition,
-        store: Store,
-        progress: Progress,
-        workers: int | Workers,
-        preferred: tuple[Powers, ...] = (),
-        expired: Expired = never,
-    ) -> None:
-        identity = digest(["family", ibpred.__version__, to_data(definition), preferred])
-        super().__init__(identity, store, progress, workers, expired)
-        self.definition = definition
-        self.preferred = preferred
-        self._analysis: SectorAnalysis | None = None
-
-    def analysis(self) -> SectorAnalysis:
-        """Sectors, symmetries, zero sectors."""
-        if self._analysis is None:
-            self.progress.stage("sectors")
-            self._analysis = analyse(self.definition)
-        return self._analysis
-
-    def masters(self) -> Masters:
-        """The master integrals."""
-        return self.kept(
-            "masters",
-            Masters,
-            None,
-            lambda: choose_masters(
-                self.definition,
-                self.analysis(),
-                self.primes,
-                SEED,
-                self.preferred,
-                self.progress,
-                self._notes("masters"),
-            ),
-        )
-
-    def counts(self) -> tuple[SectorCount, ...]:
-        """The masters of each sector beside its critical points."""
-        masters = self.masters().masters
-        return self.kept(
-            "counts",
-            Counts,
-            None,
-            lambda: Counts(
-                compare_counts(self.definition, self.analysis(), masters, self.primes[0], SEED, self.progress)
-            ),
-        ).sectors
-
-    def reduction(self, wanted: tuple[Powers, ...]) -> ReductionTable:
-        """Integrals in terms of the masters."""
-        for powers in wanted:
-            check_powers(self.definition, powers)
-        masters = tuple((0, powers) for powers in self.masters().masters)
-        rows = table_rows(self.store, [self.definition], masters)
-        asked = [(0, powers) for powers in wanted]
-        missing = rows.missing(asked)
-        if missing:
-            self._stored(
-                digest([rows.collection, to_data(missing)]),
-                lambda: reduce_together(
-                    family_identities([self.definition], [self.analysis()]),
-                    missing,
-                    masters,
-                    self.primes,
-                    SEED,
-                    self.deck,
-                    self.progress,
-                ),
-                rows.put,
-            )
-        batches = rows.batches(asked)
-        return ReductionTable(
-            self.definition.name,
-            tuple(powers for _, powers in masters),
-            {powers: rows.combination((0, powers)) for powers in wanted},
-            tuple(item for batch in batches for item in batch.evidence),
-            tuple(item for batch in batches for item in batch.effort),
-        )
-
-    def derivation(self) -> Derivation:
-        """The differential equations of the masters, with their evidence."""
-        masters = self.masters().masters
-        return self.kept(
-            "differential equation",
-            Derivation,
-            None,
-            lambda: differential_system(
-                self.definition,
-                self.analysis(),
-                masters,
-                self.primes,
-                SEED,
-                self.deck,
-                self.progress,
-            ),
-        )
 
     def signs(self) -> dict[str, int]:
         """Signs of the invariants in the region of the solution, where the ratios are positive."""
@@ -178,14 +48,14 @@ class Chain(Stages):
         signs = region_signs(self.definition)
         return signs, euclidean_signs(self.definition) == signs
 
-    def has_euclidean_region(self) -> bool:
+    def left_euclidean_region(self) -> bool:
         """Whether the family asks for another region than the Euclidean one that it has."""
         return bool(self.definition.region) and euclidean_signs(self.definition) is not None
 
     def in_euclidean_region(self) -> Chain:
         """The same family solved in its Euclidean region, from where i0 leads everywhere."""
         plain = replace(self.definition, region=())
-        return Chain(plain, self.store, self.progress, self.workers, self.preferred)
+        return Chain(plain, self.store, self.watcher, self.workers, self.preferred, self.expired)
 
     def coordinates(self) -> Coordinates:
         """Dimensionless variables: the ratios, the user's, or those in which square roots are rational."""
@@ -348,7 +218,7 @@ class Chain(Stages):
             form = self.solved_form()
             self.progress.stage("boundary constants")
             if form.variables:
-                if self.has_euclidean_region():
+                if self.left_euclidean_region():
                     try:
                         return self._continued(form, weight, corner)
                     except UnfinishedError as error:
@@ -398,7 +268,3 @@ class Chain(Stages):
     def heaviness(self) -> int:
         """Weight by which what is solved for may exceed the order in eps: that of factors ``Gamma(1/2)``."""
         return self.boundary_problem(self.solved_form(), 0).heaviness
-
-    def label(self, row: int) -> str:
-        """A master by name."""
-        return integral_text(self.definition.name, self.masters().masters[row])

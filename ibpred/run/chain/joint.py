@@ -22,7 +22,7 @@ from ibpred.reduction.masters import CommonMasters
 from ibpred.reduction.several import reduce_together
 from ibpred.reduction.sums import ReducedSums, Sum, reduce_sums
 from ibpred.reduction.wanted import check_powers
-from ibpred.run.chain.chain import Chain
+from ibpred.run.chain.equations import Equations
 from ibpred.run.chain.stages import SEED, Stages
 from ibpred.run.storage.rows import TableRows, table_rows
 from ibpred.run.storage.store import Store
@@ -119,7 +119,7 @@ class Joint(Stages):
         if roots == (0,):
             wish = tuple(powers for _, powers in self.preferred)
             family = self.members[0].definition
-            chain = Chain(family, self.store, self.watcher, self.workers, wish, self.expired)
+            chain = Equations(family, self.store, self.watcher, self.workers, wish, self.expired)
             own = chain.masters()
             self.finished += chain.finished
             integrals = tuple((0, powers) for powers in own.masters)

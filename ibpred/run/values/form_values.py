@@ -75,7 +75,7 @@ def form_values(
     groups: dict[Channel | None, list[int]] = {}
     elsewhere: list[int] = []
     for number, place in enumerate(chosen):
-        if chain.has_euclidean_region() and not _is_inside(form, place):
+        if chain.left_euclidean_region() and not _is_inside(form, place):
             elsewhere.append(number)
         else:
             groups.setdefault(channel_at(chain, form, place), []).append(number)
